@@ -1,0 +1,1 @@
+//! Subcommands: arguments, wiring, what is printed. The only place with files and clock.

@@ -1,0 +1,1 @@
+//! Readings against limits: the verdict on each part.

@@ -1,0 +1,133 @@
+//! Limit files: text to validated `Limits`.
+
+use crate::readings::{Characteristic, Equivalent, Place};
+
+/// One bound: what is bounded, where, and the absolute window.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Bound {
+    /// Stable key: `capacitance@1kHz`, `esr_minimum`, `impedance@700kHz..4MHz`.
+    pub key: String,
+    #[allow(missing_docs)]
+    pub characteristic: Characteristic,
+    /// Where it is read.
+    pub place: Place,
+    /// Lower limit in SI units, inclusive.
+    pub lower: Option<f64>,
+    /// Upper limit in SI units, inclusive. At least one of the two is there.
+    pub upper: Option<f64>,
+    /// Nominal value, where the file gives one.
+    pub nominal: Option<f64>,
+    /// Nonconformity class, `A` where the file names none.
+    pub class: String,
+}
+
+/// A closed window; either side may be open.
+#[derive(Debug, Clone, Copy, PartialEq)]
+#[allow(missing_docs)]
+pub struct Window {
+    pub lower: Option<f64>,
+    pub upper: Option<f64>,
+}
+
+/// Referral of class 2 capacitance to a referee time since last heat.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Ageing {
+    /// Relative loss per decade of hours (0.025 for 2.5 %).
+    pub per_decade: f64,
+    /// Referee time in seconds.
+    pub refer_to: f64,
+}
+
+/// How the part must be measured.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct Conditions {
+    /// V rms across the part at the test frequency.
+    pub drive: Option<Window>,
+    /// °C
+    pub temperature: Option<Window>,
+    pub equivalent: Equivalent,
+    pub ageing: Option<Ageing>,
+}
+
+/// Decision rule with measurement uncertainty (JCGM 106:2012 clause 8).
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct DecisionRule {
+    #[allow(missing_docs)]
+    pub kind: DecisionRuleKind,
+    /// Guard band = coverage factor × standard uncertainty; 2 where the file names none.
+    pub coverage_factor: f64,
+}
+
+/// The kinds of decision rule.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[allow(missing_docs)]
+pub enum DecisionRuleKind {
+    SimpleAcceptance,
+    GuardedAcceptance,
+    GuardedRejection,
+}
+
+/// How the lot is accepted from its sample.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Acceptance {
+    /// ISO 2859-1 single sampling: inspection level (`S-1`…`S-4`, `I`, `II`, `III`) and AQL in percent by class, in file order.
+    #[allow(missing_docs)]
+    Attributes { level: String, aql: Vec<(String, f64)> },
+    /// ISO 3951-1.
+    #[allow(missing_docs)]
+    Variables { level: String, aql: Vec<(String, f64)> },
+    /// Sample for zero acceptance: quality limit and consumer's risk as ratios.
+    #[allow(missing_docs)]
+    ZeroAcceptance { quality_limit: f64, consumers_risk: f64 },
+    /// A fixed sample and acceptance number over all classes.
+    #[allow(missing_docs)]
+    Fixed { sample: u64, accept: u64 },
+}
+
+/// A capability demanded of the lot.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CapabilityRule {
+    /// Keys of the bounds it applies to.
+    pub of: Vec<String>,
+    /// `cp`, `cpk`, `pp` or `ppk`.
+    pub index: String,
+    #[allow(missing_docs)]
+    pub min: f64,
+}
+
+/// Outliers allowed in the lot.
+#[derive(Debug, Clone, PartialEq)]
+pub struct OutlierRule {
+    /// Keys of the bounds it applies to.
+    pub of: Vec<String>,
+    /// Significance level of the generalized ESD test.
+    pub alpha: f64,
+    /// How many outliers are allowed for each characteristic.
+    pub allowed: u64,
+}
+
+/// How many further tries are allowed after a try with that outcome.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+#[allow(missing_docs)]
+pub struct Retest {
+    pub unmeasured: u32,
+    pub nonconforming: u32,
+}
+
+/// A valid limit file.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct Limits {
+    pub part: String,
+    pub revision: String,
+    pub description: Option<String>,
+    pub conditions: Conditions,
+    /// In file order, at least one, keys unique.
+    pub bounds: Vec<Bound>,
+    pub decision_rule: DecisionRule,
+    pub acceptance: Acceptance,
+    pub capability_rules: Vec<CapabilityRule>,
+    pub outlier_rules: Vec<OutlierRule>,
+    pub retest: Retest,
+}

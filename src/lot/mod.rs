@@ -1,0 +1,31 @@
+//! The lot: its identity as `lot.yaml` states it, and its judgement from parts, plan and statistics.
+
+use chrono::{DateTime, FixedOffset, NaiveDateTime};
+
+/// A lot as its `lot.yaml` describes it.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct Lot {
+    pub lot: String,
+    pub part: String,
+    pub supplier: Option<String>,
+    /// Parts on the reel, at least 1.
+    pub quantity: u64,
+    pub date_code: Option<String>,
+    pub order: Option<String>,
+    /// The scan as typed by the scanner.
+    pub label: Option<String>,
+    pub operator: Option<String>,
+    pub station: String,
+    pub measured: DateTime<FixedOffset>,
+    /// °C
+    pub temperature: Option<f64>,
+    /// Ratio, 0 to 1.
+    pub humidity: Option<f64>,
+    /// V rms as set by the operator.
+    pub drive: Option<f64>,
+    /// When the parts were last heated above the Curie range; a bare date is its midnight.
+    pub last_heat: Option<NaiveDateTime>,
+    /// A folder or a file, relative to the lot folder.
+    pub sweeps: String,
+}

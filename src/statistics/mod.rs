@@ -1,0 +1,2 @@
+//! Pure mathematics of lot decisions: sampling tables, capability, outliers.
+//! Knows nothing of capacitors, files or verdicts.
