@@ -1,78 +1,45 @@
 //! Sweep to readings: the value of each characteristic with its standard uncertainty.
 //!
-//! Cannot see limits: extraction cannot lean towards a verdict it cannot import.
+//! Cannot see limits: extraction cannot lean towards a verdict it cannot import. One file a
+//! characteristic (or family of them); `local_fit` is the one estimator all of them use.
 
-/// What a limit may bound (ISO 3534-2: characteristic).
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
-pub enum Characteristic {
-    /// Capacitance in F at a frequency, series or parallel equivalent.
-    Capacitance,
-    /// Dissipation factor tan δ = R/|X| at a frequency.
-    DissipationFactor,
-    /// Equivalent series resistance Re Z in Ω at a frequency or over a band.
-    Esr,
-    /// |Z| in Ω at a frequency or over a band.
-    Impedance,
-    /// Smallest Re Z in Ω of the sweep or of a band.
-    EsrMinimum,
-    /// Self-resonant frequency in Hz: reactance from capacitive to inductive.
-    Srf,
-    /// Equivalent series inductance in H.
-    Esl,
-}
+mod ageing;
+mod at_frequency;
+mod band;
+mod characteristic;
+mod esl;
+mod esr_minimum;
+mod local_fit;
+mod reading;
+mod srf;
+mod uncertainty;
 
-/// Where in frequency a characteristic is read.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub enum Place {
-    /// At one frequency, Hz.
-    At(f64),
-    /// Over a band, Hz to Hz.
-    Between(f64, f64),
-    /// Wherever the sweep has it.
-    Anywhere,
-}
+pub use ageing::{AgeingError, Referral, refer};
+pub use characteristic::{Characteristic, Equivalent, Place};
+pub use reading::{Extremes, Reading, Request, Value};
+pub use uncertainty::Budget;
 
-/// Which equivalent circuit capacitance and dissipation factor refer to.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-#[allow(missing_docs)]
-pub enum Equivalent {
-    Series,
-    Parallel,
-}
+use crate::sweep::Sweep;
 
-impl Characteristic {
-    /// The seven characteristics in the order documents list them.
-    pub const ALL: [Characteristic; 7] = [
-        Characteristic::Capacitance,
-        Characteristic::DissipationFactor,
-        Characteristic::Esr,
-        Characteristic::Impedance,
-        Characteristic::EsrMinimum,
-        Characteristic::Srf,
-        Characteristic::Esl,
-    ];
-
-    /// The name in files: `capacitance`, `esr_minimum` …
-    pub fn name(self) -> &'static str {
-        match self {
-            Characteristic::Capacitance => "capacitance",
-            Characteristic::DissipationFactor => "dissipation_factor",
-            Characteristic::Esr => "esr",
-            Characteristic::Impedance => "impedance",
-            Characteristic::EsrMinimum => "esr_minimum",
-            Characteristic::Srf => "srf",
-            Characteristic::Esl => "esl",
+/// Reads one characteristic from a sweep.
+///
+/// A value that the sweep does not hold is `Value::Missing` with a warning that says why; nothing
+/// is extrapolated.
+pub fn read(sweep: &Sweep, request: &Request, budget: &Budget) -> Extremes {
+    let single = |reading: Reading| Extremes { lowest: reading.clone(), highest: reading };
+    match (request.characteristic, request.place) {
+        (Characteristic::Esr | Characteristic::Impedance, Place::Between(from, to)) => {
+            band::read(sweep, request.characteristic, from, to, budget)
         }
-    }
-
-    /// The SI unit of a reading: `F`, `Ω`, `Hz`, `H`, or `1` for a ratio.
-    pub fn unit(self) -> &'static str {
-        match self {
-            Characteristic::Capacitance => "F",
-            Characteristic::DissipationFactor => "1",
-            Characteristic::Esr | Characteristic::Impedance | Characteristic::EsrMinimum => "Ω",
-            Characteristic::Srf => "Hz",
-            Characteristic::Esl => "H",
+        (Characteristic::EsrMinimum, place) => single(esr_minimum::read(sweep, place, budget)),
+        (Characteristic::Srf, _) => single(srf::read(sweep, budget)),
+        (Characteristic::Esl, _) => single(esl::read(sweep, budget)),
+        (characteristic, Place::At(frequency)) => {
+            single(at_frequency::read(sweep, characteristic, frequency, request.equivalent, budget))
         }
+        (characteristic, _) => single(Reading::missing(
+            "frequency_missing",
+            format!("{} is read at a frequency, and none was asked for", characteristic.name()),
+        )),
     }
 }

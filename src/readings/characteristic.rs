@@ -1,0 +1,89 @@
+//! What may be bounded, and where in frequency. Names and units only; no numbers are read here.
+
+/// What a limit may bound (ISO 3534-2: characteristic).
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum Characteristic {
+    /// Capacitance in F at a frequency, series or parallel equivalent.
+    Capacitance,
+    /// Dissipation factor tan δ = R/|X| at a frequency.
+    DissipationFactor,
+    /// Equivalent series resistance Re Z in Ω at a frequency or over a band.
+    Esr,
+    /// |Z| in Ω at a frequency or over a band.
+    Impedance,
+    /// Smallest Re Z in Ω of the sweep or of a band.
+    EsrMinimum,
+    /// Self-resonant frequency in Hz: reactance from capacitive to inductive.
+    Srf,
+    /// Equivalent series inductance in H.
+    Esl,
+}
+
+/// Where in frequency a characteristic is read.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Place {
+    /// At one frequency, Hz.
+    At(f64),
+    /// Over a band, Hz to Hz.
+    Between(f64, f64),
+    /// Wherever the sweep has it.
+    Anywhere,
+}
+
+/// Which equivalent circuit capacitance refers to.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[allow(missing_docs)]
+pub enum Equivalent {
+    Series,
+    Parallel,
+}
+
+impl Characteristic {
+    /// The seven characteristics in the order documents list them.
+    pub const ALL: [Characteristic; 7] = [
+        Characteristic::Capacitance,
+        Characteristic::DissipationFactor,
+        Characteristic::Esr,
+        Characteristic::Impedance,
+        Characteristic::EsrMinimum,
+        Characteristic::Srf,
+        Characteristic::Esl,
+    ];
+
+    /// The name in files: `capacitance`, `esr_minimum` …
+    pub fn name(self) -> &'static str {
+        match self {
+            Characteristic::Capacitance => "capacitance",
+            Characteristic::DissipationFactor => "dissipation_factor",
+            Characteristic::Esr => "esr",
+            Characteristic::Impedance => "impedance",
+            Characteristic::EsrMinimum => "esr_minimum",
+            Characteristic::Srf => "srf",
+            Characteristic::Esl => "esl",
+        }
+    }
+
+    /// The name in documents: `dissipation factor`, `ESR minimum`, `SRF` …
+    pub fn title(self) -> &'static str {
+        match self {
+            Characteristic::Capacitance => "capacitance",
+            Characteristic::DissipationFactor => "dissipation factor",
+            Characteristic::Esr => "ESR",
+            Characteristic::Impedance => "impedance",
+            Characteristic::EsrMinimum => "ESR minimum",
+            Characteristic::Srf => "SRF",
+            Characteristic::Esl => "ESL",
+        }
+    }
+
+    /// The SI unit of a reading: `F`, `Ω`, `Hz`, `H`, or `1` for a ratio.
+    pub fn unit(self) -> &'static str {
+        match self {
+            Characteristic::Capacitance => "F",
+            Characteristic::DissipationFactor => "1",
+            Characteristic::Esr | Characteristic::Impedance | Characteristic::EsrMinimum => "Ω",
+            Characteristic::Srf => "Hz",
+            Characteristic::Esl => "H",
+        }
+    }
+}

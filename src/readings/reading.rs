@@ -1,0 +1,77 @@
+//! A reading: a value, or a bound on it, or nothing; with uncertainty and warnings.
+
+use super::{Characteristic, Equivalent, Place};
+use crate::diagnostic::Note;
+
+/// What is to be read.
+#[derive(Debug, Clone, Copy, PartialEq)]
+#[allow(missing_docs)]
+pub struct Request {
+    pub characteristic: Characteristic,
+    pub place: Place,
+    /// Matters for capacitance alone.
+    pub equivalent: Equivalent,
+}
+
+/// What is known of a value, in the characteristic's SI unit.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Value {
+    /// The value itself, finite.
+    Known(f64),
+    /// It lies above this.
+    Above(f64),
+    /// It lies below this.
+    Below(f64),
+    /// The sweep does not hold it.
+    Missing,
+}
+
+/// The value of one characteristic of one part.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Reading {
+    #[allow(missing_docs)]
+    pub value: Value,
+    /// In the unit of the value; `None` where the station states no instrument uncertainty.
+    pub standard_uncertainty: Option<f64>,
+    /// Hz: where the value lies, for characteristics that the sweep places.
+    pub frequency: Option<f64>,
+    /// Why it is missing, or what to know about it.
+    pub warnings: Vec<Note>,
+}
+
+/// The lowest and the highest reading over the place asked for; the same reading twice where the
+/// place is one frequency.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct Extremes {
+    pub lowest: Reading,
+    pub highest: Reading,
+}
+
+impl Reading {
+    /// A reading that could not be had, and why.
+    pub fn missing(code: &str, text: impl Into<String>) -> Reading {
+        Reading { value: Value::Missing, standard_uncertainty: None, frequency: None, warnings: vec![Note::new(code, text)] }
+    }
+
+    /// A known value; one that is not finite is missing.
+    pub fn known(value: f64, standard_uncertainty: Option<f64>) -> Reading {
+        if !value.is_finite() {
+            return Reading::missing("not_finite", "the sweep gives no finite value here");
+        }
+        Reading {
+            value: Value::Known(value),
+            standard_uncertainty: standard_uncertainty.filter(|u| u.is_finite()),
+            frequency: None,
+            warnings: Vec::new(),
+        }
+    }
+
+    /// The value where it is known.
+    pub fn known_value(&self) -> Option<f64> {
+        match self.value {
+            Value::Known(value) => Some(value),
+            _ => None,
+        }
+    }
+}

@@ -1,0 +1,150 @@
+//! Self-resonant frequency: the first frequency, from low to high, where the reactance goes from
+//! capacitive to inductive. Not the minimum of |Z|, which lies elsewhere where the resistance
+//! changes with frequency (by 29 % for the reference electrolytic of tests/reference).
+//!
+//! Sign changes closer than 0.1 decade are one crossing if the signs beyond them differ. The
+//! crossing is refined by least squares of `X = a y − b/y + …` (`y = f/f_c`, the physical form of
+//! a series resonance) over ±0.2 decade with weights 1/|Z|.
+
+use super::local_fit::{LocalFit, RESONANCE};
+use super::{Budget, Characteristic, Reading, Value};
+use crate::diagnostic::Note;
+use crate::sweep::Sweep;
+use std::f64::consts::LN_10;
+
+/// Sign changes closer than this (0.1 decade) belong to one crossing.
+const CLUSTER: f64 = 0.1 * LN_10;
+/// Half-width of the window of the refinement, 0.2 decade.
+const WINDOW: f64 = 0.2 * LN_10;
+
+/// A crossing of the reactance: ln f of its first and last sign change, and whether it rises.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Crossing {
+    first: f64,
+    last: f64,
+    rises: bool,
+}
+
+fn crossings(sweep: &Sweep) -> Vec<Crossing> {
+    // (ln f at the change, sign before, sign after)
+    let mut changes: Vec<(f64, bool, bool)> = Vec::new();
+    let mut previous: Option<(f64, f64)> = None;
+    for (f, z) in sweep.frequency.iter().zip(&sweep.impedance) {
+        if z.im == 0.0 {
+            continue;
+        }
+        if let Some((f0, x0)) = previous
+            && (x0 < 0.0) != (z.im < 0.0)
+        {
+            let share = x0 / (x0 - z.im);
+            changes.push((f0.ln() + share * (f.ln() - f0.ln()), x0 > 0.0, z.im > 0.0));
+        }
+        previous = Some((*f, z.im));
+    }
+    let mut found: Vec<Crossing> = Vec::new();
+    let mut i = 0;
+    while i < changes.len() {
+        let mut j = i;
+        while j + 1 < changes.len() && changes[j + 1].0 - changes[j].0 < CLUSTER {
+            j += 1;
+        }
+        let (before, after) = (changes[i].1, changes[j].2);
+        if before != after {
+            found.push(Crossing { first: changes[i].0, last: changes[j].0, rises: after });
+        }
+        i = j + 1;
+    }
+    found
+}
+
+/// The self-resonant frequency in Hz.
+///
+/// A sweep that is capacitive up to its end gives `Value::Above` its last frequency; one that is
+/// inductive from its start `Value::Below` its first.
+pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
+    let n = sweep.frequency.len();
+    let found = crossings(sweep);
+    let Some(at) = found.iter().position(|c| c.rises) else {
+        return without_crossing(sweep, &found);
+    };
+    let crossing = found[at];
+    let centre = 0.5 * (crossing.first + crossing.last);
+    let lower = if at > 0 { 0.5 * (found[at - 1].last + crossing.first) } else { f64::NEG_INFINITY };
+    let upper = found.get(at + 1).map_or(f64::INFINITY, |next| 0.5 * (crossing.last + next.first));
+    let half = WINDOW.max(crossing.last - centre + 0.05);
+    let Some((root, sigma, slope, resistance)) = refine(sweep, centre, (centre - half).max(lower), (centre + half).min(upper)) else {
+        return Reading::missing("srf_not_resolved", "the reactance changes sign, but its course there gives no definite crossing; measure again");
+    };
+    let value = root.exp();
+    // A phase error φ shifts X by R φ, and with it the crossing by R φ / (dX/d ln f).
+    let per_radian = value * resistance / slope;
+    let mut reading = Reading::known(value, budget.combine_phase_only(Characteristic::Srf, value, per_radian, value * sigma / slope));
+    reading.frequency = Some(value);
+    let position = sweep.frequency.partition_point(|f| f.ln() < centre);
+    if position < 3 || position + 3 > n {
+        reading.warnings.push(Note::new("srf_at_sweep_edge", "the self-resonance lies within three points of the sweep's end"));
+    }
+    if found.iter().filter(|c| c.rises).count() > 1 {
+        reading.warnings.push(Note::new(
+            "multiple_resonances",
+            "the reactance crosses zero more than once: the first crossing is given; look for a second part left in the jig",
+        ));
+    }
+    reading
+}
+
+fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
+    let n = sweep.frequency.len();
+    let capacitive = sweep.impedance.iter().filter(|z| z.im < 0.0).count();
+    let hz = |f: f64| crate::quantity::engineering(f, "Hz", 4);
+    let bound = |value: Value, text: String| Reading {
+        value,
+        standard_uncertainty: None,
+        frequency: None,
+        warnings: vec![Note::new("srf_outside_sweep", text)],
+    };
+    if found.is_empty() && capacitive == n {
+        let last = sweep.frequency[n - 1];
+        return bound(Value::Above(last), format!("no self-resonance up to the sweep's end: it lies above {}", hz(last)));
+    }
+    if found.is_empty() && capacitive == 0 {
+        let first = sweep.frequency[0];
+        return bound(Value::Below(first), format!("inductive from the sweep's start: the self-resonance lies below {}", hz(first)));
+    }
+    Reading::missing("srf_not_resolved", "the reactance changes sign without a definite crossing from capacitive to inductive")
+}
+
+/// Root (as ln f) of the fitted reactance, the fit's scatter in Ω there, the slope dX/d ln f in Ω,
+/// and R in Ω at the point next to it.
+fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<(f64, f64, f64, f64)> {
+    let mut start = sweep.frequency.partition_point(|f| f.ln() < low);
+    let mut end = sweep.frequency.partition_point(|f| f.ln() <= high);
+    // A coarse sweep gets at least two points on either side, where it has them.
+    let middle = sweep.frequency.partition_point(|f| f.ln() < centre);
+    start = start.min(middle.saturating_sub(2));
+    end = end.max((middle + 2).min(sweep.frequency.len()));
+    let (mut t, mut x, mut w) = (Vec::new(), Vec::new(), Vec::new());
+    for i in start..end {
+        t.push(sweep.frequency[i].ln() - centre);
+        x.push(sweep.impedance[i].im);
+        w.push(1.0 / sweep.impedance[i].norm().max(f64::MIN_POSITIVE));
+    }
+    let fit = LocalFit::new(&RESONANCE, 2, &t, &x, &w)?;
+    let (mut a, mut b) = (t[0], t[t.len() - 1]);
+    // The window's ends must lie on either side; bisection then cannot fail.
+    if !(fit.value(a) < 0.0 && fit.value(b) > 0.0) {
+        return None;
+    }
+    for _ in 0..80 {
+        let m = 0.5 * (a + b);
+        if fit.value(m) < 0.0 { a = m } else { b = m }
+    }
+    let root = 0.5 * (a + b);
+    let step = 1e-4;
+    let slope = (fit.value(root + step) - fit.value(root - step)) / (2.0 * step);
+    let nearest = (start..end).min_by(|i, j| {
+        let distance = |k: usize| (sweep.frequency[k].ln() - centre - root).abs();
+        distance(*i).total_cmp(&distance(*j))
+    })?;
+    (slope.is_finite() && slope > 0.0).then(|| (centre + root, fit.sigma(root), slope, sweep.impedance[nearest].re))
+}
