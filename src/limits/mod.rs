@@ -29,6 +29,24 @@ pub struct Window {
     pub upper: Option<f64>,
 }
 
+impl Window {
+    /// In words: `0.80 V to 1.20 V`, `at least 18 °C`.
+    pub fn words(&self, unit: &str) -> String {
+        let text = |value: f64| crate::quantity::engineering(value, unit, 3);
+        match (self.lower, self.upper) {
+            (Some(l), Some(u)) => format!("{} to {}", text(l), text(u)),
+            (Some(l), None) => format!("at least {}", text(l)),
+            (None, Some(u)) => format!("at most {}", text(u)),
+            (None, None) => "anything".to_owned(),
+        }
+    }
+
+    /// Whether a value lies in the closed window.
+    pub fn contains(&self, value: f64) -> bool {
+        self.lower.is_none_or(|l| value >= l) && self.upper.is_none_or(|u| value <= u)
+    }
+}
+
 /// Referral of class 2 capacitance to a referee time since last heat.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Ageing {

@@ -1,0 +1,213 @@
+//! One part from its tries: which try counts, its verdict, its readings.
+
+use super::{PartVerdict, ReadingRecord, judge_reading};
+use crate::diagnostic::Note;
+use crate::limits::{Limits, Retest, Window};
+use crate::quantity::engineering;
+use crate::readings::{self, AgeingError, Budget, Characteristic, Extremes, Place, Referral, Request};
+use crate::sweep::{Attempt, Sweep};
+use indexmap::IndexMap;
+use serde::{Deserialize, Serialize};
+
+/// One part.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct PartRecord {
+    pub part: String,
+    pub verdict: PartVerdict,
+    /// Of the most serious nonconformity, where nonconforming (ISO 2859-1: an item with a class A
+    /// nonconformity is a class A nonconforming item, whatever else it has). Of the most serious
+    /// undecided characteristic, where undecided.
+    pub class: Option<String>,
+    /// Every try in order; the part's verdict and readings are of the try marked `counts`.
+    pub attempts: Vec<AttemptRecord>,
+    pub readings: IndexMap<String, ReadingRecord>,
+    pub faults: Vec<Note>,
+    pub warnings: Vec<Note>,
+}
+
+/// One try at a part.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct AttemptRecord {
+    pub attempt: u32,
+    pub file: String,
+    pub sha256: String,
+    pub verdict: PartVerdict,
+    pub counts: bool,
+    /// What was found out on reading the file.
+    pub notes: Vec<Note>,
+    pub faults: Vec<Note>,
+}
+
+/// A try and what came of it.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct JudgedTry {
+    pub verdict: PartVerdict,
+    pub class: Option<String>,
+    pub readings: IndexMap<String, ReadingRecord>,
+    pub faults: Vec<Note>,
+    pub warnings: Vec<Note>,
+}
+
+/// Judges one sweep against every bound.
+///
+/// `age` is the hours since last heat, where known; without it a capacitance that the limit file
+/// wants referred is not judged.
+pub fn judge_try(attempt: &Attempt, limits: &Limits, budget: &Budget, age: Option<f64>) -> JudgedTry {
+    let sweep = match &attempt.sweep {
+        Ok(sweep) => sweep,
+        Err(faults) => {
+            return JudgedTry {
+                verdict: PartVerdict::Unmeasured,
+                class: None,
+                readings: IndexMap::new(),
+                faults: faults.clone(),
+                warnings: Vec::new(),
+            };
+        }
+    };
+    let faults: Vec<Note> = drive_fault(sweep, limits).into_iter().collect();
+    let mut readings = IndexMap::new();
+    for bound in &limits.bounds {
+        let request = Request { characteristic: bound.characteristic, place: bound.place, equivalent: limits.conditions.equivalent };
+        let mut extremes = readings::read(sweep, &request, budget);
+        let mut measured = None;
+        if bound.characteristic == Characteristic::Capacitance {
+            (extremes, measured) = referred(extremes, limits, age);
+        }
+        let mut record = judge_reading(&extremes, bound, &limits.decision_rule);
+        record.as_measured = measured;
+        if !faults.is_empty() {
+            record.verdict = PartVerdict::Unmeasured;
+        }
+        readings.insert(bound.key.clone(), record);
+    }
+    let verdict = PartVerdict::of_all(readings.values().map(|r| r.verdict));
+    let class = limits
+        .bounds
+        .iter()
+        .filter(|b| matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided) && readings[&b.key].verdict == verdict)
+        .map(|b| b.class.clone())
+        .min();
+    let warnings = readings
+        .iter()
+        .flat_map(|(key, r): (&String, &ReadingRecord)| {
+            r.warnings.iter().filter(|w| w.code != "referred_to_referee_time").map(move |w| Note::new(&w.code, format!("{key}: {}", w.text)))
+        })
+        .collect();
+    JudgedTry { verdict, class, readings, faults, warnings }
+}
+
+fn referred(extremes: Extremes, limits: &Limits, age: Option<f64>) -> (Extremes, Option<f64>) {
+    let (Some(ageing), Some(age)) = (limits.conditions.ageing, age) else { return (extremes, None) };
+    let referral = Referral { per_decade: ageing.per_decade, age, refer_to: ageing.refer_to / 3600.0 };
+    match readings::refer(&extremes.lowest, &referral) {
+        Ok((reading, measured)) => (Extremes { lowest: reading.clone(), highest: reading }, measured),
+        Err(AgeingError::AgeOutsideLaw(_)) => (extremes, None),
+    }
+}
+
+/// The frequency at which the drive is looked at: that of the first capacitance bound, or else of
+/// the first bound that has one.
+fn drive_frequency(limits: &Limits) -> Option<f64> {
+    let at = |b: &crate::limits::Bound| match b.place {
+        Place::At(f) => Some(f),
+        _ => None,
+    };
+    limits
+        .bounds
+        .iter()
+        .find(|b| b.characteristic == Characteristic::Capacitance)
+        .and_then(at)
+        .or_else(|| limits.bounds.iter().find_map(at))
+}
+
+/// The true voltage across the part at the test frequency, where the sweep carries it: V rms.
+pub(crate) fn drive_of(sweep: &Sweep, limits: &Limits) -> Option<f64> {
+    let level = sweep.level.as_ref()?;
+    let frequency = drive_frequency(limits)?;
+    let i = sweep.frequency.partition_point(|f| *f < frequency).clamp(1, sweep.frequency.len() - 1);
+    let (f0, f1) = (sweep.frequency[i - 1], sweep.frequency[i]);
+    let share = ((frequency / f0).ln() / (f1 / f0).ln()).clamp(0.0, 1.0);
+    Some(level[i - 1] + share * (level[i] - level[i - 1]))
+}
+
+fn drive_fault(sweep: &Sweep, limits: &Limits) -> Option<Note> {
+    let window: Window = limits.conditions.drive?;
+    let drive = drive_of(sweep, limits)?;
+    // Levels are printed with a few digits; a window's own bound counts as inside.
+    let inside = window.lower.is_none_or(|l| drive >= l * (1.0 - 1e-6)) && window.upper.is_none_or(|u| drive <= u * (1.0 + 1e-6));
+    (!inside).then(|| {
+        Note::new(
+            "drive_out_of_range",
+            format!(
+                "the sweep shows {} across the part at the test frequency, {} demanded: set the drive and measure again",
+                engineering(drive, "V", 3),
+                window.words("V"),
+            ),
+        )
+    })
+}
+
+/// Judges one part from its tries, in order of their number.
+///
+/// The first try counts. A later one takes its place only where the try before it came out
+/// `unmeasured` or `nonconforming` and the limit file's `retest` still allows one more after such
+/// an outcome; any other further try is kept and answered with the reason `retest_not_allowed`.
+pub fn judge_part(tries: &[(&Attempt, JudgedTry)], retest: &Retest) -> (PartRecord, Option<Note>) {
+    let mut counting = 0;
+    let mut left = *retest;
+    let mut refused = None;
+    for (index, (attempt, _)) in tries.iter().enumerate().skip(1) {
+        let allowance = match tries[counting].1.verdict {
+            PartVerdict::Unmeasured => Some(&mut left.unmeasured),
+            PartVerdict::Nonconforming => Some(&mut left.nonconforming),
+            _ => None,
+        };
+        match allowance {
+            Some(count) if *count > 0 && counting == index - 1 => {
+                *count -= 1;
+                counting = index;
+            }
+            _ => {
+                refused = Some(Note::new(
+                    "retest_not_allowed",
+                    format!(
+                        "part {}: try {} ({}) follows a try that came out {}; the limit file allows no such retest, so it does not count: \
+                         a quality engineer decides",
+                        attempt.part,
+                        attempt.attempt,
+                        attempt.file,
+                        tries[counting].1.verdict.name(),
+                    ),
+                ));
+            }
+        }
+    }
+    let attempts = tries
+        .iter()
+        .enumerate()
+        .map(|(index, (attempt, judged))| AttemptRecord {
+            attempt: attempt.attempt,
+            file: attempt.file.clone(),
+            sha256: attempt.sha256.clone(),
+            verdict: judged.verdict,
+            counts: index == counting,
+            notes: attempt.notes.clone(),
+            faults: judged.faults.clone(),
+        })
+        .collect();
+    let counted = &tries[counting].1;
+    let record = PartRecord {
+        part: tries[counting].0.part.clone(),
+        verdict: counted.verdict,
+        class: counted.class.clone(),
+        attempts,
+        readings: counted.readings.clone(),
+        faults: counted.faults.clone(),
+        warnings: counted.warnings.clone(),
+    };
+    (record, refused)
+}
