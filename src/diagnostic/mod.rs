@@ -15,6 +15,9 @@ pub struct Note {
 impl Note {
     /// A note from its code and sentence.
     pub fn new(code: &str, text: impl Into<String>) -> Self {
-        Note { code: code.to_owned(), text: text.into() }
+        Note {
+            code: code.to_owned(),
+            text: text.into(),
+        }
     }
 }

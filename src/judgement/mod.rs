@@ -45,6 +45,9 @@ impl PartVerdict {
             PartVerdict::Unmeasured => 2,
             PartVerdict::Nonconforming => 3,
         };
-        verdicts.into_iter().max_by_key(weight).unwrap_or(PartVerdict::Unmeasured)
+        verdicts
+            .into_iter()
+            .max_by_key(weight)
+            .unwrap_or(PartVerdict::Unmeasured)
     }
 }

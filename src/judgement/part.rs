@@ -4,7 +4,9 @@ use super::{PartVerdict, ReadingRecord, judge_reading};
 use crate::diagnostic::Note;
 use crate::limits::{Limits, Retest, Window};
 use crate::quantity::engineering;
-use crate::readings::{self, AgeingError, Budget, Characteristic, Extremes, Place, Referral, Request};
+use crate::readings::{
+    self, AgeingError, Budget, Characteristic, Extremes, Place, Referral, Request,
+};
 use crate::sweep::{Attempt, Sweep};
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
@@ -55,7 +57,12 @@ pub struct JudgedTry {
 ///
 /// `age` is the hours since last heat, where known; without it a capacitance that the limit file
 /// wants referred is not judged.
-pub fn judge_try(attempt: &Attempt, limits: &Limits, budget: &Budget, age: Option<f64>) -> JudgedTry {
+pub fn judge_try(
+    attempt: &Attempt,
+    limits: &Limits,
+    budget: &Budget,
+    age: Option<f64>,
+) -> JudgedTry {
     let sweep = match &attempt.sweep {
         Ok(sweep) => sweep,
         Err(faults) => {
@@ -71,7 +78,11 @@ pub fn judge_try(attempt: &Attempt, limits: &Limits, budget: &Budget, age: Optio
     let faults: Vec<Note> = drive_fault(sweep, limits).into_iter().collect();
     let mut readings = IndexMap::new();
     for bound in &limits.bounds {
-        let request = Request { characteristic: bound.characteristic, place: bound.place, equivalent: limits.conditions.equivalent };
+        let request = Request {
+            characteristic: bound.characteristic,
+            place: bound.place,
+            equivalent: limits.conditions.equivalent,
+        };
         let mut extremes = readings::read(sweep, &request, budget);
         let mut measured = None;
         if bound.characteristic == Characteristic::Capacitance {
@@ -88,23 +99,47 @@ pub fn judge_try(attempt: &Attempt, limits: &Limits, budget: &Budget, age: Optio
     let class = limits
         .bounds
         .iter()
-        .filter(|b| matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided) && readings[&b.key].verdict == verdict)
+        .filter(|b| {
+            matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided)
+                && readings[&b.key].verdict == verdict
+        })
         .map(|b| b.class.clone())
         .min();
     let warnings = readings
         .iter()
         .flat_map(|(key, r): (&String, &ReadingRecord)| {
-            r.warnings.iter().filter(|w| w.code != "referred_to_referee_time").map(move |w| Note::new(&w.code, format!("{key}: {}", w.text)))
+            r.warnings
+                .iter()
+                .filter(|w| w.code != "referred_to_referee_time")
+                .map(move |w| Note::new(&w.code, format!("{key}: {}", w.text)))
         })
         .collect();
-    JudgedTry { verdict, class, readings, faults, warnings }
+    JudgedTry {
+        verdict,
+        class,
+        readings,
+        faults,
+        warnings,
+    }
 }
 
 fn referred(extremes: Extremes, limits: &Limits, age: Option<f64>) -> (Extremes, Option<f64>) {
-    let (Some(ageing), Some(age)) = (limits.conditions.ageing, age) else { return (extremes, None) };
-    let referral = Referral { per_decade: ageing.per_decade, age, refer_to: ageing.refer_to / 3600.0 };
+    let (Some(ageing), Some(age)) = (limits.conditions.ageing, age) else {
+        return (extremes, None);
+    };
+    let referral = Referral {
+        per_decade: ageing.per_decade,
+        age,
+        refer_to: ageing.refer_to / 3600.0,
+    };
     match readings::refer(&extremes.lowest, &referral) {
-        Ok((reading, measured)) => (Extremes { lowest: reading.clone(), highest: reading }, measured),
+        Ok((reading, measured)) => (
+            Extremes {
+                lowest: reading.clone(),
+                highest: reading,
+            },
+            measured,
+        ),
         Err(AgeingError::AgeOutsideLaw(_)) => (extremes, None),
     }
 }
@@ -128,7 +163,10 @@ fn drive_frequency(limits: &Limits) -> Option<f64> {
 pub(crate) fn drive_of(sweep: &Sweep, limits: &Limits) -> Option<f64> {
     let level = sweep.level.as_ref()?;
     let frequency = drive_frequency(limits)?;
-    let i = sweep.frequency.partition_point(|f| *f < frequency).clamp(1, sweep.frequency.len() - 1);
+    let i = sweep
+        .frequency
+        .partition_point(|f| *f < frequency)
+        .clamp(1, sweep.frequency.len() - 1);
     let (f0, f1) = (sweep.frequency[i - 1], sweep.frequency[i]);
     let share = ((frequency / f0).ln() / (f1 / f0).ln()).clamp(0.0, 1.0);
     Some(level[i - 1] + share * (level[i] - level[i - 1]))
@@ -138,7 +176,8 @@ fn drive_fault(sweep: &Sweep, limits: &Limits) -> Option<Note> {
     let window: Window = limits.conditions.drive?;
     let drive = drive_of(sweep, limits)?;
     // Levels are printed with a few digits; a window's own bound counts as inside.
-    let inside = window.lower.is_none_or(|l| drive >= l * (1.0 - 1e-6)) && window.upper.is_none_or(|u| drive <= u * (1.0 + 1e-6));
+    let inside = window.lower.is_none_or(|l| drive >= l * (1.0 - 1e-6))
+        && window.upper.is_none_or(|u| drive <= u * (1.0 + 1e-6));
     (!inside).then(|| {
         Note::new(
             "drive_out_of_range",

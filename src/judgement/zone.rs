@@ -42,17 +42,41 @@ pub struct ReadingRecord {
 ///
 /// `u` is the standard uncertainty; without one a guarded rule cannot decide and answers
 /// `Undecided` unless the value is outside the limit itself under guarded acceptance.
-pub fn zone(value: f64, u: Option<f64>, lower: Option<f64>, upper: Option<f64>, rule: &DecisionRule) -> PartVerdict {
+pub fn zone(
+    value: f64,
+    u: Option<f64>,
+    lower: Option<f64>,
+    upper: Option<f64>,
+    rule: &DecisionRule,
+) -> PartVerdict {
     let margin = margin(value, lower, upper);
     let guard = u.map(|u| rule.coverage_factor * u);
     match (rule.kind, guard) {
         _ if margin.is_nan() => PartVerdict::Unmeasured,
-        (DecisionRuleKind::SimpleAcceptance, _) => if margin >= 0.0 { PartVerdict::Conforming } else { PartVerdict::Nonconforming },
+        (DecisionRuleKind::SimpleAcceptance, _) => {
+            if margin >= 0.0 {
+                PartVerdict::Conforming
+            } else {
+                PartVerdict::Nonconforming
+            }
+        }
         (DecisionRuleKind::GuardedAcceptance, _) if margin < 0.0 => PartVerdict::Nonconforming,
         (DecisionRuleKind::GuardedRejection, _) if margin >= 0.0 => PartVerdict::Conforming,
         (_, None) => PartVerdict::Undecided,
-        (DecisionRuleKind::GuardedAcceptance, Some(w)) => if margin >= w { PartVerdict::Conforming } else { PartVerdict::Undecided },
-        (DecisionRuleKind::GuardedRejection, Some(w)) => if margin >= -w { PartVerdict::Undecided } else { PartVerdict::Nonconforming },
+        (DecisionRuleKind::GuardedAcceptance, Some(w)) => {
+            if margin >= w {
+                PartVerdict::Conforming
+            } else {
+                PartVerdict::Undecided
+            }
+        }
+        (DecisionRuleKind::GuardedRejection, Some(w)) => {
+            if margin >= -w {
+                PartVerdict::Undecided
+            } else {
+                PartVerdict::Nonconforming
+            }
+        }
     }
 }
 
@@ -72,13 +96,22 @@ pub fn judge_reading(extremes: &Extremes, bound: &Bound, rule: &DecisionRule) ->
         return against(&extremes.lowest, bound, bound.lower, bound.upper, rule);
     }
     // A bound over a band: the lowest value meets the lower limit, the highest the upper one.
-    let low = bound.lower.map(|l| against(&extremes.lowest, bound, Some(l), None, rule));
-    let high = bound.upper.map(|u| against(&extremes.highest, bound, None, Some(u), rule));
+    let low = bound
+        .lower
+        .map(|l| against(&extremes.lowest, bound, Some(l), None, rule));
+    let high = bound
+        .upper
+        .map(|u| against(&extremes.highest, bound, None, Some(u), rule));
     let mut chosen = match (low, high) {
         (Some(low), Some(high)) => {
             let worst = PartVerdict::of_all([low.verdict, high.verdict]);
-            let nearer = low.margin.unwrap_or(f64::INFINITY) <= high.margin.unwrap_or(f64::INFINITY);
-            if low.verdict == worst && (high.verdict != worst || nearer) { low } else { high }
+            let nearer =
+                low.margin.unwrap_or(f64::INFINITY) <= high.margin.unwrap_or(f64::INFINITY);
+            if low.verdict == worst && (high.verdict != worst || nearer) {
+                low
+            } else {
+                high
+            }
         }
         (Some(one), None) | (None, Some(one)) => one,
         (None, None) => against(&extremes.highest, bound, None, None, rule),
@@ -88,7 +121,13 @@ pub fn judge_reading(extremes: &Extremes, bound: &Bound, rule: &DecisionRule) ->
     chosen
 }
 
-fn against(reading: &Reading, bound: &Bound, lower: Option<f64>, upper: Option<f64>, rule: &DecisionRule) -> ReadingRecord {
+fn against(
+    reading: &Reading,
+    bound: &Bound,
+    lower: Option<f64>,
+    upper: Option<f64>,
+    rule: &DecisionRule,
+) -> ReadingRecord {
     let mut record = ReadingRecord {
         value: None,
         standard_uncertainty: reading.standard_uncertainty,
@@ -108,7 +147,9 @@ fn against(reading: &Reading, bound: &Bound, lower: Option<f64>, upper: Option<f
             record.value = Some(value);
             record.verdict = zone(value, reading.standard_uncertainty, lower, upper, rule);
             record.margin = Some(margin(value, lower, upper)).filter(|m| m.is_finite());
-            if reading.standard_uncertainty.is_none() && rule.kind != DecisionRuleKind::SimpleAcceptance {
+            if reading.standard_uncertainty.is_none()
+                && rule.kind != DecisionRuleKind::SimpleAcceptance
+            {
                 record.warnings.push(Note::new(
                     "uncertainty_unknown",
                     "the station file states no uncertainty (magnitude, phase), so the guarded decision rule cannot decide",
@@ -143,7 +184,10 @@ mod tests {
     use crate::readings::{Characteristic, Place};
 
     fn rule(kind: DecisionRuleKind) -> DecisionRule {
-        DecisionRule { kind, coverage_factor: 2.0 }
+        DecisionRule {
+            kind,
+            coverage_factor: 2.0,
+        }
     }
 
     #[test]
@@ -164,16 +208,41 @@ mod tests {
             (11.3, [Nonconforming, Nonconforming, Nonconforming]),
         ];
         for (value, expected) in cases {
-            for (kind, verdict) in [SimpleAcceptance, GuardedAcceptance, GuardedRejection].into_iter().zip(expected) {
-                assert_eq!(zone(value, Some(0.1), Some(9.0), Some(11.0), &rule(kind)), verdict, "{value} {kind:?}");
+            for (kind, verdict) in [SimpleAcceptance, GuardedAcceptance, GuardedRejection]
+                .into_iter()
+                .zip(expected)
+            {
+                assert_eq!(
+                    zone(value, Some(0.1), Some(9.0), Some(11.0), &rule(kind)),
+                    verdict,
+                    "{value} {kind:?}"
+                );
             }
         }
     }
 
     #[test]
     fn no_uncertainty_never_conforms_under_guarded_acceptance() {
-        assert_eq!(zone(10.0, None, Some(9.0), None, &rule(DecisionRuleKind::GuardedAcceptance)), PartVerdict::Undecided);
-        assert_eq!(zone(f64::NAN, Some(0.1), Some(9.0), None, &rule(DecisionRuleKind::SimpleAcceptance)), PartVerdict::Unmeasured);
+        assert_eq!(
+            zone(
+                10.0,
+                None,
+                Some(9.0),
+                None,
+                &rule(DecisionRuleKind::GuardedAcceptance)
+            ),
+            PartVerdict::Undecided
+        );
+        assert_eq!(
+            zone(
+                f64::NAN,
+                Some(0.1),
+                Some(9.0),
+                None,
+                &rule(DecisionRuleKind::SimpleAcceptance)
+            ),
+            PartVerdict::Unmeasured
+        );
     }
 
     #[test]
@@ -187,12 +256,32 @@ mod tests {
             nominal: None,
             class: "A".into(),
         };
-        let reading = Reading { value: Value::Above(65e6), standard_uncertainty: None, frequency: None, warnings: vec![] };
-        let extremes = Extremes { lowest: reading.clone(), highest: reading };
+        let reading = Reading {
+            value: Value::Above(65e6),
+            standard_uncertainty: None,
+            frequency: None,
+            warnings: vec![],
+        };
+        let extremes = Extremes {
+            lowest: reading.clone(),
+            highest: reading,
+        };
         let simple = rule(DecisionRuleKind::SimpleAcceptance);
-        assert_eq!(judge_reading(&extremes, &bound(Some(50e6), None), &simple).verdict, PartVerdict::Conforming);
-        assert_eq!(judge_reading(&extremes, &bound(Some(80e6), None), &simple).verdict, PartVerdict::Unmeasured);
-        assert_eq!(judge_reading(&extremes, &bound(Some(50e6), Some(90e6)), &simple).verdict, PartVerdict::Unmeasured);
-        assert_eq!(judge_reading(&extremes, &bound(None, Some(60e6)), &simple).verdict, PartVerdict::Nonconforming);
+        assert_eq!(
+            judge_reading(&extremes, &bound(Some(50e6), None), &simple).verdict,
+            PartVerdict::Conforming
+        );
+        assert_eq!(
+            judge_reading(&extremes, &bound(Some(80e6), None), &simple).verdict,
+            PartVerdict::Unmeasured
+        );
+        assert_eq!(
+            judge_reading(&extremes, &bound(Some(50e6), Some(90e6)), &simple).verdict,
+            PartVerdict::Unmeasured
+        );
+        assert_eq!(
+            judge_reading(&extremes, &bound(None, Some(60e6)), &simple).verdict,
+            PartVerdict::Nonconforming
+        );
     }
 }

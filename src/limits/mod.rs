@@ -91,13 +91,22 @@ pub enum DecisionRuleKind {
 pub enum Acceptance {
     /// ISO 2859-1 single sampling: inspection level (`S-1`…`S-4`, `I`, `II`, `III`) and AQL in percent by class, in file order.
     #[allow(missing_docs)]
-    Attributes { level: String, aql: Vec<(String, f64)> },
+    Attributes {
+        level: String,
+        aql: Vec<(String, f64)>,
+    },
     /// ISO 3951-1.
     #[allow(missing_docs)]
-    Variables { level: String, aql: Vec<(String, f64)> },
+    Variables {
+        level: String,
+        aql: Vec<(String, f64)>,
+    },
     /// Sample for zero acceptance: quality limit and consumer's risk as ratios.
     #[allow(missing_docs)]
-    ZeroAcceptance { quality_limit: f64, consumers_risk: f64 },
+    ZeroAcceptance {
+        quality_limit: f64,
+        consumers_risk: f64,
+    },
     /// A fixed sample and acceptance number over all classes.
     #[allow(missing_docs)]
     Fixed { sample: u64, accept: u64 },

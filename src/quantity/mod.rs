@@ -77,7 +77,11 @@ pub fn parse(text: &str, dimension: Dimension) -> Result<f64, QuantityError> {
 /// Reads a tolerance (`±10 %`, `+80 % / -20 %`, `±0.25 pF`, an IEC 60062 letter).
 ///
 /// `nominal` in SI decides what the letters B, C, D, F, G mean for capacitance (pF below 10 pF).
-pub fn parse_tolerance(text: &str, dimension: Dimension, nominal: Option<f64>) -> Result<Tolerance, QuantityError> {
+pub fn parse_tolerance(
+    text: &str,
+    dimension: Dimension,
+    nominal: Option<f64>,
+) -> Result<Tolerance, QuantityError> {
     let _ = (text, dimension, nominal);
     unreachable_yet()
 }
@@ -101,5 +105,9 @@ pub fn frequency_key(hertz: f64) -> String {
 }
 
 fn unreachable_yet<T>() -> Result<T, QuantityError> {
-    Err(QuantityError { found: String::new(), expected: String::new(), hint: None })
+    Err(QuantityError {
+        found: String::new(),
+        expected: String::new(),
+        hint: None,
+    })
 }

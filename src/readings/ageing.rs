@@ -33,7 +33,8 @@ impl Referral {
         if !(1.0..=1e5).contains(&self.age) {
             return Err(AgeingError::AgeOutsideLaw(self.age));
         }
-        Ok((1.0 - self.per_decade * self.refer_to.log10()) / (1.0 - self.per_decade * self.age.log10()))
+        Ok((1.0 - self.per_decade * self.refer_to.log10())
+            / (1.0 - self.per_decade * self.age.log10()))
     }
 }
 
@@ -44,9 +45,14 @@ impl Referral {
 ///
 /// # Errors
 /// An age outside the law.
-pub fn refer(reading: &Reading, referral: &Referral) -> Result<(Reading, Option<f64>), AgeingError> {
+pub fn refer(
+    reading: &Reading,
+    referral: &Referral,
+) -> Result<(Reading, Option<f64>), AgeingError> {
     let factor = referral.factor()?;
-    let Value::Known(measured) = reading.value else { return Ok((reading.clone(), None)) };
+    let Value::Known(measured) = reading.value else {
+        return Ok((reading.clone(), None));
+    };
     let mut referred = reading.clone();
     referred.value = Value::Known(measured * factor);
     referred.standard_uncertainty = reading.standard_uncertainty.map(|u| {
@@ -55,7 +61,10 @@ pub fn refer(reading: &Reading, referral: &Referral) -> Result<(Reading, Option<
     });
     referred.warnings.push(Note::new(
         "referred_to_referee_time",
-        format!("referred from {:.0} h to {:.0} h after last heat: factor {:.5}", referral.age, referral.refer_to, factor),
+        format!(
+            "referred from {:.0} h to {:.0} h after last heat: factor {:.5}",
+            referral.age, referral.refer_to, factor
+        ),
     ));
     Ok((referred, Some(measured)))
 }
@@ -67,20 +76,37 @@ mod tests {
     #[test]
     fn two_decades_of_hours_as_the_law_says() {
         // Worked by hand: k = 2.5 %, 100 h to 1000 h: (1 - 0.075)/(1 - 0.05).
-        let referral = Referral { per_decade: 0.025, age: 100.0, refer_to: 1000.0 };
+        let referral = Referral {
+            per_decade: 0.025,
+            age: 100.0,
+            refer_to: 1000.0,
+        };
         assert!((referral.factor().unwrap() - 0.925 / 0.95).abs() < 1e-15);
     }
 
     #[test]
     fn at_the_referee_time_nothing_changes() {
-        let referral = Referral { per_decade: 0.07, age: 1000.0, refer_to: 1000.0 };
+        let referral = Referral {
+            per_decade: 0.07,
+            age: 1000.0,
+            refer_to: 1000.0,
+        };
         assert_eq!(referral.factor(), Ok(1.0));
     }
 
     #[test]
     fn outside_the_law_is_refused() {
         for age in [0.0, 0.99, 1.1e5, -5.0, f64::NAN] {
-            assert!(Referral { per_decade: 0.025, age, refer_to: 1000.0 }.factor().is_err(), "{age}");
+            assert!(
+                Referral {
+                    per_decade: 0.025,
+                    age,
+                    refer_to: 1000.0
+                }
+                .factor()
+                .is_err(),
+                "{age}"
+            );
         }
     }
 }

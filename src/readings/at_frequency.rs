@@ -54,7 +54,13 @@ pub(super) fn inside(sweep: &Sweep, frequency: f64) -> bool {
     frequency >= points[0] * (1.0 - EDGE) && frequency <= points[points.len() - 1] * (1.0 + EDGE)
 }
 
-fn curve(sweep: &Sweep, frequency: f64, basis: &'static [Basis], y: impl Fn(f64, Complex64) -> f64, w: impl Fn(f64, Complex64) -> f64) -> Option<(f64, f64)> {
+fn curve(
+    sweep: &Sweep,
+    frequency: f64,
+    basis: &'static [Basis],
+    y: impl Fn(f64, Complex64) -> f64,
+    w: impl Fn(f64, Complex64) -> f64,
+) -> Option<(f64, f64)> {
     let range = stretch(sweep, frequency);
     let (mut t, mut ys, mut ws) = (Vec::new(), Vec::new(), Vec::new());
     for i in range {
@@ -71,14 +77,37 @@ fn curve(sweep: &Sweep, frequency: f64, basis: &'static [Basis], y: impl Fn(f64,
 /// R and X at a frequency inside the sweep.
 pub(super) fn local(sweep: &Sweep, frequency: f64) -> Option<Local> {
     let size = |z: Complex64| z.norm().max(f64::MIN_POSITIVE);
-    let (r, sigma_r) = curve(sweep, frequency, &POLYNOMIAL, |_, z| z.re, |_, z| 1.0 / size(z))?;
-    let (wx, sigma_wx) = curve(sweep, frequency, &REACTANCE, |f, z| f * z.im, |f, z| 1.0 / (f * size(z)))?;
-    Some(Local { r, x: wx / frequency, sigma_r, sigma_x: sigma_wx / frequency })
+    let (r, sigma_r) = curve(
+        sweep,
+        frequency,
+        &POLYNOMIAL,
+        |_, z| z.re,
+        |_, z| 1.0 / size(z),
+    )?;
+    let (wx, sigma_wx) = curve(
+        sweep,
+        frequency,
+        &REACTANCE,
+        |f, z| f * z.im,
+        |f, z| 1.0 / (f * size(z)),
+    )?;
+    Some(Local {
+        r,
+        x: wx / frequency,
+        sigma_r,
+        sigma_x: sigma_wx / frequency,
+    })
 }
 
 /// |Z| and its scatter at a frequency inside the sweep.
 pub(super) fn magnitude(sweep: &Sweep, frequency: f64) -> Option<(f64, f64)> {
-    let (ln, sigma) = curve(sweep, frequency, &POLYNOMIAL, |_, z| z.norm().max(f64::MIN_POSITIVE).ln(), |_, _| 1.0)?;
+    let (ln, sigma) = curve(
+        sweep,
+        frequency,
+        &POLYNOMIAL,
+        |_, z| z.norm().max(f64::MIN_POSITIVE).ln(),
+        |_, _| 1.0,
+    )?;
     Some((ln.exp(), ln.exp() * sigma))
 }
 
@@ -97,16 +126,37 @@ pub(super) fn outside(sweep: &Sweep, frequency: f64) -> Reading {
 }
 
 /// The reading of a characteristic at a frequency.
-pub(super) fn read(sweep: &Sweep, characteristic: Characteristic, frequency: f64, equivalent: Equivalent, budget: &Budget) -> Reading {
+pub(super) fn read(
+    sweep: &Sweep,
+    characteristic: Characteristic,
+    frequency: f64,
+    equivalent: Equivalent,
+    budget: &Budget,
+) -> Reading {
     if !inside(sweep, frequency) {
         return outside(sweep, frequency);
     }
-    let unfit = || Reading::missing("too_few_points", "too few points around this frequency to read a value between them");
+    let unfit = || {
+        Reading::missing(
+            "too_few_points",
+            "too few points around this frequency to read a value between them",
+        )
+    };
     if characteristic == Characteristic::Impedance {
-        let Some((value, scatter)) = magnitude(sweep, frequency) else { return unfit() };
+        let Some((value, scatter)) = magnitude(sweep, frequency) else {
+            return unfit();
+        };
         return Reading::known(value, budget.combine(characteristic, value, 0.0, scatter));
     }
-    let Some(Local { r, x, sigma_r, sigma_x }) = local(sweep, frequency) else { return unfit() };
+    let Some(Local {
+        r,
+        x,
+        sigma_r,
+        sigma_x,
+    }) = local(sweep, frequency)
+    else {
+        return unfit();
+    };
     if characteristic == Characteristic::Esr {
         return Reading::known(r, budget.combine(characteristic, r, x, sigma_r));
     }
@@ -114,19 +164,33 @@ pub(super) fn read(sweep: &Sweep, characteristic: Characteristic, frequency: f64
         let at = crate::quantity::engineering(frequency, "Hz", 4);
         return Reading::missing(
             "not_capacitive",
-            format!("the reactance at {at} is inductive: the part has no {} there", characteristic.title()),
+            format!(
+                "the reactance at {at} is inductive: the part has no {} there",
+                characteristic.title()
+            ),
         );
     }
     let d = r / -x;
     if characteristic == Characteristic::DissipationFactor {
         // Phase errs as an angle: d(tan δ) = (1 + tan² δ) dδ.
         let scatter = (sigma_r / x).hypot(d * sigma_x / x);
-        return Reading::known(d, budget.combine_phase_only(characteristic, d, 1.0 + d * d, scatter));
+        return Reading::known(
+            d,
+            budget.combine_phase_only(characteristic, d, 1.0 + d * d, scatter),
+        );
     }
     let series = -1.0 / (TAU * frequency * x);
     let capacitance = match equivalent {
         Equivalent::Series => series,
         Equivalent::Parallel => series / (1.0 + d * d),
     };
-    Reading::known(capacitance, budget.combine(characteristic, capacitance, capacitance * d, capacitance * sigma_x / x))
+    Reading::known(
+        capacitance,
+        budget.combine(
+            characteristic,
+            capacitance,
+            capacitance * d,
+            capacitance * sigma_x / x,
+        ),
+    )
 }

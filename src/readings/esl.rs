@@ -19,7 +19,10 @@ const FAR: f64 = 40.0;
 /// ESL in H, with the band's geometric mean as its frequency.
 pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
     let Some(resonance) = srf::read(sweep, budget).known_value() else {
-        return Reading::missing("srf_outside_sweep", "no self-resonance inside the sweep: the inductance cannot be told from the capacitance");
+        return Reading::missing(
+            "srf_outside_sweep",
+            "no self-resonance inside the sweep: the inductance cannot be told from the capacitance",
+        );
     };
     let last = sweep.frequency[sweep.frequency.len() - 1];
     if last < 1.5 * resonance {
@@ -31,7 +34,11 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
             ),
         );
     }
-    let from = if last >= 6.0 * resonance { 3.0 * resonance } else { resonance };
+    let from = if last >= 6.0 * resonance {
+        3.0 * resonance
+    } else {
+        resonance
+    };
     let to = last.min(10.0 * resonance);
     let centre = (from * to).sqrt();
     let (mut t, mut y, mut w) = (Vec::new(), Vec::new(), Vec::new());
@@ -43,17 +50,29 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
         }
     }
     if t.len() < FEWEST {
-        return Reading::missing("too_few_points", "too few points above self-resonance to fit the inductance");
+        return Reading::missing(
+            "too_few_points",
+            "too few points above self-resonance to fit the inductance",
+        );
     }
     let Some(fit) = LocalFit::new(&INDUCTANCE, 2, &t, &y, &w) else {
-        return Reading::missing("too_few_points", "the points above self-resonance do not determine the inductance");
+        return Reading::missing(
+            "too_few_points",
+            "the points above self-resonance do not determine the inductance",
+        );
     };
     // The second term decays above resonance, so the constant is the curve's limit at high f.
     let inductance = fit.value(FAR);
-    let mut reading = Reading::known(inductance, budget.combine(Characteristic::Esl, inductance, 0.0, fit.sigma(FAR)));
+    let mut reading = Reading::known(
+        inductance,
+        budget.combine(Characteristic::Esl, inductance, 0.0, fit.sigma(FAR)),
+    );
     reading.frequency = Some(centre);
     if from < 3.0 * resonance {
-        reading.warnings.push(Note::new("esl_near_resonance", "the sweep ends close above self-resonance: the inductance is less certain"));
+        reading.warnings.push(Note::new(
+            "esl_near_resonance",
+            "the sweep ends close above self-resonance: the inductance is less certain",
+        ));
     }
     reading
 }

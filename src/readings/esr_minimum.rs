@@ -22,17 +22,25 @@ const GATE: f64 = 0.3;
 pub(super) fn read(sweep: &Sweep, place: Place, budget: &Budget) -> Reading {
     let (from, to) = match place {
         Place::Between(from, to) => (from, to),
-        _ => (sweep.frequency[0], sweep.frequency[sweep.frequency.len() - 1]),
+        _ => (
+            sweep.frequency[0],
+            sweep.frequency[sweep.frequency.len() - 1],
+        ),
     };
     for end in [from, to] {
         if !inside(sweep, end) {
             return outside(sweep, end);
         }
     }
-    let start = sweep.frequency.partition_point(|f| *f < from * (1.0 - 1e-5));
+    let start = sweep
+        .frequency
+        .partition_point(|f| *f < from * (1.0 - 1e-5));
     let end = sweep.frequency.partition_point(|f| *f <= to * (1.0 + 1e-5));
     if end - start < 3 {
-        return Reading::missing("too_few_points", "fewer than three points in the band: no minimum can be told");
+        return Reading::missing(
+            "too_few_points",
+            "fewer than three points in the band: no minimum can be told",
+        );
     }
     let noise = relative_noise(sweep, start, end);
     let Some(coarse) = coarse_minimum(sweep, start, end, noise) else {
@@ -71,7 +79,9 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize, noise: f64) -> Option
     for i in start..end {
         let centre = sweep.frequency[i].ln();
         let (low, high) = window(sweep, start, end, centre, SEARCH);
-        let Some(fit) = fit_resistance(sweep, low, high, centre) else { continue };
+        let Some(fit) = fit_resistance(sweep, low, high, centre) else {
+            continue;
+        };
         let r = fit.value(0.0);
         let reach = noise * sweep.impedance[i].norm() / ((high - low) as f64).sqrt();
         if r > 0.0 && reach < GATE * r && best.is_none_or(|(_, least)| r < least) {
@@ -83,8 +93,16 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize, noise: f64) -> Option
 
 fn window(sweep: &Sweep, start: usize, end: usize, centre: f64, half: f64) -> (usize, usize) {
     let middle = sweep.frequency.partition_point(|f| f.ln() < centre);
-    let low = sweep.frequency.partition_point(|f| f.ln() < centre - half).min(middle.saturating_sub(2)).max(start);
-    let high = sweep.frequency.partition_point(|f| f.ln() <= centre + half).max((middle + 3).min(end)).min(end);
+    let low = sweep
+        .frequency
+        .partition_point(|f| f.ln() < centre - half)
+        .min(middle.saturating_sub(2))
+        .max(start);
+    let high = sweep
+        .frequency
+        .partition_point(|f| f.ln() <= centre + half)
+        .max((middle + 3).min(end))
+        .min(end);
     (low, high)
 }
 
@@ -102,7 +120,10 @@ fn refine(sweep: &Sweep, start: usize, end: usize, coarse: usize, budget: &Budge
     let centre = sweep.frequency[coarse].ln();
     let (low, high) = window(sweep, start, end, centre, WINDOW);
     let Some(fit) = fit_resistance(sweep, low, high, centre) else {
-        return Reading::missing("too_few_points", "too few points around the minimum to read it");
+        return Reading::missing(
+            "too_few_points",
+            "too few points around the minimum to read it",
+        );
     };
     // The vertex: the least of 200 steps over the inner part of the window, then a golden-section
     // search between its neighbours. Outside the coarse neighbourhood a polynomial proves nothing.
@@ -110,22 +131,37 @@ fn refine(sweep: &Sweep, start: usize, end: usize, coarse: usize, budget: &Budge
     let first = (sweep.frequency[low].ln() - centre).max(-reach);
     let last = (sweep.frequency[high - 1].ln() - centre).min(reach);
     let step = (last - first) / 200.0;
-    let least = (0..=200).min_by(|i, j| fit.value(first + f64::from(*i) * step).total_cmp(&fit.value(first + f64::from(*j) * step))).unwrap_or(0);
+    let least = (0..=200)
+        .min_by(|i, j| {
+            fit.value(first + f64::from(*i) * step)
+                .total_cmp(&fit.value(first + f64::from(*j) * step))
+        })
+        .unwrap_or(0);
     let mut a = (first + (f64::from(least) - 1.0) * step).max(first);
     let mut b = (first + (f64::from(least) + 1.0) * step).min(last);
     let golden = 0.618_033_988_749_895;
     for _ in 0..40 {
         let (c, d) = (b - golden * (b - a), a + golden * (b - a));
-        if fit.value(c) < fit.value(d) { b = d } else { a = c }
+        if fit.value(c) < fit.value(d) {
+            b = d
+        } else {
+            a = c
+        }
     }
     let t = 0.5 * (a + b);
     let value = fit.value(t);
     if !value.is_finite() || value <= 0.0 {
-        return Reading::missing("esr_hidden_by_noise", "the resistance at its minimum is not above the noise of the sweep");
+        return Reading::missing(
+            "esr_hidden_by_noise",
+            "the resistance at its minimum is not above the noise of the sweep",
+        );
     }
     let frequency = (centre + t).exp();
     let x = reactance(sweep, frequency);
-    let mut reading = Reading::known(value, budget.combine(Characteristic::EsrMinimum, value, x, fit.sigma(t)));
+    let mut reading = Reading::known(
+        value,
+        budget.combine(Characteristic::EsrMinimum, value, x, fit.sigma(t)),
+    );
     reading.frequency = Some(frequency);
     if least == 0 && low == start || least == 200 && high == end {
         reading.warnings.push(Note::new(
@@ -138,7 +174,10 @@ fn refine(sweep: &Sweep, start: usize, end: usize, coarse: usize, budget: &Budge
 
 /// X in Ω at a frequency, linear between points: it serves the uncertainty alone.
 fn reactance(sweep: &Sweep, frequency: f64) -> f64 {
-    let i = sweep.frequency.partition_point(|f| *f < frequency).clamp(1, sweep.frequency.len() - 1);
+    let i = sweep
+        .frequency
+        .partition_point(|f| *f < frequency)
+        .clamp(1, sweep.frequency.len() - 1);
     let (f0, f1) = (sweep.frequency[i - 1], sweep.frequency[i]);
     let share = (frequency - f0) / (f1 - f0);
     sweep.impedance[i - 1].im + share * (sweep.impedance[i].im - sweep.impedance[i - 1].im)

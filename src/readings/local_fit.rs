@@ -10,13 +10,21 @@
 pub(super) type Basis = fn(f64) -> f64;
 
 /// Polynomials in `t`.
-pub(super) const POLYNOMIAL: [Basis; 5] = [|_| 1.0, |t| t, |t| t * t, |t| t * t * t, |t| t * t * t * t];
+pub(super) const POLYNOMIAL: [Basis; 5] =
+    [|_| 1.0, |t| t, |t| t * t, |t| t * t * t, |t| t * t * t * t];
 
 /// For `ωX` below and around resonance: `−1/C` with dispersion (constant and `t`), `ω²L`, rest.
-pub(super) const REACTANCE: [Basis; 5] = [|_| 1.0, |t| t, |t| (2.0 * t).exp() - 1.0, |t| t * t, |t| t * t * t];
+pub(super) const REACTANCE: [Basis; 5] = [
+    |_| 1.0,
+    |t| t,
+    |t| (2.0 * t).exp() - 1.0,
+    |t| t * t,
+    |t| t * t * t,
+];
 
 /// For `X` around resonance: `ωL`, `1/(ωC)`, then smooth remainders.
-pub(super) const RESONANCE: [Basis; 5] = [|t| t.exp(), |t| (-t).exp(), |_| 1.0, |t| t, |t| t * t * t];
+pub(super) const RESONANCE: [Basis; 5] =
+    [|t| t.exp(), |t| (-t).exp(), |_| 1.0, |t| t, |t| t * t * t];
 
 /// Information needed for one more parameter: about the 1 % point of the F test in large samples.
 const PENALTY: f64 = 7.0;
@@ -37,7 +45,13 @@ impl LocalFit {
     ///
     /// At least `least` basis functions are used. `None` where there are fewer points than that,
     /// or where the data do not determine them.
-    pub(super) fn new(basis: &'static [Basis], least: usize, t: &[f64], y: &[f64], w: &[f64]) -> Option<LocalFit> {
+    pub(super) fn new(
+        basis: &'static [Basis],
+        least: usize,
+        t: &[f64],
+        y: &[f64],
+        w: &[f64],
+    ) -> Option<LocalFit> {
         let n = t.len();
         let most = basis.len().min(n.saturating_sub(2).max(least)).min(n);
         if n < least || n == 0 {
@@ -85,7 +99,8 @@ impl LocalFit {
             }
             let rss: f64 = residual.iter().map(|v| v * v).sum::<f64>();
             let freedom = n.saturating_sub(parameters + 1).max(1) as f64;
-            let criterion = n as f64 * rss.max(floor).ln() + PENALTY * parameters as f64 * (n as f64 / freedom);
+            let criterion =
+                n as f64 * rss.max(floor).ln() + PENALTY * parameters as f64 * (n as f64 / freedom);
             if best.is_none_or(|(_, least_criterion, _)| criterion < least_criterion) {
                 best = Some((parameters, criterion, rss));
             }
@@ -94,17 +109,32 @@ impl LocalFit {
         triangle.truncate(parameters);
         let mut coefficients = vec![0.0; parameters];
         for k in (0..parameters).rev() {
-            let known: f64 = (k + 1..parameters).map(|j| triangle[j][k] * coefficients[j]).sum();
+            let known: f64 = (k + 1..parameters)
+                .map(|j| triangle[j][k] * coefficients[j])
+                .sum();
             coefficients[k] = (projections[k] - known) / triangle[k][k];
         }
         let freedom = n.saturating_sub(parameters);
-        let variance = if freedom > 0 { rss / freedom as f64 } else { 0.0 };
-        Some(LocalFit { basis, coefficients, triangle, variance })
+        let variance = if freedom > 0 {
+            rss / freedom as f64
+        } else {
+            0.0
+        };
+        Some(LocalFit {
+            basis,
+            coefficients,
+            triangle,
+            variance,
+        })
     }
 
     /// The curve at `t`.
     pub(super) fn value(&self, t: f64) -> f64 {
-        self.coefficients.iter().zip(self.basis).map(|(c, b)| c * b(t)).sum()
+        self.coefficients
+            .iter()
+            .zip(self.basis)
+            .map(|(c, b)| c * b(t))
+            .sum()
     }
 
     /// Standard uncertainty of the curve at `t` from the scatter of the points about it.
@@ -130,7 +160,9 @@ mod tests {
         let fit = LocalFit::new(&POLYNOMIAL, 1, &t, &y, &w).unwrap();
         assert!((fit.value(0.07) - (3.0 - 0.14 + 0.5 * 0.0049)).abs() < 1e-12);
         // A level with alternating noise stays a level: one parameter, not five.
-        let noisy: Vec<f64> = (0..21).map(|i| 1.0 + if i % 2 == 0 { 1e-2 } else { -1e-2 }).collect();
+        let noisy: Vec<f64> = (0..21)
+            .map(|i| 1.0 + if i % 2 == 0 { 1e-2 } else { -1e-2 })
+            .collect();
         let fit = LocalFit::new(&POLYNOMIAL, 1, &t, &noisy, &w).unwrap();
         assert_eq!(fit.coefficients.len(), 1);
         assert!((fit.sigma(0.0) - 1e-2 / 21f64.sqrt()).abs() < 2e-4);

@@ -26,7 +26,10 @@ use crate::sweep::Sweep;
 /// A value that the sweep does not hold is `Value::Missing` with a warning that says why; nothing
 /// is extrapolated.
 pub fn read(sweep: &Sweep, request: &Request, budget: &Budget) -> Extremes {
-    let single = |reading: Reading| Extremes { lowest: reading.clone(), highest: reading };
+    let single = |reading: Reading| Extremes {
+        lowest: reading.clone(),
+        highest: reading,
+    };
     match (request.characteristic, request.place) {
         (Characteristic::Esr | Characteristic::Impedance, Place::Between(from, to)) => {
             band::read(sweep, request.characteristic, from, to, budget)
@@ -34,12 +37,19 @@ pub fn read(sweep: &Sweep, request: &Request, budget: &Budget) -> Extremes {
         (Characteristic::EsrMinimum, place) => single(esr_minimum::read(sweep, place, budget)),
         (Characteristic::Srf, _) => single(srf::read(sweep, budget)),
         (Characteristic::Esl, _) => single(esl::read(sweep, budget)),
-        (characteristic, Place::At(frequency)) => {
-            single(at_frequency::read(sweep, characteristic, frequency, request.equivalent, budget))
-        }
+        (characteristic, Place::At(frequency)) => single(at_frequency::read(
+            sweep,
+            characteristic,
+            frequency,
+            request.equivalent,
+            budget,
+        )),
         (characteristic, _) => single(Reading::missing(
             "frequency_missing",
-            format!("{} is read at a frequency, and none was asked for", characteristic.name()),
+            format!(
+                "{} is read at a frequency, and none was asked for",
+                characteristic.name()
+            ),
         )),
     }
 }

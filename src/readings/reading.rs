@@ -51,7 +51,12 @@ pub struct Extremes {
 impl Reading {
     /// A reading that could not be had, and why.
     pub fn missing(code: &str, text: impl Into<String>) -> Reading {
-        Reading { value: Value::Missing, standard_uncertainty: None, frequency: None, warnings: vec![Note::new(code, text)] }
+        Reading {
+            value: Value::Missing,
+            standard_uncertainty: None,
+            frequency: None,
+            warnings: vec![Note::new(code, text)],
+        }
     }
 
     /// A known value; one that is not finite is missing.

@@ -50,7 +50,11 @@ fn crossings(sweep: &Sweep) -> Vec<Crossing> {
         }
         let (before, after) = (changes[i].1, changes[j].2);
         if before != after {
-            found.push(Crossing { first: changes[i].0, last: changes[j].0, rises: after });
+            found.push(Crossing {
+                first: changes[i].0,
+                last: changes[j].0,
+                rises: after,
+            });
         }
         i = j + 1;
     }
@@ -69,20 +73,45 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
     };
     let crossing = found[at];
     let centre = 0.5 * (crossing.first + crossing.last);
-    let lower = if at > 0 { 0.5 * (found[at - 1].last + crossing.first) } else { f64::NEG_INFINITY };
-    let upper = found.get(at + 1).map_or(f64::INFINITY, |next| 0.5 * (crossing.last + next.first));
+    let lower = if at > 0 {
+        0.5 * (found[at - 1].last + crossing.first)
+    } else {
+        f64::NEG_INFINITY
+    };
+    let upper = found
+        .get(at + 1)
+        .map_or(f64::INFINITY, |next| 0.5 * (crossing.last + next.first));
     let half = WINDOW.max(crossing.last - centre + 0.05);
-    let Some((root, sigma, slope, resistance)) = refine(sweep, centre, (centre - half).max(lower), (centre + half).min(upper)) else {
-        return Reading::missing("srf_not_resolved", "the reactance changes sign, but its course there gives no definite crossing; measure again");
+    let Some((root, sigma, slope, resistance)) = refine(
+        sweep,
+        centre,
+        (centre - half).max(lower),
+        (centre + half).min(upper),
+    ) else {
+        return Reading::missing(
+            "srf_not_resolved",
+            "the reactance changes sign, but its course there gives no definite crossing; measure again",
+        );
     };
     let value = root.exp();
     // A phase error φ shifts X by R φ, and with it the crossing by R φ / (dX/d ln f).
     let per_radian = value * resistance / slope;
-    let mut reading = Reading::known(value, budget.combine_phase_only(Characteristic::Srf, value, per_radian, value * sigma / slope));
+    let mut reading = Reading::known(
+        value,
+        budget.combine_phase_only(
+            Characteristic::Srf,
+            value,
+            per_radian,
+            value * sigma / slope,
+        ),
+    );
     reading.frequency = Some(value);
     let position = sweep.frequency.partition_point(|f| f.ln() < centre);
     if position < 3 || position + 3 > n {
-        reading.warnings.push(Note::new("srf_at_sweep_edge", "the self-resonance lies within three points of the sweep's end"));
+        reading.warnings.push(Note::new(
+            "srf_at_sweep_edge",
+            "the self-resonance lies within three points of the sweep's end",
+        ));
     }
     if found.iter().filter(|c| c.rises).count() > 1 {
         reading.warnings.push(Note::new(
@@ -105,13 +134,28 @@ fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
     };
     if found.is_empty() && capacitive == n {
         let last = sweep.frequency[n - 1];
-        return bound(Value::Above(last), format!("no self-resonance up to the sweep's end: it lies above {}", hz(last)));
+        return bound(
+            Value::Above(last),
+            format!(
+                "no self-resonance up to the sweep's end: it lies above {}",
+                hz(last)
+            ),
+        );
     }
     if found.is_empty() && capacitive == 0 {
         let first = sweep.frequency[0];
-        return bound(Value::Below(first), format!("inductive from the sweep's start: the self-resonance lies below {}", hz(first)));
+        return bound(
+            Value::Below(first),
+            format!(
+                "inductive from the sweep's start: the self-resonance lies below {}",
+                hz(first)
+            ),
+        );
     }
-    Reading::missing("srf_not_resolved", "the reactance changes sign without a definite crossing from capacitive to inductive")
+    Reading::missing(
+        "srf_not_resolved",
+        "the reactance changes sign without a definite crossing from capacitive to inductive",
+    )
 }
 
 /// Root (as ln f) of the fitted reactance, the fit's scatter in Ω there, the slope dX/d ln f in Ω,
@@ -146,5 +190,12 @@ fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<(f64, f64, 
         let distance = |k: usize| (sweep.frequency[k].ln() - centre - root).abs();
         distance(*i).total_cmp(&distance(*j))
     })?;
-    (slope.is_finite() && slope > 0.0).then(|| (centre + root, fit.sigma(root), slope, sweep.impedance[nearest].re))
+    (slope.is_finite() && slope > 0.0).then(|| {
+        (
+            centre + root,
+            fit.sigma(root),
+            slope,
+            sweep.impedance[nearest].re,
+        )
+    })
 }

@@ -27,23 +27,46 @@ impl Budget {
             (None, None) => None,
             (magnitude, _) => Some(magnitude.unwrap_or(0.0).hypot(reference)),
         };
-        Budget { magnitude, phase: stated.phase.unwrap_or(0.0), repeatability: stated.repeatability.clone() }
+        Budget {
+            magnitude,
+            phase: stated.phase.unwrap_or(0.0),
+            repeatability: stated.repeatability.clone(),
+        }
     }
 
     /// Of a value whose relative sensitivity to |Z| is 1 and whose absolute sensitivity to the
     /// phase is `per_radian`; `scatter` is the standard uncertainty from the local fit.
-    pub(super) fn combine(&self, characteristic: Characteristic, value: f64, per_radian: f64, scatter: f64) -> Option<f64> {
+    pub(super) fn combine(
+        &self,
+        characteristic: Characteristic,
+        value: f64,
+        per_radian: f64,
+        scatter: f64,
+    ) -> Option<f64> {
         let instrument = self.magnitude? * value;
         self.rest(characteristic, value, instrument, per_radian, scatter)
     }
 
     /// The same for a value that does not depend on |Z| (a frequency, a ratio of R to X).
-    pub(super) fn combine_phase_only(&self, characteristic: Characteristic, value: f64, per_radian: f64, scatter: f64) -> Option<f64> {
+    pub(super) fn combine_phase_only(
+        &self,
+        characteristic: Characteristic,
+        value: f64,
+        per_radian: f64,
+        scatter: f64,
+    ) -> Option<f64> {
         self.magnitude?;
         self.rest(characteristic, value, 0.0, per_radian, scatter)
     }
 
-    fn rest(&self, characteristic: Characteristic, value: f64, instrument: f64, per_radian: f64, scatter: f64) -> Option<f64> {
+    fn rest(
+        &self,
+        characteristic: Characteristic,
+        value: f64,
+        instrument: f64,
+        per_radian: f64,
+        scatter: f64,
+    ) -> Option<f64> {
         let repeatability = self
             .repeatability
             .iter()
