@@ -253,7 +253,10 @@ proptest! {
 
     #[test]
     fn any_text_is_read_or_refused(text in any::<String>()) {
-        let _ = label::read(&text).map(|l| (l.quantity(), l.part(), l.date_code()));
+        if let Ok(label) = label::read(&text) {
+            prop_assert!(!label.fields.is_empty());
+            let _ = (label.quantity(), label.part(), label.date_code());
+        }
     }
 
     #[test]

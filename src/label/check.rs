@@ -73,7 +73,7 @@ fn check_quantity(id: &str, value: &str, confirm: &mut Vec<Note>) {
 
 fn check_date(id: &str, value: &str, notes: &mut Vec<Note>, confirm: &mut Vec<Note>) {
     match date_code::dates(id, value) {
-        Dates::None | Dates::One(_) => {}
+        Dates::None | Dates::Clear => {}
         Dates::OnlyReading => notes.push(Note::new(
             "date_ambiguous",
             format!("{id} {value} fits two layouts, but is a date in one of them only"),

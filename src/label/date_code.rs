@@ -17,7 +17,7 @@ pub(super) enum Dates {
     /// Not a date field, or one of an agreed structure that is not known here.
     None,
     /// One reading.
-    One(Week),
+    Clear,
     /// One reading is a date, another layout of that length is not.
     OnlyReading,
     Ambiguous,
@@ -35,7 +35,7 @@ pub fn weeks(text: &str) -> Vec<Week> {
 
 /// Reads the field of a date identifier.
 pub(super) fn dates(identifier: &str, value: &str) -> Dates {
-    let one = |week: Option<Week>| week.map_or(Dates::Invalid, Dates::One);
+    let one = |week: Option<Week>| week.map_or(Dates::Invalid, |_| Dates::Clear);
     match identifier {
         "9D" => agreed(value),
         "10D" => one(year_week(value, 2)),
@@ -51,7 +51,7 @@ fn agreed(value: &str) -> Dates {
     match (found.as_slice(), layouts) {
         (_, 0) => Dates::None,
         ([], _) => Dates::Invalid,
-        ([one], 1) => Dates::One(*one),
+        ([_], 1) => Dates::Clear,
         ([_], _) => Dates::OnlyReading,
         _ => Dates::Ambiguous,
     }

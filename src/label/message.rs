@@ -158,6 +158,11 @@ impl Message<'_> {
 }
 
 fn not_format_06(others: &[String]) -> LabelError {
+    let numbered =
+        |format: &String| format.len() == 2 && format.bytes().all(|b| b.is_ascii_digit());
+    if !others.iter().all(numbered) {
+        return LabelError::refused("separators_missing", MISSING);
+    }
     LabelError::refused(
         "format_not_06",
         format!(
