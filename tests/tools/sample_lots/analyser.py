@@ -4,6 +4,7 @@ import warnings
 
 import skrf
 from skrf.media import DefinedGammaZ0
+from skrf.network import connect, innerconnect
 
 warnings.filterwarnings("ignore", module="skrf")
 
@@ -16,13 +17,23 @@ def _element(medium, kind, value):
     return {"R": medium.resistor, "L": medium.inductor, "C": medium.capacitor}[kind](value)
 
 
+def _side_by_side(medium, first, second):
+    """Two two-ports in parallel, between a splitter at either end."""
+    fork = medium.tee()
+    # A two-port put on a port of the splitter keeps that port's place: (in, first, second).
+    half = connect(connect(fork, 1, first, 0), 2, second, 0)
+    # (in, second, free, out) once the first branch has reached the other splitter.
+    return innerconnect(connect(half, 1, fork, 0), 1, 2)
+
+
 def _cascade(medium, network):
-    """Two-port of the network as a series arm; parallel groups of series branches only at its end."""
+    """Two-port of the network as a series arm; a parallel group within it has two members."""
     kind, content = network
     if kind in "RLC":
         return _element(medium, kind, content)
-    if kind != "s":
-        raise ValueError("a parallel group has no place within a series arm here")
+    if kind == "p":
+        first, second = (_cascade(medium, child) for child in content)
+        return _side_by_side(medium, first, second)
     result = medium.thru()
     for child in content:
         result = result ** _cascade(medium, child)

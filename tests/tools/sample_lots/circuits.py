@@ -99,11 +99,6 @@ def ceramic_class2(farad, share, ohm, henry):
     )
 
 
-def ceramic_class2_plain(farad, share, ohm, henry):
-    """The same without skin effect: a cascade that a network library builds from its own elements."""
-    return series(resistor(ohm), inductor(henry), _dispersive(farad, share, 31.6, 8, 6.0))
-
-
 def series_rlc(farad, ohm, henry):
     """Multilayer ceramic of class 1: losses so low that three elements describe it."""
     return series(resistor(ohm), inductor(henry), capacitor(farad))

@@ -28,7 +28,8 @@ class Family:
         ohm = spread.r
 
         def at_scale(scale):
-            return self.build(scale, ohm, spread.l, spread.d)
+            network = self.build(scale, ohm, spread.l, spread.d)
+            return network if spread.leak is None else circuits.parallel(network, circuits.resistor(spread.leak))
 
         for _ in range(1 if spread.esr is None else 4):
             scale = truth.scale_for(
@@ -62,7 +63,7 @@ FAMILIES = {
         ageing=(0.025, 1000),
     ),
     "RG-0226-X5R": Family(
-        22e-6, lambda c, r, l, d: circuits.ceramic_class2_plain(22e-6 * c, 0.05 * d, 2.6e-3 * r, 0.9e-9 * l),
+        22e-6, lambda c, r, l, d: circuits.ceramic_class2(22e-6 * c, 0.05 * d, 2.6e-3 * r, 0.9e-9 * l),
         (("capacitance", (1e3,)), ("esr_minimum", ()), ("srf", ()), ("impedance", (5e6,))),
     ),
     "RG-0102-C0G": Family(

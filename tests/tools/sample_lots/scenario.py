@@ -83,8 +83,8 @@ def _dried_out(rng):
 LOTS = [
     Lot(
         "26K-0457", "RG-0475-X7R", "SUP-041", 3000, "BENCH-1", "2026-10-05T09:12:00+02:00",
-        lambda rng: _changed(spread.lot(rng, 125, (-0.015, 0.012)), {88: {"d": 2.25, "c": -0.02}}),
-        "A good reel: 125 parts, one of them with too high a dissipation factor, which the plan allows.",
+        lambda rng: _changed(spread.lot(rng, 125, (-0.015, 0.012)), {88: {"leak": 1100.0}}),
+        "A good reel: 125 parts, one of them cracked and leaking (its dissipation factor is too high), which the plan allows.",
         "accept", ["accepted_by_plan"], {"A": (125, 2, 3, 0, 0), "B": (125, 5, 6, 1, 0)}, 125,
         drive="0.98 Vrms", last_heat="2026-07-01",
         form=Form(preamble=("Sweep export;BENCH-1;FA-0101", "Lot;26K-0457", "Level;0.98 Vrms", "")),

@@ -12,13 +12,14 @@ from scipy.stats import norm
 
 @dataclass
 class Spread:
-    """One part against its family: capacitance deviation, scales of R, L and losses, a wanted ESR in ohm."""
+    """One part against its family: capacitance deviation, scales of R, L and losses, a wanted ESR and a leak in ohm."""
 
     c: float = 0.0
     r: float = 1.0
     l: float = 1.0
     d: float = 1.0
     esr: float | None = None
+    leak: float | None = None
 
 
 def quantiles(rng, n, mean, deviation):
