@@ -41,6 +41,8 @@ def differences(folder, found, expected):
     faults = {p: j["fault"] for p, j in found["parts"].items() if j["fault"]}
     compare("unmeasured", faults, expected["unmeasured"])
     compare("outliers", found["outliers"], expected["outliers"])
+    compare("duplicates", found["duplicates"], expected["duplicates"])
+    compare("retested", found["retested"], expected["retested"])
     return result
 
 

@@ -23,11 +23,11 @@ SEED = 20261005
 # Low and high end in Hz and points a decade of each bench's sweep.
 GRIDS = {
     "BENCH-1": (1e3, 40e6, 40), "BENCH-3": (1e3, 100e6, 40), "LCR-1": (20.0, 2e6, 30), "LCR-2": (20.0, 200e3, 30),
-    "LCR-3": (100.0, 1e6, 30), "VNA-1": (1e3, 30e6, 30), "VNA-2": (100e3, 500e6, 30), "VNA-3": (100e3, 100e6, 30),
+    "LCR-3": (100.0, 1e6, 30), "LCR-4": (0.1e6, 100e6, 40), "VNA-1": (1e3, 30e6, 30), "VNA-2": (100e3, 500e6, 30), "VNA-3": (100e3, 100e6, 30),
 }
 # Standard deviations of a single point: of ln|Z|, of the phase in degrees.
 NOISE = {
-    "BENCH-1": (1.0e-3, 0.03), "LCR-1": (1.0e-3, 0.03), "LCR-2": (2.0e-3, 0.05), "LCR-3": (4e-4, 0.015),
+    "BENCH-1": (1.0e-3, 0.03), "LCR-1": (1.0e-3, 0.03), "LCR-2": (2.0e-3, 0.05), "LCR-3": (4e-4, 0.015), "LCR-4": (3e-4, 0.01),
 }
 
 
@@ -63,6 +63,7 @@ HEADINGS = {
     "LCR-1": ["f[Hz]", "R[ohm]", "X[ohm]"],
     "LCR-2": ["Frequenz (Hz)", "Cs (µF)", "Rs (Ohm)"],
     "LCR-3": ["Freq (Hz)", "C (nF)", "tan δ"],
+    "LCR-4": ["Frequency (MHz)", "Impedance (Ohm)", "Theta (deg)"],
 }
 
 
@@ -102,6 +103,8 @@ def measured_rows(rng, lot, network, kind):
     x = 2 * math.pi * f * z.imag
     if lot.station == "BENCH-1":
         return texts(f, abs(z) * 1e3, np.degrees(np.angle(z))), ends
+    if lot.station == "LCR-4":
+        return texts(f / 1e6, abs(z), np.degrees(np.angle(z))), ends
     if lot.station == "LCR-1":
         return texts(f, z.real, z.imag), ends
     if lot.station == "LCR-2":
@@ -187,6 +190,7 @@ def expected(lot, presented):
         "undecided": lot.undecided,
         "unmeasured": unmeasured,
         "outliers": lot.outliers,
+        "duplicates": lot.duplicates,
         "retested": sorted(k.split("~")[0] for k in lot.retests),
         "tolerance": TOLERANCE[lot.station],
     }
@@ -201,6 +205,7 @@ TOLERANCE = {
     "LCR-1": {"capacitance": 3e-3, "esr": 5e-3, "dissipation_factor": 0.08},
     "LCR-2": {"capacitance": 6e-3, "esr": 8e-3, "dissipation_factor": 0.04},
     "LCR-3": {"capacitance": 1.5e-3, "dissipation_factor": 0.12},
+    "LCR-4": {"capacitance": 1e-3, "impedance": 3e-3},
     "VNA-1": {"capacitance": 2e-4, "esr_minimum": 0.01, "srf": 1e-3, "impedance": 2e-3},
     "VNA-2": {"capacitance": 2e-4, "esr": 0.01, "srf": 1e-3, "dissipation_factor": 0.01},
     "VNA-3": {"capacitance": 2e-4, "impedance": 2e-3},
@@ -246,6 +251,9 @@ def make(lot, index, root):
             measured[stem] = {key: values[key]}
             values[key] *= factor
         parts[stem] = values
+    for copy, original in lot.duplicates.items():
+        shutil.copyfile(folder / lot.sweeps / f"{original}.csv", folder / lot.sweeps / f"{copy}.csv")
+        parts[copy], measured[copy] = parts[original], measured[original]
     if lot.long_table:
         forms.table(folder / lot.sweeps, ["part", *HEADINGS[lot.station]], table, lot.form)
     (folder / "lot.yaml").write_text(lot_yaml(lot), encoding="utf-8")

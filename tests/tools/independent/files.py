@@ -132,6 +132,17 @@ def sweeps(folder, lot, station):
     return sorted(result, key=lambda r: (r[0], r[1]))
 
 
+def duplicates(source):
+    """Part to the earlier part whose file has the same bytes."""
+    result, seen = {}, {}
+    for path in sorted(source.iterdir()) if source.is_dir() else []:
+        content = path.read_bytes()
+        if content in seen:
+            result[path.stem] = seen[content]
+        seen.setdefault(content, path.stem)
+    return result
+
+
 def from_csv(path, station):
     layout = station["layout"]["columns"]
     rows, delimiter = table(path, list(layout.values()))

@@ -55,6 +55,7 @@ class Site:
         self.station = files.load(stations / f"{self.lot['station']}.yaml")
         self.bounds = files.bounds_of(self.limits)
         self.tries = files.sweeps(folder, self.lot, self.station)
+        self.duplicates = files.duplicates(folder / self.lot["sweeps"])
         self.standards = self._standards(stations)
         self.age = age_hours(self.lot)
 
@@ -172,8 +173,11 @@ def capability(values, low, high, index):
 
 
 def label_fields(label):
+    """Data identifiers to values (ISO/IEC 15434); None where the fields cannot be told apart."""
     for word, code in (("<GS>", "\x1d"), ("<RS>", "\x1e"), ("<EOT>", "\x04")):
         label = label.replace(word, code)
+    if "\x1d" not in label:
+        return None
     fields = {}
     for text in re.split("[\x1d\x1e\x04]", label)[2:]:
         if text:
@@ -202,7 +206,9 @@ def conditions(site, counted):
     if measured > naive(station["jig"]["checked"]) + datetime.timedelta(hours=hours):
         found.append("jig_check_expired")
     fields = label_fields(lot["label"])
-    if (fields["P"], fields["Q"], fields["1T"]) != (lot["part"], str(lot["quantity"]), lot["lot"]):
+    if fields is None:
+        found.append("label_unreadable")
+    elif (fields["P"], fields["Q"], fields["1T"]) != (lot["part"], str(lot["quantity"]), lot["lot"]):
         found.append("label_mismatch")
     if "ageing" in demanded and site.age is None:
         found.append("ageing_unknown")
@@ -274,6 +280,8 @@ def judge(root, folder):
     reasons = conditions(site, counted)
     more, outliers = statistics_reasons(site, counted)
     reasons += more
+    if site.duplicates:
+        reasons.append("duplicate_sweep")
     if refused:
         reasons.append("retest_not_allowed")
     if any(p["verdict"] == "unmeasured" for p in counted.values()):
@@ -291,5 +299,6 @@ def judge(root, folder):
     return {
         "verdict": verdict, "reasons": reasons or ["accepted_by_plan"],
         "sampling": {"required": required, "presented": len(counted), "classes": counts},
-        "parts": counted, "outliers": outliers,
+        "parts": counted, "outliers": outliers, "duplicates": site.duplicates,
+        "retested": sorted({part for part, attempt, _ in site.tries if attempt > 1}),
     }

@@ -219,4 +219,19 @@ LOTS = [
         retests={"004~2": spread.Spread(c=0.01)},
         nonconforming={"004": ["srf", "impedance@5MHz"]},
     ),
+    Lot(
+        "26K-0526", "RG-0103-C0G", "SUP-046", 500, "LCR-4", "2026-10-09T08:20:00+02:00",
+        lambda rng: spread.lot(rng, 13, (-0.002, 0.003)),
+        "The instrument's calibration ran out nine days before, and the scanner dropped the label's separators.",
+        "hold", ["calibration_expired", "label_unreadable"], {"all": (13, 0, 1, 0, 0)}, 13,
+        order="PO-88144", operator="OP-21", form=Form(newline="\r\n"),
+        label="[)>06PRG-0103-C0GQ5001T26K-052610D2638",
+    ),
+    Lot(
+        "26K-0529", "RG-0104-X7R", "SUP-041", 40, "BENCH-3", "2026-10-06T15:45:00+02:00", _x7r(20, (0.005, 0.015)),
+        "Part 011 is part 010 stored a second time, byte for byte.",
+        "hold", ["duplicate_sweep"], {"A": (20, 0, 1, 0, 0), "B": (8, 0, 1, 0, 0)}, 20,
+        drive="1.0 Vrms", last_heat="2026-08-01", order="PO-88119", duplicates={"011": "010"},
+        also_possible=["unmeasured_parts", "sample_too_small"],
+    ),
 ]
