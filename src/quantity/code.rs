@@ -100,8 +100,20 @@ fn before(characters: &[char], at: usize) -> Option<char> {
     at.checked_sub(1).and_then(|i| characters.get(i)).copied()
 }
 
+/// Whether nothing before `at` belongs to what begins there: no letter or digit, no decimal mark.
 fn starts_word(characters: &[char], at: usize) -> bool {
-    !before(characters, at).is_some_and(|c| c.is_alphanumeric() || c == '.' || c == ',')
+    match before(characters, at) {
+        Some('.' | ',') => !before(characters, at - 1).is_some_and(|c| c.is_ascii_digit()),
+        Some(other) => !other.is_alphanumeric(),
+        None => true,
+    }
+}
+
+/// Whether a code without decimals ends at `at`: `47n`, `47nF`, or with its tolerance letter `47nK`.
+fn ends_word(characters: &[char], at: usize) -> bool {
+    let is_word = |at: usize| characters.get(at).is_some_and(|c| c.is_alphanumeric());
+    let letter = characters.get(at).is_some_and(|c| c.is_ascii_uppercase());
+    !is_word(at) || letter && !is_word(at + 1)
 }
 
 /// Whether a run of digits can be a code: not part of a decimal number, and without a unit.
@@ -204,7 +216,6 @@ fn point_letter(characters: &[char], at: usize, run: usize) -> Vec<f64> {
         return Vec::new();
     };
     let decimals = digits_at(characters, at + run + 1);
-    let next = characters.get(at + run + 1 + decimals).copied();
     let whole: String = characters.iter().skip(at).take(run).collect();
     let fraction: String = characters
         .iter()
@@ -221,11 +232,7 @@ fn point_letter(characters: &[char], at: usize, run: usize) -> Vec<f64> {
         _ => return Vec::new(),
     };
     let ends = match decimals {
-        0 => {
-            run > 0
-                && letter.is_lowercase()
-                && !next.is_some_and(|c| c.is_alphanumeric() && c != 'F')
-        }
+        0 => run > 0 && letter.is_lowercase() && ends_word(characters, at + run + 1),
         1 | 2 => true,
         _ => false,
     };
@@ -243,8 +250,9 @@ fn written_length(characters: &[char], at: usize) -> usize {
     let number = rest()
         .take_while(|c| c.is_ascii_digit() || matches!(c, '.' | ','))
         .count();
-    let first_is_letter = rest().next().is_some_and(|c| c.is_alphabetic());
-    if number == 0 && !first_is_letter {
+    let first = rest().next().copied();
+    let point_first = first == Some('.') && digits_at(characters, at + 1) > 0;
+    if !first.is_some_and(char::is_alphanumeric) && !point_first {
         return 0;
     }
     let space = usize::from(number > 0 && rest().nth(number) == Some(&' '));

@@ -13,6 +13,10 @@ pub const NO_VALUE: &str = "–";
 /// Significant digits at which [`shortest`] stops, so that 4.7 × 0.9 does not end in …999996.
 const SHORTEST_DIGITS: usize = 12;
 
+/// Beyond these a value and its uncertainty are not written out in one prefix.
+const MOST_DECIMALS: i32 = 20;
+const LARGEST_PLAIN: f64 = 1e15;
+
 const PREFIXES: [(i32, &str); 10] = [
     (-15, "f"),
     (-12, "p"),
@@ -39,7 +43,7 @@ pub fn engineering(value: f64, unit: &str, digits: usize) -> String {
     if !value.is_finite() {
         return NO_VALUE.to_string();
     }
-    let (factor, name) = foreign(value, unit).unwrap_or((1.0, unit));
+    let (factor, name) = foreign(value, unit).unwrap_or((1.0, own_name(unit)));
     let rounded = round(divide(value, factor), digits);
     let prefixed = factor == 1.0 && takes_prefix(unit);
     compose(&rounded, name, prefixed)
@@ -50,7 +54,7 @@ pub fn shortest(value: f64, unit: &str) -> String {
     if !value.is_finite() {
         return NO_VALUE.to_string();
     }
-    let (factor, name) = foreign(value, unit).unwrap_or((1.0, unit));
+    let (factor, name) = foreign(value, unit).unwrap_or((1.0, own_name(unit)));
     let mut rounded = round(divide(value, factor), SHORTEST_DIGITS);
     rounded.trim();
     let prefixed = factor == 1.0 && takes_prefix(unit);
@@ -87,9 +91,17 @@ pub fn with_uncertainty(value: f64, uncertainty: f64, unit: &str) -> String {
             engineering_unit(value, unit)
         );
     }
-    let (factor, prefix) = scale(value.abs().max(uncertainty), unit);
+    let (factor, prefix) = scale(at_place_of(value, uncertainty), unit);
+    let (whole, unrounded) = (value, uncertainty);
     let (value, uncertainty) = (divide(value, factor), divide(uncertainty, factor));
     let place = round(uncertainty, 2).exponent - 1;
+    if place < -MOST_DECIMALS || value.abs().max(uncertainty) > LARGEST_PLAIN {
+        let (value, uncertainty) = (
+            engineering(whole, unit, 17),
+            engineering(unrounded, unit, 2),
+        );
+        return format!("{value} ± {uncertainty}");
+    }
     let unit = scaled_unit(prefix, unit);
     let (value, uncertainty) = (to_place(value, place), to_place(uncertainty, place));
     if unit.is_empty() {
@@ -112,24 +124,32 @@ pub fn scale(value: f64, unit: &str) -> (f64, &'static str) {
     }
     let exponent = round(value, SHORTEST_DIGITS).exponent.div_euclid(3) * 3;
     let exponent = exponent.clamp(-15, 12);
-    let prefix = PREFIXES
-        .iter()
-        .find(|(e, _)| *e == exponent)
-        .map_or("", |(_, p)| *p);
-    (format!("1e{exponent}").parse().unwrap_or(1.0), prefix)
+    match PREFIXES.iter().find(|(e, _)| *e == exponent) {
+        Some((_, prefix)) if readable(prefix, unit) => {
+            (format!("1e{exponent}").parse().unwrap_or(1.0), prefix)
+        }
+        _ => (1.0, ""),
+    }
 }
 
 /// The unit under a prefix from [`scale`]: `µF`; `%` for the unit `1`.
 pub fn scaled_unit(prefix: &str, unit: &str) -> String {
     match (prefix, unit) {
         ("%" | "°" | "min" | "h", _) => prefix.to_string(),
-        _ => format!("{prefix}{unit}"),
+        _ => format!("{prefix}{}", own_name(unit)),
     }
 }
 
-/// Units that people read in another unit: what one of those is, and its name.
+/// The unit as it is written without a prefix: the unit `1` is not.
+fn own_name(unit: &str) -> &str {
+    if unit == "1" { "" } else { unit }
+}
+
+/// Units that people read in another unit: what one of those is, and its name. Not where the
+/// value in that unit would leave the range of numbers.
 fn foreign(value: f64, unit: &str) -> Option<(f64, &'static str)> {
     match unit {
+        "1" | "rad" if value.abs() > 1e300 => None,
         "1" => Some((0.01, "%")),
         "rad" => Some((PI / 180.0, "°")),
         "s" if value.is_finite() && value.abs() >= 3600.0 => Some((3600.0, "h")),
@@ -149,7 +169,7 @@ fn divide(value: f64, factor: f64) -> f64 {
 }
 
 fn takes_prefix(unit: &str) -> bool {
-    !matches!(unit, "°C" | "%" | "°" | "min" | "h")
+    !matches!(unit, "1" | "°C" | "%" | "°" | "min" | "h")
 }
 
 fn engineering_unit(value: f64, unit: &str) -> String {
@@ -232,6 +252,19 @@ fn compose(rounded: &Rounded, unit: &str, prefixed: bool) -> String {
 fn readable(prefix: &str, unit: &str) -> bool {
     let large = matches!(prefix, "k" | "M" | "G" | "T");
     !(large && matches!(unit, "F" | "H" | "s"))
+}
+
+/// The larger of the value, rounded where its uncertainty is, and the uncertainty: what the
+/// common prefix has to fit (999.996 Hz ± 0.12 Hz is in kilohertz once rounded to 1000.00 Hz).
+fn at_place_of(value: f64, uncertainty: f64) -> f64 {
+    let place = round(uncertainty, 2).exponent - 1;
+    let digits = usize::try_from(round(value, 17).exponent - place + 1).unwrap_or(0);
+    let rounded = if digits == 0 {
+        0.0
+    } else {
+        round(value, digits).scientific().parse().unwrap_or(value)
+    };
+    f64::abs(rounded).max(uncertainty)
 }
 
 /// Rounds to a decimal place: 10^`place`.
