@@ -349,6 +349,9 @@ fn what_is_no_tolerance_is_refused() {
     }
     assert!(parse_tolerance("±10 %", Dimension::Temperature, None).is_err());
     assert!(parse_tolerance("K", Dimension::Frequency, None).is_err());
+    let other = parse_tolerance("±1 kHz", Dimension::Capacitance, None).unwrap_err();
+    assert_eq!(other.found, "`1 kHz` is a frequency");
+    assert_eq!(other.expected, "a tolerance such as `±10 %`");
     let lower_case = parse_tolerance("k", Dimension::Capacitance, None).unwrap_err();
     assert_eq!(
         lower_case.hint.as_deref(),
@@ -693,6 +696,8 @@ fn a_value_is_rounded_to_its_uncertainty() {
         (f64::NAN, 1.0, "F", "–"),
         (-1e-9, 5e-6, "F", "0.0 µF ± 5.0 µF"),
         (4.0, 1.5, "", "4.0 ± 1.5"),
+        (4.0, 0.0, "", "4 ± 0"),
+        (6e306, 5e152, "F", "6e306 F ± 5.0e152 F"),
     ];
     for (value, uncertainty, unit, expected) in cases {
         assert_eq!(with_uncertainty(value, uncertainty, unit), expected);
