@@ -13,7 +13,7 @@ mod scalar;
 mod syntax;
 
 pub use node::{Node, Shape};
-pub use reader::{Fields, Reader};
+pub use reader::{Fields, Reader, nearest, parse_date, parse_moment, shown};
 
 use super::{Faults, Source};
 

@@ -4,6 +4,8 @@
 
 mod scalars;
 
+pub use scalars::{parse_date, parse_moment, shown};
+
 use super::{Node, Shape};
 use crate::diagnostic::{Fault, Faults, Source, Span, excerpt};
 
@@ -197,6 +199,23 @@ impl<'a> Reader<'a> {
         );
         let found = format!("`{}` is {is}", excerpt(name));
         self.fault(span, code, found, expected, Some(hint));
+    }
+
+    /// Where the file lies in the folder `folder`, its stem must be the name it states.
+    pub fn stem_is(&mut self, node: &Node, path: &str, folder: &str, name: &str, key: &str) {
+        let mut steps = path.rsplit(['/', '\\']);
+        let file = steps.next().unwrap_or_default();
+        let stem = file.rsplit_once('.').map_or(file, |(stem, _)| stem);
+        if steps.next() != Some(folder) || stem == name {
+            return;
+        }
+        self.fault(
+            node.span,
+            "name_differs_from_file",
+            format!("`{key}: {name}` in a file named `{}`", excerpt(file)),
+            format!("the file's name, which is how the {key} is found"),
+            Some(format!("rename the file to `{name}.yaml`, or correct `{key}`")),
+        );
     }
 
     /// The value of a key that must be there. `example` shows how it is written.

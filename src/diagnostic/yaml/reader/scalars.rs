@@ -183,7 +183,7 @@ impl Reader<'_> {
         if possible(value) {
             return Some(value);
         }
-        let found = format!("{what} {}", quoted_scalar(node));
+        let found = format!("{what} {}", shown(node));
         let hint = (dimension == Dimension::Ratio && value > 1.0 && !has_percent(node))
             .then(|| "write the sign `%` if percent was meant".to_owned());
         self.fault(node.span, "impossible_value", found, expected, hint);
@@ -210,7 +210,7 @@ impl Reader<'_> {
         if lower <= upper {
             return Some((lower, upper));
         }
-        let found = format!("{what} {} from high to low", quoted_scalar(node));
+        let found = format!("{what} {} from high to low", shown(node));
         self.fault(node.span, "reversed", found, "the lower limit first", None);
         None
     }
@@ -292,7 +292,7 @@ impl Reader<'_> {
 }
 
 /// A scalar as it stands, for use inside a sentence.
-pub(crate) fn quoted_scalar(node: &Node) -> String {
+pub fn shown(node: &Node) -> String {
     match &node.shape {
         Shape::Text { text, .. } | Shape::Number(text, _) | Shape::Bool(text) => {
             format!("`{}`", excerpt(text))
