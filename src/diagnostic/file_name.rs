@@ -6,8 +6,8 @@ pub const LONGEST: usize = 64;
 /// Device names that Windows gives no file, with or without an extension.
 const RESERVED: [&str; 28] = [
     "CON", "PRN", "AUX", "NUL", "CONIN$", "CONOUT$", "COM0", "COM1", "COM2", "COM3", "COM4",
-    "COM5", "COM6", "COM7", "COM8", "COM9", "LPT0", "LPT1", "LPT2", "LPT3", "LPT4", "LPT5",
-    "LPT6", "LPT7", "LPT8", "LPT9", "CLOCK$", "CONFIG$",
+    "COM5", "COM6", "COM7", "COM8", "COM9", "LPT0", "LPT1", "LPT2", "LPT3", "LPT4", "LPT5", "LPT6",
+    "LPT7", "LPT8", "LPT9", "CLOCK$", "CONFIG$",
 ];
 
 /// Why a text cannot be the name of a file on every platform; `None` where it can.
@@ -71,7 +71,15 @@ mod tests {
 
     #[test]
     fn names_that_every_platform_takes() {
-        for name in ["RG-0475-X7R", "26K-0457", "BENCH-2", "a", "COMET", "lot 7", "v1.2+b"] {
+        for name in [
+            "RG-0475-X7R",
+            "26K-0457",
+            "BENCH-2",
+            "a",
+            "COMET",
+            "lot 7",
+            "v1.2+b",
+        ] {
             assert_eq!(fault_of(name), None, "{name}");
         }
     }
@@ -79,8 +87,23 @@ mod tests {
     #[test]
     fn names_that_some_platform_refuses() {
         for name in [
-            "", "a/b", "a\\b", "..", ".a", "a.", "a ", " a", "con", "NUL.yaml", "COM1", "a:b",
-            "a\u{0}", "a\u{202e}b", "a*", "x\"y", "µ",
+            "",
+            "a/b",
+            "a\\b",
+            "..",
+            ".a",
+            "a.",
+            "a ",
+            " a",
+            "con",
+            "NUL.yaml",
+            "COM1",
+            "a:b",
+            "a\u{0}",
+            "a\u{202e}b",
+            "a*",
+            "x\"y",
+            "µ",
         ] {
             assert!(fault_of(name).is_some(), "{name:?}");
         }

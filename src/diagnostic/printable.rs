@@ -1,7 +1,5 @@
 //! Text from files made fit to show: nothing in it steers a terminal or hides.
 
-use unicode_width::{UnicodeWidthChar, UnicodeWidthStr};
-
 /// Whether a character steers the terminal, or the reader's eye, instead of being seen: control
 /// characters, line and paragraph separators, and the bidirectional and zero-width characters.
 pub fn is_hidden(c: char) -> bool {
@@ -36,31 +34,14 @@ pub fn excerpt(text: &str) -> String {
 
 /// The text broken at spaces into lines of at most `width` columns; a longer word is broken too.
 pub fn wrap(text: &str, width: usize) -> Vec<String> {
-    let width = width.max(1);
-    let mut lines = Vec::new();
-    let mut line = String::new();
-    for word in text.split(' ') {
-        let needed = line.width() + usize::from(!line.is_empty()) + word.width();
-        if !line.is_empty() && needed > width {
-            lines.push(std::mem::take(&mut line));
-        }
-        if !line.is_empty() {
-            line.push(' ');
-        }
-        for c in word.chars() {
-            if line.width() + c.width().unwrap_or(0) > width {
-                lines.push(std::mem::take(&mut line));
-            }
-            line.push(c);
-        }
-    }
-    lines.push(line);
-    lines
+    let lines = textwrap::wrap(text, width.max(2));
+    lines.into_iter().map(|line| line.into_owned()).collect()
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use unicode_width::UnicodeWidthStr;
 
     #[test]
     fn hidden_characters_are_written_out() {
@@ -72,7 +53,11 @@ mod tests {
     fn lines_never_exceed_the_width() {
         let lines = wrap("one two three fourfourfourfour", 9);
         assert_eq!(lines, ["one two", "three", "fourfourf", "ourfour"]);
-        assert!(wrap(&"漢字 ".repeat(30), 11).iter().all(|l| l.width() <= 11));
+        assert!(
+            wrap(&"漢字 ".repeat(30), 11)
+                .iter()
+                .all(|l| l.width() <= 11)
+        );
     }
 
     #[test]

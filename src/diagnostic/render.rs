@@ -106,10 +106,17 @@ fn message(text: &str, margin: usize) -> String {
 fn window(quote: &Quote) -> (String, Range<usize>) {
     let chars: Vec<char> = quote.text.chars().collect();
     let piece = |range: Range<usize>| -> String {
-        printable(&chars.get(range).unwrap_or_default().iter().collect::<String>())
+        printable(
+            &chars
+                .get(range)
+                .unwrap_or_default()
+                .iter()
+                .collect::<String>(),
+        )
     };
     let mut first = 0;
-    while first < quote.from && piece(first..quote.from).width() > LINE_WIDTH / 2
+    while first < quote.from
+        && piece(first..quote.from).width() > LINE_WIDTH / 2
         && piece(first..chars.len()).width() > LINE_WIDTH
     {
         first += 1;

@@ -45,7 +45,8 @@ impl Source {
             ));
         }
         let bytes = bytes.strip_prefix(b"\xef\xbb\xbf").unwrap_or(bytes);
-        let text = std::str::from_utf8(bytes).map_err(|e| not_utf8(path, bytes, e.valid_up_to()))?;
+        let text =
+            std::str::from_utf8(bytes).map_err(|e| not_utf8(path, bytes, e.valid_up_to()))?;
         let mut source = Source {
             path: path.to_owned(),
             text: text.to_owned(),
@@ -125,7 +126,11 @@ impl Source {
             let indentation = line.chars().take(column).all(|c| c == ' ');
             if c == '\t' {
                 let fault = self.tab(span);
-                let list = if indentation { &mut fatal } else { &mut mendable };
+                let list = if indentation {
+                    &mut fatal
+                } else {
+                    &mut mendable
+                };
                 list.push(fault);
             } else {
                 fatal.push(self.hidden(span, c));
@@ -153,7 +158,10 @@ impl Source {
             Some(if c == '\0' {
                 "save the file as UTF-8 text".to_owned()
             } else {
-                format!("delete it, or write it as \"{}\" in double quotes", yaml_escape(c))
+                format!(
+                    "delete it, or write it as \"{}\" in double quotes",
+                    yaml_escape(c)
+                )
             }),
         )
     }
@@ -183,7 +191,10 @@ fn yaml_escape(c: char) -> String {
 fn not_utf8(path: &str, bytes: &[u8], valid: usize) -> Faults {
     let before = bytes.get(..valid).unwrap_or_default();
     let line = before.iter().filter(|&&b| b == b'\n').count() + 1;
-    let start = before.iter().rposition(|&b| b == b'\n').map_or(0, |i| i + 1);
+    let start = before
+        .iter()
+        .rposition(|&b| b == b'\n')
+        .map_or(0, |i| i + 1);
     let shown = String::from_utf8_lossy(before.get(start..).unwrap_or_default()).into_owned();
     let column = shown.chars().count() + 1;
     let byte = bytes.get(valid).copied().unwrap_or_default();
@@ -231,7 +242,11 @@ fn quote(line: &str, span: Span) -> Quote {
     let text: String = line.chars().skip(skip).take(BEFORE + AFTER).collect();
     let shown = text.chars().count() + head.chars().count();
     let from = (place.min(length) - skip + head.chars().count()).min(shown);
-    let tail = if skip + BEFORE + AFTER < length { "…" } else { "" };
+    let tail = if skip + BEFORE + AFTER < length {
+        "…"
+    } else {
+        ""
+    };
     Quote {
         text: format!("{head}{text}{tail}"),
         from,

@@ -1,7 +1,7 @@
 //! How the lot is accepted from its sample.
 
-use super::bound::is_class;
-use super::{Acceptance, Bound};
+use super::Acceptance;
+use super::bound::{Bounded, is_class};
 use crate::diagnostic::excerpt;
 use crate::diagnostic::yaml::{Fields, Node, Reader, shown};
 use crate::quantity::Dimension;
@@ -17,7 +17,7 @@ const AQL_SERIES: [f64; 16] = [
 ];
 
 /// Exactly one kind of acceptance; every class of the bounds has its AQL.
-pub fn read(reader: &mut Reader<'_>, node: &Node, bounds: Option<&[Bound]>) -> Option<Acceptance> {
+pub fn read(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<Acceptance> {
     let fields = reader.fields(node, "`acceptance`", &KINDS)?;
     let known: Vec<_> = fields.iter().filter(|(k, ..)| KINDS.contains(k)).collect();
     let [(kind, _, value)] = known.as_slice() else {
@@ -27,14 +27,20 @@ pub fn read(reader: &mut Reader<'_>, node: &Node, bounds: Option<&[Bound]>) -> O
             reader.fault(key.span, "two_ways", found, "one kind of acceptance", hint);
         } else if fields.iter().next().is_none() {
             let expected = "one of `attributes`, `variables`, `zero_acceptance` or `fixed`";
-            reader.fault(node.span, "missing_key", "an empty `acceptance`", expected, None);
+            reader.fault(
+                node.span,
+                "missing_key",
+                "an empty `acceptance`",
+                expected,
+                None,
+            );
         }
         return None;
     };
     match *kind {
-        "attributes" => level_and_aql(reader, value, bounds, "`attributes`")
+        "attributes" => level_and_aql(reader, value, bounded, "`attributes`")
             .map(|(level, aql)| Acceptance::Attributes { level, aql }),
-        "variables" => level_and_aql(reader, value, bounds, "`variables`")
+        "variables" => level_and_aql(reader, value, bounded, "`variables`")
             .map(|(level, aql)| Acceptance::Variables { level, aql }),
         "zero_acceptance" => zero_acceptance(reader, value),
         _ => fixed(reader, value),
@@ -46,7 +52,7 @@ type LevelAndAql = (String, Vec<(String, f64)>);
 fn level_and_aql(
     reader: &mut Reader<'_>,
     node: &Node,
-    bounds: Option<&[Bound]>,
+    bounded: &Bounded,
     what: &str,
 ) -> Option<LevelAndAql> {
     let fields = reader.fields(node, what, &["level", "aql"])?;
@@ -56,48 +62,53 @@ fn level_and_aql(
         .and_then(|index| LEVELS.get(index));
     let aql = reader
         .required(&fields, "aql", what, "{A: 0.65}")
-        .and_then(|node| aql_by_class(reader, node, bounds));
+        .and_then(|node| aql_by_class(reader, node, bounded));
     Some(((*level?).to_owned(), aql?))
 }
 
 fn aql_by_class(
     reader: &mut Reader<'_>,
     node: &Node,
-    bounds: Option<&[Bound]>,
+    bounded: &Bounded,
 ) -> Option<Vec<(String, f64)>> {
     let before = reader.count();
-    let fields = reader.entries(node, "`aql`: a class for each value, `{A: 0.65}`")?;
+    let fields = reader.entries(node, "`aql`, an AQL for each class,")?;
     let mut list = Vec::new();
     for (class, key, value) in fields.iter() {
         if !is_class(class) {
             let found = format!("the class `{}`", excerpt(class));
             let expected = "a nonconformity class such as `A`: letters and digits, at most 16";
             reader.fault(key.span, "bad_class", found, expected, None);
-        } else if bounds.is_some_and(|all| all.iter().all(|bound| bound.class != class)) {
+        } else if bounded.complete && bounded.classes.iter().all(|(known, _)| known != class) {
             let found = format!("an AQL for class `{class}`, in which nothing is bounded");
             let hint = Some(format!("delete it, or put `class: {class}` at a bound"));
-            reader.fault(key.span, "class_without_bound", found, "classes of the bounds", hint);
+            reader.fault(
+                key.span,
+                "class_without_bound",
+                found,
+                "classes of the bounds",
+                hint,
+            );
         }
         if let Some(percent) = aql(reader, value) {
             list.push((class.to_owned(), percent));
         }
     }
-    classes_without_aql(reader, &fields, bounds.unwrap_or_default());
+    classes_without_aql(reader, &fields, bounded);
     (reader.count() == before).then_some(list)
 }
 
-fn classes_without_aql(reader: &mut Reader<'_>, fields: &Fields<'_>, bounds: &[Bound]) {
+fn classes_without_aql(reader: &mut Reader<'_>, fields: &Fields<'_>, bounded: &Bounded) {
     let mut seen: Vec<&str> = Vec::new();
-    for bound in bounds {
-        let class = bound.class.as_str();
-        if fields.get(class).is_some() || seen.contains(&class) {
+    for (class, bound) in &bounded.classes {
+        if fields.get(class).is_some() || seen.contains(&class.as_str()) {
             continue;
         }
         seen.push(class);
         reader.fault(
             fields.span,
             "class_without_aql",
-            format!("no AQL for class `{class}`, in which `{}` is bounded", bound.key),
+            format!("no AQL for class `{class}`, in which `{bound}` is bounded"),
             "an AQL for every class of the bounds (class A where a bound names none)",
             Some(format!("add for example `{class}: 0.65`")),
         );
@@ -136,7 +147,13 @@ fn zero_acceptance(reader: &mut Reader<'_>, node: &Node) -> Option<Acceptance> {
         let node = reader.required(&fields, key, what, example)?;
         let possible = |v: f64| v > 0.0 && v < 1.0;
         let expected = "a share above 0 and below 100 %";
-        reader.quantity_if(node, &format!("`{key}`"), Dimension::Ratio, possible, expected)
+        reader.quantity_if(
+            node,
+            &format!("`{key}`"),
+            Dimension::Ratio,
+            possible,
+            expected,
+        )
     };
     let quality_limit = ratio("quality_limit", "1 %");
     let consumers_risk = ratio("consumers_risk", "10 %");
@@ -167,4 +184,3 @@ fn fixed(reader: &mut Reader<'_>, node: &Node) -> Option<Acceptance> {
     }
     Some(Acceptance::Fixed { sample, accept })
 }
-

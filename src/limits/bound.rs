@@ -3,7 +3,7 @@
 use super::Bound;
 use crate::diagnostic::Span;
 use crate::diagnostic::yaml::{Fields, Node, Reader, Shape, shown};
-use crate::quantity::{Dimension, engineering, frequency_key};
+use crate::quantity::{Dimension, frequency_key, shortest};
 use crate::readings::{Characteristic, Place};
 
 /// Lowest frequency at which a bound may stand, Hz. Common practice, no source: below 1 Hz a
@@ -15,24 +15,57 @@ pub const LOWEST_FREQUENCY: f64 = 1.0;
 /// jigs for chip capacitors end below 10 GHz.
 pub const HIGHEST_FREQUENCY: f64 = 10e9;
 
-const KEYS: [&str; 7] = ["at", "between", "min", "max", "nominal", "tolerance", "class"];
+const KEYS: [&str; 7] = [
+    "at",
+    "between",
+    "min",
+    "max",
+    "nominal",
+    "tolerance",
+    "class",
+];
 
-/// The bounds of a file in its order, keys unique, at least one.
-pub fn read_all(reader: &mut Reader<'_>, node: &Node) -> Option<Vec<Bound>> {
+/// What `characteristics` bounds, as far as it can be told.
+#[derive(Debug, Default)]
+pub struct Bounded {
+    /// The bounds without fault, in file order, keys unique.
+    pub bounds: Vec<Bound>,
+    /// Every key under `characteristics`, whether its bound has faults or not.
+    pub names: Vec<String>,
+    /// Every class that can be told, with a bound that is in it, whether that has faults or not.
+    pub classes: Vec<(String, String)>,
+    /// Whether `bounds` is all of it, and not empty.
+    pub complete: bool,
+}
+
+/// The bounds of a file.
+pub fn read_all(reader: &mut Reader<'_>, node: &Node) -> Bounded {
     let names = Characteristic::ALL.map(Characteristic::name);
     let before = reader.count();
-    let fields = reader.fields(node, "`characteristics`", &names)?;
-    let mut bounds: Vec<Bound> = Vec::new();
+    let mut all = Bounded::default();
+    let Some(fields) = reader.fields(node, "`characteristics`", &names) else {
+        return all;
+    };
+    all.names = fields.iter().map(|(name, ..)| name.to_owned()).collect();
+    let mut complete = true;
     for (name, _, value) in fields.iter() {
         let known = Characteristic::ALL.into_iter().find(|c| c.name() == name);
-        let Some(characteristic) = known else { continue };
+        let Some(characteristic) = known else {
+            continue;
+        };
         for item in items(reader, value, name) {
-            if let Some(bound) = read(reader, characteristic, item) {
-                push(reader, &mut bounds, bound, item.span);
+            let class = read_class(reader, item);
+            let bound = read(reader, characteristic, item, class.as_deref());
+            let shown = bound.as_ref().map_or(name, |bound| bound.key.as_str());
+            all.classes
+                .extend(class.map(|class| (class, shown.to_owned())));
+            match bound {
+                Some(bound) => push(reader, &mut all.bounds, bound, item.span),
+                None => complete = false,
             }
         }
     }
-    if bounds.is_empty() && reader.count() == before {
+    if all.bounds.is_empty() && reader.count() == before {
         reader.fault(
             node.span,
             "no_bound",
@@ -41,13 +74,25 @@ pub fn read_all(reader: &mut Reader<'_>, node: &Node) -> Option<Vec<Bound>> {
             Some("add for example `capacitance: {at: 1 kHz, min: 4.23 µF}`".to_owned()),
         );
     }
-    (reader.count() == before).then_some(bounds)
+    all.complete = complete && reader.count() == before && !all.bounds.is_empty();
+    all
+}
+
+/// The class of a bound, `A` where it names none.
+fn read_class(reader: &mut Reader<'_>, node: &Node) -> Option<String> {
+    let Shape::Map(entries) = &node.shape else {
+        return None;
+    };
+    let is_class = |key: &Node| matches!(&key.shape, Shape::Text { text, .. } if text == "class");
+    match entries.iter().find(|(key, _)| is_class(key)) {
+        Some((_, node)) => class(reader, node),
+        None => Some("A".to_owned()),
+    }
 }
 
 /// The bounds under one name: one map, or a list of maps.
 fn items<'n>(reader: &mut Reader<'_>, value: &'n Node, name: &str) -> Vec<&'n Node> {
     match &value.shape {
-        Shape::Null => Vec::new(),
         Shape::List(list) => {
             if list.is_empty() {
                 let found = format!("`{name}` with an empty list");
@@ -73,15 +118,16 @@ fn push(reader: &mut Reader<'_>, bounds: &mut Vec<Bound>, bound: Bound, span: Sp
     }
 }
 
-fn read(reader: &mut Reader<'_>, characteristic: Characteristic, node: &Node) -> Option<Bound> {
+fn read(
+    reader: &mut Reader<'_>,
+    characteristic: Characteristic,
+    node: &Node,
+    class: Option<&str>,
+) -> Option<Bound> {
     let what = format!("a bound of `{}`", characteristic.name());
     let fields = reader.fields(node, &what, &KEYS)?;
     let place = place(reader, characteristic, &fields);
     let window = window(reader, characteristic, &fields);
-    let class = match fields.get("class") {
-        Some(node) => class(reader, node),
-        None => Some("A".to_owned()),
-    };
     let (place, window) = (place?, window?);
     Some(Bound {
         key: key(characteristic, place),
@@ -90,7 +136,7 @@ fn read(reader: &mut Reader<'_>, characteristic: Characteristic, node: &Node) ->
         lower: window.lower,
         upper: window.upper,
         nominal: window.nominal,
-        class: class?,
+        class: class?.to_owned(),
     })
 }
 
@@ -146,7 +192,13 @@ fn place(
             let hint = misplaced_hint(characteristic, word);
             let found = format!("`{word}` for `{name}`");
             let expected = format!("`{name}` without `{word}`");
-            reader.fault(key.span, "misplaced_key", found, expected, Some(hint.to_owned()));
+            reader.fault(
+                key.span,
+                "misplaced_key",
+                found,
+                expected,
+                Some(hint.to_owned()),
+            );
         }
     }
     match (at, between) {
@@ -176,9 +228,7 @@ fn misplaced_hint(characteristic: Characteristic, word: &str) -> &'static str {
         (Characteristic::EsrMinimum, _) => {
             "to bound the ESR at a frequency, use `esr`; to say where to look, use `between`"
         }
-        (Characteristic::Srf | Characteristic::Esl, _) => {
-            "delete it: the whole sweep is looked at"
-        }
+        (Characteristic::Srf | Characteristic::Esl, _) => "delete it: the whole sweep is looked at",
         _ => "give one frequency with `at`; several in a list of bounds",
     }
 }
@@ -207,8 +257,8 @@ fn frequency(reader: &mut Reader<'_>, node: &Node, what: &str) -> Option<f64> {
     if (LOWEST_FREQUENCY..=HIGHEST_FREQUENCY).contains(&hertz) {
         return Some(hertz);
     }
-    let low = engineering(LOWEST_FREQUENCY, "Hz", 3);
-    let high = engineering(HIGHEST_FREQUENCY, "Hz", 3);
+    let low = shortest(LOWEST_FREQUENCY, "Hz");
+    let high = shortest(HIGHEST_FREQUENCY, "Hz");
     let hint = if matches!(&node.shape, Shape::Text { text, .. } if text.contains("mHz")) {
         Some("`mHz` is millihertz; megahertz is `MHz`".to_owned())
     } else {
@@ -217,7 +267,7 @@ fn frequency(reader: &mut Reader<'_>, node: &Node, what: &str) -> Option<f64> {
     reader.fault(
         node.span,
         "frequency_outside",
-        format!("{what} {}, outside of any sweep", shown(node)),
+        format!("{} for {what}, outside of any sweep", shown(node)),
         format!("a frequency from {low} to {high}"),
         hint,
     );
@@ -226,9 +276,7 @@ fn frequency(reader: &mut Reader<'_>, node: &Node, what: &str) -> Option<f64> {
 
 fn band(reader: &mut Reader<'_>, node: &Node) -> Option<Place> {
     let Shape::List(ends) = &node.shape else {
-        if !matches!(node.shape, Shape::Null) {
-            band_shape(reader, node, &node.shape.words());
-        }
+        band_shape(reader, node, &node.shape.words());
         return None;
     };
     let [low, high] = ends.as_slice() else {
@@ -421,7 +469,9 @@ fn check_order(reader: &mut Reader<'_>, fields: &Fields<'_>, window: &Resolved) 
         ("nominal", window.nominal, "max", window.upper),
     ];
     for (low_key, low, high_key, high) in pairs {
-        let (Some(low), Some(high)) = (low, high) else { continue };
+        let (Some(low), Some(high)) = (low, high) else {
+            continue;
+        };
         let strict = (low_key, high_key) == ("min", "max");
         if low < high || (low == high && !strict) {
             continue;
@@ -432,7 +482,11 @@ fn check_order(reader: &mut Reader<'_>, fields: &Fields<'_>, window: &Resolved) 
         let relation = if low == high { "equal to" } else { "above" };
         reader.fault(
             low_node.span,
-            if strict { "min_above_max" } else { "nominal_outside" },
+            if strict {
+                "min_above_max"
+            } else {
+                "nominal_outside"
+            },
             format!(
                 "`{low_key}` {} {relation} `{high_key}` {}",
                 shown(low_node),

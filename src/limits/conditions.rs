@@ -21,7 +21,13 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
     if let Some(node) = fields.get("drive") {
         let possible = |low: f64, high: f64| low > 0.0 && high <= 1000.0;
         let expected = "a voltage above zero and at most 1000 V";
-        conditions.drive = window(reader, node, ("`drive`", Dimension::Voltage), possible, expected);
+        conditions.drive = window(
+            reader,
+            node,
+            ("`drive`", Dimension::Voltage),
+            possible,
+            expected,
+        );
     }
     if let Some(node) = fields.get("temperature") {
         let possible = |low: f64, high: f64| low >= -80.0 && high <= 250.0;
@@ -50,7 +56,7 @@ fn window(
 ) -> Option<Window> {
     let (low, high) = reader.window(node, what, dimension)?;
     if !possible(low, high) {
-        let found = format!("{what} {}", shown(node));
+        let found = format!("{} for {what}", shown(node));
         reader.fault(node.span, "impossible_value", found, expected, None);
         return None;
     }
@@ -116,7 +122,11 @@ pub fn decision_rule(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Dec
     };
     let what = "`decision_rule`";
     let fields = reader.fields(node, what, &["kind", "coverage_factor"])?;
-    let kinds = ["simple_acceptance", "guarded_acceptance", "guarded_rejection"];
+    let kinds = [
+        "simple_acceptance",
+        "guarded_acceptance",
+        "guarded_rejection",
+    ];
     let kind = reader
         .required(&fields, "kind", what, "guarded_acceptance")
         .and_then(|node| reader.one_of(node, "a decision rule", &kinds))
@@ -153,14 +163,17 @@ pub fn retest(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Retest> {
         return Some(retest);
     };
     let fields = reader.fields(node, "`retest`", &["unmeasured", "nonconforming"])?;
+    let mut complete = true;
     for (key, count) in [
         ("unmeasured", &mut retest.unmeasured),
         ("nonconforming", &mut retest.nonconforming),
     ] {
         if let Some(node) = fields.get(key) {
-            let value = reader.integer(node, &format!("`{key}`"), (0, 10))?;
-            *count = u32::try_from(value).unwrap_or(0);
+            let value = reader.integer(node, &format!("`{key}`"), (0, 10));
+            let value = value.and_then(|value| u32::try_from(value).ok());
+            complete &= value.is_some();
+            *count = value.unwrap_or_default();
         }
     }
-    Some(retest)
+    complete.then_some(retest)
 }

@@ -1,7 +1,8 @@
 //! Rules that turn lot statistics into a hold.
 
+use super::bound::Bounded;
 use super::{Bound, CapabilityRule, OutlierRule};
-use crate::diagnostic::yaml::{Fields, Node, Reader, Shape};
+use crate::diagnostic::yaml::{Fields, Node, Reader, Shape, nearest};
 use crate::diagnostic::{Span, excerpt};
 use crate::quantity::Dimension;
 
@@ -9,42 +10,38 @@ type Rules = (Vec<CapabilityRule>, Vec<OutlierRule>);
 
 /// Capability and outlier rules; none where the file says nothing.
 ///
-/// `bounds` is `None` where the bounds have faults of their own: what a rule is of cannot then be
-/// told.
-pub fn read(
-    reader: &mut Reader<'_>,
-    node: Option<&Node>,
-    bounds: Option<&[Bound]>,
-) -> Option<Rules> {
+/// Where the bounds have faults of their own, only rules of what is surely not bounded are faults.
+pub fn read(reader: &mut Reader<'_>, node: Option<&Node>, bounded: &Bounded) -> Option<Rules> {
     let Some(node) = node else {
         return Some((Vec::new(), Vec::new()));
     };
     let before = reader.count();
     let fields = reader.fields(node, "`lot_rules`", &["capability", "outliers"])?;
     let mut rules: Rules = (Vec::new(), Vec::new());
+    let mut complete = true;
     for item in items(fields.get("capability")) {
-        rules.0.extend(capability(reader, item, bounds));
+        let rule = capability(reader, item, bounded);
+        complete &= rule.is_some();
+        rules.0.extend(rule);
     }
     for item in items(fields.get("outliers")) {
-        rules.1.extend(outliers(reader, item, bounds));
+        let rule = outliers(reader, item, bounded);
+        complete &= rule.is_some();
+        rules.1.extend(rule);
     }
-    (reader.count() == before).then_some(rules)
+    (complete && reader.count() == before).then_some(rules)
 }
 
 /// One rule, or a list of them.
 fn items(node: Option<&Node>) -> Vec<&Node> {
     match node.map(|node| &node.shape) {
-        None | Some(Shape::Null) => Vec::new(),
+        None => Vec::new(),
         Some(Shape::List(list)) => list.iter().collect(),
         Some(_) => node.into_iter().collect(),
     }
 }
 
-fn capability(
-    reader: &mut Reader<'_>,
-    node: &Node,
-    bounds: Option<&[Bound]>,
-) -> Option<CapabilityRule> {
+fn capability(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<CapabilityRule> {
     let what = "`capability`";
     let fields = reader.fields(node, what, &["of", "index", "min"])?;
     let indices = ["cp", "cpk", "pp", "ppk"];
@@ -55,9 +52,9 @@ fn capability(
     let min = reader
         .required(&fields, "min", what, "1.33")
         .and_then(|node| reader.number_within(node, "`min`", (0.1, 10.0)));
-    let of = of(reader, &fields, what, bounds);
-    if let (Some("cp" | "pp"), Some(of), Some(bounds)) = (index, &of, bounds) {
-        two_sided(reader, &fields, index.unwrap_or_default(), of, bounds);
+    let of = of(reader, &fields, what, bounded);
+    if let (Some(index @ ("cp" | "pp")), Some(of)) = (index, &of) {
+        two_sided(reader, &fields, index, of, &bounded.bounds);
     }
     Some(CapabilityRule {
         of: of?,
@@ -86,11 +83,7 @@ fn two_sided(
     }
 }
 
-fn outliers(
-    reader: &mut Reader<'_>,
-    node: &Node,
-    bounds: Option<&[Bound]>,
-) -> Option<OutlierRule> {
+fn outliers(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<OutlierRule> {
     let what = "`outliers`";
     let fields = reader.fields(node, what, &["of", "method", "alpha", "allowed"])?;
     let method = reader
@@ -106,7 +99,7 @@ fn outliers(
     let allowed = reader
         .required(&fields, "allowed", what, "0")
         .and_then(|node| reader.integer(node, "`allowed`", (0, 1000)));
-    let of = of(reader, &fields, what, bounds);
+    let of = of(reader, &fields, what, bounded);
     method?;
     Some(OutlierRule {
         of: of?,
@@ -121,13 +114,19 @@ fn of(
     reader: &mut Reader<'_>,
     fields: &Fields<'_>,
     what: &str,
-    bounds: Option<&[Bound]>,
+    bounded: &Bounded,
 ) -> Option<Vec<String>> {
     let node = reader.required(fields, "of", what, "capacitance")?;
     let names: Vec<&Node> = match &node.shape {
         Shape::List(list) if list.is_empty() => {
             let found = format!("{what} of nothing");
-            reader.fault(node.span, "empty_list", found, "at least one characteristic", None);
+            reader.fault(
+                node.span,
+                "empty_list",
+                found,
+                "at least one characteristic",
+                None,
+            );
             return None;
         }
         Shape::List(list) => list.iter().collect(),
@@ -139,10 +138,9 @@ fn of(
         let Some(name) = reader.line(node, "a characteristic") else {
             continue;
         };
-        let Some(bounds) = bounds else { continue };
-        let matching = resolve(&name, bounds);
-        if matching.is_empty() {
-            not_bounded(reader, node.span, &name, bounds);
+        let matching = resolve(&name, &bounded.bounds);
+        if matching.is_empty() && !may_be_bounded(&name, bounded) {
+            not_bounded(reader, node.span, &name, &bounded.bounds);
         }
         for key in matching {
             if keys.contains(&key) {
@@ -154,6 +152,13 @@ fn of(
         }
     }
     (reader.count() == before).then_some(keys)
+}
+
+/// Whether a bound with faults, or under a misspelt name, may be the one meant.
+fn may_be_bounded(name: &str, bounded: &Bounded) -> bool {
+    let name = name.split('@').next().unwrap_or(name);
+    let near = |other: &String| other == name || nearest(other, &[name]).is_some();
+    !bounded.complete && bounded.names.iter().any(near)
 }
 
 fn resolve(name: &str, bounds: &[Bound]) -> Vec<String> {
@@ -170,10 +175,21 @@ fn not_bounded(reader: &mut Reader<'_>, span: Span, name: &str, bounds: &[Bound]
             }
         }
     }
-    let is = if crate::readings::Characteristic::ALL.iter().any(|c| c.name() == name) {
-        "not bounded in this file"
-    } else {
-        "no characteristic that this file bounds"
-    };
+    if crate::readings::Characteristic::ALL
+        .iter()
+        .any(|c| c.name() == name)
+    {
+        reader.fault(
+            span,
+            "rule_without_bound",
+            format!("`{name}`, which this file does not bound"),
+            "a characteristic that is bounded",
+            Some(format!(
+                "bound `{name}` under `characteristics`, or take it out here"
+            )),
+        );
+        return;
+    }
+    let is = "no characteristic that this file bounds";
     reader.unknown(span, "rule_without_bound", &excerpt(name), is, &known);
 }

@@ -37,7 +37,7 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
     let part = reader
         .required(&fields, "part", file, "RG-0475-X7R")
         .and_then(|node| {
-            let part = reader.name(node, "`part`: a part number")?;
+            let part = reader.name(node, "`part`")?;
             reader.stem_is(node, path, "parts", &part, "part");
             Some(part)
         });
@@ -48,20 +48,29 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
         .get("description")
         .map(|node| reader.line(node, "`description`"));
     let conditions = conditions::read(reader, fields.get("conditions"));
-    let bounds = reader
-        .required(&fields, "characteristics", file, "{capacitance: {at: 1 kHz, min: 1 µF}}")
-        .and_then(|node| bound::read_all(reader, node));
+    let bounded = reader
+        .required(
+            &fields,
+            "characteristics",
+            file,
+            "{capacitance: {at: 1 kHz, min: 1 µF}}",
+        )
+        .map(|node| bound::read_all(reader, node))
+        .unwrap_or_default();
     let decision_rule = conditions::decision_rule(reader, fields.get("decision_rule"));
     let acceptance = reader
-        .required(&fields, "acceptance", file, "{fixed: {sample: 32, accept: 0}}")
-        .and_then(|node| acceptance::read(reader, node, bounds.as_deref()));
-    let rules = lot_rules::read(reader, fields.get("lot_rules"), bounds.as_deref());
+        .required(
+            &fields,
+            "acceptance",
+            file,
+            "{fixed: {sample: 32, accept: 0}}",
+        )
+        .and_then(|node| acceptance::read(reader, node, &bounded));
+    let rules = lot_rules::read(reader, fields.get("lot_rules"), &bounded);
     let retest = conditions::retest(reader, fields.get("retest"));
-    if let Some(bounds) = &bounds {
-        stated::check(reader, &fields, bounds);
-        if let Some(conditions) = &conditions {
-            conditions::ageing_has_capacitance(reader, &fields, conditions, bounds);
-        }
+    stated::check(reader, &fields, &bounded.bounds);
+    if let Some(conditions) = conditions.as_ref().filter(|_| bounded.complete) {
+        conditions::ageing_has_capacitance(reader, &fields, conditions, &bounded.bounds);
     }
     let (capability_rules, outlier_rules) = rules?;
     Some(Limits {
@@ -72,7 +81,7 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
             None => None,
         },
         conditions: conditions?,
-        bounds: bounds?,
+        bounds: bounded.complete.then_some(bounded.bounds)?,
         decision_rule: decision_rule?,
         acceptance: acceptance?,
         capability_rules,

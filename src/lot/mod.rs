@@ -1,5 +1,9 @@
 //! The lot: its identity as `lot.yaml` states it, and its judgement from parts, plan and statistics.
 
+mod file;
+
+pub use file::{SCHEMA, read};
+
 use chrono::{DateTime, FixedOffset, NaiveDateTime};
 
 /// A lot as its `lot.yaml` describes it.

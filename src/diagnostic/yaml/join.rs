@@ -22,10 +22,15 @@ fn node(source: &Source, meaning: Meaning, place: Place) -> Result<Node, Box<Fau
         (Meaning::Map(entries), Content::Map(places)) if entries.len() * 2 == places.len() => {
             map(source, entries, places)?
         }
-        (meaning, Content::Scalar { text, plain, absent }) => {
-            scalar::shape(meaning, text, plain, absent)
-                .map_err(|detail| Box::new(disagreement(source, span, detail)))?
-        }
+        (
+            meaning,
+            Content::Scalar {
+                text,
+                plain,
+                absent,
+            },
+        ) => scalar::shape(meaning, text, plain, absent)
+            .map_err(|detail| Box::new(disagreement(source, span, detail)))?,
         _ => return Err(Box::new(disagreement(source, span, "lists and keys"))),
     };
     Ok(Node { span, shape })

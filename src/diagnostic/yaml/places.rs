@@ -48,7 +48,9 @@ pub fn read(source: &Source) -> Result<Place, Vec<Fault>> {
             Ok((event, span)) => builder.event(event, span.start, span.end),
             Err(error) => {
                 let span = at(source, *error.marker(), *error.marker());
-                builder.faults.push(disagreement(source, span, error.info()));
+                builder
+                    .faults
+                    .push(disagreement(source, span, error.info()));
                 break;
             }
         }
@@ -92,7 +94,11 @@ impl Builder<'_> {
                 let plain = style == ScalarStyle::Plain;
                 let absent = plain && start.index() == end.index();
                 let content = Content::Scalar {
-                    text: if absent { String::new() } else { text.into_owned() },
+                    text: if absent {
+                        String::new()
+                    } else {
+                        text.into_owned()
+                    },
                     plain,
                     absent,
                 };
@@ -118,7 +124,8 @@ impl Builder<'_> {
     fn document(&mut self, span: Span) {
         self.documents += 1;
         if self.documents == 2 {
-            self.faults.push(super::syntax::second_document(self.source, span));
+            self.faults
+                .push(super::syntax::second_document(self.source, span));
         }
     }
 

@@ -85,18 +85,19 @@ impl<'a> Reader<'a> {
         }
     }
 
-    /// The entries of a map. `what` names it: "a bound". Unknown keys, keys given twice and keys
-    /// without a value are faults.
-    pub fn fields<'n>(
-        &mut self,
-        node: &'n Node,
-        what: &str,
-        known: &[&str],
-    ) -> Option<Fields<'n>> {
+    /// The entries of a map. `what` names it: "a bound". Unknown keys and keys given twice are
+    /// faults.
+    pub fn fields<'n>(&mut self, node: &'n Node, what: &str, known: &[&str]) -> Option<Fields<'n>> {
         let fields = self.entries(node, what)?;
         for (name, key, _) in fields.iter() {
             if !known.contains(&name) {
-                self.unknown(key.span, "unknown_key", name, &format!("no key of {what}"), known);
+                self.unknown(
+                    key.span,
+                    "unknown_key",
+                    name,
+                    &format!("no key of {what}"),
+                    known,
+                );
             }
         }
         Some(fields)
@@ -108,8 +109,8 @@ impl<'a> Reader<'a> {
             self.fault(
                 node.span,
                 "not_a_map",
-                node.shape.words(),
-                format!("the keys of {what}, each with a value"),
+                format!("{} in place of {what}", node.shape.words()),
+                "keys, each with a value",
                 None,
             );
             return None;
@@ -125,9 +126,6 @@ impl<'a> Reader<'a> {
                 seen.insert(name, first);
                 self.duplicate(key.span, name, first);
                 continue;
-            }
-            if matches!(value.shape, Shape::Null) {
-                self.no_value(key, value, name);
             }
             fields.entries.push((name, key, value));
         }
@@ -166,18 +164,6 @@ impl<'a> Reader<'a> {
         );
     }
 
-    fn no_value(&mut self, key: &Node, value: &Node, name: &str) {
-        let span = if value.span.length == 0 { key.span } else { value.span };
-        let name = excerpt(name);
-        self.fault(
-            span,
-            "missing_value",
-            format!("`{name}` without a value"),
-            format!("a value after `{name}:`"),
-            Some("write the value, or delete the key".to_owned()),
-        );
-    }
-
     /// A name that is none of the known ones, with its nearest neighbour.
     pub fn unknown(
         &mut self,
@@ -189,12 +175,12 @@ impl<'a> Reader<'a> {
     ) {
         let list: Vec<String> = known.iter().map(|k| format!("`{k}`")).collect();
         let expected = match list.as_slice() {
-            [] => String::new(),
+            [] => "something else".to_owned(),
             [only] => format!("only {only}"),
             [start @ .., last] => format!("one of {} or {last}", start.join(", ")),
         };
         let hint = nearest(name, known).map_or_else(
-            || "delete it, or use one of the names listed".to_owned(),
+            || "use one of the words listed".to_owned(),
             |near| format!("did you mean `{near}`?"),
         );
         let found = format!("`{}` is {is}", excerpt(name));
@@ -214,7 +200,9 @@ impl<'a> Reader<'a> {
             "name_differs_from_file",
             format!("`{key}: {name}` in a file named `{}`", excerpt(file)),
             format!("the file's name, which is how the {key} is found"),
-            Some(format!("rename the file to `{name}.yaml`, or correct `{key}`")),
+            Some(format!(
+                "rename the file to `{name}.yaml`, or correct `{key}`"
+            )),
         );
     }
 
@@ -255,7 +243,9 @@ pub fn nearest<'k>(name: &str, known: &[&'k str]) -> Option<&'k str> {
         .map(|k| (strsim::damerau_levenshtein(&name, &plain(k)), *k));
     let (distance, best) = scored.min_by_key(|(distance, _)| *distance)?;
     let length = best.chars().count().max(name.chars().count());
-    let prefix = name.len() >= 3 && best.starts_with(&name);
+    let prefix = name.len() >= 3
+        && best.starts_with(&name)
+        && known.iter().filter(|k| k.starts_with(&name)).count() == 1;
     (distance * 5 <= length * 2 || prefix).then_some(best)
 }
 

@@ -51,15 +51,27 @@ pub fn is_plain_decimal(text: &str) -> bool {
 /// Whether a number is decimal at all (`-1.5`, `1e-3`), unlike `0x1F`, `0o17` or `.inf`.
 pub fn is_decimal(text: &str) -> bool {
     let digits = text.trim_start_matches(['+', '-']);
-    digits.bytes().all(|b| b.is_ascii_digit() || matches!(b, b'.' | b'e' | b'E' | b'+' | b'-'))
+    digits
+        .bytes()
+        .all(|b| b.is_ascii_digit() || matches!(b, b'.' | b'e' | b'E' | b'+' | b'-'))
         && digits.starts_with(|c: char| c.is_ascii_digit())
 }
 
-/// Whether other YAML readers take an unquoted word for true or false.
-pub fn is_old_boolean(text: &str) -> bool {
-    ["y", "n", "yes", "no", "on", "off", "true", "false"]
+/// Whether other YAML readers take an unquoted text for something else: `no` for false, `010` for
+/// eight, `1:30` for ninety, `1_000` for a thousand, `2026-10-05` for a day (YAML 1.1 types).
+pub fn is_read_otherwise(text: &str) -> bool {
+    let boolean = ["y", "n", "yes", "no", "on", "off", "true", "false"]
         .iter()
-        .any(|word| text.eq_ignore_ascii_case(word))
+        .any(|word| text.eq_ignore_ascii_case(word));
+    let made_of = |extra: &[char]| {
+        text.starts_with(|c: char| c.is_ascii_digit())
+            && text
+                .chars()
+                .all(|c| c.is_ascii_digit() || extra.contains(&c))
+    };
+    let zeros = text.len() > 1 && text.starts_with('0') && made_of(&[]);
+    let day = text.split('-').count() == 3 && made_of(&['-']);
+    boolean || zeros || day || (text.contains([':', '_']) && made_of(&[':', '_', '.']))
 }
 
 #[cfg(test)]
@@ -71,8 +83,29 @@ mod tests {
         for text in ["3", "0.65", "4000", "3.10", "0"] {
             assert!(is_plain_decimal(text), "{text}");
         }
-        for text in ["010", "1e3", ".5", "0x1F", "+1", "-1", "1.", "1_000", ".nan", ""] {
+        for text in [
+            "010", "1e3", ".5", "0x1F", "+1", "-1", "1.", "1_000", ".nan", "",
+        ] {
             assert!(!is_plain_decimal(text), "{text}");
+        }
+    }
+
+    #[test]
+    fn texts_that_other_readers_take_for_something_else() {
+        for text in [
+            "no",
+            "Y",
+            "OFF",
+            "010",
+            "0238",
+            "1:30",
+            "1_000",
+            "2026-10-05",
+        ] {
+            assert!(is_read_otherwise(text), "{text}");
+        }
+        for text in ["nope", "26K-0457", "2638", "0805-X7R", "4-2", "a_b", "12 V"] {
+            assert!(!is_read_otherwise(text), "{text}");
         }
     }
 

@@ -1,6 +1,6 @@
 //! Scalars as texts, names, numbers, quantities and times.
 
-use super::super::scalar::{is_decimal, is_old_boolean, is_plain_decimal};
+use super::super::scalar::{is_decimal, is_plain_decimal, is_read_otherwise};
 use super::{Node, Reader, Shape};
 use crate::diagnostic::{Span, excerpt, file_name};
 use crate::quantity::{self, Dimension, QuantityError, Tolerance};
@@ -13,30 +13,28 @@ impl Reader<'_> {
     /// A text. What YAML takes for a number stays as it stands where that is unambiguous
     /// (`3` is "3", `3.10` is "3.10"); otherwise quotes are asked for.
     pub fn text(&mut self, node: &Node, what: &str) -> Option<String> {
-        let text = match &node.shape {
-            Shape::Null => return None,
-            Shape::Text { text, quoted } if *quoted || !is_old_boolean(text) => text,
-            Shape::Number(text, _) if is_plain_decimal(text) => text,
-            Shape::Text { text, .. } | Shape::Number(text, _) | Shape::Bool(text) => {
-                self.needs_quotes(node, text, what);
-                return None;
-            }
-            Shape::List(_) | Shape::Map(_) => {
-                self.wrong_kind(node, what);
-                return None;
-            }
+        let text = self.scalar(node, what)?;
+        let clear = match &node.shape {
+            Shape::Text { quoted, .. } => *quoted || !is_read_otherwise(text),
+            Shape::Number(..) => is_plain_decimal(text),
+            _ => false,
         };
+        if !clear {
+            self.needs_quotes(node, text, what);
+            return None;
+        }
         if text.trim().is_empty() {
-            self.fault(node.span, "empty_text", "an empty text", what, None);
+            let found = format!("an empty text for {what}");
+            self.fault(node.span, "empty_text", found, "a text", None);
             return None;
         }
         if text.chars().count() > LONGEST_TEXT {
-            let found = format!("a text of {} characters", text.chars().count());
-            let expected = format!("{what} of at most {LONGEST_TEXT} characters");
+            let found = format!("a text of {} characters for {what}", text.chars().count());
+            let expected = format!("at most {LONGEST_TEXT} characters");
             self.fault(node.span, "text_too_long", found, expected, None);
             return None;
         }
-        Some(text.clone())
+        Some(text.to_owned())
     }
 
     /// A text of one line without invisible characters, as records and screens can show it.
@@ -47,8 +45,8 @@ impl Reader<'_> {
             self.fault(
                 node.span,
                 "hidden_character",
-                format!("an invisible character in `{}`", excerpt(&text)),
-                format!("{what} in one line of visible characters"),
+                format!("an invisible character in {what} `{}`", excerpt(&text)),
+                "one line of visible characters",
                 Some("type the text anew".to_owned()),
             );
             return None;
@@ -63,9 +61,9 @@ impl Reader<'_> {
             self.fault(
                 node.span,
                 "name_not_safe",
-                found,
+                format!("{found} for {what}"),
                 format!(
-                    "{what} that can name a file everywhere: letters A-Z a-z, digits, `-`, `_`, \
+                    "a name that a file can have everywhere: letters A-Z a-z, digits, `-`, `_`, \
                      `.`, `+`, single spaces inside, at most {} characters",
                     file_name::LONGEST
                 ),
@@ -83,8 +81,8 @@ impl Reader<'_> {
             self.fault(
                 node.span,
                 "path_not_safe",
-                found,
-                format!("{what}: a path inside its folder, with `/` between steps"),
+                format!("{found} for {what}"),
+                "a path inside its folder, with `/` between steps",
                 Some("write for example `compensation/open.csv`".to_owned()),
             );
             return None;
@@ -94,34 +92,29 @@ impl Reader<'_> {
 
     /// One of some words; answers its index.
     pub fn one_of(&mut self, node: &Node, what: &str, words: &[&str]) -> Option<usize> {
-        let text = match &node.shape {
-            Shape::Null => return None,
-            Shape::Text { text, .. } | Shape::Number(text, _) | Shape::Bool(text) => text,
-            Shape::List(_) | Shape::Map(_) => {
-                self.wrong_kind(node, what);
-                return None;
-            }
-        };
-        let index = words.iter().position(|word| word == text);
+        let text = self.scalar(node, what)?;
+        let index = words.iter().position(|word| *word == text);
         if index.is_none() {
-            self.unknown(node.span, "unknown_value", text, &format!("not {what}"), words);
+            self.unknown(
+                node.span,
+                "unknown_value",
+                text,
+                &format!("not {what}"),
+                words,
+            );
         }
         index
     }
 
     /// A finite decimal number without a unit.
     pub fn number(&mut self, node: &Node, what: &str) -> Option<f64> {
+        let text = self.scalar(node, what)?;
         match &node.shape {
-            Shape::Null => None,
-            Shape::Number(text, value) if is_decimal(text) && value.is_finite() => Some(*value),
-            Shape::List(_) | Shape::Map(_) => {
-                self.wrong_kind(node, what);
-                None
-            }
+            Shape::Number(_, value) if is_decimal(text) && value.is_finite() => Some(*value),
             shape => {
-                let found = shape.words();
+                let found = format!("{} for {what}", shape.words());
                 let hint = number_hint(shape);
-                self.fault(node.span, "not_a_number", found, format!("{what}: a number"), hint);
+                self.fault(node.span, "not_a_number", found, "a number", hint);
                 None
             }
         }
@@ -138,29 +131,32 @@ impl Reader<'_> {
         if value >= least && value <= most {
             return Some(value);
         }
-        let expected = format!("{what} from {least} to {most}");
-        self.fault(node.span, "out_of_range", node.shape.words(), expected, None);
+        let found = format!("{} for {what}", node.shape.words());
+        let expected = format!("a number from {least} to {most}");
+        self.fault(node.span, "out_of_range", found, expected, None);
         None
     }
 
     /// A whole number in a closed range.
     pub fn integer(&mut self, node: &Node, what: &str, (least, most): (u64, u64)) -> Option<u64> {
-        let expected = format!("{what}: a whole number from {least} to {most}");
-        if let Shape::Number(text, _) = &node.shape {
-            let whole = if is_plain_decimal(text) { text.parse::<u64>().ok() } else { None };
-            if let Some(value) = whole.filter(|value| (least..=most).contains(value)) {
-                return Some(value);
-            }
-            self.fault(node.span, "out_of_range", node.shape.words(), expected, None);
+        let text = self.scalar(node, what)?;
+        let found = format!("{} for {what}", node.shape.words());
+        let expected = format!("a whole number from {least} to {most}");
+        if !matches!(node.shape, Shape::Number(..)) {
+            let hint = number_hint(&node.shape);
+            self.fault(node.span, "not_a_number", found, expected, hint);
             return None;
         }
-        if matches!(node.shape, Shape::List(_) | Shape::Map(_)) {
-            self.wrong_kind(node, what);
-        } else if !matches!(node.shape, Shape::Null) {
-            let hint = number_hint(&node.shape);
-            self.fault(node.span, "not_a_number", node.shape.words(), expected, hint);
+        let whole = if is_plain_decimal(text) {
+            text.parse::<u64>().ok()
+        } else {
+            None
+        };
+        let value = whole.filter(|value| (least..=most).contains(value));
+        if value.is_none() {
+            self.fault(node.span, "out_of_range", found, expected, None);
         }
-        None
+        value
     }
 
     /// A number with a unit, in SI.
@@ -183,7 +179,7 @@ impl Reader<'_> {
         if possible(value) {
             return Some(value);
         }
-        let found = format!("{what} {}", shown(node));
+        let found = format!("{} for {what}", shown(node));
         let hint = (dimension == Dimension::Ratio && value > 1.0 && !has_percent(node))
             .then(|| "write the sign `%` if percent was meant".to_owned());
         self.fault(node.span, "impossible_value", found, expected, hint);
@@ -217,21 +213,24 @@ impl Reader<'_> {
 
     /// A calendar day, `2026-03-02`.
     pub fn date(&mut self, node: &Node, what: &str) -> Option<NaiveDate> {
-        let text = self.text(node, what)?;
-        let day = parse_date(&text);
+        let day = parse_date(self.scalar(node, what)?);
         if day.is_none() {
-            self.not_a_time(node, "a day that exists, as year-month-day: `2026-03-02`");
+            self.not_a_time(
+                node,
+                what,
+                "a day that exists, as year-month-day: `2026-03-02`",
+            );
         }
         day
     }
 
     /// A moment with its offset from UTC, `2026-10-05T07:50:00+02:00`.
     pub fn moment(&mut self, node: &Node, what: &str) -> Option<DateTime<FixedOffset>> {
-        let text = self.text(node, what)?;
-        let moment = parse_moment(&text);
+        let moment = parse_moment(self.scalar(node, what)?);
         if moment.is_none() {
             self.not_a_time(
                 node,
+                what,
                 "day, time and offset from UTC: `2026-10-05T07:50:00+02:00`",
             );
         }
@@ -239,25 +238,40 @@ impl Reader<'_> {
     }
 
     /// The value is of the wrong kind for a moment or day.
-    pub fn not_a_time(&mut self, node: &Node, expected: &str) {
+    pub fn not_a_time(&mut self, node: &Node, what: &str, expected: &str) {
         let hint = "write it as in the example; the offset is that of the bench's clock";
         let hint = expected.contains("offset").then(|| hint.to_owned());
-        self.fault(node.span, "not_a_time", node.shape.words(), expected, hint);
+        let found = format!("{} for {what}", node.shape.words());
+        self.fault(node.span, "not_a_time", found, expected, hint);
     }
 
     fn quantity_text<'n>(&mut self, node: &'n Node, what: &str) -> Option<&'n str> {
+        let text = self.scalar(node, what)?;
         match &node.shape {
-            Shape::Null => None,
-            Shape::Text { text, .. } => Some(text),
-            Shape::Number(text, _) if is_decimal(text) => Some(text),
-            Shape::Number(..) | Shape::Bool(_) => {
-                let found = node.shape.words();
-                let expected = format!("{what} as a decimal number with its unit");
+            Shape::Text { .. } => Some(text),
+            Shape::Number(..) if is_decimal(text) => Some(text),
+            _ => {
+                let found = format!("{} for {what}", node.shape.words());
+                let expected = "a decimal number with its unit";
                 self.fault(node.span, "not_a_quantity", found, expected, None);
                 None
             }
+        }
+    }
+
+    /// The text of a scalar as it stands in the file; anything else is a fault.
+    pub fn scalar<'n>(&mut self, node: &'n Node, what: &str) -> Option<&'n str> {
+        match &node.shape {
+            Shape::Text { text, .. } | Shape::Number(text, _) | Shape::Bool(text) => Some(text),
+            Shape::Null => {
+                let hint = Some("write the value, or delete the key".to_owned());
+                let found = format!("no value for {what}");
+                self.fault(node.span, "missing_value", found, "a value", hint);
+                None
+            }
             Shape::List(_) | Shape::Map(_) => {
-                self.wrong_kind(node, what);
+                let found = format!("{} for {what}", node.shape.words());
+                self.fault(node.span, "wrong_kind", found, "one value", None);
                 None
             }
         }
@@ -267,8 +281,8 @@ impl Reader<'_> {
         match read {
             Ok(value) => Some(value),
             Err(error) => {
-                let expected = format!("{what}: {}", error.expected);
-                self.fault(span, "not_a_quantity", error.found, expected, error.hint);
+                let found = format!("{what}: {}", error.found);
+                self.fault(span, "not_a_quantity", found, error.expected, error.hint);
                 None
             }
         }
@@ -279,15 +293,10 @@ impl Reader<'_> {
         self.fault(
             node.span,
             "needs_quotes",
-            format!("`{text}`, which YAML readers can take for a number, true or false"),
-            format!("{what}: a text"),
+            format!("`{text}` for {what}: YAML readers may take it for something else"),
+            "a text",
             Some(format!("put quotes around it: \"{text}\"")),
         );
-    }
-
-    fn wrong_kind(&mut self, node: &Node, what: &str) {
-        let found = node.shape.words();
-        self.fault(node.span, "wrong_kind", found, format!("{what}: one value"), None);
     }
 }
 
