@@ -41,6 +41,13 @@ impl Window {
         }
     }
 
+    /// The same, a millionth of the window's ends counting as inside: levels are printed rounded.
+    pub fn contains_nearly(&self, value: f64) -> bool {
+        let slack = |limit: f64| 1e-6 * limit.abs();
+        self.lower.is_none_or(|l| value >= l - slack(l))
+            && self.upper.is_none_or(|u| value <= u + slack(u))
+    }
+
     /// Whether a value lies in the closed window.
     pub fn contains(&self, value: f64) -> bool {
         self.lower.is_none_or(|l| value >= l) && self.upper.is_none_or(|u| value <= u)
