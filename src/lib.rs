@@ -11,6 +11,7 @@ pub mod certificate;
 pub mod commands;
 pub mod diagnostic;
 pub mod judgement;
+pub mod label;
 pub mod limits;
 pub mod lot;
 pub mod quantity;

@@ -21,6 +21,9 @@ pub struct PartRecord {
     /// nonconformity is a class A nonconforming item, whatever else it has). Of the most serious
     /// undecided characteristic, where undecided.
     pub class: Option<String>,
+    /// V rms across the part at the test frequency, where the sweep carries it.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub drive: Option<f64>,
     /// Every try in order; the part's verdict and readings are of the try marked `counts`.
     pub attempts: Vec<AttemptRecord>,
     pub readings: IndexMap<String, ReadingRecord>,
@@ -47,6 +50,7 @@ pub struct AttemptRecord {
 #[allow(missing_docs)]
 pub struct JudgedTry {
     pub verdict: PartVerdict,
+    pub drive: Option<f64>,
     pub class: Option<String>,
     pub readings: IndexMap<String, ReadingRecord>,
     pub faults: Vec<Note>,
@@ -68,6 +72,7 @@ pub fn judge_try(
         Err(faults) => {
             return JudgedTry {
                 verdict: PartVerdict::Unmeasured,
+                drive: None,
                 class: None,
                 readings: IndexMap::new(),
                 faults: faults.clone(),
@@ -75,7 +80,11 @@ pub fn judge_try(
             };
         }
     };
-    let faults: Vec<Note> = drive_fault(sweep, limits).into_iter().collect();
+    let drive = drive_of(sweep, limits);
+    let faults: Vec<Note> = drive
+        .and_then(|drive| drive_fault(drive, limits))
+        .into_iter()
+        .collect();
     let mut readings = IndexMap::new();
     for bound in &limits.bounds {
         let request = Request {
@@ -116,6 +125,7 @@ pub fn judge_try(
         .collect();
     JudgedTry {
         verdict,
+        drive,
         class,
         readings,
         faults,
@@ -160,7 +170,7 @@ fn drive_frequency(limits: &Limits) -> Option<f64> {
 }
 
 /// The true voltage across the part at the test frequency, where the sweep carries it: V rms.
-pub(crate) fn drive_of(sweep: &Sweep, limits: &Limits) -> Option<f64> {
+fn drive_of(sweep: &Sweep, limits: &Limits) -> Option<f64> {
     let level = sweep.level.as_ref()?;
     let frequency = drive_frequency(limits)?;
     let i = sweep
@@ -172,13 +182,9 @@ pub(crate) fn drive_of(sweep: &Sweep, limits: &Limits) -> Option<f64> {
     Some(level[i - 1] + share * (level[i] - level[i - 1]))
 }
 
-fn drive_fault(sweep: &Sweep, limits: &Limits) -> Option<Note> {
+fn drive_fault(drive: f64, limits: &Limits) -> Option<Note> {
     let window: Window = limits.conditions.drive?;
-    let drive = drive_of(sweep, limits)?;
-    // Levels are printed with a few digits; a window's own bound counts as inside.
-    let inside = window.lower.is_none_or(|l| drive >= l * (1.0 - 1e-6))
-        && window.upper.is_none_or(|u| drive <= u * (1.0 + 1e-6));
-    (!inside).then(|| {
+    (!window.contains_nearly(drive)).then(|| {
         Note::new(
             "drive_out_of_range",
             format!(
@@ -242,6 +248,7 @@ pub fn judge_part(tries: &[(&Attempt, JudgedTry)], retest: &Retest) -> (PartReco
     let record = PartRecord {
         part: tries[counting].0.part.clone(),
         verdict: counted.verdict,
+        drive: counted.drive,
         class: counted.class.clone(),
         attempts,
         readings: counted.readings.clone(),

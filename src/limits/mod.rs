@@ -1,4 +1,18 @@
 //! Limit files: text to validated `Limits`.
+//!
+//! `Limits` exists only valid; `read` makes it, or lists every fault of the file. One file for
+//! each part of a limit file: `bound`, `conditions`, `acceptance`, `lot_rules`; `stated` compares
+//! the nominal value with what code and description say.
+
+mod acceptance;
+mod bound;
+mod conditions;
+mod lot_rules;
+mod read;
+mod stated;
+
+pub use bound::{HIGHEST_FREQUENCY, LOWEST_FREQUENCY};
+pub use read::{SCHEMA, read};
 
 use crate::readings::{Characteristic, Equivalent, Place};
 
@@ -39,6 +53,13 @@ impl Window {
             (None, Some(u)) => format!("at most {}", text(u)),
             (None, None) => "anything".to_owned(),
         }
+    }
+
+    /// The same, a millionth of the window's ends counting as inside: levels are printed rounded.
+    pub fn contains_nearly(&self, value: f64) -> bool {
+        let slack = |limit: f64| 1e-6 * limit.abs();
+        self.lower.is_none_or(|l| value >= l - slack(l))
+            && self.upper.is_none_or(|u| value <= u + slack(u))
     }
 
     /// Whether a value lies in the closed window.
