@@ -9,9 +9,13 @@ pub mod capability;
 pub mod distributions;
 pub mod operating_characteristic;
 pub mod outliers;
+mod quadrature;
 mod root;
 pub mod sampling;
+pub mod share;
 pub mod summary;
+pub mod switching;
+pub mod tolerance;
 mod undefined;
 
 pub use undefined::Undefined;

@@ -8,4 +8,7 @@ mod operating_characteristic;
 mod outliers;
 mod reference;
 mod sampling;
+mod share;
 mod summary;
+mod switching;
+mod tolerance;
