@@ -1,0 +1,17 @@
+//! The statistics against published tables, worked examples and high-precision references.
+//!
+//! The reference files stand in `tests/reference/statistics`; each names its source and how it was obtained.
+
+mod capability;
+mod distributions;
+mod normality;
+mod operating_characteristic;
+mod outliers;
+mod percentile;
+mod reference;
+mod sampling;
+mod share;
+mod summary;
+mod switching;
+mod tolerance;
+mod variables;
