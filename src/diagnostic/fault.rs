@@ -86,6 +86,12 @@ impl Faults {
         self.faults.iter()
     }
 
+    /// The faults for a terminal, styled with ANSI sequences, which an output stream strips where
+    /// there is no terminal. `to_string()` has them plain.
+    pub fn render(&self) -> String {
+        super::render(self, true)
+    }
+
     /// How many further faults were found and not kept.
     pub fn more(&self) -> usize {
         self.more

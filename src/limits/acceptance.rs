@@ -5,16 +5,9 @@ use super::bound::{Bounded, is_class};
 use crate::diagnostic::excerpt;
 use crate::diagnostic::yaml::{Fields, Node, Reader, shown};
 use crate::quantity::Dimension;
+use crate::statistics::sampling::{AQL_SERIES, InspectionLevel, aql_index, neighbouring_aqls};
 
 const KINDS: [&str; 4] = ["attributes", "variables", "zero_acceptance", "fixed"];
-
-/// Inspection levels, ISO 2859-1:1999 table 1.
-const LEVELS: [&str; 7] = ["S-1", "S-2", "S-3", "S-4", "I", "II", "III"];
-
-/// The preferred AQLs in percent nonconforming, ISO 2859-1:1999 table 2-A.
-const AQL_SERIES: [f64; 16] = [
-    0.010, 0.015, 0.025, 0.040, 0.065, 0.10, 0.15, 0.25, 0.40, 0.65, 1.0, 1.5, 2.5, 4.0, 6.5, 10.0,
-];
 
 /// Exactly one kind of acceptance; every class of the bounds has its AQL.
 pub fn read(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<Acceptance> {
@@ -56,10 +49,12 @@ fn level_and_aql(
     what: &str,
 ) -> Option<LevelAndAql> {
     let fields = reader.fields(node, what, &["level", "aql"])?;
+    let levels = InspectionLevel::ALL.map(|level| level.to_string());
+    let levels: Vec<&str> = levels.iter().map(String::as_str).collect();
     let level = reader
         .required(&fields, "level", what, "II")
-        .and_then(|node| reader.one_of(node, "an inspection level", &LEVELS))
-        .and_then(|index| LEVELS.get(index));
+        .and_then(|node| reader.one_of(node, "an inspection level", &levels))
+        .and_then(|index| levels.get(index));
     let aql = reader
         .required(&fields, "aql", what, "{A: 0.65}")
         .and_then(|node| aql_by_class(reader, node, bounded));
@@ -118,26 +113,41 @@ fn classes_without_aql(reader: &mut Reader<'_>, fields: &Fields<'_>, bounded: &B
 /// An AQL of the series, in percent.
 fn aql(reader: &mut Reader<'_>, node: &Node) -> Option<f64> {
     let percent = reader.number(node, "an AQL in percent")?;
-    if let Some(listed) = AQL_SERIES.iter().find(|listed| **listed == percent) {
+    if let Some(listed) = aql_index(percent).and_then(|index| AQL_SERIES.get(index)) {
         return Some(*listed);
     }
-    let below = AQL_SERIES.iter().rev().find(|listed| **listed < percent);
-    let above = AQL_SERIES.iter().find(|listed| **listed > percent);
-    let hint = match (below, above) {
-        (Some(below), Some(above)) => format!("its neighbours are {below} and {above}"),
-        (None, Some(least)) => format!("the lowest is {least}"),
-        (Some(most), None) => format!("the highest is {most}"),
+    let hint = match neighbouring_aqls(percent) {
+        (Some(below), Some(above)) => {
+            format!(
+                "its neighbours are {} and {}",
+                aql_text(below),
+                aql_text(above)
+            )
+        }
+        (None, Some(least)) => format!("the lowest is {}", aql_text(least)),
+        (Some(most), None) => format!("the highest is {}", aql_text(most)),
         (None, None) => "choose one of the series".to_owned(),
     };
+    let series = AQL_SERIES.map(aql_text).join(" ");
     reader.fault(
         node.span,
         "aql_not_in_series",
         format!("the AQL {} is not in the series", shown(node)),
-        "an AQL of ISO 2859-1, in percent: 0.010 0.015 0.025 0.040 0.065 0.10 0.15 0.25 0.40 \
-         0.65 1.0 1.5 2.5 4.0 6.5 10",
+        format!("an AQL of ISO 2859-1, in percent: {series}"),
         Some(hint),
     );
     None
+}
+
+/// An AQL as ISO 2859-1 prints it: `0.010`, `0.65`, `1.0`, `10`.
+pub fn aql_text(percent: f64) -> String {
+    let places = match percent {
+        p if p >= 10.0 => 0,
+        p if p >= 1.0 => 1,
+        p if p >= 0.1 => 2,
+        _ => 3,
+    };
+    format!("{percent:.places$}")
 }
 
 fn zero_acceptance(reader: &mut Reader<'_>, node: &Node) -> Option<Acceptance> {

@@ -11,6 +11,7 @@ mod lot_rules;
 mod read;
 mod stated;
 
+pub use acceptance::aql_text;
 pub use bound::{HIGHEST_FREQUENCY, LOWEST_FREQUENCY};
 pub use read::{SCHEMA, read};
 

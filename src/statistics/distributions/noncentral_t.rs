@@ -54,7 +54,7 @@ pub fn noncentral_t_quantile(p: f64, nu: f64, delta: f64) -> f64 {
 
 /// δ with P(T > t) = p: the noncentrality that leaves an observed t at that upper tail. For 0 < p < 1, ν ≥ 1.
 pub fn noncentrality_at(t: f64, nu: f64, p: f64) -> f64 {
-    if !(p > 0.0 && p < 1.0) || !t.is_finite() {
+    if !(p > 0.0 && p < 1.0 && t.is_finite()) {
         return f64::NAN;
     }
     let excess = |delta: f64| {
