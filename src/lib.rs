@@ -12,6 +12,7 @@ pub mod commands;
 pub mod diagnostic;
 pub mod judgement;
 pub mod label;
+pub mod ledger;
 pub mod limits;
 pub mod lot;
 pub mod quantity;

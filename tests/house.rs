@@ -34,8 +34,10 @@ fn code() -> BTreeMap<String, Vec<(PathBuf, String)>> {
         files.sort();
         let texts = files.into_iter().map(|path| {
             let text = fs::read_to_string(&path).expect("a source file");
-            let code: Vec<&str> =
-                text.lines().map(|line| line.split("//").next().unwrap_or("")).collect();
+            let code: Vec<&str> = text
+                .lines()
+                .map(|line| line.split("//").next().unwrap_or(""))
+                .collect();
             (path, code.join("\n"))
         });
         all.insert(layer, texts.collect());
@@ -46,7 +48,10 @@ fn code() -> BTreeMap<String, Vec<(PathBuf, String)>> {
 /// Names that follow `crate::` in a text: `a` of `crate::a::b`, and of `crate::{a::b, c}`.
 fn uses(code: &str) -> Vec<String> {
     let word = |text: &str| -> String {
-        text.trim_start().chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect()
+        text.trim_start()
+            .chars()
+            .take_while(|c| c.is_alphanumeric() || *c == '_')
+            .collect()
     };
     let mut found = Vec::new();
     for rest in code.split("crate::").skip(1) {
@@ -78,7 +83,10 @@ fn uses(code: &str) -> Vec<String> {
 #[test]
 fn a_module_uses_only_those_above_it() {
     let layers = layers();
-    assert!(layers.len() > 10, "src/lib.rs declares the modules one a line: {layers:?}");
+    assert!(
+        layers.len() > 10,
+        "src/lib.rs declares the modules one a line: {layers:?}"
+    );
     let place = |name: &str| layers.iter().position(|l| l == name);
     let mut seen = 0;
     for (layer, files) in code() {
@@ -94,7 +102,10 @@ fn a_module_uses_only_those_above_it() {
             }
         }
     }
-    assert!(seen > 50, "the test found only {seen} uses: it no longer understands the sources");
+    assert!(
+        seen > 50,
+        "the test found only {seen} uses: it no longer understands the sources"
+    );
 }
 
 #[test]
@@ -109,7 +120,11 @@ fn what_must_not_see_what() {
     let code = code();
     for (module, other) in forbidden {
         for (path, text) in code.get(module).into_iter().flatten() {
-            assert!(!uses(text).iter().any(|u| u == other), "{}: `{module}` must not see `{other}`", path.display());
+            assert!(
+                !uses(text).iter().any(|u| u == other),
+                "{}: `{module}` must not see `{other}`",
+                path.display()
+            );
         }
     }
 }
@@ -117,15 +132,28 @@ fn what_must_not_see_what() {
 #[test]
 fn files_clock_and_environment_stay_at_the_ends() {
     let doors = ["commands", "ledger", "bench"];
-    let touches =
-        ["std::fs", "std::env::var", "std::net", "Local::now", "Utc::now", "SystemTime", "Instant::now", "std::process", "println!"];
+    let touches = [
+        "std::fs",
+        "std::env::var",
+        "std::net",
+        "Local::now",
+        "Utc::now",
+        "SystemTime",
+        "Instant::now",
+        "std::process",
+        "println!",
+    ];
     for (layer, files) in code() {
         if doors.contains(&layer.as_str()) {
             continue;
         }
         for (path, text) in files {
             for touch in touches {
-                assert!(!text.contains(touch), "{}: {touch} belongs to {doors:?}", path.display());
+                assert!(
+                    !text.contains(touch),
+                    "{}: {touch} belongs to {doors:?}",
+                    path.display()
+                );
             }
         }
     }
@@ -136,7 +164,11 @@ fn no_output_that_panics_when_the_pipe_is_closed() {
     for files in code().into_values() {
         for (path, text) in files {
             for macro_name in ["println!", "print!(", "eprintln!", "eprint!("] {
-                assert!(!text.contains(macro_name), "{}: {macro_name} panics on a closed pipe", path.display());
+                assert!(
+                    !text.contains(macro_name),
+                    "{}: {macro_name} panics on a closed pipe",
+                    path.display()
+                );
             }
         }
     }
