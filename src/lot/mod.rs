@@ -1,4 +1,16 @@
 //! The lot: its identity as `lot.yaml` states it, and its judgement from parts, plan and statistics.
+//!
+//! No files, no clock: what a lot comes to depends on the arguments alone.
+
+mod conditions;
+mod sampling;
+mod statistics;
+mod verdict;
+
+pub use conditions::ConditionSection;
+pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan};
+pub use statistics::{Statistics, statistics};
+pub use verdict::{LotJudgement, LotVerdict, judge};
 
 use chrono::{DateTime, FixedOffset, NaiveDateTime};
 
@@ -28,4 +40,14 @@ pub struct Lot {
     pub last_heat: Option<NaiveDateTime>,
     /// A folder or a file, relative to the lot folder.
     pub sweeps: String,
+}
+
+impl Lot {
+    /// Hours from last heat to the measurement, where last heat is known. Both are read on the
+    /// clock of the place of measurement.
+    pub fn age_hours(&self) -> Option<f64> {
+        let heat = self.last_heat?;
+        let age = self.measured.naive_local().signed_duration_since(heat);
+        Some(age.num_milliseconds() as f64 / 3.6e6)
+    }
 }

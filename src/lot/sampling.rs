@@ -1,0 +1,288 @@
+//! The sampling plan in force and the counts against it.
+
+use super::LotVerdict;
+use crate::judgement::{PartRecord, PartVerdict};
+use crate::limits::{Acceptance, Limits};
+use crate::statistics::Undefined;
+use crate::statistics::operating_characteristic::zero_acceptance_sample;
+use crate::statistics::sampling::{InspectionLevel, Severity, code_letter, plan_for};
+use indexmap::IndexMap;
+use serde::{Deserialize, Serialize};
+
+/// The class that stands for all bounds together where a scheme has no classes.
+const ALL: &str = "all";
+
+/// The sampling plan and the counts against it.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct Sampling {
+    /// `attributes`, `variables`, `zero_acceptance`, `fixed`.
+    pub scheme: String,
+    pub level: Option<String>,
+    /// Of the lot size and level, before arrows.
+    pub code_letter: Option<String>,
+    pub severity: Option<String>,
+    /// Source of the plan, with table or clause.
+    pub source: String,
+    /// Parts the plan demands: the largest n of its classes.
+    pub required: u64,
+    /// Parts with a sweep file.
+    pub presented: u64,
+    /// Parts with a verdict other than `unmeasured`.
+    pub measured: u64,
+    pub nonconforming: u64,
+    pub undecided: u64,
+    pub unmeasured: u64,
+    /// Nonconforming parts beyond the sample of their class.
+    pub nonconforming_beyond_sample: u64,
+    /// By class; for schemes without classes the class `all`.
+    pub classes: IndexMap<String, ClassSection>,
+}
+
+/// One class of nonconformity against its plan.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct ClassSection {
+    /// Percent; `null` where the plan has none.
+    pub aql: Option<f64>,
+    /// After arrows.
+    pub code_letter: Option<String>,
+    pub n: u64,
+    pub ac: u64,
+    pub re: u64,
+    /// Nonconforming parts within the first n.
+    pub nonconforming: u64,
+    /// Undecided parts within the first n.
+    pub undecided: u64,
+    /// `accept`, `reject` or `hold` by this class alone.
+    pub verdict: LotVerdict,
+}
+
+/// A sampling plan for a lot size.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct Plan {
+    pub scheme: &'static str,
+    pub level: Option<String>,
+    pub code_letter: Option<String>,
+    pub severity: Option<Severity>,
+    pub source: String,
+    pub classes: IndexMap<String, PlanClass>,
+}
+
+/// The plan of one class: n parts, at most Ac nonconforming.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct PlanClass {
+    pub aql: Option<f64>,
+    pub code_letter: Option<String>,
+    pub n: u64,
+    pub ac: u64,
+    pub re: u64,
+}
+
+impl Plan {
+    /// Parts the plan demands: the largest n of its classes.
+    pub fn required(&self) -> u64 {
+        self.classes
+            .values()
+            .map(|class| class.n)
+            .max()
+            .unwrap_or(0)
+    }
+}
+
+/// The plan that the acceptance section of a limit file gives for a lot size, or why there is none.
+///
+/// `attributes`: ISO 2859-1:1999 single sampling, tables 1 and 2-A to 2-C; a sample that is at
+/// least the lot is the whole lot (10.3, note on 100 % inspection). `zero_acceptance`: the smallest n with Ac = 0 that
+/// accepts a lot at the quality limit with at most the consumer's risk, by the hypergeometric law.
+///
+/// # Errors
+/// A sentence for people where the lot size or the scheme allows no plan.
+pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Result<Plan, String> {
+    match acceptance {
+        Acceptance::Attributes { level, aql } => attributes(level, aql, lot_size, severity),
+        Acceptance::Fixed { sample, accept } => Ok(Plan {
+            scheme: "fixed",
+            level: None,
+            code_letter: None,
+            severity: None,
+            source: "fixed sample and acceptance number of the limit file".to_owned(),
+            classes: single((*sample).min(lot_size), *accept),
+        }),
+        Acceptance::ZeroAcceptance { quality_limit, consumers_risk } => {
+            let n = zero_acceptance_sample(lot_size, *quality_limit, *consumers_risk)
+                .map_err(|why| format!("no zero-acceptance sample for a lot of {lot_size}: {}", why.text()))?;
+            Ok(Plan {
+                scheme: "zero_acceptance",
+                level: None,
+                code_letter: None,
+                severity: None,
+                source: "hypergeometric law, exact for the lot size".to_owned(),
+                classes: single(n, 0),
+            })
+        }
+        Acceptance::Variables { .. } => {
+            Err("sampling by variables needs the judgement of a person: this version judges by attributes".to_owned())
+        }
+    }
+}
+
+fn single(n: u64, ac: u64) -> IndexMap<String, PlanClass> {
+    let class = PlanClass {
+        aql: None,
+        code_letter: None,
+        n,
+        ac,
+        re: ac.saturating_add(1),
+    };
+    IndexMap::from([(ALL.to_owned(), class)])
+}
+
+fn attributes(
+    level: &str,
+    aql: &[(String, f64)],
+    lot_size: u64,
+    severity: Severity,
+) -> Result<Plan, String> {
+    let parsed: InspectionLevel = level
+        .parse()
+        .map_err(|_| format!("`{level}` is not an inspection level"))?;
+    if lot_size == 1 {
+        return Ok(single_part(level, aql, severity));
+    }
+    let letter = code_letter(lot_size, parsed).map_err(|why| no_plan(lot_size, why))?;
+    let mut classes = IndexMap::new();
+    for (class, aql) in aql {
+        let plan =
+            plan_for(lot_size, parsed, *aql, severity).map_err(|why| no_plan(lot_size, why))?;
+        classes.insert(
+            class.clone(),
+            PlanClass {
+                aql: Some(*aql),
+                code_letter: Some(plan.letter.to_string()),
+                n: plan.n,
+                ac: plan.ac,
+                re: plan.re,
+            },
+        );
+    }
+    Ok(Plan {
+        scheme: "attributes",
+        level: Some(level.to_owned()),
+        code_letter: Some(letter.to_string()),
+        severity: Some(severity),
+        source: format!(
+            "ISO 2859-1:1999, tables 1 and {}, single sampling",
+            severity.table()
+        ),
+        classes,
+    })
+}
+
+fn no_plan(lot_size: u64, why: Undefined) -> String {
+    format!("no sampling plan for a lot of {lot_size}: {}", why.text())
+}
+
+/// The tables of ISO 2859-1 begin with lots of two: a single part is inspected itself.
+fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
+    let class = |aql: f64| PlanClass {
+        aql: Some(aql),
+        code_letter: None,
+        n: 1,
+        ac: 0,
+        re: 1,
+    };
+    Plan {
+        scheme: "attributes",
+        level: Some(level.to_owned()),
+        code_letter: None,
+        severity: Some(severity),
+        source: "100 % inspection of a lot of one".to_owned(),
+        classes: aql
+            .iter()
+            .map(|(name, aql)| (name.clone(), class(*aql)))
+            .collect(),
+    }
+}
+
+/// Counts the parts, in sample order, against the plan.
+///
+/// A part counts in the class of its most serious nonconformity (ISO 2859-1, 3.1.7 to 3.1.9), in
+/// `all` where the plan has no classes. A nonconforming part beyond the sample of its class is
+/// counted apart, never ignored.
+pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampling {
+    let of = |verdict| parts.iter().filter(|p| p.verdict == verdict).count() as u64;
+    let unmeasured = of(PartVerdict::Unmeasured);
+    let mut beyond = 0;
+    let mut classes = IndexMap::new();
+    for (name, class) in &plan.classes {
+        let counts_here = |part: &&PartRecord| name == ALL || part.class.as_deref() == Some(name);
+        let inside = usize::try_from(class.n)
+            .unwrap_or(usize::MAX)
+            .min(parts.len());
+        let within = |verdict| {
+            parts[..inside]
+                .iter()
+                .filter(|p| p.verdict == verdict)
+                .filter(counts_here)
+                .count() as u64
+        };
+        beyond += parts[inside..]
+            .iter()
+            .filter(|p| p.verdict == PartVerdict::Nonconforming)
+            .filter(counts_here)
+            .count() as u64;
+        let (nonconforming, undecided) = (
+            within(PartVerdict::Nonconforming),
+            within(PartVerdict::Undecided),
+        );
+        classes.insert(
+            name.clone(),
+            ClassSection {
+                aql: class.aql,
+                code_letter: class.code_letter.clone(),
+                n: class.n,
+                ac: class.ac,
+                re: class.re,
+                nonconforming,
+                undecided,
+                verdict: class_verdict(class, nonconforming, undecided),
+            },
+        );
+    }
+    debug_assert!(
+        limits
+            .bounds
+            .iter()
+            .all(|b| plan.classes.contains_key(ALL) || plan.classes.contains_key(&b.class))
+    );
+    Sampling {
+        scheme: plan.scheme.to_owned(),
+        level: plan.level.clone(),
+        code_letter: plan.code_letter.clone(),
+        severity: plan.severity.map(|s| s.to_string()),
+        source: plan.source.clone(),
+        required: plan.required(),
+        presented: parts.len() as u64,
+        measured: parts.len() as u64 - unmeasured,
+        nonconforming: of(PartVerdict::Nonconforming),
+        undecided: of(PartVerdict::Undecided),
+        unmeasured,
+        nonconforming_beyond_sample: beyond,
+        classes,
+    }
+}
+
+/// Undecided parts are counted both ways: the class accepts only if it would with all of them
+/// nonconforming, and rejects only if it would with all of them conforming.
+fn class_verdict(class: &PlanClass, nonconforming: u64, undecided: u64) -> LotVerdict {
+    if nonconforming >= class.re {
+        LotVerdict::Reject
+    } else if nonconforming + undecided <= class.ac {
+        LotVerdict::Accept
+    } else {
+        LotVerdict::Hold
+    }
+}

@@ -1,0 +1,354 @@
+//! The verdict on the lot and every reason for it.
+//!
+//! A condition that was not met makes the measurement itself doubtful: it holds the lot whatever
+//! the counts say. Otherwise a rejection outweighs a hold, and a lot is accepted only if nothing
+//! speaks against it.
+
+use super::conditions::{self, ConditionSection, some_parts};
+use super::{Lot, statistics};
+use super::{LotVerdict::*, Plan, Sampling, Statistics, sampling};
+use crate::diagnostic::Note;
+use crate::judgement::{PartRecord, PartVerdict};
+use crate::limits::Limits;
+use crate::station::Station;
+use indexmap::IndexMap;
+use serde::{Deserialize, Serialize};
+use std::collections::BTreeMap;
+
+/// Verdict on a lot.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+#[allow(missing_docs)]
+pub enum LotVerdict {
+    Accept,
+    Reject,
+    Hold,
+}
+
+impl LotVerdict {
+    /// As the record spells it.
+    pub fn name(self) -> &'static str {
+        match self {
+            Accept => "accept",
+            Reject => "reject",
+            Hold => "hold",
+        }
+    }
+}
+
+/// What a lot comes to.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct LotJudgement {
+    pub verdict: LotVerdict,
+    /// Why, most important first; never empty.
+    pub reasons: Vec<Note>,
+    pub warnings: Vec<Note>,
+    pub sampling: Sampling,
+    pub statistics: IndexMap<String, Statistics>,
+    pub conditions: Vec<ConditionSection>,
+}
+
+/// Judges a lot from its parts, in sample order.
+///
+/// `further` are reasons found on the way here that hold the lot (a retest that the limit file
+/// does not allow).
+pub fn judge(
+    lot: &Lot,
+    limits: &Limits,
+    station: &Station,
+    plan: &Plan,
+    parts: &[PartRecord],
+    further: Vec<Note>,
+) -> LotJudgement {
+    let checked = conditions::check(lot, limits, station, parts);
+    let (sections, unmet): (Vec<_>, Vec<_>) =
+        checked.into_iter().map(|c| (c.section, c.reason)).unzip();
+    let unmet: Vec<Note> = unmet.into_iter().flatten().collect();
+    let sampling = sampling::count(plan, limits, parts);
+    let statistics = statistics(limits, parts);
+    let rejections = over_ac(&sampling);
+    let mut holds = undecided(&sampling, parts);
+    holds.extend(short_sample(lot, &sampling));
+    holds.extend(unmeasured(parts));
+    holds.extend(beyond(&sampling));
+    holds.extend(duplicates(parts));
+    holds.extend(further);
+    holds.extend(lot_rules(limits, &statistics));
+    let verdict = if !unmet.is_empty() {
+        Hold
+    } else if !rejections.is_empty() {
+        Reject
+    } else if !holds.is_empty() {
+        Hold
+    } else {
+        Accept
+    };
+    let mut reasons: Vec<Note> = unmet.into_iter().chain(rejections).chain(holds).collect();
+    if verdict == Accept {
+        reasons.push(Note::new(
+            "accepted_by_plan",
+            format!("{}, and nothing speaks against the lot", counts(&sampling)),
+        ));
+    }
+    LotJudgement {
+        verdict,
+        reasons,
+        warnings: warnings(limits, station),
+        sampling,
+        statistics,
+        conditions: sections,
+    }
+}
+
+/// `class A: 1 nonconforming of 200, Ac 3, Re 4; class B: …`
+fn counts(sampling: &Sampling) -> String {
+    let each: Vec<String> = sampling
+        .classes
+        .iter()
+        .map(|(name, c)| {
+            format!(
+                "{}: {} nonconforming of {}, Ac {}, Re {}",
+                class_words(name),
+                c.nonconforming,
+                c.n,
+                c.ac,
+                c.re
+            )
+        })
+        .collect();
+    each.join("; ")
+}
+
+fn class_words(name: &str) -> String {
+    if name == "all" {
+        "all characteristics".to_owned()
+    } else {
+        format!("class {name}")
+    }
+}
+
+fn over_ac(sampling: &Sampling) -> Vec<Note> {
+    sampling
+        .classes
+        .iter()
+        .filter(|(_, c)| c.verdict == Reject)
+        .map(|(name, c)| {
+            Note::new(
+                "nonconforming_over_ac",
+                format!(
+                    "{}: {} nonconforming of {}, the plan rejects from {} (Ac {}): do not release the reel",
+                    class_words(name),
+                    c.nonconforming,
+                    c.n,
+                    c.re,
+                    c.ac
+                ),
+            )
+        })
+        .collect()
+}
+
+fn undecided(sampling: &Sampling, parts: &[PartRecord]) -> Vec<Note> {
+    let names: Vec<&str> = parts
+        .iter()
+        .filter(|p| p.verdict == PartVerdict::Undecided)
+        .map(|p| p.part.as_str())
+        .collect();
+    sampling
+        .classes
+        .iter()
+        .filter(|(_, c)| c.verdict == Hold)
+        .map(|(name, c)| {
+            Note::new(
+                "undecided_parts",
+                format!(
+                    "{}: {} nonconforming and {} undecided of {}, Ac {}: within the measurement uncertainty of a limit the plan can be met \
+                     or not; a quality engineer decides ({})",
+                    class_words(name),
+                    c.nonconforming,
+                    c.undecided,
+                    c.n,
+                    c.ac,
+                    some_parts(&names)
+                ),
+            )
+        })
+        .collect()
+}
+
+fn short_sample(lot: &Lot, sampling: &Sampling) -> Vec<Note> {
+    let mut notes = Vec::new();
+    if sampling.presented < sampling.required {
+        notes.push(Note::new(
+            "sample_too_small",
+            format!(
+                "the plan demands {} parts, {} have a sweep: measure {} more",
+                sampling.required,
+                sampling.presented,
+                sampling.required - sampling.presented
+            ),
+        ));
+    }
+    if sampling.presented > lot.quantity {
+        notes.push(Note::new(
+            "more_parts_than_lot",
+            format!(
+                "{} parts have a sweep, the lot holds {}: check `quantity` and the sweep files",
+                sampling.presented, lot.quantity
+            ),
+        ));
+    }
+    notes
+}
+
+/// One reason for each cause, so that an operator sees what to do for which parts.
+fn unmeasured(parts: &[PartRecord]) -> Vec<Note> {
+    let all: Vec<&PartRecord> = parts
+        .iter()
+        .filter(|p| p.verdict == PartVerdict::Unmeasured)
+        .collect();
+    if all.is_empty() {
+        return Vec::new();
+    }
+    let mut by_cause: BTreeMap<&str, Vec<&str>> = BTreeMap::new();
+    for part in &all {
+        let cause = part
+            .faults
+            .first()
+            .or_else(|| part.warnings.first())
+            .map_or("no_reading", |n| n.code.as_str());
+        by_cause.entry(cause).or_default().push(&part.part);
+    }
+    let causes: Vec<String> = by_cause
+        .iter()
+        .map(|(cause, names)| format!("{}: {}", cause.replace('_', " "), some_parts(names)))
+        .collect();
+    vec![Note::new(
+        "unmeasured_parts",
+        format!(
+            "{} of {} parts could not be measured ({}): reseat and measure them again",
+            all.len(),
+            parts.len(),
+            causes.join("; ")
+        ),
+    )]
+}
+
+fn beyond(sampling: &Sampling) -> Vec<Note> {
+    let n = sampling.nonconforming_beyond_sample;
+    (n > 0)
+        .then(|| {
+            Note::new(
+                "nonconforming_beyond_sample",
+                format!("{n} nonconforming beyond the sample of {}: the plan does not count them, a quality engineer must", sampling.required),
+            )
+        })
+        .into_iter()
+        .collect()
+}
+
+/// The bytes of one sweep file cannot be the measurement of two parts.
+fn duplicates(parts: &[PartRecord]) -> Vec<Note> {
+    let mut files: BTreeMap<&str, Vec<(&str, &str)>> = BTreeMap::new();
+    for part in parts {
+        for attempt in &part.attempts {
+            files
+                .entry(&attempt.sha256)
+                .or_default()
+                .push((&part.part, &attempt.file));
+        }
+    }
+    files
+        .values()
+        .filter(|uses| uses.iter().any(|(_, file)| *file != uses[0].1))
+        .map(|uses| {
+            let names: Vec<&str> = uses.iter().map(|(_, file)| *file).collect();
+            Note::new(
+                "duplicate_sweep",
+                format!(
+                    "the same sweep was saved as {}: measure these parts again, each by itself",
+                    names.join(", ")
+                ),
+            )
+        })
+        .collect()
+}
+
+fn lot_rules(limits: &Limits, statistics: &IndexMap<String, Statistics>) -> Vec<Note> {
+    let mut notes = Vec::new();
+    for rule in &limits.capability_rules {
+        for key in &rule.of {
+            let Some(of) = statistics.get(key) else {
+                continue;
+            };
+            let name = rule.index.to_uppercase();
+            match of.index(&rule.index) {
+                Some(index) if index >= rule.min => {}
+                Some(index) => notes.push(Note::new(
+                    "capability_below_min",
+                    format!("{name} of {key} is {index:.2} from {} parts, at least {} is demanded: a quality engineer decides", of.n, rule.min),
+                )),
+                None => {
+                    let why = of.warnings.iter().find(|w| w.code == format!("{}_undefined", rule.index)).map_or("", |w| w.text.as_str());
+                    notes.push(Note::new(
+                        "capability_not_available",
+                        format!("{name} of {key} is demanded and cannot be had ({why}): a quality engineer decides"),
+                    ));
+                }
+            }
+        }
+    }
+    for rule in &limits.outlier_rules {
+        for key in &rule.of {
+            let Some(of) = statistics.get(key) else {
+                continue;
+            };
+            if of.outliers.len() as u64 > rule.allowed {
+                let names: Vec<&str> = of.outliers.iter().map(String::as_str).collect();
+                notes.push(Note::new(
+                    "outliers_found",
+                    format!(
+                        "{key}: {} unlike the rest of the lot ({}, significance {}), {} allowed: look at these parts",
+                        names.len(),
+                        some_parts(&names),
+                        rule.alpha,
+                        rule.allowed
+                    ),
+                ));
+            } else if let Some(why) = of.warnings.iter().find(|w| w.code == "outliers_undefined") {
+                notes.push(Note::new(
+                    "outliers_not_available",
+                    format!(
+                        "outliers of {key} are to be looked for and cannot be ({})",
+                        why.text
+                    ),
+                ));
+            }
+        }
+    }
+    notes
+}
+
+fn warnings(limits: &Limits, station: &Station) -> Vec<Note> {
+    let mut notes = Vec::new();
+    if station.instrument.as_ref().and_then(|i| i.due).is_none() {
+        notes.push(Note::new(
+            "calibration_not_stated",
+            "the station file states no calibration due date",
+        ));
+    }
+    if station.jig.as_ref().and_then(|j| j.valid_for).is_none() {
+        notes.push(Note::new(
+            "jig_check_not_stated",
+            "the station file states no jig check",
+        ));
+    }
+    if limits.conditions.drive.is_none() {
+        notes.push(Note::new(
+            "drive_not_demanded",
+            "the limit file demands no drive level; class 2 capacitance depends on it",
+        ));
+    }
+    notes
+}

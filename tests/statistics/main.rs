@@ -1,0 +1,11 @@
+//! The statistics against published tables, worked examples and high-precision references.
+//!
+//! The reference files stand in `tests/reference/statistics`; each names its source and how it was obtained.
+
+mod capability;
+mod distributions;
+mod operating_characteristic;
+mod outliers;
+mod reference;
+mod sampling;
+mod summary;
