@@ -4,10 +4,10 @@
 //! An object is written to a temporary name in its folder, synced, renamed, and the folder synced:
 //! under its name there is all of it or nothing. Each read hashes again.
 
-use super::digest::{is_hex_digest, sha256_hex};
+use super::digest::{is_hex_digest, sha256, sha256_hex};
 use super::disk::Disk;
 use super::error::LedgerError;
-use flate2::{Compression, bufread::GzDecoder, write::GzEncoder};
+use flate2::{Compression, Crc, bufread::GzDecoder, write::DeflateEncoder};
 use std::collections::{BTreeMap, BTreeSet};
 use std::fs;
 use std::io::{self, Read, Write};
@@ -212,15 +212,35 @@ impl Archive {
 
 const TEMPORARY: &str = ".tmp";
 
-/// gzip with no name and no time, so that the same bytes make the same file.
+/// Head of an object's file: gzip, no name, no time, one extra field of 32 bytes, "RG" (RFC 1952
+/// section 2.3), which holds the SHA-256 of everything after it. Different compressed bytes can
+/// stand for the same content; with this, no byte of the file can change unseen.
+const HEAD: [u8; 16] = [
+    0x1f, 0x8b, 8, 4, 0, 0, 0, 0, 0, 0xff, 36, 0, b'R', b'G', 32, 0,
+];
+
 fn pack(bytes: &[u8]) -> io::Result<Vec<u8>> {
-    let mut encoder = GzEncoder::new(Vec::new(), Compression::new(6));
+    let mut encoder = DeflateEncoder::new(Vec::new(), Compression::new(6));
     encoder.write_all(bytes)?;
-    encoder.finish()
+    let mut body = encoder.finish()?;
+    let mut crc = Crc::new();
+    crc.update(bytes);
+    body.extend_from_slice(&crc.sum().to_le_bytes());
+    body.extend_from_slice(&crc.amount().to_le_bytes());
+    Ok([&HEAD[..], &sha256(&body), &body].concat())
 }
 
 /// One gzip member, with nothing after it and no more in it than an object may have.
 fn unpack(packed: &[u8]) -> Result<Vec<u8>, String> {
+    let rest = packed
+        .strip_prefix(&HEAD)
+        .ok_or("not a file of the archive")?;
+    let (digest, body) = rest
+        .split_first_chunk::<32>()
+        .ok_or("not a file of the archive")?;
+    if sha256(body) != *digest {
+        return Err("its compressed bytes were changed".to_owned());
+    }
     let mut decoder = GzDecoder::new(packed);
     let mut bytes = Vec::new();
     decoder

@@ -358,7 +358,7 @@ impl Ledger {
     ) -> Result<Recorded, LedgerError> {
         let statement = approval::Statement::open(note, verifier)
             .map_err(|e| LedgerError::Refused(format!("{}: not approved: {e}", file.name)))?;
-        if !statement.approves(&self.verifier.name().to_owned(), file.name, file.bytes) {
+        if !statement.approves(self.verifier.name(), file.name, file.bytes) {
             return Err(LedgerError::Refused(format!(
                 "{}: the approval is of another file, of other bytes, or for another ledger",
                 file.name

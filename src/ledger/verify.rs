@@ -129,6 +129,8 @@ struct Walk<'a> {
     objects: BTreeMap<String, u64>,
     /// Records judged so far.
     records: BTreeSet<String>,
+    /// Whether an entry so far is missing or cannot be read, so that `records` may lack some.
+    incomplete: bool,
     /// Roots at the sizes that anchors speak of.
     roots: BTreeMap<u64, Option<Hash>>,
 }
@@ -145,6 +147,7 @@ impl<'a> Walk<'a> {
             frontier: Frontier::default(),
             objects: BTreeMap::new(),
             records: BTreeSet::new(),
+            incomplete: false,
             roots: sizes.map(|head| (head.size, None)).collect(),
         }
     }
@@ -173,6 +176,7 @@ impl<'a> Walk<'a> {
             Ok(row) => row,
             Err(error) => {
                 let index = self.next;
+                self.incomplete = true;
                 self.of_entry("entry_damaged", index, error.to_string());
                 return;
             }
@@ -187,6 +191,7 @@ impl<'a> Walk<'a> {
                 break;
             }
         }
+        self.incomplete |= row.index > self.next;
         self.next = row.index + 1;
         self.report.size = self.next;
         self.head(&row);
@@ -256,7 +261,10 @@ impl<'a> Walk<'a> {
     fn entry(&mut self, row: &Row) {
         let entry = match Entry::read(row.index, &row.body) {
             Ok(entry) => entry,
-            Err(error) => return self.of_entry("entry_damaged", row.index, error.to_string()),
+            Err(error) => {
+                self.incomplete = true;
+                return self.of_entry("entry_damaged", row.index, error.to_string());
+            }
         };
         if entry.ledger != self.ledger.verifier().name() {
             self.of_entry(
@@ -278,7 +286,7 @@ impl<'a> Walk<'a> {
             (Act::Judged { record, .. }, _) => {
                 self.records.insert(record.clone());
             }
-            (_, Some(record)) if !self.records.contains(record) => {
+            (_, Some(record)) if !self.incomplete && !self.records.contains(record) => {
                 let text = format!("it is about record {record:?}, which no entry before it made");
                 self.of_entry("record_unknown", row.index, text);
             }
