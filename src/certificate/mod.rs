@@ -1,1 +1,338 @@
 //! The PDF lot record.
+//!
+//! Everything on it is drawn from the [`LotRecord`], the curves and the two source files; nothing is
+//! computed here but geometry and the bins of histograms. Same arguments, same bytes.
+//!
+//! The way of a page: `section` places text and drawings in a `flow`, the flow fills `canvas`es with
+//! placed items, `pdf` writes them.
+
+mod canvas;
+mod figures;
+mod flow;
+mod furniture;
+mod ink;
+mod paper;
+mod pdf;
+mod plot;
+mod results_csv;
+mod section;
+mod table;
+mod text;
+mod typeface;
+
+pub use paper::Paper;
+
+use crate::diagnostic::Note;
+use crate::record::{LotRecord, PartVerdict};
+use flow::Flow;
+use num_complex::Complex64;
+use paper::Sheet;
+use pdf::{Attachment, Conformance, Description, Finish};
+use section::{characteristics, lot_word};
+use sha2::{Digest, Sha256};
+use std::collections::BTreeSet;
+
+/// The sweep of one part, as drawn.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Curve {
+    /// The part's number.
+    pub part: String,
+    /// Decides the stroke.
+    pub verdict: PartVerdict,
+    /// Hz; as long as `impedance`.
+    pub frequency: Vec<f64>,
+    /// Ω
+    pub impedance: Vec<Complex64>,
+}
+
+/// The files that the verdict rests on, as their authors wrote them.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+pub struct Sources<'a> {
+    /// Text of the limit file.
+    pub limit_file: Option<&'a str>,
+    /// Text of the station file.
+    pub station_file: Option<&'a str>,
+}
+
+/// A rendered lot record.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Certificate {
+    /// The file: PDF/A-3, level B (ISO 19005-3).
+    pub pdf: Vec<u8>,
+    /// `glyph_missing`, `code_omitted`, `date_omitted`: what the document could not show as it is.
+    pub warnings: Vec<Note>,
+}
+
+/// Why there is no document.
+#[derive(Debug)]
+pub enum CertificateError {
+    /// The typeface within the program is unreadable.
+    Typeface,
+    /// The record has no JSON form.
+    Record(serde_json::Error),
+    /// The PDF could not be put together.
+    Document(lopdf::Error),
+}
+
+impl std::fmt::Display for CertificateError {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            CertificateError::Typeface => {
+                write!(
+                    f,
+                    "the typeface within the program is unreadable: reinstall the program"
+                )
+            }
+            CertificateError::Record(e) => write!(f, "the record has no JSON form: {e}"),
+            CertificateError::Document(e) => write!(f, "the PDF could not be put together: {e}"),
+        }
+    }
+}
+
+impl std::error::Error for CertificateError {
+    fn source(&self) -> Option<&(dyn std::error::Error + 'static)> {
+        match self {
+            CertificateError::Typeface => None,
+            CertificateError::Record(e) => Some(e),
+            CertificateError::Document(e) => Some(e),
+        }
+    }
+}
+
+/// Renders the lot record as a PDF/A-3b document with the JSON record, the readings as CSV and the
+/// source files attached.
+///
+/// # Errors
+/// Only for faults of the program itself; no record, however strange its texts, is an error.
+pub fn render(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+) -> Result<Certificate, CertificateError> {
+    render_as(record, curves, sources, paper, Conformance::A3b)
+}
+
+/// The same pages as PDF/A-1b (ISO 19005-1), without attachments: for validators that know only
+/// part 1 of the standard.
+///
+/// # Errors
+/// As [`render`].
+pub fn render_archive_twin(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+) -> Result<Certificate, CertificateError> {
+    render_as(record, curves, sources, paper, Conformance::A1b)
+}
+
+fn render_as(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+    conformance: Conformance,
+) -> Result<Certificate, CertificateError> {
+    let json = json(record).map_err(CertificateError::Record)?;
+    let digest = hexadecimal(&json);
+    let (flow, mut warnings) = layout(record, curves, sources, paper, &digest);
+    let document = pdf::write(&flow.pages, &flow.sheet).ok_or(CertificateError::Typeface)?;
+    let description = describe(record, &mut warnings);
+    let attachments = attachments(record, sources, json);
+    let with = Finish {
+        sheet: &flow.sheet,
+        pages: &flow.pages,
+        anchors: &flow.anchors,
+        bookmarks: &flow.bookmarks,
+        description: &description,
+        attachments: &attachments,
+        conformance,
+    };
+    let pdf = pdf::finish(document, &with).map_err(CertificateError::Document)?;
+    Ok(Certificate { pdf, warnings })
+}
+
+/// Pours all sections and puts the furniture on every page.
+fn layout(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+    digest: &str,
+) -> (Flow, Vec<Note>) {
+    let mut flow = Flow::new(Sheet::new(paper));
+    let all = characteristics(record);
+    section::answer::answer(&mut flow, record, &all);
+    flow.new_page();
+    section::reasons::reasons(&mut flow, record);
+    section::curves::curves(&mut flow, record, curves);
+    flow.new_page();
+    section::distributions::distributions(&mut flow, &all);
+    flow.new_page();
+    section::order::order(&mut flow, &all, record.parts.len());
+    section::statistics::statistics(&mut flow, &all);
+    flow.new_page();
+    section::parts::parts(&mut flow, record, &all);
+    section::files::files(&mut flow, record);
+    flow.new_page();
+    section::sources::sources(&mut flow, sources);
+    section::station::station(&mut flow, record);
+    let coded = section::integrity::integrity(&mut flow, record, digest);
+    section::signatures::signatures(&mut flow, record);
+    furniture::furniture(&mut flow, record);
+    let mut warnings = missing_glyphs(&flow);
+    if !coded {
+        warnings.push(Note::new(
+            "code_omitted",
+            "The record's identity is too long for a two-dimensional code; the integrity page has it as text only.",
+        ));
+    }
+    (flow, warnings)
+}
+
+/// One warning that names the characters which stand as boxes.
+fn missing_glyphs(flow: &Flow) -> Vec<Note> {
+    let missing: BTreeSet<char> = flow
+        .pages
+        .iter()
+        .flat_map(|p| p.missing.iter().copied())
+        .collect();
+    if missing.is_empty() {
+        return Vec::new();
+    }
+    const NAMED: usize = 20;
+    let mut names: Vec<String> = missing.iter().take(NAMED).map(|c| text::tag(*c)).collect();
+    if missing.len() > NAMED {
+        names.push(format!("and {} more", missing.len() - NAMED));
+    }
+    vec![Note::new(
+        "glyph_missing",
+        format!(
+            "The typeface of the PDF lacks {}; each stands in a box with its code point. The JSON record has the text as it is.",
+            names.join(", ")
+        ),
+    )]
+}
+
+fn describe(record: &LotRecord, warnings: &mut Vec<Note>) -> Description {
+    let date = chrono::DateTime::parse_from_rfc3339(&record.issued).ok();
+    if date.is_none() {
+        warnings.push(Note::new(
+            "date_omitted",
+            "The record's date of issue is not an RFC 3339 date; the PDF carries no date in its metadata.",
+        ));
+    }
+    let producer = format!("{} {}", record.program.name, record.program.version);
+    Description {
+        title: format!(
+            "Lot record {}: {}",
+            record.lot.lot,
+            lot_word(record.verdict)
+        ),
+        subject: format!(
+            "Incoming inspection of lot {} of {}, record {}",
+            record.lot.lot, record.lot.part, record.record
+        ),
+        author: record
+            .lot
+            .operator
+            .clone()
+            .unwrap_or_else(|| producer.clone()),
+        producer,
+        date,
+    }
+}
+
+fn attachments(record: &LotRecord, sources: &Sources, json: Vec<u8>) -> Vec<Attachment> {
+    let mut out = vec![
+        Attachment {
+            name: "record.json".to_owned(),
+            mime: "application/json",
+            relationship: "Data",
+            description: "The lot record that this document shows".to_owned(),
+            bytes: json,
+        },
+        Attachment {
+            name: "results.csv".to_owned(),
+            mime: "text/csv",
+            relationship: "Data",
+            description: "Readings of every part in SI units".to_owned(),
+            bytes: results_csv::results(record),
+        },
+    ];
+    for (name, text) in [
+        ("limits.yaml", sources.limit_file),
+        ("station.yaml", sources.station_file),
+    ] {
+        out.extend(text.map(|text| Attachment {
+            name: name.to_owned(),
+            mime: "application/yaml",
+            relationship: "Source",
+            description: "As in force when the lot was judged".to_owned(),
+            bytes: text.as_bytes().to_vec(),
+        }));
+    }
+    out
+}
+
+/// The JSON record as attached.
+fn json(record: &LotRecord) -> Result<Vec<u8>, serde_json::Error> {
+    let mut bytes = serde_json::to_vec_pretty(record)?;
+    bytes.push(b'\n');
+    Ok(bytes)
+}
+
+/// SHA-256 in lower-case hexadecimal.
+fn hexadecimal(bytes: &[u8]) -> String {
+    Sha256::digest(bytes)
+        .iter()
+        .map(|b| format!("{b:02x}"))
+        .collect()
+}
+
+/// A text placed on a page with its box, in points from the top left corner: what layout checks
+/// work on.
+#[derive(Debug, Clone, PartialEq)]
+pub struct PlacedText {
+    /// From 1.
+    pub page: usize,
+    #[allow(missing_docs)]
+    pub text: String,
+    #[allow(missing_docs)]
+    pub left: f64,
+    #[allow(missing_docs)]
+    pub top: f64,
+    #[allow(missing_docs)]
+    pub right: f64,
+    #[allow(missing_docs)]
+    pub bottom: f64,
+}
+
+/// Every text of the document as placed, and the page's width and height in points.
+pub fn placed_text(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+) -> (Vec<PlacedText>, f64, f64) {
+    let (flow, _) = layout(record, curves, sources, paper, &"0".repeat(64));
+    let mut out = Vec::new();
+    for (index, page) in flow.pages.iter().enumerate() {
+        for item in &page.items {
+            let (canvas::Item::Text { text, .. }, Some(area)) = (item, canvas::text_area(item))
+            else {
+                continue;
+            };
+            out.push(PlacedText {
+                page: index + 1,
+                text: text.clone(),
+                left: area.left,
+                top: area.top,
+                right: area.right,
+                bottom: area.bottom,
+            });
+        }
+    }
+    (out, flow.sheet.width, flow.sheet.height)
+}

@@ -1,23 +1,18 @@
 //! What went wrong, where, and what to do: faults of files that people write, and coded notes.
+//!
+//! `Source` holds the text of one file with its lines; `yaml` reads it into nodes that know where
+//! they stand; `yaml::Reader` walks them and collects every `Fault`; `render` shows them.
 
-use serde::{Deserialize, Serialize};
+mod fault;
+pub mod file_name;
+mod note;
+mod printable;
+mod render;
+mod source;
+pub mod yaml;
 
-/// A finding with a stable code and a sentence that an operator can act on: a reason of a
-/// verdict, a fault of a part, a warning beside a value.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
-pub struct Note {
-    /// Stable, lower case with underscores; programs may rely on it.
-    pub code: String,
-    /// One sentence for people: what was found and what to do.
-    pub text: String,
-}
-
-impl Note {
-    /// A note from its code and sentence.
-    pub fn new(code: &str, text: impl Into<String>) -> Self {
-        Note {
-            code: code.to_owned(),
-            text: text.into(),
-        }
-    }
-}
+pub use fault::{Fault, Faults, Quote};
+pub use note::Note;
+pub use printable::{excerpt, printable, wrap};
+pub use render::{as_json, render};
+pub use source::{MAX_BYTES, Source, Span};

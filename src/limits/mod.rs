@@ -1,4 +1,19 @@
 //! Limit files: text to validated `Limits`.
+//!
+//! `Limits` exists only valid; `read` makes it, or lists every fault of the file. One file for
+//! each part of a limit file: `bound`, `conditions`, `acceptance`, `lot_rules`; `stated` compares
+//! the nominal value with what code and description say.
+
+mod acceptance;
+mod bound;
+mod conditions;
+mod lot_rules;
+mod read;
+mod stated;
+
+pub use acceptance::aql_text;
+pub use bound::{HIGHEST_FREQUENCY, LOWEST_FREQUENCY};
+pub use read::{SCHEMA, read};
 
 use crate::readings::{Characteristic, Equivalent, Place};
 

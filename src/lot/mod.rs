@@ -12,6 +12,10 @@ pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan};
 pub use statistics::{Statistics, statistics};
 pub use verdict::{LotJudgement, LotVerdict, judge};
 
+mod file;
+
+pub use file::{SCHEMA, read};
+
 use chrono::{DateTime, FixedOffset, NaiveDateTime};
 
 /// A lot as its `lot.yaml` describes it.

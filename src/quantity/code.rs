@@ -1,13 +1,10 @@
-//! Capacitance in free text: marking codes in part numbers, values in descriptions.
+//! Marking codes in part numbers and free text.
 //!
-//! Both give candidates for a plausibility check, never a value to calculate with: a part number
+//! They give candidates for a plausibility check, never a value to calculate with: a part number
 //! owes nobody to contain a code, and one code can mean two values a million apart.
 
-use super::text::clean;
-use super::{Dimension, number, unit};
-
-/// Characters read; a longer text is not a part number or a description.
-const READ: usize = 1000;
+use super::free_text::{before, digits_at, readable, starts_word};
+use super::{Dimension, unit};
 
 /// Chip sizes (inch and metric names) that look like codes of four digits.
 const CHIP_SIZES: [&str; 16] = [
@@ -50,58 +47,11 @@ pub fn capacitance_code(text: &str) -> Vec<f64> {
     found
 }
 
-/// The capacitances written out in a description, in farad, in the order of the text: the 4.7e-6
-/// of `4.7 µF ±10 % 25 V X7R` (and not its tolerance, were that in picofarads).
-pub fn find_capacitances(text: &str) -> Vec<f64> {
-    let characters = readable(text);
-    let mut found = Vec::new();
-    let mut at = 0;
-    while at < characters.len() {
-        let length = written_length(&characters, at);
-        if length == 0 {
-            at += 1;
-            continue;
-        }
-        if starts_word(&characters, at) && !follows_sign(&characters, at) {
-            let words: String = characters.iter().skip(at).take(length).collect();
-            found.extend(written(&words));
-        }
-        at += length;
-    }
-    found
-}
-
-/// The characters of the text, cleaned, with dielectric codes of EIA-198 (`X7R`) blanked: their
-/// digit and letter would be taken for part of a value.
-fn readable(text: &str) -> Vec<char> {
-    let text: String = text.chars().take(READ).collect();
-    let mut characters: Vec<char> = clean(&text).chars().collect();
-    for at in 0..characters.len() {
-        if let Some([low, digit, high]) = characters.get(at..at + 3) {
-            let class_2 = "XYZ".contains(*low) && "245678".contains(*digit);
-            if class_2 && "ABCDEFLPRSTUV".contains(*high) {
-                characters
-                    .iter_mut()
-                    .skip(at)
-                    .take(3)
-                    .for_each(|c| *c = ' ');
-            }
-        }
-    }
-    characters
-}
-
-fn digits_at(characters: &[char], at: usize) -> usize {
-    let rest = characters.iter().skip(at);
-    rest.take_while(|c| c.is_ascii_digit()).count()
-}
-
-fn before(characters: &[char], at: usize) -> Option<char> {
-    at.checked_sub(1).and_then(|i| characters.get(i)).copied()
-}
-
-fn starts_word(characters: &[char], at: usize) -> bool {
-    !before(characters, at).is_some_and(|c| c.is_alphanumeric() || c == '.' || c == ',')
+/// Whether a code without decimals ends at `at`: `47n`, `47nF`, or with its tolerance letter `47nK`.
+fn ends_word(characters: &[char], at: usize) -> bool {
+    let is_word = |at: usize| characters.get(at).is_some_and(|c| c.is_alphanumeric());
+    let letter = characters.get(at).is_some_and(|c| c.is_ascii_uppercase());
+    !is_word(at) || letter && !is_word(at + 1)
 }
 
 /// Whether a run of digits can be a code: not part of a decimal number, and without a unit.
@@ -204,7 +154,6 @@ fn point_letter(characters: &[char], at: usize, run: usize) -> Vec<f64> {
         return Vec::new();
     };
     let decimals = digits_at(characters, at + run + 1);
-    let next = characters.get(at + run + 1 + decimals).copied();
     let whole: String = characters.iter().skip(at).take(run).collect();
     let fraction: String = characters
         .iter()
@@ -221,11 +170,7 @@ fn point_letter(characters: &[char], at: usize, run: usize) -> Vec<f64> {
         _ => return Vec::new(),
     };
     let ends = match decimals {
-        0 => {
-            run > 0
-                && letter.is_lowercase()
-                && !next.is_some_and(|c| c.is_alphanumeric() && c != 'F')
-        }
+        0 => run > 0 && letter.is_lowercase() && ends_word(characters, at + run + 1),
         1 | 2 => true,
         _ => false,
     };
@@ -235,49 +180,4 @@ fn point_letter(characters: &[char], at: usize, run: usize) -> Vec<f64> {
         .filter(|_| ends)
         .filter_map(|e| value(&number, *e));
     values.filter(|v| *v > 0.0).collect()
-}
-
-/// Length of a number with the letters that follow it, at most one space between; 0 if none.
-fn written_length(characters: &[char], at: usize) -> usize {
-    let rest = || characters.iter().skip(at);
-    let number = rest()
-        .take_while(|c| c.is_ascii_digit() || matches!(c, '.' | ','))
-        .count();
-    let first_is_letter = rest().next().is_some_and(|c| c.is_alphabetic());
-    if number == 0 && !first_is_letter {
-        return 0;
-    }
-    let space = usize::from(number > 0 && rest().nth(number) == Some(&' '));
-    let word = rest()
-        .skip(number + space)
-        .take_while(|c| c.is_alphanumeric())
-        .count();
-    if word == 0 {
-        number
-    } else {
-        number + space + word
-    }
-}
-
-/// Whether a tolerance sign stands before.
-fn follows_sign(characters: &[char], at: usize) -> bool {
-    let mut earlier = characters.iter().take(at).rev().filter(|c| **c != ' ');
-    let sign = earlier.next();
-    let adjacent = before(characters, at) != Some(' ');
-    matches!(sign, Some('±' | '+'))
-        || (sign == Some(&'-') && adjacent && {
-            // `+/-`, `+80/-20`; but in `C1-4.7uF` the hyphen only separates.
-            matches!(earlier.next(), Some('/' | '+') | None)
-        })
-}
-
-/// The value of a number with its unit, `4.7uF`, `4u7` or `100n`.
-fn written(words: &str) -> Option<f64> {
-    let words = words.trim_end_matches(['.', ',']);
-    let point = words.replacen(',', ".", 1);
-    let (decimal, unit) = number::split(&point).ok()?;
-    let coded = !words.contains(' ') && unit.chars().all(|c| matches!(c, 'p' | 'n' | 'u' | 'µ'));
-    let bare = || unit::read_bare_prefix(&unit, Dimension::Capacitance).filter(|_| coded);
-    let scale = unit::read(&unit, Dimension::Capacitance).or_else(bare)?;
-    decimal.value(scale.exponent).ok().filter(|v| *v > 0.0)
 }

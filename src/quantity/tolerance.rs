@@ -77,11 +77,16 @@ pub fn parse_tolerance(
     if body.len() == 1 && body.chars().all(|c| c.is_ascii_alphabetic()) {
         return super::letter::tolerance(&body, dimension, nominal);
     }
-    let tolerance = match (body.strip_prefix('±'), two_sides(&body)) {
-        (Some(size), _) => symmetric(text, size, dimension)?,
-        (None, Some((one, other))) => asymmetric(text, one, other, dimension)?,
-        (None, None) => symmetric(text, &body, dimension)?,
+    let read = match (body.strip_prefix('±'), two_sides(&body)) {
+        (Some(size), _) => symmetric(text, size, dimension),
+        (None, Some((one, other))) => asymmetric(text, one, other, dimension),
+        (None, None) => symmetric(text, &body, dimension),
     };
+    let expected = || wrong(text, "", dimension).expected;
+    let tolerance = read.map_err(|error| QuantityError {
+        expected: expected(),
+        ..error
+    })?;
     if tolerance.lower.size() == 0.0 && tolerance.upper.size() == 0.0 {
         return Err(wrong(text, "leaves no room at all", dimension));
     }

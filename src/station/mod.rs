@@ -2,6 +2,15 @@
 //!
 //! `Station` exists only valid; it is made by parsing a station file.
 
+mod equipment;
+mod layout;
+mod read;
+mod standards;
+mod uncertainty;
+
+pub use read::{SCHEMA, read};
+pub use uncertainty::REPEATABLE;
+
 use chrono::{DateTime, FixedOffset, NaiveDate};
 
 /// How the impedance is had from what the instrument delivers.

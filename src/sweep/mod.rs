@@ -3,6 +3,25 @@
 //! Readers find out how a file is written; methods turn what the instrument delivers into
 //! impedance. A file that cannot be read without guessing yields faults, never numbers.
 
+mod arrange;
+mod compensation;
+mod cut;
+mod delimited;
+mod faults;
+mod file;
+mod method;
+mod naming;
+mod network;
+mod raw;
+mod text;
+pub mod touchstone;
+pub mod validity;
+
+pub use compensation::Standards;
+pub use file::read_file;
+pub use naming::{is_sweep_file, natural_order, order};
+pub use network::{Network, Parameter};
+
 use crate::diagnostic::Note;
 use num_complex::Complex64;
 

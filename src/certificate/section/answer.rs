@@ -1,0 +1,279 @@
+//! Page one: the verdict, the lot, the sentence why, the plan with its counts, the characteristics.
+
+use super::{Characteristic, lot_ink, lot_mark, lot_word};
+use crate::certificate::figures::{ABSENT, fixed, index, instant, plain};
+use crate::certificate::flow::{BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
+use crate::certificate::ink::{NONCONFORMING, QUIET};
+use crate::certificate::plot::strip::strip;
+use crate::certificate::table::{Align, Cell, Column, Span, Table};
+use crate::certificate::text::{Style, wrap};
+use crate::record::LotRecord;
+
+const WORD: Style = Style::bold(42.0);
+const SENTENCE: Style = Style::regular(12.5);
+const SENTENCE_LEADING: f64 = 16.0;
+const KEY: Style = Style::bold(10.5);
+const VALUE: Style = Style::regular(10.5);
+/// Width of the labels in the right column, and its line height.
+const LABEL: f64 = 58.0;
+const SIDE: f64 = 13.0;
+
+/// The first page (more, where texts are very long).
+pub(in crate::certificate) fn answer(
+    flow: &mut Flow,
+    record: &LotRecord,
+    characteristics: &[Characteristic],
+) {
+    let place = flow.here();
+    flow.bookmarks.push(Bookmark {
+        title: format!("Verdict: {}", lot_word(record.verdict)),
+        place,
+    });
+    head(flow, record);
+    sampling(flow, record);
+    table(flow, characteristics);
+}
+
+/// Verdict and reason on the left, identity of the lot on the right.
+fn head(flow: &mut Flow, record: &LotRecord) {
+    let measure = flow.sheet.measure();
+    let left = flow.left();
+    let split = left + measure * 0.57;
+    let identity = identity(record);
+    let lines = side_lines(&identity, flow.right() - split - LABEL);
+    let side_height: f64 = lines.iter().map(|l| 3.0 + l.len() as f64 * SIDE).sum();
+    let beside = side_height <= 300.0;
+    let top = flow.y;
+    let ink = lot_ink(record.verdict);
+    let word = lot_word(record.verdict).to_uppercase();
+    flow.page()
+        .mark(lot_mark(record.verdict), (left + 20.0, top + 25.0), 40.0);
+    flow.page()
+        .text((left + 52.0, top + 39.0), WORD.ink(ink), &word);
+    flow.y = top + 64.0;
+    let room = if beside { split - 26.0 - left } else { measure };
+    why(flow, record, room);
+    if beside {
+        let end = flow.y;
+        let below = side(flow, (split, top + 8.0), &identity, &lines);
+        // A reason that ran on to a further page ends below the identity anyway.
+        if flow.pages.len() == 1 {
+            flow.y = end.max(below);
+        }
+    } else {
+        full_width(flow, identity);
+    }
+}
+
+/// Labels and values in the right column of page one; answers where they end.
+fn side(
+    flow: &mut Flow,
+    (x, top): (f64, f64),
+    identity: &[(&'static str, String)],
+    lines: &[Vec<String>],
+) -> f64 {
+    let mut y = top;
+    for (index, ((label, _), lines)) in identity.iter().zip(lines).enumerate() {
+        let style = if index < 2 { KEY } else { VALUE };
+        flow.page().text((x, y + 9.0), SMALL, label);
+        for line in lines {
+            flow.page().text((x + LABEL, y + 9.0), style, line);
+            y += SIDE;
+        }
+        y += 3.0;
+    }
+    y
+}
+
+/// Identity as a table, where its texts are too long for the right column.
+fn full_width(flow: &mut Flow, identity: Vec<(&'static str, String)>) {
+    flow.gap(6.0);
+    let mut table = Table::new(vec![
+        Column::new("", Align::Left, Span::Fixed(86.0)),
+        Column::new("", Align::Left, Span::Share(1.0)),
+    ]);
+    for (label, value) in identity {
+        table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
+    }
+    table.set(flow);
+}
+
+/// The first reason in full; where there are more, how many and where.
+fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
+    let Some(first) = record.reasons.first() else {
+        return;
+    };
+    for line in wrap(&first.text, SENTENCE, room) {
+        let area = flow.take(SENTENCE_LEADING);
+        flow.page()
+            .text((area.left, area.top + 11.5), SENTENCE, &line);
+    }
+    let more = record.reasons.len() - 1;
+    if more > 0 {
+        let plural = if more == 1 { "reason" } else { "reasons" };
+        flow.gap(3.0);
+        let area = flow.take(BODY_LEADING);
+        let text = format!("and {more} more {plural}: see Reasons");
+        let style = Style::regular(10.5).ink(crate::certificate::ink::ACCEPT);
+        let wide = flow.page().text((area.left, area.top + 9.5), style, &text);
+        let target = crate::certificate::canvas::Area {
+            right: area.left + wide,
+            ..area
+        };
+        flow.page().link(target, "reasons");
+    }
+}
+
+/// What names the lot; only what the record has.
+pub(in crate::certificate) fn identity(record: &LotRecord) -> Vec<(&'static str, String)> {
+    let lot = &record.lot;
+    let mut out = vec![("Lot", lot.lot.clone()), ("Part", lot.part.clone())];
+    let mut add = |label, value: &Option<String>| {
+        if let Some(value) = value.as_ref().filter(|v| !v.is_empty()) {
+            out.push((label, value.clone()));
+        }
+    };
+    add("Description", &record.limits.description);
+    add("Supplier", &lot.supplier);
+    add("Date code", &lot.date_code);
+    add("Order", &lot.order);
+    out.push(("Quantity", lot.quantity.to_string()));
+    out.push(("Measured", instant(&lot.measured)));
+    let place = match &lot.operator {
+        Some(operator) => format!("{} by {operator}", record.station.station),
+        None => record.station.station.clone(),
+    };
+    out.push(("At station", place));
+    out
+}
+
+fn side_lines(identity: &[(&'static str, String)], room: f64) -> Vec<Vec<String>> {
+    identity
+        .iter()
+        .map(|(_, value)| wrap(value, KEY, room))
+        .collect()
+}
+
+/// The plan and the counts against it, class by class.
+fn sampling(flow: &mut Flow, record: &LotRecord) {
+    let s = &record.sampling;
+    flow.subheading("Sampling", 60.0);
+    let mut table = Table::new(vec![
+        Column::new("Class", Align::Left, Span::Natural),
+        Column::new("AQL", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("Code letter", Align::Left, Span::Natural),
+        Column::new("Sample n", Align::Right, Span::Natural),
+        Column::new("Ac", Align::Right, Span::Natural),
+        Column::new("Re", Align::Right, Span::Natural),
+        Column::new("Nonconforming", Align::Right, Span::Natural),
+        Column::new("Undecided", Align::Right, Span::Natural),
+        Column::new("Class alone", Align::Left, Span::Share(1.0)),
+    ]);
+    for (name, class) in &s.classes {
+        let over = class.nonconforming > class.ac;
+        let mut count = Cell::text(class.nonconforming.to_string());
+        if over {
+            count = count.bold().ink(NONCONFORMING);
+        }
+        table.row(vec![
+            Cell::text(name.clone()).bold(),
+            Cell::text(class.aql.map_or_else(|| ABSENT.to_owned(), plain)),
+            Cell::text(
+                class
+                    .code_letter
+                    .clone()
+                    .unwrap_or_else(|| ABSENT.to_owned()),
+            ),
+            Cell::text(class.n.to_string()),
+            Cell::text(class.ac.to_string()),
+            Cell::text(class.re.to_string()),
+            count,
+            Cell::text(class.undecided.to_string()),
+            Cell::text(lot_word(class.verdict))
+                .mark(Some(lot_mark(class.verdict)))
+                .ink(lot_ink(class.verdict)),
+        ]);
+    }
+    table.set(flow);
+    flow.y += 4.0;
+    flow.paragraph_of(&plan(record), SMALL, SMALL_LEADING);
+}
+
+/// The plan and the counts in words.
+pub(in crate::certificate) fn plan(record: &LotRecord) -> String {
+    let s = &record.sampling;
+    let mut words = vec![s.scheme.replace('_', " ")];
+    words.extend(s.level.as_ref().map(|l| format!("level {l}")));
+    words.extend(s.code_letter.as_ref().map(|l| format!("code letter {l}")));
+    words.extend(s.severity.as_ref().map(|v| format!("{v} inspection")));
+    let mut text = format!(
+        "Plan: {} ({}). Parts: {} required, {} presented, {} measured; {} nonconforming, {} undecided, {} unmeasured.",
+        words.join(", "),
+        s.source,
+        s.required,
+        s.presented,
+        s.measured,
+        s.nonconforming,
+        s.undecided,
+        s.unmeasured
+    );
+    if s.nonconforming_beyond_sample > 0 {
+        text.push_str(&format!(
+            " Beyond the required sample: {} nonconforming.",
+            s.nonconforming_beyond_sample
+        ));
+    }
+    text
+}
+
+/// The characteristics with a drawing in each row.
+fn table(flow: &mut Flow, characteristics: &[Characteristic]) {
+    flow.subheading("Characteristics", 90.0);
+    let mut table = Table::new(vec![
+        Column::new("", Align::Left, Span::Fixed(108.0)),
+        Column::new("Lower limit", Align::Decimal, Span::Natural),
+        Column::new("Nominal", Align::Decimal, Span::Natural),
+        Column::new("Upper limit", Align::Decimal, Span::Natural),
+        Column::new(
+            "Every part between the limits",
+            Align::Left,
+            Span::Share(1.0),
+        ),
+        Column::new("Mean", Align::Decimal, Span::Natural),
+        Column::new("Ppk", Align::Decimal, Span::Natural),
+        Column::new("Out", Align::Right, Span::Natural),
+    ]);
+    table.row_height = 31.0;
+    for c in characteristics {
+        let exact =
+            |v: Option<f64>| Cell::text(v.map_or_else(|| ABSENT.to_owned(), |v| c.scale.exact(v)));
+        let out = c.statistics.map_or(0, |s| s.nonconforming);
+        let mut count = Cell::text(out.to_string());
+        if out > 0 {
+            count = count.bold().ink(NONCONFORMING);
+        }
+        let mean = c.statistics.and_then(|s| s.mean).map_or_else(
+            || ABSENT.to_owned(),
+            |m| fixed(c.scale.scaled(m), c.scale.decimals),
+        );
+        table.row(vec![
+            Cell::text(c.title()).bold(),
+            exact(c.bound.lower),
+            exact(c.bound.nominal),
+            exact(c.bound.upper),
+            Cell::drawing(move |page, area| strip(page, area, c)),
+            Cell::text(mean),
+            Cell::text(index(c.statistics.and_then(|s| s.ppk))),
+            count,
+        ]);
+    }
+    table.set(flow);
+    flow.y += 4.0;
+    flow.paragraph_of(
+        "Each tick is one part; ticks that fall together on paper stand for all of them. The bar below is \
+         the mean ± one standard deviation, hatched lines are limits, the diamond is the nominal value, an arrowhead is a \
+         part beyond the edge. Out: nonconforming parts.",
+        SMALL,
+        SMALL_LEADING,
+    );
+}

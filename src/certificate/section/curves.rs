@@ -1,0 +1,404 @@
+//! Overlaid |Z| and ESR of all parts on log-log axes, with the limit windows.
+
+use super::{part_anchor, part_ink, part_mark, part_word};
+use crate::certificate::Curve;
+use crate::certificate::canvas::{Anchor, Area, Canvas, Dash, Pen, Point};
+use crate::certificate::figures::short;
+use crate::certificate::flow::{Flow, SMALL, SMALL_LEADING};
+use crate::certificate::ink::{CONFORMING, QUIET, TEXT};
+use crate::certificate::plot::axis::{Axis, Kind, log_grid};
+use crate::certificate::plot::limit::{Side, limit};
+use crate::certificate::plot::trace::{Coverage, clip, columns, simplify};
+use crate::certificate::plot::view::extent;
+use crate::certificate::text::Style;
+use crate::record::{BoundSection, LotRecord, PartVerdict};
+
+/// Most curves that carry their part's number.
+const NAMED: usize = 14;
+const GUTTER: f64 = 46.0;
+
+/// What a plot shows of an impedance.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Quantity {
+    Magnitude,
+    Resistance,
+}
+
+impl Quantity {
+    fn title(self) -> &'static str {
+        match self {
+            Quantity::Magnitude => "Magnitude of impedance |Z|",
+            Quantity::Resistance => "Equivalent series resistance",
+        }
+    }
+
+    /// Whether a bound is a level of this quantity.
+    fn bounded_by(self, bound: &BoundSection) -> bool {
+        let kind = bound.key.split('@').next().unwrap_or_default();
+        match self {
+            Quantity::Magnitude => kind == "impedance",
+            Quantity::Resistance => kind == "esr" || kind == "esr_minimum",
+        }
+    }
+}
+
+pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves: &[Curve]) {
+    flow.new_page();
+    flow.heading("Curves", 200.0);
+    if curves.is_empty() {
+        flow.paragraph("No curves: no part of this lot has a sweep that could be read.");
+        return;
+    }
+    key(flow);
+    // Two plots share a page of either paper.
+    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 14.0 - 140.0) / 2.0;
+    for quantity in [Quantity::Magnitude, Quantity::Resistance] {
+        plot(flow, record, curves, quantity, height);
+    }
+}
+
+/// The curve's points (hertz, ohm) as logarithms; points without a logarithm are gaps.
+fn logarithms(curve: &Curve, quantity: Quantity) -> Vec<Point> {
+    curve
+        .frequency
+        .iter()
+        .zip(&curve.impedance)
+        .map(|(f, z)| {
+            let value = match quantity {
+                Quantity::Magnitude => z.norm(),
+                Quantity::Resistance => z.re,
+            };
+            let log = |v: f64| if v > 0.0 { v.log10() } else { f64::NAN };
+            (log(*f), log(value))
+        })
+        .collect()
+}
+
+/// Everything a plot needs to place a value.
+struct Frame {
+    area: Area,
+    x: Axis,
+    y: Axis,
+}
+
+impl Frame {
+    /// Logarithms to the page.
+    fn place(&self, (f, v): Point) -> Point {
+        let along = |axis: &Axis, log: f64| {
+            let (low, high) = (axis.low.log10(), axis.high.log10());
+            axis.from + (log - low) / (high - low) * (axis.to - axis.from)
+        };
+        (along(&self.x, f), along(&self.y, v))
+    }
+}
+
+fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantity, height: f64) {
+    flow.need(height + 40.0);
+    flow.subheading(quantity.title(), height + 20.0);
+    let outer = flow.take(height + 18.0);
+    let area = Area {
+        left: outer.left + 40.0,
+        right: outer.right - GUTTER,
+        top: outer.top + 4.0,
+        bottom: outer.bottom - 16.0,
+    };
+    let logs: Vec<Vec<Point>> = curves.iter().map(|c| logarithms(c, quantity)).collect();
+    let bounds: Vec<&BoundSection> = record
+        .limits
+        .characteristics
+        .iter()
+        .filter(|b| quantity.bounded_by(b))
+        .collect();
+    let Some(frame) = frame(area, curves, &logs, &bounds) else {
+        let at = (area.left, (area.top + area.bottom) / 2.0);
+        flow.page().text(at, SMALL, "No positive values to draw.");
+        return;
+    };
+    let page = flow.page();
+    log_grid(page, area, (&frame.x, "Hz"), (&frame.y, "Ω"));
+    let unseen = traces(page, &frame, curves, &logs);
+    let mut drawn = Vec::new();
+    for bound in bounds {
+        drawn.extend(level(page, &frame, bound, where_found(record, bound)));
+    }
+    if quantity == Quantity::Magnitude {
+        for bound in record
+            .limits
+            .characteristics
+            .iter()
+            .filter(|b| b.key == "srf")
+        {
+            drawn.extend(resonance(page, &frame, bound));
+        }
+    }
+    if !drawn.is_empty() {
+        let text = format!("Limits drawn: {}.", drawn.join("; "));
+        flow.paragraph_of(&text, SMALL, SMALL_LEADING);
+    }
+    if !unseen.is_empty() {
+        let text = format!("Outside these axes: {}.", listed(&unseen));
+        flow.paragraph_of(&text, SMALL, SMALL_LEADING);
+    }
+}
+
+/// The first parts by number, and how many more.
+fn listed(parts: &[&str]) -> String {
+    let mut text = parts
+        .iter()
+        .take(NAMED)
+        .map(|p| format!("part {p}"))
+        .collect::<Vec<_>>()
+        .join(", ");
+    if parts.len() > NAMED {
+        text.push_str(&format!(" and {} more", parts.len() - NAMED));
+    }
+    text
+}
+
+/// Axes that hold the judged parts' curves and the limits; a part without a valid sweep does not
+/// stretch them.
+fn frame(
+    area: Area,
+    curves: &[Curve],
+    logs: &[Vec<Point>],
+    bounds: &[&BoundSection],
+) -> Option<Frame> {
+    let judged = |only: bool| {
+        let points = curves
+            .iter()
+            .zip(logs)
+            .filter(move |(c, _)| !only || c.verdict != PartVerdict::Unmeasured)
+            .flat_map(|(_, l)| l.iter())
+            .filter(|p| p.0.is_finite() && p.1.is_finite());
+        points.fold(None, |e: Option<[f64; 4]>, p| {
+            let e = e.unwrap_or([p.0, p.0, p.1, p.1]);
+            Some([e[0].min(p.0), e[1].max(p.0), e[2].min(p.1), e[3].max(p.1)])
+        })
+    };
+    let [left, right, mut low, mut high] = judged(true).or_else(|| judged(false))?;
+    for value in bounds.iter().flat_map(|b| [b.lower, b.upper]).flatten() {
+        if value > 0.0 {
+            low = low.min(value.log10());
+            high = high.max(value.log10());
+        }
+    }
+    let (left, right) = if right > left {
+        (left, right)
+    } else {
+        (left - 0.5, right + 0.5)
+    };
+    let pad = ((high - low) * 0.05).max(0.1);
+    // Sixteen decades are more than any bench spans.
+    let low = low.max(high - 16.0) - pad;
+    let axis = |low: f64, high: f64, from: f64, to: f64| Axis {
+        kind: Kind::Log,
+        low: 10f64.powf(low),
+        high: 10f64.powf(high),
+        from,
+        to,
+    };
+    Some(Frame {
+        area,
+        x: axis(left, right, area.left, area.right),
+        y: axis(low, high + pad, area.bottom, area.top),
+    })
+}
+
+/// Quiet curves first, then the ones that are not conforming on top, with their names. Answers the
+/// parts of which nothing lies within the axes.
+fn traces<'c>(
+    page: &mut Canvas,
+    frame: &Frame,
+    curves: &'c [Curve],
+    logs: &[Vec<Point>],
+) -> Vec<&'c str> {
+    let mut unseen = Vec::new();
+    let order = [
+        (PartVerdict::Conforming, Pen::solid(0.5, CONFORMING)),
+        (
+            PartVerdict::Unmeasured,
+            Pen::dotted(0.6, part_ink(PartVerdict::Unmeasured)),
+        ),
+        (
+            PartVerdict::Undecided,
+            Pen::dashed(0.8, part_ink(PartVerdict::Undecided)),
+        ),
+        (
+            PartVerdict::Nonconforming,
+            Pen::solid(0.9, part_ink(PartVerdict::Nonconforming)),
+        ),
+    ];
+    let mut names = Vec::new();
+    for (verdict, pen) in order {
+        let mut coverage = Coverage::new(frame.area);
+        for (curve, log) in curves
+            .iter()
+            .zip(logs)
+            .filter(|(c, _)| c.verdict == verdict)
+        {
+            let placed: Vec<Point> = log.iter().map(|p| frame.place(*p)).collect();
+            let mut end = None;
+            for line in clip(&placed, frame.area) {
+                end = line.last().copied();
+                let thin = simplify(&columns(&line));
+                // A dash pattern starts anew with every stretch: patterned curves stay whole.
+                let parts = if pen.dash == Dash::Solid {
+                    coverage.visible(&thin)
+                } else {
+                    vec![thin]
+                };
+                page.lines(parts, pen);
+            }
+            match end {
+                None => unseen.push(curve.part.as_str()),
+                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, end)),
+                Some(_) => {}
+            }
+        }
+    }
+    label(page, frame, names);
+    unseen
+}
+
+/// Numbers of the parts that are not conforming, right of the plot, led to the ends of their curves.
+fn label(page: &mut Canvas, frame: &Frame, names: Vec<(&Curve, Point)>) {
+    let more = names.len().saturating_sub(NAMED);
+    // The gravest last in drawing order are named first.
+    let mut chosen: Vec<(&Curve, Point)> = names.into_iter().rev().take(NAMED).collect();
+    chosen.sort_by(|a, b| a.1.1.total_cmp(&b.1.1));
+    let step = 9.0;
+    let count = chosen.len() as f64;
+    let mut free = frame.area.top;
+    for (index, (curve, end)) in chosen.iter().enumerate() {
+        let below = (count - index as f64) * step;
+        let y = end.1.max(free).min(frame.area.bottom - below + step);
+        free = y + step;
+        let style = Style::regular(7.6).ink(part_ink(curve.verdict));
+        let x = frame.area.right + 12.0;
+        page.line(*end, (x - 2.0, y), Pen::solid(0.35, QUIET));
+        if let Some(mark) = part_mark(curve.verdict) {
+            page.mark(mark, (x + 2.5, y), 5.0);
+        }
+        let text = crate::certificate::text::elide(&curve.part, style, GUTTER - 20.0);
+        let wide = page.text((x + 7.0, y + 2.5), style, &text);
+        let target = Area {
+            left: x,
+            right: x + 7.0 + wide,
+            top: y - 4.5,
+            bottom: y + 4.5,
+        };
+        page.link(target, &part_anchor(&curve.part));
+    }
+    if more > 0 {
+        let style = Style::regular(7.6).ink(QUIET);
+        let text = format!("and {more} more");
+        page.text_at(
+            (frame.area.right + GUTTER, frame.area.bottom + 10.0),
+            Anchor::End,
+            style,
+            &text,
+        );
+    }
+}
+
+/// Between which frequencies the readings of a characteristic were found, where they have one.
+fn where_found(record: &LotRecord, bound: &BoundSection) -> Option<(f64, f64)> {
+    let found = record
+        .parts
+        .iter()
+        .filter_map(|p| p.readings.get(&bound.key)?.frequency)
+        .filter(|f| *f > 0.0);
+    extent(found)
+}
+
+/// A limit on the level of the curve: at a frequency, over a band, or anywhere.
+fn level(
+    page: &mut Canvas,
+    frame: &Frame,
+    bound: &BoundSection,
+    found: Option<(f64, f64)>,
+) -> Vec<String> {
+    let x = |f: f64| frame.x.at(f).clamp(frame.area.left, frame.area.right);
+    let (from, to) = match (bound.between, bound.at, found) {
+        (Some([low, high]), _, _) => (x(low), x(high)),
+        (None, Some(at), _) => (
+            (x(at) - 9.0).max(frame.area.left),
+            (x(at) + 9.0).min(frame.area.right),
+        ),
+        (None, None, Some((low, high))) => (x(low / 2.0), x(high * 2.0)),
+        (None, None, None) => (frame.area.left, frame.area.right),
+    };
+    let mut words = Vec::new();
+    for (value, side, sign) in [
+        (bound.lower, Side::Below, "≥"),
+        (bound.upper, Side::Above, "≤"),
+    ] {
+        let Some(value) = value.filter(|v| frame.y.contains(*v)) else {
+            continue;
+        };
+        let y = frame.y.at(value);
+        limit(page, (from, y), (to, y), side);
+        words.push(format!(
+            "{} {sign} {}",
+            bound.name,
+            short(value, &bound.unit)
+        ));
+    }
+    words
+}
+
+/// A limit on the self-resonance: hatched lines at the foot of the plot.
+fn resonance(page: &mut Canvas, frame: &Frame, bound: &BoundSection) -> Vec<String> {
+    let mut words = Vec::new();
+    for (value, side, sign) in [
+        (bound.lower, Side::Left, "≥"),
+        (bound.upper, Side::Right, "≤"),
+    ] {
+        let Some(value) = value.filter(|v| frame.x.contains(*v)) else {
+            continue;
+        };
+        let x = frame.x.at(value);
+        limit(
+            page,
+            (x, frame.area.bottom),
+            (x, frame.area.bottom - 34.0),
+            side,
+        );
+        words.push(format!(
+            "{} {sign} {}",
+            bound.name,
+            short(value, &bound.unit)
+        ));
+    }
+    words
+}
+
+/// What the strokes mean.
+fn key(flow: &mut Flow) {
+    let area = flow.take(14.0);
+    let mut x = area.left;
+    let y = area.top + 7.0;
+    let entries = [
+        (PartVerdict::Conforming, Pen::solid(1.0, CONFORMING)),
+        (
+            PartVerdict::Nonconforming,
+            Pen::solid(1.0, part_ink(PartVerdict::Nonconforming)),
+        ),
+        (
+            PartVerdict::Undecided,
+            Pen::dashed(1.0, part_ink(PartVerdict::Undecided)),
+        ),
+        (
+            PartVerdict::Unmeasured,
+            Pen::dotted(1.0, part_ink(PartVerdict::Unmeasured)),
+        ),
+    ];
+    for (verdict, pen) in entries {
+        flow.page().line((x, y), (x + 20.0, y), pen);
+        x += 24.0;
+        x += flow
+            .page()
+            .text((x, y + 3.0), SMALL.ink(TEXT), part_word(verdict))
+            + 16.0;
+    }
+}

@@ -1,0 +1,116 @@
+//! The parts table: every part, every try, every reading with its uncertainty.
+
+use super::{Characteristic, part_anchor, part_ink, part_mark, part_word};
+use crate::certificate::figures::ABSENT;
+use crate::certificate::flow::Flow;
+use crate::certificate::table::{Align, Cell, Column, Span, Table};
+use crate::record::{AttemptRecord, LotRecord, PartRecord, PartVerdict, ReadingRecord};
+
+/// Most characteristics side by side; more go into a further table.
+const SIDE_BY_SIDE: usize = 5;
+const SIZE: f64 = 8.4;
+
+pub(in crate::certificate) fn parts(
+    flow: &mut Flow,
+    record: &LotRecord,
+    characteristics: &[Characteristic],
+) {
+    flow.heading("Parts", 120.0);
+    flow.small(
+        "Value ± standard uncertainty, rounded to two digits of it; limits are judged on unrounded values. A part's \
+         readings are those of the try that counts; earlier tries stand above it.",
+    );
+    let groups = characteristics.chunks(SIDE_BY_SIDE);
+    let count = groups.len();
+    for (index, group) in groups.enumerate() {
+        if count > 1 {
+            let title = format!("Characteristics, group {} of {count}", index + 1);
+            flow.subheading(&title, 60.0);
+        }
+        table(record, group).set(flow);
+    }
+}
+
+fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
+    let mut columns = vec![
+        Column::new("Part", Align::Left, Span::Natural),
+        Column::new("Try", Align::Right, Span::Natural),
+        Column::new("Verdict", Align::Left, Span::Natural),
+    ];
+    columns.extend(
+        group
+            .iter()
+            .map(|c| Column::new(&c.name(), Align::Decimal, Span::Natural).unit(&c.scale.unit)),
+    );
+    let mut table = Table::new(columns);
+    table.size = SIZE;
+    table.rule_every = 5;
+    for part in &record.parts {
+        let counts = counting(part);
+        if part.attempts.is_empty() {
+            table.row_at(part_anchor(&part.part), row(part, None, true, group));
+        }
+        for (index, attempt) in part.attempts.iter().enumerate() {
+            let cells = row(part, Some(attempt), Some(index) == counts, group);
+            if index == 0 {
+                table.row_at(part_anchor(&part.part), cells);
+            } else {
+                table.row(cells);
+            }
+        }
+    }
+    table
+}
+
+/// Index of the try that the readings are of.
+fn counting(part: &PartRecord) -> Option<usize> {
+    part.attempts
+        .iter()
+        .position(|a| a.counts)
+        .or_else(|| part.attempts.len().checked_sub(1))
+}
+
+fn row<'a>(
+    part: &PartRecord,
+    attempt: Option<&AttemptRecord>,
+    counts: bool,
+    group: &[Characteristic],
+) -> Vec<Cell<'a>> {
+    let verdict = attempt
+        .filter(|_| !counts)
+        .map_or(part.verdict, |a| a.verdict);
+    let mut word = Cell::text(part_word(verdict))
+        .mark(part_mark(verdict))
+        .ink(part_ink(verdict));
+    if verdict == PartVerdict::Nonconforming {
+        word = word.bold();
+    }
+    let mut cells = vec![
+        Cell::text(part.part.clone()),
+        Cell::text(attempt.map_or_else(|| ABSENT.to_owned(), |a| a.attempt.to_string())),
+        word,
+    ];
+    for c in group {
+        let reading = part.readings.get(&c.bound.key).filter(|_| counts);
+        cells.push(reading.map_or_else(Cell::default, |r| cell(r, c)));
+    }
+    cells
+}
+
+/// A reading; one that is not conforming stands out by weight and mark.
+fn cell<'a>(reading: &ReadingRecord, c: &Characteristic) -> Cell<'a> {
+    let text = match (reading.value, reading.above, reading.below) {
+        (Some(v), _, _) => c.scale.reading(v, reading.standard_uncertainty),
+        (None, Some(above), _) => format!("> {}", c.scale.exact(above)),
+        (None, None, Some(below)) => format!("< {}", c.scale.exact(below)),
+        (None, None, None) => ABSENT.to_owned(),
+    };
+    let cell = Cell::text(text);
+    match reading.verdict {
+        PartVerdict::Nonconforming | PartVerdict::Undecided => cell
+            .bold()
+            .mark(part_mark(reading.verdict))
+            .ink(part_ink(reading.verdict)),
+        _ => cell,
+    }
+}

@@ -1,0 +1,124 @@
+//! Lot statistics of every characteristic.
+
+use super::{Characteristic, part_anchor};
+use crate::certificate::figures::{ABSENT, index};
+use crate::certificate::flow::Flow;
+use crate::certificate::table::{Align, Cell, Column, Span, Table};
+
+pub(in crate::certificate) fn statistics(flow: &mut Flow, characteristics: &[Characteristic]) {
+    flow.heading("Statistics", 90.0);
+    spread(flow, characteristics);
+    flow.gap(12.0);
+    capability(flow, characteristics);
+    outliers(flow, characteristics);
+    notes(flow, characteristics);
+}
+
+fn number(head: &str) -> Column {
+    Column::new(head, Align::Decimal, Span::Natural)
+}
+
+fn spread(flow: &mut Flow, characteristics: &[Characteristic]) {
+    let mut table = Table::new(vec![
+        Column::new("Characteristic", Align::Left, Span::Share(1.0)),
+        Column::new("n", Align::Right, Span::Natural),
+        number("Mean"),
+        number("Standard deviation s"),
+        number("s within"),
+        number("Minimum"),
+        number("Median"),
+        number("Maximum"),
+    ]);
+    for c in characteristics {
+        let Some(s) = c.statistics else { continue };
+        let fine =
+            |v: Option<f64>| Cell::text(v.map_or_else(|| ABSENT.to_owned(), |v| c.scale.finer(v)));
+        let wide =
+            |v: Option<f64>| Cell::text(v.map_or_else(|| ABSENT.to_owned(), |v| c.scale.spread(v)));
+        table.row(vec![
+            Cell::text(c.title()),
+            Cell::text(s.n.to_string()),
+            fine(s.mean),
+            wide(s.standard_deviation),
+            wide(s.sigma_within),
+            fine(s.minimum),
+            fine(s.median),
+            fine(s.maximum),
+        ]);
+    }
+    table.set(flow);
+}
+
+fn capability(flow: &mut Flow, characteristics: &[Characteristic]) {
+    let mut table = Table::new(vec![
+        Column::new("Characteristic", Align::Left, Span::Share(1.0)),
+        number("Cp"),
+        number("Cpk"),
+        number("Cpk, lower 95 %"),
+        number("Pp"),
+        number("Ppk"),
+        number("Ppk, lower 95 %"),
+        Column::new("Non- conforming", Align::Right, Span::Natural),
+        Column::new("Undecided", Align::Right, Span::Natural),
+    ]);
+    for c in characteristics {
+        let Some(s) = c.statistics else { continue };
+        let mut cells = vec![Cell::text(c.bound.name.clone())];
+        cells.extend(
+            [s.cp, s.cpk, s.cpk_lower_95, s.pp, s.ppk, s.ppk_lower_95]
+                .into_iter()
+                .map(|v| Cell::text(index(v))),
+        );
+        cells.push(Cell::text(s.nonconforming.to_string()));
+        cells.push(Cell::text(s.undecided.to_string()));
+        table.row(cells);
+    }
+    table.set(flow);
+    flow.y += 3.0;
+    flow.small(
+        "Cp and Cpk use the standard deviation within the lot (mean moving range in measuring order), Pp and Ppk the \
+         standard deviation s of all parts; lower 95 % is the one-sided lower confidence bound.",
+    );
+}
+
+fn outliers(flow: &mut Flow, characteristics: &[Characteristic]) {
+    let rows: Vec<(&Characteristic, &String)> = characteristics
+        .iter()
+        .filter_map(|c| Some((c, c.statistics?)))
+        .flat_map(|(c, s)| s.outliers.iter().map(move |part| (c, part)))
+        .collect();
+    if rows.is_empty() {
+        return;
+    }
+    flow.subheading("Outliers", 40.0);
+    let mut table = Table::new(vec![
+        Column::new("Part", Align::Left, Span::Natural),
+        Column::new("Characteristic", Align::Left, Span::Natural),
+        Column::new("Value", Align::Left, Span::Share(1.0)),
+    ]);
+    for (c, part) in rows {
+        let value = c.values.iter().find(|v| v.part == part);
+        let figure = value.map_or_else(
+            || ABSENT.to_owned(),
+            |v| format!("{} {}", c.scale.figure(v.value), c.scale.unit),
+        );
+        table.row(vec![
+            Cell::text(part.clone()).link(part_anchor(part)),
+            Cell::text(c.bound.name.clone()),
+            Cell::text(figure),
+        ]);
+    }
+    table.set(flow);
+}
+
+/// Why a statistic is missing.
+fn notes(flow: &mut Flow, characteristics: &[Characteristic]) {
+    for c in characteristics {
+        for warning in c.statistics.iter().flat_map(|s| &s.warnings) {
+            flow.small(&format!(
+                "{}: {} ({})",
+                c.bound.name, warning.text, warning.code
+            ));
+        }
+    }
+}

@@ -1,0 +1,499 @@
+//! Tables: set with rules, figures aligned on the decimal point, heads repeated on every page.
+
+use super::canvas::{Area, Canvas, Mark, Pen};
+use super::flow::Flow;
+use super::ink::{ACCEPT, Ink, QUIET, TEXT};
+use super::text::{Style, width, wrap};
+use super::typeface::Weight;
+
+/// How the cells of a column stand.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Align {
+    Left,
+    Right,
+    /// On the decimal point.
+    Decimal,
+}
+
+/// How wide a column is.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) enum Span {
+    /// As its widest cell.
+    Natural,
+    /// Points.
+    Fixed(f64),
+    /// A share of what is left over.
+    Share(f64),
+}
+
+/// A column.
+#[derive(Debug, Clone)]
+pub(super) struct Column {
+    pub head: String,
+    /// Unit, on a line below the head.
+    pub unit: String,
+    pub align: Align,
+    pub span: Span,
+}
+
+impl Column {
+    pub fn new(head: &str, align: Align, span: Span) -> Self {
+        Column {
+            head: head.to_owned(),
+            unit: String::new(),
+            align,
+            span,
+        }
+    }
+
+    pub fn unit(mut self, unit: &str) -> Self {
+        self.unit = unit.to_owned();
+        self
+    }
+}
+
+/// A drawing in a cell.
+type Drawing<'a> = Box<dyn Fn(&mut Canvas, Area) + 'a>;
+
+/// A cell.
+#[derive(Default)]
+pub(super) struct Cell<'a> {
+    pub text: String,
+    pub bold: bool,
+    pub ink: Option<Ink>,
+    pub mark: Option<Mark>,
+    /// Anchor it leads to.
+    pub link: Option<String>,
+    pub drawing: Option<Drawing<'a>>,
+}
+
+impl<'a> Cell<'a> {
+    pub fn text(text: impl Into<String>) -> Self {
+        Cell {
+            text: text.into(),
+            ..Cell::default()
+        }
+    }
+
+    pub fn bold(mut self) -> Self {
+        self.bold = true;
+        self
+    }
+
+    pub fn ink(mut self, ink: Ink) -> Self {
+        self.ink = Some(ink);
+        self
+    }
+
+    pub fn mark(mut self, mark: Option<Mark>) -> Self {
+        self.mark = mark;
+        self
+    }
+
+    pub fn link(mut self, to: String) -> Self {
+        self.link = Some(to);
+        self
+    }
+
+    pub fn drawing(draw: impl Fn(&mut Canvas, Area) + 'a) -> Self {
+        Cell {
+            drawing: Some(Box::new(draw)),
+            ..Cell::default()
+        }
+    }
+
+    fn style(&self, size: f64) -> Style {
+        Style {
+            size,
+            weight: if self.bold {
+                Weight::Bold
+            } else {
+                Weight::Regular
+            },
+            ink: self
+                .ink
+                .unwrap_or(if self.link.is_some() { ACCEPT } else { TEXT }),
+        }
+    }
+}
+
+/// A row of cells.
+#[derive(Default)]
+pub(super) struct Row<'a> {
+    pub cells: Vec<Cell<'a>>,
+    /// Name of this row as a place to link to.
+    pub anchor: Option<String>,
+}
+
+/// A table.
+pub(super) struct Table<'a> {
+    pub columns: Vec<Column>,
+    pub rows: Vec<Row<'a>>,
+    /// Text size; shrinks where the columns would not fit.
+    pub size: f64,
+    /// Least height of a row, for drawings.
+    pub row_height: f64,
+    /// A hairline after every so many rows; 0 for none.
+    pub rule_every: usize,
+}
+
+impl<'a> Table<'a> {
+    pub fn new(columns: Vec<Column>) -> Self {
+        Table {
+            columns,
+            rows: Vec::new(),
+            size: 9.2,
+            row_height: 0.0,
+            rule_every: 1,
+        }
+    }
+
+    pub fn row(&mut self, cells: Vec<Cell<'a>>) {
+        self.rows.push(Row {
+            cells,
+            anchor: None,
+        });
+    }
+
+    pub fn row_at(&mut self, anchor: String, cells: Vec<Cell<'a>>) {
+        self.rows.push(Row {
+            cells,
+            anchor: Some(anchor),
+        });
+    }
+
+    /// Pours the table into the flow.
+    pub fn set(&self, flow: &mut Flow) {
+        let grid = Grid::fit(self, flow.left(), flow.sheet.measure());
+        let head = grid.head_height();
+        let first = self
+            .rows
+            .first()
+            .map_or(0.0, |r| grid.row_height(self.row_height, &grid.lines(r)));
+        flow.need(head + first.min(60.0));
+        grid.head(flow);
+        for (index, row) in self.rows.iter().enumerate() {
+            grid.row(flow, self, row);
+            let last = index + 1 == self.rows.len();
+            if self.rule_every > 0 && ((index + 1) % self.rule_every == 0 || last) {
+                let (l, r, y) = (flow.left(), flow.right(), flow.y);
+                flow.page().rule(l, r, y);
+            }
+        }
+    }
+}
+
+const GAP: f64 = 9.0;
+const MARK: f64 = 0.78;
+
+/// Resolved geometry of a table.
+struct Grid<'t> {
+    columns: &'t [Column],
+    size: f64,
+    leading: f64,
+    /// Left edge and width of each column.
+    edges: Vec<(f64, f64)>,
+    /// Width before and after the decimal point.
+    halves: Vec<(f64, f64)>,
+}
+
+/// What stands before the decimal point, and the rest.
+fn halves(text: &str) -> (&str, &str) {
+    let end = text
+        .find('.')
+        .or_else(|| text.find([' ', 'e']))
+        .unwrap_or(text.len());
+    text.split_at(end)
+}
+
+fn mark_width(cell: &Cell, size: f64) -> f64 {
+    if cell.mark.is_some() {
+        size * (MARK + 0.35)
+    } else {
+        0.0
+    }
+}
+
+/// Where a cell, or the part of it on this page, stands.
+struct Spot {
+    area: Area,
+    /// Not the continuation of a cell from the page before.
+    first: bool,
+    /// In a row that drawings made taller than its text.
+    tall: bool,
+}
+
+impl<'t> Grid<'t> {
+    fn fit(table: &'t Table, left: f64, measure: f64) -> Grid<'t> {
+        let mut size = table.size;
+        loop {
+            let mut grid = Grid {
+                columns: &table.columns,
+                size,
+                leading: size * 1.28,
+                edges: Vec::new(),
+                halves: Vec::new(),
+            };
+            let natural = grid.natural(table, measure);
+            if grid.place(&natural, left, measure) || size < 5.4 {
+                return grid;
+            }
+            size *= 0.94;
+        }
+    }
+
+    /// Widest content of each column.
+    fn natural(&mut self, table: &Table, measure: f64) -> Vec<f64> {
+        let head = self.head_style();
+        let mut widths = Vec::with_capacity(self.columns.len());
+        for (index, column) in self.columns.iter().enumerate() {
+            let words = column.head.split(' ').chain([column.unit.as_str()]);
+            let mut widest = words.map(|w| width(w, head)).fold(0.0, f64::max);
+            let (mut before, mut after) = (0.0f64, 0.0f64);
+            for cell in table.rows.iter().filter_map(|r| r.cells.get(index)) {
+                let style = cell.style(self.size);
+                let mark = mark_width(cell, self.size);
+                if column.align == Align::Decimal {
+                    let (whole, rest) = halves(&cell.text);
+                    before = before.max(width(whole, style) + mark);
+                    after = after.max(width(rest, style));
+                } else {
+                    widest = widest.max(width(&cell.text, style) + mark);
+                }
+            }
+            self.halves.push((before, after));
+            widest = widest.max(before + after);
+            if column.align == Align::Left {
+                widest = widest.min(measure * 0.5);
+            }
+            widths.push(widest.min(measure));
+        }
+        widths
+    }
+
+    /// Gives every column its place; false where the natural widths do not fit.
+    fn place(&mut self, natural: &[f64], left: f64, measure: f64) -> bool {
+        let gaps = GAP * (self.columns.len().saturating_sub(1)) as f64;
+        let mut taken = gaps;
+        let mut shares = 0.0;
+        for (column, natural) in self.columns.iter().zip(natural) {
+            match column.span {
+                Span::Natural => taken += natural,
+                Span::Fixed(w) => taken += w,
+                Span::Share(s) => shares += s,
+            }
+        }
+        let shared = self
+            .columns
+            .iter()
+            .filter(|c| matches!(c.span, Span::Share(_)))
+            .count();
+        let over = measure - taken;
+        let fits = over >= 52.0 * shared as f64;
+        // Where even the smallest size does not fit, all columns shrink alike and their cells wrap.
+        let squeeze = if fits {
+            1.0
+        } else {
+            (measure - gaps).max(1.0) / (taken - gaps + 52.0 * shared as f64)
+        };
+        // Without a column that takes what is left over, the gaps do, within reason.
+        let spare = if shared == 0 && fits {
+            (over / self.columns.len().saturating_sub(1).max(1) as f64).min(26.0)
+        } else {
+            0.0
+        };
+        let mut x = left;
+        for (column, natural) in self.columns.iter().zip(natural) {
+            let w = match column.span {
+                Span::Natural => natural * squeeze,
+                Span::Fixed(w) => w * squeeze,
+                Span::Share(s) if fits => over * s / shares,
+                Span::Share(_) => 52.0 * squeeze,
+            };
+            self.edges.push((x, w));
+            x += w + GAP + spare;
+        }
+        fits
+    }
+
+    fn head_style(&self) -> Style {
+        Style::regular(self.size * 0.92).ink(QUIET)
+    }
+
+    fn head_lines(&self) -> Vec<Vec<String>> {
+        let style = self.head_style();
+        self.columns
+            .iter()
+            .zip(&self.edges)
+            .map(|(c, (_, w))| {
+                let mut lines = wrap(&c.head, style, w + 0.01);
+                if !c.unit.is_empty() {
+                    lines.extend(wrap(&c.unit, style, w + 0.01));
+                }
+                lines
+            })
+            .collect()
+    }
+
+    fn head_height(&self) -> f64 {
+        let lines = self.head_lines().iter().map(Vec::len).max().unwrap_or(0);
+        lines as f64 * self.leading + 5.0
+    }
+
+    fn head(&self, flow: &mut Flow) {
+        let heads = self.head_lines();
+        let most = heads.iter().map(Vec::len).max().unwrap_or(0);
+        if self.columns.iter().all(|c| c.head.is_empty()) {
+            return;
+        }
+        let area = flow.take(self.head_height());
+        let style = self.head_style();
+        for ((column, (x, w)), lines) in self.columns.iter().zip(&self.edges).zip(&heads) {
+            for (n, line) in lines.iter().enumerate() {
+                let row = most - lines.len() + n;
+                let y = area.top + (row as f64 + 0.78) * self.leading;
+                let start = match column.align {
+                    Align::Left => *x,
+                    Align::Right | Align::Decimal => x + w - width(line, style),
+                };
+                flow.page().text((start, y), style, line);
+            }
+        }
+        let y = area.bottom - 1.5;
+        flow.page()
+            .line((area.left, y), (area.right, y), Pen::solid(0.8, TEXT));
+    }
+
+    /// The lines of every cell of a row.
+    fn lines(&self, row: &Row) -> Vec<Vec<String>> {
+        row.cells
+            .iter()
+            .zip(&self.edges)
+            .map(|(cell, (_, w))| {
+                if cell.text.is_empty() {
+                    return Vec::new();
+                }
+                let room = w - mark_width(cell, self.size) + 0.01;
+                wrap(&cell.text, cell.style(self.size), room.max(8.0))
+            })
+            .collect()
+    }
+
+    fn row_height(&self, least: f64, lines: &[Vec<String>]) -> f64 {
+        let most = lines.iter().map(Vec::len).max().unwrap_or(0).max(1);
+        (most as f64 * self.leading + 2.4).max(least)
+    }
+
+    fn row(&self, flow: &mut Flow, table: &Table, row: &Row) {
+        let mut lines = self.lines(row);
+        let whole = flow.sheet.bottom - flow.sheet.top - self.head_height();
+        let height = self.row_height(table.row_height, &lines);
+        if flow.room() < height.min(whole) {
+            flow.new_page();
+            self.head(flow);
+        }
+        if let Some(anchor) = &row.anchor {
+            flow.anchor(anchor);
+        }
+        let mut first = true;
+        // A row taller than a page goes on over the next ones.
+        loop {
+            let fit = (((flow.room() - 2.4) / self.leading).floor() as usize).max(1);
+            let rest: Vec<Vec<String>> = lines
+                .iter_mut()
+                .map(|l| l.split_off(l.len().min(fit)))
+                .collect();
+            let height = self.row_height(if first { table.row_height } else { 0.0 }, &lines);
+            let area = flow.take(height);
+            for (index, cell) in row.cells.iter().enumerate() {
+                let (Some(text), Some((x, w))) = (lines.get(index), self.edges.get(index)) else {
+                    continue;
+                };
+                let edge = Area {
+                    left: *x,
+                    right: x + w,
+                    ..area
+                };
+                let spot = Spot {
+                    area: edge,
+                    first,
+                    tall: table.row_height > 0.0,
+                };
+                self.cell(flow.page(), index, cell, text, spot);
+            }
+            if rest.iter().all(Vec::is_empty) {
+                return;
+            }
+            lines = rest;
+            first = false;
+            flow.new_page();
+            self.head(flow);
+        }
+    }
+
+    fn cell(&self, page: &mut Canvas, index: usize, cell: &Cell, lines: &[String], spot: Spot) {
+        let Spot { area, first, tall } = spot;
+        if let (Some(draw), true) = (&cell.drawing, first) {
+            draw(page, area);
+        }
+        let style = cell.style(self.size);
+        // Text stands in the middle of a row that a drawing made taller.
+        let block = lines.len() as f64 * self.leading + 2.4;
+        let lead = if tall {
+            (area.height() - block).max(0.0) / 2.0
+        } else {
+            0.0
+        };
+        let top = area.top + lead + 1.2;
+        let mark = mark_width(cell, self.size);
+        for (n, line) in lines.iter().enumerate() {
+            let y = top + (n as f64 + 0.76) * self.leading;
+            let x = self.start(index, area, line, style, mark);
+            if let (Some(kind), 0, true) = (cell.mark, n, first) {
+                let centre = (
+                    x + self.size * MARK / 2.0,
+                    y - self.size * super::typeface::CAP_HEIGHT / 2.0,
+                );
+                page.mark(kind, centre, self.size * MARK);
+            }
+            let wide = page.text((x + mark, y), style, line);
+            if let Some(to) = &cell.link {
+                let target = Area {
+                    left: x,
+                    right: x + mark + wide,
+                    top: y - self.size * 0.8,
+                    bottom: y + self.size * 0.25,
+                };
+                page.link(target, to);
+            }
+        }
+    }
+
+    /// Where a line of a cell begins.
+    fn start(&self, index: usize, area: Area, line: &str, style: Style, mark: f64) -> f64 {
+        let align = self.columns.get(index).map_or(Align::Left, |c| c.align);
+        let free = match align {
+            Align::Left => 0.0,
+            Align::Right => area.width() - width(line, style) - mark,
+            Align::Decimal => {
+                let (whole, _) = halves(line);
+                let after = self.halves.get(index).map_or(0.0, |h| h.1);
+                area.width() - after - width(whole, style) - mark
+            }
+        };
+        area.left + free.max(0.0)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn figures_split_at_their_point() {
+        assert_eq!(halves("4.683 ± 0.010"), ("4", ".683 ± 0.010"));
+        assert_eq!(halves("12"), ("12", ""));
+        assert_eq!(halves("−4e−5"), ("−4", "e−5"));
+        assert_eq!(halves("–"), ("–", ""));
+    }
+}

@@ -1,0 +1,175 @@
+//! A limit file resolved, for people. Fits 80 columns.
+
+use crate::diagnostic::{printable, wrap};
+use crate::limits::{Acceptance, Bound, Conditions, DecisionRuleKind, Limits, Retest, aql_text};
+use crate::quantity::{NO_VALUE, shortest};
+use crate::readings::{Equivalent, Place};
+use comfy_table::{CellAlignment, ContentArrangement, Table, presets};
+
+const WIDTH: usize = 80;
+/// Columns of the labels on the left.
+const LABEL: usize = 15;
+
+/// The page: identity, conditions, the table of bounds, and what is made of them.
+pub fn page(limits: &Limits) -> String {
+    let mut page = format!("{}   revision {}\n", printable(&limits.part), printable(&limits.revision));
+    if let Some(description) = &limits.description {
+        for line in wrap(&printable(description), WIDTH) {
+            page.push_str(&line);
+            page.push('\n');
+        }
+    }
+    page.push('\n');
+    page.push_str(&table(limits));
+    page.push_str("\n\n");
+    for (label, text) in sections(limits) {
+        page.push_str(&labelled(label, &text));
+    }
+    page
+}
+
+fn labelled(label: &str, text: &str) -> String {
+    let mut lines = String::new();
+    for (index, line) in wrap(&printable(text), WIDTH - LABEL).iter().enumerate() {
+        let label = if index == 0 { label } else { "" };
+        lines.push_str(&format!("{label:<LABEL$}{line}\n"));
+    }
+    lines
+}
+
+fn table(limits: &Limits) -> String {
+    let mut table = Table::new();
+    table
+        .load_preset(presets::UTF8_HORIZONTAL_ONLY)
+        .set_content_arrangement(ContentArrangement::Dynamic)
+        .set_width(80)
+        .set_header(["characteristic", "at", "lower", "upper", "nominal", "class"]);
+    for bound in &limits.bounds {
+        table.add_row(row(bound));
+    }
+    for index in 2..5 {
+        if let Some(column) = table.column_mut(index) {
+            column.set_cell_alignment(CellAlignment::Right);
+        }
+    }
+    table.to_string()
+}
+
+fn row(bound: &Bound) -> [String; 6] {
+    let unit = bound.characteristic.unit();
+    let value = |v: Option<f64>| v.map_or(NO_VALUE.to_owned(), |v| shortest(v, unit));
+    let frequency = |f: f64| shortest(f, "Hz");
+    let place = match bound.place {
+        Place::At(f) => frequency(f),
+        Place::Between(from, to) => format!("{} .. {}", frequency(from), frequency(to)),
+        Place::Anywhere => "whole sweep".to_owned(),
+    };
+    [
+        bound.characteristic.title().to_owned(),
+        place,
+        value(bound.lower),
+        value(bound.upper),
+        value(bound.nominal),
+        printable(&bound.class),
+    ]
+}
+
+fn sections(limits: &Limits) -> Vec<(&'static str, String)> {
+    let mut sections = vec![
+        ("Conditions", conditions(&limits.conditions)),
+        ("Decision rule", decision_rule(limits)),
+        ("Acceptance", acceptance(&limits.acceptance)),
+    ];
+    for rule in &limits.capability_rules {
+        let of = rule.of.join(", ");
+        let text = format!("held where {} of {of} is below {}", rule.index, rule.min);
+        sections.push(("Lot rule", text));
+    }
+    for rule in &limits.outlier_rules {
+        let of = rule.of.join(", ");
+        let most = rule.allowed;
+        let alpha = rule.alpha;
+        let text = format!(
+            "held where more than {most} parts are outliers of one of {of} (generalized ESD, \
+             alpha {alpha})"
+        );
+        sections.push(("Lot rule", text));
+    }
+    if limits.capability_rules.is_empty() && limits.outlier_rules.is_empty() {
+        sections.push(("Lot rules", "none: statistics are reported and decide nothing".to_owned()));
+    }
+    sections.push(("Retest", retest(limits.retest)));
+    sections
+}
+
+fn conditions(conditions: &Conditions) -> String {
+    let mut parts = Vec::new();
+    if let Some(window) = conditions.drive {
+        parts.push(format!("drive {} rms", window.words("V")));
+    }
+    if let Some(window) = conditions.temperature {
+        parts.push(format!("temperature {}", window.words("°C")));
+    }
+    parts.push(match conditions.equivalent {
+        Equivalent::Series => "series equivalent".to_owned(),
+        Equivalent::Parallel => "parallel equivalent".to_owned(),
+    });
+    if let Some(ageing) = conditions.ageing {
+        parts.push(format!(
+            "capacitance referred to {} after last heat, {} a decade",
+            shortest(ageing.refer_to, "s"),
+            shortest(ageing.per_decade, "1")
+        ));
+    }
+    parts.join("; ")
+}
+
+/// The name of a decision rule in files.
+pub fn rule_name(kind: DecisionRuleKind) -> &'static str {
+    match kind {
+        DecisionRuleKind::SimpleAcceptance => "simple_acceptance",
+        DecisionRuleKind::GuardedAcceptance => "guarded_acceptance",
+        DecisionRuleKind::GuardedRejection => "guarded_rejection",
+    }
+}
+
+fn decision_rule(limits: &Limits) -> String {
+    let rule = limits.decision_rule;
+    let name = rule_name(rule.kind).replace('_', " ");
+    match rule.kind {
+        DecisionRuleKind::SimpleAcceptance => format!("{name}: uncertainty decides nothing"),
+        _ => format!("{name}, guard band {} standard uncertainties", rule.coverage_factor),
+    }
+}
+
+fn acceptance(acceptance: &Acceptance) -> String {
+    let by_class = |aql: &[(String, f64)]| {
+        let pairs = aql.iter().map(|(class, aql)| format!("{class} {}", aql_text(*aql)));
+        pairs.collect::<Vec<_>>().join(", ")
+    };
+    match acceptance {
+        Acceptance::Attributes { level, aql } => format!(
+            "attributes, ISO 2859-1 level {level}; AQL in percent by class: {}",
+            by_class(aql)
+        ),
+        Acceptance::Variables { level, aql } => format!(
+            "variables, ISO 3951-1 level {level}; AQL in percent by class: {}",
+            by_class(aql)
+        ),
+        Acceptance::ZeroAcceptance { quality_limit, consumers_risk } => format!(
+            "zero acceptance, {} nonconforming accepted with a risk of at most {}",
+            shortest(*quality_limit, "1"),
+            shortest(*consumers_risk, "1")
+        ),
+        Acceptance::Fixed { sample, accept } => {
+            format!("fixed sample of {sample}, at most {accept} nonconforming")
+        }
+    }
+}
+
+fn retest(retest: Retest) -> String {
+    format!(
+        "further tries: {} after unmeasured, {} after nonconforming",
+        retest.unmeasured, retest.nonconforming
+    )
+}

@@ -1,0 +1,496 @@
+//! The verdict on a lot from its parts: counting against the plan, conditions, precedence of reasons.
+//!
+//! Plans are those of ISO 2859-1:1999 tables 1 and 2-A: a lot of 4000 at level II has code letter L, and
+//! AQL 0.65 gives n 200, Ac 3, Re 4.
+
+use chrono::{DateTime, NaiveDate};
+use indexmap::IndexMap;
+use reelgate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
+use reelgate::limits::{
+    Acceptance, Ageing, Bound, CapabilityRule, Conditions, DecisionRule, DecisionRuleKind, Limits,
+    OutlierRule, Retest, Window,
+};
+use reelgate::lot::{Lot, LotJudgement, LotVerdict, judge, plan};
+use reelgate::readings::{Characteristic, Equivalent, Place};
+use reelgate::station::{Compensation, Instrument, Jig, Method, Station, Uncertainty};
+use reelgate::statistics::sampling::Severity;
+
+const KEY: &str = "capacitance@1kHz";
+
+fn time(text: &str) -> DateTime<chrono::FixedOffset> {
+    DateTime::parse_from_rfc3339(text).expect("a time")
+}
+
+fn lot(quantity: u64) -> Lot {
+    Lot {
+        lot: "26K-0001".into(),
+        part: "RG-1".into(),
+        supplier: Some("SUP-001".into()),
+        quantity,
+        date_code: None,
+        order: None,
+        label: None,
+        operator: None,
+        station: "BENCH-1".into(),
+        measured: time("2026-10-05T09:12:00+02:00"),
+        temperature: Some(23.0),
+        humidity: None,
+        drive: Some(1.0),
+        last_heat: None,
+        sweeps: "sweeps".into(),
+    }
+}
+
+fn limits(acceptance: Acceptance) -> Limits {
+    Limits {
+        part: "RG-1".into(),
+        revision: "1".into(),
+        description: None,
+        conditions: Conditions {
+            drive: None,
+            temperature: None,
+            equivalent: Equivalent::Series,
+            ageing: None,
+        },
+        bounds: vec![Bound {
+            key: KEY.into(),
+            characteristic: Characteristic::Capacitance,
+            place: Place::At(1e3),
+            lower: Some(0.9e-6),
+            upper: Some(1.1e-6),
+            nominal: Some(1e-6),
+            class: "A".into(),
+        }],
+        decision_rule: DecisionRule {
+            kind: DecisionRuleKind::SimpleAcceptance,
+            coverage_factor: 2.0,
+        },
+        acceptance,
+        capability_rules: vec![],
+        outlier_rules: vec![],
+        retest: Retest::default(),
+    }
+}
+
+fn aql(value: f64) -> Acceptance {
+    Acceptance::Attributes {
+        level: "II".into(),
+        aql: vec![("A".into(), value)],
+    }
+}
+
+fn station() -> Station {
+    Station {
+        name: "BENCH-1".into(),
+        instrument: Some(Instrument {
+            asset: "FA-1".into(),
+            calibrated: NaiveDate::from_ymd_opt(2026, 3, 2),
+            due: NaiveDate::from_ymd_opt(2027, 3, 2),
+        }),
+        jig: Some(Jig {
+            asset: "JG-1".into(),
+            checked: Some(time("2026-10-05T07:50:00+02:00")),
+            valid_for: Some(12.0 * 3600.0),
+        }),
+        method: Method::Direct,
+        reference: None,
+        layout: None,
+        compensation: Compensation::default(),
+        uncertainty: Uncertainty::default(),
+    }
+}
+
+/// A value that wanders evenly inside the limits, a little differently for each part.
+fn value(i: usize) -> f64 {
+    1e-6 + 1e-8 * ((i as f64 * 0.618_034).fract() - 0.5)
+}
+
+fn part(i: usize, verdict: PartVerdict, value: f64) -> PartRecord {
+    let reading = ReadingRecord {
+        value: Some(value),
+        standard_uncertainty: None,
+        unit: "F".into(),
+        lower: Some(0.9e-6),
+        upper: Some(1.1e-6),
+        margin: None,
+        verdict,
+        frequency: None,
+        above: None,
+        below: None,
+        as_measured: None,
+        warnings: vec![],
+    };
+    let class = matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided)
+        .then(|| "A".to_owned());
+    PartRecord {
+        part: format!("{:03}", i + 1),
+        verdict,
+        class,
+        drive: None,
+        attempts: vec![AttemptRecord {
+            attempt: 1,
+            file: format!("sweeps/{:03}.csv", i + 1),
+            sha256: format!("{i:064x}"),
+            verdict,
+            counts: true,
+            notes: vec![],
+            faults: vec![],
+        }],
+        readings: IndexMap::from([(KEY.to_owned(), reading)]),
+        faults: vec![],
+        warnings: vec![],
+    }
+}
+
+/// `n` conforming parts but for those named.
+fn parts(n: usize, others: &[(usize, PartVerdict)]) -> Vec<PartRecord> {
+    (0..n)
+        .map(|i| {
+            let verdict = others
+                .iter()
+                .find(|(at, _)| *at == i)
+                .map_or(PartVerdict::Conforming, |(_, v)| *v);
+            let value = if verdict == PartVerdict::Nonconforming {
+                1.2e-6
+            } else {
+                value(i)
+            };
+            part(i, verdict, value)
+        })
+        .collect()
+}
+
+fn judged(lot: &Lot, limits: &Limits, station: &Station, parts: &[PartRecord]) -> LotJudgement {
+    let plan = plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
+    judge(lot, limits, station, &plan, parts, vec![])
+}
+
+fn outcome(judgement: &LotJudgement) -> (LotVerdict, Vec<&str>) {
+    (
+        judgement.verdict,
+        judgement.reasons.iter().map(|r| r.code.as_str()).collect(),
+    )
+}
+
+fn first(n: usize, verdict: PartVerdict) -> Vec<(usize, PartVerdict)> {
+    (0..n).map(|i| (i, verdict)).collect()
+}
+
+#[test]
+fn the_plan_of_4000_parts_accepts_up_to_three() {
+    use PartVerdict::*;
+    let (lot, limits, station) = (lot(4000), limits(aql(0.65)), station());
+    let case =
+        |others: &[(usize, PartVerdict)]| judged(&lot, &limits, &station, &parts(200, others));
+    let accepted = case(&first(3, Nonconforming));
+    let class = &accepted.sampling.classes["A"];
+    assert_eq!(
+        (class.n, class.ac, class.re, class.nonconforming),
+        (200, 3, 4, 3)
+    );
+    assert_eq!(accepted.sampling.code_letter.as_deref(), Some("L"));
+    assert_eq!(
+        outcome(&accepted),
+        (LotVerdict::Accept, vec!["accepted_by_plan"])
+    );
+    assert_eq!(
+        outcome(&case(&first(4, Nonconforming))),
+        (LotVerdict::Reject, vec!["nonconforming_over_ac"])
+    );
+}
+
+#[test]
+fn undecided_parts_are_counted_both_ways() {
+    use PartVerdict::*;
+    let (lot, limits, station) = (lot(4000), limits(aql(0.65)), station());
+    let case = |others: &[(usize, PartVerdict)]| {
+        judged(&lot, &limits, &station, &parts(200, others)).verdict
+    };
+    assert_eq!(
+        case(&first(3, Undecided)),
+        LotVerdict::Accept,
+        "even if all three were nonconforming"
+    );
+    assert_eq!(case(&first(4, Undecided)), LotVerdict::Hold);
+    let mut mixed = first(4, Nonconforming);
+    mixed.push((10, Undecided));
+    assert_eq!(
+        case(&mixed),
+        LotVerdict::Reject,
+        "even if the undecided one were conforming"
+    );
+}
+
+#[test]
+fn a_short_sample_holds_but_a_proven_rejection_stands() {
+    use PartVerdict::*;
+    let (lot, limits, station) = (lot(4000), limits(aql(0.65)), station());
+    assert_eq!(
+        outcome(&judged(&lot, &limits, &station, &parts(199, &[]))),
+        (LotVerdict::Hold, vec!["sample_too_small"])
+    );
+    let rejected = judged(
+        &lot,
+        &limits,
+        &station,
+        &parts(50, &first(4, Nonconforming)),
+    );
+    assert_eq!(
+        outcome(&rejected),
+        (
+            LotVerdict::Reject,
+            vec!["nonconforming_over_ac", "sample_too_small"]
+        )
+    );
+}
+
+#[test]
+fn nothing_beyond_the_sample_or_unmeasured_is_ignored() {
+    use PartVerdict::*;
+    let (lot, limits, station) = (lot(4000), limits(aql(0.65)), station());
+    let beyond = judged(
+        &lot,
+        &limits,
+        &station,
+        &parts(210, &[(205, Nonconforming)]),
+    );
+    assert_eq!(
+        outcome(&beyond),
+        (LotVerdict::Hold, vec!["nonconforming_beyond_sample"])
+    );
+    let unmeasured = judged(&lot, &limits, &station, &parts(200, &[(7, Unmeasured)]));
+    assert_eq!(
+        outcome(&unmeasured),
+        (LotVerdict::Hold, vec!["unmeasured_parts"])
+    );
+    assert_eq!(
+        unmeasured.statistics[KEY].n, 199,
+        "a reading of an unmeasured part is no value"
+    );
+}
+
+#[test]
+fn a_lot_of_one_is_inspected_itself_and_a_small_lot_whole() {
+    let station = station();
+    let one = judged(&lot(1), &limits(aql(0.65)), &station, &parts(1, &[]));
+    assert_eq!(one.verdict, LotVerdict::Accept);
+    assert_eq!(one.sampling.required, 1);
+    // Code letter B of a lot of 10 points by arrows to n 20 at AQL 0.65: more than the lot.
+    let ten = judged(&lot(10), &limits(aql(0.65)), &station, &parts(10, &[]));
+    assert_eq!(
+        (ten.sampling.required, ten.verdict),
+        (10, LotVerdict::Accept)
+    );
+    let eleven = judged(&lot(10), &limits(aql(0.65)), &station, &parts(11, &[]));
+    assert_eq!(
+        outcome(&eleven),
+        (LotVerdict::Hold, vec!["more_parts_than_lot"])
+    );
+}
+
+#[test]
+fn a_fixed_sample_and_zero_acceptance() {
+    use PartVerdict::*;
+    let station = station();
+    let fixed = limits(Acceptance::Fixed {
+        sample: 32,
+        accept: 1,
+    });
+    let case = |n, others: &[(usize, PartVerdict)]| {
+        judged(&lot(500), &fixed, &station, &parts(n, others)).verdict
+    };
+    assert_eq!(case(32, &first(1, Nonconforming)), LotVerdict::Accept);
+    assert_eq!(case(32, &first(2, Nonconforming)), LotVerdict::Reject);
+    // Lot of 100 with 5 nonconforming: P(none in n) = C(95, n)/C(100, n) <= 0.10 first at n = 37
+    // (hypergeometric law; 0.1016 at 36, 0.0952 at 37 by hand).
+    let zero = limits(Acceptance::ZeroAcceptance {
+        quality_limit: 0.05,
+        consumers_risk: 0.10,
+    });
+    let judged = judged(&lot(100), &zero, &station, &parts(40, &[]));
+    let risk = |n: u64| {
+        (0..5)
+            .map(|i| (100 - n - i) as f64 / (100 - i) as f64)
+            .product::<f64>()
+    };
+    let n = judged.sampling.classes["all"].n;
+    assert!(risk(n) <= 0.10 && risk(n - 1) > 0.10, "n {n}");
+    assert_eq!(judged.sampling.classes["all"].ac, 0);
+}
+
+#[test]
+fn every_unmet_condition_holds_whatever_the_counts_say() {
+    use PartVerdict::*;
+    let mut limits = limits(aql(0.65));
+    limits.conditions.drive = Some(Window {
+        lower: Some(0.8),
+        upper: Some(1.2),
+    });
+    limits.conditions.temperature = Some(Window {
+        lower: Some(18.0),
+        upper: Some(28.0),
+    });
+    limits.conditions.ageing = Some(Ageing {
+        per_decade: 0.025,
+        refer_to: 3.6e6,
+    });
+    let (mut good, station) = (lot(4000), station());
+    good.last_heat = NaiveDate::from_ymd_opt(2026, 7, 1).and_then(|d| d.and_hms_opt(0, 0, 0));
+    good.label = Some("[)>\u{1e}06\u{1d}PRG-1\u{1d}Q4000\u{1d}1T26K-0001\u{1e}\u{4}".into());
+    let sample = parts(200, &[]);
+    let clean = judged(&good, &limits, &station, &sample);
+    assert_eq!(clean.verdict, LotVerdict::Accept, "{:?}", clean.reasons);
+    assert_eq!(clean.conditions.len(), 6);
+    assert!(clean.conditions.iter().all(|c| c.met));
+
+    let rejected = parts(200, &first(9, Nonconforming));
+    let check = |code: &str, lot: &Lot, station: &Station| {
+        for sample in [&sample, &rejected] {
+            let judgement = judged(lot, &limits, station, sample);
+            assert_eq!(judgement.verdict, LotVerdict::Hold, "{code}");
+            assert_eq!(judgement.reasons[0].code, code);
+        }
+    };
+    for drive in [None, Some(0.5), Some(1.3)] {
+        check(
+            "drive_out_of_range",
+            &Lot {
+                drive,
+                ..good.clone()
+            },
+            &station,
+        );
+    }
+    for temperature in [None, Some(17.9), Some(28.1)] {
+        check(
+            "temperature_out_of_range",
+            &Lot {
+                temperature,
+                ..good.clone()
+            },
+            &station,
+        );
+    }
+    let minutes_ago = good.measured.naive_local() - chrono::TimeDelta::minutes(30);
+    for last_heat in [None, Some(minutes_ago)] {
+        check(
+            "ageing_unknown",
+            &Lot {
+                last_heat,
+                ..good.clone()
+            },
+            &station,
+        );
+    }
+    check(
+        "calibration_expired",
+        &Lot {
+            measured: time("2027-03-03T00:00:00+01:00"),
+            ..good.clone()
+        },
+        &{
+            let mut fresh = station.clone();
+            fresh.jig = None;
+            fresh
+        },
+    );
+    for measured in ["2026-10-05T19:50:01+02:00", "2026-10-05T07:49:00+02:00"] {
+        check(
+            "jig_check_expired",
+            &Lot {
+                measured: time(measured),
+                ..good.clone()
+            },
+            &station,
+        );
+    }
+    check(
+        "label_mismatch",
+        &Lot {
+            quantity: 3900,
+            ..good.clone()
+        },
+        &station,
+    );
+    check(
+        "label_unreadable",
+        &Lot {
+            label: Some("[)>\u{1e}06".into()),
+            ..good.clone()
+        },
+        &station,
+    );
+}
+
+#[test]
+fn lot_rules_hold_the_lot() {
+    let mut limits = limits(aql(0.65));
+    limits.capability_rules = vec![CapabilityRule {
+        of: vec![KEY.into()],
+        index: "cpk".into(),
+        min: 1.33,
+    }];
+    limits.outlier_rules = vec![OutlierRule {
+        of: vec![KEY.into()],
+        alpha: 0.01,
+        allowed: 0,
+    }];
+    let (lot, station) = (lot(4000), station());
+    let mut sample = parts(200, &[]);
+    assert_eq!(
+        judged(&lot, &limits, &station, &sample).verdict,
+        LotVerdict::Accept
+    );
+
+    sample[16] = part(16, PartVerdict::Conforming, 1.08e-6);
+    let outlier = judged(&lot, &limits, &station, &sample);
+    assert_eq!(
+        outcome(&outlier),
+        (LotVerdict::Hold, vec!["outliers_found"])
+    );
+    assert_eq!(outlier.statistics[KEY].outliers, ["017"]);
+
+    for (i, p) in sample.iter_mut().enumerate() {
+        *p = part(i, PartVerdict::Conforming, 1e-6 + 8.0 * (value(i) - 1e-6));
+    }
+    assert_eq!(
+        outcome(&judged(&lot, &limits, &station, &sample)),
+        (LotVerdict::Hold, vec!["capability_below_min"])
+    );
+
+    let same: Vec<PartRecord> = (0..200)
+        .map(|i| part(i, PartVerdict::Conforming, 1e-6))
+        .collect();
+    let without_spread = judged(&lot, &limits, &station, &same);
+    assert_eq!(without_spread.statistics[KEY].cpk, None);
+    assert_eq!(without_spread.verdict, LotVerdict::Hold);
+    assert_eq!(without_spread.reasons[0].code, "capability_not_available");
+}
+
+#[test]
+fn one_sweep_for_two_parts_is_found_by_its_bytes() {
+    let (lot, limits, station) = (lot(4000), limits(aql(0.65)), station());
+    let mut sample = parts(200, &[]);
+    sample[9].attempts[0].sha256 = sample[8].attempts[0].sha256.clone();
+    let judgement = judged(&lot, &limits, &station, &sample);
+    assert_eq!(
+        outcome(&judgement),
+        (LotVerdict::Hold, vec!["duplicate_sweep"])
+    );
+    assert!(
+        judgement.reasons[0]
+            .text
+            .contains("009.csv, sweeps/010.csv"),
+        "{}",
+        judgement.reasons[0].text
+    );
+    // A long table is one file for all parts.
+    for part in &mut sample {
+        part.attempts[0].file = "all.csv".into();
+        part.attempts[0].sha256 = "0".into();
+    }
+    assert_eq!(
+        judged(&lot, &limits, &station, &sample).verdict,
+        LotVerdict::Accept
+    );
+}
