@@ -1,4 +1,12 @@
-//! Parse the arguments, run one command, turn the outcome into an exit status.
-#![forbid(unsafe_code)]
+//! Runs one command and turns its outcome into an exit code.
 
-fn main() {}
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    let (mut out, mut err) = (anstream::stdout(), anstream::stderr());
+    ExitCode::from(reelgate::commands::run(
+        std::env::args_os(),
+        &mut out,
+        &mut err,
+    ))
+}

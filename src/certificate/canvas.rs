@@ -112,11 +112,13 @@ impl Canvas {
     /// Places one line of text on a baseline; answers its width.
     pub fn text(&mut self, (x, y): Point, style: Style, text: &str) -> f64 {
         let mut pen = x;
-        for piece in pieces(text, style.weight) {
+        // A no-break space has done its work by now; plain spaces are found and copied better.
+        let text = text.replace('\u{a0}', " ");
+        for piece in pieces(&text, style.weight) {
             match piece {
                 Piece::Run(run) => {
                     let wide = width(&run, style);
-                    if run.chars().any(|c| c != ' ' && c != '\u{a0}') {
+                    if run.chars().any(|c| c != ' ') {
                         self.items.push(Item::Text {
                             at: (pen, y),
                             style,

@@ -10,6 +10,8 @@ pub(super) struct Ink(pub f64, pub f64, pub f64);
 pub(super) const TEXT: Ink = Ink(0.09, 0.13, 0.16);
 pub(super) const QUIET: Ink = Ink(0.36, 0.41, 0.45);
 pub(super) const RULE: Ink = Ink(0.72, 0.75, 0.77);
+/// Lines of a plot's grid: there when looked for.
+pub(super) const GRID: Ink = Ink(0.86, 0.88, 0.89);
 pub(super) const PAPER: Ink = Ink(1.0, 1.0, 1.0);
 /// Readings that conform: present, not loud.
 pub(super) const CONFORMING: Ink = Ink(0.45, 0.58, 0.63);

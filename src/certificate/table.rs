@@ -201,7 +201,7 @@ struct Grid<'t> {
 fn halves(text: &str) -> (&str, &str) {
     let end = text
         .find('.')
-        .or_else(|| text.find(|c: char| c == ' ' || c == 'e'))
+        .or_else(|| text.find([' ', 'e']))
         .unwrap_or(text.len());
     text.split_at(end)
 }
@@ -212,6 +212,15 @@ fn mark_width(cell: &Cell, size: f64) -> f64 {
     } else {
         0.0
     }
+}
+
+/// Where a cell, or the part of it on this page, stands.
+struct Spot {
+    area: Area,
+    /// Not the continuation of a cell from the page before.
+    first: bool,
+    /// In a row that drawings made taller than its text.
+    tall: bool,
 }
 
 impl<'t> Grid<'t> {
@@ -255,7 +264,7 @@ impl<'t> Grid<'t> {
             self.halves.push((before, after));
             widest = widest.max(before + after);
             if column.align == Align::Left {
-                widest = widest.min(measure * 0.4);
+                widest = widest.min(measure * 0.5);
             }
             widths.push(widest.min(measure));
         }
@@ -287,6 +296,12 @@ impl<'t> Grid<'t> {
         } else {
             (measure - gaps).max(1.0) / (taken - gaps + 52.0 * shared as f64)
         };
+        // Without a column that takes what is left over, the gaps do, within reason.
+        let spare = if shared == 0 && fits {
+            (over / self.columns.len().saturating_sub(1).max(1) as f64).min(26.0)
+        } else {
+            0.0
+        };
         let mut x = left;
         for (column, natural) in self.columns.iter().zip(natural) {
             let w = match column.span {
@@ -296,7 +311,7 @@ impl<'t> Grid<'t> {
                 Span::Share(_) => 52.0 * squeeze,
             };
             self.edges.push((x, w));
-            x += w + GAP;
+            x += w + GAP + spare;
         }
         fits
     }
@@ -399,7 +414,12 @@ impl<'t> Grid<'t> {
                     right: x + w,
                     ..area
                 };
-                self.cell(flow.page(), index, cell, text, edge, first);
+                let spot = Spot {
+                    area: edge,
+                    first,
+                    tall: table.row_height > 0.0,
+                };
+                self.cell(flow.page(), index, cell, text, spot);
             }
             if rest.iter().all(Vec::is_empty) {
                 return;
@@ -411,22 +431,15 @@ impl<'t> Grid<'t> {
         }
     }
 
-    fn cell(
-        &self,
-        page: &mut Canvas,
-        index: usize,
-        cell: &Cell,
-        lines: &[String],
-        area: Area,
-        first: bool,
-    ) {
+    fn cell(&self, page: &mut Canvas, index: usize, cell: &Cell, lines: &[String], spot: Spot) {
+        let Spot { area, first, tall } = spot;
         if let (Some(draw), true) = (&cell.drawing, first) {
             draw(page, area);
         }
         let style = cell.style(self.size);
-        // A single line stands in the middle of a row that a drawing made taller.
+        // Text stands in the middle of a row that a drawing made taller.
         let block = lines.len() as f64 * self.leading + 2.4;
-        let lead = if lines.len() == 1 {
+        let lead = if tall {
             (area.height() - block).max(0.0) / 2.0
         } else {
             0.0

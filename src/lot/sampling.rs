@@ -174,7 +174,7 @@ fn attributes(
         code_letter: Some(letter.to_string()),
         severity: Some(severity),
         source: format!(
-            "ISO 2859-1:1999, tables 1 and {}, single sampling",
+            "{}, code letter by Table 1, single sampling",
             severity.table()
         ),
         classes,

@@ -89,6 +89,8 @@ fn of_bound(bound: &Bound, limits: &Limits, parts: &[PartRecord]) -> Statistics 
     }
     let mut keep = |name: &str, value: Result<f64, Undefined>| match value {
         Ok(value) => Some(value),
+        // Said once, below: with one limit there is no width to compare the spread with.
+        Err(Undefined::OneSided) => None,
         Err(why) => {
             warnings.push(Note::new(
                 &format!("{name}_undefined"),
@@ -107,6 +109,12 @@ fn of_bound(bound: &Bound, limits: &Limits, parts: &[PartRecord]) -> Statistics 
         ("ppk", capability.ppk),
     ]
     .map(|(name, value)| keep(name, value));
+    if bound.lower.is_none() || bound.upper.is_none() {
+        warnings.push(Note::new(
+            "one_sided",
+            format!("no cp, no pp: {}", Undefined::OneSided.text()),
+        ));
+    }
     let n = values.len();
     let lower = |index: Option<f64>, freedom: f64| {
         index.and_then(|index| cpk_lower_bound(index, n as u64, freedom, CONFIDENCE).ok())

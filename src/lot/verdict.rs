@@ -290,7 +290,7 @@ fn lot_rules(limits: &Limits, statistics: &IndexMap<String, Statistics>) -> Vec<
                     format!("{name} of {key} is {index:.2} from {} parts, at least {} is demanded: a quality engineer decides", of.n, rule.min),
                 )),
                 None => {
-                    let why = of.warnings.iter().find(|w| w.code == format!("{}_undefined", rule.index)).map_or("", |w| w.text.as_str());
+                    let why = of.warnings.iter().find(|w| w.code == format!("{}_undefined", rule.index) || w.code == "one_sided").map_or("", |w| w.text.as_str());
                     notes.push(Note::new(
                         "capability_not_available",
                         format!("{name} of {key} is demanded and cannot be had ({why}): a quality engineer decides"),

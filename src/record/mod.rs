@@ -5,13 +5,13 @@
 
 mod assemble;
 mod canonical;
-//mod make;
+mod make;
 
-pub use assemble::{Digests, Inputs, method, sha256};
-pub use canonical::{from_bytes, to_bytes};
-//pub use make::{Made, PartSweep, Refusal, Sources, make};
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{ClassSection, ConditionSection, LotVerdict, Sampling, Statistics};
+pub use assemble::{Digests, Inputs, method, sha256};
+pub use canonical::{from_bytes, to_bytes};
+pub use make::{Made, PartSweep, Refusal, Sources, make};
 
 use crate::diagnostic::Note;
 use indexmap::IndexMap;

@@ -5,7 +5,7 @@
 //! a normal distribution.
 
 use super::Undefined;
-use super::distributions::{chi_squared_quantile, normal_upper_quantile};
+use super::distributions::{chi_squared_quantile, noncentrality_at, normal_upper_quantile};
 use super::summary::{Summary, moving_range_sigma};
 
 /// Capability indices of a sample; each is there or says why it is not.
@@ -138,4 +138,29 @@ fn check_bound(nu: f64, confidence: f64) -> Result<(), Undefined> {
         });
     }
     Ok(())
+}
+
+/// Lower confidence bound of a one-sided index, (U − x̄)/3s or (x̄ − L)/3s with the sample's own standard deviation: exact.
+///
+/// The C with P(T ≥ 3√n · index) = 1 − confidence for the noncentral t of n − 1 degrees of freedom and noncentrality
+/// 3√n C. For Ppk with two limits, taken for the nearer one, it errs on the safe side.
+///
+/// # Errors
+/// [`Undefined::TooFewValues`] for n below 2, [`Undefined::OutOfRange`], [`Undefined::NoSolution`].
+pub fn one_sided_lower_bound(index: f64, n: u64, confidence: f64) -> Result<f64, Undefined> {
+    if n < 2 {
+        return Err(Undefined::TooFewValues {
+            needed: 2,
+            found: n,
+        });
+    }
+    let nu = (n - 1) as f64;
+    check_bound(nu, confidence)?;
+    let scale = 3.0 * (n as f64).sqrt();
+    let bound = noncentrality_at(scale * index, nu, 1.0 - confidence) / scale;
+    if bound.is_finite() {
+        Ok(bound)
+    } else {
+        Err(Undefined::NoSolution)
+    }
 }

@@ -7,11 +7,18 @@
 
 pub mod capability;
 pub mod distributions;
+pub mod normality;
 pub mod operating_characteristic;
 pub mod outliers;
+pub mod percentile;
+mod quadrature;
 mod root;
 pub mod sampling;
+pub mod share;
 pub mod summary;
+pub mod switching;
+pub mod tolerance;
 mod undefined;
+pub mod variables;
 
 pub use undefined::Undefined;

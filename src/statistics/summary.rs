@@ -134,6 +134,17 @@ pub(super) fn median(values: &[f64]) -> Result<f64, Undefined> {
     Ok(median_of_sorted(&sorted))
 }
 
+/// First quartile, median and third quartile of ascending values, interpolated linearly (type 7 of Hyndman & Fan 1996); NaN of none.
+pub(super) fn quartiles(sorted: &[f64]) -> (f64, f64, f64) {
+    let at = |share: f64| {
+        let place = share * sorted.len().saturating_sub(1) as f64;
+        let value = |i: usize| sorted.get(i).copied().unwrap_or(f64::NAN);
+        let (below, above) = (value(place.floor() as usize), value(place.ceil() as usize));
+        below + place.fract() * (above - below)
+    };
+    (at(0.25), at(0.5), at(0.75))
+}
+
 /// The values in ascending order.
 pub(super) fn sorted(values: &[f64]) -> Result<Vec<f64>, Undefined> {
     if values.iter().any(|x| !x.is_finite()) {

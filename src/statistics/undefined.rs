@@ -25,6 +25,9 @@ pub enum Undefined {
     AqlNotInSeries { found: f64 },
     /// The table has no plan there.
     NoPlan,
+    /// The sample would be the whole lot.
+    #[allow(missing_docs)]
+    WholeLot { sample: u64, lot: u64 },
     /// An argument outside its range: its name and range.
     #[allow(missing_docs)]
     OutOfRange {
@@ -58,6 +61,9 @@ impl Undefined {
                 format!("the AQL {found} is not in the series of ISO 2859-1 from 0.010 to 10")
             }
             Self::NoPlan => "the table has no plan there".to_owned(),
+            Self::WholeLot { sample, lot } => format!(
+                "the sample of {sample} would be the whole lot of {lot}: every item is inspected and judged by itself"
+            ),
             Self::OutOfRange { argument, expected } => {
                 format!("{argument} is out of range: expected {expected}")
             }

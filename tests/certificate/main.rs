@@ -1,6 +1,12 @@
-//! The PDF lot record, looked at by programs that are not ours: qpdf, poppler, mutool.
+//! The PDF lot record, looked at by programs that are not ours.
+//!
+//! Needs qpdf and poppler-utils (pdftotext, pdffonts, pdfinfo, pdfdetach), as Debian packages them.
 
+mod layout;
 mod lots;
+mod numbers;
+mod structure;
+mod tools;
 
 use lots::Case;
 use reelgate::certificate::{Certificate, Paper, Sources, render};
@@ -16,6 +22,7 @@ fn rendered(case: &Case, paper: Paper) -> Certificate {
     render(&case.record, &case.curves, &sources(case), paper).expect("a document")
 }
 
+/// Lots of every kind, by name.
 fn cases() -> Vec<(&'static str, Case)> {
     vec![
         ("accepted", lots::accepted(32, 8)),
@@ -26,14 +33,4 @@ fn cases() -> Vec<(&'static str, Case)> {
     ]
 }
 
-#[test]
-fn write_out() {
-    let Ok(folder) = std::env::var("OUT") else {
-        return;
-    };
-    for (name, case) in cases() {
-        let c = rendered(&case, Paper::A4);
-        eprintln!("{name} {} {:?}", c.pdf.len(), c.warnings);
-        std::fs::write(format!("{folder}/{name}.pdf"), c.pdf).expect("write");
-    }
-}
+const PAPERS: [Paper; 2] = [Paper::A4, Paper::Letter];

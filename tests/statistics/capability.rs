@@ -2,7 +2,9 @@
 
 use crate::reference::{assert_near, assert_within, rows};
 use reelgate::statistics::Undefined;
-use reelgate::statistics::capability::{Capability, cp_lower_bound, cpk_lower_bound};
+use reelgate::statistics::capability::{
+    Capability, cp_lower_bound, cpk_lower_bound, one_sided_lower_bound,
+};
 
 /// NIST/SEMATECH e-Handbook 6.3.2.2, flow rates, with limits 45 and 57 of our own: within-lot and overall indices
 /// recomputed independently.
@@ -81,6 +83,8 @@ fn every_bound_of_the_grid() {
         assert_near(cp(two_sided), row.number("Cp_lo2"), 1e-10);
         assert_within(cpk(confidence), row.number("bissell_lower"), 1e-12);
         assert_within(cpk(two_sided), row.number("bissell_lo2"), 1e-12);
+        let exact = one_sided_lower_bound(index, n, confidence).unwrap();
+        assert_within(exact, row.number("exact_onesided_lower"), 1e-9);
     }
 }
 

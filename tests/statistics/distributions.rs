@@ -155,6 +155,44 @@ fn hypergeometric() {
     }
 }
 
+/// scipy itself is wrong in places here; the references are 40-digit integrals.
+#[test]
+fn noncentral_t() {
+    let file = "s11_grid_nct_cdf.csv";
+    let of = |row: &Row<'_>| (row.number("t"), row.number("nu"), row.number("delta"));
+    for (column, f) in [
+        ("cdf_ref", noncentral_t_cdf as fn(f64, f64, f64) -> f64),
+        ("sf_ref", noncentral_t_sf),
+    ] {
+        let worst = worst(file, column, |r| {
+            let (t, nu, delta) = of(r);
+            Some(f(t, nu, delta))
+        });
+        println!("{file} {column}: {:.1e} {}", worst.relative, worst.at);
+        assert_eq!(worst.rows, 290);
+        assert!(worst.relative <= 1e-10, "{} {}", worst.relative, worst.at);
+    }
+    let file = "s11_grid_nct_ppf.csv";
+    let worst = worst(file, "ppf_ref", |r| {
+        Some(noncentral_t_quantile(
+            r.number("p"),
+            r.number("nu"),
+            r.number("delta"),
+        ))
+    });
+    println!("{file}: {:.1e} {}", worst.relative, worst.at);
+    assert!(worst.relative <= 1e-10, "{} {}", worst.relative, worst.at);
+}
+
+/// δ at an observed t is the inverse of the upper tail in δ.
+#[test]
+fn noncentrality() {
+    for (t, nu, p) in [(5.0, 9.0, 0.05), (21.9, 29.0, 0.05), (-1.0, 4.0, 0.9)] {
+        let delta = noncentrality_at(t, nu, p);
+        assert!((noncentral_t_sf(t, nu, delta) / p - 1.0).abs() < 1e-11);
+    }
+}
+
 #[test]
 fn outside_the_domain_is_not_a_number() {
     assert!(normal_quantile(1.5).is_nan());
@@ -166,4 +204,6 @@ fn outside_the_domain_is_not_a_number() {
     assert!(binomial_cdf(1, 10, f64::NAN).is_nan());
     assert!(f_sf(f64::NAN, 1.0, 2.0).is_nan());
     assert!(poisson_cdf(3, f64::NAN).is_nan());
+    assert!(noncentral_t_cdf(1.0, 0.5, 0.0).is_nan());
+    assert!(noncentral_t_quantile(1.0, 5.0, 0.0).is_nan());
 }

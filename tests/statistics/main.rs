@@ -4,8 +4,14 @@
 
 mod capability;
 mod distributions;
+mod normality;
 mod operating_characteristic;
 mod outliers;
+mod percentile;
 mod reference;
 mod sampling;
+mod share;
 mod summary;
+mod switching;
+mod tolerance;
+mod variables;

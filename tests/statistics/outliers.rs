@@ -1,9 +1,9 @@
 //! Tests for outliers.
 
-use crate::reference::{assert_near, assert_within, rows};
+use crate::reference::{assert_near, assert_within, path, rows};
 use reelgate::statistics::Undefined;
 use reelgate::statistics::outliers::{
-    MODIFIED_Z_LIMIT, Side, generalized_esd, grubbs, modified_z_scores,
+    MODIFIED_Z_LIMIT, Side, generalized_esd, grubbs, modified_z_scores, part_average_limits,
 };
 
 /// Tietjen & Moore's uranium isotope data, NIST/SEMATECH e-Handbook 1.3.5.17.1.
@@ -78,6 +78,32 @@ fn modified_z_scores_of_the_labelling_example() {
     assert_within(scores[0], -1.57383333333333, 1e-10);
     let beyond = scores.iter().filter(|m| m.abs() > MODIFIED_Z_LIMIT).count();
     assert_eq!(beyond, 2);
+}
+
+/// The formula of AEC-Q001 on three data sets, quartiles interpolated linearly.
+#[test]
+fn part_average_limits_of_known_data() {
+    let text = std::fs::read_to_string(path("s4_examples.json")).unwrap();
+    let examples: Vec<serde_json::Value> = serde_json::from_str(&text).unwrap();
+    for (name, file, column) in [
+        ("ZARR13", "s4_zarr13_data.csv", "y"),
+        ("GEAR", "s3_gear_data.csv", "diameter"),
+        ("Rosner", "s4_rosner_data.csv", "x"),
+    ] {
+        let id = format!("AEC-Q001 style PAT limits, {name}");
+        let example = examples.iter().find(|e| e["id"] == id).unwrap();
+        let linear = &example["by_quantile_method"]["linear"];
+        let found = part_average_limits(&rows(file).column(column)).unwrap();
+        assert_near(
+            found.robust_sigma,
+            linear["robust_sigma"].as_f64().unwrap(),
+            1e-11,
+        );
+        assert_near(found.median, linear["median"].as_f64().unwrap(), 1e-13);
+        assert_near(found.lower, linear["lo"].as_f64().unwrap(), 1e-12);
+        assert_near(found.upper, linear["hi"].as_f64().unwrap(), 1e-12);
+    }
+    assert_eq!(part_average_limits(&[1.0; 9]), Err(Undefined::ZeroSpread));
 }
 
 #[test]

@@ -2,18 +2,21 @@
 """Makes sample-lots/ and limits/stations/compensation/ anew, the same bytes every time.
 
 Needs the packages of tests/requirements.txt and ngspice. Run it with
-`.venv/bin/python tests/tools/make_sample_lots.py`.
+`.venv/bin/python tests/tools/make_sample_lots.py`; with `--check` it changes nothing and says, with
+status 1, which files are not what it would make.
 """
 
 import json
 import math
 import shutil
+import sys
+import tempfile
 from datetime import datetime
 from pathlib import Path
 
 import numpy as np
 
-from sample_lots import analyser, circuits, forms, simulator, spread, truth
+from sample_lots import analyser, circuits, compare, forms, simulator, truth
 from sample_lots.families import FAMILIES
 from sample_lots.scenario import LOTS
 
@@ -200,7 +203,7 @@ def expected(lot, presented):
 # the definition of the reading leave on that bench.
 TOLERANCE = {
     "BENCH-1": {"capacitance": 4e-3, "esr_minimum": 0.02, "srf": 2e-3, "dissipation_factor": 0.08, "impedance": 4e-3, "esr": 5e-3},
-    "BENCH-2": {"capacitance": 2e-4, "esr_minimum": 0.01, "srf": 1e-3, "dissipation_factor": 2e-3, "impedance": 1e-3, "esr": 5e-3},
+    "BENCH-2": {"capacitance": 2e-4, "esr_minimum": 0.01, "srf": 1e-3, "dissipation_factor": 5e-3, "impedance": 1e-3, "esr": 5e-3},
     "BENCH-3": {"capacitance": 1e-3, "esr_minimum": 0.02, "srf": 2e-3, "dissipation_factor": 0.08},
     "LCR-1": {"capacitance": 3e-3, "esr": 5e-3, "dissipation_factor": 0.08},
     "LCR-2": {"capacitance": 6e-3, "esr": 8e-3, "dissipation_factor": 0.04},
@@ -291,14 +294,35 @@ def make_standards(folder):
         forms.table(folder / f"bench-2-{name}.csv", TWO_CHANNEL, rows, forms.Form())
 
 
-def main():
-    root = ROOT / "sample-lots"
-    for lot in LOTS:
-        shutil.rmtree(root / lot.lot, ignore_errors=True)
-    make_standards(ROOT / "limits" / "stations" / "compensation")
+def make_all(lots, standards):
+    """All lots and the standards' sweeps, into two folders."""
+    make_standards(standards)
     for index, lot in enumerate(LOTS):
-        make(lot, index, root)
-        print(lot.lot, lot.part, lot.verdict)
+        make(lot, index, lots)
+
+
+def check(lots, standards):
+    """Makes everything in a temporary folder and compares; the names of files that differ."""
+    with tempfile.TemporaryDirectory() as folder:
+        made = Path(folder)
+        make_all(made / "lots", made / "standards")
+        shutil.copy(lots / "README.md", made / "lots")
+        return compare.differing(made / "lots", lots) + compare.differing(made / "standards", standards)
+
+
+def main():
+    lots, standards = ROOT / "sample-lots", ROOT / "limits" / "stations" / "compensation"
+    if sys.argv[1:] == ["--check"]:
+        wrong = check(lots, standards)
+        for name in wrong:
+            print(f"not what the generator makes: {name}")
+        print(f"{len(LOTS)} lots made anew, {len(wrong)} files differ")
+        sys.exit(1 if wrong else 0)
+    for old in lots.iterdir():
+        if old.is_dir():
+            shutil.rmtree(old)
+    make_all(lots, standards)
+    print(f"{len(LOTS)} lots made")
 
 
 if __name__ == "__main__":

@@ -2,7 +2,7 @@
 
 use crate::certificate::canvas::{Anchor, Area, Canvas, Pen};
 use crate::certificate::figures::{plain, prefix};
-use crate::certificate::ink::{QUIET, RULE, TEXT};
+use crate::certificate::ink::{GRID, QUIET, TEXT};
 use crate::certificate::text::{Style, width};
 
 /// How values lie along an axis.
@@ -94,8 +94,8 @@ pub(in crate::certificate) fn log_grid(
     (y, y_unit): (&Axis, &str),
 ) {
     let (major, minor) = decades(x.low, x.high);
-    let fine = Pen::solid(0.25, RULE);
-    let strong = Pen::solid(0.45, RULE);
+    let fine = Pen::solid(0.25, GRID);
+    let strong = Pen::solid(0.5, GRID);
     let vertical = |values: &[f64]| {
         values
             .iter()

@@ -20,33 +20,26 @@ pub(in crate::certificate) fn strip(canvas: &mut Canvas, area: Area, c: &Charact
         from: area.left + 6.0,
         to: area.right - 6.0,
     };
-    let middle = (area.top + area.bottom) / 2.0;
-    let half = (area.height() / 2.0 - 3.0).min(8.5);
-    canvas.line(
-        (axis.from, middle),
-        (axis.to, middle),
-        Pen::solid(0.5, RULE),
-    );
-    spread(canvas, &axis, c, middle);
-    ticks(canvas, &axis, c, middle, half * 0.72);
+    let base = (area.top + area.bottom) / 2.0 + 3.0;
+    canvas.line((axis.from, base), (axis.to, base), Pen::solid(0.5, RULE));
+    spread(canvas, &axis, c, base + 3.2);
+    ticks(canvas, &axis, c, base);
     if let Some(nominal) = c.bound.nominal.filter(|n| axis.contains(*n)) {
-        let x = axis.at(nominal);
-        let diamond = vec![
-            (x, middle - half - 1.0),
-            (x + 2.2, middle - half + 1.6),
-            (x, middle - half + 4.2),
-            (x - 2.2, middle - half + 1.6),
-        ];
+        let (x, y) = (axis.at(nominal), base - REACH - 3.0);
+        let diamond = vec![(x, y - 2.6), (x + 2.2, y), (x, y + 2.6), (x - 2.2, y)];
         canvas.fill(diamond, TEXT);
     }
     for (bound, side) in [(c.bound.lower, Side::Left), (c.bound.upper, Side::Right)] {
         if let Some(x) = bound.map(|b| axis.at(b)) {
-            limit(canvas, (x, middle - half), (x, middle + half), side);
+            limit(canvas, (x, base - REACH), (x, base + 6.0), side);
         }
     }
 }
 
-/// Mean ± one standard deviation as a bar.
+/// Height of a tick above the line.
+const REACH: f64 = 9.0;
+
+/// Mean ± one standard deviation as a bar with the mean across it.
 fn spread(canvas: &mut Canvas, axis: &Axis, c: &Characteristic, middle: f64) {
     let Some(s) = c.statistics else { return };
     let (Some(mean), Some(sd)) = (s.mean, s.standard_deviation) else {
@@ -56,20 +49,24 @@ fn spread(canvas: &mut Canvas, axis: &Axis, c: &Characteristic, middle: f64) {
     let bar = Area {
         left: clamp(mean - sd),
         right: clamp(mean + sd),
-        top: middle - 2.0,
-        bottom: middle + 2.0,
+        top: middle - 1.4,
+        bottom: middle + 1.4,
     };
     if bar.width() > 0.0 {
         canvas.fill_area(bar, CONFORMING_SOFT);
     }
+    if axis.contains(mean) {
+        let x = axis.at(mean);
+        canvas.line((x, middle - 2.4), (x, middle + 2.4), Pen::solid(0.8, TEXT));
+    }
 }
 
 /// One tick a part; parts at the same place on paper share one. Beyond the edge: an arrowhead.
-fn ticks(canvas: &mut Canvas, axis: &Axis, c: &Characteristic, middle: f64, half: f64) {
+fn ticks(canvas: &mut Canvas, axis: &Axis, c: &Characteristic, base: f64) {
     let kinds = [
-        (PartVerdict::Conforming, CONFORMING, 0.45, half * 0.75),
-        (PartVerdict::Undecided, UNDECIDED, 0.8, half),
-        (PartVerdict::Nonconforming, NONCONFORMING, 0.9, half),
+        (PartVerdict::Conforming, CONFORMING, 0.3, REACH * 0.72),
+        (PartVerdict::Undecided, UNDECIDED, 0.8, REACH),
+        (PartVerdict::Nonconforming, NONCONFORMING, 0.9, REACH),
     ];
     for (verdict, ink, pen, reach) in kinds {
         let mut places: Vec<i64> = c
@@ -89,11 +86,11 @@ fn ticks(canvas: &mut Canvas, axis: &Axis, c: &Characteristic, middle: f64, half
                     (axis.to + 5.0, axis.to + 1.0)
                 };
                 canvas.fill(
-                    vec![(tip, middle), (back, middle - 2.6), (back, middle + 2.6)],
+                    vec![(tip, base - 3.0), (back, base - 5.6), (back, base - 0.4)],
                     ink,
                 );
             } else {
-                lines.push(vec![(x, middle - reach), (x, middle + reach)]);
+                lines.push(vec![(x, base), (x, base - reach)]);
             }
         }
         canvas.lines(lines, Pen::solid(pen, ink));

@@ -13,6 +13,10 @@ const WORD: Style = Style::bold(42.0);
 const SENTENCE: Style = Style::regular(12.5);
 const SENTENCE_LEADING: f64 = 16.0;
 const KEY: Style = Style::bold(10.5);
+const VALUE: Style = Style::regular(10.5);
+/// Width of the labels in the right column, and its line height.
+const LABEL: f64 = 58.0;
+const SIDE: f64 = 13.0;
 
 /// The first page (more, where texts are very long).
 pub(in crate::certificate) fn answer(
@@ -33,52 +37,65 @@ pub(in crate::certificate) fn answer(
 /// Verdict and reason on the left, identity of the lot on the right.
 fn head(flow: &mut Flow, record: &LotRecord) {
     let measure = flow.sheet.measure();
-    let split = flow.left() + measure * 0.60;
+    let left = flow.left();
+    let split = left + measure * 0.57;
     let identity = identity(record);
-    let lines = side_lines(&identity, flow.right() - split);
-    let side_height: f64 = lines
-        .iter()
-        .map(|(_, l)| 10.0 + l.len() as f64 * 12.5)
-        .sum();
-    let beside = side_height <= 330.0;
+    let lines = side_lines(&identity, flow.right() - split - LABEL);
+    let side_height: f64 = lines.iter().map(|l| 3.0 + l.len() as f64 * SIDE).sum();
+    let beside = side_height <= 300.0;
     let top = flow.y;
     let ink = lot_ink(record.verdict);
     let word = lot_word(record.verdict).to_uppercase();
-    let left = flow.left();
     flow.page()
         .mark(lot_mark(record.verdict), (left + 20.0, top + 25.0), 40.0);
     flow.page()
         .text((left + 52.0, top + 39.0), WORD.ink(ink), &word);
     flow.y = top + 64.0;
-    let room = if beside { split - 24.0 - left } else { measure };
+    let room = if beside { split - 26.0 - left } else { measure };
     why(flow, record, room);
     if beside {
         let end = flow.y;
-        let mut y = top + 4.0;
-        for (label, lines) in &lines {
-            flow.page().text((split, y + 6.0), SMALL, label);
-            y += 9.0;
-            for line in lines {
-                flow.page().text((split, y + 9.0), KEY, line);
-                y += 12.5;
-            }
-            y += 1.0;
-        }
+        let below = side(flow, (split, top + 8.0), &identity, &lines);
         // A reason that ran on to a further page ends below the identity anyway.
         if flow.pages.len() == 1 {
-            flow.y = end.max(y);
+            flow.y = end.max(below);
         }
     } else {
-        flow.gap(6.0);
-        let mut table = Table::new(vec![
-            Column::new("", Align::Left, Span::Fixed(86.0)),
-            Column::new("", Align::Left, Span::Share(1.0)),
-        ]);
-        for (label, value) in identity {
-            table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value).bold()]);
-        }
-        table.set(flow);
+        full_width(flow, identity);
     }
+}
+
+/// Labels and values in the right column of page one; answers where they end.
+fn side(
+    flow: &mut Flow,
+    (x, top): (f64, f64),
+    identity: &[(&'static str, String)],
+    lines: &[Vec<String>],
+) -> f64 {
+    let mut y = top;
+    for (index, ((label, _), lines)) in identity.iter().zip(lines).enumerate() {
+        let style = if index < 2 { KEY } else { VALUE };
+        flow.page().text((x, y + 9.0), SMALL, label);
+        for line in lines {
+            flow.page().text((x + LABEL, y + 9.0), style, line);
+            y += SIDE;
+        }
+        y += 3.0;
+    }
+    y
+}
+
+/// Identity as a table, where its texts are too long for the right column.
+fn full_width(flow: &mut Flow, identity: Vec<(&'static str, String)>) {
+    flow.gap(6.0);
+    let mut table = Table::new(vec![
+        Column::new("", Align::Left, Span::Fixed(86.0)),
+        Column::new("", Align::Left, Span::Share(1.0)),
+    ]);
+    for (label, value) in identity {
+        table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
+    }
+    table.set(flow);
 }
 
 /// The first reason in full; where there are more, how many and where.
@@ -130,10 +147,10 @@ pub(in crate::certificate) fn identity(record: &LotRecord) -> Vec<(&'static str,
     out
 }
 
-fn side_lines(identity: &[(&'static str, String)], room: f64) -> Vec<(&'static str, Vec<String>)> {
+fn side_lines(identity: &[(&'static str, String)], room: f64) -> Vec<Vec<String>> {
     identity
         .iter()
-        .map(|(label, value)| (*label, wrap(value, KEY, room)))
+        .map(|(_, value)| wrap(value, KEY, room))
         .collect()
 }
 
@@ -213,20 +230,20 @@ pub(in crate::certificate) fn plan(record: &LotRecord) -> String {
 fn table(flow: &mut Flow, characteristics: &[Characteristic]) {
     flow.subheading("Characteristics", 90.0);
     let mut table = Table::new(vec![
-        Column::new("", Align::Left, Span::Share(1.0)),
+        Column::new("", Align::Left, Span::Fixed(108.0)),
         Column::new("Lower limit", Align::Decimal, Span::Natural),
         Column::new("Nominal", Align::Decimal, Span::Natural),
         Column::new("Upper limit", Align::Decimal, Span::Natural),
         Column::new(
             "Every part between the limits",
             Align::Left,
-            Span::Fixed(142.0),
+            Span::Share(1.0),
         ),
         Column::new("Mean", Align::Decimal, Span::Natural),
         Column::new("Ppk", Align::Decimal, Span::Natural),
         Column::new("Out", Align::Right, Span::Natural),
     ]);
-    table.row_height = 27.0;
+    table.row_height = 31.0;
     for c in characteristics {
         let exact =
             |v: Option<f64>| Cell::text(v.map_or_else(|| ABSENT.to_owned(), |v| c.scale.exact(v)));
@@ -253,8 +270,9 @@ fn table(flow: &mut Flow, characteristics: &[Characteristic]) {
     table.set(flow);
     flow.y += 4.0;
     flow.paragraph_of(
-        "Hatched lines are limits, a diamond the nominal value, the pale bar the mean ± one standard \
-         deviation, each tick one part; an arrowhead is a part beyond the edge. Out: nonconforming parts.",
+        "Each tick is one part; ticks that fall together on paper stand for all of them. The bar below is \
+         the mean ± one standard deviation, hatched lines are limits, the diamond is the nominal value, an arrowhead is a \
+         part beyond the edge. Out: nonconforming parts.",
         SMALL,
         SMALL_LEADING,
     );

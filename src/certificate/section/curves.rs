@@ -9,6 +9,7 @@ use crate::certificate::ink::{CONFORMING, QUIET, TEXT};
 use crate::certificate::plot::axis::{Axis, Kind, log_grid};
 use crate::certificate::plot::limit::{Side, limit};
 use crate::certificate::plot::trace::{Coverage, clip, columns, simplify};
+use crate::certificate::plot::view::extent;
 use crate::certificate::text::Style;
 use crate::record::{BoundSection, LotRecord, PartVerdict};
 
@@ -48,12 +49,12 @@ pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves
         flow.paragraph("No curves: no part of this lot has a sweep that could be read.");
         return;
     }
+    key(flow);
     // Two plots share a page of either paper.
-    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 120.0) / 2.0;
+    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 14.0 - 140.0) / 2.0;
     for quantity in [Quantity::Magnitude, Quantity::Resistance] {
         plot(flow, record, curves, quantity, height);
     }
-    key(flow);
 }
 
 /// The curve's points (hertz, ohm) as logarithms; points without a logarithm are gaps.
@@ -115,10 +116,10 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
     };
     let page = flow.page();
     log_grid(page, area, (&frame.x, "Hz"), (&frame.y, "Ω"));
-    traces(page, &frame, curves, &logs);
+    let unseen = traces(page, &frame, curves, &logs);
     let mut drawn = Vec::new();
     for bound in bounds {
-        drawn.extend(level(page, &frame, bound));
+        drawn.extend(level(page, &frame, bound, where_found(record, bound)));
     }
     if quantity == Quantity::Magnitude {
         for bound in record
@@ -134,6 +135,24 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
         let text = format!("Limits drawn: {}.", drawn.join("; "));
         flow.paragraph_of(&text, SMALL, SMALL_LEADING);
     }
+    if !unseen.is_empty() {
+        let text = format!("Outside these axes: {}.", listed(&unseen));
+        flow.paragraph_of(&text, SMALL, SMALL_LEADING);
+    }
+}
+
+/// The first parts by number, and how many more.
+fn listed(parts: &[&str]) -> String {
+    let mut text = parts
+        .iter()
+        .take(NAMED)
+        .map(|p| format!("part {p}"))
+        .collect::<Vec<_>>()
+        .join(", ");
+    if parts.len() > NAMED {
+        text.push_str(&format!(" and {} more", parts.len() - NAMED));
+    }
+    text
 }
 
 /// Axes that hold the judged parts' curves and the limits; a part without a valid sweep does not
@@ -185,8 +204,15 @@ fn frame(
     })
 }
 
-/// Quiet curves first, then the ones that are not conforming on top, with their names.
-fn traces(page: &mut Canvas, frame: &Frame, curves: &[Curve], logs: &[Vec<Point>]) {
+/// Quiet curves first, then the ones that are not conforming on top, with their names. Answers the
+/// parts of which nothing lies within the axes.
+fn traces<'c>(
+    page: &mut Canvas,
+    frame: &Frame,
+    curves: &'c [Curve],
+    logs: &[Vec<Point>],
+) -> Vec<&'c str> {
+    let mut unseen = Vec::new();
     let order = [
         (PartVerdict::Conforming, Pen::solid(0.5, CONFORMING)),
         (
@@ -223,12 +249,15 @@ fn traces(page: &mut Canvas, frame: &Frame, curves: &[Curve], logs: &[Vec<Point>
                 };
                 page.lines(parts, pen);
             }
-            if let (Some(end), false) = (end, verdict == PartVerdict::Conforming) {
-                names.push((curve, end));
+            match end {
+                None => unseen.push(curve.part.as_str()),
+                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, end)),
+                Some(_) => {}
             }
         }
     }
     label(page, frame, names);
+    unseen
 }
 
 /// Numbers of the parts that are not conforming, right of the plot, led to the ends of their curves.
@@ -272,16 +301,32 @@ fn label(page: &mut Canvas, frame: &Frame, names: Vec<(&Curve, Point)>) {
     }
 }
 
+/// Between which frequencies the readings of a characteristic were found, where they have one.
+fn where_found(record: &LotRecord, bound: &BoundSection) -> Option<(f64, f64)> {
+    let found = record
+        .parts
+        .iter()
+        .filter_map(|p| p.readings.get(&bound.key)?.frequency)
+        .filter(|f| *f > 0.0);
+    extent(found)
+}
+
 /// A limit on the level of the curve: at a frequency, over a band, or anywhere.
-fn level(page: &mut Canvas, frame: &Frame, bound: &BoundSection) -> Vec<String> {
+fn level(
+    page: &mut Canvas,
+    frame: &Frame,
+    bound: &BoundSection,
+    found: Option<(f64, f64)>,
+) -> Vec<String> {
     let x = |f: f64| frame.x.at(f).clamp(frame.area.left, frame.area.right);
-    let (from, to) = match (bound.between, bound.at) {
-        (Some([low, high]), _) => (x(low), x(high)),
-        (None, Some(at)) => (
+    let (from, to) = match (bound.between, bound.at, found) {
+        (Some([low, high]), _, _) => (x(low), x(high)),
+        (None, Some(at), _) => (
             (x(at) - 9.0).max(frame.area.left),
             (x(at) + 9.0).min(frame.area.right),
         ),
-        (None, None) => (frame.area.left, frame.area.right),
+        (None, None, Some((low, high))) => (x(low / 2.0), x(high * 2.0)),
+        (None, None, None) => (frame.area.left, frame.area.right),
     };
     let mut words = Vec::new();
     for (value, side, sign) in [
@@ -330,7 +375,6 @@ fn resonance(page: &mut Canvas, frame: &Frame, bound: &BoundSection) -> Vec<Stri
 
 /// What the strokes mean.
 fn key(flow: &mut Flow) {
-    flow.gap(6.0);
     let area = flow.take(14.0);
     let mut x = area.left;
     let y = area.top + 7.0;

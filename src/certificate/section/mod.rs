@@ -47,9 +47,19 @@ impl Characteristic<'_> {
             .collect()
     }
 
+    /// Name, with a number and its unit kept on one line.
+    pub fn name(&self) -> String {
+        let mut out = String::new();
+        for c in self.bound.name.chars() {
+            let digit = out.ends_with(|d: char| d.is_ascii_digit());
+            out.push(if c == ' ' && digit { '\u{a0}' } else { c });
+        }
+        out
+    }
+
     /// Name with unit: `capacitance at 1 kHz, µF`.
     pub fn title(&self) -> String {
-        format!("{}, {}", self.bound.name, self.scale.unit)
+        format!("{},\u{a0}{}", self.name(), self.scale.unit)
     }
 }
 

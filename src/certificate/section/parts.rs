@@ -40,7 +40,7 @@ fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
     columns.extend(
         group
             .iter()
-            .map(|c| Column::new(&c.bound.name, Align::Decimal, Span::Natural).unit(&c.scale.unit)),
+            .map(|c| Column::new(&c.name(), Align::Decimal, Span::Natural).unit(&c.scale.unit)),
     );
     let mut table = Table::new(columns);
     table.size = SIZE;

@@ -137,7 +137,10 @@ fn characteristics_of(record: &LotRecord, part: &PartRecord) -> Vec<String> {
         .iter()
         .filter_map(|bound| {
             let reading = part.readings.get(&bound.key)?;
-            if reading.verdict == PartVerdict::Conforming {
+            let nothing = part.verdict == PartVerdict::Unmeasured
+                && reading.value.is_none()
+                && reading.warnings.is_empty();
+            if reading.verdict == PartVerdict::Conforming || nothing {
                 return None;
             }
             let scale = crate::certificate::figures::Scale::of_bound(bound, reading);

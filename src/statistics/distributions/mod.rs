@@ -14,6 +14,7 @@ mod chi_squared;
 mod fisher;
 mod hypergeometric;
 mod incomplete;
+mod noncentral_t;
 mod normal;
 mod quantile;
 mod student_t;
@@ -27,5 +28,8 @@ pub use chi_squared::{
 };
 pub use fisher::{f_sf, f_upper_quantile};
 pub use hypergeometric::{hypergeometric_cdf, hypergeometric_sf};
+pub use noncentral_t::{
+    noncentral_t_cdf, noncentral_t_quantile, noncentral_t_sf, noncentrality_at,
+};
 pub use normal::{normal_cdf, normal_ln_cdf, normal_quantile, normal_sf, normal_upper_quantile};
 pub use student_t::{student_t_cdf, student_t_sf, student_t_upper_quantile};

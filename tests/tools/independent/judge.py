@@ -90,6 +90,12 @@ class Site:
         return place[0], (low + high) / 2
 
 
+def within(value, window):
+    """Whether a value is in the closed window of a condition; printed rounding is allowed for."""
+    low, high = files.window(window) if window else (-math.inf, math.inf)
+    return low - 1e-6 * abs(low) <= value <= high + 1e-6 * abs(high)
+
+
 def judge_try(site, raw):
     """One sweep: {"verdict", "fault", "readings": key -> value, "zones": key -> verdict}."""
     if isinstance(raw, files.Unreadable):
@@ -104,6 +110,8 @@ def judge_try(site, raw):
     result = {"fault": None, "readings": {}, "zones": {}, "drive": None}
     if level is not None:
         result["drive"] = float(np.interp(at, f, level))
+        if not within(result["drive"], site.limits["conditions"].get("drive")):
+            return {**result, "verdict": "unmeasured", "fault": "drive_out_of_range"}
     for name, place, low, high, _ in site.bounds:
         value, x = readings.read(f, z, name, place, equivalent)
         zone, value = judge_value(site, name, value, x, low, high, k, f[-1])
@@ -190,14 +198,12 @@ def conditions(site, counted):
     """Reason codes of conditions that are not as demanded."""
     lot, demanded, station, found = site.lot, site.limits["conditions"], site.station, []
     temperature = files.quantity(lot["ambient"]["temperature"])
-    low, high = files.window(demanded["temperature"])
-    if not low <= temperature <= high:
+    if not within(temperature, demanded["temperature"]):
         found.append("temperature_out_of_range")
     if "drive" in demanded:
-        low, high = files.window(demanded["drive"])
         shown = [p["drive"] for p in counted.values() if p.get("drive") is not None]
         levels = shown or [files.quantity(lot["drive"])]
-        if min(levels) < low * (1 - 1e-6) or max(levels) > high * (1 + 1e-6):
+        if not all(within(level, demanded["drive"]) for level in levels):
             found.append("drive_out_of_range")
     measured = naive(lot["measured"])
     if measured.date() > station["instrument"]["due"]:
@@ -244,31 +250,39 @@ def sampling(site, counted):
     return result
 
 
-def statistics_reasons(site, counted):
-    """Reasons from the lot rules, and the outliers found."""
-    rules, found, outliers = site.limits.get("lot_rules", {}), [], {}
-    keys = {name: (key(name, place), low, high) for name, place, low, high, _ in site.bounds}
+def values(counted, name):
+    """Part and value of every part that has one."""
+    return [(p, j["readings"][name]) for p, j in counted.items() if j["readings"].get(name) is not None]
 
-    def values(name):
-        return [(p, j["readings"][keys[name][0]]) for p, j in counted.items() if j["readings"].get(keys[name][0]) is not None]
 
+def outliers_of(site, counted):
+    """By key of every bound: parts that the generalized ESD test finds, where it applies (n of 15 and more)."""
+    alpha = site.limits.get("lot_rules", {}).get("outliers", {}).get("alpha", 0.01)
+    result = {}
+    for name, place, _, _, _ in site.bounds:
+        series = values(counted, key(name, place))
+        hit = generalized_esd([v for _, v in series], alpha) if len(series) >= 15 else []
+        if hit:
+            result[key(name, place)] = sorted(series[i][0] for i in hit)
+    return result
+
+
+def lot_rule_reasons(site, counted, outliers):
+    """Reasons from the lot rules."""
+    rules, found = site.limits.get("lot_rules", {}), []
     if "capability" in rules:
         rule = rules["capability"]
-        name, low, high = keys[rule["of"]]
-        series = [v for _, v in values(rule["of"])]
+        name, place, low, high, _ = next(b for b in site.bounds if b[0] == rule["of"])
+        series = [v for _, v in values(counted, key(name, place))]
         if len(series) < 2:
             found.append("capability_not_available")
         elif capability(series, low, high, rule["index"]) < rule["min"]:
             found.append("capability_below_min")
-    for name in rules.get("outliers", {}).get("of", []):
-        series = values(name)
-        if len(series) >= 15:
-            hit = generalized_esd([v for _, v in series], rules["outliers"]["alpha"])
-            if hit:
-                outliers[keys[name][0]] = sorted(series[i][0] for i in hit)
-    if any(len(v) > rules["outliers"]["allowed"] for v in outliers.values()):
-        found.append("outliers_found")
-    return found, outliers
+    if "outliers" in rules:
+        rule = rules["outliers"]
+        if any(len(v) > rule["allowed"] for k, v in outliers.items() if k.partition("@")[0] in rule["of"]):
+            found.append("outliers_found")
+    return found
 
 
 def judge(root, folder):
@@ -278,8 +292,8 @@ def judge(root, folder):
     counts = sampling(site, counted)
     required = max(c["n"] for c in counts.values())
     reasons = conditions(site, counted)
-    more, outliers = statistics_reasons(site, counted)
-    reasons += more
+    outliers = outliers_of(site, counted)
+    reasons += lot_rule_reasons(site, counted, outliers)
     if site.duplicates:
         reasons.append("duplicate_sweep")
     if refused:

@@ -1,0 +1,62 @@
+//! Putting a record on the disk: whole or not at all.
+
+use std::fs::{self, File};
+use std::io::{self, Write};
+use std::path::{Path, PathBuf};
+
+/// Where a record's two files lie.
+#[derive(Debug, Clone)]
+#[allow(missing_docs)]
+pub struct Paths {
+    pub pdf: PathBuf,
+    pub json: PathBuf,
+}
+
+impl Paths {
+    /// `<folder>/<record>.pdf` and `.json`.
+    pub fn of(folder: &Path, record: &str) -> Paths {
+        Paths {
+            pdf: folder.join(format!("{record}.pdf")),
+            json: folder.join(format!("{record}.json")),
+        }
+    }
+}
+
+/// Writes a file whole: a temporary file beside it, forced to the disk, then renamed.
+///
+/// # Errors
+/// Any of the system's; nothing but the temporary file is then left, and that is removed.
+pub fn write_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
+    let folder = path.parent().unwrap_or(Path::new("."));
+    fs::create_dir_all(folder)?;
+    let mut name = path.file_name().unwrap_or_default().to_owned();
+    name.push(format!(".{}.part", std::process::id()));
+    let temporary = folder.join(name);
+    let written = File::create(&temporary).and_then(|mut file| {
+        file.write_all(bytes)?;
+        file.sync_all()
+    });
+    let done = written.and_then(|()| fs::rename(&temporary, path));
+    if done.is_err() {
+        let _ = fs::remove_file(&temporary);
+        return done;
+    }
+    sync_folder(folder)
+}
+
+/// A rename is on the disk once its folder is. Windows has no such call for folders; there the
+/// file system's own journal orders the rename.
+#[cfg(unix)]
+fn sync_folder(folder: &Path) -> io::Result<()> {
+    let folder = if folder.as_os_str().is_empty() {
+        Path::new(".")
+    } else {
+        folder
+    };
+    File::open(folder)?.sync_all()
+}
+
+#[cfg(not(unix))]
+fn sync_folder(_: &Path) -> io::Result<()> {
+    Ok(())
+}

@@ -1,0 +1,189 @@
+//! From the bytes of the input files to the record: the whole of the pipeline, without a file or
+//! a clock. Judging and recomputing from an archive both come through here.
+
+use super::{Digests, Inputs, LotRecord, PartRecord, sha256};
+use crate::diagnostic::{Faults, Note};
+use crate::judgement::{JudgedTry, judge_part, judge_try};
+use crate::limits::{self, Limits};
+use crate::lot::{self, Lot};
+use crate::readings::Budget;
+use crate::station::{self, Station};
+use crate::statistics::sampling::Severity;
+use crate::sweep::{self, Attempt, RawFile, Standards, Sweep};
+use rayon::prelude::*;
+
+/// The files that a verdict rests on, as they lie on the disk. Names of the first three are those
+/// that messages show.
+#[derive(Debug, Clone)]
+#[allow(missing_docs)]
+pub struct Sources {
+    pub lot: RawFile,
+    pub limits: RawFile,
+    pub station: RawFile,
+    /// Sweeps of the compensation standards, named as the station file names them.
+    pub compensation: Vec<RawFile>,
+    /// Sweep files in name order, named relative to the lot folder.
+    pub sweeps: Vec<RawFile>,
+}
+
+/// A record and what its drawing needs besides.
+#[derive(Debug)]
+#[allow(missing_docs)]
+pub struct Made {
+    pub record: LotRecord,
+    /// The sweep that counts of every part that has one, in the order of the record's parts.
+    pub curves: Vec<PartSweep>,
+}
+
+/// The sweep that counts of one part.
+#[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)]
+pub struct PartSweep {
+    pub part: String,
+    pub verdict: super::PartVerdict,
+    pub sweep: Sweep,
+}
+
+/// Why there is no record.
+#[derive(Debug)]
+pub enum Refusal {
+    /// Faults in lot, limit or station file.
+    Faults(Vec<Faults>),
+    /// The files are sound, and there is nothing to judge by: a code and a sentence.
+    Impossible(Note),
+}
+
+/// Makes the record of a lot.
+///
+/// `issued` is the time of issue, RFC 3339 with offset. `read` is called after each sweep file,
+/// from any thread, for a progress display.
+///
+/// # Errors
+/// Every fault of the three files at once; a plan that the lot size does not allow; sweeps of
+/// compensation standards that cannot be used; no sweep file at all.
+pub fn make(
+    sources: &Sources,
+    severity: Severity,
+    issued: &str,
+    read: &(dyn Fn() + Sync),
+) -> Result<Made, Refusal> {
+    let (lot, limits, station) = parse(sources)?;
+    let plan = lot::plan(&limits.acceptance, lot.quantity, severity)
+        .map_err(|text| Refusal::Impossible(Note::new("no_sampling_plan", text)))?;
+    let standards = standards(sources, &station)?;
+    let attempts = attempts(sources, &station, standards.as_ref(), read)?;
+    let budget = Budget::of(&station);
+    let age = lot.age_hours();
+    let judged: Vec<JudgedTry> = attempts
+        .par_iter()
+        .map(|attempt| judge_try(attempt, &limits, &budget, age))
+        .collect();
+    let (parts, curves, refused) = parts(&attempts, judged, &limits);
+    let judgement = lot::judge(&lot, &limits, &station, &plan, &parts, refused);
+    let digests = digests(sources);
+    let record = LotRecord::assemble(Inputs {
+        lot: &lot,
+        limits: &limits,
+        station: &station,
+        digests: &digests,
+        judgement,
+        parts,
+        warnings: Vec::new(),
+        issued: issued.to_owned(),
+    });
+    Ok(Made { record, curves })
+}
+
+fn parse(sources: &Sources) -> Result<(Lot, Limits, Station), Refusal> {
+    let lot = lot::read(&sources.lot.name, &sources.lot.bytes);
+    let limits = limits::read(&sources.limits.name, &sources.limits.bytes);
+    let station = station::read(&sources.station.name, &sources.station.bytes);
+    match (lot, limits, station) {
+        (Ok(lot), Ok(limits), Ok(station)) => Ok((lot, limits, station)),
+        (lot, limits, station) => {
+            let all = [lot.err(), limits.err(), station.err()];
+            Err(Refusal::Faults(all.into_iter().flatten().collect()))
+        }
+    }
+}
+
+fn standards(sources: &Sources, station: &Station) -> Result<Option<Standards>, Refusal> {
+    if sources.compensation.is_empty() {
+        return Ok(None);
+    }
+    Standards::read(&sources.compensation, station)
+        .map(Some)
+        .map_err(|notes| {
+            let text: Vec<String> = notes.iter().map(|note| note.text.clone()).collect();
+            Refusal::Impossible(Note::new("compensation_unusable", text.join("; ")))
+        })
+}
+
+fn attempts(
+    sources: &Sources,
+    station: &Station,
+    standards: Option<&Standards>,
+    read: &(dyn Fn() + Sync),
+) -> Result<Vec<Attempt>, Refusal> {
+    let mut attempts: Vec<Attempt> = sources
+        .sweeps
+        .par_iter()
+        .map(|file| {
+            let found = sweep::read_file(file, station, standards);
+            read();
+            found
+        })
+        .flatten()
+        .collect();
+    if attempts.is_empty() {
+        return Err(Refusal::Impossible(Note::new(
+            "no_sweeps",
+            "the lot has no sweep file: measure the sample first",
+        )));
+    }
+    sweep::order(&mut attempts);
+    Ok(attempts)
+}
+
+fn parts(
+    attempts: &[Attempt],
+    judged: Vec<JudgedTry>,
+    limits: &Limits,
+) -> (Vec<PartRecord>, Vec<PartSweep>, Vec<Note>) {
+    let mut judged = judged.into_iter();
+    let (mut parts, mut curves, mut refused) = (Vec::new(), Vec::new(), Vec::new());
+    for tries in attempts.chunk_by(|a, b| a.part == b.part) {
+        let paired: Vec<(&Attempt, JudgedTry)> = tries.iter().zip(judged.by_ref()).collect();
+        let (part, reason) = judge_part(&paired, &limits.retest);
+        refused.extend(reason);
+        let counting = part.attempts.iter().position(|a| a.counts);
+        if let Some(sweep) = counting
+            .and_then(|i| tries.get(i))
+            .and_then(|a| a.sweep.as_ref().ok())
+        {
+            curves.push(PartSweep {
+                part: part.part.clone(),
+                verdict: part.verdict,
+                sweep: sweep.clone(),
+            });
+        }
+        parts.push(part);
+    }
+    (parts, curves, refused)
+}
+
+fn digests(sources: &Sources) -> Digests {
+    let each = |files: &[RawFile]| {
+        files
+            .par_iter()
+            .map(|f| (f.name.clone(), sha256(&f.bytes)))
+            .collect()
+    };
+    Digests {
+        lot: sha256(&sources.lot.bytes),
+        limits: sha256(&sources.limits.bytes),
+        station: sha256(&sources.station.bytes),
+        compensation: each(&sources.compensation),
+        sweeps: each(&sources.sweeps),
+    }
+}
