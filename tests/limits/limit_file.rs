@@ -154,11 +154,11 @@ fn keys_unknown_twice_or_missing() {
         "revision: 3\nrevision: 4",
         "duplicate_key revision",
     );
-    only("revision: 3\n", "", "missing_key part");
+    only("revision: 3\n", "", "missing_key");
     only("revision: 3", "revision:", "missing_value revision");
     only("index: cpk, ", "", "missing_key capability");
     let text = LIMITS.split("acceptance:  ").next().expect("a first part");
-    assert_eq!(listed(read(text)), ["missing_key part"]);
+    assert_eq!(listed(read(text)), ["missing_key"]);
     let text = with(
         LIMITS,
         "  attributes: {level: II, aql: {A: 0.65, B: 1.5}}",
@@ -207,7 +207,7 @@ fn bounds_that_cannot_be() {
     only(
         "{at: 100 kHz, max: 0.40 Ω}",
         "{max: 0.40 Ω}",
-        "missing_at max",
+        "missing_at {",
     );
     only(
         "{at: 100 kHz,",
@@ -224,7 +224,7 @@ fn bounds_that_cannot_be() {
     only(
         "{at: 100 kHz,",
         "{between: [700 kHz, 4 MHz],",
-        "duplicate_bound between",
+        "duplicate_bound {",
     );
     only("max: 6 mΩ", "max: -6 mΩ", "impossible_value -6 mΩ");
     only("max: 6 mΩ", "max: 0 Ω", "impossible_value 0 Ω");

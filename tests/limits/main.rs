@@ -44,7 +44,10 @@ pub fn listed<T: std::fmt::Debug>(read: Result<T, Faults>) -> Vec<String> {
             "{fault:?}"
         );
         assert!(fault.line > 0 && fault.column > 0, "{fault:?}");
-        format!("{} {marked}", fault.code).trim_end().to_owned()
+        if marked.is_empty() {
+            return fault.code.to_owned();
+        }
+        format!("{} {marked}", fault.code)
     };
     faults.iter().map(one).collect()
 }

@@ -71,7 +71,7 @@ fn every_characteristic_can_have_a_repeatability() {
 #[test]
 fn the_reference_belongs_to_its_method() {
     let no_reference = STATION.replace("reference: {", "#");
-    assert_eq!(listed(read(&no_reference)), ["missing_key station"]);
+    assert_eq!(listed(read(&no_reference)), ["missing_key"]);
     let direct = "station: S\nmethod: direct\nreference: {resistance: 1 Ω}\n";
     assert_eq!(listed(read(direct)), ["no_effect reference"]);
     only(
