@@ -118,7 +118,11 @@ fn aql(reader: &mut Reader<'_>, node: &Node) -> Option<f64> {
     }
     let hint = match neighbouring_aqls(percent) {
         (Some(below), Some(above)) => {
-            format!("its neighbours are {} and {}", aql_text(below), aql_text(above))
+            format!(
+                "its neighbours are {} and {}",
+                aql_text(below),
+                aql_text(above)
+            )
         }
         (None, Some(least)) => format!("the lowest is {}", aql_text(least)),
         (Some(most), None) => format!("the highest is {}", aql_text(most)),
