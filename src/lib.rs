@@ -7,16 +7,17 @@
 #![forbid(unsafe_code)]
 #![warn(missing_docs)]
 
-pub mod certificate;
-pub mod commands;
-pub mod diagnostic;
-pub mod judgement;
-pub mod label;
-pub mod limits;
-pub mod lot;
 pub mod quantity;
-pub mod readings;
-pub mod record;
-pub mod station;
+pub mod diagnostic;
 pub mod statistics;
+pub mod label;
+pub mod station;
 pub mod sweep;
+pub mod readings;
+pub mod limits;
+pub mod judgement;
+pub mod lot;
+pub mod record;
+pub mod certificate;
+pub mod ledger;
+pub mod commands;

@@ -23,13 +23,12 @@ mod typeface;
 pub use paper::Paper;
 
 use crate::diagnostic::Note;
-use crate::record::{LotRecord, PartVerdict};
+use crate::record::{self, LotRecord, PartVerdict};
 use flow::Flow;
 use num_complex::Complex64;
 use paper::Sheet;
 use pdf::{Attachment, Conformance, Description, Finish};
 use section::{characteristics, lot_word};
-use sha2::{Digest, Sha256};
 use std::collections::BTreeSet;
 
 /// The sweep of one part, as drawn.
@@ -134,8 +133,8 @@ fn render_as(
     paper: Paper,
     conformance: Conformance,
 ) -> Result<Certificate, CertificateError> {
-    let json = json(record).map_err(CertificateError::Record)?;
-    let digest = hexadecimal(&json);
+    let json = record::to_bytes(record).map_err(CertificateError::Record)?;
+    let digest = record::sha256(&json);
     let (flow, mut warnings) = layout(record, curves, sources, paper, &digest);
     let document = pdf::write(&flow.pages, &flow.sheet).ok_or(CertificateError::Typeface)?;
     let description = describe(record, &mut warnings);
@@ -274,21 +273,6 @@ fn attachments(record: &LotRecord, sources: &Sources, json: Vec<u8>) -> Vec<Atta
         }));
     }
     out
-}
-
-/// The JSON record as attached.
-fn json(record: &LotRecord) -> Result<Vec<u8>, serde_json::Error> {
-    let mut bytes = serde_json::to_vec_pretty(record)?;
-    bytes.push(b'\n');
-    Ok(bytes)
-}
-
-/// SHA-256 in lower-case hexadecimal.
-fn hexadecimal(bytes: &[u8]) -> String {
-    Sha256::digest(bytes)
-        .iter()
-        .map(|b| format!("{b:02x}"))
-        .collect()
 }
 
 /// A text placed on a page with its box, in points from the top left corner: what layout checks

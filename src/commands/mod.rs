@@ -1,6 +1,7 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
 mod judge;
+mod limits;
 mod present;
 mod site;
 mod store;
@@ -39,7 +40,12 @@ pub enum Format {
 /// Acceptance is not a safety certification of safety-class parts. Capacitors hold charge:
 /// discharge and handle them as local rules and qualified staff say.
 #[derive(Debug, Parser)]
-#[command(name = "reelgate", version, disable_help_subcommand = true)]
+#[command(
+    name = "reelgate",
+    version,
+    disable_help_subcommand = true,
+    max_term_width = 80
+)]
 struct Cli {
     /// Folder with limits/ and records/
     #[arg(
@@ -60,6 +66,7 @@ struct Cli {
 #[derive(Debug, Subcommand)]
 enum Command {
     Judge(judge::Args),
+    Limits(limits::Args),
 }
 
 /// What every command gets.
@@ -92,6 +99,10 @@ pub fn run(
     };
     match cli.command {
         Command::Judge(args) => judge::run(&args, &mut context),
+        Command::Limits(args) => {
+            let json = context.format == Format::Json;
+            limits::run(&args, &context.site, json, context.out, context.err)
+        }
     }
 }
 

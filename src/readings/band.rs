@@ -1,80 +1,112 @@
 //! ESR or |Z| over a band: the lowest and the highest value between two frequencies.
 //!
-//! The ends are read as at a frequency; between them the points of the sweep themselves. A band
-//! that reaches beyond the sweep is refused: what was not measured cannot conform.
+//! Between the ends the points of the sweep themselves carry the values, smoothed by local fits so
+//! that the extreme is the part's and not the noise's; a point that stands off its fit by more than
+//! five times the scatter is no noise and counts as it was measured. A band that reaches beyond the
+//! sweep is refused: what was not measured cannot conform.
 
-use super::at_frequency::{inside, local, magnitude, outside};
-use super::{Budget, Characteristic, Extremes, Reading};
+use super::at_frequency::{inside, local, outside};
+use super::local_fit::{LocalFit, WIDTH};
+use super::reading::{Estimate, Outcome};
+use super::{Characteristic, Reading};
 use crate::sweep::Sweep;
+use num_complex::Complex64;
 
-/// The extremes of `characteristic` (ESR or impedance) from `from` to `to` in Hz.
+/// A point farther off its fit than this many standard deviations is no noise.
+const APART: f64 = 5.0;
+
+#[derive(Debug, Clone, Copy)]
+struct Candidate {
+    frequency: f64,
+    value: f64,
+    /// Sensitivity to the phase, Ω/rad.
+    per_radian: f64,
+    scatter: f64,
+}
+
+/// The lowest and the highest value of `characteristic` (ESR or impedance) from `from` to `to` Hz.
 pub(super) fn read(
     sweep: &Sweep,
     characteristic: Characteristic,
     from: f64,
     to: f64,
-    budget: &Budget,
-) -> Extremes {
-    let both = |reading: Reading| Extremes {
-        lowest: reading.clone(),
-        highest: reading,
-    };
+) -> (Outcome, Outcome) {
+    let neither = |reading: Reading| (Err(reading.clone()), Err(reading));
     for end in [from, to] {
         if !inside(sweep, end) {
-            return both(outside(sweep, end));
+            return neither(outside(sweep, end));
         }
     }
-    let at = |frequency: f64| -> Option<(f64, f64, f64)> {
-        if characteristic == Characteristic::Impedance {
-            magnitude(sweep, frequency).map(|(value, scatter)| (value, 0.0, scatter))
-        } else {
-            local(sweep, frequency).map(|l| (l.r, l.x, l.sigma_r))
-        }
-    };
-    let mut candidates: Vec<(f64, f64, f64, f64)> = Vec::new();
-    for end in [from, to] {
-        let Some((value, per_radian, scatter)) = at(end) else {
-            return both(Reading::missing(
-                "too_few_points",
-                "too few points around the band's end to read a value there",
-            ));
-        };
-        candidates.push((end, value, per_radian, scatter));
-    }
-    for (f, z) in sweep.frequency.iter().zip(&sweep.impedance) {
-        if *f > from && *f < to {
-            let (value, per_radian) = if characteristic == Characteristic::Impedance {
-                (z.norm(), 0.0)
-            } else {
-                (z.re, z.im)
-            };
-            candidates.push((*f, value, per_radian, 0.0));
-        }
-    }
-    let reading = |(frequency, value, per_radian, scatter): (f64, f64, f64, f64)| {
-        let mut reading = Reading::known(
-            value,
-            budget.combine(characteristic, value, per_radian, scatter),
-        );
-        reading.frequency = Some(frequency);
-        reading
-    };
-    let lowest = candidates
-        .iter()
-        .copied()
-        .min_by(|a, b| a.1.total_cmp(&b.1));
-    let highest = candidates
-        .iter()
-        .copied()
-        .max_by(|a, b| a.1.total_cmp(&b.1));
+    let found = candidates(sweep, characteristic, from, to).unwrap_or_default();
+    let lowest = found.iter().min_by(|a, b| a.value.total_cmp(&b.value));
+    let highest = found.iter().max_by(|a, b| a.value.total_cmp(&b.value));
+    let estimate =
+        |c: &Candidate| Ok(Estimate::new(c.value, 1.0, c.per_radian, c.scatter).at(c.frequency));
     match (lowest, highest) {
-        (Some(lowest), Some(highest)) => Extremes {
-            lowest: reading(lowest),
-            highest: reading(highest),
-        },
-        _ => both(Reading::missing(
+        (Some(lowest), Some(highest)) => (estimate(lowest), estimate(highest)),
+        _ => neither(Reading::missing(
             "too_few_points",
-            "no point of the sweep lies in the band",
+            "too few points in and around the band to read a value there",
         )),
+    }
+}
+
+/// Values at the band's ends and at the points between them; each fit serves the points within a
+/// quarter of its width around its centre.
+fn candidates(
+    sweep: &Sweep,
+    characteristic: Characteristic,
+    from: f64,
+    to: f64,
+) -> Option<Vec<Candidate>> {
+    let points = &sweep.frequency;
+    let start = points.partition_point(|f| *f <= from);
+    let end = points.partition_point(|f| *f < to);
+    let mut found = Vec::with_capacity(end.saturating_sub(start) + 2);
+    let reach = (WIDTH / 4.0).exp();
+    let mut fit: Option<(LocalFit, f64)> = None;
+    let between = (start..end).map(|i| (points[i], Some(sweep.impedance[i])));
+    for (f, z) in std::iter::once((from, None))
+        .chain(between)
+        .chain([(to, None)])
+    {
+        if fit.as_ref().is_none_or(|(_, until)| f > *until) {
+            let centre = (f * reach).min(to.max(f));
+            fit = Some((local(sweep, centre)?, centre * reach));
+        }
+        let Some((fit, _)) = &fit else { continue };
+        found.push(candidate(fit, characteristic, f, z));
+    }
+    Some(found)
+}
+
+fn candidate(
+    fit: &LocalFit,
+    characteristic: Characteristic,
+    f: f64,
+    measured: Option<Complex64>,
+) -> Candidate {
+    let of = |z: Complex64| match characteristic {
+        Characteristic::Impedance => (z.norm(), 0.0, z / z.norm()),
+        _ => (z.re, -z.im, Complex64::ONE),
+    };
+    let (value, per_radian, direction) = of(fit.impedance(f));
+    if let Some(z) = measured {
+        let scatter = fit.point_scatter(z, direction);
+        let (raw, per_radian, _) = of(z);
+        if (raw - value).abs() > APART * scatter && (raw - value).abs() > 1e-6 * z.norm() {
+            return Candidate {
+                frequency: f,
+                value: raw,
+                per_radian,
+                scatter,
+            };
+        }
+    }
+    Candidate {
+        frequency: f,
+        value,
+        per_radian,
+        scatter: fit.sigma(f, direction),
     }
 }

@@ -1,184 +1,192 @@
 //! Smallest equivalent series resistance of the sweep, or of a band.
 //!
 //! Not the smallest point: the noise of R is a share of |Z|, so that the smallest point of a noisy
-//! sweep is the luckiest one, far from resonance. Points whose noise would hide R are left out; a
-//! local fit finds the minimum's neighbourhood, and a second fit over ±0.25 decade its value.
+//! sweep is the luckiest one, far from resonance. A running mean, judged by its own scatter, finds
+//! the minimum's neighbourhood; the minimum of a local fit there is the value.
 
-use super::at_frequency::{inside, outside};
-use super::local_fit::{LocalFit, POLYNOMIAL};
-use super::{Budget, Characteristic, Place, Reading};
+use super::at_frequency::{inside, local, outside};
+use super::local_fit::LocalFit;
+use super::reading::{Estimate, Outcome};
+use super::{Place, Reading};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
+use num_complex::Complex64;
 use std::f64::consts::LN_10;
 
-/// Half-width of the coarse search's fits: 0.15 decade.
+/// Half-width of the running mean: 0.15 decade.
 const SEARCH: f64 = 0.15 * LN_10;
-/// Half-width of the final fit: 0.25 decade.
-const WINDOW: f64 = 0.25 * LN_10;
-/// A point counts where its noise is below this share of the local R.
+/// A running mean counts where its scatter is below this share of it.
 const GATE: f64 = 0.3;
+/// How far from a fit's centre its minimum is believed: 0.2 decade. Farther off the fit is moved.
+const REACH: f64 = 0.2 * LN_10;
+/// How often the fit may be moved.
+const MOVES: usize = 8;
 
 /// Smallest Re Z in Ω; its frequency goes with it.
-pub(super) fn read(sweep: &Sweep, place: Place, budget: &Budget) -> Reading {
-    let (from, to) = match place {
-        Place::Between(from, to) => (from, to),
-        _ => (
-            sweep.frequency[0],
-            sweep.frequency[sweep.frequency.len() - 1],
-        ),
+pub(super) fn read(sweep: &Sweep, place: Place) -> Outcome {
+    let points = &sweep.frequency;
+    let (from, to) = match (place, points.first(), points.last()) {
+        (Place::Between(from, to), _, _) => (from, to),
+        (_, Some(first), Some(last)) => (*first, *last),
+        _ => return Err(too_few("the sweep is empty")),
     };
     for end in [from, to] {
         if !inside(sweep, end) {
-            return outside(sweep, end);
+            return Err(outside(sweep, end));
         }
     }
-    let start = sweep
-        .frequency
-        .partition_point(|f| *f < from * (1.0 - 1e-5));
-    let end = sweep.frequency.partition_point(|f| *f <= to * (1.0 + 1e-5));
-    if end - start < 3 {
-        return Reading::missing(
-            "too_few_points",
+    let start = points.partition_point(|f| *f < from * (1.0 - 1e-5));
+    let end = points.partition_point(|f| *f <= to * (1.0 + 1e-5));
+    if end < start + 3 {
+        return Err(too_few(
             "fewer than three points in the band: no minimum can be told",
-        );
+        ));
     }
-    let noise = relative_noise(sweep, start, end);
-    let Some(coarse) = coarse_minimum(sweep, start, end, noise) else {
-        return Reading::missing(
-            "esr_hidden_by_noise",
-            "the noise of the sweep hides the resistance everywhere: average more, or use a jig made for this impedance",
-        );
+    let Some(coarse) = coarse_minimum(sweep, start, end) else {
+        return Err(hidden());
     };
-    refine(sweep, start, end, coarse, budget)
-}
-
-/// Random noise of R as a share of |Z|, from second differences in neighbouring points (median of
-/// absolute values, so that a resonance or a single jump does not count as noise).
-fn relative_noise(sweep: &Sweep, start: usize, end: usize) -> f64 {
-    let mut differences: Vec<f64> = (start + 1..end.saturating_sub(1))
-        .map(|i| {
-            let [a, b, c] = [i - 1, i, i + 1].map(|k| sweep.impedance[k].re);
-            let [fa, fb, fc] = [i - 1, i, i + 1].map(|k| sweep.frequency[k].ln());
-            let share = (fb - fa) / (fc - fa);
-            let size = sweep.impedance[i].norm().max(f64::MIN_POSITIVE);
-            let scale = (1.0 + share * share + (1.0 - share) * (1.0 - share)).sqrt();
-            (b - (a + share * (c - a))).abs() / (size * scale)
-        })
-        .collect();
-    if differences.is_empty() {
-        return 0.0;
-    }
-    differences.sort_by(f64::total_cmp);
-    // 1.4826: median absolute value to standard deviation for normal noise.
-    1.4826 * differences[differences.len() / 2]
-}
-
-/// Index of the point with the smallest smoothed R among the points whose noise does not hide it.
-fn coarse_minimum(sweep: &Sweep, start: usize, end: usize, noise: f64) -> Option<usize> {
-    let mut best: Option<(usize, f64)> = None;
-    for i in start..end {
-        let centre = sweep.frequency[i].ln();
-        let (low, high) = window(sweep, start, end, centre, SEARCH);
-        let Some(fit) = fit_resistance(sweep, low, high, centre) else {
-            continue;
+    let (mut centre, mut found) = (points[coarse], None);
+    for _ in 0..MOVES {
+        let Some(fit) = local(sweep, centre) else {
+            return Err(too_few("too few points around the minimum to read it"));
         };
-        let r = fit.value(0.0);
-        let reach = noise * sweep.impedance[i].norm() / ((high - low) as f64).sqrt();
-        if r > 0.0 && reach < GATE * r && best.is_none_or(|(_, least)| r < least) {
-            best = Some((i, r));
+        let (low, high) = (
+            from.max(centre * (-REACH).exp()),
+            to.min(centre * REACH.exp()),
+        );
+        let at = minimum(&fit, low, high);
+        let settled = (at > low * 1.001 || low <= from) && (at < high * 0.999 || high >= to);
+        found = Some((fit, at));
+        if settled {
+            break;
+        }
+        centre = at;
+    }
+    match found {
+        Some((fit, at)) => estimate(&fit, at, from, to),
+        None => Err(hidden()),
+    }
+}
+
+fn too_few(text: &str) -> Reading {
+    Reading::missing("too_few_points", text)
+}
+
+fn hidden() -> Reading {
+    Reading::missing(
+        "esr_hidden_by_noise",
+        "the noise of the sweep hides the resistance everywhere: average more, or use a jig made for this impedance",
+    )
+}
+
+fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Outcome {
+    let z = fit.impedance(at);
+    if z.re.is_nan() || z.re <= 0.0 {
+        return Err(hidden());
+    }
+    let mut estimate = Estimate::new(z.re, 1.0, -z.im, fit.sigma(at, Complex64::ONE)).at(at);
+    if at <= from * 1.001 || at >= to * 0.999 {
+        estimate.warnings.push(Note::new(
+            "minimum_at_edge",
+            "the resistance still falls at the end of the range: the true minimum may lie beyond it",
+        ));
+    }
+    Ok(estimate)
+}
+
+/// Where the fitted R is smallest between two frequencies: the least of 40 steps, then golden
+/// sections between its neighbours.
+fn minimum(fit: &LocalFit, low: f64, high: f64) -> f64 {
+    let resistance = |f: f64| fit.impedance(f).re;
+    let step = (high / low).powf(1.0 / 40.0);
+    let mut least = (low, f64::INFINITY);
+    for i in 0..=40 {
+        let f = if i == 40 { high } else { low * step.powi(i) };
+        let r = resistance(f);
+        if r < least.1 {
+            least = (f, r);
         }
     }
-    best.map(|(i, _)| i)
-}
-
-fn window(sweep: &Sweep, start: usize, end: usize, centre: f64, half: f64) -> (usize, usize) {
-    let middle = sweep.frequency.partition_point(|f| f.ln() < centre);
-    let low = sweep
-        .frequency
-        .partition_point(|f| f.ln() < centre - half)
-        .min(middle.saturating_sub(2))
-        .max(start);
-    let high = sweep
-        .frequency
-        .partition_point(|f| f.ln() <= centre + half)
-        .max((middle + 3).min(end))
-        .min(end);
-    (low, high)
-}
-
-fn fit_resistance(sweep: &Sweep, low: usize, high: usize, centre: f64) -> Option<LocalFit> {
-    let (mut t, mut r, mut w) = (Vec::new(), Vec::new(), Vec::new());
-    for i in low..high {
-        t.push(sweep.frequency[i].ln() - centre);
-        r.push(sweep.impedance[i].re);
-        w.push(1.0 / sweep.impedance[i].norm().max(f64::MIN_POSITIVE));
-    }
-    LocalFit::new(&POLYNOMIAL, 3.min(t.len()), &t, &r, &w)
-}
-
-fn refine(sweep: &Sweep, start: usize, end: usize, coarse: usize, budget: &Budget) -> Reading {
-    let centre = sweep.frequency[coarse].ln();
-    let (low, high) = window(sweep, start, end, centre, WINDOW);
-    let Some(fit) = fit_resistance(sweep, low, high, centre) else {
-        return Reading::missing(
-            "too_few_points",
-            "too few points around the minimum to read it",
-        );
-    };
-    // The vertex: the least of 200 steps over the inner part of the window, then a golden-section
-    // search between its neighbours. Outside the coarse neighbourhood a polynomial proves nothing.
-    let reach = (SEARCH).min(WINDOW);
-    let first = (sweep.frequency[low].ln() - centre).max(-reach);
-    let last = (sweep.frequency[high - 1].ln() - centre).min(reach);
-    let step = (last - first) / 200.0;
-    let least = (0..=200)
-        .min_by(|i, j| {
-            fit.value(first + f64::from(*i) * step)
-                .total_cmp(&fit.value(first + f64::from(*j) * step))
-        })
-        .unwrap_or(0);
-    let mut a = (first + (f64::from(least) - 1.0) * step).max(first);
-    let mut b = (first + (f64::from(least) + 1.0) * step).min(last);
-    let golden = 0.618_033_988_749_895;
-    for _ in 0..40 {
-        let (c, d) = (b - golden * (b - a), a + golden * (b - a));
-        if fit.value(c) < fit.value(d) {
+    let (mut a, mut b) = ((least.0 / step).max(low), (least.0 * step).min(high));
+    for _ in 0..30 {
+        let third = (b / a).powf(0.381_966_011_250_105);
+        let (c, d) = (a * third, b / third);
+        if resistance(c) < resistance(d) {
             b = d
         } else {
             a = c
         }
     }
-    let t = 0.5 * (a + b);
-    let value = fit.value(t);
-    if !value.is_finite() || value <= 0.0 {
-        return Reading::missing(
-            "esr_hidden_by_noise",
-            "the resistance at its minimum is not above the noise of the sweep",
-        );
-    }
-    let frequency = (centre + t).exp();
-    let x = reactance(sweep, frequency);
-    let mut reading = Reading::known(
-        value,
-        budget.combine(Characteristic::EsrMinimum, value, x, fit.sigma(t)),
-    );
-    reading.frequency = Some(frequency);
-    if least == 0 && low == start || least == 200 && high == end {
-        reading.warnings.push(Note::new(
-            "minimum_at_edge",
-            "the resistance still falls at the end of the range: the true minimum may lie beyond it",
-        ));
-    }
-    reading
+    (a * b).sqrt()
 }
 
-/// X in Ω at a frequency, linear between points: it serves the uncertainty alone.
-fn reactance(sweep: &Sweep, frequency: f64) -> f64 {
-    let i = sweep
-        .frequency
-        .partition_point(|f| *f < frequency)
-        .clamp(1, sweep.frequency.len() - 1);
-    let (f0, f1) = (sweep.frequency[i - 1], sweep.frequency[i]);
-    let share = (frequency - f0) / (f1 - f0);
-    sweep.impedance[i - 1].im + share * (sweep.impedance[i].im - sweep.impedance[i - 1].im)
+/// Index of the point whose running mean of R, plus its scatter, is smallest among those that the
+/// noise does not hide. Weights are 1/|Z|²; sums are kept so that the whole search is linear.
+fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
+    let sums = Sums::new(sweep, start, end);
+    let points = &sweep.frequency[start..end];
+    let (mut low, mut high) = (0, 0);
+    let mut best: Option<(usize, f64)> = None;
+    let reach = SEARCH.exp();
+    for (i, f) in points.iter().enumerate() {
+        while points[low] * reach < *f {
+            low += 1;
+        }
+        while high < points.len() && points[high] <= f * reach {
+            high += 1;
+        }
+        // At least three points, so that there is a scatter.
+        let window = low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()));
+        let (mean, scatter) = sums.mean(window);
+        if mean > 0.0 && scatter < GATE * mean {
+            let bound = mean + scatter;
+            if best.is_none_or(|(_, least)| bound < least) {
+                best = Some((start + i, bound));
+            }
+        }
+    }
+    best.map(|(i, _)| i)
+}
+
+/// Running sums of weights, of weighted R, and of the squared noise of R as a share of |Z|.
+struct Sums {
+    weight: Vec<f64>,
+    weighted: Vec<f64>,
+    noise: Vec<f64>,
+}
+
+impl Sums {
+    fn new(sweep: &Sweep, start: usize, end: usize) -> Sums {
+        let z = &sweep.impedance[start..end];
+        // Sums of 1/|Z|² over many decades of |Z| lose digits; relative to the largest they keep 10.
+        let (mut weight, mut weighted, mut noise) = (vec![0.0], vec![0.0], vec![0.0]);
+        let (mut a, mut b, mut c) = (0.0, 0.0, 0.0);
+        for i in 0..z.len() {
+            let w = 1.0 / z[i].norm_sqr().max(f64::MIN_POSITIVE);
+            a += w;
+            b += w * z[i].re;
+            // Second differences: variance 6 times that of a point.
+            if i > 0 && i + 1 < z.len() {
+                let d = z[i - 1].re - 2.0 * z[i].re + z[i + 1].re;
+                c += d * d * w / 6.0;
+            }
+            weight.push(a);
+            weighted.push(b);
+            noise.push(c);
+        }
+        Sums {
+            weight,
+            weighted,
+            noise,
+        }
+    }
+
+    /// Weighted mean of R in Ω over points of the range, and its scatter.
+    fn mean(&self, range: std::ops::Range<usize>) -> (f64, f64) {
+        let of = |sums: &[f64]| sums[range.end] - sums[range.start];
+        let weight = of(&self.weight);
+        let points = (range.end - range.start) as f64;
+        let share = of(&self.noise).max(0.0) / points;
+        (of(&self.weighted) / weight, (share / weight).sqrt())
+    }
 }

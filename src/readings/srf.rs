@@ -3,19 +3,18 @@
 //! changes with frequency (by 29 % for the reference electrolytic of tests/reference).
 //!
 //! Sign changes closer than 0.1 decade are one crossing if the signs beyond them differ. The
-//! crossing is refined by least squares of `X = a y − b/y + …` (`y = f/f_c`, the physical form of
-//! a series resonance) over ±0.2 decade with weights 1/|Z|.
+//! crossing is then the root of the reactance of a local fit over ±0.4 decade.
 
-use super::local_fit::{LocalFit, RESONANCE};
-use super::{Budget, Characteristic, Reading, Value};
+use super::local_fit::{LocalFit, WIDTH, grown};
+use super::reading::{Estimate, Outcome};
+use super::{Reading, Value};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
+use num_complex::Complex64;
 use std::f64::consts::LN_10;
 
 /// Sign changes closer than this (0.1 decade) belong to one crossing.
 const CLUSTER: f64 = 0.1 * LN_10;
-/// Half-width of the window of the refinement, 0.2 decade.
-const WINDOW: f64 = 0.2 * LN_10;
 
 /// A crossing of the reactance: ln f of its first and last sign change, and whether it rises.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -65,11 +64,11 @@ fn crossings(sweep: &Sweep) -> Vec<Crossing> {
 ///
 /// A sweep that is capacitive up to its end gives `Value::Above` its last frequency; one that is
 /// inductive from its start `Value::Below` its first.
-pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
+pub(super) fn read(sweep: &Sweep) -> Outcome {
     let n = sweep.frequency.len();
     let found = crossings(sweep);
     let Some(at) = found.iter().position(|c| c.rises) else {
-        return without_crossing(sweep, &found);
+        return Err(without_crossing(sweep, &found));
     };
     let crossing = found[at];
     let centre = 0.5 * (crossing.first + crossing.last);
@@ -81,45 +80,36 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
     let upper = found
         .get(at + 1)
         .map_or(f64::INFINITY, |next| 0.5 * (crossing.last + next.first));
-    let half = WINDOW.max(crossing.last - centre + 0.05);
-    let Some((root, sigma, slope, resistance)) = refine(
+    let half = (WIDTH / 2.0).max(crossing.last - centre + 0.05);
+    let Some(resonance) = refine(
         sweep,
-        centre,
-        (centre - half).max(lower),
-        (centre + half).min(upper),
+        centre.exp(),
+        (centre - half).max(lower).exp(),
+        (centre + half).min(upper).exp(),
     ) else {
-        return Reading::missing(
+        return Err(Reading::missing(
             "srf_not_resolved",
             "the reactance changes sign, but its course there gives no definite crossing; measure again",
-        );
+        ));
     };
-    let value = root.exp();
-    // A phase error φ shifts X by R φ, and with it the crossing by R φ / (dX/d ln f).
-    let per_radian = value * resistance / slope;
-    let mut reading = Reading::known(
-        value,
-        budget.combine_phase_only(
-            Characteristic::Srf,
-            value,
-            per_radian,
-            value * sigma / slope,
-        ),
-    );
-    reading.frequency = Some(value);
+    let value = resonance.frequency;
+    // A rotation by φ changes X by R φ, and with it the crossing by −R φ / (dX/d ln f).
+    let per_radian = -value * resonance.resistance / resonance.slope;
+    let mut estimate = Estimate::new(value, 0.0, per_radian, value * resonance.sigma).at(value);
     let position = sweep.frequency.partition_point(|f| f.ln() < centre);
     if position < 3 || position + 3 > n {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "srf_at_sweep_edge",
             "the self-resonance lies within three points of the sweep's end",
         ));
     }
     if found.iter().filter(|c| c.rises).count() > 1 {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "multiple_resonances",
             "the reactance crosses zero more than once: the first crossing is given; look for a second part left in the jig",
         ));
     }
-    reading
+    Ok(estimate)
 }
 
 fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
@@ -158,44 +148,56 @@ fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
     )
 }
 
-/// Root (as ln f) of the fitted reactance, the fit's scatter in Ω there, the slope dX/d ln f in Ω,
-/// and R in Ω at the point next to it.
-fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<(f64, f64, f64, f64)> {
-    let mut start = sweep.frequency.partition_point(|f| f.ln() < low);
-    let mut end = sweep.frequency.partition_point(|f| f.ln() <= high);
-    // A coarse sweep gets at least two points on either side, where it has them.
-    let middle = sweep.frequency.partition_point(|f| f.ln() < centre);
-    start = start.min(middle.saturating_sub(2));
-    end = end.max((middle + 2).min(sweep.frequency.len()));
-    let (mut t, mut x, mut w) = (Vec::new(), Vec::new(), Vec::new());
-    for i in start..end {
-        t.push(sweep.frequency[i].ln() - centre);
-        x.push(sweep.impedance[i].im);
-        w.push(1.0 / sweep.impedance[i].norm().max(f64::MIN_POSITIVE));
-    }
-    let fit = LocalFit::new(&RESONANCE, 2, &t, &x, &w)?;
-    let (mut a, mut b) = (t[0], t[t.len() - 1]);
+/// The self-resonance had from a local fit.
+struct Resonance {
+    /// Hz
+    frequency: f64,
+    /// Standard uncertainty of ln f from the fit.
+    sigma: f64,
+    /// dX/d ln f in Ω.
+    slope: f64,
+    /// Ω
+    resistance: f64,
+}
+
+/// The root of the fitted reactance between two frequencies.
+fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<Resonance> {
+    let points = &sweep.frequency;
+    let range = points.partition_point(|f| *f < low)..points.partition_point(|f| *f <= high);
+    let range = grown(points, range, centre, 5);
+    let (mut a, mut b) = (points[range.start], points[range.end - 1]);
+    let fit = LocalFit::new(sweep, range, centre)?;
+    let reactance = |f: f64| fit.impedance(f).im;
     // The window's ends must lie on either side; bisection then cannot fail.
-    if !(fit.value(a) < 0.0 && fit.value(b) > 0.0) {
+    if !(reactance(a) < 0.0 && reactance(b) > 0.0) {
         return None;
     }
-    for _ in 0..80 {
-        let m = 0.5 * (a + b);
-        if fit.value(m) < 0.0 { a = m } else { b = m }
+    let mut root = centre;
+    for _ in 0..60 {
+        let x = reactance(root);
+        if x < 0.0 {
+            a = root
+        } else {
+            b = root
+        }
+        // Newton's step in ln f where it stays inside the bracket, else its middle.
+        let next = root * (-x / fit.slope(root).im).exp();
+        let next = if next > a && next < b {
+            next
+        } else {
+            (a * b).sqrt()
+        };
+        let done = (next / root - 1.0).abs() < 1e-14;
+        root = next;
+        if done {
+            break;
+        }
     }
-    let root = 0.5 * (a + b);
-    let step = 1e-4;
-    let slope = (fit.value(root + step) - fit.value(root - step)) / (2.0 * step);
-    let nearest = (start..end).min_by(|i, j| {
-        let distance = |k: usize| (sweep.frequency[k].ln() - centre - root).abs();
-        distance(*i).total_cmp(&distance(*j))
-    })?;
-    (slope.is_finite() && slope > 0.0).then(|| {
-        (
-            centre + root,
-            fit.sigma(root),
-            slope,
-            sweep.impedance[nearest].re,
-        )
+    let slope = fit.slope(root).im;
+    (slope.is_finite() && slope > 0.0).then(|| Resonance {
+        frequency: root,
+        sigma: fit.sigma(root, Complex64::I) / slope,
+        slope,
+        resistance: fit.impedance(root).re,
     })
 }

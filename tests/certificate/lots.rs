@@ -486,6 +486,7 @@ fn part(name: &str, kinds: &[Kind], dice: &mut Dice) -> PartRecord {
         part: name.into(),
         verdict: PartVerdict::Conforming,
         class: None,
+        drive: None,
         attempts: vec![AttemptRecord {
             attempt: 1,
             file: format!("sweeps/{name}.csv"),

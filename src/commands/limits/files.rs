@@ -57,10 +57,18 @@ pub fn bytes(path: &Path) -> Result<Vec<u8>, Faults> {
     let kind = fs::metadata(path).map_err(fail)?;
     if !kind.is_file() {
         let name = path.display().to_string();
-        return Err(Faults::of_file(&name, "not_a_file", "no file", "a file", None));
+        return Err(Faults::of_file(
+            &name,
+            "not_a_file",
+            "no file",
+            "a file",
+            None,
+        ));
     }
     let mut bytes = Vec::new();
-    let most = u64::try_from(MAX_BYTES).unwrap_or(u64::MAX).saturating_add(1);
+    let most = u64::try_from(MAX_BYTES)
+        .unwrap_or(u64::MAX)
+        .saturating_add(1);
     let file = fs::File::open(path).map_err(fail)?;
     file.take(most).read_to_end(&mut bytes).map_err(fail)?;
     Ok(bytes)
@@ -115,7 +123,8 @@ fn station(path: &Path, name: &str, bytes: &[u8]) -> Result<Valid, Faults> {
     let all = [&standards.open, &standards.short, &standards.load];
     let missing = |sweep: &&str| !folder.join(sweep).is_file();
     let sweeps = all.into_iter().flatten().map(|s| s.sweep.as_str());
-    match sweeps.into_iter().find(missing) {
+    let absent = sweeps.into_iter().find(missing).map(str::to_owned);
+    match absent {
         None => Ok(Valid::Station(Box::new(station))),
         Some(sweep) => Err(Faults::of_file(
             name,
@@ -158,11 +167,24 @@ fn by_keys(root: &Node) -> Option<Kind> {
             _ => false,
         })
     };
-    if has(&["characteristics", "acceptance", "conditions", "lot_rules", "decision_rule"]) {
+    if has(&[
+        "characteristics",
+        "acceptance",
+        "conditions",
+        "lot_rules",
+        "decision_rule",
+    ]) {
         Some(Kind::Limits)
     } else if has(&["lot", "sweeps", "measured", "date_code", "supplier"]) {
         Some(Kind::Lot)
-    } else if has(&["method", "instrument", "jig", "layout", "compensation", "station"]) {
+    } else if has(&[
+        "method",
+        "instrument",
+        "jig",
+        "layout",
+        "compensation",
+        "station",
+    ]) {
         Some(Kind::Station)
     } else if has(&["part", "revision", "retest"]) {
         Some(Kind::Limits)

@@ -80,7 +80,10 @@ fn acceptance(acceptance: &Acceptance) -> Value {
         Acceptance::Variables { level, aql } => {
             json!({"variables": {"level": level, "aql": by_class(aql)}})
         }
-        Acceptance::ZeroAcceptance { quality_limit, consumers_risk } => json!({
+        Acceptance::ZeroAcceptance {
+            quality_limit,
+            consumers_risk,
+        } => json!({
             "zero_acceptance": {"quality_limit": quality_limit, "consumers_risk": consumers_risk}
         }),
         Acceptance::Fixed { sample, accept } => {

@@ -12,7 +12,11 @@ const LABEL: usize = 15;
 
 /// The page: identity, conditions, the table of bounds, and what is made of them.
 pub fn page(limits: &Limits) -> String {
-    let mut page = format!("{}   revision {}\n", printable(&limits.part), printable(&limits.revision));
+    let mut page = format!(
+        "{}   revision {}\n",
+        printable(&limits.part),
+        printable(&limits.revision)
+    );
     if let Some(description) = &limits.description {
         for line in wrap(&printable(description), WIDTH) {
             page.push_str(&line);
@@ -40,7 +44,7 @@ fn labelled(label: &str, text: &str) -> String {
 fn table(limits: &Limits) -> String {
     let mut table = Table::new();
     table
-        .load_preset(presets::UTF8_HORIZONTAL_ONLY)
+        .load_style(presets::UTF8_HORIZONTAL_ONLY)
         .set_content_arrangement(ContentArrangement::Dynamic)
         .set_width(80)
         .set_header(["characteristic", "at", "lower", "upper", "nominal", "class"]);
@@ -96,7 +100,10 @@ fn sections(limits: &Limits) -> Vec<(&'static str, String)> {
         sections.push(("Lot rule", text));
     }
     if limits.capability_rules.is_empty() && limits.outlier_rules.is_empty() {
-        sections.push(("Lot rules", "none: statistics are reported and decide nothing".to_owned()));
+        sections.push((
+            "Lot rules",
+            "none: statistics are reported and decide nothing".to_owned(),
+        ));
     }
     sections.push(("Retest", retest(limits.retest)));
     sections
@@ -138,13 +145,18 @@ fn decision_rule(limits: &Limits) -> String {
     let name = rule_name(rule.kind).replace('_', " ");
     match rule.kind {
         DecisionRuleKind::SimpleAcceptance => format!("{name}: uncertainty decides nothing"),
-        _ => format!("{name}, guard band {} standard uncertainties", rule.coverage_factor),
+        _ => format!(
+            "{name}, guard band {} standard uncertainties",
+            rule.coverage_factor
+        ),
     }
 }
 
 fn acceptance(acceptance: &Acceptance) -> String {
     let by_class = |aql: &[(String, f64)]| {
-        let pairs = aql.iter().map(|(class, aql)| format!("{class} {}", aql_text(*aql)));
+        let pairs = aql
+            .iter()
+            .map(|(class, aql)| format!("{class} {}", aql_text(*aql)));
         pairs.collect::<Vec<_>>().join(", ")
     };
     match acceptance {
@@ -156,7 +168,10 @@ fn acceptance(acceptance: &Acceptance) -> String {
             "variables, ISO 3951-1 level {level}; AQL in percent by class: {}",
             by_class(aql)
         ),
-        Acceptance::ZeroAcceptance { quality_limit, consumers_risk } => format!(
+        Acceptance::ZeroAcceptance {
+            quality_limit,
+            consumers_risk,
+        } => format!(
             "zero acceptance, {} nonconforming accepted with a risk of at most {}",
             shortest(*quality_limit, "1"),
             shortest(*consumers_risk, "1")
