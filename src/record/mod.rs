@@ -8,7 +8,9 @@ mod canonical;
 mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
-pub use crate::lot::{ClassSection, ConditionSection, LotVerdict, Sampling, Statistics};
+pub use crate::lot::{
+    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics,
+};
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
 pub use make::{Made, PartSweep, Refusal, Sources, make};

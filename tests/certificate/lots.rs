@@ -643,6 +643,7 @@ fn sampling(parts: u64) -> Sampling {
         nonconforming: 0,
         undecided: 0,
         verdict: LotVerdict::Accept,
+        operating_characteristic: None,
     };
     Sampling {
         scheme: "attributes".into(),
