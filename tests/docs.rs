@@ -247,10 +247,10 @@ fn links_lead_somewhere() {
 #[test]
 fn example_files_are_valid() {
     let mut examples = 0;
+    let site = site();
     for path in pages() {
         let page = text(&path);
         for block in blocks(&page).iter().filter(|b| b.language == "yaml") {
-            let folder = tempfile::tempdir().expect("a folder");
             let first = block
                 .lines
                 .iter()
@@ -263,13 +263,117 @@ fn example_files_are_valid() {
                 "lot" => "lot/lot.yaml".to_owned(),
                 _ => panic!("{}: an example that begins with `{key}`", path.display()),
             };
-            let file = folder.path().join(&name);
+            let file = site.path().join(&name);
             fs::create_dir_all(file.parent().expect("a folder")).expect("a folder");
             fs::write(&file, block.lines.join("\n") + "\n").expect("a file");
-            let (status, printed) = run(folder.path(), &format!("reelgate limits check {name}"));
+            let (status, printed) = run(site.path(), &format!("reelgate limits check {name}"));
             assert_eq!(status, Some(0), "{}:\n{printed}", path.display());
             examples += 1;
         }
     }
     assert!(examples >= 2, "only {examples} examples were found");
+}
+
+/// Codes in the first column of the tables of a page, from one line on to an ending one.
+fn codes_of_table(page: &str, from: &str, to: &str) -> BTreeSet<String> {
+    let text = text(Path::new(page));
+    let start = text.find(from).unwrap_or_else(|| panic!("{page}: {from}"));
+    let rest = &text[start..];
+    let end = rest.find(to).unwrap_or_else(|| panic!("{page}: {to}"));
+    let cell = |line: &str| Some(line.strip_prefix("| `")?.split_once("` |")?.0.to_owned());
+    rest[..end].lines().filter_map(cell).collect()
+}
+
+/// Code of the program without its unit tests.
+fn program(path: &Path) -> String {
+    if path.is_dir() {
+        let entries = fs::read_dir(path).expect("a folder of src");
+        let mut paths: Vec<PathBuf> = entries.map(|e| e.expect("an entry").path()).collect();
+        paths.sort();
+        return paths.iter().map(|p| program(p)).collect();
+    }
+    let text = text(path);
+    let end = text.find("#[cfg(test)]").unwrap_or(text.len());
+    text[..end].to_owned()
+}
+
+/// Codes that sources give to notes: the first literal in a call that makes one, or in a pair of a
+/// code and its words.
+fn codes_of_source(folders: &[&str]) -> BTreeSet<String> {
+    let source: String = folders
+        .iter()
+        .map(|folder| program(Path::new(folder)))
+        .collect();
+    let mut codes = BTreeSet::new();
+    for (call, any_word) in [("Note::new(", true), (".add(", true), ("(", false)] {
+        for (at, _) in source.match_indices(call) {
+            let Some(literal) = source[at + call.len()..].trim_start().strip_prefix('"') else {
+                continue;
+            };
+            let Some((code, rest)) = literal.split_once('"') else {
+                continue;
+            };
+            let of_code = |c: char| c.is_ascii_lowercase() || c.is_ascii_digit() || c == '_';
+            let is_code = !code.is_empty() && code.chars().all(of_code);
+            // A pair's code has two words; its second item is a sentence or makes one.
+            let is_pair = code.contains('_') && rest.starts_with(',');
+            if is_code && (any_word || is_pair) {
+                codes.insert(code.to_owned());
+            }
+        }
+    }
+    codes
+}
+
+fn list(codes: &BTreeSet<String>) -> String {
+    codes.iter().cloned().collect::<Vec<_>>().join(", ")
+}
+
+/// Every code that reading a sweep can give stands in `docs/file-formats.md`, and no other.
+#[test]
+fn codes_of_sweeps_are_documented() {
+    let page = "docs/file-formats.md";
+    let mut documented = codes_of_table(page, "<!-- codes: faults -->", "<!-- end -->");
+    documented.extend(codes_of_table(
+        page,
+        "<!-- codes: notes -->",
+        "<!-- end -->",
+    ));
+    // Names of methods, in words about them.
+    let methods = ["series_reference", "series_through", "shunt_through"].map(str::to_owned);
+    let given: BTreeSet<String> = &codes_of_source(&["src/sweep"]) - &methods.into();
+    let (missing, surplus) = (&given - &documented, &documented - &given);
+    assert!(missing.is_empty(), "add to {page}: {}", list(&missing));
+    assert!(
+        surplus.is_empty(),
+        "not given any more, in {page}: {}",
+        list(&surplus)
+    );
+}
+
+/// Every reason of a verdict stands in `docs/operator.md`, and no other.
+#[test]
+fn reasons_are_documented() {
+    let page = "docs/operator.md";
+    let documented = codes_of_table(page, "## Reasons", "## What is kept");
+    let given = codes_of_source(&[
+        "src/lot/verdict.rs",
+        "src/lot/conditions.rs",
+        "src/judgement/part.rs",
+    ]);
+    // Warnings, which decide nothing, and the cause of parts that have neither fault nor warning.
+    let others = [
+        "calibration_not_stated",
+        "jig_check_not_stated",
+        "drive_not_demanded",
+        "no_reading",
+    ];
+    let given = &given - &others.map(str::to_owned).into();
+    let (missing, surplus) = (&given - &documented, &documented - &given);
+    assert!(missing.is_empty(), "add to {page}: {}", list(&missing));
+    assert!(
+        surplus.is_empty(),
+        "not given any more, in {page}: {}",
+        list(&surplus)
+    );
 }
