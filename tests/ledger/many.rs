@@ -23,7 +23,7 @@ fn writer() {
     let folder = parts.next().expect("a folder").to_owned();
     let name = parts.next().expect("a name").to_owned();
     let count: u32 = parts.next().and_then(|n| n.parse().ok()).expect("a count");
-    let mut say = |line: String| {
+    let say = |line: String| {
         let mut out = std::io::stdout().lock();
         writeln!(out, "{line}").and_then(|()| out.flush())
     };
