@@ -111,6 +111,8 @@ fn the_other_kinds_of_acceptance() {
         consumers_risk: 0.1,
     };
     assert_eq!(read(&zero).expect("valid").acceptance, expected);
+    let bare = zero.replace("quality_limit: 1 %", "quality_limit: 0.65");
+    assert_eq!(listed(read(&bare)), ["share_without_sign 0.65"]);
     let variables = with(LIMITS, "  attributes:", "  variables:");
     let acceptance = read(&variables).expect("valid").acceptance;
     assert!(matches!(acceptance, Acceptance::Variables { .. }));
@@ -346,6 +348,11 @@ fn conditions_that_cannot_be() {
         "per_decade: 2.5 %",
         "per_decade: 2.5",
         "impossible_value 2.5",
+    );
+    only(
+        "per_decade: 2.5 %",
+        "per_decade: 0.025",
+        "share_without_sign 0.025",
     );
     let no_capacitance = "part: P\nrevision: 1\nconditions: {ageing: {per_decade: 2 %, refer_to: 48 h}}\n\
         characteristics: {srf: {min: 1 MHz}}\nacceptance: {fixed: {sample: 32, accept: 0}}\n";
