@@ -4,6 +4,7 @@ use super::Acceptance;
 use super::bound::{Bounded, is_class};
 use crate::diagnostic::excerpt;
 use crate::diagnostic::yaml::{Fields, Node, Reader, shown};
+use crate::quantity::Dimension;
 use crate::statistics::sampling::{AQL_SERIES, InspectionLevel, aql_index, neighbouring_aqls};
 
 const KINDS: [&str; 4] = ["attributes", "variables", "zero_acceptance", "fixed"];
@@ -66,7 +67,7 @@ fn aql_by_class(
     bounded: &Bounded,
 ) -> Option<Vec<(String, f64)>> {
     let before = reader.count();
-    let fields = reader.entries(node, "`aql`", "an AQL for each class: `{A: 0.65}`")?;
+    let fields = reader.entries(node, "`aql`, an AQL for each class,")?;
     let mut list = Vec::new();
     for (class, key, value) in fields.iter() {
         if !is_class(class) {
@@ -156,7 +157,13 @@ fn zero_acceptance(reader: &mut Reader<'_>, node: &Node) -> Option<Acceptance> {
         let node = reader.required(&fields, key, what, example)?;
         let possible = |v: f64| v > 0.0 && v < 1.0;
         let expected = "a share above 0 and below 100 %";
-        reader.share_if(node, &format!("`{key}`"), possible, expected)
+        reader.quantity_if(
+            node,
+            &format!("`{key}`"),
+            Dimension::Ratio,
+            possible,
+            expected,
+        )
     };
     let quality_limit = ratio("quality_limit", "1 %");
     let consumers_risk = ratio("consumers_risk", "10 %");

@@ -111,8 +111,6 @@ fn the_other_kinds_of_acceptance() {
         consumers_risk: 0.1,
     };
     assert_eq!(read(&zero).expect("valid").acceptance, expected);
-    let bare = zero.replace("quality_limit: 1 %", "quality_limit: 0.65");
-    assert_eq!(listed(read(&bare)), ["share_without_sign 0.65"]);
     let variables = with(LIMITS, "  attributes:", "  variables:");
     let acceptance = read(&variables).expect("valid").acceptance;
     assert!(matches!(acceptance, Acceptance::Variables { .. }));

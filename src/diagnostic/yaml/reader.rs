@@ -90,7 +90,7 @@ impl<'a> Reader<'a> {
     pub fn fields<'n>(&mut self, node: &'n Node, what: &str, known: &[&str]) -> Option<Fields<'n>> {
         let names: Vec<String> = known.iter().map(|k| format!("`{k}:`")).collect();
         let expected = format!("keys with values: {}", names.join(", "));
-        let fields = self.entries(node, what, &expected)?;
+        let fields = self.map(node, what, &expected)?;
         for (name, key, _) in fields.iter() {
             if !known.contains(&name) {
                 self.unknown(
@@ -105,13 +105,12 @@ impl<'a> Reader<'a> {
         Some(fields)
     }
 
-    /// The entries of a map whose keys are names of the author's own. `expected` says which.
-    pub fn entries<'n>(
-        &mut self,
-        node: &'n Node,
-        what: &str,
-        expected: &str,
-    ) -> Option<Fields<'n>> {
+    /// The entries of a map whose keys are names of the author's own.
+    pub fn entries<'n>(&mut self, node: &'n Node, what: &str) -> Option<Fields<'n>> {
+        self.map(node, what, "keys, each with a value")
+    }
+
+    fn map<'n>(&mut self, node: &'n Node, what: &str, expected: &str) -> Option<Fields<'n>> {
         let Shape::Map(map) = &node.shape else {
             self.fault(
                 node.span,
