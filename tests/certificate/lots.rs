@@ -211,6 +211,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 ),
             )],
             warnings: vec![],
+            explanation: vec![],
             sampling: sampling(parts as u64),
             statistics: IndexMap::new(),
             parts: records,

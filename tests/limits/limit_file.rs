@@ -347,6 +347,11 @@ fn conditions_that_cannot_be() {
         "per_decade: 2.5",
         "impossible_value 2.5",
     );
+    only(
+        "per_decade: 2.5 %",
+        "per_decade: 0.025",
+        "share_without_sign 0.025",
+    );
     let no_capacitance = "part: P\nrevision: 1\nconditions: {ageing: {per_decade: 2 %, refer_to: 48 h}}\n\
         characteristics: {srf: {min: 1 MHz}}\nacceptance: {fixed: {sample: 32, accept: 0}}\n";
     assert_eq!(listed(read(no_capacitance)), ["no_effect conditions"]);

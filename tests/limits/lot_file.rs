@@ -70,6 +70,7 @@ fn faults() {
     );
     only("quantity: 4000", "quantity: 4 000", "not_a_number 4 000");
     only("41 %", "41", "impossible_value 41");
+    only("41 %", "0.41", "share_without_sign 0.41");
     only("41 %", "141 %", "impossible_value 141 %");
     only("22.8 °C", "22.8 V", "not_a_quantity 22.8 V");
     only("drive: 0.98 Vrms", "drive: 0 V", "impossible_value 0 V");

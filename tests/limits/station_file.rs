@@ -214,6 +214,11 @@ fn times_and_uncertainties() {
         "magnitude: 120 %",
         "impossible_value 120 %",
     );
+    only(
+        "magnitude: 0.2 %",
+        "magnitude: 0.2",
+        "share_without_sign 0.2",
+    );
     only("phase: 0.05 °", "phase: 100 °", "impossible_value 100 °");
     only("srf: 0.3 %", "q: 0.3 %", "unknown_key q");
 }

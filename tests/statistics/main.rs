@@ -12,6 +12,7 @@ mod operating_characteristic;
 mod outliers;
 mod percentile;
 mod reference;
+mod robust;
 mod sampling;
 mod share;
 mod simulation;
