@@ -58,26 +58,37 @@ def zero_acceptance(site):
                  f"{right} of {len(reference)} agree", right == len(reference)), found
 
 
+def accepted(law, lot, counts, share):
+    """Probability that a lot is accepted."""
+    if law == "binomial":
+        return stats.binom.cdf(counts["ac"], counts["n"], share)
+    return stats.hypergeom.cdf(counts["ac"], lot, round(share * lot), counts["n"])
+
+
 def characteristic(records):
     """Every operating-characteristic point of the records."""
-    worst = edge = points = plans = 0
+    worst = dict.fromkeys(("binomial", "hypergeometric"), 0.0)
+    points, plans, edge = dict.fromkeys(worst, 0), dict.fromkeys(worst, 0), 0.0
     for record in records:
+        lot = record["lot"]["quantity"]
         for c in record["sampling"]["classes"].values():
-            curve = c.get("operating_characteristic")
+            curve = c["operating_characteristic"]
             if curve is None:
                 continue
-            if curve["law"] != "binomial":
-                continue
-            plans += 1
-            for p, accepted in curve["points"]:
-                points += 1
-                worst = max(worst, abs(accepted - stats.binom.cdf(c["ac"], c["n"], p)))
-            for name, wanted in (("producers_risk_quality", 0.95), ("consumers_risk_quality", 0.10)):
-                if curve[name] is not None:
-                    edge = max(edge, abs(stats.binom.cdf(c["ac"], c["n"], curve[name]) - wanted))
+            law = curve["law"]
+            plans[law] += 1
+            for p, probability in curve["points"]:
+                points[law] += 1
+                worst[law] = max(worst[law], abs(probability - accepted(law, lot, c, p)))
+            if law == "binomial":
+                for name, wanted in (("producers_risk_quality", 0.95), ("consumers_risk_quality", 0.10)):
+                    edge = max(edge, abs(accepted(law, lot, c, curve[name]) - wanted))
+    functions = {"binomial": "`binom.cdf`", "hypergeometric": "`hypergeom.cdf`"}
+    why = "both are double precision"
     return [
-        Check(f"probability of acceptance, {plans} plans", f"`binom.cdf` of {SCIPY}", "1e-10", "both are double precision", f"{tiny(worst)} over {points} points", worst < 1e-10),
-        Check("qualities accepted with 95 % and 10 %", f"`binom.cdf` of {SCIPY} there", "1e-10", "both are double precision", tiny(edge), edge < 1e-10),
+        *(Check(f"probability of acceptance, {law}, {plans[law]} plans", f"{functions[law]} of {SCIPY}", "1e-10", why,
+                f"{tiny(worst[law], 1e-11)} over {points[law]} points", worst[law] < 1e-10) for law in worst),
+        Check("qualities accepted with 95 % and 10 %", f"`binom.cdf` of {SCIPY} there", "1e-10", why, tiny(edge, 1e-11), edge < 1e-10),
     ]
 
 

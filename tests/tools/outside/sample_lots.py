@@ -1,15 +1,12 @@
 """The sample lots: readings against exact truth, verdicts against a judge written apart."""
 
 import json
-import sys
 
 import numpy
+from independent.judge import judge
 
 from .page import Check, Section, share
 from .program import ROOT, Site
-
-sys.path.insert(0, str(ROOT / "tests" / "tools"))
-from independent.judge import judge  # noqa: E402
 
 # How the sweeps of a station's lots came to be; see sample-lots/README.md.
 ORIGIN = {"BENCH-2": "circuit simulator (ngspice)", "VNA": "network library (scikit-rf)"}
