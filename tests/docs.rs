@@ -305,7 +305,12 @@ fn codes_of_source(folders: &[&str]) -> BTreeSet<String> {
         .map(|folder| program(Path::new(folder)))
         .collect();
     let mut codes = BTreeSet::new();
-    for (call, any_word) in [("Note::new(", true), (".add(", true), ("(", false)] {
+    for (call, any_word) in [
+        ("Note::new(", true),
+        ("Reading::missing(", true),
+        (".add(", true),
+        ("(", false),
+    ] {
         for (at, _) in source.match_indices(call) {
             let Some(literal) = source[at + call.len()..].trim_start().strip_prefix('"') else {
                 continue;
@@ -351,6 +356,34 @@ fn codes_of_sweeps_are_documented() {
     );
 }
 
+/// Every warning of readings, statistics and lots stands in `docs/methods.md`, and no other.
+#[test]
+fn warnings_are_documented() {
+    let page = "docs/methods.md";
+    let documented = codes_of_table(page, "<!-- codes: warnings -->", "<!-- end -->");
+    let mut given = codes_of_source(&[
+        "src/readings",
+        "src/judgement/zone.rs",
+        "src/lot/statistics.rs",
+    ]);
+    given.remove("sigma_within"); // the name of a statistic
+    given.extend(WARNINGS_OF_LOTS.map(str::to_owned));
+    let (missing, surplus) = (&given - &documented, &documented - &given);
+    assert!(missing.is_empty(), "add to {page}: {}", list(&missing));
+    assert!(
+        surplus.is_empty(),
+        "not given any more, in {page}: {}",
+        list(&surplus)
+    );
+}
+
+/// Warnings of `src/lot/verdict.rs`, which decide nothing.
+const WARNINGS_OF_LOTS: [&str; 3] = [
+    "calibration_not_stated",
+    "jig_check_not_stated",
+    "drive_not_demanded",
+];
+
 /// Every reason of a verdict stands in `docs/operator.md`, and no other.
 #[test]
 fn reasons_are_documented() {
@@ -361,14 +394,10 @@ fn reasons_are_documented() {
         "src/lot/conditions.rs",
         "src/judgement/part.rs",
     ]);
-    // Warnings, which decide nothing, and the cause of parts that have neither fault nor warning.
-    let others = [
-        "calibration_not_stated",
-        "jig_check_not_stated",
-        "drive_not_demanded",
-        "no_reading",
-    ];
-    let given = &given - &others.map(str::to_owned).into();
+    let reasons = codes_of_source(&["src/lot/verdict.rs"]);
+    assert!(WARNINGS_OF_LOTS.iter().all(|code| reasons.contains(*code)));
+    let mut given = &given - &WARNINGS_OF_LOTS.map(str::to_owned).into();
+    given.remove("no_reading"); // the cause of parts that have neither fault nor warning
     let (missing, surplus) = (&given - &documented, &documented - &given);
     assert!(missing.is_empty(), "add to {page}: {}", list(&missing));
     assert!(
