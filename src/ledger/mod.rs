@@ -10,13 +10,16 @@
 
 pub mod approval;
 mod archive;
+pub mod bag;
 mod checkpoint;
 mod digest;
 pub mod disk;
 mod entry;
 mod error;
+mod key;
 pub mod merkle;
 mod note;
+mod proof;
 mod schema;
 mod sqlite;
 mod store;
@@ -28,7 +31,9 @@ pub use checkpoint::Checkpoint;
 pub use digest::{Hash, hex, sha256, sha256_hex};
 pub use entry::{Act, Decision, ENTRY_SCHEMA, Entry, ObjectRef};
 pub use error::LedgerError;
+pub use key::{KEY_FILE, ledger_key};
 pub use note::{NoteError, Signer, Verifier};
+pub use proof::Proof;
 pub use sqlite::FILE;
 pub use store::{Decided, Identity, Query, Reader, Row, Store};
 pub use verify::{Anchor, Claim, Finding, Report, verify};
@@ -82,6 +87,18 @@ pub struct Recorded {
     pub proof: Vec<Hash>,
     /// Whether it was made now; an entry made before answers an act that is repeated.
     pub new: bool,
+}
+
+impl Recorded {
+    /// Index, inclusion proof and checkpoint in one text, for a certificate to carry.
+    pub fn proof_text(&self) -> String {
+        let proof = Proof {
+            index: self.entry.index,
+            hashes: self.proof.clone(),
+            checkpoint: self.checkpoint.clone(),
+        };
+        proof.text()
+    }
 }
 
 /// Digest of what a verdict rests on: role, name and digest of every object, in any order.

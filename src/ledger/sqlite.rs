@@ -358,7 +358,9 @@ fn insert(connection: &Connection, row: &Row) -> Result<(), rusqlite::Error> {
 fn connect(path: &Path, access: &Access) -> Result<Connection, LedgerError> {
     let common = OpenFlags::SQLITE_OPEN_NO_MUTEX | OpenFlags::SQLITE_OPEN_NOFOLLOW;
     let flags = match access {
-        Access::Read => OpenFlags::SQLITE_OPEN_READ_ONLY,
+        // Not read-only to SQLite: a journal that a killed process left has to be rolled back
+        // first. Where the file may not be written, SQLite opens it for reading by itself.
+        Access::Read => OpenFlags::SQLITE_OPEN_READ_WRITE,
         Access::Write(_) => OpenFlags::SQLITE_OPEN_READ_WRITE | OpenFlags::SQLITE_OPEN_CREATE,
     };
     if matches!(access, Access::Read) && !path.is_file() {
@@ -392,9 +394,10 @@ fn configure(connection: &Connection, access: &Access) -> Result<(), rusqlite::E
         ("mmap_size", "0", "0"),
         ("synchronous", "EXTRA", "3"),
     ];
-    if matches!(access, Access::Write(_)) {
-        settings.insert(0, ("journal_mode", "DELETE", "delete"));
-    }
+    settings.push(match access {
+        Access::Read => ("query_only", "ON", "1"),
+        Access::Write(_) => ("journal_mode", "DELETE", "delete"),
+    });
     for (name, value, expected) in settings {
         connection.pragma_update(None, name, value)?;
         let found = connection.pragma_query_value(None, name, |row| {
@@ -583,19 +586,23 @@ fn gone(index: u64) -> LedgerError {
 }
 
 fn database(doing: &'static str, path: &Path, error: &rusqlite::Error) -> LedgerError {
-    let busy = [ErrorCode::DatabaseBusy, ErrorCode::DatabaseLocked];
-    if error
-        .sqlite_error_code()
-        .is_some_and(|code| busy.contains(&code))
-    {
-        return LedgerError::Busy {
-            path: path.to_owned(),
-        };
-    }
+    let hint = match error.sqlite_error_code() {
+        Some(ErrorCode::DatabaseBusy | ErrorCode::DatabaseLocked) => {
+            return LedgerError::Busy {
+                path: path.to_owned(),
+            };
+        }
+        Some(ErrorCode::ReadOnly) => {
+            " (a run may have been interrupted, and what it left cannot be cleared up where nothing \
+             may be written: open the records once where it may)"
+        }
+        Some(ErrorCode::DiskFull) => " (make room on the disk)",
+        _ => "",
+    };
     LedgerError::Database {
         doing,
         path: path.to_owned(),
-        text: error.to_string(),
+        text: format!("{error}{hint}"),
         outcome_unknown: false,
     }
 }
