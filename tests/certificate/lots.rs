@@ -645,6 +645,8 @@ fn sampling(parts: u64) -> Sampling {
         undecided: 0,
         verdict: LotVerdict::Accept,
         operating_characteristic: None,
+        variables: vec![],
+        by_variables: false,
     };
     Sampling {
         scheme: "attributes".into(),
