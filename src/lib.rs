@@ -19,4 +19,5 @@ pub mod judgement;
 pub mod lot;
 pub mod record;
 pub mod certificate;
+pub mod ledger;
 pub mod commands;

@@ -138,7 +138,7 @@ fn every_lot_comes_out_as_it_was_made_to() {
         let (reasons, must) = (codes(&record["reasons"]), names(&expected["reasons"]));
         check(
             "reasons missing",
-            format!("{:?}", must.difference(&reasons)),
+            format!("{:?}", must.difference(&reasons).collect::<Vec<_>>()),
             "[]".to_owned(),
         );
         let may: BTreeSet<String> = must
@@ -147,7 +147,7 @@ fn every_lot_comes_out_as_it_was_made_to() {
             .collect();
         check(
             "reasons too many",
-            format!("{:?}", reasons.difference(&may)),
+            format!("{:?}", reasons.difference(&may).collect::<Vec<_>>()),
             "[]".to_owned(),
         );
         for key in ["required", "presented"] {

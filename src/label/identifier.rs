@@ -1,20 +1,34 @@
 //! Data identifiers of ANSI MH10.8.2: none to three digits and one capital letter.
 
-/// The identifiers met on component labels, in groups as the standard has them; the meanings are
-/// given where this program uses them.
-const KNOWN: &[&str] = &[
-    // item: P customer's part number, 1P supplier's
+/// The identifiers met on component labels, in the groups of the standard; the first of each group
+/// are the ones used here.
+const KNOWN: &[&[&str]] = &[
+    ITEM, QUANTITY, TRACE, PACKAGE, DATE, ORDER, PLACE, PARTY, OTHER,
+];
+
+/// `P` part number of the customer, `1P` of the supplier.
+const ITEM: &[&str] = &[
     "P", "1P", "2P", "6P", "9P", "20P", "21P", "22P", "23P", "24P", "30P", "31P", "32P", "33P",
-    "34P", "50P", // quantity: Q pieces, 7Q with a unit
-    "Q", "2Q", "3Q", "7Q", "13Q", // trace: 1T supplier's lot, T customer's
-    "T", "1T", "20T", "30T", "31T", "32T", "33T", "34T", // serial and package: 3S package
-    "S", "3S", "4S", "5S", // date: 9D agreed, 10D YYWW, 11D YYYYWW, 16D production
-    "D", "1D", "2D", "3D", "4D", "6D", "9D", "10D", "11D", "12D", "13D", "14D", "16D",
-    // order: K customer's
-    "K", "1K", "2K", "4K", "10K", "11K", "14K", // place: 4L country of origin
-    "L", "1L", "4L", "20L", "21L", "22L", "23L", "24L",
-    // party: V supplier by the customer's code, 1V by its own
-    "V", "1V", "10V", "12V", "13V", "14V", "17V", "18V", "25V", // environment, free text
+    "34P", "50P",
+];
+/// `Q` pieces, `7Q` with a unit.
+const QUANTITY: &[&str] = &["Q", "7Q", "2Q", "3Q", "13Q"];
+/// `1T` lot of the supplier, `T` of the customer.
+const TRACE: &[&str] = &["1T", "T", "20T", "30T", "31T", "32T", "33T", "34T"];
+/// `3S` package, `S` serial number.
+const PACKAGE: &[&str] = &["3S", "S", "4S", "5S"];
+/// `9D` agreed structure, `10D` YYWW, `11D` YYYYWW, `16D` production.
+const DATE: &[&str] = &[
+    "9D", "10D", "11D", "16D", "D", "1D", "2D", "3D", "4D", "6D", "12D", "13D", "14D",
+];
+/// `K` purchase order of the customer.
+const ORDER: &[&str] = &["K", "1K", "2K", "4K", "10K", "11K", "14K"];
+/// `4L` country of origin.
+const PLACE: &[&str] = &["4L", "L", "1L", "20L", "21L", "22L", "23L", "24L"];
+/// `V` supplier by the customer's code, `1V` by its own.
+const PARTY: &[&str] = &["V", "1V", "10V", "12V", "13V", "14V", "17V", "18V", "25V"];
+/// Environment and free text.
+const OTHER: &[&str] = &[
     "E", "13E", "Z", "3Z", "10Z", "11Z", "12Z", "13Z", "14Z", "20Z",
 ];
 
@@ -36,7 +50,7 @@ pub(super) fn split(field: &str) -> Option<(&str, &str)> {
 }
 
 pub(super) fn known(identifier: &str) -> bool {
-    KNOWN.contains(&identifier)
+    KNOWN.iter().any(|group| group.contains(&identifier))
 }
 
 pub(super) fn stands_alone(identifier: &str) -> bool {
@@ -61,6 +75,6 @@ mod tests {
     #[test]
     fn what_stands_alone_is_known() {
         assert!(ALONE.iter().all(|id| known(id)));
-        assert!(KNOWN.iter().all(|id| split(id) == Some((*id, ""))));
+        assert!(KNOWN.concat().iter().all(|id| split(id) == Some((*id, ""))));
     }
 }

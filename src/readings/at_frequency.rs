@@ -5,7 +5,8 @@
 //! nearest point; a frequency outside the sweep is refused, never extrapolated.
 
 use super::local_fit::{LocalFit, stretch};
-use super::{Budget, Characteristic, Equivalent, Reading};
+use super::reading::{Estimate, Outcome};
+use super::{Characteristic, Equivalent, Reading};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
@@ -42,73 +43,84 @@ pub(super) fn outside(sweep: &Sweep, frequency: f64) -> Reading {
     )
 }
 
-/// The reading of a characteristic at a frequency.
+/// The estimate of a characteristic at a frequency.
 pub(super) fn read(
     sweep: &Sweep,
     characteristic: Characteristic,
     frequency: f64,
     equivalent: Equivalent,
-    budget: &Budget,
-) -> Reading {
+) -> Outcome {
     if !inside(sweep, frequency) {
-        return outside(sweep, frequency);
+        return Err(outside(sweep, frequency));
     }
     let Some(fit) = local(sweep, frequency) else {
-        return Reading::missing(
+        return Err(Reading::missing(
             "too_few_points",
             "too few points around this frequency to read a value between them",
-        );
+        ));
     };
     let z = fit.impedance(frequency);
-    if characteristic == Characteristic::Impedance {
-        let scatter = fit.sigma(frequency, z / z.norm());
-        return Reading::known(
-            z.norm(),
-            budget.combine(characteristic, z.norm(), 0.0, scatter),
-        );
+    match characteristic {
+        Characteristic::Impedance => {
+            let scatter = fit.sigma(frequency, z / z.norm());
+            Ok(Estimate::new(z.norm(), 1.0, 0.0, scatter))
+        }
+        // dR/dφ = −X for a rotation of Z by φ.
+        Characteristic::Esr => Ok(Estimate::new(
+            z.re,
+            1.0,
+            -z.im,
+            fit.sigma(frequency, Complex64::ONE),
+        )),
+        _ if z.im >= 0.0 => Err(inductive(characteristic, frequency)),
+        Characteristic::DissipationFactor => Ok(loss(&fit, frequency, z)),
+        _ => Ok(capacitance(&fit, frequency, z, equivalent)),
     }
-    if characteristic == Characteristic::Esr {
-        let scatter = fit.sigma(frequency, Complex64::ONE);
-        return Reading::known(z.re, budget.combine(characteristic, z.re, z.im, scatter));
-    }
-    if z.im >= 0.0 {
-        let at = crate::quantity::engineering(frequency, "Hz", 4);
-        return Reading::missing(
-            "not_capacitive",
-            format!(
-                "the reactance at {at} is inductive: the part has no {} there",
-                characteristic.title()
-            ),
-        );
-    }
-    let d = z.re / -z.im;
-    // The derivatives of D = −R/X with respect to R and X.
-    let of_d = Complex64::new(-1.0 / z.im, z.re / (z.im * z.im));
-    if characteristic == Characteristic::DissipationFactor {
-        // Phase errs as an angle: d(tan δ) = (1 + tan² δ) dδ.
-        return Reading::known(
-            d,
-            budget.combine_phase_only(characteristic, d, 1.0 + d * d, fit.sigma(frequency, of_d)),
-        );
-    }
+}
+
+fn inductive(characteristic: Characteristic, frequency: f64) -> Reading {
+    Reading::missing(
+        "not_capacitive",
+        format!(
+            "the reactance at {} is inductive: the part has no {} there",
+            crate::quantity::engineering(frequency, "Hz", 4),
+            characteristic.title()
+        ),
+    )
+}
+
+/// The derivatives of `D = −R/X` with respect to R and X.
+fn gradient_of_loss(z: Complex64) -> Complex64 {
+    Complex64::new(-1.0 / z.im, z.re / (z.im * z.im))
+}
+
+fn loss(fit: &LocalFit, frequency: f64, z: Complex64) -> Estimate {
+    let d = -z.re / z.im;
+    // Phase errs as an angle: d(tan δ) = (1 + tan² δ) dδ.
+    Estimate::new(
+        d,
+        0.0,
+        1.0 + d * d,
+        fit.sigma(frequency, gradient_of_loss(z)),
+    )
+}
+
+fn capacitance(fit: &LocalFit, frequency: f64, z: Complex64, equivalent: Equivalent) -> Estimate {
+    let d = -z.re / z.im;
     let series = -1.0 / (TAU * frequency * z.im);
     let of_series = Complex64::new(0.0, -series / z.im);
-    // dC_s/dφ = C_s D for a rotation of Z by φ; C_p = C_s/(1+D²) turns the sign.
-    let (capacitance, gradient, per_radian) = match equivalent {
+    // A rotation of Z by φ changes X by R φ: dC_s/dφ = C_s D, and dC_p/dφ = −C_p D.
+    let (value, gradient, per_radian) = match equivalent {
         Equivalent::Series => (series, of_series, series * d),
         Equivalent::Parallel => {
             let share = 1.0 / (1.0 + d * d);
-            let gradient = of_series * share - of_d * (2.0 * d * series * share * share);
-            (series * share, gradient, series * d * share)
+            let of_loss = gradient_of_loss(z) * (2.0 * d * series * share * share);
+            (
+                series * share,
+                of_series * share - of_loss,
+                -series * share * d,
+            )
         }
     };
-    Reading::known(
-        capacitance,
-        budget.combine(
-            characteristic,
-            capacitance,
-            per_radian,
-            fit.sigma(frequency, gradient),
-        ),
-    )
+    Estimate::new(value, -1.0, per_radian, fit.sigma(frequency, gradient))
 }

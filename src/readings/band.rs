@@ -7,7 +7,8 @@
 
 use super::at_frequency::{inside, local, outside};
 use super::local_fit::{LocalFit, WIDTH};
-use super::{Budget, Characteristic, Extremes, Reading};
+use super::reading::{Estimate, Outcome};
+use super::{Characteristic, Reading};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 
@@ -23,45 +24,29 @@ struct Candidate {
     scatter: f64,
 }
 
-/// The extremes of `characteristic` (ESR or impedance) from `from` to `to` in Hz.
+/// The lowest and the highest value of `characteristic` (ESR or impedance) from `from` to `to` Hz.
 pub(super) fn read(
     sweep: &Sweep,
     characteristic: Characteristic,
     from: f64,
     to: f64,
-    budget: &Budget,
-) -> Extremes {
-    let both = |reading: Reading| Extremes {
-        lowest: reading.clone(),
-        highest: reading,
-    };
+) -> (Outcome, Outcome) {
+    let neither = |reading: Reading| (Err(reading.clone()), Err(reading));
     for end in [from, to] {
         if !inside(sweep, end) {
-            return both(outside(sweep, end));
+            return neither(outside(sweep, end));
         }
     }
-    let Some(candidates) = candidates(sweep, characteristic, from, to) else {
-        return both(Reading::missing(
+    let found = candidates(sweep, characteristic, from, to).unwrap_or_default();
+    let lowest = found.iter().min_by(|a, b| a.value.total_cmp(&b.value));
+    let highest = found.iter().max_by(|a, b| a.value.total_cmp(&b.value));
+    let estimate =
+        |c: &Candidate| Ok(Estimate::new(c.value, 1.0, c.per_radian, c.scatter).at(c.frequency));
+    match (lowest, highest) {
+        (Some(lowest), Some(highest)) => (estimate(lowest), estimate(highest)),
+        _ => neither(Reading::missing(
             "too_few_points",
             "too few points in and around the band to read a value there",
-        ));
-    };
-    let reading = |c: &Candidate| {
-        let u = budget.combine(characteristic, c.value, c.per_radian, c.scatter);
-        let mut reading = Reading::known(c.value, u);
-        reading.frequency = Some(c.frequency);
-        reading
-    };
-    let lowest = candidates.iter().min_by(|a, b| a.value.total_cmp(&b.value));
-    let highest = candidates.iter().max_by(|a, b| a.value.total_cmp(&b.value));
-    match (lowest, highest) {
-        (Some(lowest), Some(highest)) => Extremes {
-            lowest: reading(lowest),
-            highest: reading(highest),
-        },
-        _ => both(Reading::missing(
-            "too_few_points",
-            "no point of the sweep lies in the band",
         )),
     }
 }
@@ -103,7 +88,7 @@ fn candidate(
 ) -> Candidate {
     let of = |z: Complex64| match characteristic {
         Characteristic::Impedance => (z.norm(), 0.0, z / z.norm()),
-        _ => (z.re, z.im, Complex64::ONE),
+        _ => (z.re, -z.im, Complex64::ONE),
     };
     let (value, per_radian, direction) = of(fit.impedance(f));
     if let Some(z) = measured {

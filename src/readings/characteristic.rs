@@ -86,4 +86,16 @@ impl Characteristic {
             Characteristic::Esl => "H",
         }
     }
+
+    /// Whether the value is chiefly an angle of Z, so that without a stated uncertainty of the phase
+    /// nothing is known of its own.
+    pub(super) fn is_phase(self) -> bool {
+        matches!(
+            self,
+            Characteristic::DissipationFactor
+                | Characteristic::Esr
+                | Characteristic::EsrMinimum
+                | Characteristic::Srf
+        )
+    }
 }

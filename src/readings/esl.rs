@@ -6,7 +6,8 @@
 //! frequency, so that the frequency is part of the result.
 
 use super::local_fit::{LocalFit, grown};
-use super::{Budget, Characteristic, Reading, srf};
+use super::reading::{Estimate, Outcome};
+use super::{Reading, srf};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
@@ -16,23 +17,26 @@ use std::f64::consts::TAU;
 const FEWEST: usize = 5;
 
 /// ESL in H, with its frequency.
-pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
-    let Some(resonance) = srf::read(sweep, budget).known_value() else {
-        return Reading::missing(
+pub(super) fn read(sweep: &Sweep) -> Outcome {
+    let Ok(Estimate {
+        value: resonance, ..
+    }) = srf::read(sweep)
+    else {
+        return Err(Reading::missing(
             "srf_outside_sweep",
             "no self-resonance inside the sweep: the inductance cannot be told from the capacitance",
-        );
+        ));
     };
     let points = &sweep.frequency;
     let last = points[points.len() - 1];
     if last < 1.5 * resonance {
-        return Reading::missing(
+        return Err(Reading::missing(
             "sweep_ends_too_low",
             format!(
                 "the sweep must reach at least 1.5 times the self-resonance ({}) to show the inductance",
                 crate::quantity::engineering(resonance, "Hz", 4)
             ),
-        );
+        ));
     }
     let from = if last >= 6.0 * resonance {
         3.0 * resonance
@@ -46,27 +50,23 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
         points.partition_point(|f| f * slack < from)..points.partition_point(|f| *f <= to * slack);
     let range = grown(points, range, centre, FEWEST);
     let Some(fit) = LocalFit::new(sweep, range, centre) else {
-        return Reading::missing(
+        return Err(Reading::missing(
             "too_few_points",
             "too few points above self-resonance to determine the inductance",
-        );
+        ));
     };
     let half = 0.5 / (TAU * centre);
     let inductance = half * (fit.slope(centre).im + fit.impedance(centre).im);
     let scatter =
         fit.sigma_with_slope(centre, Complex64::new(0.0, half), Complex64::new(0.0, half));
-    // An error φ of the phase shifts X by R φ and dX/d ln f by R' φ.
+    // A rotation by φ changes X by R φ and dX/d ln f by R' φ.
     let per_radian = half * (fit.slope(centre).re + fit.impedance(centre).re);
-    let mut reading = Reading::known(
-        inductance,
-        budget.combine(Characteristic::Esl, inductance, per_radian, scatter),
-    );
-    reading.frequency = Some(centre);
+    let mut estimate = Estimate::new(inductance, 1.0, per_radian, scatter).at(centre);
     if from < 3.0 * resonance {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "esl_near_resonance",
             "the sweep ends close above self-resonance: the inductance is less certain",
         ));
     }
-    reading
+    Ok(estimate)
 }

@@ -6,7 +6,8 @@
 
 use super::at_frequency::{inside, local, outside};
 use super::local_fit::LocalFit;
-use super::{Budget, Characteristic, Place, Reading};
+use super::reading::{Estimate, Outcome};
+use super::{Place, Reading};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
@@ -22,30 +23,32 @@ const REACH: f64 = 0.2 * LN_10;
 const MOVES: usize = 8;
 
 /// Smallest Re Z in Ω; its frequency goes with it.
-pub(super) fn read(sweep: &Sweep, place: Place, budget: &Budget) -> Reading {
+pub(super) fn read(sweep: &Sweep, place: Place) -> Outcome {
     let points = &sweep.frequency;
     let (from, to) = match (place, points.first(), points.last()) {
         (Place::Between(from, to), _, _) => (from, to),
         (_, Some(first), Some(last)) => (*first, *last),
-        _ => return too_few("the sweep is empty"),
+        _ => return Err(too_few("the sweep is empty")),
     };
     for end in [from, to] {
         if !inside(sweep, end) {
-            return outside(sweep, end);
+            return Err(outside(sweep, end));
         }
     }
     let start = points.partition_point(|f| *f < from * (1.0 - 1e-5));
     let end = points.partition_point(|f| *f <= to * (1.0 + 1e-5));
     if end < start + 3 {
-        return too_few("fewer than three points in the band: no minimum can be told");
+        return Err(too_few(
+            "fewer than three points in the band: no minimum can be told",
+        ));
     }
     let Some(coarse) = coarse_minimum(sweep, start, end) else {
-        return hidden();
+        return Err(hidden());
     };
     let (mut centre, mut found) = (points[coarse], None);
     for _ in 0..MOVES {
         let Some(fit) = local(sweep, centre) else {
-            return too_few("too few points around the minimum to read it");
+            return Err(too_few("too few points around the minimum to read it"));
         };
         let (low, high) = (
             from.max(centre * (-REACH).exp()),
@@ -60,8 +63,8 @@ pub(super) fn read(sweep: &Sweep, place: Place, budget: &Budget) -> Reading {
         centre = at;
     }
     match found {
-        Some((fit, at)) => reading(&fit, at, from, to, budget),
-        None => hidden(),
+        Some((fit, at)) => estimate(&fit, at, from, to),
+        None => Err(hidden()),
     }
 }
 
@@ -76,24 +79,19 @@ fn hidden() -> Reading {
     )
 }
 
-fn reading(fit: &LocalFit, at: f64, from: f64, to: f64, budget: &Budget) -> Reading {
+fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Outcome {
     let z = fit.impedance(at);
     if z.re.is_nan() || z.re <= 0.0 {
-        return hidden();
+        return Err(hidden());
     }
-    let scatter = fit.sigma(at, Complex64::ONE);
-    let mut reading = Reading::known(
-        z.re,
-        budget.combine(Characteristic::EsrMinimum, z.re, z.im, scatter),
-    );
-    reading.frequency = Some(at);
+    let mut estimate = Estimate::new(z.re, 1.0, -z.im, fit.sigma(at, Complex64::ONE)).at(at);
     if at <= from * 1.001 || at >= to * 0.999 {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "minimum_at_edge",
             "the resistance still falls at the end of the range: the true minimum may lie beyond it",
         ));
     }
-    reading
+    Ok(estimate)
 }
 
 /// Where the fitted R is smallest between two frequencies: the least of 40 steps, then golden

@@ -1,6 +1,7 @@
 //! A reading: a value, or a bound on it, or nothing; with uncertainty and warnings.
 
-use super::{Characteristic, Equivalent, Place};
+use super::uncertainty::combined;
+use super::{Budget, Characteristic, Equivalent, Place};
 use crate::diagnostic::Note;
 
 /// What is to be read.
@@ -46,6 +47,54 @@ pub struct Reading {
 pub struct Extremes {
     pub lowest: Reading,
     pub highest: Reading,
+}
+
+/// What a sweep gives for a characteristic, with what its uncertainty depends on.
+#[derive(Debug, Clone)]
+pub(super) struct Estimate {
+    pub(super) value: f64,
+    /// Hz
+    pub(super) frequency: Option<f64>,
+    /// dy/d ln|Z| for a common relative error of all |Z|.
+    pub(super) per_log_magnitude: f64,
+    /// dy/dφ for a common error of all phases.
+    pub(super) per_radian: f64,
+    /// Standard uncertainty from the points' scatter about the fit.
+    pub(super) scatter: f64,
+    pub(super) warnings: Vec<Note>,
+}
+
+/// An estimate, or a reading that is a bound or is missing.
+pub(super) type Outcome = Result<Estimate, Reading>;
+
+impl Estimate {
+    /// A value proportional to |Z| (`share` 1), inverse to it (−1), or free of it (0).
+    pub(super) fn new(value: f64, share: f64, per_radian: f64, scatter: f64) -> Estimate {
+        Estimate {
+            value,
+            frequency: None,
+            per_log_magnitude: share * value,
+            per_radian,
+            scatter,
+            warnings: Vec::new(),
+        }
+    }
+
+    pub(super) fn at(mut self, frequency: f64) -> Estimate {
+        self.frequency = Some(frequency);
+        self
+    }
+
+    /// The reading with the uncertainty that a budget gives it.
+    pub(super) fn into_reading(self, characteristic: Characteristic, budget: &Budget) -> Reading {
+        let components = budget.components(characteristic, &self);
+        let mut reading = Reading::known(self.value, components.map(|c| combined(&c)));
+        if reading.value != Value::Missing {
+            reading.frequency = self.frequency;
+            reading.warnings = self.warnings;
+        }
+        reading
+    }
 }
 
 impl Reading {

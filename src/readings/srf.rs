@@ -6,7 +6,8 @@
 //! crossing is then the root of the reactance of a local fit over ±0.4 decade.
 
 use super::local_fit::{LocalFit, WIDTH, grown};
-use super::{Budget, Characteristic, Reading, Value};
+use super::reading::{Estimate, Outcome};
+use super::{Reading, Value};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
@@ -63,11 +64,11 @@ fn crossings(sweep: &Sweep) -> Vec<Crossing> {
 ///
 /// A sweep that is capacitive up to its end gives `Value::Above` its last frequency; one that is
 /// inductive from its start `Value::Below` its first.
-pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
+pub(super) fn read(sweep: &Sweep) -> Outcome {
     let n = sweep.frequency.len();
     let found = crossings(sweep);
     let Some(at) = found.iter().position(|c| c.rises) else {
-        return without_crossing(sweep, &found);
+        return Err(without_crossing(sweep, &found));
     };
     let crossing = found[at];
     let centre = 0.5 * (crossing.first + crossing.last);
@@ -86,38 +87,29 @@ pub(super) fn read(sweep: &Sweep, budget: &Budget) -> Reading {
         (centre - half).max(lower).exp(),
         (centre + half).min(upper).exp(),
     ) else {
-        return Reading::missing(
+        return Err(Reading::missing(
             "srf_not_resolved",
             "the reactance changes sign, but its course there gives no definite crossing; measure again",
-        );
+        ));
     };
     let value = resonance.frequency;
-    // A phase error φ shifts X by R φ, and with it the crossing by R φ / (dX/d ln f).
-    let per_radian = value * resonance.resistance / resonance.slope;
-    let mut reading = Reading::known(
-        value,
-        budget.combine_phase_only(
-            Characteristic::Srf,
-            value,
-            per_radian,
-            value * resonance.sigma,
-        ),
-    );
-    reading.frequency = Some(value);
+    // A rotation by φ changes X by R φ, and with it the crossing by −R φ / (dX/d ln f).
+    let per_radian = -value * resonance.resistance / resonance.slope;
+    let mut estimate = Estimate::new(value, 0.0, per_radian, value * resonance.sigma).at(value);
     let position = sweep.frequency.partition_point(|f| f.ln() < centre);
     if position < 3 || position + 3 > n {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "srf_at_sweep_edge",
             "the self-resonance lies within three points of the sweep's end",
         ));
     }
     if found.iter().filter(|c| c.rises).count() > 1 {
-        reading.warnings.push(Note::new(
+        estimate.warnings.push(Note::new(
             "multiple_resonances",
             "the reactance crosses zero more than once: the first crossing is given; look for a second part left in the jig",
         ));
     }
-    reading
+    Ok(estimate)
 }
 
 fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {

@@ -1,20 +1,68 @@
 //! Standard uncertainty of readings from what the station states and what the sweep itself shows.
 //!
 //! First-order propagation (JCGM 100:2008 clause 5.1.2) of relative magnitude and phase of Z, the
-//! reference resistor's tolerance (rectangular, clause 4.3.7), the scatter about the local fit,
-//! and the station's repeatability of the characteristic. No correlation between them is assumed.
+//! reference resistor's tolerance (rectangular, clause 4.3.7), the scatter about the fit, and the
+//! station's repeatability of the characteristic. No correlation between them is assumed. One set
+//! of terms serves both the reading's uncertainty and the budget as a table.
 
 use super::Characteristic;
+use super::reading::Estimate;
 use crate::station::{Repeatability, Station};
 
 /// A station's uncertainty, ready to be propagated.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct Budget {
-    /// Relative standard uncertainty of |Z| (instrument and reference); `None` where not stated.
+    /// Relative standard uncertainty of |Z| from the instrument; `None` where not stated.
     magnitude: Option<f64>,
-    /// Standard uncertainty of the phase of Z in rad; 0 where only the magnitude is stated.
-    phase: f64,
+    /// Standard uncertainty of the phase of Z in rad; `None` where not stated.
+    phase: Option<f64>,
+    /// Relative standard uncertainty of the reference resistance; 0 without one.
+    reference: f64,
     repeatability: Vec<(String, Repeatability)>,
+}
+
+/// One line of an uncertainty budget.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Component {
+    /// What is uncertain.
+    pub name: &'static str,
+    /// Its standard uncertainty, in `unit`.
+    pub standard_uncertainty: f64,
+    /// `1` (relative), `rad`, or the unit of the reading.
+    pub unit: &'static str,
+    /// Change of the reading per unit of the input.
+    pub sensitivity: f64,
+    /// What it contributes to the reading's standard uncertainty, in the unit of the reading.
+    pub contribution: f64,
+    /// How the input is distributed: `normal` or `rectangular`.
+    pub distribution: &'static str,
+}
+
+impl Component {
+    fn new(
+        name: &'static str,
+        standard_uncertainty: f64,
+        unit: &'static str,
+        sensitivity: f64,
+    ) -> Component {
+        Component {
+            name,
+            standard_uncertainty,
+            unit,
+            sensitivity,
+            contribution: (sensitivity * standard_uncertainty).abs(),
+            distribution: "normal",
+        }
+    }
+}
+
+/// The standard uncertainty that a budget's components make: the root of the sum of their squares.
+pub fn combined(components: &[Component]) -> f64 {
+    components
+        .iter()
+        .map(|c| c.contribution * c.contribution)
+        .sum::<f64>()
+        .sqrt()
 }
 
 impl Budget {
@@ -22,61 +70,52 @@ impl Budget {
     /// the measured impedance; `tolerance` of the reference is a half-width.
     pub fn of(station: &Station) -> Budget {
         let stated = &station.uncertainty;
-        let reference = station.reference.map_or(0.0, |r| r.tolerance / 3f64.sqrt());
-        let magnitude = match (stated.magnitude, stated.phase) {
-            (None, None) => None,
-            (magnitude, _) => Some(magnitude.unwrap_or(0.0).hypot(reference)),
-        };
         Budget {
-            magnitude,
-            phase: stated.phase.unwrap_or(0.0),
+            magnitude: stated.magnitude,
+            phase: stated.phase,
+            reference: station.reference.map_or(0.0, |r| r.tolerance / 3f64.sqrt()),
             repeatability: stated.repeatability.clone(),
         }
     }
 
-    /// Of a value whose relative sensitivity to |Z| is 1 and whose absolute sensitivity to the
-    /// phase is `per_radian`; `scatter` is the standard uncertainty from the local fit.
-    pub(super) fn combine(
+    /// Every term of an estimate; `None` where the station leaves unstated what the value depends
+    /// on: an ESR without a stated phase has no known uncertainty, however good the magnitude.
+    pub(super) fn components(
         &self,
         characteristic: Characteristic,
-        value: f64,
-        per_radian: f64,
-        scatter: f64,
-    ) -> Option<f64> {
-        let instrument = self.magnitude? * value;
-        self.rest(characteristic, value, instrument, per_radian, scatter)
-    }
-
-    /// The same for a value that does not depend on |Z| (a frequency, a ratio of R to X).
-    pub(super) fn combine_phase_only(
-        &self,
-        characteristic: Characteristic,
-        value: f64,
-        per_radian: f64,
-        scatter: f64,
-    ) -> Option<f64> {
-        self.magnitude?;
-        self.rest(characteristic, value, 0.0, per_radian, scatter)
-    }
-
-    fn rest(
-        &self,
-        characteristic: Characteristic,
-        value: f64,
-        instrument: f64,
-        per_radian: f64,
-        scatter: f64,
-    ) -> Option<f64> {
+        estimate: &Estimate,
+    ) -> Option<[Component; 5]> {
+        let of_magnitude = estimate.per_log_magnitude;
+        let magnitude = match self.magnitude {
+            Some(u) => u,
+            None if of_magnitude == 0.0 && self.phase.is_some() => 0.0,
+            None => return None,
+        };
+        let phase = match self.phase {
+            Some(u) => u,
+            None if !characteristic.is_phase() => 0.0,
+            None => return None,
+        };
         let repeatability = self
             .repeatability
             .iter()
             .find(|(name, _)| name == characteristic.name())
             .map_or(0.0, |(_, stated)| match stated {
-                Repeatability::Relative(ratio) => ratio * value,
+                Repeatability::Relative(ratio) => ratio * estimate.value.abs(),
                 Repeatability::Absolute(absolute) => *absolute,
             });
-        let terms = [instrument, per_radian * self.phase, scatter, repeatability];
-        let sum: f64 = terms.iter().map(|term| term * term).sum();
-        sum.is_finite().then(|| sum.sqrt())
+        let unit = characteristic.unit();
+        let reference = Component {
+            distribution: "rectangular",
+            ..Component::new("reference resistance", self.reference, "1", of_magnitude)
+        };
+        let components = [
+            Component::new("magnitude of the instrument", magnitude, "1", of_magnitude),
+            Component::new("phase of the instrument", phase, "rad", estimate.per_radian),
+            reference,
+            Component::new("scatter about the fit", estimate.scatter, unit, 1.0),
+            Component::new("repeatability", repeatability, unit, 1.0),
+        ];
+        combined(&components).is_finite().then_some(components)
     }
 }

@@ -122,11 +122,12 @@ fn evaluate(
         )]);
     }
     let (sweep, channels) = measure(&mut raw, station, notes)?;
-    let open = standards.and_then(|s| s.open_reading(&sweep.frequency));
-    let evidence = Evidence::new(station, channels, open);
-    let read = evidence.before_compensation(&sweep);
-    if !read.is_empty() {
-        return Err(read);
+    let mut evidence = Evidence::of(station);
+    if let Some((a, b)) = channels {
+        evidence = evidence.with_channels(a, b);
+    }
+    if let Some(open) = standards.and_then(|s| s.open_reading(&sweep.frequency)) {
+        evidence = evidence.with_open(open, sweep.impedance.clone());
     }
     let sweep = match standards {
         Some(standards) => standards.apply(sweep)?,

@@ -4,6 +4,9 @@
 
 mod capability;
 mod distributions;
+mod joint;
+mod lot_to_lot;
+mod mixture;
 mod normality;
 mod operating_characteristic;
 mod outliers;
@@ -11,6 +14,7 @@ mod percentile;
 mod reference;
 mod sampling;
 mod share;
+mod simulation;
 mod summary;
 mod switching;
 mod tolerance;

@@ -42,7 +42,6 @@ fn unusual(field: &[u8], mark: &mut Mark, comma_allowed: bool) -> Result<f64, Fa
         return Err(Fault::Empty);
     }
     let mut buffer = [0u8; 64];
-    let field = field.strip_prefix(b"+").unwrap_or(field);
     let Some(copy) = buffer.get_mut(..field.len()) else {
         return Err(Fault::Text);
     };

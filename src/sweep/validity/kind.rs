@@ -1,0 +1,184 @@
+//! Whether there is a part, and whether it is a capacitor.
+
+use super::noise::Noise;
+use super::{Evidence, UNUSABLE};
+use crate::diagnostic::Note;
+use crate::sweep::Sweep;
+use crate::sweep::faults::hertz;
+
+/// A part never below so many times the reference is none, or cannot be measured with it.
+const OVER_REFERENCE: f64 = 100.0;
+
+/// A part that reads more than this share of the open jig is not there.
+const OF_OPEN: f64 = 0.5;
+
+/// Nothing in the jig, or nothing that can be told from noise.
+pub(super) fn no_part(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option<Note> {
+    if let Some((open, read)) = &evidence.open {
+        let near = open
+            .iter()
+            .zip(read)
+            .filter(|(o, z)| z.norm() > OF_OPEN * o.norm())
+            .count();
+        if near * 2 > read.len() {
+            return Some(open_contact("the jig reads as it does when open"));
+        }
+    }
+    let least = sweep
+        .impedance
+        .iter()
+        .map(|z| z.norm())
+        .fold(f64::INFINITY, f64::min);
+    if evidence
+        .reference
+        .is_some_and(|r| least > OVER_REFERENCE * r.resistance)
+    {
+        return Some(open_contact(&format!(
+            "the impedance is never below {least:.0} Ω, over {OVER_REFERENCE} times the reference"
+        )));
+    }
+    let n = sweep.impedance.len();
+    let usable = (0..n).filter(|&i| noise.usable(i)).count();
+    if usable * 4 > n {
+        return None;
+    }
+    let mut sizes: Vec<f64> = sweep.impedance.iter().map(|z| z.norm()).collect();
+    let middle = sizes.len() / 2;
+    let median = *sizes.select_nth_unstable_by(middle, f64::total_cmp).1;
+    Some(if median > 1e3 {
+        open_contact("the impedance is high and nearly all noise")
+    } else {
+        Note::new(
+            "noise_floor",
+            format!(
+                "at {} of {n} points the noise is more than {:.0} % of the impedance: check cables and drive, and measure again",
+                n - usable,
+                UNUSABLE * 100.0
+            ),
+        )
+    })
+}
+
+fn open_contact(why: &str) -> Note {
+    Note::new(
+        "open_contact",
+        format!("no part, or its contacts are open ({why}): insert the part again and measure"),
+    )
+}
+
+/// A point is active only beyond so many times its noise.
+const SIGNIFICANT: f64 = 4.0;
+
+/// No part gives power: `Re Z ≥ 0`, up to noise and the uncertainty of the phase.
+pub(super) fn passive(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option<Note> {
+    let tolerance = evidence.phase_tolerance();
+    let active: Vec<usize> = sweep
+        .impedance
+        .iter()
+        .enumerate()
+        .filter(|(i, z)| {
+            // Cheap test first: most points have a positive resistance.
+            z.re < 0.0
+                && noise.usable(*i)
+                && z.re < -(SIGNIFICANT * noise.at(*i) + tolerance) * z.norm()
+        })
+        .map(|(i, _)| i)
+        .collect();
+    let adjacent = active
+        .windows(2)
+        .any(|w| w.first().zip(w.last()).is_some_and(|(a, b)| b - a == 1));
+    let many = active.len() >= 2 && active.len() * 100 > sweep.impedance.len();
+    if !adjacent && !many {
+        return None;
+    }
+    let f = |i: Option<&usize>| {
+        hertz(
+            i.and_then(|&i| sweep.frequency.get(i))
+                .copied()
+                .unwrap_or(f64::NAN),
+        )
+    };
+    Some(Note::new(
+        "not_passive",
+        format!(
+            "the resistance is negative at {} points from {} to {}, which no part does: check cabling, channel skew and calibration, and measure again",
+            active.len(),
+            f(active.first()),
+            f(active.last())
+        ),
+    ))
+}
+
+/// So many points at the low end tell what kind of part it is.
+const LOW_END: usize = 8;
+
+/// A capacitor's reactance is at least this share of its impedance at the low end.
+const REACTIVE: f64 = 0.2;
+
+/// A low end of less than this in Ω is called a short.
+const SHORT: f64 = 0.1;
+
+/// At the low end, the reactance must be that of a capacitor.
+pub(super) fn capacitive(sweep: &Sweep, noise: &Noise) -> Option<Note> {
+    let low: Vec<_> = sweep
+        .impedance
+        .iter()
+        .enumerate()
+        .filter(|(i, _)| noise.usable(*i))
+        .map(|(_, z)| z)
+        .take(LOW_END.min(sweep.impedance.len().div_ceil(3)))
+        .collect();
+    let capacitive = low.iter().filter(|z| z.im < -REACTIVE * z.norm()).count();
+    if capacitive * 2 > low.len() {
+        return None;
+    }
+    let size = low.iter().map(|z| z.norm()).fold(f64::INFINITY, f64::min);
+    Some(if size < SHORT {
+        Note::new(
+            "short_contact",
+            format!(
+                "the sweep is that of a short ({:.3} mΩ at the low end, no capacitance): look for a bridge in the jig or a shorted part; discharge parts before handling, as local rules say",
+                size * 1e3
+            ),
+        )
+    } else {
+        Note::new(
+            "not_capacitive",
+            "the low end of the sweep is not that of a capacitor: is the right part in the jig, and are cables and ranges right?",
+        )
+    })
+}
+
+/// A capacitor with its leads resonates once in series; more crossings of the reactance are
+/// another part beside it.
+pub(super) fn one_resonance(sweep: &Sweep, noise: &Noise) -> Option<Note> {
+    let mut sign = -1.0;
+    let mut crossings = Vec::new();
+    let mut run = (0.0, 0);
+    for (i, (z, f)) in sweep.impedance.iter().zip(&sweep.frequency).enumerate() {
+        let threshold = (5.0 * noise.at(i)).max(0.02) * z.norm();
+        let now = if z.im.abs() > threshold {
+            z.im.signum()
+        } else {
+            0.0
+        };
+        run = if now == run.0 {
+            (now, run.1 + 1)
+        } else {
+            (now, 1)
+        };
+        // Several points in a row, so that outliers make no crossing.
+        if now != 0.0 && run.1 == 3 && now != sign {
+            sign = now;
+            crossings.push(*f);
+        }
+    }
+    let anti = crossings.get(1)?;
+    Some(Note::new(
+        "multiple_resonances",
+        format!(
+            "the reactance turns capacitive again at about {}: another part is connected in parallel; clear the jig and measure again",
+            hertz(*anti)
+        ),
+    ))
+}

@@ -1,0 +1,310 @@
+//! Linear Kramers-Kronig consistency: whether a sweep can be that of a linear, stable part that did
+//! not change while it was measured.
+//!
+//! Boukamp, J. Electrochem. Soc. 142 (1995) 1885; Schönleber, Klotz and Ivers-Tiffée, Electrochim.
+//! Acta 131 (2014) 20. Fitted is `R + jωL + 1/(jωC) + Σ R_k/(1 + jωτ_k)` with fixed time constants,
+//! three a decade: a linear problem. The published rule for their number is for batteries and stops
+//! much too early for capacitors, whose skin effect and ladders need negative `R_k`; the series
+//! terms L and C are indispensable. Residuals are taken relative to the envelope of the impedance
+//! (the larger of capacitive, inductive and resistive part, without the dip at resonance), and their
+//! means over blocks of points are held against the sweep's own noise.
+//!
+//! The columns depend only on the frequency list and on the envelope's coarse form, so their
+//! orthogonal basis is made once for all parts of a lot.
+
+use super::noise::Noise;
+use super::{Evidence, FLOOR};
+use crate::diagnostic::Note;
+use crate::sweep::Sweep;
+use crate::sweep::faults::hertz;
+use num_complex::Complex64;
+use std::cell::RefCell;
+use std::f64::consts::TAU;
+use std::rc::Rc;
+
+/// Time constants in a decade.
+const PER_DECADE: f64 = 3.0;
+
+/// The time constants reach so far beyond the sweep: jigs and references have theirs there.
+const BEYOND: f64 = 10.0;
+
+/// Fewer points than this for each unknown, or less than a decade, show nothing.
+const POINTS_PER_TERM: usize = 2;
+
+/// Points of one block.
+const BLOCK: usize = 10;
+
+/// A block's mean residual of so many times its own noise is not noise.
+const SIGNIFICANT: f64 = 6.0;
+
+/// What the fixed terms leave of a sound part (relative); clean reference parts stay below 0.3 %.
+const MODEL: f64 = 8e-3;
+
+/// Bases kept by each thread.
+const KEPT: usize = 8;
+
+/// What a basis depends on.
+#[derive(Debug, Clone, PartialEq)]
+struct Key {
+    frequency: Vec<f64>,
+    /// Resonance of the envelope, in half nepers.
+    resonance: i32,
+    /// Resistance over the reactance at that resonance, in half nepers.
+    loss: i32,
+}
+
+struct Basis {
+    key: Key,
+    /// Orthonormal columns; real parts of all points, then imaginary parts.
+    columns: Vec<Vec<f64>>,
+    weight: Vec<f64>,
+}
+
+thread_local! {
+    static BASES: RefCell<Vec<Rc<Basis>>> = const { RefCell::new(Vec::new()) };
+}
+
+/// Checks a sweep with one resonance at most.
+pub(super) fn check(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option<Note> {
+    let (from, to) = quiet(sweep, noise)?;
+    let frequency = sweep.frequency.get(from..to)?;
+    let impedance = sweep.impedance.get(from..to)?;
+    let (resonance, loss) = envelope(frequency, impedance)?;
+    let basis = basis(frequency, resonance, loss)?;
+    let residual = residual(&basis, impedance);
+    let scale = scale(&basis, impedance);
+    let (at, found) = worst_block(
+        &residual,
+        |i| {
+            let z = impedance.get(i).map_or(0.0, |z| z.norm());
+            noise.at(from + i) * z * basis.weight.get(i).copied().unwrap_or(0.0) / scale
+        },
+        evidence.systematic(),
+        scale,
+    )?;
+    let f = hertz(frequency.get(at).copied().unwrap_or(f64::NAN));
+    Some(Note::new(
+        "kramers_kronig",
+        format!(
+            "around {f} the sweep is {:.1} % off what any unchanging part can show: the contact or the part drifted during the sweep, or the calibration is off; reseat the part and measure again",
+            found * 100.0
+        ),
+    ))
+}
+
+/// The stretch of the sweep with little noise, begun and ended on multiples of eight points so that
+/// sweeps alike share a basis.
+fn quiet(sweep: &Sweep, noise: &Noise) -> Option<(usize, usize)> {
+    let n = sweep.frequency.len();
+    let from = (0..n)
+        .rev()
+        .find(|&i| noise.at(i) > FLOOR)
+        .map_or(0, |i| (i + 1).next_multiple_of(8));
+    // Noise at the upper end alone (a series-through jig) ends the stretch instead.
+    let (from, to) = if from > n / 2 {
+        (
+            0,
+            (0..n)
+                .find(|&i| noise.at(i) > FLOOR)
+                .map_or(n, |i| i / 8 * 8),
+        )
+    } else {
+        (from, n)
+    };
+    let decades = (sweep.frequency.get(to.checked_sub(1)?)? / sweep.frequency.get(from)?).log10();
+    let terms = ((decades + 1.0) * PER_DECADE) as usize + 4;
+    (decades > 1.0 && to - from >= POINTS_PER_TERM * terms).then_some((from, to))
+}
+
+/// Coarse form of the impedance: resonance and loss in half nepers.
+fn envelope(frequency: &[f64], impedance: &[Complex64]) -> Option<(i32, i32)> {
+    let (f, z) = (*frequency.first()?, *impedance.first()?);
+    let crossing = impedance
+        .iter()
+        .rposition(|z| z.im < 0.0)
+        .and_then(|i| frequency.get(i));
+    let resonance = *crossing?;
+    let reactance = z.im.abs() * f / resonance;
+    let mut resistance: Vec<f64> = impedance.iter().map(|z| z.re.abs()).collect();
+    let tenth = resistance.len() / 10;
+    let resistance = *resistance.select_nth_unstable_by(tenth, f64::total_cmp).1;
+    let class = |x: f64| (2.0 * x.max(1e-6).ln()).round() as i32;
+    Some((
+        class(resonance),
+        class((resistance / reactance).clamp(1e-2, 1e2)),
+    ))
+}
+
+fn basis(frequency: &[f64], resonance: i32, loss: i32) -> Option<Rc<Basis>> {
+    BASES.with(|bases| {
+        let mut bases = bases.try_borrow_mut().ok()?;
+        let known = |b: &Rc<Basis>| {
+            b.key.resonance == resonance && b.key.loss == loss && b.key.frequency == frequency
+        };
+        if let Some(basis) = bases.iter().find(|b| known(b)) {
+            return Some(Rc::clone(basis));
+        }
+        let key = Key {
+            frequency: frequency.to_vec(),
+            resonance,
+            loss,
+        };
+        let basis = Rc::new(Basis::new(key)?);
+        if bases.len() >= KEPT {
+            bases.remove(0);
+        }
+        bases.push(Rc::clone(&basis));
+        Some(basis)
+    })
+}
+
+impl Basis {
+    fn new(key: Key) -> Option<Basis> {
+        let f0 = (f64::from(key.resonance) / 2.0).exp();
+        let loss = (f64::from(key.loss) / 2.0).exp();
+        // 1 over the envelope, in units of the reactance at resonance.
+        let weight: Vec<f64> = key
+            .frequency
+            .iter()
+            .map(|f| 1.0 / (f0 / f).max(f / f0).max(loss))
+            .collect();
+        let (low, high) = (
+            TAU * key.frequency.first()?,
+            TAU * key.frequency.last()? * BEYOND,
+        );
+        let count = ((high / low).log10() * PER_DECADE).ceil() as usize + 1;
+        let step = (high / low).ln() / (count.max(2) - 1) as f64;
+        let tau = (0..count).map(|k| 1.0 / (low * (step * k as f64).exp()));
+        let j = Complex64::i();
+        let column = |term: &dyn Fn(f64) -> Complex64| -> Vec<f64> {
+            let values: Vec<Complex64> = key
+                .frequency
+                .iter()
+                .zip(&weight)
+                .map(|(f, w)| term(TAU * f) * w)
+                .collect();
+            values
+                .iter()
+                .map(|v| v.re)
+                .chain(values.iter().map(|v| v.im))
+                .collect()
+        };
+        let mut raw = vec![
+            column(&|w| (j * w).finv()),
+            column(&|w| j * w),
+            column(&|_| 1.0.into()),
+        ];
+        raw.extend(tau.map(|tau| column(&|w| (1.0 + j * (w * tau)).finv())));
+        let columns = orthonormal(raw);
+        Some(Basis {
+            key,
+            columns,
+            weight,
+        })
+    }
+}
+
+/// Gram-Schmidt, twice over for the digits; columns that add nothing are left out.
+fn orthonormal(raw: Vec<Vec<f64>>) -> Vec<Vec<f64>> {
+    let mut columns: Vec<Vec<f64>> = Vec::with_capacity(raw.len());
+    for mut column in raw {
+        let before = dot(&column, &column).sqrt();
+        for _ in 0..2 {
+            for known in &columns {
+                let share = dot(known, &column);
+                subtract(&mut column, known, share);
+            }
+        }
+        let norm = dot(&column, &column).sqrt();
+        if norm > 1e-11 * before {
+            column.iter_mut().for_each(|v| *v /= norm);
+            columns.push(column);
+        }
+    }
+    columns
+}
+
+/// With eight running sums, so that it is not bound by the latency of one.
+fn dot(a: &[f64], b: &[f64]) -> f64 {
+    let mut sums = [0.0; 8];
+    let (x, y) = (a.chunks_exact(8), b.chunks_exact(8));
+    let rest: f64 = x
+        .remainder()
+        .iter()
+        .zip(y.remainder())
+        .map(|(a, b)| a * b)
+        .sum();
+    for (x, y) in x.zip(y) {
+        for ((sum, a), b) in sums.iter_mut().zip(x).zip(y) {
+            *sum += a * b;
+        }
+    }
+    sums.iter().sum::<f64>() + rest
+}
+
+fn subtract(from: &mut [f64], what: &[f64], share: f64) {
+    for (value, w) in from.iter_mut().zip(what) {
+        *value -= share * w;
+    }
+}
+
+/// What no combination of the terms explains, weighted.
+fn residual(basis: &Basis, impedance: &[Complex64]) -> Vec<Complex64> {
+    let weighted = |part: fn(&Complex64) -> f64| {
+        impedance
+            .iter()
+            .zip(&basis.weight)
+            .map(move |(z, w)| part(z) * w)
+    };
+    let mut rest: Vec<f64> = weighted(|z| z.re).chain(weighted(|z| z.im)).collect();
+    for column in &basis.columns {
+        let share = dot(column, &rest);
+        subtract(&mut rest, column, share);
+    }
+    let (re, im) = rest.split_at(impedance.len());
+    re.iter()
+        .zip(im)
+        .map(|(re, im)| Complex64::new(*re, *im))
+        .collect()
+}
+
+/// The typical weighted impedance: what residuals are relative to.
+fn scale(basis: &Basis, impedance: &[Complex64]) -> f64 {
+    let mut sizes: Vec<f64> = impedance
+        .iter()
+        .zip(&basis.weight)
+        .map(|(z, w)| z.norm() * w)
+        .collect();
+    let middle = sizes.len() / 2;
+    if sizes.is_empty() {
+        return f64::NAN;
+    }
+    *sizes.select_nth_unstable_by(middle, f64::total_cmp).1
+}
+
+/// The block of points whose mean residual stands out most, as centre index and relative size.
+fn worst_block(
+    residual: &[Complex64],
+    noise: impl Fn(usize) -> f64,
+    systematic: f64,
+    scale: f64,
+) -> Option<(usize, f64)> {
+    let mut worst: Option<(usize, f64, f64)> = None;
+    for (at, block) in residual.chunks(BLOCK).enumerate() {
+        let m = block.len() as f64;
+        let mean = (block.iter().sum::<Complex64>() / m).norm() / scale;
+        let start = at * BLOCK;
+        // The fit lets noise of the neighbouring points through as well.
+        let around = (start.saturating_sub(BLOCK)..start + 2 * BLOCK)
+            .map(&noise)
+            .fold(0.0, f64::max);
+        let allowed = SIGNIFICANT * around / m.sqrt() + systematic + MODEL;
+        let excess = mean / allowed;
+        if worst.is_none_or(|(_, _, most)| excess > most) {
+            worst = Some((start + block.len() / 2, mean, excess));
+        }
+    }
+    worst
+        .filter(|(_, _, excess)| *excess > 1.0)
+        .map(|(at, mean, _)| (at, mean))
+}

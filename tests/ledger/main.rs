@@ -1,0 +1,11 @@
+//! The records: archive, store, Merkle tree, verification, and what they survive.
+
+mod acts;
+mod archive;
+mod faults;
+mod many;
+mod merkle;
+mod notes;
+mod opening;
+mod support;
+mod tamper;
