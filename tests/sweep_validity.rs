@@ -180,3 +180,90 @@ fn fewer_than_one_clean_sweep_in_a_thousand_is_refused() {
         refused.len()
     );
 }
+
+/// A fault made in a clean sweep: what it does to the impedance.
+type Break = fn(&[f64], &mut [Complex64], &mut Random);
+
+const BREAKS: [(&str, Break); 6] = [
+    // The contact opens at one to four points in a row, to the stray of the jig.
+    ("contact opens", |f, z, random| {
+        let at = place(z.len(), random);
+        for i in at..at + 1 + (random.uniform(0.0, 4.0) as usize) {
+            z[i] = Complex64::new(1e-6, TAU * f[i] * 16e-12).inv();
+        }
+    }),
+    // At 3 to 10 % of the points the contact adds as much as the part's own impedance or more.
+    ("contact resistance flickers", |_, z, random| {
+        let share = random.uniform(0.03, 0.1);
+        let at = place(z.len(), random);
+        for (i, z) in z.iter_mut().enumerate() {
+            if i == at || random.uniform(0.0, 1.0) < share {
+                *z += z.norm() * random.uniform(1.0, 5.0);
+            }
+        }
+    }),
+    ("range step of 5 % to 20 %", |_, z, random| {
+        let (at, factor) = (place(z.len(), random), 1.0 + random.uniform(0.05, 0.2));
+        z[at..].iter_mut().for_each(|z| *z *= factor);
+    }),
+    // The resistance drifts by half to twice the impedance at resonance while the sweep runs.
+    ("contact drifts", |_, z, random| {
+        let least = z.iter().map(|z| z.norm()).fold(f64::INFINITY, f64::min);
+        let (n, drift) = (z.len() as f64, least.max(0.02) * random.uniform(3.0, 10.0));
+        z.iter_mut()
+            .enumerate()
+            .for_each(|(i, z)| *z += drift * i as f64 / n);
+    }),
+    ("short", |f, z, random| {
+        let (r, l) = (random.uniform(0.2e-3, 5e-3), random.uniform(0.1e-9, 1e-9));
+        f.iter()
+            .zip(z)
+            .for_each(|(f, z)| *z = Complex64::new(r, TAU * f * l));
+    }),
+    ("phase off by 3° to 10°", |_, z, random| {
+        let turn = Complex64::from_polar(1.0, -random.uniform(3.0, 10.0).to_radians());
+        z.iter_mut().for_each(|z| *z *= turn);
+    }),
+];
+
+/// A place well inside the sweep.
+fn place(points: usize, random: &mut Random) -> usize {
+    random.uniform(0.1, 0.85).mul_add(points as f64, 0.0) as usize
+}
+
+/// The confusion table of made faults: how many of each class are refused. Drift of a contact is
+/// as large as it takes to matter; small drift is within what passive networks can show.
+#[test]
+fn made_faults_are_refused() {
+    let station = station(Method::Direct, None);
+    let evidence = Evidence::of(&station);
+    let mut random = Random(1995);
+    println!("{:28} {:>8} {:>8}", "fault", "made", "refused");
+    let mut short_of = Vec::new();
+    for (what, make) in BREAKS {
+        let (mut made, mut refused) = (0, 0);
+        for name in PARTS {
+            let (f, z) = truth(name, 50.0, 1e3, 65e6);
+            for _ in 0..40 {
+                let noise = random.uniform(1e-5, 2e-3);
+                let mut z: Vec<Complex64> = z
+                    .iter()
+                    .map(|z| z * (1.0 + random.complex() * noise))
+                    .collect();
+                make(&f, &mut z, &mut random);
+                let sweep = Sweep {
+                    frequency: f.clone(),
+                    impedance: z,
+                    level: None,
+                };
+                made += 1;
+                refused += usize::from(!check(&sweep, &evidence).faults.is_empty());
+            }
+        }
+        println!("{what:28} {made:8} {refused:8}");
+        if refused * 100 < made * 95 {
+            short_of.push(format!("{what}: {refused} of {made}"));
+        }
+    }
+    assert!(short_of.is_empty(), "{short_of:?}");
+}

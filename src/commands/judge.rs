@@ -2,7 +2,7 @@
 
 use super::site::{Site, Stop, Unreadable, gather};
 use super::store::{Paths, write_whole};
-use super::{Context, Format, exit, present};
+use super::{Context, Format, exit, explain, present};
 use crate::certificate::{self, Curve, Paper};
 use crate::diagnostic::{self, Faults, printable};
 use crate::record::{self, LotRecord, LotVerdict, Made, Refusal, Sources};
@@ -25,6 +25,9 @@ pub struct Args {
     /// Time of issue of new records, RFC 3339 with offset [default: now]
     #[arg(long, env = "REELGATE_NOW", value_name = "TIME", value_parser = DateTime::parse_from_rfc3339)]
     now: Option<DateTime<FixedOffset>>,
+    /// Print the chain from numbers to verdict; with =PART that of one part too
+    #[arg(long, value_name = "PART", num_args = 0..=1, require_equals = true, default_missing_value = "")]
+    explain: Option<String>,
     /// Paper of the PDF lot record
     #[arg(long, value_enum, default_value = "a4")]
     paper: PaperArg,
@@ -45,7 +48,7 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
         match judge(args, folder, context) {
             Ok((record, paths)) => {
                 if context.format == Format::Text {
-                    printed &= print(context, &record, &paths, records.is_empty()).is_ok();
+                    printed &= print(args, context, &record, &paths, records.is_empty()).is_ok();
                 }
                 records.push(record);
             }
@@ -159,6 +162,7 @@ fn bar(files: usize) -> ProgressBar {
 }
 
 fn print(
+    args: &Args,
     context: &mut Context,
     record: &LotRecord,
     paths: &Paths,
@@ -166,10 +170,16 @@ fn print(
 ) -> std::io::Result<()> {
     let gap = if first { "" } else { "\n" };
     let pdf = printable(&paths.pdf.display().to_string());
+    let chain = args
+        .explain
+        .as_ref()
+        .map_or(String::new(), |part| explain::screen(record, part));
+    let screen = present::screen(record);
     write!(
         context.out,
-        "{gap}{}\nRecord  {pdf}\n",
-        present::screen(record)
+        "{gap}{screen}{chain}
+Record  {pdf}
+"
     )?;
     context.out.flush()
 }

@@ -1,7 +1,9 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
+mod explain;
 mod judge;
 mod limits;
+mod plan;
 mod present;
 mod site;
 mod store;
@@ -57,8 +59,10 @@ struct Cli {
     )]
     site: PathBuf,
     /// Text for people or JSON for programs
-    #[arg(long, global = true, value_enum, default_value = "text")]
-    format: Format,
+    ///
+    /// [default: text; `plan` by its own figures: json where there is no terminal]
+    #[arg(long, global = true, value_enum)]
+    format: Option<Format>,
     #[command(subcommand)]
     command: Command,
 }
@@ -66,6 +70,7 @@ struct Cli {
 #[derive(Debug, Subcommand)]
 enum Command {
     Judge(judge::Args),
+    Plan(plan::Args),
     Limits(limits::Args),
 }
 
@@ -75,6 +80,8 @@ pub struct Context<'a> {
     pub site: PathBuf,
     #[allow(missing_docs)]
     pub format: Format,
+    /// The format that was asked for.
+    pub format_given: Option<Format>,
     /// Results, and nothing else.
     pub out: &'a mut dyn Write,
     /// Diagnostics.
@@ -93,12 +100,14 @@ pub fn run(
     };
     let mut context = Context {
         site: cli.site,
-        format: cli.format,
+        format: cli.format.unwrap_or(Format::Text),
+        format_given: cli.format,
         out,
         err,
     };
     match cli.command {
         Command::Judge(args) => judge::run(&args, &mut context),
+        Command::Plan(args) => plan::run(&args, &mut context),
         Command::Limits(args) => {
             let json = context.format == Format::Json;
             limits::run(&args, &context.site, json, context.out, context.err)

@@ -75,7 +75,7 @@ fn ageing(reader: &mut Reader<'_>, node: &Node) -> Option<Ageing> {
             // Class 2 dielectrics lose up to about 7 % a decade; common practice, no source.
             let expected = "a loss above 0 and at most 20 % a decade";
             let possible = |v: f64| v > 0.0 && v <= 0.2;
-            reader.quantity_if(node, "`per_decade`", Dimension::Ratio, possible, expected)
+            reader.share_if(node, "`per_decade`", possible, expected)
         });
     let refer_to = reader
         .required(&fields, "refer_to", what, "1000 h")

@@ -117,9 +117,7 @@ fn ambient(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<(Option<f64>,
             let possible = |v: f64| (0.0..=1.0).contains(&v);
             let expected = "a relative humidity from 0 to 100 %";
             let what = "`humidity`";
-            reader
-                .quantity_if(node, what, Dimension::Ratio, possible, expected)
-                .map(Some)
+            reader.share_if(node, what, possible, expected).map(Some)
         }
     };
     Some((temperature?, humidity?))

@@ -3,11 +3,15 @@
 //! No files, no clock: what a lot comes to depends on the arguments alone.
 
 mod conditions;
+mod curve;
+mod explain;
 mod sampling;
 mod statistics;
 mod verdict;
 
 pub use conditions::ConditionSection;
+pub use curve::OperatingCharacteristic;
+pub use explain::Step;
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan};
 pub use statistics::{Statistics, statistics};
 pub use verdict::{LotJudgement, LotVerdict, judge};

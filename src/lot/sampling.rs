@@ -1,6 +1,6 @@
 //! The sampling plan in force and the counts against it.
 
-use super::LotVerdict;
+use super::{LotVerdict, OperatingCharacteristic};
 use crate::judgement::{PartRecord, PartVerdict};
 use crate::limits::{Acceptance, Limits};
 use crate::statistics::Undefined;
@@ -56,6 +56,9 @@ pub struct ClassSection {
     pub undecided: u64,
     /// `accept`, `reject` or `hold` by this class alone.
     pub verdict: LotVerdict,
+    /// `null` where the whole lot is inspected.
+    #[serde(default)]
+    pub operating_characteristic: Option<OperatingCharacteristic>,
 }
 
 /// A sampling plan for a lot size.
@@ -67,6 +70,7 @@ pub struct Plan {
     pub code_letter: Option<String>,
     pub severity: Option<Severity>,
     pub source: String,
+    pub lot_size: u64,
     pub classes: IndexMap<String, PlanClass>,
 }
 
@@ -90,6 +94,16 @@ impl Plan {
             .max()
             .unwrap_or(0)
     }
+
+    /// The operating characteristic of one class.
+    pub fn curve(&self, class: &PlanClass) -> Option<OperatingCharacteristic> {
+        match self.scheme {
+            "zero_acceptance" => {
+                OperatingCharacteristic::hypergeometric(class.n, class.ac, self.lot_size)
+            }
+            _ => OperatingCharacteristic::binomial(class.n, class.ac, self.lot_size),
+        }
+    }
 }
 
 /// The plan that the acceptance section of a limit file gives for a lot size, or why there is none.
@@ -108,6 +122,7 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
             level: None,
             code_letter: None,
             severity: None,
+            lot_size,
             source: "fixed sample and acceptance number of the limit file".to_owned(),
             classes: single((*sample).min(lot_size), *accept),
         }),
@@ -119,6 +134,7 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
                 level: None,
                 code_letter: None,
                 severity: None,
+                lot_size,
                 source: "hypergeometric law, exact for the lot size".to_owned(),
                 classes: single(n, 0),
             })
@@ -173,6 +189,7 @@ fn attributes(
         level: Some(level.to_owned()),
         code_letter: Some(letter.to_string()),
         severity: Some(severity),
+        lot_size,
         source: format!(
             "{}, code letter by Table 1, single sampling",
             severity.table()
@@ -187,6 +204,7 @@ fn no_plan(lot_size: u64, why: Undefined) -> String {
 
 /// The tables of ISO 2859-1 begin with lots of two: a single part is inspected itself.
 fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
+    let lot_size = 1;
     let class = |aql: f64| PlanClass {
         aql: Some(aql),
         code_letter: None,
@@ -199,6 +217,7 @@ fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
         level: Some(level.to_owned()),
         code_letter: None,
         severity: Some(severity),
+        lot_size,
         source: "100 % inspection of a lot of one".to_owned(),
         classes: aql
             .iter()
@@ -249,6 +268,7 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
                 nonconforming,
                 undecided,
                 verdict: class_verdict(class, nonconforming, undecided),
+                operating_characteristic: plan.curve(class),
             },
         );
     }

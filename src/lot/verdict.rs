@@ -5,6 +5,7 @@
 //! speaks against it.
 
 use super::conditions::{self, ConditionSection, some_parts};
+use super::explain::{Decided, Step, explain};
 use super::{Lot, statistics};
 use super::{LotVerdict::*, Plan, Sampling, Statistics, sampling};
 use crate::diagnostic::Note;
@@ -47,6 +48,8 @@ pub struct LotJudgement {
     pub sampling: Sampling,
     pub statistics: IndexMap<String, Statistics>,
     pub conditions: Vec<ConditionSection>,
+    /// The chain from numbers to verdict.
+    pub explanation: Vec<Step>,
 }
 
 /// Judges a lot from its parts, in sample order.
@@ -91,8 +94,17 @@ pub fn judge(
             format!("{}, and nothing speaks against the lot", counts(&sampling)),
         ));
     }
+    let explanation = explain(&Decided {
+        limits,
+        plan,
+        sampling: &sampling,
+        statistics: &statistics,
+        conditions: &sections,
+        verdict,
+    });
     LotJudgement {
         verdict,
+        explanation,
         reasons,
         warnings: warnings(limits, station),
         sampling,

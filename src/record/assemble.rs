@@ -98,6 +98,7 @@ impl LotRecord {
             verdict: judgement.verdict,
             reasons: judgement.reasons,
             warnings: all,
+            explanation: judgement.explanation,
             sampling: judgement.sampling,
             statistics: judgement.statistics,
             parts,

@@ -6,10 +6,10 @@ use crate::diagnostic::{Faults, Note};
 use crate::judgement::{JudgedTry, judge_part, judge_try};
 use crate::limits::{self, Limits};
 use crate::lot::{self, Lot};
-use crate::readings::Budget;
+use crate::readings::{Budget, Characteristic};
 use crate::station::{self, Station};
 use crate::statistics::sampling::Severity;
-use crate::sweep::{self, Attempt, RawFile, Standards, Sweep};
+use crate::sweep::{self, Attempt, RawFile, Standards, Sweep, validity};
 use rayon::prelude::*;
 
 /// The files that a verdict rests on, as they lie on the disk. Names of the first three are those
@@ -71,7 +71,11 @@ pub fn make(
     let plan = lot::plan(&limits.acceptance, lot.quantity, severity)
         .map_err(|text| Refusal::Impossible(Note::new("no_sampling_plan", text)))?;
     let standards = standards(sources, &station)?;
-    let attempts = attempts(sources, &station, standards.as_ref(), read)?;
+    let mut attempts = attempts(sources, &station, standards.as_ref(), read)?;
+    validity::complete(&mut attempts);
+    if let Some(nominal) = nominal_capacitance(&limits) {
+        validity::expect_capacitance(&mut attempts, nominal);
+    }
     let budget = Budget::of(&station);
     let age = lot.age_hours();
     let judged: Vec<JudgedTry> = attempts
@@ -92,6 +96,15 @@ pub fn make(
         issued: issued.to_owned(),
     });
     Ok(Made { record, curves })
+}
+
+/// The nominal capacitance that the limit file states, in F.
+fn nominal_capacitance(limits: &Limits) -> Option<f64> {
+    let of_capacitance = limits
+        .bounds
+        .iter()
+        .filter(|bound| bound.characteristic == Characteristic::Capacitance);
+    of_capacitance.filter_map(|bound| bound.nominal).next()
 }
 
 fn parse(sources: &Sources) -> Result<(Lot, Limits, Station), Refusal> {

@@ -8,7 +8,9 @@ mod canonical;
 mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
-pub use crate::lot::{ClassSection, ConditionSection, LotVerdict, Sampling, Statistics};
+pub use crate::lot::{
+    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics, Step,
+};
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
 pub use make::{Made, PartSweep, Refusal, Sources, make};
@@ -38,6 +40,9 @@ pub struct LotRecord {
     pub reasons: Vec<Note>,
     /// What a reader should know though it decided nothing.
     pub warnings: Vec<Note>,
+    /// The chain from numbers to verdict: rule, source, numbers, result.
+    #[serde(default)]
+    pub explanation: Vec<Step>,
     pub sampling: Sampling,
     /// By characteristic key, in the order of the limit file.
     pub statistics: IndexMap<String, Statistics>,

@@ -123,7 +123,7 @@ fn reference(reader: &mut Reader<'_>, node: &Node) -> Option<Reference> {
 fn tolerance(reader: &mut Reader<'_>, node: &Node) -> Option<f64> {
     let expected = "a half-width from 0 to below 50 %, such as `0.1 %`";
     let possible = |v: f64| (0.0..0.5).contains(&v);
-    reader.quantity_if(node, "`tolerance`", Dimension::Ratio, possible, expected)
+    reader.share_if(node, "`tolerance`", possible, expected)
 }
 
 fn reference_belongs(reader: &mut Reader<'_>, fields: &Fields<'_>, method: Method) {

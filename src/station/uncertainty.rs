@@ -48,7 +48,7 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Uncertainty>
 fn ratio(reader: &mut Reader<'_>, node: &Node, what: &str) -> Option<f64> {
     let expected = "a relative standard uncertainty above 0 and at most 100 %";
     let possible = |v: f64| v > 0.0 && v <= 1.0;
-    reader.quantity_if(node, what, Dimension::Ratio, possible, expected)
+    reader.share_if(node, what, possible, expected)
 }
 
 fn repeatability(reader: &mut Reader<'_>, node: &Node) -> Option<Vec<(String, Repeatability)>> {

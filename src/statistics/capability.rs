@@ -92,6 +92,41 @@ fn ratio(distance: f64, spread: f64) -> Result<f64, Undefined> {
     }
 }
 
+/// The smallest sample from which an index is worth stating: the normal approximation of its bound holds from about 25 values (NIST/SEMATECH
+/// e-Handbook 6.1.6, from memory), and below, a Cpk of 1.33 does not even show 1.00.
+pub const CAPABILITY_SIZE_MIN: u64 = 25;
+
+/// The largest share of the variance that may be the measurement's for an index to say something of the parts: one half. Common practice, no source.
+pub const MEASUREMENT_SHARE_MAX: f64 = 0.5;
+
+/// Whether an index from n values of that standard deviation is worth stating, where a single reading has that standard uncertainty of its own
+/// (random part, in the same unit).
+///
+/// # Errors
+/// [`Undefined::TooFewValues`] below [`CAPABILITY_SIZE_MIN`], [`Undefined::ZeroSpread`], [`Undefined::NotFinite`],
+/// [`Undefined::MeasurementDominates`] above [`MEASUREMENT_SHARE_MAX`].
+pub fn worth_stating(n: u64, sigma: f64, repeatability: Option<f64>) -> Result<(), Undefined> {
+    if n < CAPABILITY_SIZE_MIN {
+        return Err(Undefined::TooFewValues {
+            needed: CAPABILITY_SIZE_MIN,
+            found: n,
+        });
+    }
+    if sigma == 0.0 {
+        return Err(Undefined::ZeroSpread);
+    }
+    let share = (repeatability.unwrap_or(0.0) / sigma).powi(2);
+    if !share.is_finite() {
+        return Err(Undefined::NotFinite);
+    }
+    if share > MEASUREMENT_SHARE_MAX {
+        return Err(Undefined::MeasurementDominates {
+            share: share.min(1.0),
+        });
+    }
+    Ok(())
+}
+
 /// Lower confidence bound of Cp or Pp: the index times √(χ²_{ν, 1 − confidence}/ν).
 ///
 /// Exact for a normal sample's own standard deviation (ν = n − 1); with the moving range an approximation by its

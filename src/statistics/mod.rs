@@ -7,11 +7,14 @@
 
 pub mod capability;
 pub mod distributions;
+pub mod lot_to_lot;
+pub mod mixture;
 pub mod normality;
 pub mod operating_characteristic;
 pub mod outliers;
 pub mod percentile;
 mod quadrature;
+pub mod random;
 mod root;
 pub mod sampling;
 pub mod share;

@@ -34,6 +34,9 @@ pub enum Undefined {
         argument: &'static str,
         expected: &'static str,
     },
+    /// Most of the spread is that of the measurement: its share of the variance, a ratio.
+    #[allow(missing_docs)]
+    MeasurementDominates { share: f64 },
     /// The variables depend linearly on one another, so that their scatter has no inverse.
     Collinear,
     /// A numerical solution was not found.
@@ -67,6 +70,10 @@ impl Undefined {
             Self::OutOfRange { argument, expected } => {
                 format!("{argument} is out of range: expected {expected}")
             }
+            Self::MeasurementDominates { share } => format!(
+                "{:.0} % of the variance is that of the measurement, so the spread says little of the parts",
+                100.0 * share
+            ),
             Self::Collinear => {
                 "the characteristics depend linearly on one another, so a joint distance does not exist"
                     .to_owned()

@@ -211,6 +211,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 ),
             )],
             warnings: vec![],
+            explanation: vec![],
             sampling: sampling(parts as u64),
             statistics: IndexMap::new(),
             parts: records,
@@ -643,6 +644,7 @@ fn sampling(parts: u64) -> Sampling {
         nonconforming: 0,
         undecided: 0,
         verdict: LotVerdict::Accept,
+        operating_characteristic: None,
     };
     Sampling {
         scheme: "attributes".into(),

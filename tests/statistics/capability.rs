@@ -3,7 +3,7 @@
 use crate::reference::{assert_near, assert_within, rows};
 use reelgate::statistics::Undefined;
 use reelgate::statistics::capability::{
-    Capability, cp_lower_bound, cpk_lower_bound, one_sided_lower_bound,
+    Capability, cp_lower_bound, cpk_lower_bound, one_sided_lower_bound, worth_stating,
 };
 
 /// NIST/SEMATECH e-Handbook 6.3.2.2, flow rates, with limits 45 and 57 of our own: within-lot and overall indices
@@ -97,4 +97,27 @@ fn montgomery_intervals() {
     assert_within(cp, 1.5649450045377398, 1e-10);
     let cpk = cpk_lower_bound(1.33, 20, 19.0, 0.975).unwrap();
     assert_within(cpk, 0.88, 0.005);
+}
+
+/// An index is refused where it would mean nothing, and says why.
+#[test]
+fn an_index_that_means_nothing_is_refused() {
+    assert_eq!(worth_stating(25, 1.0, None), Ok(()));
+    assert_eq!(
+        worth_stating(24, 1.0, None),
+        Err(Undefined::TooFewValues {
+            needed: 25,
+            found: 24
+        })
+    );
+    assert_eq!(worth_stating(25, 0.0, None), Err(Undefined::ZeroSpread));
+    assert_eq!(worth_stating(25, 1.0, Some(0.7)), Ok(()));
+    let noise = worth_stating(25, 1.0, Some(0.8)).unwrap_err();
+    assert!(noise.text().starts_with("64 % of the variance"), "{noise}");
+    assert_eq!(
+        worth_stating(25, f64::NAN, Some(0.1)),
+        Err(Undefined::NotFinite)
+    );
+    // Below 25 values a Cpk of 1.33 does not show 1.00 at 95 %.
+    assert!(cpk_lower_bound(1.33, 24, 23.0, 0.95).unwrap() < 1.0);
 }

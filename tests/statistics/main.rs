@@ -4,13 +4,18 @@
 
 mod capability;
 mod distributions;
+mod joint;
+mod lot_to_lot;
+mod mixture;
 mod normality;
 mod operating_characteristic;
 mod outliers;
 mod percentile;
 mod reference;
+mod robust;
 mod sampling;
 mod share;
+mod simulation;
 mod summary;
 mod switching;
 mod tolerance;

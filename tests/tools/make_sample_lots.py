@@ -72,16 +72,30 @@ HEADINGS = {
 
 def faulty_impedance(rng, f, z, kind):
     """What the jig shows instead of the part."""
-    w = 2 * math.pi * f
     if kind == "open":
-        return 1 / (1j * w * 12e-12 + 1e-9)
+        return np.full(f.size, np.inf + 0j)
     if kind == "short":
-        return 0.4e-3 + 1j * w * 0.1e-9
+        return 0.4e-3 + 2j * math.pi * f * 0.1e-9
     if kind == "intermittent_contact":
-        bad = rng.choice(f.size, 40, replace=False)
+        bad = rng.choice(f.size, 14, replace=False)
         z = z.copy()
         z[bad] += rng.uniform(0.5, 40.0, bad.size) * np.maximum(1.0, np.abs(z[bad]) / 20)
     return z
+
+
+def bench_3_ratio(f, z):
+    """B over A: the part and the stray of the jig beside it (12 pF, 1 GΩ) below 100 Ω and 0.8 nH."""
+    w = 2 * math.pi * f
+    stray = 1j * w * 12e-12 + 1e-9
+    seen = 1 / (np.where(np.isinf(z), 0, 1 / z) + stray)
+    return seen / (seen + 100.0 + 1j * w * 0.8e-9)
+
+
+def bench_3_rows(f, ratio, decimals):
+    return [
+        [forms.number(hz / 1e3), f"{20 * math.log10(abs(r)):.{decimals}f}", f"{math.degrees(np.angle(r)):.{decimals}f}"]
+        for hz, r in zip(f, ratio, strict=True)
+    ]
 
 
 def measured_rows(rng, lot, network, kind):
@@ -93,14 +107,10 @@ def measured_rows(rng, lot, network, kind):
     z = faulty_impedance(rng, f, circuits.impedance(network, f), kind)
     ends = (f[0], f[-1])
     if lot.station == "BENCH-3":
-        reference = 100.0 + 2j * math.pi * f * 0.8e-9
-        ratio = z / (z + reference)
+        ratio = bench_3_ratio(f, z)
         ratio = ratio * np.exp(2e-5 * (rng.standard_normal(f.size) + 1j * rng.standard_normal(f.size)))
         ratio = ratio + 2e-7 * (rng.standard_normal(f.size) + 1j * rng.standard_normal(f.size))
-        rows = [
-            [forms.number(hz / 1e3), f"{20 * math.log10(abs(r)):.6f}", f"{math.degrees(np.angle(r)):.6f}"]
-            for hz, r in zip(f, ratio, strict=True)
-        ]
+        rows = bench_3_rows(f, ratio, 6)
         return rows, ends
     z = noisy(rng, z, lot.station)
     x = 2 * math.pi * f * z.imag
@@ -281,7 +291,7 @@ def write_json(path, content):
 
 
 def make_standards(folder):
-    """Open, short and load of the two-channel bench, in the same simulated jig."""
+    """Open, short and load of the two-channel bench in the same simulated jig; the open of BENCH-3."""
     folder.mkdir(parents=True, exist_ok=True)
     standards = {
         "open": None,
@@ -292,6 +302,9 @@ def make_standards(folder):
         columns, _ = two_channel(network, 2.0)
         rows = [[forms.number(v, 13) for v in row] for row in zip(*columns, strict=True)]
         forms.table(folder / f"bench-2-{name}.csv", TWO_CHANNEL, rows, forms.Form())
+    f = grid("BENCH-3", "")
+    rows = bench_3_rows(f, bench_3_ratio(f, np.full(f.size, np.inf + 0j)), 12)
+    forms.table(folder / "bench-3-open.csv", HEADINGS["BENCH-3"], rows, forms.Form())
 
 
 def make_all(lots, standards):

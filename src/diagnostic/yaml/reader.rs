@@ -88,7 +88,9 @@ impl<'a> Reader<'a> {
     /// The entries of a map. `what` names it: "a bound". Unknown keys and keys given twice are
     /// faults.
     pub fn fields<'n>(&mut self, node: &'n Node, what: &str, known: &[&str]) -> Option<Fields<'n>> {
-        let fields = self.entries(node, what)?;
+        let names: Vec<String> = known.iter().map(|k| format!("`{k}:`")).collect();
+        let expected = format!("keys with values: {}", names.join(", "));
+        let fields = self.map(node, what, &expected)?;
         for (name, key, _) in fields.iter() {
             if !known.contains(&name) {
                 self.unknown(
@@ -105,12 +107,16 @@ impl<'a> Reader<'a> {
 
     /// The entries of a map whose keys are names of the author's own.
     pub fn entries<'n>(&mut self, node: &'n Node, what: &str) -> Option<Fields<'n>> {
+        self.map(node, what, "keys, each with a value")
+    }
+
+    fn map<'n>(&mut self, node: &'n Node, what: &str, expected: &str) -> Option<Fields<'n>> {
         let Shape::Map(map) = &node.shape else {
             self.fault(
                 node.span,
                 "not_a_map",
                 format!("{} in place of {what}", node.shape.words()),
-                "keys, each with a value",
+                expected,
                 None,
             );
             return None;

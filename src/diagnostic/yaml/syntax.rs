@@ -5,7 +5,7 @@ use crate::diagnostic::{Fault, Source, Span};
 /// An error of serde_yaml as a fault with a place.
 pub fn fault(source: &Source, error: &serde_yaml::Error) -> Vec<Fault> {
     let message = error.to_string();
-    if message.contains("EOF while parsing") || source.text().trim().is_empty() {
+    if message.contains("EOF while parsing") || says_nothing(source.text()) {
         return vec![empty(source)];
     }
     let span = error.location().map_or(start(), |location| Span {
@@ -38,6 +38,12 @@ pub fn fault(source: &Source, error: &serde_yaml::Error) -> Vec<Fault> {
         "YAML: one `key: value` a line, nested keys indented by two spaces",
         Some(hint.to_owned()),
     )]
+}
+
+/// Whether there are only comments and white space.
+fn says_nothing(text: &str) -> bool {
+    let mut lines = text.lines().map(str::trim);
+    lines.all(|line| line.is_empty() || line.starts_with('#'))
 }
 
 /// More than one document in a file.

@@ -9,8 +9,10 @@ mod jumps;
 mod kind;
 mod kramers_kronig;
 mod noise;
+mod nominal;
 
 pub use completeness::complete;
+pub use nominal::expect_capacitance;
 
 use super::Sweep;
 use super::faults::hertz;

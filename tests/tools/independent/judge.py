@@ -64,7 +64,7 @@ class Site:
         if not stated:
             return None
         result = []
-        for name in ("open", "short", "load"):
+        for name in [n for n in ("open", "short", "load") if n in stated]:
             entry = stated[name]
             entry = {"sweep": entry} if isinstance(entry, str) else entry
             raw = files.from_csv(stations / entry["sweep"], self.station)

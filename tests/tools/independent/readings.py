@@ -25,7 +25,8 @@ def impedance(raw, station, standards=None):
         zref = ohm + 1j * w * henry
         if "ratio_db" in raw:
             h = 10 ** (raw["ratio_db"] / 20) * np.exp(1j * np.radians(raw["phase"]))
-            return f, zref * h / (1 - h), None
+            z = zref * h / (1 - h)
+            return f, z if standards is None else compensated(z, w, standards), None
         a, b = raw["a_re"] + 1j * raw["a_im"], raw["b_re"] + 1j * raw["b_im"]
         z = zref * b / (a - b)
         return f, z if standards is None else compensated(z, w, standards), abs(b)
@@ -48,7 +49,12 @@ def direct(raw, w):
 
 
 def compensated(z, w, standards):
-    """Open/short/load with an ideal open and a defined short and load: exact for any linear two-port."""
+    """Open/short/load with an ideal open and a defined short and load: exact for any linear two-port.
+
+    With an open alone, its admittance is taken off.
+    """
+    if len(standards) == 1:
+        return 1 / (1 / z - 1 / standards[0][0])
     (zo, _), (zs, short), (zl, load) = standards
     s, l = short[0] + 1j * w * short[1], load[0] + 1j * w * load[1]
     return s + (l - s) * (z - zs) * (zl - zo) / ((z - zo) * (zl - zs))

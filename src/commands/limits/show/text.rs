@@ -4,7 +4,7 @@ use crate::diagnostic::{printable, wrap};
 use crate::limits::{Acceptance, Bound, Conditions, DecisionRuleKind, Limits, Retest, aql_text};
 use crate::quantity::{NO_VALUE, shortest};
 use crate::readings::{Equivalent, Place};
-use comfy_table::{CellAlignment, ContentArrangement, Table, presets};
+use comfy_table::{CellAlignment, ContentArrangement, LineStyle, Table, presets};
 
 const WIDTH: usize = 80;
 /// Columns of the labels on the left.
@@ -44,7 +44,7 @@ fn labelled(label: &str, text: &str) -> String {
 fn table(limits: &Limits) -> String {
     let mut table = Table::new();
     table
-        .load_style(presets::UTF8_HORIZONTAL_ONLY)
+        .load_style(presets::UTF8_HORIZONTAL_ONLY.row_separator(LineStyle::none()))
         .set_content_arrangement(ContentArrangement::Dynamic)
         .set_width(80)
         .set_header(["characteristic", "at", "lower", "upper", "nominal", "class"]);
@@ -56,7 +56,8 @@ fn table(limits: &Limits) -> String {
             column.set_cell_alignment(CellAlignment::Right);
         }
     }
-    table.to_string()
+    let lines = table.lines().map(|line| line.trim_end().to_owned());
+    lines.collect::<Vec<_>>().join("\n")
 }
 
 fn row(bound: &Bound) -> [String; 6] {
@@ -91,11 +92,14 @@ fn sections(limits: &Limits) -> Vec<(&'static str, String)> {
     }
     for rule in &limits.outlier_rules {
         let of = rule.of.join(", ");
-        let most = rule.allowed;
-        let alpha = rule.alpha;
+        let parts = match rule.allowed {
+            0 => "a part is an outlier".to_owned(),
+            1 => "more than one part is an outlier".to_owned(),
+            most => format!("more than {most} parts are outliers"),
+        };
         let text = format!(
-            "held where more than {most} parts are outliers of one of {of} (generalized ESD, \
-             alpha {alpha})"
+            "held where {parts} of {of} (generalized ESD, alpha {})",
+            rule.alpha
         );
         sections.push(("Lot rule", text));
     }

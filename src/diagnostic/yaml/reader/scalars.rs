@@ -83,7 +83,11 @@ impl Reader<'_> {
                 "path_not_safe",
                 format!("{found} for {what}"),
                 "a path inside its folder, with `/` between steps",
-                Some("write for example `compensation/open.csv`".to_owned()),
+                Some(if text.ends_with('/') {
+                    "leave the last `/` out".to_owned()
+                } else {
+                    "write for example `sweeps` or `compensation/open.csv`".to_owned()
+                }),
             );
             return None;
         }
@@ -180,9 +184,31 @@ impl Reader<'_> {
             return Some(value);
         }
         let found = format!("{} for {what}", shown(node));
-        let hint = (dimension == Dimension::Ratio && value > 1.0 && !has_percent(node))
+        let hint = (dimension == Dimension::Ratio && !has_sign(node))
             .then(|| "write the sign `%` if percent was meant".to_owned());
         self.fault(node.span, "impossible_value", found, expected, hint);
+        None
+    }
+
+    /// A share with its sign, `%` or `ppm`: a bare 0.2 may be meant as 0.2 or as 0.2 %.
+    pub fn share_if(
+        &mut self,
+        node: &Node,
+        what: &str,
+        possible: impl Fn(f64) -> bool,
+        expected: &str,
+    ) -> Option<f64> {
+        let value = self.quantity_if(node, what, Dimension::Ratio, possible, expected)?;
+        if has_sign(node) {
+            return Some(value);
+        }
+        self.fault(
+            node.span,
+            "share_without_sign",
+            format!("{} for {what}, without the sign of a share", shown(node)),
+            format!("{expected}, with its sign"),
+            Some("write `%` or `ppm` behind the number".to_owned()),
+        );
         None
     }
 
@@ -310,8 +336,10 @@ pub fn shown(node: &Node) -> String {
     }
 }
 
-fn has_percent(node: &Node) -> bool {
-    matches!(&node.shape, Shape::Text { text, .. } if text.contains('%'))
+/// Whether a share says what it is a share of: hundred or a million.
+fn has_sign(node: &Node) -> bool {
+    let sign = |text: &str| text.contains(['%', '‰', '％']) || text.to_lowercase().contains("pp");
+    matches!(&node.shape, Shape::Text { text, .. } if sign(text))
 }
 
 fn number_hint(shape: &Shape) -> Option<String> {

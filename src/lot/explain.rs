@@ -1,0 +1,279 @@
+//! The chain from numbers to verdict: each rule with its source, what went in, what came out, so
+//! that a person with a calculator can follow.
+
+use super::{ConditionSection, LotVerdict, Plan, PlanClass, Sampling, Statistics};
+use crate::limits::{Bound, DecisionRuleKind, Limits};
+use crate::quantity::engineering;
+use indexmap::IndexMap;
+use serde::{Deserialize, Serialize};
+
+/// One step of the chain.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct Step {
+    /// What is decided: `code letter`, `class A`, `capacitance@1kHz` …
+    pub about: String,
+    pub rule: String,
+    /// Document and clause or table.
+    pub source: String,
+    /// What went in.
+    pub numbers: String,
+    /// What came out.
+    pub result: String,
+}
+
+fn step(about: &str, rule: &str, source: &str, numbers: String, result: String) -> Step {
+    Step {
+        about: about.to_owned(),
+        rule: rule.to_owned(),
+        source: source.to_owned(),
+        numbers,
+        result,
+    }
+}
+
+/// What the chain is made from.
+pub(super) struct Decided<'a> {
+    pub(super) limits: &'a Limits,
+    pub(super) plan: &'a Plan,
+    pub(super) sampling: &'a Sampling,
+    pub(super) statistics: &'a IndexMap<String, Statistics>,
+    pub(super) conditions: &'a [ConditionSection],
+    pub(super) verdict: LotVerdict,
+}
+
+/// The chain, in the order in which the lot is judged.
+pub(super) fn explain(decided: &Decided) -> Vec<Step> {
+    let mut steps = conditions(decided.conditions);
+    steps.push(decision_rule(decided.limits));
+    steps.extend(code_letter(decided.plan));
+    for (name, class) in &decided.plan.classes {
+        steps.push(plan_of(decided.plan, name, class));
+        steps.extend(count(decided.sampling, name));
+    }
+    steps.extend(capability(decided));
+    steps.extend(outliers(decided));
+    steps.push(precedence(decided));
+    steps
+}
+
+fn conditions(conditions: &[ConditionSection]) -> Vec<Step> {
+    conditions
+        .iter()
+        .map(|c| {
+            let result = if c.met {
+                "met"
+            } else {
+                "not met: holds the lot"
+            };
+            step(
+                &c.name,
+                "the measurement is as demanded",
+                "limit file, station file",
+                format!("demanded: {}; found: {}", c.demanded, c.found),
+                result.to_owned(),
+            )
+        })
+        .collect()
+}
+
+fn decision_rule(limits: &Limits) -> Step {
+    let k = limits.decision_rule.coverage_factor;
+    let (rule, source, result) = match limits.decision_rule.kind {
+        DecisionRuleKind::SimpleAcceptance => (
+            "a reading conforms inside its limits",
+            "JCGM 106:2012, 8.2",
+            "no guard band".to_owned(),
+        ),
+        DecisionRuleKind::GuardedAcceptance => (
+            "a reading conforms at least k u inside its limits, is undecided nearer to them",
+            "JCGM 106:2012, 8.3.2",
+            format!("guard band of {k} standard uncertainties inside each limit"),
+        ),
+        DecisionRuleKind::GuardedRejection => (
+            "a reading is nonconforming more than k u outside its limits, undecided up to there",
+            "JCGM 106:2012, 8.3.3",
+            format!("guard band of {k} standard uncertainties outside each limit"),
+        ),
+    };
+    step("each part", rule, source, format!("k = {k}"), result)
+}
+
+fn code_letter(plan: &Plan) -> Option<Step> {
+    let letter = plan.code_letter.as_ref()?;
+    let level = plan.level.as_deref().unwrap_or("II");
+    Some(step(
+        "code letter",
+        "lot size and inspection level give the code letter",
+        "ISO 2859-1:1999, Table 1",
+        format!("lot size {}, level {level}", plan.lot_size),
+        letter.clone(),
+    ))
+}
+
+fn plan_of(plan: &Plan, name: &str, class: &PlanClass) -> Step {
+    let result = format!("n {}, Ac {}, Re {}", class.n, class.ac, class.re);
+    match (class.aql, &class.code_letter, &plan.code_letter) {
+        (Some(aql), Some(used), Some(letter)) => {
+            let arrow = if used == letter {
+                String::new()
+            } else {
+                format!(", by the arrow to letter {used}")
+            };
+            let whole = if class.n >= plan.lot_size {
+                ": the whole lot"
+            } else {
+                ""
+            };
+            step(
+                &format!("class {name}"),
+                "code letter, AQL and severity give the plan",
+                plan.source
+                    .split(", code letter")
+                    .next()
+                    .unwrap_or(&plan.source),
+                format!("letter {letter}{arrow}, AQL {aql} %"),
+                format!("{result}{whole}"),
+            )
+        }
+        _ => step(
+            &format!("class {name}"),
+            "the limit file gives the plan",
+            &plan.source,
+            format!("lot size {}", plan.lot_size),
+            result,
+        ),
+    }
+}
+
+fn count(sampling: &Sampling, name: &str) -> Option<Step> {
+    let class = sampling.classes.get(name)?;
+    let (d, e) = (class.nonconforming, class.undecided);
+    let result = match class.verdict {
+        LotVerdict::Reject => format!("d {d} ≥ Re {}: reject", class.re),
+        LotVerdict::Accept => format!("d + e {} ≤ Ac {}: accept", d + e, class.ac),
+        LotVerdict::Hold => format!(
+            "d {d} < Re {}, d + e {} > Ac {}: not decided",
+            class.re,
+            d + e,
+            class.ac
+        ),
+    };
+    Some(step(
+        &format!("class {name}"),
+        "d nonconforming and e undecided parts of the first n: reject from d ≥ Re, accept up to d + e ≤ Ac",
+        "ISO 2859-1:1999, 11.1.1; undecided parts counted both ways",
+        format!("n {}, d {d}, e {e}", class.n),
+        result,
+    ))
+}
+
+fn capability(decided: &Decided) -> Vec<Step> {
+    let mut steps = Vec::new();
+    for rule in &decided.limits.capability_rules {
+        for key in &rule.of {
+            let (Some(s), Some(bound)) = (
+                decided.statistics.get(key),
+                decided.limits.bounds.iter().find(|b| b.key == *key),
+            ) else {
+                continue;
+            };
+            let within = rule.index.starts_with('c');
+            let (symbol, sigma) = if within {
+                ("σ within", s.sigma_within)
+            } else {
+                ("s", s.standard_deviation)
+            };
+            let formula = match rule.index.as_str() {
+                "cp" | "pp" => "(U − L) / 6σ",
+                _ => "the smaller of (U − mean) / 3σ and (mean − L) / 3σ",
+            };
+            let result = match s.index(&rule.index) {
+                Some(index) if index >= rule.min => format!("{index:.3} ≥ {}", rule.min),
+                Some(index) => format!("{index:.3} < {}: holds the lot", rule.min),
+                None => "cannot be had: holds the lot".to_owned(),
+            };
+            steps.push(step(
+                key,
+                &format!(
+                    "{} = {formula}, at least {}",
+                    rule.index.to_uppercase(),
+                    rule.min
+                ),
+                "ISO 22514-2:2017, 7; σ within by the mean moving range over 1.128 (ISO 7870-2)",
+                format!(
+                    "{}, mean {}, {symbol} {}",
+                    limits_of(bound),
+                    number(s.mean, bound),
+                    number(sigma, bound)
+                ),
+                result,
+            ));
+        }
+    }
+    steps
+}
+
+fn limits_of(bound: &Bound) -> String {
+    format!(
+        "L {}, U {}",
+        number(bound.lower, bound),
+        number(bound.upper, bound)
+    )
+}
+
+fn number(value: Option<f64>, bound: &Bound) -> String {
+    value.map_or("–".to_owned(), |v| {
+        engineering(v, bound.characteristic.unit(), 5)
+    })
+}
+
+fn outliers(decided: &Decided) -> Vec<Step> {
+    let mut steps = Vec::new();
+    for rule in &decided.limits.outlier_rules {
+        for key in &rule.of {
+            let Some(s) = decided.statistics.get(key) else {
+                continue;
+            };
+            let found = s.outliers.len() as u64;
+            let which = if found == 0 {
+                "none".to_owned()
+            } else {
+                s.outliers.join(", ")
+            };
+            let result = if found > rule.allowed {
+                format!("{which}: holds the lot")
+            } else {
+                which
+            };
+            steps.push(step(
+                key,
+                &format!(
+                    "at most {} outliers by the generalized extreme studentized deviate test",
+                    rule.allowed
+                ),
+                "Rosner 1983; NIST/SEMATECH e-Handbook 1.3.5.17.3",
+                format!("{} values, significance {}", s.n, rule.alpha),
+                result,
+            ));
+        }
+    }
+    steps
+}
+
+fn precedence(decided: &Decided) -> Step {
+    let unmet = decided.conditions.iter().filter(|c| !c.met).count();
+    let classes: Vec<String> = decided
+        .sampling
+        .classes
+        .iter()
+        .map(|(name, c)| format!("class {name} {}", c.verdict.name()))
+        .collect();
+    step(
+        "the lot",
+        "a condition not met holds; otherwise a class that rejects, rejects; otherwise any other reason holds; otherwise accepted",
+        "this program's rule, docs/operator.md",
+        format!("{unmet} conditions not met; {}", classes.join(", ")),
+        decided.verdict.name().to_owned(),
+    )
+}

@@ -1,0 +1,174 @@
+//! The minimum covariance determinant: the h points of which the covariance has the smallest determinant.
+
+use super::scatter::Scatter;
+use crate::statistics::Undefined;
+use crate::statistics::random::Random;
+use crate::statistics::summary::median;
+
+/// Random starts, and how many of them are followed to their end; Rousseeuw & Van Driessen (1999) use the same numbers.
+const STARTS: usize = 500;
+const FOLLOWED: usize = 10;
+
+/// Concentration steps of every start.
+const FIRST_STEPS: usize = 2;
+
+/// Each step lowers the determinant or ends; more than this many would mean a cycle of equals.
+const STEPS_MAX: usize = 200;
+
+/// The subset found and its scatter, in the units of the points given.
+#[derive(Debug, Clone)]
+pub struct MinimumCovariance {
+    /// Indices of the h points, ascending.
+    pub subset: Vec<usize>,
+    /// ln det of their covariance (divisor h − 1).
+    pub ln_determinant: f64,
+    /// Squared Mahalanobis distances of all points from the subset's mean by its covariance, uncorrected.
+    pub squared_distances: Vec<f64>,
+}
+
+/// Finds h of the points with the smallest covariance determinant: FAST-MCD of Rousseeuw & Van Driessen (1999), from random
+/// starts of that seed.
+///
+/// The result is a local optimum, for the sizes of a sample nearly always the global one.
+///
+/// # Errors
+/// [`Undefined::TooFewValues`] for h below p + 1, [`Undefined::OutOfRange`] for points of unequal dimension, none, or h above their number;
+/// [`Undefined::NotFinite`]; [`Undefined::Collinear`] where variables depend linearly on one another.
+pub fn minimum_covariance_determinant(
+    points: &[Vec<f64>],
+    h: usize,
+    seed: u64,
+) -> Result<MinimumCovariance, Undefined> {
+    check(points, h)?;
+    let (scaled, ln_scales) = standardised(points)?;
+    let mut random = Random::seeded(seed);
+    let mut starts: Vec<(f64, Vec<usize>)> = (0..STARTS)
+        .filter_map(|_| {
+            let scatter = random_scatter(&scaled, &mut random)?;
+            concentrate(&scaled, h, scatter, FIRST_STEPS)
+        })
+        .collect();
+    starts.sort_by(|a, b| a.0.total_cmp(&b.0));
+    starts.dedup_by(|a, b| a.1 == b.1);
+    let best = starts
+        .into_iter()
+        .take(FOLLOWED)
+        .filter_map(|(_, subset)| {
+            let scatter = Scatter::of(&scaled, &subset)?;
+            concentrate(&scaled, h, scatter, STEPS_MAX)
+        })
+        .min_by(|a, b| a.0.total_cmp(&b.0));
+    let (ln_determinant, subset) = best.ok_or(Undefined::Collinear)?;
+    let scatter = Scatter::of(&scaled, &subset).ok_or(Undefined::Collinear)?;
+    Ok(MinimumCovariance {
+        subset,
+        ln_determinant: ln_determinant + 2.0 * ln_scales,
+        squared_distances: scaled.iter().map(|x| scatter.squared_distance(x)).collect(),
+    })
+}
+
+fn check(points: &[Vec<f64>], h: usize) -> Result<(), Undefined> {
+    let p = points.first().map_or(0, Vec::len);
+    if p == 0 || points.iter().any(|x| x.len() != p) {
+        return Err(Undefined::OutOfRange {
+            argument: "points",
+            expected: "points of one dimension, at least one",
+        });
+    }
+    if points.iter().flatten().any(|x| !x.is_finite()) {
+        return Err(Undefined::NotFinite);
+    }
+    if h < p + 1 {
+        return Err(Undefined::TooFewValues {
+            needed: (p + 1) as u64,
+            found: h as u64,
+        });
+    }
+    if h > points.len() {
+        return Err(Undefined::OutOfRange {
+            argument: "subset",
+            expected: "at most the number of points",
+        });
+    }
+    Ok(())
+}
+
+/// Each variable from its median in units of its MAD, and the sum of the ln of those units.
+///
+/// The determinant's minimum does not depend on units; the arithmetic does.
+fn standardised(points: &[Vec<f64>]) -> Result<(Vec<Vec<f64>>, f64), Undefined> {
+    let mut scaled = vec![Vec::new(); points.len()];
+    let mut ln_scales = 0.0;
+    let p = points.first().map_or(0, Vec::len);
+    for j in 0..p {
+        let column: Vec<f64> = points.iter().filter_map(|x| x.get(j)).copied().collect();
+        let centre = median(&column)?;
+        let deviations: Vec<f64> = column.iter().map(|x| (x - centre).abs()).collect();
+        let mad = median(&deviations)?;
+        // Half of the values equal: some h points lie in a plane.
+        if mad == 0.0 {
+            return Err(Undefined::Collinear);
+        }
+        ln_scales += mad.ln();
+        for (row, x) in scaled.iter_mut().zip(&column) {
+            row.push((x - centre) / mad);
+        }
+    }
+    Ok((scaled, ln_scales))
+}
+
+/// Scatter of p + 1 random points, with further ones where those lie in a plane.
+fn random_scatter(points: &[Vec<f64>], random: &mut Random) -> Option<Scatter> {
+    let n = points.len();
+    let p = points.first()?.len();
+    let mut order: Vec<usize> = (0..n).collect();
+    for drawn in 0..n {
+        let other = drawn + random.below(n - drawn);
+        order.swap(drawn, other);
+        if drawn >= p
+            && let Some(scatter) = Scatter::of(points, order.get(..=drawn)?)
+        {
+            return Some(scatter);
+        }
+    }
+    None
+}
+
+/// Concentration steps: the h points nearest by the scatter, their scatter, and again; the ln determinant and the subset.
+fn concentrate(
+    points: &[Vec<f64>],
+    h: usize,
+    start: Scatter,
+    steps: usize,
+) -> Option<(f64, Vec<usize>)> {
+    let mut scatter = start;
+    let mut held: Option<(f64, Vec<usize>)> = None;
+    for _ in 0..steps {
+        let subset = nearest(points, h, &scatter);
+        scatter = Scatter::of(points, &subset)?;
+        let ln_determinant = scatter.ln_determinant();
+        let settled = held.as_ref().is_some_and(|(_, before)| *before == subset);
+        held = Some((ln_determinant, subset));
+        if settled {
+            break;
+        }
+    }
+    held
+}
+
+/// Indices of the h points of smallest distance, ascending; of equals the first.
+fn nearest(points: &[Vec<f64>], h: usize, scatter: &Scatter) -> Vec<usize> {
+    let mut distances: Vec<(f64, usize)> = points
+        .iter()
+        .enumerate()
+        .map(|(i, x)| (scatter.squared_distance(x), i))
+        .collect();
+    let order = |a: &(f64, usize), b: &(f64, usize)| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1));
+    if h < distances.len() {
+        distances.select_nth_unstable_by(h, order);
+        distances.truncate(h);
+    }
+    let mut subset: Vec<usize> = distances.into_iter().map(|(_, i)| i).collect();
+    subset.sort_unstable();
+    subset
+}

@@ -1,0 +1,151 @@
+//! The JSON Schemas accept what the readers accept, and refuse what a schema can tell.
+
+use super::{FAULTY, LIMITS, LOT, STATION, with};
+use jsonschema::Validator;
+use serde_json::Value;
+use std::fs;
+use std::path::{Path, PathBuf};
+
+fn validator(schema: &str) -> Validator {
+    let schema: Value = serde_json::from_str(schema).expect("JSON");
+    assert_eq!(
+        schema["$schema"],
+        "https://json-schema.org/draft/2020-12/schema"
+    );
+    jsonschema::draft202012::meta::validate(&schema).expect("a valid schema");
+    jsonschema::draft202012::new(&schema).expect("a usable schema")
+}
+
+fn value(text: &str) -> Value {
+    serde_yaml::from_str(text).expect("YAML")
+}
+
+fn accepts(validator: &Validator, name: &str, text: &str) {
+    let value = value(text);
+    let errors: Vec<_> = validator
+        .iter_errors(&value)
+        .map(|e| format!("{}: {e}", e.instance_path()))
+        .collect();
+    assert!(errors.is_empty(), "{name}: {errors:#?}");
+}
+
+fn sample_files(folder: &Path) -> Vec<PathBuf> {
+    let entries = fs::read_dir(folder).unwrap_or_else(|e| panic!("{}: {e}", folder.display()));
+    let paths = entries.map(|entry| entry.expect("an entry").path());
+    let mut files: Vec<_> = paths
+        .filter(|p| p.extension().is_some_and(|e| e == "yaml"))
+        .collect();
+    files.sort();
+    assert!(!files.is_empty(), "{}", folder.display());
+    files
+}
+
+#[test]
+fn the_sample_files_are_valid_for_reader_and_schema() {
+    let limits = validator(reelgate::limits::SCHEMA);
+    for path in sample_files(Path::new("limits/parts")) {
+        let (name, text) = (
+            path.display().to_string(),
+            fs::read_to_string(&path).expect("text"),
+        );
+        reelgate::limits::read(&name, text.as_bytes()).unwrap_or_else(|f| panic!("{f}"));
+        accepts(&limits, &name, &text);
+    }
+    let station = validator(reelgate::station::SCHEMA);
+    for path in sample_files(Path::new("limits/stations")) {
+        let (name, text) = (
+            path.display().to_string(),
+            fs::read_to_string(&path).expect("text"),
+        );
+        reelgate::station::read(&name, text.as_bytes()).unwrap_or_else(|f| panic!("{f}"));
+        accepts(&station, &name, &text);
+    }
+    let lot = validator(reelgate::lot::SCHEMA);
+    for folder in fs::read_dir("sample-lots").expect("sample lots") {
+        let path = folder.expect("an entry").path().join("lot.yaml");
+        if path.exists() {
+            let (name, text) = (
+                path.display().to_string(),
+                fs::read_to_string(&path).expect("text"),
+            );
+            reelgate::lot::read(&name, text.as_bytes()).unwrap_or_else(|f| panic!("{f}"));
+            accepts(&lot, &name, &text);
+        }
+    }
+}
+
+#[test]
+fn the_full_shapes_are_valid() {
+    accepts(&validator(reelgate::limits::SCHEMA), "limits", LIMITS);
+    accepts(&validator(reelgate::station::SCHEMA), "station", STATION);
+    accepts(&validator(reelgate::lot::SCHEMA), "lot", LOT);
+}
+
+#[test]
+fn faulty_limit_files_are_refused() {
+    let limits = validator(reelgate::limits::SCHEMA);
+    let no_duplicates = with(FAULTY, "max: 6 mΩ, max: 7 mΩ", "max: 7 mΩ");
+    assert!(!limits.is_valid(&value(&no_duplicates)));
+    for (piece, by) in [
+        ("tolerance: ±10 %, class", "toleranse: ±10 %, class"),
+        ("nominal: 4.7 µF, ", ""),
+        ("tolerance: ±10 %, class", "class"),
+        ("tolerance: ±10 %", "tolerance: ±10 %, min: 4 µF"),
+        ("{at: 1 kHz, nominal", "{nominal"),
+        ("{max: 6 mΩ", "{at: 1 kHz, max: 6 mΩ"),
+        ("{at: 100 kHz, max: 0.40 Ω}", "{max: 0.40 Ω}"),
+        ("{at: 100 kHz,", "{at: 1 kHz, between: [1 kHz, 2 kHz],"),
+        ("[700 kHz, 4 MHz]", "[700 kHz]"),
+        ("A: 0.65", "A: 0.7"),
+        ("level: II", "level: IV"),
+        ("revision: 3\n", ""),
+        (
+            "  attributes: {",
+            "  fixed: {sample: 8, accept: 0}\n  attributes: {",
+        ),
+        ("{of: capacitance,", "{of: capacitanse,"),
+        ("allowed: 0", "allowed: 0.5"),
+        ("{kind: guarded_acceptance", "{kind: simple_acceptance"),
+        ("kind: guarded_acceptance", "kind: guarded"),
+        ("unmeasured: 1", "unmeasured: -1"),
+        ("part: RG-0475-X7R", "part: RG/0475"),
+    ] {
+        let text = with(LIMITS, piece, by);
+        assert!(!limits.is_valid(&value(&text)), "{by}");
+        assert!(
+            reelgate::limits::read("x.yaml", text.as_bytes()).is_err(),
+            "{by}"
+        );
+    }
+}
+
+#[test]
+fn faulty_station_and_lot_files_are_refused() {
+    let station = validator(reelgate::station::SCHEMA);
+    for (piece, by) in [
+        ("method: series_reference", "method: direct"),
+        (", b_im: \"ChB Im (V)\"", ""),
+        ("frequency: \"Frequency (Hz)\", ", ""),
+        (
+            "{sweep: compensation/load.csv, resistance: 1.000 Ω}",
+            "load.csv",
+        ),
+        ("open:  compensation/open.csv", "open:  ../open.csv"),
+        ("due: 2027-03-02", "due: soon"),
+        ("checked: 2026-10-05T07:50:00+02:00, ", ""),
+        ("srf: 0.3 %", "q: 0.3 %"),
+    ] {
+        assert!(!station.is_valid(&value(&with(STATION, piece, by))), "{by}");
+    }
+    let lot = validator(reelgate::lot::SCHEMA);
+    for (piece, by) in [
+        ("quantity: 4000", "quantity: 0"),
+        ("quantity: 4000", "quantity: \"4000\""),
+        ("station: BENCH-2\n", ""),
+        ("station: BENCH-2\n", "staton: BENCH-2\n"),
+        ("last_heat: 2026-07-01", "last_heat: last week"),
+        ("sweeps: sweeps", "sweeps: /sweeps"),
+    ] {
+        assert!(!lot.is_valid(&value(&with(LOT, piece, by))), "{by}");
+    }
+}
