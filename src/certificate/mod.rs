@@ -172,6 +172,7 @@ fn layout(
     section::distributions::distributions(&mut flow, &all);
     flow.new_page();
     section::order::order(&mut flow, &all, record.parts.len());
+    section::plan::plan(&mut flow, record);
     section::statistics::statistics(&mut flow, &all);
     flow.new_page();
     section::parts::parts(&mut flow, record, &all);

@@ -6,7 +6,7 @@
 use super::Sources;
 use super::figures::{ABSENT, index, plain, significant};
 use super::section::{
-    Characteristic, answer, characteristics, integrity, lot_word, part_word, reasons, station,
+    Characteristic, answer, characteristics, integrity, lot_word, part_word, plan, reasons, station,
 };
 use crate::diagnostic::Note;
 use crate::record::{self, LotRecord, PartRecord, ReadingRecord};
@@ -23,6 +23,15 @@ pub fn plain_text(record: &LotRecord, sources: &Sources) -> String {
     ));
     for note in &record.reasons {
         out.note("Because", note);
+    }
+    if !record.explanation.is_empty() {
+        out.heading("How the verdict follows");
+    }
+    for step in &record.explanation {
+        out.line(&format!(
+            "{}: {}. {}. Result: {}. Source: {}",
+            step.about, step.rule, step.numbers, step.result, step.source
+        ));
     }
     out.heading("Lot");
     out.facts(answer::identity(record));
@@ -118,6 +127,17 @@ fn sampling(out: &mut Text, record: &LotRecord) {
             class.n, class.ac, class.re, class.nonconforming, class.undecided
         ));
         out.line(&words.join(", "));
+        if let Some(oc) = &class.operating_characteristic {
+            out.line(&format!("  Operating characteristic: {}", plan::words(oc)));
+        }
+        for v in &class.variables {
+            out.line(&format!(
+                "  By variables, {}: {}; {}",
+                v.key,
+                lot_word(v.verdict),
+                v.why
+            ));
+        }
     }
     out.line(&answer::plan(record));
 }

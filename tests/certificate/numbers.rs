@@ -267,3 +267,30 @@ fn plain_text_cannot_act_on_a_terminal() {
     }
     assert!(text.contains("<U+001B>[31mred") && text.contains("株式会社"));
 }
+
+#[test]
+fn the_chain_the_plan_and_what_variables_found_are_printed() {
+    let case = lots::rejected();
+    let text = text_of(&case);
+    let flat = |t: &str| t.split_whitespace().collect::<String>();
+    let bare = flat(&text);
+    for step in &case.record.explanation {
+        assert!(bare.contains(&flat(&step.about)), "{}", step.about);
+    }
+    assert!(text.contains("Operating characteristic of the plan"));
+    for (name, class) in &case.record.sampling.classes {
+        let title = format!("Class {name}: n {}, Ac {}", class.n, class.ac);
+        assert!(text.contains(&title), "{title}");
+        let oc = class.operating_characteristic.as_ref().expect("a curve");
+        for share in [oc.producers_risk_quality, oc.consumers_risk_quality] {
+            let shown = text
+                .split_whitespace()
+                .filter_map(|w| w.parse::<f64>().ok())
+                .any(|v| (v / (share * 100.0) - 1.0).abs() < 0.005);
+            assert!(shown, "class {name}: {share}");
+        }
+    }
+    let case = lots::hostile();
+    let bare = flat(&text_of(&case));
+    assert!(bare.contains("accept,byvariables") && bare.contains("24.3"));
+}

@@ -8,7 +8,7 @@ use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::plot::strip::strip;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
-use crate::record::LotRecord;
+use crate::record::{ClassSection, LotRecord};
 
 const WORD: Style = Style::bold(42.0);
 const SENTENCE: Style = Style::regular(12.5);
@@ -191,7 +191,15 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
         Column::new("Class alone", Align::Left, Span::Share(1.0)),
     ]);
     for (name, class) in &s.classes {
-        let over = class.nonconforming > class.ac;
+        let over = class.nonconforming > class.ac && !class.by_variables;
+        // Where variables decided, acceptance numbers did not.
+        let decisive = |number: u64| {
+            if class.by_variables {
+                ABSENT.to_owned()
+            } else {
+                number.to_string()
+            }
+        };
         let mut count = Cell::text(class.nonconforming.to_string());
         if over {
             count = count.bold().ink(NONCONFORMING);
@@ -206,11 +214,11 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
                     .unwrap_or_else(|| ABSENT.to_owned()),
             ),
             Cell::text(class.n.to_string()),
-            Cell::text(class.ac.to_string()),
-            Cell::text(class.re.to_string()),
+            Cell::text(decisive(class.ac)),
+            Cell::text(decisive(class.re)),
             count,
             Cell::text(class.undecided.to_string()),
-            Cell::text(lot_word(class.verdict))
+            Cell::text(by(class))
                 .mark(Some(lot_mark(class.verdict)))
                 .ink(lot_ink(class.verdict)),
         ]);
@@ -218,6 +226,16 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
     table.set(flow);
     flow.y += 4.0;
     flow.paragraph_of(&plan(record), SMALL, SMALL_LEADING);
+}
+
+/// A class's own verdict, with how it was had where that is not by counting.
+fn by(class: &ClassSection) -> String {
+    let word = lot_word(class.verdict);
+    if class.by_variables {
+        format!("{word}, by variables")
+    } else {
+        word.to_owned()
+    }
 }
 
 /// The plan and the counts in words.

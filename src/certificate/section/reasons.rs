@@ -4,7 +4,7 @@ use super::{characteristics, part_anchor, part_ink, part_mark, part_word};
 use crate::certificate::canvas::Area;
 use crate::certificate::figures::ABSENT;
 use crate::certificate::flow::{BODY, BODY_LEADING, Flow, SMALL};
-use crate::certificate::ink::{ACCEPT, NONCONFORMING};
+use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::width;
 use crate::diagnostic::Note;
@@ -22,6 +22,7 @@ pub(in crate::certificate) fn reasons(flow: &mut Flow, record: &LotRecord) {
         note(flow, reason, &names);
     }
     not_conforming(flow, record);
+    chain(flow, record);
     if !record.warnings.is_empty() {
         flow.subheading("Warnings that decided nothing", 30.0);
         for warning in &record.warnings {
@@ -78,6 +79,32 @@ fn named_parts<'n>(text: &str, names: &BTreeSet<&'n str>) -> Vec<&'n str> {
         };
     }
     out
+}
+
+/// The chain from numbers to verdict.
+fn chain(flow: &mut Flow, record: &LotRecord) {
+    if record.explanation.is_empty() {
+        return;
+    }
+    flow.subheading("How the verdict follows", 60.0);
+    let mut table = Table::new(vec![
+        Column::new("About", Align::Left, Span::Share(0.9)),
+        Column::new("Rule", Align::Left, Span::Share(1.5)),
+        Column::new("Numbers", Align::Left, Span::Share(1.5)),
+        Column::new("Result", Align::Left, Span::Share(1.0)),
+        Column::new("Source", Align::Left, Span::Share(1.1)),
+    ]);
+    table.size = 8.6;
+    for step in &record.explanation {
+        table.row(vec![
+            Cell::text(step.about.clone()).bold(),
+            Cell::text(step.rule.clone()),
+            Cell::text(step.numbers.clone()),
+            Cell::text(step.result.clone()),
+            Cell::text(step.source.clone()).ink(QUIET),
+        ]);
+    }
+    table.set(flow);
 }
 
 /// What is wrong with each part that is not conforming.
