@@ -18,9 +18,11 @@ mod results_csv;
 mod section;
 mod table;
 mod text;
+mod twin;
 mod typeface;
 
 pub use paper::Paper;
+pub use twin::plain_text;
 
 use crate::diagnostic::Note;
 use crate::record::{self, LotRecord, PartVerdict};

@@ -5,7 +5,7 @@ use crate::diagnostic::Note;
 use crate::limits::{Limits, Retest, Window};
 use crate::quantity::engineering;
 use crate::readings::{
-    self, AgeingError, Budget, Characteristic, Extremes, Place, Referral, Request,
+    self, AgeingError, Budget, Characteristic, Extremes, Place, Reader, Referral, Request,
 };
 use crate::sweep::{Attempt, Sweep};
 use indexmap::IndexMap;
@@ -85,6 +85,7 @@ pub fn judge_try(
         .and_then(|drive| drive_fault(drive, limits))
         .into_iter()
         .collect();
+    let reader = Reader::new(sweep, budget);
     let mut readings = IndexMap::new();
     for bound in &limits.bounds {
         let request = Request {
@@ -92,7 +93,7 @@ pub fn judge_try(
             place: bound.place,
             equivalent: limits.conditions.equivalent,
         };
-        let mut extremes = readings::read(sweep, &request, budget);
+        let mut extremes = reader.read(&request);
         let mut measured = None;
         if bound.characteristic == Characteristic::Capacitance {
             (extremes, measured) = referred(extremes, limits, age);

@@ -172,7 +172,10 @@ fn takes(characteristic: Characteristic) -> (bool, bool) {
         Characteristic::Capacitance | Characteristic::DissipationFactor => (true, false),
         Characteristic::Esr | Characteristic::Impedance => (true, true),
         Characteristic::EsrMinimum => (false, true),
-        Characteristic::Srf | Characteristic::Esl => (false, false),
+        Characteristic::Srf
+        | Characteristic::Esl
+        | Characteristic::FittedCapacitance
+        | Characteristic::FittedResistance => (false, false),
     }
 }
 
@@ -228,7 +231,7 @@ fn misplaced_hint(characteristic: Characteristic, word: &str) -> &'static str {
         (Characteristic::EsrMinimum, _) => {
             "to bound the ESR at a frequency, use `esr`; to say where to look, use `between`"
         }
-        (Characteristic::Srf | Characteristic::Esl, _) => "delete it: the whole sweep is looked at",
+        (c, _) if takes(c) == (false, false) => "delete it: the whole sweep is looked at",
         _ => "give one frequency with `at`; several in a list of bounds",
     }
 }
@@ -382,11 +385,12 @@ fn value(
 /// The dimension of a characteristic.
 pub fn dimension(characteristic: Characteristic) -> Dimension {
     match characteristic {
-        Characteristic::Capacitance => Dimension::Capacitance,
+        Characteristic::Capacitance | Characteristic::FittedCapacitance => Dimension::Capacitance,
         Characteristic::DissipationFactor => Dimension::Ratio,
-        Characteristic::Esr | Characteristic::Impedance | Characteristic::EsrMinimum => {
-            Dimension::Resistance
-        }
+        Characteristic::Esr
+        | Characteristic::Impedance
+        | Characteristic::EsrMinimum
+        | Characteristic::FittedResistance => Dimension::Resistance,
         Characteristic::Srf => Dimension::Frequency,
         Characteristic::Esl => Dimension::Inductance,
     }

@@ -17,6 +17,10 @@ pub enum Characteristic {
     Srf,
     /// Equivalent series inductance in H.
     Esl,
+    /// Series capacitance in F at 1 kHz of the fitted equivalent circuit's capacitive branch.
+    FittedCapacitance,
+    /// Frequency-independent series resistance R0 in Ω of the fitted equivalent circuit.
+    FittedResistance,
 }
 
 /// Where in frequency a characteristic is read.
@@ -39,8 +43,8 @@ pub enum Equivalent {
 }
 
 impl Characteristic {
-    /// The seven characteristics in the order documents list them.
-    pub const ALL: [Characteristic; 7] = [
+    /// The characteristics in the order documents list them.
+    pub const ALL: [Characteristic; 9] = [
         Characteristic::Capacitance,
         Characteristic::DissipationFactor,
         Characteristic::Esr,
@@ -48,6 +52,8 @@ impl Characteristic {
         Characteristic::EsrMinimum,
         Characteristic::Srf,
         Characteristic::Esl,
+        Characteristic::FittedCapacitance,
+        Characteristic::FittedResistance,
     ];
 
     /// The name in files: `capacitance`, `esr_minimum` …
@@ -60,6 +66,8 @@ impl Characteristic {
             Characteristic::EsrMinimum => "esr_minimum",
             Characteristic::Srf => "srf",
             Characteristic::Esl => "esl",
+            Characteristic::FittedCapacitance => "c_1khz",
+            Characteristic::FittedResistance => "r_0",
         }
     }
 
@@ -73,15 +81,20 @@ impl Characteristic {
             Characteristic::EsrMinimum => "ESR minimum",
             Characteristic::Srf => "SRF",
             Characteristic::Esl => "ESL",
+            Characteristic::FittedCapacitance => "fitted capacitance at 1 kHz",
+            Characteristic::FittedResistance => "fitted series resistance",
         }
     }
 
     /// The SI unit of a reading: `F`, `Ω`, `Hz`, `H`, or `1` for a ratio.
     pub fn unit(self) -> &'static str {
         match self {
-            Characteristic::Capacitance => "F",
+            Characteristic::Capacitance | Characteristic::FittedCapacitance => "F",
             Characteristic::DissipationFactor => "1",
-            Characteristic::Esr | Characteristic::Impedance | Characteristic::EsrMinimum => "Ω",
+            Characteristic::Esr
+            | Characteristic::Impedance
+            | Characteristic::EsrMinimum
+            | Characteristic::FittedResistance => "Ω",
             Characteristic::Srf => "Hz",
             Characteristic::Esl => "H",
         }
@@ -96,6 +109,7 @@ impl Characteristic {
                 | Characteristic::Esr
                 | Characteristic::EsrMinimum
                 | Characteristic::Srf
+                | Characteristic::FittedResistance
         )
     }
 }

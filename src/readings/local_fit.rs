@@ -150,7 +150,7 @@ impl LocalFit {
         {
             return None;
         }
-        let noise = noise(impedance);
+        let noise = noise_ratio(impedance);
         let capacitive: f64 = impedance.iter().map(|z| -z.im / z.norm()).sum();
         let (basis, least): (&'static [Term], usize) = if capacitive > 0.95 * n as f64 {
             (&CAPACITIVE, 2)
@@ -463,12 +463,12 @@ fn square_sum(a: &[f64]) -> f64 {
     product(a, a)
 }
 
-/// Noise of ln|Z| and of the phase in a stretch, from third differences of neighbouring points
-/// (median of absolute values: neither a smooth course nor a single jump counts as noise). Only
-/// the ratio matters, and it is kept between 1:10 and 10:1; too few points give 1:1.
-fn noise(impedance: &[Complex64]) -> [f64; 2] {
+/// Standard deviations of the noise of ln|Z| and of the phase (rad), from third differences of
+/// neighbouring points (median of absolute values: neither a smooth course nor a single jump counts
+/// as noise). `None` for too few points.
+pub(super) fn noise(impedance: &[Complex64]) -> Option<[f64; 2]> {
     if impedance.len() < 9 {
-        return [1.0, 1.0];
+        return None;
     }
     let steps: Vec<Complex64> = impedance.windows(2).map(|z| (z[1] / z[0]).ln()).collect();
     let differences = |part: fn(&Complex64) -> f64| -> f64 {
@@ -477,9 +477,15 @@ fn noise(impedance: &[Complex64]) -> [f64; 2] {
             .map(|s| (part(&s[2]) - 2.0 * part(&s[1]) + part(&s[0])).abs())
             .collect();
         let middle = all.len() / 2;
-        *all.select_nth_unstable_by(middle, f64::total_cmp).1
+        // 1.4826: median absolute value to standard deviation; 20 = 1² + 3² + 3² + 1².
+        1.4826 / 20f64.sqrt() * *all.select_nth_unstable_by(middle, f64::total_cmp).1
     };
-    let (magnitude, phase) = (differences(|s| s.re), differences(|s| s.im));
+    Some([differences(|s| s.re), differences(|s| s.im)])
+}
+
+/// The two relative to the larger one, kept between 1:10 and 10:1; 1:1 where nothing is known.
+fn noise_ratio(impedance: &[Complex64]) -> [f64; 2] {
+    let [magnitude, phase] = noise(impedance).unwrap_or([1.0, 1.0]);
     let largest = magnitude.max(phase);
     if !(largest > 0.0 && largest.is_finite()) {
         return [1.0, 1.0];

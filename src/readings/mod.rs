@@ -7,6 +7,7 @@ mod ageing;
 mod at_frequency;
 mod band;
 mod characteristic;
+pub mod circuit;
 mod esl;
 mod esr_minimum;
 mod local_fit;
@@ -19,71 +20,108 @@ pub use characteristic::{Characteristic, Equivalent, Place};
 pub use reading::{Extremes, Reading, Request, Value};
 pub use uncertainty::{Budget, Component, combined};
 
-use reading::Outcome;
-
+use crate::diagnostic::Note;
 use crate::sweep::Sweep;
+use circuit::CircuitFit;
+use reading::Outcome;
+use std::cell::OnceCell;
 
-/// Reads one characteristic from a sweep.
-///
-/// A value that the sweep does not hold is `Value::Missing` with a warning that says why; nothing
-/// is extrapolated.
-pub fn read(sweep: &Sweep, request: &Request, budget: &Budget) -> Extremes {
-    let reading = |outcome: Outcome| match outcome {
-        Ok(estimate) => estimate.into_reading(request.characteristic, budget),
-        Err(reading) => reading,
-    };
-    match estimate(sweep, request) {
-        (lowest, Some(highest)) => Extremes {
-            lowest: reading(lowest),
-            highest: reading(highest),
-        },
-        (single, None) => {
-            let reading = reading(single);
-            Extremes {
-                lowest: reading.clone(),
-                highest: reading,
+/// Reads characteristics from one sweep; what several of them share is computed once.
+#[derive(Debug, Clone)]
+pub struct Reader<'a> {
+    sweep: &'a Sweep,
+    budget: &'a Budget,
+    circuit: OnceCell<Result<CircuitFit, Note>>,
+}
+
+impl<'a> Reader<'a> {
+    #[allow(missing_docs)]
+    pub fn new(sweep: &'a Sweep, budget: &'a Budget) -> Reader<'a> {
+        Reader {
+            sweep,
+            budget,
+            circuit: OnceCell::new(),
+        }
+    }
+
+    /// Reads one characteristic.
+    ///
+    /// A value that the sweep does not hold is `Value::Missing` with a warning that says why;
+    /// nothing is extrapolated.
+    pub fn read(&self, request: &Request) -> Extremes {
+        let reading = |outcome: Outcome| match outcome {
+            Ok(estimate) => estimate.into_reading(request.characteristic, self.budget),
+            Err(reading) => reading,
+        };
+        match self.estimate(request) {
+            (lowest, Some(highest)) => Extremes {
+                lowest: reading(lowest),
+                highest: reading(highest),
+            },
+            (single, None) => {
+                let reading = reading(single);
+                Extremes {
+                    lowest: reading.clone(),
+                    highest: reading,
+                }
             }
         }
     }
-}
 
-/// The uncertainty budget of a reading, line by line; of the highest value where a band is read.
-///
-/// The root of the sum of the contributions' squares ([`combined`]) is the reading's standard
-/// uncertainty. Empty where there is no value, or where the station does not state what the value
-/// depends on.
-pub fn budget_table(sweep: &Sweep, request: &Request, budget: &Budget) -> Vec<Component> {
-    let (lowest, highest) = estimate(sweep, request);
-    highest
-        .unwrap_or(lowest)
-        .ok()
-        .and_then(|estimate| budget.components(request.characteristic, &estimate))
-        .map_or_else(Vec::new, |components| components.to_vec())
-}
+    /// The uncertainty budget of a reading, line by line; of the highest value where a band is read.
+    ///
+    /// The root of the sum of the contributions' squares ([`combined`]) is the reading's standard
+    /// uncertainty. Empty where there is no value, or where the station does not state what the
+    /// value depends on.
+    pub fn budget_table(&self, request: &Request) -> Vec<Component> {
+        let (lowest, highest) = self.estimate(request);
+        highest
+            .unwrap_or(lowest)
+            .ok()
+            .and_then(|estimate| self.budget.components(request.characteristic, &estimate))
+            .map_or_else(Vec::new, |components| components.to_vec())
+    }
 
-/// The estimate, or the lowest and the highest one over a band.
-fn estimate(sweep: &Sweep, request: &Request) -> (Outcome, Option<Outcome>) {
-    match (request.characteristic, request.place) {
-        (Characteristic::Esr | Characteristic::Impedance, Place::Between(from, to)) => {
-            let (lowest, highest) = band::read(sweep, request.characteristic, from, to);
-            (lowest, Some(highest))
-        }
-        (Characteristic::EsrMinimum, place) => (esr_minimum::read(sweep, place), None),
-        (Characteristic::Srf, _) => (srf::read(sweep), None),
-        (Characteristic::Esl, _) => (esl::read(sweep), None),
-        (characteristic, Place::At(frequency)) => (
-            at_frequency::read(sweep, characteristic, frequency, request.equivalent),
-            None,
-        ),
-        (characteristic, _) => (
-            Err(Reading::missing(
+    /// The equivalent circuit of the sweep, or why there is none.
+    pub fn circuit(&self) -> &Result<CircuitFit, Note> {
+        self.circuit.get_or_init(|| circuit::fit(self.sweep))
+    }
+
+    /// The estimate, or the lowest and the highest one over a band.
+    fn estimate(&self, request: &Request) -> (Outcome, Option<Outcome>) {
+        let sweep = self.sweep;
+        let single = match (request.characteristic, request.place) {
+            (Characteristic::Esr | Characteristic::Impedance, Place::Between(from, to)) => {
+                let (lowest, highest) = band::read(sweep, request.characteristic, from, to);
+                return (lowest, Some(highest));
+            }
+            (Characteristic::EsrMinimum, place) => esr_minimum::read(sweep, place),
+            (Characteristic::Srf, _) => srf::read(sweep),
+            (Characteristic::Esl, _) => esl::read(sweep),
+            (c @ (Characteristic::FittedCapacitance | Characteristic::FittedResistance), _) => {
+                circuit::read(sweep, self.circuit(), c)
+            }
+            (characteristic, Place::At(frequency)) => {
+                at_frequency::read(sweep, characteristic, frequency, request.equivalent)
+            }
+            (characteristic, _) => Err(Reading::missing(
                 "frequency_missing",
                 format!(
                     "{} is read at a frequency, and none was asked for",
                     characteristic.name()
                 ),
             )),
-            None,
-        ),
+        };
+        (single, None)
     }
+}
+
+/// Reads one characteristic from a sweep; see [`Reader::read`].
+pub fn read(sweep: &Sweep, request: &Request, budget: &Budget) -> Extremes {
+    Reader::new(sweep, budget).read(request)
+}
+
+/// The uncertainty budget of one reading; see [`Reader::budget_table`].
+pub fn budget_table(sweep: &Sweep, request: &Request, budget: &Budget) -> Vec<Component> {
+    Reader::new(sweep, budget).budget_table(request)
 }

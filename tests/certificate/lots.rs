@@ -339,6 +339,7 @@ pub fn hostile() -> Case {
     record.parts[3].part = "part with a very long name and spaces / slashes 004 ".repeat(3);
     record.parts[4].part = "漢字部品".into();
     record.parts[5].part = "=HYPERLINK(1)".into();
+    record.parts[2].drive = Some(0.98123);
     unmeasured(&mut record.parts[6]);
     record.parts[6].attempts[0].file = format!("sweeps/{}.csv", "x".repeat(200));
     record.parts[6].faults = vec![Note::new(
@@ -645,6 +646,8 @@ fn sampling(parts: u64) -> Sampling {
         undecided: 0,
         verdict: LotVerdict::Accept,
         operating_characteristic: None,
+        variables: vec![],
+        by_variables: false,
     };
     Sampling {
         scheme: "attributes".into(),

@@ -30,12 +30,12 @@ read has a page of its own, [measured-accuracy.md](measured-accuracy.md); the fo
 def make(program):
     """The page, and whether every check passed."""
     with tempfile.TemporaryDirectory() as folder:
-        place = lambda name: str(Path(folder) / name)  # noqa: E731
-        found = sample_lots.records(program, place("samples"))
+        place = Path(folder)
+        found = sample_lots.records(program, place / "samples")
         truth, true = sample_lots.truth(found)
         sections = [
-            truth, sample_lots.verdicts(found), touchstone.section(program, place("touchstone")),
-            statistics.section(program, place("statistics"), found), plans.section(program, place("plans"), found), elsewhere.section(),
+            truth, sample_lots.verdicts(found), touchstone.section(program, place / "touchstone"),
+            statistics.section(program, place / "statistics", found), plans.section(program, place / "plans", found), elsewhere.section(),
         ]
     passed = true and all(check.passed for section in sections for check in section.checks)
     return "\n\n".join([TITLE, *(section.markdown() for section in sections)]) + "\n", passed

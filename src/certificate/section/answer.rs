@@ -1,9 +1,10 @@
 //! Page one: the verdict, the lot, the sentence why, the plan with its counts, the characteristics.
 
 use super::{Characteristic, lot_ink, lot_mark, lot_word};
+use crate::certificate::canvas::Area;
 use crate::certificate::figures::{ABSENT, fixed, index, instant, plain};
-use crate::certificate::flow::{BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
-use crate::certificate::ink::{NONCONFORMING, QUIET};
+use crate::certificate::flow::{BODY, BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
+use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::plot::strip::strip;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
@@ -98,9 +99,12 @@ fn full_width(flow: &mut Flow, identity: Vec<(&'static str, String)>) {
     table.set(flow);
 }
 
-/// The first reason in full; where there are more, how many and where.
+/// Most lines of reasons after the first on page one.
+const FURTHER: usize = 8;
+
+/// The first reason in full, further ones as far as there is room, and how many more and where.
 fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
-    let Some(first) = record.reasons.first() else {
+    let Some((first, others)) = record.reasons.split_first() else {
         return;
     };
     for line in wrap(&first.text, SENTENCE, room) {
@@ -108,20 +112,37 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
         flow.page()
             .text((area.left, area.top + 11.5), SENTENCE, &line);
     }
-    let more = record.reasons.len() - 1;
-    if more > 0 {
-        let plural = if more == 1 { "reason" } else { "reasons" };
+    let mut left = FURTHER;
+    let mut shown = 0;
+    for reason in others {
+        let lines = wrap(&reason.text, BODY, room);
+        if lines.len() > left {
+            break;
+        }
+        left -= lines.len();
+        shown += 1;
         flow.gap(3.0);
-        let area = flow.take(BODY_LEADING);
-        let text = format!("and {more} more {plural}: see Reasons");
-        let style = Style::regular(10.5).ink(crate::certificate::ink::ACCEPT);
-        let wide = flow.page().text((area.left, area.top + 9.5), style, &text);
-        let target = crate::certificate::canvas::Area {
-            right: area.left + wide,
-            ..area
-        };
-        flow.page().link(target, "reasons");
+        for line in lines {
+            let area = flow.take(BODY_LEADING);
+            flow.page().text((area.left, area.top + 9.5), BODY, &line);
+        }
     }
+    let more = others.len() - shown;
+    if more == 0 {
+        return;
+    }
+    let plural = if more == 1 { "reason" } else { "reasons" };
+    flow.gap(3.0);
+    let area = flow.take(BODY_LEADING);
+    let text = format!("and {more} more {plural}: see Reasons");
+    let wide = flow
+        .page()
+        .text((area.left, area.top + 9.5), BODY.ink(ACCEPT), &text);
+    let target = Area {
+        right: area.left + wide,
+        ..area
+    };
+    flow.page().link(target, "reasons");
 }
 
 /// What names the lot; only what the record has.

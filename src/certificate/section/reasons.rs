@@ -119,10 +119,7 @@ fn not_conforming(flow: &mut Flow, record: &LotRecord) {
 
 /// The readings outside their limits, and the faults.
 pub(in crate::certificate) fn findings(record: &LotRecord, part: &PartRecord) -> String {
-    let mut out: Vec<String> = Vec::new();
-    for c in characteristics_of(record, part) {
-        out.push(c);
-    }
+    let mut out = readings_outside(record, part);
     out.extend(part.faults.iter().map(|f| f.text.clone()));
     if out.is_empty() {
         return ABSENT.to_owned();
@@ -130,7 +127,8 @@ pub(in crate::certificate) fn findings(record: &LotRecord, part: &PartRecord) ->
     out.join("; ")
 }
 
-fn characteristics_of(record: &LotRecord, part: &PartRecord) -> Vec<String> {
+/// The readings that are not conforming, each with value, limits and verdict.
+fn readings_outside(record: &LotRecord, part: &PartRecord) -> Vec<String> {
     record
         .limits
         .characteristics
@@ -181,18 +179,24 @@ fn characteristics_of(record: &LotRecord, part: &PartRecord) -> Vec<String> {
         .collect()
 }
 
-fn conditions(flow: &mut Flow, record: &LotRecord) {
-    flow.subheading("Limits and conditions in force", 60.0);
+/// Limit file, decision rule and acceptance in words.
+pub(in crate::certificate) fn limits_in_force(record: &LotRecord) -> String {
     let limits = &record.limits;
-    flow.paragraph(&format!(
+    format!(
         "Limit file {} revision {}; decision rule {}, coverage factor {}; acceptance {}.",
         limits.part,
         limits.revision,
         limits.decision_rule.replace('_', " "),
         crate::certificate::figures::plain(limits.coverage_factor),
         limits.acceptance
-    ));
+    )
+}
+
+fn conditions(flow: &mut Flow, record: &LotRecord) {
+    flow.subheading("Limits and conditions in force", 60.0);
+    flow.paragraph(&limits_in_force(record));
     bounds(flow, record);
+    let limits = &record.limits;
     if limits.conditions.is_empty() {
         return;
     }
