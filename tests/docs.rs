@@ -133,9 +133,9 @@ fn promised(command: &str) -> i32 {
 fn consoles_show_what_is_printed() {
     let update = std::env::var_os("REELGATE_UPDATE").is_some();
     let mut sessions = 0;
+    let site = site();
     for path in pages() {
         let page = text(&path);
-        let site = site();
         let mut lines: Vec<String> = page.lines().map(str::to_owned).collect();
         let consoles = blocks(&page)
             .into_iter()

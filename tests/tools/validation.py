@@ -12,7 +12,7 @@ import sys
 import tempfile
 from pathlib import Path
 
-from outside import elsewhere, plans, sample_lots, statistics, touchstone
+from outside import elsewhere, plans, sample_lots, statistics, touchstone, variables
 from outside.program import ROOT
 
 PAGE = ROOT / "docs" / "validation.md"
@@ -35,7 +35,8 @@ def make(program):
         truth, true = sample_lots.truth(found)
         sections = [
             truth, sample_lots.verdicts(found), touchstone.section(program, place / "touchstone"),
-            statistics.section(program, place / "statistics", found), plans.section(program, place / "plans", found), elsewhere.section(),
+            statistics.section(program, place / "statistics", found), plans.section(program, place / "plans", found),
+            variables.section(program, place / "variables"), elsewhere.section(),
         ]
     passed = true and all(check.passed for section in sections for check in section.checks)
     return "\n\n".join([TITLE, *(section.markdown() for section in sections)]) + "\n", passed

@@ -65,7 +65,7 @@ def rows(name):
 
 def table(resistances):
     """Sweeps of resistors in series with one capacitance: a part for each resistance in ohm."""
-    capacitance = 1 / (2 * math.pi * 1e3 * 20 * max(resistances))  # capacitive at the low end
+    capacitance = 1 / (2 * math.pi * 1e3 * 20 * float(max(resistances)))  # capacitive at the low end
     frequencies = [1e3 * 10 ** (i / 5) for i in range(16)]
     lines = ["part,Frequency (Hz),R (Ohm),X (Ohm)"]
     for number, resistance in enumerate(resistances, 1):
