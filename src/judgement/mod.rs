@@ -3,9 +3,12 @@
 //! No files, no statistics, no lot. Unrounded values are judged; a value that could not be had is
 //! never conforming.
 
+mod bench;
 mod part;
 mod zone;
 
+pub use bench::{Ability, BenchAbility, abilities};
+pub(crate) use part::AGEING_UNKNOWN;
 pub use part::{AttemptRecord, JudgedTry, PartRecord, judge_part, judge_try};
 pub use zone::{ReadingRecord, judge_reading, zone};
 

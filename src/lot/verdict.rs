@@ -9,7 +9,7 @@ use super::explain::{Decided, Step, explain};
 use super::{ClassSection, LotVerdict::*, Plan, Sampling, Statistics, sampling};
 use super::{Lot, statistics};
 use crate::diagnostic::Note;
-use crate::judgement::{PartRecord, PartVerdict};
+use crate::judgement::{AGEING_UNKNOWN, PartRecord, PartVerdict};
 use crate::limits::Limits;
 use crate::station::Station;
 use indexmap::IndexMap;
@@ -233,11 +233,20 @@ fn short_sample(lot: &Lot, sampling: &Sampling) -> Vec<Note> {
     notes
 }
 
-/// One reason for each cause, so that an operator sees what to do for which parts.
+/// One reason for each cause, so that an operator sees what to do for which parts. A capacitance that
+/// could not be referred is a condition's matter: seating the part anew would not help.
 fn unmeasured(parts: &[PartRecord]) -> Vec<Note> {
+    let by_ageing_alone = |p: &&PartRecord| {
+        let mut others = p
+            .readings
+            .values()
+            .filter(|r| r.verdict == PartVerdict::Unmeasured);
+        p.faults.is_empty() && others.all(|r| r.warnings.iter().any(|w| w.code == AGEING_UNKNOWN))
+    };
     let all: Vec<&PartRecord> = parts
         .iter()
         .filter(|p| p.verdict == PartVerdict::Unmeasured)
+        .filter(|p| !by_ageing_alone(p))
         .collect();
     if all.is_empty() {
         return Vec::new();

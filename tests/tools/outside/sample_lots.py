@@ -76,9 +76,7 @@ def verdicts(found):
         other = judge(ROOT, folder)
         lots += 1
         right["lots"] += other["verdict"] == record["verdict"]
-        # Where last heat is not known, the program holds the lot and judges the capacitance as it was measured; the other judge gives none.
-        unknown_age = any(reason["code"] == "ageing_unknown" for reason in record["reasons"])
-        for part in [] if unknown_age else record["parts"]:
+        for part in record["parts"]:
             parts += 1
             right["parts"] += other["parts"][part["part"]]["verdict"] == part["verdict"]
         for name, counts in record["sampling"]["classes"].items():
@@ -90,7 +88,7 @@ def verdicts(found):
     source = "a judge in Python (numpy, scipy) that shares no code with the program, [tests/tools/independent](../tests/tools/independent)"
     totals = {"lots": lots, "parts": parts, "classes": classes, "outliers": outliers}
     names = {
-        "lots": "verdicts on lots", "parts": "verdicts on parts (without 26K-0515: its age is not known, the lot is held, and the other judge gives its capacitance no verdict)", "classes": "plans and counts of classes (n, Ac, Re, nonconforming, undecided)",
+        "lots": "verdicts on lots", "parts": "verdicts on parts", "classes": "plans and counts of classes (n, Ac, Re, nonconforming, undecided)",
         "outliers": "outliers of characteristics",
     }
     checks = [
