@@ -495,3 +495,88 @@ fn one_sweep_for_two_parts_is_found_by_its_bytes() {
         LotVerdict::Accept
     );
 }
+
+/// Values that follow normal quantiles.
+fn normal_sample(n: usize, mean: f64, sigma: f64) -> Vec<PartRecord> {
+    use reelgate::statistics::distributions::normal_quantile;
+    (0..n)
+        .map(|i| {
+            part(
+                i,
+                PartVerdict::Conforming,
+                mean + sigma * normal_quantile((i as f64 + 0.5) / n as f64),
+            )
+        })
+        .collect()
+}
+
+#[test]
+fn sampling_by_variables_needs_normality_and_says_what_it_did_instead() {
+    use reelgate::limits::NotNormal;
+    let rule = |not_normal| {
+        limits(Acceptance::Variables {
+            level: "II".into(),
+            aql: vec![("A".into(), 1.0)],
+            not_normal,
+        })
+    };
+    let (lot, station) = (lot(1000), station());
+    let hold = rule(NotNormal::Hold);
+    // ISO 3951-1 by way of MIL-STD-414 table B-3: the plan is the same that `plan_for` was checked with.
+    let needed = plan(&hold.acceptance, 1000, Severity::Normal)
+        .expect("a plan")
+        .required() as usize;
+    assert!(
+        needed < 80,
+        "fewer parts than by attributes (letter J, n 80): {needed}"
+    );
+
+    let good = judged(&lot, &hold, &station, &normal_sample(needed, 1e-6, 0.02e-6));
+    assert_eq!(
+        outcome(&good),
+        (LotVerdict::Accept, vec!["accepted_by_plan"])
+    );
+    let section = &good.sampling.classes["A"].variables[0];
+    assert!(
+        good.sampling.classes["A"].by_variables && section.normality_p_value.expect("a test") > 0.5
+    );
+    assert_eq!(section.form.as_deref(), Some("M"));
+
+    let wide = judged(
+        &lot,
+        &hold,
+        &station,
+        &normal_sample(needed, 1.05e-6, 0.04e-6),
+    );
+    assert_eq!(
+        outcome(&wide),
+        (LotVerdict::Reject, vec!["variables_not_met"])
+    );
+
+    let mut skewed = normal_sample(needed, 1e-6, 0.02e-6);
+    for (i, p) in skewed.iter_mut().enumerate() {
+        let far = if i % 7 == 0 { 0.08e-6 } else { 0.0 };
+        *p = part(
+            i,
+            PartVerdict::Conforming,
+            1e-6 + far + 1e-9 * (i % 3) as f64,
+        );
+    }
+    assert_eq!(
+        outcome(&judged(&lot, &hold, &station, &skewed)),
+        (LotVerdict::Hold, vec!["variables_not_decided"])
+    );
+
+    let instead = judged(&lot, &rule(NotNormal::Attributes), &station, &skewed);
+    assert_eq!(
+        outcome(&instead),
+        (LotVerdict::Hold, vec!["sample_too_small"]),
+        "80 parts are needed by attributes"
+    );
+    assert!(
+        instead
+            .warnings
+            .iter()
+            .any(|w| w.code == "judged_by_attributes")
+    );
+}

@@ -18,9 +18,11 @@ mod results_csv;
 mod section;
 mod table;
 mod text;
+mod twin;
 mod typeface;
 
 pub use paper::Paper;
+pub use twin::plain_text;
 
 use crate::diagnostic::Note;
 use crate::record::{self, LotRecord, PartVerdict};
@@ -170,6 +172,7 @@ fn layout(
     section::distributions::distributions(&mut flow, &all);
     flow.new_page();
     section::order::order(&mut flow, &all, record.parts.len());
+    section::plan::plan(&mut flow, record);
     section::statistics::statistics(&mut flow, &all);
     flow.new_page();
     section::parts::parts(&mut flow, record, &all);

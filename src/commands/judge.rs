@@ -2,7 +2,7 @@
 
 use super::site::{Site, Stop, Unreadable, gather};
 use super::store::{Paths, write_whole};
-use super::{Context, Format, exit, explain, present};
+use super::{Context, Format, budget, exit, explain, present};
 use crate::certificate::{self, Curve, Paper};
 use crate::diagnostic::{self, Faults, printable};
 use crate::record::{self, LotRecord, LotVerdict, Made, Refusal, Sources};
@@ -28,6 +28,9 @@ pub struct Args {
     /// Print the chain from numbers to verdict; with =PART that of one part too
     #[arg(long, value_name = "PART", num_args = 0..=1, require_equals = true, default_missing_value = "")]
     explain: Option<String>,
+    /// Print the uncertainty budget of one part's readings
+    #[arg(long, value_name = "PART")]
+    budget: Option<String>,
     /// Paper of the PDF lot record
     #[arg(long, value_enum, default_value = "a4")]
     paper: PaperArg,
@@ -46,9 +49,10 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     let mut printed = true;
     for folder in &args.lots {
         match judge(args, folder, context) {
-            Ok((record, paths)) => {
+            Ok((record, paths, budget)) => {
                 if context.format == Format::Text {
-                    printed &= print(args, context, &record, &paths, records.is_empty()).is_ok();
+                    printed &=
+                        print(args, context, &record, &paths, &budget, records.is_empty()).is_ok();
                 }
                 records.push(record);
             }
@@ -77,7 +81,11 @@ fn status(records: &[LotRecord], failed: bool, printed: bool) -> u8 {
 }
 
 /// One lot from its folder to its record on the disk; what went wrong is on standard error.
-fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(LotRecord, Paths), ()> {
+fn judge(
+    args: &Args,
+    folder: &Path,
+    context: &mut Context,
+) -> Result<(LotRecord, Paths, String), ()> {
     let site = Site::new(&context.site);
     let sources = gather(&site, folder).map_err(|stop| match stop {
         Stop::Unreadable(all) => say_unreadable(context, &all),
@@ -97,7 +105,11 @@ fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(LotRecord
     let paths = Paths::of(&site.certificates(), &made.record.record);
     keep(args, &sources, &mut made, &paths)
         .map_err(|text| say(context, &paths.json.display().to_string(), &text))?;
-    Ok((made.record, paths))
+    let budget = args
+        .budget
+        .as_ref()
+        .map_or(String::new(), |part| budget::screen(&sources, &made, part));
+    Ok((made.record, paths, budget))
 }
 
 /// Writes PDF and JSON. A record that exists already keeps its time of issue, and must then come
@@ -116,8 +128,8 @@ fn keep(args: &Args, sources: &Sources, made: &mut Made, paths: &Paths) -> Resul
     }
     let json = record::to_bytes(&made.record).map_err(|e| e.to_string())?;
     if existing.is_some_and(|old| old != json) {
-        return Err("exists and is not what these inputs give: the record was changed after it was issued; \
-                    keep it as evidence in another place and judge again"
+        return Err("exists and is not what these inputs give: the record was changed after it was issued, or another build \
+                    of the program made it; keep it as evidence in another place and judge again"
             .to_owned());
     }
     let pdf = certificate(args, sources, made)?;
@@ -166,6 +178,7 @@ fn print(
     context: &mut Context,
     record: &LotRecord,
     paths: &Paths,
+    budget: &str,
     first: bool,
 ) -> std::io::Result<()> {
     let gap = if first { "" } else { "\n" };
@@ -177,7 +190,7 @@ fn print(
     let screen = present::screen(record);
     write!(
         context.out,
-        "{gap}{screen}{chain}
+        "{gap}{screen}{chain}{budget}
 Record  {pdf}
 "
     )?;

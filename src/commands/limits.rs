@@ -28,6 +28,9 @@ enum Command {
     Check {
         /// Files and folders; without any, the limits/ of the site
         paths: Vec<PathBuf>,
+        /// Say too whether this station can decide each limit
+        #[arg(long, value_name = "FILE")]
+        station: Option<PathBuf>,
     },
     /// Show the limits of a part as absolute values
     Show {
@@ -58,7 +61,9 @@ pub enum Kind {
 /// Results go to `out`; faults as text go to `err`, styled.
 pub fn run(args: &Args, site: &Path, json: bool, out: &mut dyn Write, err: &mut dyn Write) -> u8 {
     let done = match &args.command {
-        Command::Check { paths } => check::run(paths, site, json, out, err),
+        Command::Check { paths, station } => {
+            check::run(paths, station.as_deref(), site, json, out, err)
+        }
         Command::Show { file } => show::run(file, site, json, out, err),
         Command::Schema { kind } => schema(*kind, out).map(|()| OK),
     };

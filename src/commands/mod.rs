@@ -1,5 +1,6 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
+mod budget;
 mod explain;
 mod judge;
 mod limits;

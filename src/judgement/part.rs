@@ -5,11 +5,14 @@ use crate::diagnostic::Note;
 use crate::limits::{Limits, Retest, Window};
 use crate::quantity::engineering;
 use crate::readings::{
-    self, AgeingError, Budget, Characteristic, Extremes, Place, Reader, Referral, Request,
+    self, Budget, Characteristic, Extremes, Place, Reader, Reading, Referral, Request,
 };
 use crate::sweep::{Attempt, Sweep};
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
+
+/// Code of a capacitance that cannot be referred, and of the reason that holds the lot.
+pub(crate) const AGEING_UNKNOWN: &str = "ageing_unknown";
 
 /// One part.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -134,24 +137,31 @@ pub fn judge_try(
     }
 }
 
+/// The capacitance at the referee time, and the value as measured beside it. Where the limit file
+/// demands it and it cannot be had there is no value to judge.
 fn referred(extremes: Extremes, limits: &Limits, age: Option<f64>) -> (Extremes, Option<f64>) {
-    let (Some(ageing), Some(age)) = (limits.conditions.ageing, age) else {
+    let Some(ageing) = limits.conditions.ageing else {
         return (extremes, None);
     };
-    let referral = Referral {
-        per_decade: ageing.per_decade,
-        age,
-        refer_to: ageing.refer_to / 3600.0,
+    let one = |reading: Reading| Extremes {
+        lowest: reading.clone(),
+        highest: reading,
     };
-    match readings::refer(&extremes.lowest, &referral) {
-        Ok((reading, measured)) => (
-            Extremes {
-                lowest: reading.clone(),
-                highest: reading,
-            },
-            measured,
-        ),
-        Err(AgeingError::AgeOutsideLaw(_)) => (extremes, None),
+    let refer = |age| {
+        let referral = Referral {
+            per_decade: ageing.per_decade,
+            age,
+            refer_to: ageing.refer_to / 3600.0,
+        };
+        readings::refer(&extremes.lowest, &referral).ok()
+    };
+    match age.and_then(refer) {
+        Some((reading, measured)) => (one(reading), measured),
+        None => {
+            let text = "the time since last heat is not known, or outside the law of ageing: there is no value at the referee time";
+            let measured = extremes.lowest.known_value();
+            (one(Reading::missing(AGEING_UNKNOWN, text)), measured)
+        }
     }
 }
 

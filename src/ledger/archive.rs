@@ -13,6 +13,7 @@ use std::fs;
 use std::io::{self, Read, Write};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
 
 /// The largest object, uncompressed, in bytes: no file of a lot comes near it.
 pub const MAX_OBJECT: u64 = 256 << 20;
@@ -180,7 +181,7 @@ impl Archive {
         if fs::symlink_metadata(&path).is_ok() {
             return self.get(name).map(|_| ());
         }
-        let temporary = path.with_file_name(format!("{name}.{}{TEMPORARY}", std::process::id()));
+        let temporary = temporary_name(&path, name);
         let written = self.write(&temporary, bytes).and_then(|()| {
             self.disk
                 .rename(&temporary, &path)
@@ -196,12 +197,6 @@ impl Archive {
     fn write(&self, path: &Path, bytes: &[u8]) -> Result<(), LedgerError> {
         let at = |doing| move |e| LedgerError::io(doing, path, e);
         let packed = pack(bytes).map_err(at("compressing the object"))?;
-        // Left by a run of the same process number that was killed.
-        if fs::symlink_metadata(path).is_ok() {
-            self.disk
-                .remove(path)
-                .map_err(at("removing an old temporary file"))?;
-        }
         let mut file = self.disk.create(path).map_err(at("making the object"))?;
         self.disk
             .write(&mut file, &packed)
@@ -211,6 +206,20 @@ impl Archive {
 }
 
 const TEMPORARY: &str = ".tmp";
+
+/// A name that no other writer uses: not in this process, and, since one left by a process of the
+/// same number that was killed is passed over, not of one before it.
+fn temporary_name(path: &Path, name: &str) -> PathBuf {
+    static NEXT: AtomicU64 = AtomicU64::new(0);
+    loop {
+        let n = NEXT.fetch_add(1, Ordering::Relaxed);
+        let file = format!("{name}.{}-{n}{TEMPORARY}", std::process::id());
+        let candidate = path.with_file_name(file);
+        if fs::symlink_metadata(&candidate).is_err() {
+            return candidate;
+        }
+    }
+}
 
 /// Head of an object's file: gzip, no name, no time, one extra field of 32 bytes, "RG" (RFC 1952
 /// section 2.3), which holds the SHA-256 of everything after it. Different compressed bytes can

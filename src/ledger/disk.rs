@@ -15,6 +15,9 @@ pub trait Disk: Send + Sync {
     /// Makes a file that must not exist yet.
     #[allow(missing_docs)]
     fn create(&self, path: &Path) -> io::Result<File>;
+    /// The same, for nobody's eyes but the user's where the platform knows such files.
+    #[allow(missing_docs)]
+    fn create_private(&self, path: &Path) -> io::Result<File>;
     /// Writes all of it.
     #[allow(missing_docs)]
     fn write(&self, file: &mut File, bytes: &[u8]) -> io::Result<()>;
@@ -51,6 +54,14 @@ impl Disk for System {
 
     fn create(&self, path: &Path) -> io::Result<File> {
         OpenOptions::new().write(true).create_new(true).open(path)
+    }
+
+    fn create_private(&self, path: &Path) -> io::Result<File> {
+        let mut options = OpenOptions::new();
+        options.write(true).create_new(true);
+        #[cfg(unix)]
+        std::os::unix::fs::OpenOptionsExt::mode(&mut options, 0o600);
+        options.open(path)
     }
 
     fn write(&self, file: &mut File, bytes: &[u8]) -> io::Result<()> {

@@ -12,6 +12,8 @@ use std::fmt;
 
 /// Signature type of Ed25519 in `signed-note`.
 const ED25519: u8 = 1;
+/// How the text of a secret key begins.
+const SECRET: &str = "PRIVATE+KEY+";
 const DASH: &str = "\u{2014} ";
 /// More than any note of ours; a limit on what is parsed.
 const MAX_NOTE: usize = 64 * 1024;
@@ -57,6 +59,36 @@ impl Signer {
             name: name.to_owned(),
             key: SigningKey::from_bytes(secret),
         })
+    }
+
+    /// From the text that [`Signer::secret_text`] makes.
+    ///
+    /// # Errors
+    /// A text that is no such key, or whose key ID is not that of its key.
+    pub fn read(text: &str) -> Result<Self, NoteError> {
+        let bad = || NoteError("the secret key is not in its text form".to_owned());
+        let rest = text.trim().strip_prefix(SECRET).ok_or_else(bad)?;
+        let mut parts = rest.splitn(3, '+');
+        let (Some(name), Some(id), Some(key)) = (parts.next(), parts.next(), parts.next()) else {
+            return Err(bad());
+        };
+        let bytes = STANDARD.decode(key).map_err(|_| bad())?;
+        let secret: &[u8; 32] = match bytes.split_first() {
+            Some((&ED25519, secret)) => secret.try_into().map_err(|_| bad())?,
+            _ => return Err(bad()),
+        };
+        let signer = Signer::new(name, secret)?;
+        if hex(&signer.verifier().id()) != id {
+            return wrong("the key ID is not that of the secret key");
+        }
+        Ok(signer)
+    }
+
+    /// The secret key as a text, for the file that holds it.
+    pub fn secret_text(&self) -> String {
+        let bytes = [&[ED25519][..], self.key.as_bytes()].concat();
+        let id = hex(&self.verifier().id());
+        format!("{SECRET}{}+{id}+{}", self.name, STANDARD.encode(bytes))
     }
 
     /// The public half.

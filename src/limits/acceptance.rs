@@ -1,10 +1,9 @@
 //! How the lot is accepted from its sample.
 
-use super::Acceptance;
 use super::bound::{Bounded, is_class};
+use super::{Acceptance, NotNormal};
 use crate::diagnostic::excerpt;
 use crate::diagnostic::yaml::{Fields, Node, Reader, shown};
-use crate::quantity::Dimension;
 use crate::statistics::sampling::{AQL_SERIES, InspectionLevel, aql_index, neighbouring_aqls};
 
 const KINDS: [&str; 4] = ["attributes", "variables", "zero_acceptance", "fixed"];
@@ -31,32 +30,57 @@ pub fn read(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<A
         return None;
     };
     match *kind {
-        "attributes" => level_and_aql(reader, value, bounded, "`attributes`")
-            .map(|(level, aql)| Acceptance::Attributes { level, aql }),
-        "variables" => level_and_aql(reader, value, bounded, "`variables`")
-            .map(|(level, aql)| Acceptance::Variables { level, aql }),
+        "attributes" => attributes(reader, value, bounded),
+        "variables" => variables(reader, value, bounded),
         "zero_acceptance" => zero_acceptance(reader, value),
         _ => fixed(reader, value),
     }
+}
+
+fn attributes(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<Acceptance> {
+    let what = "`attributes`";
+    let fields = reader.fields(node, what, &["level", "aql"])?;
+    let (level, aql) = level_and_aql(reader, &fields, bounded, what)?;
+    Some(Acceptance::Attributes { level, aql })
+}
+
+/// `not_normal` says what is done where a characteristic is not normally distributed.
+fn variables(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<Acceptance> {
+    const CHOICES: [&str; 2] = ["hold", "attributes"];
+    let what = "`variables`";
+    let fields = reader.fields(node, what, &["level", "aql", "not_normal"])?;
+    let both = level_and_aql(reader, &fields, bounded, what);
+    let not_normal = match fields.get("not_normal") {
+        None => NotNormal::default(),
+        Some(node) => match reader.one_of(node, "what to do where it is not normal", &CHOICES)? {
+            0 => NotNormal::Hold,
+            _ => NotNormal::Attributes,
+        },
+    };
+    let (level, aql) = both?;
+    Some(Acceptance::Variables {
+        level,
+        aql,
+        not_normal,
+    })
 }
 
 type LevelAndAql = (String, Vec<(String, f64)>);
 
 fn level_and_aql(
     reader: &mut Reader<'_>,
-    node: &Node,
+    fields: &Fields<'_>,
     bounded: &Bounded,
     what: &str,
 ) -> Option<LevelAndAql> {
-    let fields = reader.fields(node, what, &["level", "aql"])?;
     let levels = InspectionLevel::ALL.map(|level| level.to_string());
     let levels: Vec<&str> = levels.iter().map(String::as_str).collect();
     let level = reader
-        .required(&fields, "level", what, "II")
+        .required(fields, "level", what, "II")
         .and_then(|node| reader.one_of(node, "an inspection level", &levels))
         .and_then(|index| levels.get(index));
     let aql = reader
-        .required(&fields, "aql", what, "{A: 0.65}")
+        .required(fields, "aql", what, "{A: 0.65}")
         .and_then(|node| aql_by_class(reader, node, bounded));
     Some(((*level?).to_owned(), aql?))
 }
@@ -157,13 +181,7 @@ fn zero_acceptance(reader: &mut Reader<'_>, node: &Node) -> Option<Acceptance> {
         let node = reader.required(&fields, key, what, example)?;
         let possible = |v: f64| v > 0.0 && v < 1.0;
         let expected = "a share above 0 and below 100 %";
-        reader.quantity_if(
-            node,
-            &format!("`{key}`"),
-            Dimension::Ratio,
-            possible,
-            expected,
-        )
+        reader.share_if(node, &format!("`{key}`"), possible, expected)
     };
     let quality_limit = ratio("quality_limit", "1 %");
     let consumers_risk = ratio("consumers_risk", "10 %");

@@ -108,6 +108,26 @@ pub enum DecisionRuleKind {
     GuardedRejection,
 }
 
+/// What is done with a class sampled by variables where a characteristic is not normal.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub enum NotNormal {
+    /// A person decides.
+    #[default]
+    Hold,
+    /// The class is judged by attributes, level and AQL unchanged.
+    Attributes,
+}
+
+impl NotNormal {
+    /// As limit files spell it.
+    pub fn name(self) -> &'static str {
+        match self {
+            NotNormal::Hold => "hold",
+            NotNormal::Attributes => "attributes",
+        }
+    }
+}
+
 /// How the lot is accepted from its sample.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Acceptance {
@@ -117,11 +137,12 @@ pub enum Acceptance {
         level: String,
         aql: Vec<(String, f64)>,
     },
-    /// ISO 3951-1.
+    /// ISO 3951-1, s-method; and what is done where a characteristic is not normally distributed.
     #[allow(missing_docs)]
     Variables {
         level: String,
         aql: Vec<(String, f64)>,
+        not_normal: NotNormal,
     },
     /// Sample for zero acceptance: quality limit and consumer's risk as ratios.
     #[allow(missing_docs)]

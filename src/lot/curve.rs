@@ -3,6 +3,7 @@
 use crate::statistics::operating_characteristic::{
     acceptance_probability, acceptance_probability_of_lot, quality_at,
 };
+use crate::statistics::variables;
 use serde::{Deserialize, Serialize};
 
 /// Points of the curve but for the one at zero.
@@ -42,6 +43,28 @@ impl OperatingCharacteristic {
                 .map(|p| [p, acceptance_probability(n, ac, p)])
                 .collect(),
         })
+    }
+
+    /// Of sampling by variables with one limit, k form (noncentral t law, ISO 3951-1 annex).
+    pub fn variables(n: u64, k: f64) -> OperatingCharacteristic {
+        let consumers = variables::quality_at(n, k, 0.10);
+        let last = (BEYOND * consumers).min(1.0);
+        let at = |p: f64| {
+            if p > 0.0 {
+                variables::acceptance_probability(n, k, p)
+            } else {
+                1.0
+            }
+        };
+        OperatingCharacteristic {
+            law: "noncentral t".to_owned(),
+            producers_risk_quality: variables::quality_at(n, k, 0.95),
+            consumers_risk_quality: consumers,
+            points: (0..=STEPS)
+                .map(|i| f64::from(i) / f64::from(STEPS) * last)
+                .map(|p| [p, at(p)])
+                .collect(),
+        }
     }
 
     /// Of this very lot: shares are whole parts of it.

@@ -112,7 +112,10 @@ fn code_letter(plan: &Plan) -> Option<Step> {
 }
 
 fn plan_of(plan: &Plan, name: &str, class: &PlanClass) -> Step {
-    let result = format!("n {}, Ac {}, Re {}", class.n, class.ac, class.re);
+    let result = match class.variables {
+        Some(v) => format!("n {}, k {:.3}, M {:.3} %", v.n, v.k, 100.0 * v.m),
+        None => format!("n {}, Ac {}, Re {}", class.n, class.ac, class.re),
+    };
     match (class.aql, &class.code_letter, &plan.code_letter) {
         (Some(aql), Some(used), Some(letter)) => {
             let arrow = if used == letter {
@@ -148,6 +151,20 @@ fn plan_of(plan: &Plan, name: &str, class: &PlanClass) -> Step {
 
 fn count(sampling: &Sampling, name: &str) -> Option<Step> {
     let class = sampling.classes.get(name)?;
+    if class.by_variables {
+        let each: Vec<String> = class
+            .variables
+            .iter()
+            .map(|v| format!("{}: {}", v.key, v.why))
+            .collect();
+        return Some(step(
+            &format!("class {name}"),
+            "each characteristic: Q = (distance of the mean to its limit) / s at least k, or the estimated share nonconforming at most M",
+            "ISO 3951-1, s-method; normality by Anderson-Darling, p at least 0.05",
+            format!("n {}", class.n),
+            format!("{}: {}", each.join("; "), class.verdict.name()),
+        ));
+    }
     let (d, e) = (class.nonconforming, class.undecided);
     let result = match class.verdict {
         LotVerdict::Reject => format!("d {d} ≥ Re {}: reject", class.re),

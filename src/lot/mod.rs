@@ -7,6 +7,7 @@ mod curve;
 mod explain;
 mod sampling;
 mod statistics;
+mod variables;
 mod verdict;
 
 pub use conditions::ConditionSection;
@@ -14,6 +15,7 @@ pub use curve::OperatingCharacteristic;
 pub use explain::Step;
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan};
 pub use statistics::{Statistics, statistics};
+pub use variables::VariablesSection;
 pub use verdict::{LotJudgement, LotVerdict, judge};
 
 mod file;

@@ -1,16 +1,20 @@
 //! The sampling plan in force and the counts against it.
 
+use super::variables::{self as by_variables, VariablesSection};
 use super::{LotVerdict, OperatingCharacteristic};
 use crate::judgement::{PartRecord, PartVerdict};
-use crate::limits::{Acceptance, Limits};
+use crate::limits::{Acceptance, Limits, NotNormal};
 use crate::statistics::Undefined;
 use crate::statistics::operating_characteristic::zero_acceptance_sample;
 use crate::statistics::sampling::{InspectionLevel, Severity, code_letter, plan_for};
+use crate::statistics::variables;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
 
 /// The class that stands for all bounds together where a scheme has no classes.
 const ALL: &str = "all";
+/// The published source of plans by variables.
+const VARIABLES: &str = "ISO 3951-1, s-method (tables of MIL-STD-414)";
 
 /// The sampling plan and the counts against it.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -59,6 +63,12 @@ pub struct ClassSection {
     /// `null` where the whole lot is inspected.
     #[serde(default)]
     pub operating_characteristic: Option<OperatingCharacteristic>,
+    /// Each characteristic by variables; empty where the class is judged by attributes alone.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub variables: Vec<VariablesSection>,
+    /// True where `n`, `ac` and `re` did not decide, but `variables`.
+    #[serde(default)]
+    pub by_variables: bool,
 }
 
 /// A sampling plan for a lot size.
@@ -80,9 +90,34 @@ pub struct Plan {
 pub struct PlanClass {
     pub aql: Option<f64>,
     pub code_letter: Option<String>,
+    /// By attributes.
     pub n: u64,
     pub ac: u64,
     pub re: u64,
+    /// Where the class is judged by variables.
+    pub variables: Option<variables::Plan>,
+    /// What is done where a characteristic is not normal.
+    pub not_normal: NotNormal,
+}
+
+impl PlanClass {
+    /// By attributes.
+    fn new(aql: Option<f64>, code_letter: Option<String>, n: u64, ac: u64) -> PlanClass {
+        PlanClass {
+            aql,
+            code_letter,
+            n,
+            ac,
+            re: ac.saturating_add(1),
+            variables: None,
+            not_normal: NotNormal::Hold,
+        }
+    }
+
+    /// Parts this class needs at first: by variables where it is judged so.
+    pub fn sample(&self) -> u64 {
+        self.variables.map_or(self.n, |plan| plan.n)
+    }
 }
 
 impl Plan {
@@ -90,13 +125,16 @@ impl Plan {
     pub fn required(&self) -> u64 {
         self.classes
             .values()
-            .map(|class| class.n)
+            .map(PlanClass::sample)
             .max()
             .unwrap_or(0)
     }
 
     /// The operating characteristic of one class.
     pub fn curve(&self, class: &PlanClass) -> Option<OperatingCharacteristic> {
+        if let Some(plan) = class.variables {
+            return Some(OperatingCharacteristic::variables(plan.n, plan.k));
+        }
         match self.scheme {
             "zero_acceptance" => {
                 OperatingCharacteristic::hypergeometric(class.n, class.ac, self.lot_size)
@@ -126,9 +164,18 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
             source: "fixed sample and acceptance number of the limit file".to_owned(),
             classes: single((*sample).min(lot_size), *accept),
         }),
-        Acceptance::ZeroAcceptance { quality_limit, consumers_risk } => {
-            let n = zero_acceptance_sample(lot_size, *quality_limit, *consumers_risk)
-                .map_err(|why| format!("no zero-acceptance sample for a lot of {lot_size}: {}", why.text()))?;
+        Acceptance::ZeroAcceptance {
+            quality_limit,
+            consumers_risk,
+        } => {
+            let n = zero_acceptance_sample(lot_size, *quality_limit, *consumers_risk).map_err(
+                |why| {
+                    format!(
+                        "no zero-acceptance sample for a lot of {lot_size}: {}",
+                        why.text()
+                    )
+                },
+            )?;
             Ok(Plan {
                 scheme: "zero_acceptance",
                 level: None,
@@ -139,20 +186,16 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
                 classes: single(n, 0),
             })
         }
-        Acceptance::Variables { .. } => {
-            Err("sampling by variables needs the judgement of a person: this version judges by attributes".to_owned())
-        }
+        Acceptance::Variables {
+            level,
+            aql,
+            not_normal,
+        } => with_variables(level, aql, *not_normal, lot_size, severity),
     }
 }
 
 fn single(n: u64, ac: u64) -> IndexMap<String, PlanClass> {
-    let class = PlanClass {
-        aql: None,
-        code_letter: None,
-        n,
-        ac,
-        re: ac.saturating_add(1),
-    };
+    let class = PlanClass::new(None, None, n, ac);
     IndexMap::from([(ALL.to_owned(), class)])
 }
 
@@ -175,13 +218,7 @@ fn attributes(
             plan_for(lot_size, parsed, *aql, severity).map_err(|why| no_plan(lot_size, why))?;
         classes.insert(
             class.clone(),
-            PlanClass {
-                aql: Some(*aql),
-                code_letter: Some(plan.letter.to_string()),
-                n: plan.n,
-                ac: plan.ac,
-                re: plan.re,
-            },
+            PlanClass::new(Some(*aql), Some(plan.letter.to_string()), plan.n, plan.ac),
         );
     }
     Ok(Plan {
@@ -198,6 +235,31 @@ fn attributes(
     })
 }
 
+/// The plan by attributes, and beside it that by variables for each class that has one.
+fn with_variables(
+    level: &str,
+    aql: &[(String, f64)],
+    not_normal: NotNormal,
+    lot_size: u64,
+    severity: Severity,
+) -> Result<Plan, String> {
+    let mut plan = attributes(level, aql, lot_size, severity)?;
+    let level: InspectionLevel = level
+        .parse()
+        .map_err(|_| format!("`{level}` is not an inspection level"))?;
+    for class in plan.classes.values_mut() {
+        let Some(aql) = class.aql else { continue };
+        class.variables = variables::plan_for(lot_size, level, aql, severity).ok();
+        class.not_normal = not_normal;
+    }
+    plan.scheme = "variables";
+    plan.source = format!(
+        "{VARIABLES}; where a class cannot be judged so: {}",
+        plan.source
+    );
+    Ok(plan)
+}
+
 fn no_plan(lot_size: u64, why: Undefined) -> String {
     format!("no sampling plan for a lot of {lot_size}: {}", why.text())
 }
@@ -205,13 +267,7 @@ fn no_plan(lot_size: u64, why: Undefined) -> String {
 /// The tables of ISO 2859-1 begin with lots of two: a single part is inspected itself.
 fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
     let lot_size = 1;
-    let class = |aql: f64| PlanClass {
-        aql: Some(aql),
-        code_letter: None,
-        n: 1,
-        ac: 0,
-        re: 1,
-    };
+    let class = |aql: f64| PlanClass::new(Some(aql), None, 1, 0);
     Plan {
         scheme: "attributes",
         level: Some(level.to_owned()),
@@ -235,40 +291,50 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
     let of = |verdict| parts.iter().filter(|p| p.verdict == verdict).count() as u64;
     let unmeasured = of(PartVerdict::Unmeasured);
     let mut beyond = 0;
+    let mut required = 0;
     let mut classes = IndexMap::new();
     for (name, class) in &plan.classes {
+        let sections = by_variables::judge(name, class, limits, parts);
+        let falls_back =
+            class.not_normal == NotNormal::Attributes && by_variables::not_normal(&sections);
+        let by_variables = class.variables.is_some() && !falls_back;
+        let n = if by_variables {
+            class.sample()
+        } else {
+            class.n
+        };
+        required = required.max(n);
         let counts_here = |part: &&PartRecord| name == ALL || part.class.as_deref() == Some(name);
-        let inside = usize::try_from(class.n)
-            .unwrap_or(usize::MAX)
-            .min(parts.len());
-        let within = |verdict| {
-            parts[..inside]
+        let inside = usize::try_from(n).unwrap_or(usize::MAX).min(parts.len());
+        let with = |parts: &[PartRecord], verdict| {
+            parts
                 .iter()
                 .filter(|p| p.verdict == verdict)
                 .filter(counts_here)
                 .count() as u64
         };
-        beyond += parts[inside..]
-            .iter()
-            .filter(|p| p.verdict == PartVerdict::Nonconforming)
-            .filter(counts_here)
-            .count() as u64;
-        let (nonconforming, undecided) = (
-            within(PartVerdict::Nonconforming),
-            within(PartVerdict::Undecided),
-        );
+        beyond += with(&parts[inside..], PartVerdict::Nonconforming);
+        let nonconforming = with(&parts[..inside], PartVerdict::Nonconforming);
+        let undecided = with(&parts[..inside], PartVerdict::Undecided);
+        let verdict = if by_variables {
+            by_variables::verdict(&sections)
+        } else {
+            class_verdict(class, nonconforming, undecided)
+        };
         classes.insert(
             name.clone(),
             ClassSection {
                 aql: class.aql,
                 code_letter: class.code_letter.clone(),
-                n: class.n,
+                n,
                 ac: class.ac,
                 re: class.re,
                 nonconforming,
                 undecided,
-                verdict: class_verdict(class, nonconforming, undecided),
+                verdict,
                 operating_characteristic: plan.curve(class),
+                variables: sections,
+                by_variables,
             },
         );
     }
@@ -284,7 +350,7 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
         code_letter: plan.code_letter.clone(),
         severity: plan.severity.map(|s| s.to_string()),
         source: plan.source.clone(),
-        required: plan.required(),
+        required,
         presented: parts.len() as u64,
         measured: parts.len() as u64 - unmeasured,
         nonconforming: of(PartVerdict::Nonconforming),

@@ -6,10 +6,10 @@
 
 use super::conditions::{self, ConditionSection, some_parts};
 use super::explain::{Decided, Step, explain};
+use super::{ClassSection, LotVerdict::*, Plan, Sampling, Statistics, sampling};
 use super::{Lot, statistics};
-use super::{LotVerdict::*, Plan, Sampling, Statistics, sampling};
 use crate::diagnostic::Note;
-use crate::judgement::{PartRecord, PartVerdict};
+use crate::judgement::{AGEING_UNKNOWN, PartRecord, PartVerdict};
 use crate::limits::Limits;
 use crate::station::Station;
 use indexmap::IndexMap;
@@ -106,7 +106,7 @@ pub fn judge(
         verdict,
         explanation,
         reasons,
-        warnings: warnings(limits, station),
+        warnings: warnings(limits, station, &sampling),
         sampling,
         statistics,
         conditions: sections,
@@ -119,17 +119,28 @@ fn counts(sampling: &Sampling) -> String {
         .classes
         .iter()
         .map(|(name, c)| {
-            format!(
-                "{}: {} nonconforming of {}, Ac {}, Re {}",
-                class_words(name),
-                c.nonconforming,
-                c.n,
-                c.ac,
-                c.re
-            )
+            let class = class_words(name);
+            if c.by_variables {
+                format!("{class}: {}", by_variables(c))
+            } else {
+                format!(
+                    "{class}: {} nonconforming of {}, Ac {}, Re {}",
+                    c.nonconforming, c.n, c.ac, c.re
+                )
+            }
         })
         .collect();
     each.join("; ")
+}
+
+/// Each characteristic of a class by variables, in words.
+fn by_variables(class: &ClassSection) -> String {
+    let each: Vec<String> = class
+        .variables
+        .iter()
+        .map(|s| format!("{}: {}", s.key, s.why))
+        .collect();
+    format!("{} parts by variables, {}", class.n, each.join(", "))
 }
 
 fn class_words(name: &str) -> String {
@@ -146,6 +157,10 @@ fn over_ac(sampling: &Sampling) -> Vec<Note> {
         .iter()
         .filter(|(_, c)| c.verdict == Reject)
         .map(|(name, c)| {
+            if c.by_variables {
+                let text = format!("{}: {}: do not release the reel", class_words(name), by_variables(c));
+                return Note::new("variables_not_met", text);
+            }
             Note::new(
                 "nonconforming_over_ac",
                 format!(
@@ -172,6 +187,10 @@ fn undecided(sampling: &Sampling, parts: &[PartRecord]) -> Vec<Note> {
         .iter()
         .filter(|(_, c)| c.verdict == Hold)
         .map(|(name, c)| {
+            if c.by_variables {
+                let text = format!("{}: {}: a quality engineer decides", class_words(name), by_variables(c));
+                return Note::new("variables_not_decided", text);
+            }
             Note::new(
                 "undecided_parts",
                 format!(
@@ -214,11 +233,20 @@ fn short_sample(lot: &Lot, sampling: &Sampling) -> Vec<Note> {
     notes
 }
 
-/// One reason for each cause, so that an operator sees what to do for which parts.
+/// One reason for each cause, so that an operator sees what to do for which parts. A capacitance that
+/// could not be referred is a condition's matter: seating the part anew would not help.
 fn unmeasured(parts: &[PartRecord]) -> Vec<Note> {
+    let by_ageing_alone = |p: &&PartRecord| {
+        let mut others = p
+            .readings
+            .values()
+            .filter(|r| r.verdict == PartVerdict::Unmeasured);
+        p.faults.is_empty() && others.all(|r| r.warnings.iter().any(|w| w.code == AGEING_UNKNOWN))
+    };
     let all: Vec<&PartRecord> = parts
         .iter()
         .filter(|p| p.verdict == PartVerdict::Unmeasured)
+        .filter(|p| !by_ageing_alone(p))
         .collect();
     if all.is_empty() {
         return Vec::new();
@@ -342,8 +370,26 @@ fn lot_rules(limits: &Limits, statistics: &IndexMap<String, Statistics>) -> Vec<
     notes
 }
 
-fn warnings(limits: &Limits, station: &Station) -> Vec<Note> {
+fn warnings(limits: &Limits, station: &Station, sampling: &Sampling) -> Vec<Note> {
     let mut notes = Vec::new();
+    for (name, class) in &sampling.classes {
+        if !class.by_variables && !class.variables.is_empty() {
+            let text = format!(
+                "{}: judged by attributes instead: {}",
+                class_words(name),
+                by_variables(class)
+            );
+            notes.push(Note::new("judged_by_attributes", text));
+        }
+        if class.by_variables && class.nonconforming > 0 {
+            let text = format!(
+                "{}: {} nonconforming in the sample; sampling by variables judges the lot, take these parts out of it (ISO 3951-1)",
+                class_words(name),
+                class.nonconforming
+            );
+            notes.push(Note::new("nonconforming_in_sample", text));
+        }
+    }
     if station.instrument.as_ref().and_then(|i| i.due).is_none() {
         notes.push(Note::new(
             "calibration_not_stated",

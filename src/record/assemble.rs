@@ -1,7 +1,7 @@
 //! The record from what was judged: plain values, nothing computed but words and digests.
 
 use super::*;
-use crate::limits::{Acceptance, DecisionRuleKind, Limits};
+use crate::limits::{Acceptance, DecisionRuleKind, Limits, NotNormal};
 use crate::lot::{Lot, LotJudgement};
 use crate::quantity::{engineering, shortest};
 use crate::readings::Place;
@@ -164,7 +164,17 @@ fn acceptance(acceptance: &Acceptance) -> String {
     };
     match acceptance {
         Acceptance::Attributes { level, aql } => by_level("attributes", level, aql),
-        Acceptance::Variables { level, aql } => by_level("variables", level, aql),
+        Acceptance::Variables {
+            level,
+            aql,
+            not_normal,
+        } => {
+            let words = by_level("variables", level, aql);
+            match not_normal {
+                NotNormal::Hold => words,
+                NotNormal::Attributes => format!("{words}, by attributes where not normal"),
+            }
+        }
         Acceptance::ZeroAcceptance {
             quality_limit,
             consumers_risk,

@@ -9,7 +9,8 @@ mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics, Step,
+    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics,
+    Step, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};

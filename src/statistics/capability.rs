@@ -1,8 +1,8 @@
 //! Process capability indices of a sample against its limits, with confidence bounds.
 //!
-//! Cp and Cpk use the within-lot sigma (mean moving range over d2, values in measuring order), Pp and Ppk the standard
-//! deviation of the whole sample. Definitions: ISO 22514-2 and NIST/SEMATECH e-Handbook 6.1.6. The indices assume
-//! a normal distribution.
+//! Cp and Cpk use the within-lot sigma (mean moving range over d2, values in measuring order), Pp
+//! and Ppk the standard deviation of the whole sample. Definitions: ISO 22514-2 and NIST/SEMATECH
+//! e-Handbook 6.1.6. The indices assume a normal distribution.
 
 use super::Undefined;
 use super::distributions::{chi_squared_quantile, noncentrality_at, normal_upper_quantile};
@@ -25,7 +25,8 @@ pub struct Capability {
 impl Capability {
     /// Indices of values in measuring order against a lower limit, an upper limit or both.
     ///
-    /// With one limit Cp and Pp do not exist and Cpk and Ppk are those of that side. With zero spread none exists.
+    /// With one limit Cp and Pp do not exist and Cpk and Ppk are those of that side. With zero
+    /// spread none exists.
     pub fn of(values: &[f64], lower: Option<f64>, upper: Option<f64>) -> Self {
         let summary = Summary::of(values);
         let sigma_within = summary.and_then(|_| moving_range_sigma(values));
@@ -92,19 +93,21 @@ fn ratio(distance: f64, spread: f64) -> Result<f64, Undefined> {
     }
 }
 
-/// The smallest sample from which an index is worth stating: the normal approximation of its bound holds from about 25 values (NIST/SEMATECH
-/// e-Handbook 6.1.6, from memory), and below, a Cpk of 1.33 does not even show 1.00.
+/// The smallest sample from which an index is worth stating: the normal approximation of its bound
+/// holds from about 25 values (NIST/SEMATECH e-Handbook 6.1.6, from memory), and below, a Cpk of
+/// 1.33 does not even show 1.00.
 pub const CAPABILITY_SIZE_MIN: u64 = 25;
 
-/// The largest share of the variance that may be the measurement's for an index to say something of the parts: one half. Common practice, no source.
+/// The largest share of the variance that may be the measurement's for an index to say something of
+/// the parts: one half. Common practice, no source.
 pub const MEASUREMENT_SHARE_MAX: f64 = 0.5;
 
-/// Whether an index from n values of that standard deviation is worth stating, where a single reading has that standard uncertainty of its own
-/// (random part, in the same unit).
+/// Whether an index from n values of that standard deviation is worth stating, where a single
+/// reading has that standard uncertainty of its own (random part, in the same unit).
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below [`CAPABILITY_SIZE_MIN`], [`Undefined::ZeroSpread`], [`Undefined::NotFinite`],
-/// [`Undefined::MeasurementDominates`] above [`MEASUREMENT_SHARE_MAX`].
+/// [`Undefined::TooFewValues`] below [`CAPABILITY_SIZE_MIN`], [`Undefined::ZeroSpread`],
+/// [`Undefined::NotFinite`], [`Undefined::MeasurementDominates`] above [`MEASUREMENT_SHARE_MAX`].
 pub fn worth_stating(n: u64, sigma: f64, repeatability: Option<f64>) -> Result<(), Undefined> {
     if n < CAPABILITY_SIZE_MIN {
         return Err(Undefined::TooFewValues {
@@ -129,8 +132,9 @@ pub fn worth_stating(n: u64, sigma: f64, repeatability: Option<f64>) -> Result<(
 
 /// Lower confidence bound of Cp or Pp: the index times √(χ²_{ν, 1 − confidence}/ν).
 ///
-/// Exact for a normal sample's own standard deviation (ν = n − 1); with the moving range an approximation by its
-/// [degrees of freedom](super::summary::moving_range_degrees_of_freedom). One-sided; NIST e-Handbook 6.1.6.
+/// Exact for a normal sample's own standard deviation (ν = n − 1); with the moving range an
+/// approximation by its [degrees of freedom](super::summary::moving_range_degrees_of_freedom).
+/// One-sided; NIST e-Handbook 6.1.6.
 ///
 /// # Errors
 /// [`Undefined::OutOfRange`] for ν ≤ 0 or a confidence not in (0, 1).
@@ -141,12 +145,14 @@ pub fn cp_lower_bound(index: f64, nu: f64, confidence: f64) -> Result<f64, Undef
 
 /// Lower confidence bound of Cpk or Ppk: index − z √(1/9n + index²/2ν).
 ///
-/// Normal approximation of Bissell (1990), How reliable is your capability index?; NIST e-Handbook 6.1.6. n is the
-/// number of values behind the mean, ν the degrees of freedom of the sigma: n − 1 for the standard deviation, those of
-/// [the moving range](super::summary::moving_range_degrees_of_freedom) for the within-lot sigma. One-sided.
+/// Normal approximation of Bissell (1990), How reliable is your capability index?; NIST e-Handbook
+/// 6.1.6. n is the number of values behind the mean, ν the degrees of freedom of the sigma: n − 1
+/// for the standard deviation, those of [the moving
+/// range](super::summary::moving_range_degrees_of_freedom) for the within-lot sigma. One-sided.
 ///
 /// # Errors
-/// [`Undefined::OutOfRange`] for ν ≤ 0 or a confidence not in (0, 1), [`Undefined::TooFewValues`] for n below 2.
+/// [`Undefined::OutOfRange`] for ν ≤ 0 or a confidence not in (0, 1), [`Undefined::TooFewValues`]
+/// for n below 2.
 pub fn cpk_lower_bound(index: f64, n: u64, nu: f64, confidence: f64) -> Result<f64, Undefined> {
     check_bound(nu, confidence)?;
     if n < 2 {
@@ -175,10 +181,12 @@ fn check_bound(nu: f64, confidence: f64) -> Result<(), Undefined> {
     Ok(())
 }
 
-/// Lower confidence bound of a one-sided index, (U − x̄)/3s or (x̄ − L)/3s with the sample's own standard deviation: exact.
+/// Lower confidence bound of a one-sided index, (U − x̄)/3s or (x̄ − L)/3s with the sample's own
+/// standard deviation: exact.
 ///
-/// The C with P(T ≥ 3√n · index) = 1 − confidence for the noncentral t of n − 1 degrees of freedom and noncentrality
-/// 3√n C. For Ppk with two limits, taken for the nearer one, it errs on the safe side.
+/// The C with P(T ≥ 3√n · index) = 1 − confidence for the noncentral t of n − 1 degrees of freedom
+/// and noncentrality 3√n C. For Ppk with two limits, taken for the nearer one, it errs on the safe
+/// side.
 ///
 /// # Errors
 /// [`Undefined::TooFewValues`] for n below 2, [`Undefined::OutOfRange`], [`Undefined::NoSolution`].

@@ -1,17 +1,19 @@
-//! A lot against the lots before it: shift of the mean, change of the spread, EWMA and run rules on lot means.
+//! A lot against the lots before it: shift of the mean, change of the spread, EWMA and run rules on
+//! lot means.
 //!
-//! The histories are those of one supplier, part and characteristic, oldest first. Nothing here decides how many lots make a history;
-//! [`LOTS_MIN`] is a suggestion.
+//! The histories are those of one supplier, part and characteristic, oldest first. Nothing here
+//! decides how many lots make a history; [`LOTS_MIN`] is a suggestion.
 
 use super::Undefined;
 use super::distributions::{f_sf, student_t_sf};
 use super::summary::{Summary, moving_range_sigma, sum};
 
-/// Previous lots from which control limits mean something. Common practice asks for 20 or more; below 8 the limits of an individuals chart are off
-/// by a quarter and more. No source.
+/// Previous lots from which control limits mean something. Common practice asks for 20 or more;
+/// below 8 the limits of an individuals chart are off by a quarter and more. No source.
 pub const LOTS_MIN: u64 = 8;
 
-/// Smoothing and width of an EWMA with a mean run of 500 lots between false alarms, and of 10.5 to a shift of one sigma: Lucas & Saccucci (1990).
+/// Smoothing and width of an EWMA with a mean run of 500 lots between false alarms, and of 10.5 to
+/// a shift of one sigma: Lucas & Saccucci (1990).
 pub const EWMA_LAMBDA: f64 = 0.2;
 /// See [`EWMA_LAMBDA`].
 pub const EWMA_WIDTH: f64 = 2.962;
@@ -56,8 +58,8 @@ pub struct Comparison {
     pub p_value: f64,
 }
 
-/// Whether a lot mean belongs to the previous lot means: t = (x − x̄)/(s √(1 + 1/m)) with m − 1 degrees of freedom, the prediction of one more normal
-/// value from m.
+/// Whether a lot mean belongs to the previous lot means: t = (x − x̄)/(s √(1 + 1/m)) with m − 1
+/// degrees of freedom, the prediction of one more normal value from m.
 ///
 /// # Errors
 /// [`Undefined::TooFewValues`] below 3 previous lots, [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
@@ -93,10 +95,12 @@ pub struct LotSpread {
     pub n: u64,
 }
 
-/// Whether the spread within a lot is that of the previous lots: F = s²/pooled s², two-sided (Snedecor & Cochran; NIST/SEMATECH e-Handbook 1.3.5.9).
+/// Whether the spread within a lot is that of the previous lots: F = s²/pooled s², two-sided
+/// (Snedecor & Cochran; NIST/SEMATECH e-Handbook 1.3.5.9).
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] where either side has no degree of freedom, [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
+/// [`Undefined::TooFewValues`] where either side has no degree of freedom,
+/// [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
 pub fn spread_change(lot: LotSpread, previous: &[LotSpread]) -> Result<Comparison, Undefined> {
     let freedom = |l: &LotSpread| l.n.saturating_sub(1) as f64;
     let nu = freedom(&lot);
@@ -137,12 +141,14 @@ pub struct EwmaPoint {
     pub signal: bool,
 }
 
-/// The EWMA z = λx + (1 − λ)z of values in sequence, from the target on, with limits target ± width σ √(λ/(2 − λ) (1 − (1 − λ)^2t)).
+/// The EWMA z = λx + (1 − λ)z of values in sequence, from the target on, with limits target ± width
+/// σ √(λ/(2 − λ) (1 − (1 − λ)^2t)).
 ///
 /// Roberts (1959); NIST/SEMATECH e-Handbook 6.3.2.4, which prints the limits for large t.
 ///
 /// # Errors
-/// [`Undefined::OutOfRange`] for a λ not in (0, 1] or a width not above 0, [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
+/// [`Undefined::OutOfRange`] for a λ not in (0, 1] or a width not above 0,
+/// [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
 pub fn ewma(
     values: &[f64],
     target: f64,
@@ -185,11 +191,13 @@ pub fn ewma(
     Ok(points.collect())
 }
 
-/// A pattern of values in sequence that a stable process seldom makes. Nelson (1984), The Shewhart control chart: tests for special causes; Western
-/// Electric, Statistical quality control handbook (1956).
+/// A pattern of values in sequence that a stable process seldom makes. Nelson (1984), The Shewhart
+/// control chart: tests for special causes; Western Electric, Statistical quality control handbook
+/// (1956).
 ///
-/// "Beyond" is strictly; a value on the centre line is on neither side; a rule looks at the newest values only once it has as many as it needs; of
-/// "two of three" and "four of five" the newest need not be one.
+/// "Beyond" is strictly; a value on the centre line is on neither side; a rule looks at the newest
+/// values only once it has as many as it needs; of "two of three" and "four of five" the newest
+/// need not be one.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum RunRule {
     /// One value beyond 3 sigma.
@@ -292,7 +300,8 @@ pub struct RunSignal {
     pub index: usize,
 }
 
-/// Every signal of the rules in values in sequence, in the order of the values; a pattern that goes on signals at every further value.
+/// Every signal of the rules in values in sequence, in the order of the values; a pattern that goes
+/// on signals at every further value.
 pub fn run_signals(values: &[f64], centre: f64, sigma: f64, rules: &[RunRule]) -> Vec<RunSignal> {
     let deviations: Vec<f64> = values.iter().map(|x| x - centre).collect();
     let mut signals = Vec::new();

@@ -7,7 +7,8 @@ use super::summary::{Summary, sorted, sum};
 /// The smallest sample for which the p-value holds.
 pub const ANDERSON_DARLING_SIZE_MIN: u64 = 8;
 
-/// Beyond this A* the approximation of the p-value turns upwards; there it stays at its value here, below 1e-30.
+/// Beyond this A* the approximation of the p-value turns upwards; there it stays at its value here,
+/// below 1e-30.
 const ADJUSTED_MAX: f64 = 13.0;
 
 /// The Anderson-Darling test of a sample for normality, mean and standard deviation estimated.
@@ -23,11 +24,13 @@ pub struct AndersonDarling {
 
 /// Tests a sample for normality.
 ///
-/// D'Agostino & Stephens (1986), Goodness-of-fit techniques, Table 4.9; NIST/SEMATECH e-Handbook 1.3.5.14. Readings rounded to a
-/// coarse step, with many ties, give small p-values from normal populations too.
+/// D'Agostino & Stephens (1986), Goodness-of-fit techniques, Table 4.9; NIST/SEMATECH e-Handbook
+/// 1.3.5.14. Readings rounded to a coarse step, with many ties, give small p-values from normal
+/// populations too.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below [`ANDERSON_DARLING_SIZE_MIN`], [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
+/// [`Undefined::TooFewValues`] below [`ANDERSON_DARLING_SIZE_MIN`], [`Undefined::ZeroSpread`],
+/// [`Undefined::NotFinite`].
 pub fn anderson_darling(values: &[f64]) -> Result<AndersonDarling, Undefined> {
     let n = values.len();
     if (n as u64) < ANDERSON_DARLING_SIZE_MIN {

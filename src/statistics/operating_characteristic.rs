@@ -9,8 +9,9 @@ use super::distributions::{
     beta_upper_quantile, binomial_cdf, gamma_quantile, hypergeometric_cdf, poisson_cdf,
 };
 
-/// How near, relatively, a risk or a count must be to a boundary to be on it: decimals such as 0.1 have no exact
-/// binary form, and a boundary met exactly in decimals must not be missed by a rounding.
+/// How near, relatively, a risk or a count must be to a boundary to be on it: decimals such as 0.1
+/// have no exact binary form, and a boundary met exactly in decimals must not be missed by a
+/// rounding.
 const ROUNDING: f64 = 1e-10;
 
 /// P(at most Ac nonconforming in n) at the share nonconforming p of the process (a ratio): binomial.
@@ -47,9 +48,11 @@ pub fn quality_at_poisson(n: u64, ac: u64, pa: f64) -> f64 {
     gamma_quantile(1.0 - pa, ac as f64 + 1.0) / n as f64
 }
 
-/// The number of nonconforming items in a lot at a quality limit: the limit times the lot, rounded up, at least 1.
+/// The number of nonconforming items in a lot at a quality limit: the limit times the lot, rounded
+/// up, at least 1.
 ///
-/// `quality_limit` is a ratio, above 0 and at most 1. A product that is whole but for a rounding is that whole number.
+/// `quality_limit` is a ratio, above 0 and at most 1. A product that is whole but for a rounding is
+/// that whole number.
 pub fn nonconforming_at_limit(lot: u64, quality_limit: f64) -> u64 {
     let product = lot as f64 * quality_limit;
     let nearest = product.round();
@@ -61,8 +64,8 @@ pub fn nonconforming_at_limit(lot: u64, quality_limit: f64) -> u64 {
     (count as u64).clamp(1, lot.max(1))
 }
 
-/// The smallest sample for acceptance at zero nonconforming: a lot at the quality limit is accepted with at most the
-/// consumer's risk, by the exact hypergeometric law.
+/// The smallest sample for acceptance at zero nonconforming: a lot at the quality limit is accepted
+/// with at most the consumer's risk, by the exact hypergeometric law.
 ///
 /// `quality_limit` and `consumers_risk` are ratios. The smallest n with C(N − D, n)/C(N, n) ≤ β for
 /// D = ⌈N · limit⌉: the definition of limiting quality by type A probability, ISO 2859-2 (from memory).

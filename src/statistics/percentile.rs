@@ -1,14 +1,16 @@
 //! Capability of a characteristic that is not normal: the percentile method of ISO 22514-2.
 //!
-//! The indices compare the limits with the 0.135 %, 50 % and 99.865 % quantiles of a fitted distribution, which take the
-//! places of x̄ − 3s, x̄ and x̄ + 3s; for a normal distribution they are the classical Pp and Ppk. Such quantiles cannot be
-//! read off a sample of less than thousands; here the fit is normal after a Box-Cox transformation.
+//! The indices compare the limits with the 0.135 %, 50 % and 99.865 % quantiles of a fitted
+//! distribution, which take the places of x̄ − 3s, x̄ and x̄ + 3s; for a normal distribution they
+//! are the classical Pp and Ppk. Such quantiles cannot be read off a sample of less than thousands;
+//! here the fit is normal after a Box-Cox transformation.
 
 use super::Undefined;
 use super::normality::{AndersonDarling, anderson_darling};
 use super::summary::{Summary, sum};
 
-/// The exponent is searched within ± this many reciprocals of the standard deviation of ln x, or ± 5 if that is more.
+/// The exponent is searched within ± this many reciprocals of the standard deviation of ln x, or ±
+/// 5 if that is more.
 const EXPONENT_REACH: f64 = 2.0;
 const EXPONENT_REACH_MIN: f64 = 5.0;
 
@@ -43,7 +45,8 @@ pub struct BoxCox {
 }
 
 impl Quantiles {
-    /// Pp = (U − L)/(X99.865 − X0.135); Ppk the smaller of (U − X50)/(X99.865 − X50) and (X50 − L)/(X50 − X0.135).
+    /// Pp = (U − L)/(X99.865 − X0.135); Ppk the smaller of (U − X50)/(X99.865 − X50) and (X50 −
+    /// L)/(X50 − X0.135).
     pub fn capability(&self, lower: Option<f64>, upper: Option<f64>) -> PercentileCapability {
         if let (Some(l), Some(u)) = (lower, upper)
             && l >= u
@@ -82,11 +85,13 @@ fn ratio(distance: f64, spread: f64) -> Result<f64, Undefined> {
     }
 }
 
-/// Fits a power that makes a sample of positive values normal; Box & Cox (1964), NIST/SEMATECH e-Handbook 6.5.2.
+/// Fits a power that makes a sample of positive values normal; Box & Cox (1964), NIST/SEMATECH
+/// e-Handbook 6.5.2.
 ///
 /// # Errors
-/// [`Undefined::OutOfRange`] for a value that is not positive, [`Undefined::TooFewValues`] below 8, [`Undefined::ZeroSpread`],
-/// [`Undefined::NoSolution`] where no moderate power is the best, or where a quantile would lie outside the fitted distribution.
+/// [`Undefined::OutOfRange`] for a value that is not positive, [`Undefined::TooFewValues`] below 8,
+/// [`Undefined::ZeroSpread`], [`Undefined::NoSolution`] where no moderate power is the best, or
+/// where a quantile would lie outside the fitted distribution.
 pub fn box_cox(values: &[f64]) -> Result<BoxCox, Undefined> {
     if values.iter().any(|x| *x <= 0.0) {
         return Err(Undefined::OutOfRange {

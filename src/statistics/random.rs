@@ -2,7 +2,8 @@
 
 use super::distributions::normal_quantile;
 
-/// SplitMix64 (Steele, Lea & Flood 2014): passes the usual batteries, is seeded by any number. Not for secrets.
+/// SplitMix64 (Steele, Lea & Flood 2014): passes the usual batteries, is seeded by any number. Not
+/// for secrets.
 #[derive(Debug, Clone)]
 pub struct Random {
     state: u64,

@@ -1,4 +1,5 @@
-//! Confidence bounds of the share nonconforming, from the count in a sample. Exact; one-sided at the stated confidence.
+//! Confidence bounds of the share nonconforming, from the count in a sample. Exact; one-sided at
+//! the stated confidence.
 
 use super::Undefined;
 use super::distributions::{
@@ -8,8 +9,8 @@ use super::distributions::{
 /// Upper bound of the share nonconforming of the process, a ratio: Clopper & Pearson (1934).
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] for an empty sample, [`Undefined::OutOfRange`] for a count above the sample or a confidence not in
-/// (0, 1).
+/// [`Undefined::TooFewValues`] for an empty sample, [`Undefined::OutOfRange`] for a count above the
+/// sample or a confidence not in (0, 1).
 pub fn upper_bound(n: u64, nonconforming: u64, confidence: f64) -> Result<f64, Undefined> {
     check(n, nonconforming, confidence)?;
     if nonconforming == n {
@@ -32,8 +33,9 @@ pub fn lower_bound(n: u64, nonconforming: u64, confidence: f64) -> Result<f64, U
     Ok(beta_quantile(1.0 - confidence, a, b))
 }
 
-/// Upper bound of the number of nonconforming items in a lot, those of the sample included: the largest number with which
-/// a sample as good as this, or better, has a probability above 1 − confidence (hypergeometric).
+/// Upper bound of the number of nonconforming items in a lot, those of the sample included: the
+/// largest number with which a sample as good as this, or better, has a probability above 1 −
+/// confidence (hypergeometric).
 ///
 /// # Errors
 /// As [`upper_bound`]; [`Undefined::OutOfRange`] for a sample above the lot.
@@ -59,8 +61,8 @@ pub fn lot_upper_bound(
     Ok(good)
 }
 
-/// Lower bound of the number of nonconforming items in a lot: the smallest number with which a sample as bad as this, or
-/// worse, has a probability above 1 − confidence (hypergeometric).
+/// Lower bound of the number of nonconforming items in a lot: the smallest number with which a
+/// sample as bad as this, or worse, has a probability above 1 − confidence (hypergeometric).
 ///
 /// # Errors
 /// As [`lot_upper_bound`].
@@ -75,7 +77,8 @@ pub fn lot_lower_bound(
         return Ok(0);
     };
     let possible = |marked: u64| hypergeometric_sf(below, lot, marked, n) > 1.0 - confidence;
-    // Rises with the number in the lot: impossible below the count, certain where only the others of the sample conform.
+    // Rises with the number in the lot: impossible below the count, certain where only the others
+    // of the sample conform.
     let (mut bad, mut good) = (below, lot - (n - nonconforming));
     while good - bad > 1 {
         let middle = bad + (good - bad) / 2;

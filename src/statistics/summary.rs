@@ -29,7 +29,8 @@ impl Summary {
     /// (NIST StRD univariate data sets), and sums are compensated (Neumaier 1974).
     ///
     /// # Errors
-    /// [`Undefined::TooFewValues`] for no value, [`Undefined::NotFinite`] where a value or the spread is not finite.
+    /// [`Undefined::TooFewValues`] for no value, [`Undefined::NotFinite`] where a value or the
+    /// spread is not finite.
     pub fn of(values: &[f64]) -> Result<Self, Undefined> {
         let sorted = sorted(values)?;
         let (Some(&minimum), Some(&maximum)) = (sorted.first(), sorted.last()) else {
@@ -94,11 +95,12 @@ pub fn moving_range_sigma(values: &[f64]) -> Result<f64, Undefined> {
     }
 }
 
-/// Degrees of freedom of [`moving_range_sigma`] of n values: those of the chi distribution with the same coefficient
-/// of variation; about 0.6 (n − 1), because neighbouring ranges share a value.
+/// Degrees of freedom of [`moving_range_sigma`] of n values: those of the chi distribution with the
+/// same coefficient of variation; about 0.6 (n − 1), because neighbouring ranges share a value.
 ///
-/// The variance of the mean moving range follows from E|XY| of a bivariate normal pair of correlation −½ (Nabeya
-/// 1951); it tends to 0.826 σ²/(n − 1), as in Cryer & Ryan (1990), The estimation of sigma for an X chart.
+/// The variance of the mean moving range follows from E|XY| of a bivariate normal pair of
+/// correlation −½ (Nabeya 1951); it tends to 0.826 σ²/(n − 1), as in Cryer & Ryan (1990), The
+/// estimation of sigma for an X chart.
 ///
 /// # Errors
 /// [`Undefined::TooFewValues`] below two values.
@@ -134,7 +136,8 @@ pub(super) fn median(values: &[f64]) -> Result<f64, Undefined> {
     Ok(median_of_sorted(&sorted))
 }
 
-/// First quartile, median and third quartile of ascending values, interpolated linearly (type 7 of Hyndman & Fan 1996); NaN of none.
+/// First quartile, median and third quartile of ascending values, interpolated linearly (type 7 of
+/// Hyndman & Fan 1996); NaN of none.
 pub(super) fn quartiles(sorted: &[f64]) -> (f64, f64, f64) {
     let at = |share: f64| {
         let place = share * sorted.len().saturating_sub(1) as f64;

@@ -1,7 +1,8 @@
 //! Switching between normal, tightened and reduced inspection: ISO 2859-1:1999 clause 9.
 //!
-//! A pure state machine over the lots of one supplier, part and class of nonconformity, in the order in which they were
-//! first submitted. The record of each lot gives a [`LotResult`]; [`replay`] gives the state for the next lot and why.
+//! A pure state machine over the lots of one supplier, part and class of nonconformity, in the
+//! order in which they were first submitted. The record of each lot gives a [`LotResult`];
+//! [`replay`] gives the state for the next lot and why.
 
 use super::sampling::Severity;
 
@@ -24,7 +25,8 @@ pub struct LotResult {
     pub accepted: bool,
     /// Acceptance number of the plan in force.
     pub ac: u64,
-    /// Whether the same sample would have been accepted with the AQL one step tighter; only asked where Ac ≥ 2.
+    /// Whether the same sample would have been accepted with the AQL one step tighter; only asked
+    /// where Ac ≥ 2.
     pub accepted_one_step_tighter: bool,
     /// First submission. A lot that was presented again after it was not accepted does not count.
     pub original: bool,
@@ -149,7 +151,8 @@ impl State {
         Self::at(Severity::Tightened)
     }
 
-    /// The state after one more lot. A lot that is not original changes nothing, nor does any after discontinuation.
+    /// The state after one more lot. A lot that is not original changes nothing, nor does any after
+    /// discontinuation.
     pub fn after(self, lot: LotResult) -> Step {
         if self.discontinued || !lot.original {
             return Step {

@@ -1,5 +1,6 @@
-//! Statistical tolerance intervals: an interval that holds a stated share of the population (the content) with a stated
-//! confidence. Normal populations with mean and standard deviation estimated: x̄ ± k s. ISO 16269-6:2014.
+//! Statistical tolerance intervals: an interval that holds a stated share of the population (the
+//! content) with a stated confidence. Normal populations with mean and standard deviation
+//! estimated: x̄ ± k s. ISO 16269-6:2014.
 
 use super::Undefined;
 use super::distributions::{
@@ -15,7 +16,8 @@ const MEAN_REACH: f64 = 9.0;
 /// Panels of the integral over the mean.
 const PANELS: usize = 6;
 
-/// Factor k of a one-sided interval, x̄ − k s or x̄ + k s, for n values: exact, by the noncentral t distribution.
+/// Factor k of a one-sided interval, x̄ − k s or x̄ + k s, for n values: exact, by the noncentral t
+/// distribution.
 ///
 /// ISO 16269-6:2014 Annex; NIST/SEMATECH e-Handbook 7.2.6.3. `content` and `confidence` are ratios.
 ///
@@ -31,8 +33,9 @@ pub fn one_sided_factor(n: u64, content: f64, confidence: f64) -> Result<f64, Un
 
 /// Factor k of a two-sided interval, x̄ ± k s, for n values: exact.
 ///
-/// k solves √(2n/π) ∫₀^∞ P(χ²_ν ≥ ν r(x)²/k²) e^(−nx²/2) dx = confidence, where r(x) is the half-width that holds the
-/// content about a centre that is x off: Odeh & Owen (1980); ISO 16269-6:2014.
+/// k solves √(2n/π) ∫₀^∞ P(χ²_ν ≥ ν r(x)²/k²) e^(−nx²/2) dx = confidence, where r(x) is the
+/// half-width that holds the content about a centre that is x off: Odeh & Owen (1980); ISO
+/// 16269-6:2014.
 ///
 /// # Errors
 /// As [`one_sided_factor`].
@@ -49,11 +52,13 @@ pub fn two_sided_factor(n: u64, content: f64, confidence: f64) -> Result<f64, Un
     finite(k.exp())
 }
 
-/// How many values an interval between the smallest and the largest of them needs, whatever their distribution: the
-/// smallest n with 1 − n c^(n−1) + (n − 1) cⁿ ≥ confidence (Wilks 1941); one-sided the smallest with 1 − cⁿ ≥ confidence.
+/// How many values an interval between the smallest and the largest of them needs, whatever their
+/// distribution: the smallest n with 1 − n c^(n−1) + (n − 1) cⁿ ≥ confidence (Wilks 1941);
+/// one-sided the smallest with 1 − cⁿ ≥ confidence.
 ///
 /// # Errors
-/// [`Undefined::OutOfRange`] for a ratio not in (0, 1), [`Undefined::NoSolution`] where it would be over 2^40.
+/// [`Undefined::OutOfRange`] for a ratio not in (0, 1), [`Undefined::NoSolution`] where it would be
+/// over 2^40.
 pub fn distribution_free_size(
     content: f64,
     confidence: f64,

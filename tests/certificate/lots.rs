@@ -4,6 +4,7 @@ use indexmap::IndexMap;
 use num_complex::Complex64;
 use reelgate::certificate::Curve;
 use reelgate::diagnostic::Note;
+use reelgate::lot::{OperatingCharacteristic, Step, VariablesSection};
 use reelgate::record::*;
 
 /// A small linear congruential generator (constants of Knuth's MMIX, from memory): the lots are
@@ -211,7 +212,22 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 ),
             )],
             warnings: vec![],
-            explanation: vec![],
+            explanation: vec![
+                Step {
+                    about: "code letter".into(),
+                    rule: "from lot size and inspection level".into(),
+                    source: "ISO 2859-1, table 1".into(),
+                    numbers: "lot of 4000, level II".into(),
+                    result: "L".into(),
+                },
+                Step {
+                    about: "class A".into(),
+                    rule: "reject where nonconforming parts reach Re".into(),
+                    source: "ISO 2859-1, clause 11".into(),
+                    numbers: format!("n {parts}, Ac 2, Re 3"),
+                    result: "as above".into(),
+                },
+            ],
             sampling: sampling(parts as u64),
             statistics: IndexMap::new(),
             parts: records,
@@ -339,6 +355,25 @@ pub fn hostile() -> Case {
     record.parts[3].part = "part with a very long name and spaces / slashes 004 ".repeat(3);
     record.parts[4].part = "漢字部品".into();
     record.parts[5].part = "=HYPERLINK(1)".into();
+    record.parts[2].drive = Some(0.98123);
+    if let Some(class) = record.sampling.classes.get_mut("B") {
+        class.by_variables = true;
+        class.variables = vec![VariablesSection {
+            key: "dissipation_factor@1kHz".into(),
+            n: 12,
+            form: Some("k".into()),
+            k: 1.52,
+            m: 0.0631,
+            mean: Some(0.0208),
+            standard_deviation: Some(0.0012),
+            q_lower: None,
+            q_upper: Some(24.3),
+            estimated_share: Some(1e-9),
+            normality_p_value: Some(0.37),
+            verdict: LotVerdict::Accept,
+            why: "Q of the upper limit is 24.3, at least 1.52 is demanded".into(),
+        }];
+    }
     unmeasured(&mut record.parts[6]);
     record.parts[6].attempts[0].file = format!("sweeps/{}.csv", "x".repeat(200));
     record.parts[6].faults = vec![Note::new(
@@ -645,7 +680,9 @@ fn sampling(parts: u64) -> Sampling {
         nonconforming: 0,
         undecided: 0,
         verdict: LotVerdict::Accept,
-        operating_characteristic: None,
+        operating_characteristic: OperatingCharacteristic::binomial(parts, ac, 4000),
+        variables: vec![],
+        by_variables: false,
     };
     Sampling {
         scheme: "attributes".into(),

@@ -2,6 +2,7 @@
 //!
 //! Needs qpdf and poppler-utils (pdftotext, pdffonts, pdfinfo, pdfdetach), as Debian packages them.
 
+mod archive;
 mod layout;
 mod lots;
 mod numbers;

@@ -214,3 +214,83 @@ fn page_one_answers() {
         }
     }
 }
+
+#[test]
+fn the_plain_text_says_the_same() {
+    let case = lots::rejected();
+    let text = reelgate::certificate::plain_text(&case.record, &super::sources(&case));
+    assert!(text.contains("\nVerdict: REJECT\n"));
+    for reason in &case.record.reasons {
+        assert!(text.contains(&format!("Because: {} ({})", reason.text, reason.code)));
+    }
+    let mut checked = 0;
+    for part in &case.record.parts {
+        let start = text
+            .find(&format!("\nPart {}: {}", part.part, part.verdict_name()))
+            .unwrap_or_else(|| panic!("part {}", part.part));
+        let rest = &text[start + 1..];
+        let block = &rest[..rest.find("\nPart ").unwrap_or(rest.len())];
+        for c in &case.record.limits.characteristics {
+            let line = block
+                .lines()
+                .find_map(|l| l.trim().strip_prefix(&format!("{} ", c.name)))
+                .unwrap_or_else(|| panic!("{} of {}", c.name, part.part));
+            let Some(value) = part.readings[&c.key].value else {
+                assert_eq!(line, "no value: unmeasured");
+                continue;
+            };
+            let words: Vec<&str> = line.split_whitespace().collect();
+            same(words[0], value / unit(&c.key), &c.key);
+            checked += 1;
+        }
+        for attempt in &part.attempts {
+            assert!(block.contains(&attempt.sha256) && block.contains(&attempt.file));
+        }
+    }
+    assert_eq!(checked, 124 * 5);
+    for line in case.limit_file.lines() {
+        assert!(text.contains(line), "{line}");
+    }
+}
+
+#[test]
+fn plain_text_cannot_act_on_a_terminal() {
+    let case = lots::hostile();
+    let text = reelgate::certificate::plain_text(&case.record, &super::sources(&case));
+    for c in text.chars().filter(|c| *c != '\n') {
+        assert!(!c.is_control(), "U+{:04X}", u32::from(c));
+        assert!(
+            !('\u{202a}'..='\u{202e}').contains(&c),
+            "U+{:04X}",
+            u32::from(c)
+        );
+    }
+    assert!(text.contains("<U+001B>[31mred") && text.contains("株式会社"));
+}
+
+#[test]
+fn the_chain_the_plan_and_what_variables_found_are_printed() {
+    let case = lots::rejected();
+    let text = text_of(&case);
+    let flat = |t: &str| t.split_whitespace().collect::<String>();
+    let bare = flat(&text);
+    for step in &case.record.explanation {
+        assert!(bare.contains(&flat(&step.about)), "{}", step.about);
+    }
+    assert!(text.contains("Operating characteristic of the plan"));
+    for (name, class) in &case.record.sampling.classes {
+        let title = format!("Class {name}: n {}, Ac {}", class.n, class.ac);
+        assert!(text.contains(&title), "{title}");
+        let oc = class.operating_characteristic.as_ref().expect("a curve");
+        for share in [oc.producers_risk_quality, oc.consumers_risk_quality] {
+            let shown = text
+                .split_whitespace()
+                .filter_map(|w| w.parse::<f64>().ok())
+                .any(|v| (v / (share * 100.0) - 1.0).abs() < 0.005);
+            assert!(shown, "class {name}: {share}");
+        }
+    }
+    let case = lots::hostile();
+    let bare = flat(&text_of(&case));
+    assert!(bare.contains("accept,byvariables") && bare.contains("24.3"));
+}

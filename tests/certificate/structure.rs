@@ -204,6 +204,7 @@ fn bookmarks_name_the_sections_and_reasons_lead_to_parts() {
         "Reasons",
         "Curves",
         "Distributions",
+        "Operating characteristic of the plan",
         "Statistics",
         "Parts",
         "Limit file",

@@ -2,6 +2,7 @@
 
 mod acts;
 mod archive;
+mod export;
 mod faults;
 mod many;
 mod merkle;

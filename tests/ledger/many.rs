@@ -13,6 +13,7 @@ use std::time::Duration;
 const WRITER: &str = "REELGATE_TEST_WRITER";
 
 /// Not a test of its own: appends and says so, line by line, where the environment asks for it.
+/// What is refused is said too, and ends it.
 #[test]
 fn writer() {
     let Ok(order) = std::env::var(WRITER) else {
@@ -22,14 +23,47 @@ fn writer() {
     let folder = parts.next().expect("a folder").to_owned();
     let name = parts.next().expect("a name").to_owned();
     let count: u32 = parts.next().and_then(|n| n.parse().ok()).expect("a count");
-    let mut ledger = open(Path::new(&folder));
-    for k in 0..count {
-        let lot = format!("26K-{name}-{k:04}");
-        let found = judge(&mut ledger, &lot, "accept", "", 1).expect("an entry");
+    let say = |line: String| {
         let mut out = std::io::stdout().lock();
-        writeln!(out, "recorded {lot} {}", found.entry.index).expect("written");
-        out.flush().expect("flushed");
+        writeln!(out, "{line}").and_then(|()| out.flush())
+    };
+    let opened = Ledger::open_for_writing(Path::new(&folder), signer(), time(0));
+    let done = opened.and_then(|mut ledger| {
+        for k in 0..count {
+            let lot = format!("26K-{name}-{k:04}");
+            let found = judge(&mut ledger, &lot, "accept", "", 1)?;
+            if say(format!("recorded {lot} {}", found.entry.index)).is_err() {
+                std::process::exit(4);
+            }
+        }
+        Ok(())
+    });
+    if let Err(error) = done {
+        let _ = say(format!("refused {error}"));
+        std::process::exit(3);
     }
+}
+
+/// `folder`
+const CHECKER: &str = "REELGATE_TEST_CHECKER";
+
+/// Not a test of its own: verifies and says what there is, where the environment asks for it.
+#[test]
+fn checker() {
+    let Ok(folder) = std::env::var(CHECKER) else {
+        return;
+    };
+    let folder = Path::new(&folder);
+    let report = match Ledger::open(folder) {
+        Ok(ledger) => reelgate::ledger::verify(&ledger, &[]).expect("a report"),
+        // A journal that a killed process left is rolled back by whoever writes next.
+        Err(_) => {
+            let ledger = Ledger::open_for_writing(folder, signer(), time(0)).expect("a ledger");
+            reelgate::ledger::verify(&ledger, &[]).expect("a report")
+        }
+    };
+    let said = format!("checked {} {}\n", report.size, report.proven());
+    std::io::stdout().write_all(said.as_bytes()).expect("said");
 }
 
 fn spawn(records: &Path, name: &str, count: u32) -> Child {
@@ -111,10 +145,13 @@ fn kills() -> u64 {
 
 #[test]
 fn a_killed_process_leaves_all_of_an_entry_or_nothing() {
-    let folder = tempfile::tempdir().expect("a folder");
-    let records = folder.path().join("records");
+    let mut folder = tempfile::tempdir().expect("a folder");
     let (mut acknowledged, mut interrupted) = (0, 0);
     for round in 0..kills() {
+        if round % 20 == 0 {
+            folder = tempfile::tempdir().expect("a folder");
+        }
+        let records = folder.path().join("records");
         let mut child = spawn(&records, &format!("K{round}"), 400);
         // Times spread evenly over the life of the process, from before its first entry on.
         std::thread::sleep(Duration::from_micros(

@@ -1,7 +1,8 @@
 //! What is opened, and what is refused.
 
 use crate::support::*;
-use reelgate::ledger::{Ledger, LedgerError, Signer, verify};
+use reelgate::ledger::disk::System;
+use reelgate::ledger::{KEY_FILE, Ledger, LedgerError, Signer, ledger_key, verify};
 use rusqlite::Connection;
 use std::path::{Path, PathBuf};
 
@@ -226,4 +227,73 @@ fn reading_needs_no_write_and_leaves_no_trace() {
         .map(|f| (f.clone(), std::fs::read(f).expect("bytes")))
         .collect();
     assert!(before == after);
+}
+
+/// What a process leaves that is killed in the middle of a transaction: a journal, and a database
+/// half written.
+#[test]
+fn an_interrupted_transaction_is_rolled_back_by_whoever_looks_next() {
+    let (folder, records) = prepared();
+    let left = folder.path().join("left");
+    let connection = Connection::open(database(&records)).expect("a database");
+    connection
+        .pragma_update(None, "cache_size", 1)
+        .expect("set");
+    connection.execute("BEGIN IMMEDIATE", []).expect("begun");
+    connection
+        .execute("CREATE TABLE filler (x BLOB)", [])
+        .expect("a table");
+    for _ in 0..200 {
+        connection
+            .execute("INSERT INTO filler VALUES (randomblob(3000))", [])
+            .expect("a row");
+    }
+    copy(&records, &left);
+    connection.execute("ROLLBACK", []).expect("rolled back");
+    assert!(left.join("ledger.sqlite-journal").is_file());
+    let report = report(&left, &[]);
+    assert!(report.proven() && report.size == 8, "{report:?}");
+    assert!(!left.join("ledger.sqlite-journal").exists());
+}
+
+#[test]
+fn the_key_is_made_once_and_kept_to_the_user() {
+    let folder = scratch();
+    let records = folder.path().join("records");
+    let first = || Ok(signer());
+    let second = || -> Result<Signer, LedgerError> { panic!("a second key") };
+    let key = |new: &dyn Fn() -> Result<Signer, LedgerError>| ledger_key(&records, new, &System);
+    assert_eq!(key(&first).expect("a key").verifier(), signer().verifier());
+    assert_eq!(key(&second).expect("a key").verifier(), signer().verifier());
+    let path = records.join(KEY_FILE);
+    #[cfg(unix)]
+    {
+        use std::os::unix::fs::PermissionsExt;
+        let mode = path.metadata().expect("a file").permissions().mode();
+        assert_eq!(mode & 0o777, 0o600);
+    }
+    site(&records);
+    let text = std::fs::read_to_string(&path).expect("a text");
+    std::fs::write(&path, text.replace("ledger", "ladder")).expect("written");
+    assert!(matches!(refusal(key(&second)), LedgerError::Key(_)));
+    std::fs::remove_file(&path).expect("removed");
+    assert!(matches!(refusal(key(&second)), LedgerError::Key(_)));
+}
+
+#[test]
+fn a_key_is_whole_or_not_there() {
+    for fault in [Fault::Once(28), Fault::Forever(5), Fault::Short] {
+        for at in 1.. {
+            let folder = scratch();
+            let records = folder.path().join("records");
+            let disk = Failing::new(at, fault);
+            let outcome = ledger_key(&records, &|| Ok(signer()), disk.as_ref());
+            let again = ledger_key(&records, &|| Ok(signer()), &System).expect("a key");
+            assert_eq!(again.verifier(), signer().verifier());
+            if outcome.is_ok() {
+                assert!(at > 5, "{at} steps");
+                break;
+            }
+        }
+    }
 }

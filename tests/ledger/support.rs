@@ -255,6 +255,10 @@ impl Disk for Failing {
         self.strike()?;
         System.create(path)
     }
+    fn create_private(&self, path: &Path) -> io::Result<File> {
+        self.strike()?;
+        System.create_private(path)
+    }
     fn write(&self, file: &mut File, bytes: &[u8]) -> io::Result<()> {
         if let Err(error) = self.strike() {
             if self.fault == Fault::Short {

@@ -6,8 +6,8 @@ use reelgate::statistics::capability::{
     Capability, cp_lower_bound, cpk_lower_bound, one_sided_lower_bound, worth_stating,
 };
 
-/// NIST/SEMATECH e-Handbook 6.3.2.2, flow rates, with limits 45 and 57 of our own: within-lot and overall indices
-/// recomputed independently.
+/// NIST/SEMATECH e-Handbook 6.3.2.2, flow rates, with limits 45 and 57 of our own: within-lot and
+/// overall indices recomputed independently.
 #[test]
 fn indices_of_the_handbook_flow_rates() {
     let flow = [49.6, 47.6, 49.9, 51.3, 47.8, 51.2, 52.6, 52.4, 53.6, 52.1];
@@ -34,8 +34,8 @@ fn indices_of_the_gear_data() {
     assert_near(found.ppk.unwrap(), 0.6561653791821467, 1e-12);
 }
 
-/// NIST/SEMATECH e-Handbook 6.1.6: limits 8 and 20, mean 16, s = 2: Cp 1, Cpu 0.6667, Cpl 1.3333, Cpk 0.6667. Three
-/// values with that mean and s.
+/// NIST/SEMATECH e-Handbook 6.1.6: limits 8 and 20, mean 16, s = 2: Cp 1, Cpu 0.6667, Cpl 1.3333,
+/// Cpk 0.6667. Three values with that mean and s.
 #[test]
 fn handbook_definition_example() {
     let values = [14.0, 16.0, 18.0];
@@ -88,8 +88,9 @@ fn every_bound_of_the_grid() {
     }
 }
 
-/// Montgomery, Introduction to Statistical Quality Control, process capability: n = 20, s = 1.75, limits 38 and 62,
-/// Cp 2.29, 95 % interval from 1.57 with the table's rounding (exactly 1.5649); Cpk 1.33 from 0.88 (from memory).
+/// Montgomery, Introduction to Statistical Quality Control, process capability: n = 20, s = 1.75,
+/// limits 38 and 62, Cp 2.29, 95 % interval from 1.57 with the table's rounding (exactly 1.5649);
+/// Cpk 1.33 from 0.88 (from memory).
 #[test]
 fn montgomery_intervals() {
     let cp = cp_lower_bound(24.0 / 10.5, 19.0, 0.975).unwrap();

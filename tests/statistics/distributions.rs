@@ -1,7 +1,7 @@
 //! Distribution functions against 50-digit references (mpmath, exact rationals).
 //!
-//! Tolerances are relative: 1e-10 at ordinary arguments and 1e-6 in the extreme tails are demanded; what is asserted
-//! below is a few times what was measured.
+//! Tolerances are relative: 1e-10 at ordinary arguments and 1e-6 in the extreme tails are demanded;
+//! what is asserted below is a few times what was measured.
 
 use crate::reference::{Row, rows};
 use reelgate::statistics::distributions::*;

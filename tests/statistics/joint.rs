@@ -22,8 +22,8 @@ fn data(set: &Value) -> Vec<Vec<f64>> {
         .collect()
 }
 
-/// The optimum of six published data sets: for three of them (wood, stackloss, phosphor) by trying all subsets, up to 293 930,
-/// for the others as R robustbase 0.95-0 finds it.
+/// The optimum of six published data sets: for three of them (wood, stackloss, phosphor) by trying
+/// all subsets, up to 293 930, for the others as R robustbase 0.95-0 finds it.
 #[test]
 fn smallest_determinant_of_published_data() {
     let text = std::fs::read_to_string(path("s4_mcd.json")).unwrap();
@@ -50,7 +50,8 @@ fn smallest_determinant_of_published_data() {
     }
 }
 
-/// Hawkins, Bradu & Kass (1984): points 1 to 14 of 75 are outliers, which mask one another from classical distances.
+/// Hawkins, Bradu & Kass (1984): points 1 to 14 of 75 are outliers, which mask one another from
+/// classical distances.
 #[test]
 fn artificial_data_of_hawkins_bradu_and_kass() {
     let text = std::fs::read_to_string(path("s4_mcd.json")).unwrap();
@@ -89,8 +90,9 @@ fn inside_every_limit_and_unlike_its_lot() {
     }
 }
 
-/// In normal lots the chance of any outlier is near the level asked for: 0.05 in 300 lots of 60 parts lies within 0.02 … 0.10 but for one in
-/// a thousand seeds, and the approximation of the distances' law is good to a few hundredths.
+/// In normal lots the chance of any outlier is near the level asked for: 0.05 in 300 lots of 60
+/// parts lies within 0.02 … 0.10 but for one in a thousand seeds, and the approximation of the
+/// distances' law is good to a few hundredths.
 #[test]
 fn false_alarms_keep_the_level() {
     let mut random = Random::seeded(2005);

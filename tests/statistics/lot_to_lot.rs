@@ -9,8 +9,8 @@ use reelgate::statistics::lot_to_lot::{
 use reelgate::statistics::random::Random;
 use serde_json::Value;
 
-/// NIST/SEMATECH e-Handbook 6.3.2.4: λ 0.3, target 50, s 2.0539: all averages as printed, none out; the printed limits for large t are 52.5884 and
-/// 47.4115 (with a factor rounded to 0.4201).
+/// NIST/SEMATECH e-Handbook 6.3.2.4: λ 0.3, target 50, s 2.0539: all averages as printed, none out;
+/// the printed limits for large t are 52.5884 and 47.4115 (with a factor rounded to 0.4201).
 #[test]
 fn handbook_ewma() {
     let table = rows("s9_ewma_nist.csv");
@@ -38,8 +38,9 @@ fn handbook_individuals_chart() {
     assert_within(found.lower, 45.8159, 2e-3);
 }
 
-/// Lucas & Saccucci (1990): a shift of one sigma is found after 10.5 lots on average (with limits for large t; with those of the first lots a little
-/// sooner), a stable process signals once in 500.
+/// Lucas & Saccucci (1990): a shift of one sigma is found after 10.5 lots on average (with limits
+/// for large t; with those of the first lots a little sooner), a stable process signals once in
+/// 500.
 #[test]
 fn ewma_run_lengths() {
     let mut random = Random::seeded(1990);
@@ -56,7 +57,8 @@ fn ewma_run_lengths() {
     assert_within(stable / f64::from(runs), 490.0, 100.0);
 }
 
-/// Thirteen cases by the conventions of Nelson (1984) and Western Electric (1956), from an independent program.
+/// Thirteen cases by the conventions of Nelson (1984) and Western Electric (1956), from an
+/// independent program.
 #[test]
 fn every_case_of_the_run_rules() {
     let text = std::fs::read_to_string(path("s9_run_rules.json")).unwrap();
@@ -108,7 +110,8 @@ fn every_case_of_the_run_rules() {
     assert!(signals > 20);
 }
 
-/// t = (x − x̄)/(s √(1 + 1/m)); with x̄ = 2, s = 1, m = 3 and x = 2 + t √(4/3): the 97.5 % quantile of two degrees of freedom, 4.3027, has p = 0.05.
+/// t = (x − x̄)/(s √(1 + 1/m)); with x̄ = 2, s = 1, m = 3 and x = 2 + t √(4/3): the 97.5 % quantile
+/// of two degrees of freedom, 4.3027, has p = 0.05.
 #[test]
 fn shift_of_the_mean() {
     let shifted = 2.0 + 4.302652729911275 * (4.0_f64 / 3.0).sqrt();
@@ -120,8 +123,8 @@ fn shift_of_the_mean() {
     assert_eq!(mean_shift(1.0, &[2.0; 5]), Err(Undefined::ZeroSpread));
 }
 
-/// NIST/SEMATECH e-Handbook 1.3.5.9, ceramic strength: s 65.54909 and 61.85425 of 240 each, F = 1.123037; two-sided limits 0.7756 and 1.2894 at 5 %:
-/// no change (from memory).
+/// NIST/SEMATECH e-Handbook 1.3.5.9, ceramic strength: s 65.54909 and 61.85425 of 240 each, F =
+/// 1.123037; two-sided limits 0.7756 and 1.2894 at 5 %: no change (from memory).
 #[test]
 fn change_of_the_spread() {
     let spread = |standard_deviation, n| LotSpread {

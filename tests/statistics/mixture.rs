@@ -18,7 +18,8 @@ fn data(id: &str) -> Vec<f64> {
     values.iter().map(|x| x.as_f64().unwrap()).collect()
 }
 
-/// R diptest 0.76-0; twelve of the values were also found as linear programmes. Hartigan (1985) prints 0.0595 for the faculty ratings.
+/// R diptest 0.76-0; twelve of the values were also found as linear programmes. Hartigan (1985)
+/// prints 0.0595 for the faculty ratings.
 #[test]
 fn every_dip() {
     let file = file("s10_dip_examples.json");
@@ -38,7 +39,8 @@ fn every_dip() {
     assert_within(dip_statistic(&data("statfaculty")).unwrap(), 0.0595, 5e-5);
 }
 
-/// The simulated p-values against the interpolated table of R diptest, within four standard errors of 2000 samples.
+/// The simulated p-values against the interpolated table of R diptest, within four standard errors
+/// of 2000 samples.
 #[test]
 fn p_values() {
     for (id, expected) in [
@@ -73,8 +75,8 @@ fn dips_of_random_samples() {
     }
 }
 
-/// R mclust 6.0.0 and scikit-learn 1.9.1 on five data sets. EM ends in local optima: the better of the two is to be reached or
-/// passed. mclust writes the criterion with the other sign.
+/// R mclust 6.0.0 and scikit-learn 1.9.1 on five data sets. EM ends in local optima: the better of
+/// the two is to be reached or passed. mclust writes the criterion with the other sign.
 #[test]
 fn every_mixture() {
     let file = file("s10_gmm_bic.json");
@@ -113,7 +115,8 @@ fn eruptions() {
     assert_eq!(of_second, values.iter().filter(|x| **x > 2.8).count());
 }
 
-/// A mixed reel in SI units: a tenth of the parts 8 % lower. And a reel of one kind: one population is better by the criterion.
+/// A mixed reel in SI units: a tenth of the parts 8 % lower. And a reel of one kind: one population
+/// is better by the criterion.
 #[test]
 fn mixed_and_unmixed_reels() {
     let mut random = Random::seeded(10);

@@ -45,7 +45,8 @@ fn every_sample_of_the_grid() {
     assert!(checked > 100, "{checked}");
 }
 
-/// Weights of 11 men (Shapiro & Wilk 1965) and of 20 chicks (D'Agostino & Stephens 1986, chapter 4: A² = 0.214 as printed).
+/// Weights of 11 men (Shapiro & Wilk 1965) and of 20 chicks (D'Agostino & Stephens 1986, chapter 4:
+/// A² = 0.214 as printed).
 #[test]
 fn published_examples() {
     let text = std::fs::read_to_string(path("s5_published.json")).unwrap();
@@ -64,7 +65,8 @@ fn published_examples() {
     }
 }
 
-/// NIST/SEMATECH e-Handbook 1.4.2.8, heat flow meter: prints 0.129, which is A² (1 + 4/n − 25/n²) of Stephens (1974).
+/// NIST/SEMATECH e-Handbook 1.4.2.8, heat flow meter: prints 0.129, which is A² (1 + 4/n − 25/n²)
+/// of Stephens (1974).
 #[test]
 fn handbook_heat_flow_meter() {
     let values = rows("s4_zarr13_data.csv").column("y");

@@ -23,9 +23,9 @@ fn quality_at_every_point_of_every_plan() {
     }
 }
 
-/// NIST/SEMATECH e-Handbook 6.2.3.2, plan (52, 3), and Montgomery, Introduction to Statistical Quality Control, plan
-/// (89, 2), as printed (from memory). The handbook's 0.845 at 4 % and 0.739 at 5 % are the exact 0.8460 and 0.7383 with
-/// another last digit.
+/// NIST/SEMATECH e-Handbook 6.2.3.2, plan (52, 3), and Montgomery, Introduction to Statistical
+/// Quality Control, plan (89, 2), as printed (from memory). The handbook's 0.845 at 4 % and 0.739
+/// at 5 % are the exact 0.8460 and 0.7383 with another last digit.
 #[test]
 fn published_acceptance_probabilities() {
     for row in rows("s1_oc_published_checks.csv").iter() {

@@ -11,8 +11,8 @@ const URANIUM: [f64; 8] = [
     199.31, 199.53, 200.19, 200.82, 201.92, 201.95, 202.18, 245.57,
 ];
 
-/// Rosner (1983), 54 values; NIST/SEMATECH e-Handbook 1.3.5.17.3 prints the ten steps (truncated) and finds three
-/// outliers, of which the first two mask one another: R1 < λ1 and R2 < λ2.
+/// Rosner (1983), 54 values; NIST/SEMATECH e-Handbook 1.3.5.17.3 prints the ten steps (truncated)
+/// and finds three outliers, of which the first two mask one another: R1 < λ1 and R2 < λ2.
 #[test]
 fn rosner_masking_example() {
     let values = rows("s4_rosner_data.csv").column("x");
@@ -33,7 +33,8 @@ fn rosner_masking_example() {
     assert_eq!(outliers, [6.01, 5.42, 5.34]);
 }
 
-/// 30 standard cases; the printed one-sided columns are ASTM E178 Table 1 (from memory), which differs at n = 100.
+/// 30 standard cases; the printed one-sided columns are ASTM E178 Table 1 (from memory), which
+/// differs at n = 100.
 #[test]
 fn every_critical_value_of_grubbs() {
     for row in rows("s4_grubbs_critical.csv").iter() {

@@ -50,8 +50,8 @@ fn handbook_microwave_radiation() {
     assert_within(fit.exponent, exact, 1e-6);
 }
 
-/// The quantiles go through the power and back: those of x and of x in another unit are the same, and the median of a
-/// symmetric sample of logarithms is its centre.
+/// The quantiles go through the power and back: those of x and of x in another unit are the same,
+/// and the median of a symmetric sample of logarithms is its centre.
 #[test]
 fn quantiles_of_a_lognormal_sample() {
     let values: Vec<f64> = (1..200)

@@ -17,7 +17,8 @@ fn none_in_the_sample() {
     assert_eq!(upper_bound(5, 5, 0.95), Ok(1.0));
 }
 
-/// The definition of Clopper & Pearson (1934): at the bound the count, or a more extreme one, has just 1 − confidence.
+/// The definition of Clopper & Pearson (1934): at the bound the count, or a more extreme one, has
+/// just 1 − confidence.
 #[test]
 fn the_bounds_have_their_defining_probability() {
     for (n, count) in [(20, 1), (125, 3), (200, 10), (50, 49)] {

@@ -21,7 +21,8 @@ fn assert_rate(accepted: u32, probability: f64) {
     );
 }
 
-/// 100 000 lots from a process with 2.9 % nonconforming, letter K at AQL 1.0 (n = 125, Ac 3): half of them are accepted.
+/// 100 000 lots from a process with 2.9 % nonconforming, letter K at AQL 1.0 (n = 125, Ac 3): half
+/// of them are accepted.
 #[test]
 fn attributes_from_a_process() {
     let plan = plan_for(2000, InspectionLevel::II, 1.0, Severity::Normal).unwrap();
@@ -44,7 +45,8 @@ fn attributes_from_a_process() {
     }
 }
 
-/// Samples of 20 drawn without replacement from lots of 80 that hold 6 nonconforming items, accepted at 0 and at 1.
+/// Samples of 20 drawn without replacement from lots of 80 that hold 6 nonconforming items,
+/// accepted at 0 and at 1.
 #[test]
 fn attributes_from_a_lot() {
     let (lot, nonconforming, n) = (80_usize, 6_usize, 20_usize);

@@ -9,8 +9,9 @@ use reelgate::statistics::summary::{
 
 /// NIST StRD univariate data sets: certified mean and standard deviation.
 ///
-/// The data have no exact binary form: half a unit in the last place of the largest value is what a double may lose of
-/// the spread, whatever the algorithm (NumAcc4: 8 digits left). An algorithm that adds squares loses them all.
+/// The data have no exact binary form: half a unit in the last place of the largest value is what a
+/// double may lose of the spread, whatever the algorithm (NumAcc4: 8 digits left). An algorithm
+/// that adds squares loses them all.
 #[test]
 fn nist_strd_univariate() {
     let certified = rows("s7_strd_univariate_certified.csv");

@@ -11,7 +11,8 @@ fn traces() -> Vec<Value> {
     file["traces"].as_array().unwrap().clone()
 }
 
-/// Ten histories over all the rules of ISO 2859-1:1999 clause 9, lot by lot, from an independent state machine.
+/// Ten histories over all the rules of ISO 2859-1:1999 clause 9, lot by lot, from an independent
+/// state machine.
 #[test]
 fn every_trace() {
     let traces = traces();

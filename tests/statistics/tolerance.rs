@@ -3,8 +3,8 @@
 use crate::reference::{assert_near, assert_within, path, rows};
 use reelgate::statistics::tolerance::{distribution_free_size, one_sided_factor, two_sided_factor};
 
-/// 630 cases, n = 2 to 1000; the file's two-sided factors have 10 digits, as the one-sided ones. Printed columns: Odeh & Owen (1980)
-/// and NBS Handbook 91 Table A-7 (from memory).
+/// 630 cases, n = 2 to 1000; the file's two-sided factors have 10 digits, as the one-sided ones.
+/// Printed columns: Odeh & Owen (1980) and NBS Handbook 91 Table A-7 (from memory).
 #[test]
 fn every_factor() {
     let table = rows("s6_tolerance_factors.csv");
@@ -24,8 +24,8 @@ fn every_factor() {
     }
 }
 
-/// NIST/SEMATECH e-Handbook 7.2.6.3, n = 43, content 0.90, confidence 0.99: one-sided 1.8740 as printed; the printed two-sided
-/// 2.217 is Howe's approximation of the exact 2.2228.
+/// NIST/SEMATECH e-Handbook 7.2.6.3, n = 43, content 0.90, confidence 0.99: one-sided 1.8740 as
+/// printed; the printed two-sided 2.217 is Howe's approximation of the exact 2.2228.
 #[test]
 fn handbook_example() {
     let one = one_sided_factor(43, 0.90, 0.99).unwrap();

@@ -92,7 +92,7 @@ fn iso_3951_1_example() {
     ];
     let k = 1.405;
     let m = estimated_share(k, 13);
-    assert_near(m, 0.075368925662994695, 1e-10);
+    assert_near(m, 0.075_368_925_662_994_69, 1e-10);
     let found = Plan { n: 13, k, m }
         .judge(&values, None, Some(60.0))
         .unwrap();

@@ -75,10 +75,10 @@ fn points(canvas: &mut Canvas, c: &Characteristic, x: &Axis, y: &Axis) {
             _ => {
                 let cell = ((at.0 * 3.0).round() as i64, (at.1 * 3.0).round() as i64);
                 if seen.insert(cell) {
-                    dots.push(vec![(at.0 - 0.8, at.1), (at.0 + 0.8, at.1)]);
+                    dots.push(vec![(at.0 - 1.0, at.1), (at.0 + 1.0, at.1)]);
                 }
             }
         }
     }
-    canvas.lines(dots, Pen::solid(1.6, CONFORMING));
+    canvas.lines(dots, Pen::solid(2.0, CONFORMING));
 }

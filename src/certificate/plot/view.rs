@@ -30,7 +30,8 @@ impl View {
         if window <= 0.0 {
             // A single limit: the bulk of the values sets the measure.
             let bulk = bulk(values).unwrap_or((mark_low, mark_low));
-            window = (bulk.1.max(mark_high) - bulk.0.min(mark_low)).max(mark_high.abs() * 1e-3);
+            let reach = bulk.1.max(mark_high) - bulk.0.min(mark_low);
+            window = (2.0 * reach).max(mark_high.abs() * 1e-3);
         }
         let (low, high) = data.unwrap_or((mark_low, mark_high));
         View::padded((

@@ -1,13 +1,14 @@
 //! Page one: the verdict, the lot, the sentence why, the plan with its counts, the characteristics.
 
 use super::{Characteristic, lot_ink, lot_mark, lot_word};
+use crate::certificate::canvas::Area;
 use crate::certificate::figures::{ABSENT, fixed, index, instant, plain};
-use crate::certificate::flow::{BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
-use crate::certificate::ink::{NONCONFORMING, QUIET};
+use crate::certificate::flow::{BODY, BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
+use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::plot::strip::strip;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
-use crate::record::LotRecord;
+use crate::record::{ClassSection, LotRecord};
 
 const WORD: Style = Style::bold(42.0);
 const SENTENCE: Style = Style::regular(12.5);
@@ -98,9 +99,12 @@ fn full_width(flow: &mut Flow, identity: Vec<(&'static str, String)>) {
     table.set(flow);
 }
 
-/// The first reason in full; where there are more, how many and where.
+/// Most lines of reasons after the first on page one.
+const FURTHER: usize = 8;
+
+/// The first reason in full, further ones as far as there is room, and how many more and where.
 fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
-    let Some(first) = record.reasons.first() else {
+    let Some((first, others)) = record.reasons.split_first() else {
         return;
     };
     for line in wrap(&first.text, SENTENCE, room) {
@@ -108,20 +112,37 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
         flow.page()
             .text((area.left, area.top + 11.5), SENTENCE, &line);
     }
-    let more = record.reasons.len() - 1;
-    if more > 0 {
-        let plural = if more == 1 { "reason" } else { "reasons" };
+    let mut left = FURTHER;
+    let mut shown = 0;
+    for reason in others {
+        let lines = wrap(&reason.text, BODY, room);
+        if lines.len() > left {
+            break;
+        }
+        left -= lines.len();
+        shown += 1;
         flow.gap(3.0);
-        let area = flow.take(BODY_LEADING);
-        let text = format!("and {more} more {plural}: see Reasons");
-        let style = Style::regular(10.5).ink(crate::certificate::ink::ACCEPT);
-        let wide = flow.page().text((area.left, area.top + 9.5), style, &text);
-        let target = crate::certificate::canvas::Area {
-            right: area.left + wide,
-            ..area
-        };
-        flow.page().link(target, "reasons");
+        for line in lines {
+            let area = flow.take(BODY_LEADING);
+            flow.page().text((area.left, area.top + 9.5), BODY, &line);
+        }
     }
+    let more = others.len() - shown;
+    if more == 0 {
+        return;
+    }
+    let plural = if more == 1 { "reason" } else { "reasons" };
+    flow.gap(3.0);
+    let area = flow.take(BODY_LEADING);
+    let text = format!("and {more} more {plural}: see Reasons");
+    let wide = flow
+        .page()
+        .text((area.left, area.top + 9.5), BODY.ink(ACCEPT), &text);
+    let target = Area {
+        right: area.left + wide,
+        ..area
+    };
+    flow.page().link(target, "reasons");
 }
 
 /// What names the lot; only what the record has.
@@ -170,7 +191,15 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
         Column::new("Class alone", Align::Left, Span::Share(1.0)),
     ]);
     for (name, class) in &s.classes {
-        let over = class.nonconforming > class.ac;
+        let over = class.nonconforming > class.ac && !class.by_variables;
+        // Where variables decided, acceptance numbers did not.
+        let decisive = |number: u64| {
+            if class.by_variables {
+                ABSENT.to_owned()
+            } else {
+                number.to_string()
+            }
+        };
         let mut count = Cell::text(class.nonconforming.to_string());
         if over {
             count = count.bold().ink(NONCONFORMING);
@@ -185,11 +214,11 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
                     .unwrap_or_else(|| ABSENT.to_owned()),
             ),
             Cell::text(class.n.to_string()),
-            Cell::text(class.ac.to_string()),
-            Cell::text(class.re.to_string()),
+            Cell::text(decisive(class.ac)),
+            Cell::text(decisive(class.re)),
             count,
             Cell::text(class.undecided.to_string()),
-            Cell::text(lot_word(class.verdict))
+            Cell::text(by(class))
                 .mark(Some(lot_mark(class.verdict)))
                 .ink(lot_ink(class.verdict)),
         ]);
@@ -197,6 +226,16 @@ fn sampling(flow: &mut Flow, record: &LotRecord) {
     table.set(flow);
     flow.y += 4.0;
     flow.paragraph_of(&plan(record), SMALL, SMALL_LEADING);
+}
+
+/// A class's own verdict, with how it was had where that is not by counting.
+fn by(class: &ClassSection) -> String {
+    let word = lot_word(class.verdict);
+    if class.by_variables {
+        format!("{word}, by variables")
+    } else {
+        word.to_owned()
+    }
 }
 
 /// The plan and the counts in words.

@@ -7,6 +7,7 @@ pub(super) mod files;
 pub(super) mod integrity;
 pub(super) mod order;
 pub(super) mod parts;
+pub(super) mod plan;
 pub(super) mod reasons;
 pub(super) mod signatures;
 pub(super) mod sources;

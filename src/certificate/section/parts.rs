@@ -1,7 +1,7 @@
 //! The parts table: every part, every try, every reading with its uncertainty.
 
 use super::{Characteristic, part_anchor, part_ink, part_mark, part_word};
-use crate::certificate::figures::ABSENT;
+use crate::certificate::figures::{ABSENT, significant};
 use crate::certificate::flow::Flow;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::record::{AttemptRecord, LotRecord, PartRecord, PartVerdict, ReadingRecord};
@@ -18,7 +18,8 @@ pub(in crate::certificate) fn parts(
     flow.heading("Parts", 120.0);
     flow.small(
         "Value ± standard uncertainty, rounded to two digits of it; limits are judged on unrounded values. A part's \
-         readings are those of the try that counts; earlier tries stand above it.",
+         readings are those of the try that counts; earlier tries stand above it. Drive: voltage across the part, V rms, \
+         where the sweep carries it.",
     );
     let groups = characteristics.chunks(SIDE_BY_SIDE);
     let count = groups.len();
@@ -37,6 +38,10 @@ fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
         Column::new("Try", Align::Right, Span::Natural),
         Column::new("Verdict", Align::Left, Span::Natural),
     ];
+    let drive = record.parts.iter().any(|p| p.drive.is_some());
+    if drive {
+        columns.push(Column::new("Drive", Align::Decimal, Span::Natural).unit("V"));
+    }
     columns.extend(
         group
             .iter()
@@ -48,10 +53,10 @@ fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
     for part in &record.parts {
         let counts = counting(part);
         if part.attempts.is_empty() {
-            table.row_at(part_anchor(&part.part), row(part, None, true, group));
+            table.row_at(part_anchor(&part.part), row(part, None, true, drive, group));
         }
         for (index, attempt) in part.attempts.iter().enumerate() {
-            let cells = row(part, Some(attempt), Some(index) == counts, group);
+            let cells = row(part, Some(attempt), Some(index) == counts, drive, group);
             if index == 0 {
                 table.row_at(part_anchor(&part.part), cells);
             } else {
@@ -74,6 +79,7 @@ fn row<'a>(
     part: &PartRecord,
     attempt: Option<&AttemptRecord>,
     counts: bool,
+    drive: bool,
     group: &[Characteristic],
 ) -> Vec<Cell<'a>> {
     let verdict = attempt
@@ -90,6 +96,12 @@ fn row<'a>(
         Cell::text(attempt.map_or_else(|| ABSENT.to_owned(), |a| a.attempt.to_string())),
         word,
     ];
+    if drive {
+        let level = part.drive.filter(|_| counts);
+        cells.push(Cell::text(
+            level.map_or_else(String::new, |v| significant(v, 3)),
+        ));
+    }
     for c in group {
         let reading = part.readings.get(&c.bound.key).filter(|_| counts);
         cells.push(reading.map_or_else(Cell::default, |r| cell(r, c)));

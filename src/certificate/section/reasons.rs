@@ -4,7 +4,7 @@ use super::{characteristics, part_anchor, part_ink, part_mark, part_word};
 use crate::certificate::canvas::Area;
 use crate::certificate::figures::ABSENT;
 use crate::certificate::flow::{BODY, BODY_LEADING, Flow, SMALL};
-use crate::certificate::ink::{ACCEPT, NONCONFORMING};
+use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::width;
 use crate::diagnostic::Note;
@@ -22,6 +22,7 @@ pub(in crate::certificate) fn reasons(flow: &mut Flow, record: &LotRecord) {
         note(flow, reason, &names);
     }
     not_conforming(flow, record);
+    chain(flow, record);
     if !record.warnings.is_empty() {
         flow.subheading("Warnings that decided nothing", 30.0);
         for warning in &record.warnings {
@@ -80,6 +81,32 @@ fn named_parts<'n>(text: &str, names: &BTreeSet<&'n str>) -> Vec<&'n str> {
     out
 }
 
+/// The chain from numbers to verdict.
+fn chain(flow: &mut Flow, record: &LotRecord) {
+    if record.explanation.is_empty() {
+        return;
+    }
+    flow.subheading("How the verdict follows", 60.0);
+    let mut table = Table::new(vec![
+        Column::new("About", Align::Left, Span::Share(0.9)),
+        Column::new("Rule", Align::Left, Span::Share(1.5)),
+        Column::new("Numbers", Align::Left, Span::Share(1.5)),
+        Column::new("Result", Align::Left, Span::Share(1.0)),
+        Column::new("Source", Align::Left, Span::Share(1.1)),
+    ]);
+    table.size = 8.6;
+    for step in &record.explanation {
+        table.row(vec![
+            Cell::text(step.about.clone()).bold(),
+            Cell::text(step.rule.clone()),
+            Cell::text(step.numbers.clone()),
+            Cell::text(step.result.clone()),
+            Cell::text(step.source.clone()).ink(QUIET),
+        ]);
+    }
+    table.set(flow);
+}
+
 /// What is wrong with each part that is not conforming.
 fn not_conforming(flow: &mut Flow, record: &LotRecord) {
     let parts: Vec<&PartRecord> = record
@@ -119,10 +146,7 @@ fn not_conforming(flow: &mut Flow, record: &LotRecord) {
 
 /// The readings outside their limits, and the faults.
 pub(in crate::certificate) fn findings(record: &LotRecord, part: &PartRecord) -> String {
-    let mut out: Vec<String> = Vec::new();
-    for c in characteristics_of(record, part) {
-        out.push(c);
-    }
+    let mut out = readings_outside(record, part);
     out.extend(part.faults.iter().map(|f| f.text.clone()));
     if out.is_empty() {
         return ABSENT.to_owned();
@@ -130,7 +154,8 @@ pub(in crate::certificate) fn findings(record: &LotRecord, part: &PartRecord) ->
     out.join("; ")
 }
 
-fn characteristics_of(record: &LotRecord, part: &PartRecord) -> Vec<String> {
+/// The readings that are not conforming, each with value, limits and verdict.
+fn readings_outside(record: &LotRecord, part: &PartRecord) -> Vec<String> {
     record
         .limits
         .characteristics
@@ -181,18 +206,24 @@ fn characteristics_of(record: &LotRecord, part: &PartRecord) -> Vec<String> {
         .collect()
 }
 
-fn conditions(flow: &mut Flow, record: &LotRecord) {
-    flow.subheading("Limits and conditions in force", 60.0);
+/// Limit file, decision rule and acceptance in words.
+pub(in crate::certificate) fn limits_in_force(record: &LotRecord) -> String {
     let limits = &record.limits;
-    flow.paragraph(&format!(
+    format!(
         "Limit file {} revision {}; decision rule {}, coverage factor {}; acceptance {}.",
         limits.part,
         limits.revision,
         limits.decision_rule.replace('_', " "),
         crate::certificate::figures::plain(limits.coverage_factor),
         limits.acceptance
-    ));
+    )
+}
+
+fn conditions(flow: &mut Flow, record: &LotRecord) {
+    flow.subheading("Limits and conditions in force", 60.0);
+    flow.paragraph(&limits_in_force(record));
     bounds(flow, record);
+    let limits = &record.limits;
     if limits.conditions.is_empty() {
         return;
     }

@@ -4,6 +4,7 @@ use super::{Characteristic, part_anchor};
 use crate::certificate::figures::{ABSENT, index};
 use crate::certificate::flow::Flow;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
+use indexmap::IndexMap;
 
 pub(in crate::certificate) fn statistics(flow: &mut Flow, characteristics: &[Characteristic]) {
     flow.heading("Statistics", 90.0);
@@ -111,14 +112,16 @@ fn outliers(flow: &mut Flow, characteristics: &[Characteristic]) {
     table.set(flow);
 }
 
-/// Why a statistic is missing.
+/// Why a statistic is missing: each sentence once, with the characteristics that it is about.
 fn notes(flow: &mut Flow, characteristics: &[Characteristic]) {
+    let mut found: IndexMap<(&str, &str), Vec<&str>> = IndexMap::new();
     for c in characteristics {
-        for warning in c.statistics.iter().flat_map(|s| &s.warnings) {
-            flow.small(&format!(
-                "{}: {} ({})",
-                c.bound.name, warning.text, warning.code
-            ));
+        for note in c.statistics.iter().flat_map(|s| &s.warnings) {
+            let names = found.entry((&note.text, &note.code)).or_default();
+            names.push(&c.bound.name);
         }
+    }
+    for ((text, code), names) in found {
+        flow.small(&format!("{}: {text} ({code})", names.join(", ")));
     }
 }

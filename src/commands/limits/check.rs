@@ -3,6 +3,10 @@
 use super::files::{self, Valid};
 use super::{INVALID, OK};
 use crate::diagnostic::{Faults, as_json, printable, wrap};
+use crate::judgement::abilities;
+use crate::limits::Limits;
+use crate::quantity::{engineering, shortest};
+use crate::station::Station;
 use serde_json::json;
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -15,6 +19,7 @@ struct Checked {
 /// Checks files and folders; without any, the limits of the site.
 pub fn run(
     paths: &[PathBuf],
+    station: Option<&Path>,
     site: &Path,
     json: bool,
     out: &mut dyn Write,
@@ -23,11 +28,41 @@ pub fn run(
     let default = [site.join("limits")];
     let paths = if paths.is_empty() { &default } else { paths };
     let checked: Vec<Checked> = paths.iter().flat_map(|path| check(path)).collect();
+    let mut checked = checked;
+    let bench = match station.map(files::read) {
+        Some(Ok(Valid::Station(station))) => Some(station),
+        Some(Ok(_)) => {
+            let path = station.unwrap_or(Path::new("")).display().to_string();
+            let found = "a file that describes no station";
+            let faults = Faults::of_file(&path, "not_a_station", found, "a station file", None);
+            checked.push(Checked {
+                path,
+                result: Err(faults),
+            });
+            None
+        }
+        Some(Err(faults)) => {
+            let path = station.unwrap_or(Path::new("")).display().to_string();
+            checked.push(Checked {
+                path,
+                result: Err(faults),
+            });
+            None
+        }
+        None => None,
+    };
     let invalid = checked.iter().filter(|c| c.result.is_err()).count();
     if json {
-        write_json(&checked, invalid, out)?;
+        write_json(&checked, bench.as_deref(), invalid, out)?;
     } else {
         write_text(&checked, invalid, out, err)?;
+        if let Some(station) = &bench {
+            for file in &checked {
+                if let Ok(Valid::Limits(limits)) = &file.result {
+                    write_abilities(limits, station, out)?;
+                }
+            }
+        }
     }
     Ok(if invalid == 0 { OK } else { INVALID })
 }
@@ -84,6 +119,46 @@ fn write_text(
     writeln!(out, "{} valid, {invalid} invalid", count(valid, "file"))
 }
 
+/// What the bench can make of each limit.
+fn write_abilities(limits: &Limits, station: &Station, out: &mut dyn Write) -> io::Result<()> {
+    writeln!(
+        out,
+        "\n{} on {}",
+        printable(&limits.part),
+        printable(&station.name)
+    )?;
+    for ability in abilities(limits, station) {
+        let unit = limits
+            .bounds
+            .iter()
+            .find(|b| b.key == ability.key)
+            .map_or("", |b| b.characteristic.unit());
+        let share = match (ability.expanded_uncertainty, ability.ratio) {
+            (Some(u), Some(ratio)) => format!(
+                "±{} at {}, {:.0} % of the room",
+                engineering(u, unit, 2),
+                shortest(ability.limit, unit),
+                100.0 * ratio
+            ),
+            _ => format!("at {}", shortest(ability.limit, unit)),
+        };
+        let why = if ability.why.is_empty() {
+            String::new()
+        } else {
+            format!(" ({})", ability.why)
+        };
+        let line = format!(
+            "  {}: {}: {share}{why}",
+            ability.key,
+            ability.ability.words()
+        );
+        for line in wrap(&printable(&line), 78) {
+            writeln!(out, "{line}")?;
+        }
+    }
+    Ok(())
+}
+
 fn count(number: usize, what: &str) -> String {
     let ending = if number == 1 { "" } else { "s" };
     format!("{number} {what}{ending}")
@@ -103,8 +178,13 @@ fn words(valid: &Valid) -> String {
     printable(&text)
 }
 
-fn write_json(checked: &[Checked], invalid: usize, out: &mut dyn Write) -> io::Result<()> {
-    let files: Vec<_> = checked.iter().map(file_json).collect();
+fn write_json(
+    checked: &[Checked],
+    bench: Option<&Station>,
+    invalid: usize,
+    out: &mut dyn Write,
+) -> io::Result<()> {
+    let files: Vec<_> = checked.iter().map(|file| file_json(file, bench)).collect();
     let all = json!({
         "valid": invalid == 0,
         "files": files,
@@ -113,7 +193,7 @@ fn write_json(checked: &[Checked], invalid: usize, out: &mut dyn Write) -> io::R
     writeln!(out)
 }
 
-fn file_json(file: &Checked) -> serde_json::Value {
+fn file_json(file: &Checked, bench: Option<&Station>) -> serde_json::Value {
     let kind = match &file.result {
         Ok(Valid::Limits(_)) => Some("limits"),
         Ok(Valid::Station(_)) => Some("station"),
@@ -121,5 +201,10 @@ fn file_json(file: &Checked) -> serde_json::Value {
         Err(_) => None,
     };
     let faults = file.result.as_ref().err().map_or(json!([]), as_json);
-    json!({"path": file.path, "valid": file.result.is_ok(), "kind": kind, "faults": faults})
+    let mut all =
+        json!({"path": file.path, "valid": file.result.is_ok(), "kind": kind, "faults": faults});
+    if let (Ok(Valid::Limits(limits)), Some(station)) = (&file.result, bench) {
+        all["bench"] = json!(abilities(limits, station));
+    }
+    all
 }

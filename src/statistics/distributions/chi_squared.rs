@@ -39,7 +39,8 @@ pub fn poisson_cdf(k: u64, mean: f64) -> f64 {
     gamma_tails(k as f64 + 1.0, mean).upper
 }
 
-/// E χ / √ν with ν > 0 degrees of freedom, √(2/ν) Γ((ν + 1)/2) / Γ(ν/2): the constant c4 of a sample of ν + 1.
+/// E χ / √ν with ν > 0 degrees of freedom, √(2/ν) Γ((ν + 1)/2) / Γ(ν/2): the constant c4 of a
+/// sample of ν + 1.
 pub fn chi_mean_ratio(nu: f64) -> f64 {
     // With x = ν/2, Γ(x + ½)/Γ(x)/√x by Stirling's formula for Γ(x + 3/2) and Γ(x + 1).
     let x = 0.5 * nu;

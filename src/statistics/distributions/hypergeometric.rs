@@ -2,7 +2,8 @@
 
 use super::incomplete::{Tails, binomial_density};
 
-/// P(X ≤ k): at most k of the `marked` items of a lot are in a sample of n. NaN where `marked` or n exceeds the lot.
+/// P(X ≤ k): at most k of the `marked` items of a lot are in a sample of n. NaN where `marked` or n
+/// exceeds the lot.
 pub fn hypergeometric_cdf(k: u64, lot: u64, marked: u64, n: u64) -> f64 {
     tails(k, lot, marked, n).lower
 }

@@ -1,8 +1,9 @@
 //! The noncentral t distribution.
 //!
-//! T = (Z + δ)/Y with Y = √(χ²_ν/ν): P(T ≤ t) = ∫ Φ(ty − δ) f_Y(y) dy. Both tails are integrated as such: the integrand is
-//! positive and, for ν ≥ 1, log-concave, so that it can be followed into any tail without cancellation. (Series in
-//! incomplete beta functions, as AS 243, lose their digits in the far tail and for large δ.)
+//! T = (Z + δ)/Y with Y = √(χ²_ν/ν): P(T ≤ t) = ∫ Φ(ty − δ) f_Y(y) dy. Both tails are integrated as
+//! such: the integrand is positive and, for ν ≥ 1, log-concave, so that it can be followed into any
+//! tail without cancellation. (Series in incomplete beta functions, as AS 243, lose their digits in
+//! the far tail and for large δ.)
 
 use super::incomplete::stirling_remainder;
 use super::normal::normal_ln_cdf;

@@ -15,9 +15,11 @@ pub struct Dip {
 
 /// Tests a sample for having a single peak.
 ///
-/// Hartigan & Hartigan (1985), The dip test of unimodality. The uniform population is the least favourable with one peak; its law is
-/// simulated here at the size in hand, from that many samples of that seed, so that p counts itself among them and is never 0. For other
-/// single-peaked populations the p-value is too large: the test errs towards one population. Readings rounded to a coarse step raise the dip.
+/// Hartigan & Hartigan (1985), The dip test of unimodality. The uniform population is the least
+/// favourable with one peak; its law is simulated here at the size in hand, from that many samples
+/// of that seed, so that p counts itself among them and is never 0. For other single-peaked
+/// populations the p-value is too large: the test errs towards one population. Readings rounded to
+/// a coarse step raise the dip.
 ///
 /// # Errors
 /// [`Undefined::TooFewValues`] below 4, [`Undefined::NotFinite`].
@@ -56,9 +58,10 @@ pub fn dip_statistic(values: &[f64]) -> Result<f64, Undefined> {
 
 /// The dip of ascending values, by the modal interval of Hartigan & Hartigan (1985), section 3.
 ///
-/// The nearest unimodal distribution is convex up to the modal interval, straight in it and concave beyond. The interval begins as the whole
-/// sample and is narrowed to where the greatest convex minorant and the least concave majorant lie farthest apart; left and right of it, the
-/// dip is at least the distance of the step function from the minorant and the majorant.
+/// The nearest unimodal distribution is convex up to the modal interval, straight in it and concave
+/// beyond. The interval begins as the whole sample and is narrowed to where the greatest convex
+/// minorant and the least concave majorant lie farthest apart; left and right of it, the dip is at
+/// least the distance of the step function from the minorant and the majorant.
 fn of_sorted(values: &[f64]) -> f64 {
     let n = values.len();
     let mut dip: f64 = 1.0;
@@ -87,7 +90,8 @@ enum Side {
     Above,
 }
 
-/// Indices of the knots of the convex minorant (below) or concave majorant (above) of the points (value, index), from low to high.
+/// Indices of the knots of the convex minorant (below) or concave majorant (above) of the points
+/// (value, index), from low to high.
 fn hull(values: &[f64], low: usize, high: usize, side: Side) -> Vec<usize> {
     let mut knots: Vec<usize> = Vec::new();
     for next in low..=high {
@@ -113,14 +117,16 @@ fn cross(values: &[f64], a: usize, b: usize, c: usize) -> f64 {
     (x(b) - x(a)) * (c - b) as f64 - (x(c) - x(b)) * (b - a) as f64
 }
 
-/// Where majorant and minorant lie farthest apart: the knots of the minorant and of the majorant around it, and how far, in steps.
+/// Where majorant and minorant lie farthest apart: the knots of the minorant and of the majorant
+/// around it, and how far, in steps.
 struct Gap {
     width: f64,
     low: usize,
     high: usize,
 }
 
-/// The majorant runs through the upper ends of the steps (index + 1), the minorant through the lower (index): one step more than between indices.
+/// The majorant runs through the upper ends of the steps (index + 1), the minorant through the
+/// lower (index): one step more than between indices.
 fn widest_gap(values: &[f64], minorant: &[usize], majorant: &[usize]) -> Gap {
     let whole = |knots: &[usize]| (knots.first().copied(), knots.last().copied());
     let (first, last) = match whole(minorant) {
@@ -181,7 +187,8 @@ fn line(values: &[f64], a: usize, b: usize, at: usize) -> f64 {
     a as f64 + (x(at) - x(a)) / run * (b - a) as f64
 }
 
-/// The largest distance, in steps, of the step function from a hull, over the stretches of the hull within the range; at least 1.
+/// The largest distance, in steps, of the step function from a hull, over the stretches of the hull
+/// within the range; at least 1.
 fn deviation(values: &[f64], hull: &[usize], range: (usize, usize), side: Side) -> f64 {
     let mut largest: f64 = 1.0;
     for stretch in hull.windows(2) {

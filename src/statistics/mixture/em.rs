@@ -11,8 +11,8 @@ pub const MIXTURE_SIZE_MIN: u64 = 10;
 /// A component must hold at least this many values, or it describes a few outliers and not a population.
 const COMPONENT_SIZE_MIN: f64 = 3.0;
 
-/// Smallest standard deviation of a component in those of the whole sample: the likelihood grows without bound where one shrinks onto equal
-/// values.
+/// Smallest standard deviation of a component in those of the whole sample: the likelihood grows
+/// without bound where one shrinks onto equal values.
 const SPREAD_FLOOR: f64 = 0.01;
 
 /// Shares of the sorted sample at which the starts divide it.
@@ -24,8 +24,9 @@ const FOLLOWED: usize = 4;
 
 const ITERATIONS_MAX: usize = 2000;
 
-/// Iteration ends where the log likelihood, by the ratio of its last two gains (Aitken), has no more than this to gain. Near the end of a mixture
-/// that fits nothing the gains shrink by less than a thousandth each; plain EM would go on for ever.
+/// Iteration ends where the log likelihood, by the ratio of its last two gains (Aitken), has no
+/// more than this to gain. Near the end of a mixture that fits nothing the gains shrink by less
+/// than a thousandth each; plain EM would go on for ever.
 const GAIN_LEFT: f64 = 1e-6;
 
 /// Whether the two components share a standard deviation.
@@ -54,28 +55,31 @@ pub struct Mixture {
     pub components: [Component; 2],
     #[allow(missing_docs)]
     pub log_likelihood: f64,
-    /// Bayesian information criterion, −2 ln L + p ln n with p = 4 (equal spread) or 5: the smaller, the better.
+    /// Bayesian information criterion, −2 ln L + p ln n with p = 4 (equal spread) or 5: the
+    /// smaller, the better.
     pub bic: f64,
     /// For every value of the sample, the probability that it is of the second population.
     pub second: Vec<f64>,
 }
 
 impl Mixture {
-    /// Distance of the means in units of the root mean square of the two standard deviations: above 2 the populations are apart (Ashman, Bird &
-    /// Zepf 1994).
+    /// Distance of the means in units of the root mean square of the two standard deviations: above
+    /// 2 the populations are apart (Ashman, Bird & Zepf 1994).
     pub fn separation(&self) -> f64 {
         let [a, b] = self.components;
         let square = 0.5 * (a.standard_deviation.powi(2) + b.standard_deviation.powi(2));
         (b.mean - a.mean) / square.sqrt()
     }
 
-    /// Share of the values expected to be put into the wrong one of the two populations by the nearer-probability rule, for equal weights and spreads.
+    /// Share of the values expected to be put into the wrong one of the two populations by the
+    /// nearer-probability rule, for equal weights and spreads.
     pub fn overlap(&self) -> f64 {
         normal_cdf(-0.5 * self.separation())
     }
 }
 
-/// The criterion of a single normal population, −2 ln L + 2 ln n, to compare a mixture's with. Schwarz (1978).
+/// The criterion of a single normal population, −2 ln L + 2 ln n, to compare a mixture's with.
+/// Schwarz (1978).
 ///
 /// # Errors
 /// [`Undefined::TooFewValues`] below 2, [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
@@ -86,13 +90,14 @@ pub fn one_normal_bic(values: &[f64]) -> Result<f64, Undefined> {
     Ok(-2.0 * log_likelihood + 2.0 * n.ln())
 }
 
-/// Fits a mixture of two normal populations: EM of Dempster, Laird & Rubin (1977) from 19 divisions of the sorted sample, of which the
-/// best four are followed and the best end taken.
-/// An end with a component of fewer than three values, or of less than a hundredth of the sample's standard deviation, does not count.
+/// Fits a mixture of two normal populations: EM of Dempster, Laird & Rubin (1977) from 19 divisions
+/// of the sorted sample, of which the best four are followed and the best end taken. An end with a
+/// component of fewer than three values, or of less than a hundredth of the sample's standard
+/// deviation, does not count.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below [`MIXTURE_SIZE_MIN`], [`Undefined::ZeroSpread`], [`Undefined::NotFinite`], [`Undefined::NoSolution`] where no
-/// end counts.
+/// [`Undefined::TooFewValues`] below [`MIXTURE_SIZE_MIN`], [`Undefined::ZeroSpread`],
+/// [`Undefined::NotFinite`], [`Undefined::NoSolution`] where no end counts.
 pub fn two_normals(values: &[f64], spread: Spread) -> Result<Mixture, Undefined> {
     if (values.len() as u64) < MIXTURE_SIZE_MIN {
         return Err(Undefined::TooFewValues {
@@ -227,7 +232,8 @@ fn climb(values: &[f64], spread: Spread, start: [Component; 2], iterations: usiz
     })
 }
 
-/// What is left to gain if the gains go on shrinking by the ratio of the last two; no end in sight while they do not shrink.
+/// What is left to gain if the gains go on shrinking by the ratio of the last two; no end in sight
+/// while they do not shrink.
 fn gain_left(gain: f64, gain_before: f64) -> f64 {
     if gain <= f64::EPSILON {
         return 0.0;

@@ -1,7 +1,8 @@
 //! Two populations in one sample.
 //!
-//! [`dip_test`] asks whether the sample can come from any population with a single peak; [`two_normals`] fits a mixture of two normal
-//! populations and says by an information criterion whether it describes the sample better than one.
+//! [`dip_test`] asks whether the sample can come from any population with a single peak;
+//! [`two_normals`] fits a mixture of two normal populations and says by an information criterion
+//! whether it describes the sample better than one.
 
 mod dip;
 mod em;

@@ -83,8 +83,8 @@ fn check(values: &[f64], outliers_max: usize, alpha: f64) -> Result<(), Undefine
     Ok(())
 }
 
-/// The position in `left` of the value farthest from the mean, the first of equals, with its step; `None` where all are
-/// equal.
+/// The position in `left` of the value farthest from the mean, the first of equals, with its step;
+/// `None` where all are equal.
 fn most_extreme(left: &[(usize, f64)], alpha: f64) -> Result<Option<(usize, EsdStep)>, Undefined> {
     let values: Vec<f64> = left.iter().map(|&(_, x)| x).collect();
     let summary = Summary::of(&values)?;

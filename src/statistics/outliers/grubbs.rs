@@ -28,12 +28,13 @@ pub struct Grubbs {
 
 /// Tests whether the most extreme value is an outlier, at significance level alpha.
 ///
-/// Grubbs (1969); NIST/SEMATECH e-Handbook 1.3.5.17.1. The other values are to be near normal. For more than one
-/// suspect use [`generalized_esd`](super::generalized_esd): two outliers hide one another from this test.
+/// Grubbs (1969); NIST/SEMATECH e-Handbook 1.3.5.17.1. The other values are to be near normal. For
+/// more than one suspect use [`generalized_esd`](super::generalized_esd): two outliers hide one
+/// another from this test.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below 3, [`Undefined::OutOfRange`] for alpha not in (0, 1), [`Undefined::ZeroSpread`],
-/// [`Undefined::NotFinite`].
+/// [`Undefined::TooFewValues`] below 3, [`Undefined::OutOfRange`] for alpha not in (0, 1),
+/// [`Undefined::ZeroSpread`], [`Undefined::NotFinite`].
 pub fn grubbs(values: &[f64], side: Side, alpha: f64) -> Result<Grubbs, Undefined> {
     if values.len() < 3 {
         return Err(Undefined::TooFewValues {

@@ -7,8 +7,9 @@ use crate::statistics::distributions::{chi_squared_cdf, chi_squared_quantile, f_
 /// Points needed for each characteristic.
 pub const JOINT_SIZE_PER_CHARACTERISTIC: u64 = 10;
 
-/// Share of the points in the core from which distances are taken: 0.75, which withstands a quarter of outliers.
-/// (Rousseeuw & Van Driessen 1999; with one half, the distances of good points scatter far more.)
+/// Share of the points in the core from which distances are taken: 0.75, which withstands a quarter
+/// of outliers. (Rousseeuw & Van Driessen 1999; with one half, the distances of good points scatter
+/// far more.)
 const CORE: f64 = 0.75;
 
 /// The outcome of the joint test.
@@ -22,16 +23,18 @@ pub struct Joint {
     pub outliers: Vec<usize>,
 }
 
-/// Tests points of p characteristics for outliers at an overall significance level alpha: in a normal lot the chance of finding any is about
-/// alpha.
+/// Tests points of p characteristics for outliers at an overall significance level alpha: in a
+/// normal lot the chance of finding any is about alpha.
 ///
-/// Distances by the minimum covariance determinant (Rousseeuw 1985), made consistent by (h/n)/P(χ²_{p+2} ≤ χ²_{p, h/n}). Each is held against
-/// p m/(m − p + 1) times the F quantile of p and m − p + 1 degrees of freedom at alpha/n, with the m of Hardin & Rocke (2005): the
-/// chi-squared quantile would call good points of a small lot outliers. The seed is that of the random starts.
+/// Distances by the minimum covariance determinant (Rousseeuw 1985), made consistent by
+/// (h/n)/P(χ²_{p+2} ≤ χ²_{p, h/n}). Each is held against p m/(m − p + 1) times the F quantile of p
+/// and m − p + 1 degrees of freedom at alpha/n, with the m of Hardin & Rocke (2005): the
+/// chi-squared quantile would call good points of a small lot outliers. The seed is that of the
+/// random starts.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below ten points a characteristic, [`Undefined::Collinear`], [`Undefined::NotFinite`],
-/// [`Undefined::OutOfRange`].
+/// [`Undefined::TooFewValues`] below ten points a characteristic, [`Undefined::Collinear`],
+/// [`Undefined::NotFinite`], [`Undefined::OutOfRange`].
 pub fn joint_outliers(points: &[Vec<f64>], alpha: f64, seed: u64) -> Result<Joint, Undefined> {
     let p = points.first().map_or(0, Vec::len);
     let needed = JOINT_SIZE_PER_CHARACTERISTIC * (p.max(1) as u64);
@@ -81,8 +84,9 @@ struct DistanceLaw {
 }
 
 impl DistanceLaw {
-    /// Asymptotic variance of the core's covariance: Croux & Haesbroeck (1999); its correction for the sample size:
-    /// Hardin & Rocke (2005), The distribution of robust distances, equations 6 and 7.
+    /// Asymptotic variance of the core's covariance: Croux & Haesbroeck (1999); its correction for
+    /// the sample size: Hardin & Rocke (2005), The distribution of robust distances, equations 6
+    /// and 7.
     fn new(n: f64, p: f64, h: f64) -> Self {
         let inside = h / n;
         let outside = 1.0 - inside;

@@ -5,7 +5,8 @@ use crate::statistics::Undefined;
 use crate::statistics::random::Random;
 use crate::statistics::summary::median;
 
-/// Random starts, and how many of them are followed to their end; Rousseeuw & Van Driessen (1999) use the same numbers.
+/// Random starts, and how many of them are followed to their end; Rousseeuw & Van Driessen (1999)
+/// use the same numbers.
 const STARTS: usize = 500;
 const FOLLOWED: usize = 10;
 
@@ -26,14 +27,15 @@ pub struct MinimumCovariance {
     pub squared_distances: Vec<f64>,
 }
 
-/// Finds h of the points with the smallest covariance determinant: FAST-MCD of Rousseeuw & Van Driessen (1999), from random
-/// starts of that seed.
+/// Finds h of the points with the smallest covariance determinant: FAST-MCD of Rousseeuw & Van
+/// Driessen (1999), from random starts of that seed.
 ///
 /// The result is a local optimum, for the sizes of a sample nearly always the global one.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] for h below p + 1, [`Undefined::OutOfRange`] for points of unequal dimension, none, or h above their number;
-/// [`Undefined::NotFinite`]; [`Undefined::Collinear`] where variables depend linearly on one another.
+/// [`Undefined::TooFewValues`] for h below p + 1, [`Undefined::OutOfRange`] for points of unequal
+/// dimension, none, or h above their number; [`Undefined::NotFinite`]; [`Undefined::Collinear`]
+/// where variables depend linearly on one another.
 pub fn minimum_covariance_determinant(
     points: &[Vec<f64>],
     h: usize,
@@ -134,7 +136,8 @@ fn random_scatter(points: &[Vec<f64>], random: &mut Random) -> Option<Scatter> {
     None
 }
 
-/// Concentration steps: the h points nearest by the scatter, their scatter, and again; the ln determinant and the subset.
+/// Concentration steps: the h points nearest by the scatter, their scatter, and again; the ln
+/// determinant and the subset.
 fn concentrate(
     points: &[Vec<f64>],
     h: usize,

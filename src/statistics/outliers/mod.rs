@@ -1,8 +1,9 @@
 //! Values that do not belong to the rest of their sample.
 //!
-//! [`generalized_esd`] finds several at once without their hiding one another, [`grubbs`] asks after a single one, and
-//! [`modified_z_scores`] stand on median and MAD, which half the sample cannot move, as do
-//! [`part_average_limits`] on median and quartiles. [`joint_outliers`] finds a point that is inside every single limit and yet unlike the rest.
+//! [`generalized_esd`] finds several at once without their hiding one another, [`grubbs`] asks
+//! after a single one, and [`modified_z_scores`] stand on median and MAD, which half the sample
+//! cannot move, as do [`part_average_limits`] on median and quartiles. [`joint_outliers`] finds a
+//! point that is inside every single limit and yet unlike the rest.
 
 mod esd;
 mod grubbs;

@@ -4,7 +4,8 @@ use crate::statistics::Undefined;
 use crate::statistics::summary::{median, sum};
 use std::f64::consts::FRAC_PI_2;
 
-/// A value whose modified z-score exceeds this in magnitude is taken for an outlier: Iglewicz & Hoaglin (1993).
+/// A value whose modified z-score exceeds this in magnitude is taken for an outlier: Iglewicz &
+/// Hoaglin (1993).
 pub const MODIFIED_Z_LIMIT: f64 = 3.5;
 
 /// The third quartile of the standard normal distribution to the digits that define the score.
@@ -12,11 +13,13 @@ const SCALE: f64 = 0.6745;
 
 /// 0.6745 (x − median)/MAD for every value.
 ///
-/// Iglewicz & Hoaglin (1993), How to detect and handle outliers; NIST/SEMATECH e-Handbook 1.3.5.17. Where more than half
-/// of the values are equal the MAD is 0; the mean absolute deviation from the median times √(π/2) = 1.2533 stands in.
+/// Iglewicz & Hoaglin (1993), How to detect and handle outliers; NIST/SEMATECH e-Handbook 1.3.5.17.
+/// Where more than half of the values are equal the MAD is 0; the mean absolute deviation from the
+/// median times √(π/2) = 1.2533 stands in.
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below 3, [`Undefined::ZeroSpread`] where all are equal, [`Undefined::NotFinite`].
+/// [`Undefined::TooFewValues`] below 3, [`Undefined::ZeroSpread`] where all are equal,
+/// [`Undefined::NotFinite`].
 pub fn modified_z_scores(values: &[f64]) -> Result<Vec<f64>, Undefined> {
     if values.len() < 3 {
         return Err(Undefined::TooFewValues {

@@ -9,7 +9,8 @@ const REACH: f64 = 6.0;
 /// Interquartile range of a normal distribution in sigmas, to the digits of the definition (exactly 1.34898).
 const QUARTILES_APART: f64 = 1.35;
 
-/// Part-average limits of a lot: parts beyond them are unlike the others, whatever the limits of the specification.
+/// Part-average limits of a lot: parts beyond them are unlike the others, whatever the limits of
+/// the specification.
 #[derive(Debug, Clone, Copy, PartialEq)]
 #[allow(missing_docs)]
 pub struct PartAverage {
@@ -22,10 +23,12 @@ pub struct PartAverage {
 
 /// Median ± 6 robust sigmas: the dynamic limits of part average testing, AEC-Q001 Rev D (2011), from memory.
 ///
-/// The formula leaves the quantile open; here it is interpolated linearly between the values (type 7 of Hyndman & Fan 1996).
+/// The formula leaves the quantile open; here it is interpolated linearly between the values (type
+/// 7 of Hyndman & Fan 1996).
 ///
 /// # Errors
-/// [`Undefined::TooFewValues`] below 4, [`Undefined::ZeroSpread`] where the quartiles are equal, [`Undefined::NotFinite`].
+/// [`Undefined::TooFewValues`] below 4, [`Undefined::ZeroSpread`] where the quartiles are equal,
+/// [`Undefined::NotFinite`].
 pub fn part_average_limits(values: &[f64]) -> Result<PartAverage, Undefined> {
     if values.len() < 4 {
         return Err(Undefined::TooFewValues {

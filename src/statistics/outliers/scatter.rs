@@ -1,6 +1,7 @@
 //! Means, covariances and Mahalanobis distances of small dimension.
 
-/// A pivot of a Cholesky factor below this, in units in which the bulk of every variable has unit spread, is taken for zero.
+/// A pivot of a Cholesky factor below this, in units in which the bulk of every variable has unit
+/// spread, is taken for zero.
 const PIVOT_MIN: f64 = 1e-12;
 
 /// Mean of some of the points, and the Cholesky factor of their covariance.

@@ -228,7 +228,8 @@ impl FromStr for CodeLetter {
     }
 }
 
-/// A single sampling plan: inspect n items; accept the lot at Ac or fewer nonconforming, reject it at Re or more.
+/// A single sampling plan: inspect n items; accept the lot at Ac or fewer nonconforming, reject it
+/// at Re or more.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct Plan {
     /// Of the plan used, after arrows.

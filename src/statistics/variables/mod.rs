@@ -1,11 +1,14 @@
-//! Single sampling by variables for a normally distributed characteristic, s method: ISO 3951-1; MIL-STD-414 section B.
+//! Single sampling by variables for a normally distributed characteristic, s method: ISO 3951-1;
+//! MIL-STD-414 section B.
 //!
-//! Code letters are those of ISO 2859-1 Table 1 (with A taken as B, as in ISO 3951-1 Table A.1). The acceptability constants
-//! k and the largest estimated percentages M are those of MIL-STD-414 Tables B-1 and B-3; ISO 3951:1989 took the same
-//! constants over, later editions recalculated them and are not tabled here. Letter H takes 25 items (the standards
-//! of the 1980s give it 20 or 25 by lot size), Q and R the largest sample, 200.
+//! Code letters are those of ISO 2859-1 Table 1 (with A taken as B, as in ISO 3951-1 Table A.1).
+//! The acceptability constants k and the largest estimated percentages M are those of MIL-STD-414
+//! Tables B-1 and B-3; ISO 3951:1989 took the same constants over, later editions recalculated them
+//! and are not tabled here. Letter H takes 25 items (the standards of the 1980s give it 20 or 25 by
+//! lot size), Q and R the largest sample, 200.
 //!
-//! Normality must have been tested first ([`anderson_darling`](super::normality::anderson_darling)): the shares that these plans control
+//! Normality must have been tested first
+//! ([`anderson_darling`](super::normality::anderson_darling)): the shares that these plans control
 //! lie in the tails of the assumed distribution.
 
 mod tables;
@@ -69,10 +72,12 @@ impl Outcome {
 }
 
 impl Plan {
-    /// Judges the first n values against one limit (Form k) or two (Form M). On the boundary the lot is accepted.
+    /// Judges the first n values against one limit (Form k) or two (Form M). On the boundary the
+    /// lot is accepted.
     ///
     /// # Errors
-    /// [`Undefined::TooFewValues`], [`Undefined::NoLimit`], [`Undefined::LimitsReversed`], [`Undefined::NotFinite`].
+    /// [`Undefined::TooFewValues`], [`Undefined::NoLimit`], [`Undefined::LimitsReversed`],
+    /// [`Undefined::NotFinite`].
     pub fn judge(
         &self,
         values: &[f64],
@@ -125,10 +130,11 @@ fn quality_index(distance: f64, s: f64) -> f64 {
     }
 }
 
-/// Estimated share of the lot beyond a limit (a ratio) at the quality index Q of a sample of n ≥ 3: I_B(n/2 − 1, n/2 − 1) with
-/// B = (1 − Q √n/(n − 1))/2, at least 0.
+/// Estimated share of the lot beyond a limit (a ratio) at the quality index Q of a sample of n ≥ 3:
+/// I_B(n/2 − 1, n/2 − 1) with B = (1 − Q √n/(n − 1))/2, at least 0.
 ///
-/// The unbiased estimate of least variance, Lieberman & Resnikoff (1955); MIL-STD-414 Table B-5; ISO 3951-2. NaN for n below 3.
+/// The unbiased estimate of least variance, Lieberman & Resnikoff (1955); MIL-STD-414 Table B-5;
+/// ISO 3951-2. NaN for n below 3.
 pub fn estimated_share(q: f64, n: u64) -> f64 {
     if n < 3 {
         return f64::NAN;
@@ -140,11 +146,13 @@ pub fn estimated_share(q: f64, n: u64) -> f64 {
 
 /// The plan for a lot, an inspection level and an AQL in percent from 0.040 to 10.
 ///
-/// Tightened inspection takes the column of the next smaller AQL (MIL-STD-414). For reduced inspection there is no table here.
+/// Tightened inspection takes the column of the next smaller AQL (MIL-STD-414). For reduced
+/// inspection there is no table here.
 ///
 /// # Errors
-/// [`Undefined::LotTooSmall`]; [`Undefined::AqlNotInSeries`]; [`Undefined::NoPlan`] for reduced inspection, an AQL below the table's, or
-/// where no sample is large enough; [`Undefined::WholeLot`] where the sample would be the whole lot.
+/// [`Undefined::LotTooSmall`]; [`Undefined::AqlNotInSeries`]; [`Undefined::NoPlan`] for reduced
+/// inspection, an AQL below the table's, or where no sample is large enough;
+/// [`Undefined::WholeLot`] where the sample would be the whole lot.
 pub fn plan_for(
     lot: u64,
     level: InspectionLevel,
@@ -168,7 +176,8 @@ pub fn plan_for(
     Ok(plan)
 }
 
-/// The normal-inspection plan of the smallest sample from a size on that has one for the AQL (arrows down followed).
+/// The normal-inspection plan of the smallest sample from a size on that has one for the AQL
+/// (arrows down followed).
 ///
 /// # Errors
 /// [`Undefined::AqlNotInSeries`], [`Undefined::NoPlan`].
@@ -211,9 +220,9 @@ fn smallest_sample(letter: CodeLetter) -> u64 {
     }
 }
 
-/// The probability that a normal lot with that share beyond its one limit (a ratio) is accepted by Form k:
-/// P(T ≥ k√n) for the noncentral t of n − 1 degrees of freedom and noncentrality √n z, z the normal quantile of the
-/// conforming share. NaN for n below 2.
+/// The probability that a normal lot with that share beyond its one limit (a ratio) is accepted by
+/// Form k: P(T ≥ k√n) for the noncentral t of n − 1 degrees of freedom and noncentrality √n z, z
+/// the normal quantile of the conforming share. NaN for n below 2.
 pub fn acceptance_probability(n: u64, k: f64, p: f64) -> f64 {
     if n < 2 || !(0.0..=1.0).contains(&p) {
         return f64::NAN;

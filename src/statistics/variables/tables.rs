@@ -1,15 +1,18 @@
-//! MIL-STD-414 Tables B-1 (k) and B-3 (M, percent): variability unknown, standard deviation method, normal inspection.
+//! MIL-STD-414 Tables B-1 (k) and B-3 (M, percent): variability unknown, standard deviation method,
+//! normal inspection.
 //!
-//! Columns are the AQLs 0.040 to 10; `N` where the table has an arrow down, to the next larger sample of the column. The
-//! tables stand here from memory of the standard; each pair of k and M agrees with the identity between the two forms
-//! within their printed digits. The row of 35 items is also that of ISO 3951:1989 letter J (OIML R 138:2007 Annex A).
+//! Columns are the AQLs 0.040 to 10; `N` where the table has an arrow down, to the next larger
+//! sample of the column. The tables stand here from memory of the standard; each pair of k and M
+//! agrees with the identity between the two forms within their printed digits. The row of 35 items
+//! is also that of ISO 3951:1989 letter J (OIML R 138:2007 Annex A).
 
 /// No plan: arrow down.
 pub(super) const N: f64 = f64::NAN;
 
 pub(super) const COLUMNS: usize = 13;
 
-/// The column of [`AQL_SERIES`](crate::statistics::sampling::AQL_SERIES) with which the tables begin, AQL 0.040.
+/// The column of [`AQL_SERIES`](crate::statistics::sampling::AQL_SERIES) with which the tables
+/// begin, AQL 0.040.
 pub(super) const FIRST_COLUMN: usize = 3;
 
 /// A sample size with its acceptability constants and its largest estimated percentages nonconforming.

@@ -119,6 +119,8 @@ def judge_try(site, raw):
         result["zones"][key(name, place)] = zone
     order = ("conforming", "undecided", "unmeasured", "nonconforming")
     result["verdict"] = max(result["zones"].values(), key=order.index)
+    if any(name == "capacitance" for name, *_ in site.bounds) and site.ageing() is None:
+        result["fault"] = "ageing_unknown"
     return result
 
 

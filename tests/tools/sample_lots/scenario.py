@@ -209,7 +209,7 @@ LOTS = [
         "26K-0515", "RG-0475-X7R", "SUP-041", 60, "BENCH-1", "2026-10-05T13:20:00+02:00", _x7r(20, (-0.02, 0.01)),
         "Nobody wrote down when these class 2 parts were last heated, so their capacitance cannot be referred to 1000 h.",
         "hold", ["ageing_unknown"], {"A": (20, 0, 1, 0, 0), "B": (8, 0, 1, 0, 0)}, 20,
-        drive="0.98 Vrms", order="PO-88134",
+        drive="0.98 Vrms", order="PO-88134", faults={f"{k:03}": "ageing_unknown" for k in range(1, 21)},
         also_possible=["unmeasured_parts", "sample_too_small", "capability_not_available", "outliers_not_available"],
     ),
     Lot(

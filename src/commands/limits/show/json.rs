@@ -77,8 +77,12 @@ fn acceptance(acceptance: &Acceptance) -> Value {
         Acceptance::Attributes { level, aql } => {
             json!({"attributes": {"level": level, "aql": by_class(aql)}})
         }
-        Acceptance::Variables { level, aql } => {
-            json!({"variables": {"level": level, "aql": by_class(aql)}})
+        Acceptance::Variables {
+            level,
+            aql,
+            not_normal,
+        } => {
+            json!({"variables": {"level": level, "aql": by_class(aql), "not_normal": not_normal.name()}})
         }
         Acceptance::ZeroAcceptance {
             quality_limit,

@@ -168,9 +168,14 @@ fn acceptance(acceptance: &Acceptance) -> String {
             "attributes, ISO 2859-1 level {level}; AQL in percent by class: {}",
             by_class(aql)
         ),
-        Acceptance::Variables { level, aql } => format!(
-            "variables, ISO 3951-1 level {level}; AQL in percent by class: {}",
-            by_class(aql)
+        Acceptance::Variables {
+            level,
+            aql,
+            not_normal,
+        } => format!(
+            "variables, ISO 3951-1 level {level}; AQL in percent by class: {}; where not normal: {}",
+            by_class(aql),
+            not_normal.name()
         ),
         Acceptance::ZeroAcceptance {
             quality_limit,

@@ -1,0 +1,182 @@
+//! Where the time of judging a lot goes: reading, readings, statistics, PDF, each apart, and each as
+//! a ratio to a floor measured in the same run.
+//!
+//! The floor is what cannot be saved: the SHA-256 of the sweep files' bytes, which the record needs.
+//! `cargo bench --bench lot` prints a table; `-- 1250` sets the number of parts (125 where none is
+//! given), each with 401 points.
+
+use num_complex::Complex64;
+use reelgate::certificate::{self, Curve, Paper};
+use reelgate::judgement::{judge_part, judge_try};
+use reelgate::readings::Budget;
+use reelgate::record::{Sources, make, sha256};
+use reelgate::statistics::sampling::Severity;
+use reelgate::sweep::{Attempt, RawFile, read_file};
+use std::f64::consts::TAU;
+use std::hint::black_box;
+use std::io::Write;
+use std::time::{Duration, Instant};
+
+const POINTS: usize = 401;
+const RUNS: usize = 15;
+
+const LOT: &str = "lot: BENCHMARK\npart: RG-0475-X7R\nquantity: 100000\nstation: BENCH-1\nmeasured: 2026-10-05T09:12:00+02:00\nsweeps: sweeps\n";
+const LIMITS: &str = "part: RG-0475-X7R
+revision: 1
+characteristics:
+  capacitance: {at: 1 kHz, nominal: 4.7 µF, tolerance: ±10 %}
+  dissipation_factor: {at: 1 kHz, max: 5 %}
+  esr: {at: 1 MHz, max: 20 mΩ}
+  impedance: {at: 100 kHz, max: 0.45 Ω}
+  esr_minimum: {max: 6 mΩ}
+  srf: {min: 1 MHz}
+acceptance: {fixed: {sample: 32, accept: 0}}
+";
+const STATION: &str = "station: BENCH-1
+method: direct
+layout: {columns: {frequency: Frequency (Hz), resistance: R (Ohm), reactance: X (Ohm)}}
+uncertainty: {magnitude: 0.2 %, phase: 0.05 °}
+";
+
+/// A sweep of a series R-L-C with a resistance that has a minimum; the values are invented.
+fn sweep(part: usize) -> RawFile {
+    let share = ((part as f64 * 0.618_034).fract() - 0.5) * 0.04;
+    let (c, l) = (4.65e-6 * (1.0 + share), 0.5e-9);
+    let mut bytes = b"Frequency (Hz),R (Ohm),X (Ohm)\n".to_vec();
+    for i in 0..POINTS {
+        let f = 1e3 * 65e3f64.powf(i as f64 / (POINTS - 1) as f64);
+        let w = TAU * f;
+        let z = Complex64::new(
+            0.02 / (w * c) + 3e-3 * (1.0 + (f / 3e7).sqrt()),
+            w * l - 1.0 / (w * c),
+        );
+        let noise = 1.0 + 1e-3 * ((i * 37 + part * 101) as f64 * 0.618_034).fract();
+        let _ = writeln!(bytes, "{f:.3},{:.7e},{:.7e}", z.re * noise, z.im * noise);
+    }
+    RawFile {
+        name: format!("sweeps/{part:04}.csv"),
+        bytes,
+    }
+}
+
+fn text(name: &str, text: &str) -> RawFile {
+    RawFile {
+        name: name.to_owned(),
+        bytes: text.as_bytes().to_vec(),
+    }
+}
+
+/// Median of several runs.
+fn time<T>(mut work: impl FnMut() -> T) -> Duration {
+    let mut all: Vec<Duration> = (0..RUNS)
+        .map(|_| {
+            let start = Instant::now();
+            black_box(work());
+            start.elapsed()
+        })
+        .collect();
+    all.sort();
+    all[RUNS / 2]
+}
+
+fn main() {
+    let parts = std::env::args()
+        .skip(1)
+        .find_map(|a| a.parse().ok())
+        .unwrap_or(125);
+    let sources = Sources {
+        lot: text("lot.yaml", LOT),
+        limits: text("limits/parts/RG-0475-X7R.yaml", LIMITS),
+        station: text("limits/stations/BENCH-1.yaml", STATION),
+        compensation: vec![],
+        sweeps: (1..=parts).map(sweep).collect(),
+    };
+    let limits = reelgate::limits::read(&sources.limits.name, &sources.limits.bytes)
+        .expect("the limit file");
+    let station = reelgate::station::read(&sources.station.name, &sources.station.bytes)
+        .expect("the station file");
+    let lot = reelgate::lot::read(&sources.lot.name, &sources.lot.bytes).expect("the lot file");
+    let budget = Budget::of(&station);
+    let attempts: Vec<Attempt> = sources
+        .sweeps
+        .iter()
+        .flat_map(|f| read_file(f, &station, None))
+        .collect();
+    let judge =
+        |a: &Attempt| judge_part(&[(a, judge_try(a, &limits, &budget, None))], &limits.retest).0;
+    let records: Vec<_> = attempts.iter().map(judge).collect();
+    let plan =
+        reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
+    let whole = || {
+        make(
+            &sources,
+            Severity::Normal,
+            "2026-10-05T10:00:00+02:00",
+            &|| (),
+        )
+        .expect("a record")
+    };
+    let made = whole();
+    let curves: Vec<Curve> = made
+        .curves
+        .iter()
+        .map(|c| Curve {
+            part: c.part.clone(),
+            verdict: c.verdict,
+            frequency: c.sweep.frequency.clone(),
+            impedance: c.sweep.impedance.clone(),
+        })
+        .collect();
+    let files = certificate::Sources {
+        limit_file: Some(LIMITS),
+        station_file: Some(STATION),
+    };
+
+    let floor = time(|| {
+        sources
+            .sweeps
+            .iter()
+            .map(|f| sha256(&f.bytes))
+            .collect::<Vec<_>>()
+    });
+    let rows = [
+        ("floor: SHA-256 of the sweep files", floor),
+        (
+            "reading and validity, one core",
+            time(|| {
+                sources
+                    .sweeps
+                    .iter()
+                    .map(|f| read_file(f, &station, None))
+                    .collect::<Vec<_>>()
+            }),
+        ),
+        (
+            "readings and judgement, one core",
+            time(|| attempts.iter().map(judge).collect::<Vec<_>>()),
+        ),
+        (
+            "plan, conditions, statistics",
+            time(|| reelgate::lot::judge(&lot, &limits, &station, &plan, &records, vec![])),
+        ),
+        ("the whole record, all cores", time(whole)),
+        ("JSON", time(|| reelgate::record::to_bytes(&made.record))),
+        (
+            "PDF",
+            time(|| certificate::render(&made.record, &curves, &files, Paper::A4)),
+        ),
+    ];
+    let mut out = std::io::stdout().lock();
+    let _ = writeln!(
+        out,
+        "{parts} parts of {POINTS} points, median of {RUNS} runs\n"
+    );
+    for (name, duration) in rows {
+        let ratio = duration.as_secs_f64() / floor.as_secs_f64();
+        let _ = writeln!(
+            out,
+            "{name:<36} {:>10.2} ms {ratio:>8.2} × floor",
+            duration.as_secs_f64() * 1e3
+        );
+    }
+}

@@ -1,0 +1,1 @@
+"""Checks of the program's results against what others published or computed."""
