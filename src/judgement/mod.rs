@@ -1,7 +1,7 @@
 //! Readings against limits: the verdict on a reading, a try, a part.
 //!
-//! No files, no statistics of lots, no lot. Unrounded values are judged; a value that could not be
-//! had is never conforming.
+//! No files, no statistics of lots, no lot. Unrounded values are judged; a value that could not be had is
+//! never conforming.
 
 mod bench;
 mod conformance;
