@@ -3,20 +3,14 @@
 //! No files, no statistics of lots, no lot. Unrounded values are judged; a value that could not be had is
 //! never conforming.
 
-<<<<<<< HEAD
 mod bench;
-mod part;
-mod zone;
-
-pub use bench::{Ability, BenchAbility, abilities};
-pub(crate) use part::AGEING_UNKNOWN;
-=======
 mod conformance;
 mod part;
 mod zone;
 
+pub use bench::{Ability, BenchAbility, abilities};
 pub use conformance::{Risks, acceptance_window, conformance_probability, global_risks};
->>>>>>> circuit
+pub(crate) use part::AGEING_UNKNOWN;
 pub use part::{AttemptRecord, JudgedTry, PartRecord, judge_part, judge_try};
 pub use zone::{ReadingRecord, judge_reading, zone};
 
