@@ -372,6 +372,7 @@ fn warnings_are_documented() {
     let mut given = codes_of_source(&[
         "src/readings",
         "src/judgement/zone.rs",
+        "src/judgement/bench.rs",
         "src/lot/statistics.rs",
         "src/lot/capability.rs",
     ]);

@@ -118,6 +118,7 @@ fn part(i: usize, verdict: PartVerdict, value: f64) -> PartRecord {
         above: None,
         below: None,
         as_measured: None,
+        conformance_probability: None,
         warnings: vec![],
     };
     let class = matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided)

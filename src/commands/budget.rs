@@ -3,7 +3,7 @@
 use super::text::wrapped;
 use crate::diagnostic::printable;
 use crate::limits;
-use crate::quantity::{engineering, shortest};
+use crate::quantity::engineering;
 use crate::readings::{Budget, Component, Reader, Request, combined};
 use crate::record::{BoundSection, Made, Sources};
 use crate::station;
@@ -51,7 +51,7 @@ fn lines(out: &mut String, components: &[Component], unit: &str) {
     }
     for component in components {
         let input = match component.unit {
-            "1" => shortest(component.standard_uncertainty, "1"),
+            "1" => engineering(component.standard_uncertainty, "1", 2),
             other => engineering(component.standard_uncertainty, other, 3),
         };
         let contribution = engineering(component.contribution, unit, 3);

@@ -128,8 +128,8 @@ fn keep(args: &Args, sources: &Sources, made: &mut Made, paths: &Paths) -> Resul
     }
     let json = record::to_bytes(&made.record).map_err(|e| e.to_string())?;
     if existing.is_some_and(|old| old != json) {
-        return Err("exists and is not what these inputs give: the record was changed after it was issued; \
-                    keep it as evidence in another place and judge again"
+        return Err("exists and is not what these inputs give: the record was changed after it was issued, or another build \
+                    of the program made it; keep it as evidence in another place and judge again"
             .to_owned());
     }
     let pdf = certificate(args, sources, made)?;

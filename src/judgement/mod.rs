@@ -1,13 +1,15 @@
 //! Readings against limits: the verdict on a reading, a try, a part.
 //!
-//! No files, no statistics, no lot. Unrounded values are judged; a value that could not be had is
+//! No files, no statistics of lots, no lot. Unrounded values are judged; a value that could not be had is
 //! never conforming.
 
 mod bench;
+mod conformance;
 mod part;
 mod zone;
 
-pub use bench::{Ability, BenchAbility, abilities};
+pub use bench::{Ability, BenchAbility, abilities, undecidable};
+pub use conformance::{Risks, acceptance_window, conformance_probability, global_risks};
 pub(crate) use part::AGEING_UNKNOWN;
 pub use part::{AttemptRecord, JudgedTry, PartRecord, judge_part, judge_try};
 pub use zone::{ReadingRecord, judge_reading, zone};

@@ -4,9 +4,9 @@
 //! (8.3.2), outside it under guarded rejection (8.3.3), and is nothing under simple acceptance
 //! (8.2). A value in the guard band is `undecided`; a value on a limit is inside it.
 
-use super::PartVerdict;
+use super::{PartVerdict, conformance_probability};
 use crate::diagnostic::Note;
-use crate::limits::{Bound, DecisionRule, DecisionRuleKind};
+use crate::limits::{Bound, DecisionRule, DecisionRuleKind, Window};
 use crate::readings::{Extremes, Reading, Value};
 use serde::{Deserialize, Serialize};
 
@@ -22,6 +22,10 @@ pub struct ReadingRecord {
     /// Distance to the nearest limit in the unit of the value, negative outside.
     pub margin: Option<f64>,
     pub verdict: PartVerdict,
+    /// Probability that the true value lies within the limits (JCGM 106:2012 clause 7), where the
+    /// uncertainty is known.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub conformance_probability: Option<f64>,
     /// Hz: where `esr_minimum` lies, or where in a band the value nearest its limit is.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub frequency: Option<f64>,
@@ -136,6 +140,7 @@ fn against(
         upper,
         margin: None,
         verdict: PartVerdict::Unmeasured,
+        conformance_probability: None,
         frequency: reading.frequency,
         above: None,
         below: None,
@@ -146,7 +151,13 @@ fn against(
         Value::Known(value) => {
             record.value = Some(value);
             record.verdict = zone(value, reading.standard_uncertainty, lower, upper, rule);
+            record.conformance_probability = reading
+                .standard_uncertainty
+                .and_then(|u| conformance_probability(value, u, Window { lower, upper }));
             record.margin = Some(margin(value, lower, upper)).filter(|m| m.is_finite());
+            record.conformance_probability = reading
+                .standard_uncertainty
+                .and_then(|u| conformance_probability(value, u, Window { lower, upper }));
             if reading.standard_uncertainty.is_none()
                 && rule.kind != DecisionRuleKind::SimpleAcceptance
             {

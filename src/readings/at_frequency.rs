@@ -43,9 +43,10 @@ pub(super) fn outside(sweep: &Sweep, frequency: f64) -> Reading {
     )
 }
 
-/// The estimate of a characteristic at a frequency.
+/// The estimate of a characteristic at a frequency, from the local fit there.
 pub(super) fn read(
     sweep: &Sweep,
+    fit: Option<&LocalFit>,
     characteristic: Characteristic,
     frequency: f64,
     equivalent: Equivalent,
@@ -53,7 +54,7 @@ pub(super) fn read(
     if !inside(sweep, frequency) {
         return Err(outside(sweep, frequency));
     }
-    let Some(fit) = local(sweep, frequency) else {
+    let Some(fit) = fit else {
         return Err(Reading::missing(
             "too_few_points",
             "too few points around this frequency to read a value between them",
@@ -73,8 +74,8 @@ pub(super) fn read(
             fit.sigma(frequency, Complex64::ONE),
         )),
         _ if z.im >= 0.0 => Err(inductive(characteristic, frequency)),
-        Characteristic::DissipationFactor => Ok(loss(&fit, frequency, z)),
-        _ => Ok(capacitance(&fit, frequency, z, equivalent)),
+        Characteristic::DissipationFactor => Ok(loss(fit, frequency, z)),
+        _ => Ok(capacitance(fit, frequency, z, equivalent)),
     }
 }
 

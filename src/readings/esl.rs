@@ -5,9 +5,9 @@
 //! the self-resonance to the sweep's end where the sweep ends sooner. Skin effect lowers L with
 //! frequency, so that the frequency is part of the result.
 
+use super::Reading;
 use super::local_fit::{LocalFit, grown};
 use super::reading::{Estimate, Outcome};
-use super::{Reading, srf};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
@@ -17,16 +17,16 @@ use std::f64::consts::TAU;
 const FEWEST: usize = 5;
 
 /// ESL in H, with its frequency.
-pub(super) fn read(sweep: &Sweep) -> Outcome {
-    let Ok(Estimate {
-        value: resonance, ..
-    }) = srf::read(sweep)
-    else {
+///
+/// `resonance` is the sweep's self-resonance.
+pub(super) fn read(sweep: &Sweep, resonance: &Outcome) -> Outcome {
+    let Ok(crossing) = resonance else {
         return Err(Reading::missing(
             "srf_outside_sweep",
             "no self-resonance inside the sweep: the inductance cannot be told from the capacitance",
         ));
     };
+    let resonance = crossing.value;
     let points = &sweep.frequency;
     let last = points[points.len() - 1];
     if last < 1.5 * resonance {
@@ -55,12 +55,15 @@ pub(super) fn read(sweep: &Sweep) -> Outcome {
             "too few points above self-resonance to determine the inductance",
         ));
     };
-    let half = 0.5 / (TAU * centre);
-    let inductance = half * (fit.slope(centre).im + fit.impedance(centre).im);
-    let scatter =
-        fit.sigma_with_slope(centre, Complex64::new(0.0, half), Complex64::new(0.0, half));
-    // A rotation by φ changes X by R φ and dX/d ln f by R' φ.
-    let per_radian = half * (fit.slope(centre).re + fit.impedance(centre).re);
+    let at = |f: f64| (fit.slope(f) + fit.impedance(f)) * (0.5 / (TAU * f));
+    let inductance = at(centre).im;
+    let gradient = Complex64::new(0.0, 0.5 / (TAU * centre));
+    let scatter = fit.sigma_with_slope(centre, gradient, gradient);
+    // A rotation by φ turns X by R φ and dX/d ln f by R' φ; it also moves the SRF, and with it the
+    // frequency at which the falling inductance is read.
+    let moved = if to < last { 1.0 } else { 0.5 } * crossing.per_radian / resonance;
+    let falls = (at(centre * 1.01).im - at(centre / 1.01).im) / (2.0 * 1.01f64.ln());
+    let per_radian = at(centre).re + falls * moved;
     let mut estimate = Estimate::new(inductance, 1.0, per_radian, scatter).at(centre);
     if from < 3.0 * resonance {
         estimate.warnings.push(Note::new(

@@ -397,7 +397,7 @@ impl Design {
         residual.resize(2 * n, 0.0);
         Design {
             points: frequency.iter().map(|f| Point::new(f / centre)).collect(),
-            inverse: impedance.iter().map(|z| z.inv()).collect(),
+            inverse: impedance.iter().map(Complex64::inv).collect(),
             weight,
             columns: Vec::with_capacity(2 * n * 9),
             residual,
@@ -470,17 +470,25 @@ pub(super) fn noise(impedance: &[Complex64]) -> Option<[f64; 2]> {
     if impedance.len() < 9 {
         return None;
     }
-    let steps: Vec<Complex64> = impedance.windows(2).map(|z| (z[1] / z[0]).ln()).collect();
-    let differences = |part: fn(&Complex64) -> f64| -> f64 {
+    let size: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
+    let ln: Vec<f64> = size.iter().map(|s| 0.5 * s.ln()).collect();
+    let magnitude = ln.windows(2).map(|l| l[1] - l[0]).collect();
+    // The sine of the step serves for the step: what it lacks is smooth.
+    let phase = impedance
+        .windows(2)
+        .zip(size.windows(2))
+        .map(|(z, s)| (z[1].im * z[0].re - z[1].re * z[0].im) / (s[0] * s[1]).sqrt())
+        .collect();
+    let of_steps = |steps: Vec<f64>| -> f64 {
         let mut all: Vec<f64> = steps
             .windows(3)
-            .map(|s| (part(&s[2]) - 2.0 * part(&s[1]) + part(&s[0])).abs())
+            .map(|s| (s[2] - 2.0 * s[1] + s[0]).abs())
             .collect();
         let middle = all.len() / 2;
         // 1.4826: median absolute value to standard deviation; 20 = 1² + 3² + 3² + 1².
         1.4826 / 20f64.sqrt() * *all.select_nth_unstable_by(middle, f64::total_cmp).1
     };
-    Some([differences(|s| s.re), differences(|s| s.im)])
+    Some([of_steps(magnitude), of_steps(phase)])
 }
 
 /// The two relative to the larger one, kept between 1:10 and 10:1; 1:1 where nothing is known.

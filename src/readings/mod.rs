@@ -22,9 +22,11 @@ pub use uncertainty::{Budget, Component, combined};
 
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
+use at_frequency::local;
 use circuit::CircuitFit;
+use local_fit::LocalFit;
 use reading::Outcome;
-use std::cell::OnceCell;
+use std::cell::{OnceCell, RefCell};
 
 /// Reads characteristics from one sweep; what several of them share is computed once.
 #[derive(Debug, Clone)]
@@ -32,6 +34,9 @@ pub struct Reader<'a> {
     sweep: &'a Sweep,
     budget: &'a Budget,
     circuit: OnceCell<Result<CircuitFit, Note>>,
+    resonance: OnceCell<Outcome>,
+    /// The local fit that was asked for last, and its frequency.
+    local: RefCell<Option<(f64, Option<LocalFit>)>>,
 }
 
 impl<'a> Reader<'a> {
@@ -41,6 +46,8 @@ impl<'a> Reader<'a> {
             sweep,
             budget,
             circuit: OnceCell::new(),
+            resonance: OnceCell::new(),
+            local: RefCell::new(None),
         }
     }
 
@@ -87,6 +94,30 @@ impl<'a> Reader<'a> {
         self.circuit.get_or_init(|| circuit::fit(self.sweep))
     }
 
+    fn resonance(&self) -> &Outcome {
+        self.resonance.get_or_init(|| srf::read(self.sweep))
+    }
+
+    /// The estimate at one frequency; characteristics at the same frequency share their fit.
+    fn at(
+        &self,
+        characteristic: Characteristic,
+        frequency: f64,
+        equivalent: Equivalent,
+    ) -> Outcome {
+        let mut last = self.local.borrow_mut();
+        let known = last.take().filter(|(f, _)| *f == frequency);
+        let (_, fit) =
+            last.insert(known.unwrap_or_else(|| (frequency, local(self.sweep, frequency))));
+        at_frequency::read(
+            self.sweep,
+            fit.as_ref(),
+            characteristic,
+            frequency,
+            equivalent,
+        )
+    }
+
     /// The estimate, or the lowest and the highest one over a band.
     fn estimate(&self, request: &Request) -> (Outcome, Option<Outcome>) {
         let sweep = self.sweep;
@@ -96,13 +127,13 @@ impl<'a> Reader<'a> {
                 return (lowest, Some(highest));
             }
             (Characteristic::EsrMinimum, place) => esr_minimum::read(sweep, place),
-            (Characteristic::Srf, _) => srf::read(sweep),
-            (Characteristic::Esl, _) => esl::read(sweep),
+            (Characteristic::Srf, _) => self.resonance().clone(),
+            (Characteristic::Esl, _) => esl::read(sweep, self.resonance()),
             (c @ (Characteristic::FittedCapacitance | Characteristic::FittedResistance), _) => {
                 circuit::read(sweep, self.circuit(), c)
             }
             (characteristic, Place::At(frequency)) => {
-                at_frequency::read(sweep, characteristic, frequency, request.equivalent)
+                self.at(characteristic, frequency, request.equivalent)
             }
             (characteristic, _) => Err(Reading::missing(
                 "frequency_missing",

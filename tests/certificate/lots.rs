@@ -556,6 +556,7 @@ fn reading(k: &Kind, value: f64) -> ReadingRecord {
         above: None,
         below: None,
         as_measured: None,
+        conformance_probability: None,
         warnings: vec![],
     }
 }

@@ -19,7 +19,9 @@ const MISFIT: f64 = 0.01;
 /// Residuals up to so many times the sweep's own noise are noise.
 const NOISE: f64 = 1.5;
 /// Below this a better circuit is not looked for.
-const GOOD_ENOUGH: f64 = 0.003;
+const GOOD_ENOUGH: f64 = 0.005;
+/// Beyond this a part of one capacitance is not looked for, but a ladder.
+const HOPELESS: f64 = 0.02;
 
 /// One element of a fitted circuit.
 #[derive(Debug, Clone, PartialEq)]
@@ -143,10 +145,13 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
     for (circuit, limit) in larger {
         // More stages help where fewer did; they are no way out of a part that is no ladder.
         let goes_on = match circuit {
+            Circuit::DispersiveEddy => rms(data, &best) < HOPELESS,
             Circuit::Ladder(stages) if stages > 2 => best.circuit == Circuit::Ladder(stages - 1),
             _ => true,
         };
-        if enough(&best, limit) || !goes_on {
+        // An element that came out negative says that the circuit is not the right one.
+        let whole = best.free.len() == best.circuit.parameters();
+        if !goes_on || enough(&best, limit) && (whole || circuit != Circuit::DispersiveEddy) {
             continue;
         }
         let found = physical(data, circuit, &rough.parameters(circuit));
@@ -338,13 +343,11 @@ fn notes(m: &Minimum, residual: &Residual, determined: bool) -> Vec<Note> {
 impl CircuitFit {
     /// Z in Ω of the circuit at each frequency in Hz, for curves.
     pub fn impedance(&self, frequency: &[f64]) -> Vec<Complex64> {
+        let circuit = self.circuit.prepare(&self.internal);
         let mut scratch = [Complex64::ZERO; MOST];
         frequency
             .iter()
-            .map(|f| {
-                self.circuit
-                    .evaluate(&self.internal, Point::new(*f), &mut scratch)
-            })
+            .map(|f| circuit.evaluate(Point::new(*f), &mut scratch))
             .collect()
     }
 

@@ -37,7 +37,10 @@ impl<'a> Data<'a> {
         Data {
             points: frequency.iter().map(|f| Point::new(*f)).collect(),
             impedance,
-            weight: impedance.iter().map(|z| 1.0 / z.norm()).collect(),
+            weight: impedance
+                .iter()
+                .map(|z| 1.0 / z.norm_sqr().sqrt())
+                .collect(),
         }
     }
 
@@ -48,12 +51,13 @@ impl<'a> Data<'a> {
 
     /// The weighted residual at each point.
     pub(super) fn residual(&self, circuit: Circuit, p: &[f64]) -> Vec<Complex64> {
+        let circuit = circuit.prepare(p);
         let mut scratch = [Complex64::ZERO; MOST];
         self.points
             .iter()
             .zip(self.impedance)
             .zip(&self.weight)
-            .map(|((at, z), w)| (circuit.evaluate(p, *at, &mut scratch) - z) * *w)
+            .map(|((at, z), w)| (circuit.evaluate(*at, &mut scratch) - z) * *w)
             .collect()
     }
 
@@ -64,10 +68,11 @@ impl<'a> Data<'a> {
             gradient: [0.0; MOST],
             matrix: [[0.0; MOST]; MOST],
         };
+        let circuit = circuit.prepare(p);
         let mut derivatives = [Complex64::ZERO; MOST];
         let mut column = [Complex64::ZERO; MOST];
         for ((at, z), w) in self.points.iter().zip(self.impedance).zip(&self.weight) {
-            let residual = (circuit.evaluate(p, *at, &mut derivatives) - z) * *w;
+            let residual = (circuit.evaluate(*at, &mut derivatives) - z) * *w;
             normal.sum += residual.norm_sqr();
             for (c, k) in column.iter_mut().zip(free) {
                 *c = derivatives[*k] * *w;
@@ -89,12 +94,11 @@ impl<'a> Data<'a> {
         minimum: &Minimum,
         residual: impl Fn(Complex64) -> Complex64,
     ) -> [f64; MOST] {
+        let circuit = minimum.circuit.prepare(&minimum.parameters);
         let mut sums = [0.0; MOST];
         let mut derivatives = [Complex64::ZERO; MOST];
         for ((at, z), w) in self.points.iter().zip(self.impedance).zip(&self.weight) {
-            minimum
-                .circuit
-                .evaluate(&minimum.parameters, *at, &mut derivatives);
+            circuit.evaluate(*at, &mut derivatives);
             let r = residual(*z) * *w;
             for (sum, k) in sums.iter_mut().zip(&minimum.free) {
                 let d = derivatives[*k] * *w;

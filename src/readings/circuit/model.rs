@@ -110,101 +110,120 @@ impl Circuit {
         all
     }
 
-    /// Z in Ω; `derivatives` receives dZ/dp for each parameter.
-    pub(super) fn evaluate(
-        self,
-        p: &[f64],
-        at: Point,
-        derivatives: &mut [Complex64; MOST],
-    ) -> Complex64 {
-        let jw = Complex64::new(0.0, at.omega);
-        derivatives[0] = Complex64::ONE;
-        derivatives[1] = jw;
-        let series = p[0] + jw * p[1];
-        match self {
-            Circuit::Dispersive => {
-                let skin = Complex64::new(at.root, at.root);
-                derivatives[4] = skin;
-                series + skin * p[4] + dispersive(&p[2..4], at, &mut derivatives[2..4])
-            }
-            Circuit::DispersiveEddy => {
-                series
-                    + dispersive(&p[2..4], at, &mut derivatives[2..4])
-                    + eddy(&p[4..6], at, &mut derivatives[4..6])
-            }
-            Circuit::Ladder(stages) => {
-                series
-                    + eddy(&p[2..4], at, &mut derivatives[2..4])
-                    + ladder(&p[4..3 + 2 * stages], at, &mut derivatives[4..])
-            }
+    /// What does not depend on frequency, once for all points.
+    pub(super) fn prepare(self, p: &[f64]) -> Prepared {
+        let mut value = [0.0; MOST];
+        for (k, (v, p)) in value.iter_mut().zip(p).enumerate() {
+            *v = if self.is_logarithm(k) { p.exp() } else { *p };
+        }
+        let mut rotation = Complex64::ONE;
+        if !matches!(self, Circuit::Ladder(_)) {
+            let exponent = value[3] - 1.0;
+            let size = 1.0 / (TAU * CAPACITANCE_AT * value[2]);
+            rotation = Complex64::from_polar(size, exponent * FRAC_PI_2);
+        }
+        Prepared {
+            circuit: self,
+            value,
+            rotation,
         }
     }
 
     /// Impedance of the capacitive branch alone.
     pub(super) fn capacitive_branch(self, p: &[f64], frequency: f64) -> Complex64 {
+        let prepared = self.prepare(p);
         let mut scratch = [Complex64::ZERO; MOST];
         let at = Point::new(frequency);
         match self {
-            Circuit::Dispersive | Circuit::DispersiveEddy => {
-                dispersive(&p[2..4], at, &mut scratch[2..4])
+            Circuit::Dispersive | Circuit::DispersiveEddy => prepared.dispersive(at, &mut scratch),
+            Circuit::Ladder(stages) => prepared.ladder(stages, at, &mut scratch),
+        }
+    }
+}
+
+/// A circuit with its elements, ready for evaluation.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Prepared {
+    circuit: Circuit,
+    /// The elements themselves, where the parameter is a logarithm.
+    value: [f64; MOST],
+    /// Of the constant-phase element at 1 kHz.
+    rotation: Complex64,
+}
+
+impl Prepared {
+    /// Z in Ω; `derivatives` receives dZ/dp for each parameter.
+    #[inline]
+    pub(super) fn evaluate(&self, at: Point, derivatives: &mut [Complex64; MOST]) -> Complex64 {
+        derivatives[0] = Complex64::ONE;
+        derivatives[1] = Complex64::new(0.0, at.omega);
+        let series = Complex64::new(self.value[0], at.omega * self.value[1]);
+        match self.circuit {
+            Circuit::Dispersive => {
+                let skin = at.root * self.value[4];
+                derivatives[4] = Complex64::new(at.root, at.root);
+                series + Complex64::new(skin, skin) + self.dispersive(at, derivatives)
             }
-            Circuit::Ladder(stages) => ladder(&p[4..3 + 2 * stages], at, &mut scratch[4..]),
+            Circuit::DispersiveEddy => {
+                series + self.dispersive(at, derivatives) + self.eddy(4, at, derivatives)
+            }
+            Circuit::Ladder(stages) => {
+                series + self.eddy(2, at, derivatives) + self.ladder(stages, at, derivatives)
+            }
         }
     }
-}
 
-/// The constant-phase element of ln C1 and a: `(jω/ω1)^(a−1) / (ω1 C1)`.
-fn dispersive(p: &[f64], at: Point, derivatives: &mut [Complex64]) -> Complex64 {
-    let exponent = p[1] - 1.0;
-    let size = (exponent * at.ln - p[0]).exp() / (TAU * CAPACITANCE_AT);
-    let z = Complex64::from_polar(size, exponent * FRAC_PI_2);
-    derivatives[0] = -z;
-    derivatives[1] = z * Complex64::new(at.ln, FRAC_PI_2);
-    z
-}
-
-/// ln R in parallel with ln L.
-fn eddy(p: &[f64], at: Point, derivatives: &mut [Complex64]) -> Complex64 {
-    let r = p[0].exp();
-    let x = Complex64::new(0.0, at.omega * p[1].exp());
-    let share = x / (r + x);
-    let z = r * share;
-    derivatives[0] = z * share;
-    derivatives[1] = z * (1.0 - share);
-    z
-}
-
-/// ln C1, ln R1, ln C2, … ln Cn: each capacitance in parallel with its resistance and the rest.
-fn ladder(p: &[f64], at: Point, derivatives: &mut [Complex64]) -> Complex64 {
-    let stages = p.len().div_ceil(2);
-    // From the last stage inwards; `gain` of what lies deeper is applied on the way back.
-    let mut gains = [Complex64::ZERO; MOST];
-    let mut z = Complex64::ZERO;
-    for k in (0..stages).rev() {
-        let admittance = Complex64::new(0.0, at.omega * p[2 * k].exp());
-        let deeper = 2 * k + 1 < p.len();
-        if deeper {
-            let r = p[2 * k + 1].exp();
-            let branch = r + z;
-            z = branch / (1.0 + admittance * branch);
-            // dz/d(branch) = (z/branch)²
-            let gain = z / branch;
-            gains[k] = gain * gain;
-            derivatives[2 * k + 1] = gains[k] * r;
-        } else {
-            z = admittance.inv();
-        }
-        derivatives[2 * k] = -z * z * admittance;
+    /// The constant-phase element of parameters 2 and 3: `(jω/ω1)^(a−1) / (ω1 C1)`.
+    #[inline]
+    fn dispersive(&self, at: Point, derivatives: &mut [Complex64; MOST]) -> Complex64 {
+        let z = self.rotation * ((self.value[3] - 1.0) * at.ln).exp();
+        derivatives[2] = -z;
+        derivatives[3] = z * Complex64::new(at.ln, FRAC_PI_2);
+        z
     }
-    let mut gain = Complex64::ONE;
-    for k in 0..stages {
-        derivatives[2 * k] *= gain;
-        if 2 * k + 1 < p.len() {
-            derivatives[2 * k + 1] *= gain;
-        }
-        gain *= gains[k];
+
+    /// Parameter `k`, R, in parallel with the next, L.
+    #[inline]
+    fn eddy(&self, k: usize, at: Point, derivatives: &mut [Complex64; MOST]) -> Complex64 {
+        let r = self.value[k];
+        let x = Complex64::new(0.0, at.omega * self.value[k + 1]);
+        let share = x / (r + x);
+        let z = r * share;
+        derivatives[k] = z * share;
+        derivatives[k + 1] = z * (1.0 - share);
+        z
     }
-    z
+
+    /// Parameters from 4 on, C1, R1, C2, … Cn: each C in parallel with its R and the rest.
+    fn ladder(&self, stages: usize, at: Point, derivatives: &mut [Complex64; MOST]) -> Complex64 {
+        // From the last stage inwards; the gain of what lies nearer is applied on the way back.
+        let mut gains = [Complex64::ZERO; MOST];
+        let mut z = Complex64::ZERO;
+        for k in (0..stages).rev() {
+            let (c, r) = (4 + 2 * k, 5 + 2 * k);
+            let admittance = Complex64::new(0.0, at.omega * self.value[c]);
+            if k + 1 < stages {
+                let branch = self.value[r] + z;
+                let gain = (1.0 + admittance * branch).inv();
+                z = branch * gain;
+                // dz/d(branch) = (z/branch)²
+                gains[k] = gain * gain;
+                derivatives[r] = gains[k] * self.value[r];
+            } else {
+                z = admittance.inv();
+            }
+            derivatives[c] = -z * z * admittance;
+        }
+        let mut gain = Complex64::ONE;
+        for k in 0..stages {
+            derivatives[4 + 2 * k] *= gain;
+            if k + 1 < stages {
+                derivatives[5 + 2 * k] *= gain;
+            }
+            gain *= gains[k];
+        }
+        z
+    }
 }
 
 #[cfg(test)]
@@ -235,15 +254,15 @@ mod tests {
             for f in [1e3, 3e4, 1e6, 6.5e7] {
                 let at = Point::new(f);
                 let mut derivatives = [Complex64::ZERO; MOST];
-                let z = circuit.evaluate(&p, at, &mut derivatives);
+                let z = circuit.prepare(&p).evaluate(at, &mut derivatives);
                 for (k, derivative) in derivatives.iter().enumerate().take(p.len()) {
                     let h = 1e-6 * p[k].abs().max(1e-12);
                     let mut scratch = [Complex64::ZERO; MOST];
                     let (mut up, mut down) = (p.clone(), p.clone());
                     up[k] += h;
                     down[k] -= h;
-                    let by_difference = (circuit.evaluate(&up, at, &mut scratch)
-                        - circuit.evaluate(&down, at, &mut scratch))
+                    let by_difference = (circuit.prepare(&up).evaluate(at, &mut scratch)
+                        - circuit.prepare(&down).evaluate(at, &mut scratch))
                         / (2.0 * h);
                     let error = (by_difference - derivative).norm();
                     let scale = derivative.norm() + 1e-8 * z.norm() / h;
