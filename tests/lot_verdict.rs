@@ -580,3 +580,90 @@ fn sampling_by_variables_needs_normality_and_says_what_it_did_instead() {
             .any(|w| w.code == "judged_by_attributes")
     );
 }
+
+/// One bound with the capability rule, judged from a sample of those values.
+fn with_capability(values: &[f64], index: &str, noise: f64, lower: Option<f64>) -> LotJudgement {
+    use reelgate::station::Repeatability;
+    let mut limits = limits(Acceptance::Fixed {
+        sample: values.len() as u64,
+        accept: 0,
+    });
+    limits.bounds[0].lower = lower;
+    limits.capability_rules = vec![CapabilityRule {
+        of: vec![KEY.into()],
+        index: index.into(),
+        min: 1.33,
+    }];
+    let mut station = station();
+    station.uncertainty.repeatability =
+        vec![("capacitance".into(), Repeatability::Absolute(noise))];
+    let parts: Vec<PartRecord> = values
+        .iter()
+        .enumerate()
+        .map(|(i, v)| part(i, PartVerdict::Conforming, *v))
+        .collect();
+    judged(&lot(4000), &limits, &station, &parts)
+}
+
+#[test]
+fn an_index_is_stated_where_it_means_something() {
+    let values = |n| -> Vec<f64> { (0..n).map(value).collect() };
+    let both = Some(0.9e-6);
+    // Handbook 6.1.6: the normal approximation holds from about 25 values.
+    let few = with_capability(&values(24), "ppk", 0.0, both);
+    assert_eq!(
+        outcome(&few),
+        (LotVerdict::Hold, vec!["capability_not_available"])
+    );
+    assert!(
+        few.reasons[0].text.contains("at least 25 values"),
+        "{}",
+        few.reasons[0].text
+    );
+    assert_eq!(few.statistics[KEY].ppk, None);
+    let enough = with_capability(&values(25), "ppk", 0.0, both);
+    assert_eq!(enough.verdict, LotVerdict::Accept);
+    assert!(enough.statistics[KEY].at_least.is_none());
+
+    // Noise as wide as the spread seen: the index says nothing of the parts but that it is no lower.
+    let noisy = with_capability(&values(25), "ppk", 3e-9, both);
+    let s = &noisy.statistics[KEY];
+    assert_eq!(
+        (s.ppk, s.at_least.and_then(|a| a.ppk)),
+        (None, enough.statistics[KEY].ppk)
+    );
+    assert_eq!(noisy.verdict, LotVerdict::Accept);
+    assert!(s.warnings.iter().any(|w| w.code == "ppk_undefined"));
+}
+
+/// Exact lower bound for one limit and the tolerance interval, against scipy 1.17.1.
+#[test]
+fn bounds_and_intervals_of_a_lot() {
+    use reelgate::statistics::distributions::normal_quantile;
+    let values: Vec<f64> = (0..43)
+        .map(|i| 1e-6 + 2e-8 * normal_quantile((f64::from(i) + 0.5) / 43.0))
+        .collect();
+    let s = &with_capability(&values, "ppk", 0.0, None).statistics[KEY];
+    let (sd, ppk) = (s.standard_deviation.expect("s"), s.ppk.expect("an index"));
+    let near =
+        |found: f64, wanted: f64| assert!((found / wanted - 1.0).abs() < 1e-8, "{found} {wanted}");
+    // The integral of Odeh & Owen (1980) by scipy's quadrature.
+    let [low, high] = s.tolerance_95_95.expect("an interval");
+    near((high - low) / (2.0 * sd), 2.425_376_527_370_807);
+    // nct of scipy.
+    near(
+        s.ppk_lower_95.expect("a bound") / ppk,
+        0.811_483_898_558_543_6,
+    );
+    // Nothing nonconforming of 43 in 4000: the largest D with C(4000 - D, 43)/C(4000, 43) > 0.05.
+    let share = with_capability(&values, "ppk", 0.0, None).sampling.classes["all"]
+        .share_nonconforming_upper_95
+        .expect("a bound");
+    let none = |d: f64| {
+        (0..43)
+            .map(|i| 1.0 - d / (4000.0 - f64::from(i)))
+            .product::<f64>()
+    };
+    let most = share * 4000.0;
+    assert!(none(most) > 0.05 && none(most + 1.0) <= 0.05, "{most}");
+}

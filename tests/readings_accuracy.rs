@@ -169,6 +169,20 @@ const BEYOND_THE_DATA: [(&str, &str); 7] = [
     ("alu_330u", "capacitance at the test frequency"),
 ];
 
+/// Whether most sweeps hide the value: it then is a bound, and there is no error to be measured.
+/// No unbiased estimator tells such a value to better than a half of it.
+fn hidden(m: &Measured) -> bool {
+    let hidden = m.missing > SEEDS / 10;
+    assert!(
+        !hidden || m.bound > 0.5,
+        "{} {}: hidden, bound {:.2e}",
+        m.part,
+        m.what,
+        m.bound
+    );
+    hidden
+}
+
 /// The dispersion of the two class 2 reference parts is made of one relaxation a decade, so that
 /// their loss ripples by some percent with a period of one decade. Where the noise of a point is
 /// several times the ripple, a fit over 0.8 decade averages it away and cannot know.
@@ -181,7 +195,12 @@ fn ripples(m: &Measured) -> bool {
 fn readings_reach_their_targets_and_know_their_uncertainty() {
     let measured = all();
     let mut exceptions = 0;
-    for m in &measured {
+    let hidden = measured.iter().filter(|m| hidden(m)).count();
+    assert_eq!(
+        hidden, 3,
+        "losses of the 1 nF and the film part far from resonance"
+    );
+    for m in measured.iter().filter(|m| !self::hidden(m)) {
         let label = format!("{} {}", m.part, m.what);
         // Of every reading, target or not.
         assert!(
@@ -250,7 +269,7 @@ fn document(measured: &[Measured]) {
         "| part | reading | rms error | bias | stated u | within 2 u | bound | without noise |\n\
          |---|---|---|---|---|---|---|---|\n",
     );
-    for m in measured {
+    for m in measured.iter().filter(|m| !hidden(m)) {
         let (part, what) = (m.part, m.what);
         let columns = [
             m.rms,

@@ -83,6 +83,9 @@ proptest! {
                     let u = before.lowest.standard_uncertainty.unwrap() * k.powi(power);
                     prop_assert!(near(after.lowest.standard_uncertainty.unwrap(), u, 1e-4));
                 }
+                (Value::Below(a), Value::Below(b)) => {
+                    prop_assert!(near(b, a * k.powi(power), 1e-6), "{request:?}: {a} {b}");
+                }
                 (a, b) => prop_assert_eq!(a, b),
             }
         }
@@ -224,4 +227,36 @@ fn ageing_worked_example_and_its_uncertainty() {
     let rate = 4.5e-6 * 0.4 / 3f64.sqrt() * 0.025 * 8f64.log10();
     assert!((u - (9e-9 * referral.factor().unwrap()).hypot(rate)).abs() < 1e-14);
     assert_eq!(referred.warnings[0].code, "referred_to_referee_time");
+}
+
+#[test]
+fn a_loss_that_noise_hides_is_a_bound_and_never_negative() {
+    // 1 µF film at 1 kHz: tan δ = 2.1e-4 under 0.1° = 17e-4 of phase noise at each point.
+    let exact = clean(&part("film_1u_pp").network, &grid(1e3, 65e6, 50));
+    let truth = truth("film_1u_pp", "D_test");
+    let (mut bounds, mut held) = (0, 0);
+    for seed in 1..=200 {
+        let sweep = noisy(&exact, 5e-3, 1.7e-3, &mut Random::new(seed));
+        let reading = read(&sweep, &at(Ch::DissipationFactor, 1e3)).lowest;
+        match reading.value {
+            Value::Below(most) => {
+                let note = reading.warnings.last().unwrap();
+                assert_eq!(note.code, "hidden_by_noise");
+                let shown = format!(
+                    "dissipation factor: it is known only to lie below {:.3} %",
+                    100.0 * most
+                );
+                assert!(note.text.contains(&shown), "{}", note.text);
+                bounds += 1;
+                held += u32::from(truth < most);
+            }
+            Value::Known(d) => assert!(d > 0.0, "{reading:?}"),
+            _ => panic!("{reading:?}"),
+        }
+    }
+    assert!(bounds > 100, "{bounds} of 200 are bounds");
+    assert!(
+        f64::from(held) >= 0.93 * f64::from(bounds),
+        "{held} of {bounds} hold"
+    );
 }

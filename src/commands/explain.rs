@@ -105,6 +105,9 @@ fn in_numbers(record: &LotRecord, reading: &ReadingRecord) -> String {
         |name: &str, value: Option<f64>| value.map(|v| format!("{name} {}", shortest(v, unit)));
     words.extend(limit("L", reading.lower));
     words.extend(limit("U", reading.upper));
+    if let Some(p) = reading.conformance_probability {
+        words.push(format!("probability of conformity {:.4}", p));
+    }
     if let Some(margin) = reading.margin {
         words.push(format!("margin {}", engineering(margin, unit, 3)));
     }

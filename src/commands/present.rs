@@ -270,7 +270,8 @@ fn parts(out: &mut String, record: &LotRecord) {
         return;
     }
     heading(out, "Parts that are not conforming");
-    for part in shown.iter().take(PARTS_SHOWN) {
+    let bounds = &record.limits.characteristics;
+    let alike: Vec<(String, Vec<&str>)> = shown.iter().fold(Vec::new(), |mut all, part| {
         let class = part
             .class
             .as_ref()
@@ -278,17 +279,29 @@ fn parts(out: &mut String, record: &LotRecord) {
         let text = format!(
             "{}{class}: {}",
             part.verdict.name(),
-            what_is_wrong(part, &record.limits.characteristics)
+            what_is_wrong(part, bounds)
         );
-        let name = clipped(&part.part, 12);
-        out.push_str(&wrapped(&text, &format!("  {name:<6} "), "         "));
+        match all.last_mut() {
+            Some((last, names)) if *last == text => names.push(&part.part),
+            _ => all.push((text, vec![&part.part])),
+        }
+        all
+    });
+    for (text, names) in alike.iter().take(PARTS_SHOWN) {
+        let name = match names.as_slice() {
+            [one] => clipped(one, 12),
+            [first, .., last] => format!("{} to {}", clipped(first, 12), clipped(last, 12)),
+            [] => continue,
+        };
+        out.push_str(&wrapped(text, &format!("  {name:<6} "), "         "));
     }
-    if shown.len() > PARTS_SHOWN {
-        let _ = writeln!(
-            out,
-            "  and {} more, all in the record",
-            shown.len() - PARTS_SHOWN
-        );
+    let left: usize = alike
+        .iter()
+        .skip(PARTS_SHOWN)
+        .map(|(_, names)| names.len())
+        .sum();
+    if left > 0 {
+        let _ = writeln!(out, "  and {left} more, all in the record");
     }
 }
 

@@ -5,6 +5,7 @@
 //! no sweep is needed. The reactance that ESR is read against comes from the nominal capacitance,
 //! where the limit file gives one.
 
+use crate::diagnostic::Note;
 use crate::limits::{Bound, Limits};
 use crate::readings::{Characteristic, Place};
 use crate::station::{Repeatability, Station};
@@ -68,6 +69,22 @@ pub fn abilities(limits: &Limits, station: &Station) -> Vec<BenchAbility> {
         .bounds
         .iter()
         .filter_map(|bound| of_bound(bound, limits, station))
+        .collect()
+}
+
+/// A warning for each limit that this bench cannot decide.
+pub fn undecidable(limits: &Limits, station: &Station) -> Vec<Note> {
+    abilities(limits, station)
+        .into_iter()
+        .filter(|a| a.ability == Ability::CannotDecide)
+        .map(|a| {
+            let ratio = a.ratio.unwrap_or(f64::INFINITY);
+            let text = format!(
+                "{} cannot decide {}: the expanded uncertainty at the limit is {ratio:.1} times the room ({})",
+                station.name, a.key, a.why
+            );
+            Note::new("bench_cannot_decide", text)
+        })
         .collect()
 }
 

@@ -8,7 +8,7 @@ mod conformance;
 mod part;
 mod zone;
 
-pub use bench::{Ability, BenchAbility, abilities};
+pub use bench::{Ability, BenchAbility, abilities, undecidable};
 pub use conformance::{Risks, acceptance_window, conformance_probability, global_risks};
 pub(crate) use part::AGEING_UNKNOWN;
 pub use part::{AttemptRecord, JudgedTry, PartRecord, judge_part, judge_try};

@@ -151,6 +151,9 @@ fn against(
         Value::Known(value) => {
             record.value = Some(value);
             record.verdict = zone(value, reading.standard_uncertainty, lower, upper, rule);
+            record.conformance_probability = reading
+                .standard_uncertainty
+                .and_then(|u| conformance_probability(value, u, Window { lower, upper }));
             record.margin = Some(margin(value, lower, upper)).filter(|m| m.is_finite());
             record.conformance_probability = reading
                 .standard_uncertainty

@@ -205,9 +205,11 @@ fn capability(decided: &Decided) -> Vec<Step> {
                 "cp" | "pp" => "(U − L) / 6σ",
                 _ => "the smaller of (U − mean) / 3σ and (mean − L) / 3σ",
             };
-            let result = match s.index(&rule.index) {
-                Some(index) if index >= rule.min => format!("{index:.3} ≥ {}", rule.min),
-                Some(index) => format!("{index:.3} < {}: holds the lot", rule.min),
+            let value = s.index(&rule.index);
+            let how = how_had(s, rule.index.as_str());
+            let result = match value {
+                Some(index) if index >= rule.min => format!("{how}{index:.3} ≥ {}", rule.min),
+                Some(index) => format!("{how}{index:.3} < {}: holds the lot", rule.min),
                 None => "cannot be had: holds the lot".to_owned(),
             };
             steps.push(step(
@@ -229,6 +231,22 @@ fn capability(decided: &Decided) -> Vec<Step> {
         }
     }
     steps
+}
+
+/// Where the index is not the one of the formula as it stands.
+fn how_had(s: &Statistics, index: &str) -> &'static str {
+    let by_percentiles = match index {
+        "pp" => s.pp_percentile,
+        "ppk" => s.ppk_percentile,
+        _ => None,
+    };
+    if by_percentiles.is_some() {
+        return "not normally distributed, so by the 0.135 %, 50 % and 99.865 % quantiles of the fitted distribution: ";
+    }
+    match s.at_least.and_then(|at_least| at_least.get(index)) {
+        Some(_) => "most of the spread is the measurement's, so at least: ",
+        None => "",
+    }
 }
 
 fn limits_of(bound: &Bound) -> String {

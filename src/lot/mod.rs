@@ -2,6 +2,7 @@
 //!
 //! No files, no clock: what a lot comes to depends on the arguments alone.
 
+mod capability;
 mod conditions;
 mod curve;
 mod explain;
@@ -10,6 +11,7 @@ mod statistics;
 mod variables;
 mod verdict;
 
+pub use capability::Indices;
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;

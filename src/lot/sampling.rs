@@ -7,6 +7,7 @@ use crate::limits::{Acceptance, Limits, NotNormal};
 use crate::statistics::Undefined;
 use crate::statistics::operating_characteristic::zero_acceptance_sample;
 use crate::statistics::sampling::{InspectionLevel, Severity, code_letter, plan_for};
+use crate::statistics::share::lot_upper_bound;
 use crate::statistics::variables;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
@@ -60,6 +61,9 @@ pub struct ClassSection {
     pub undecided: u64,
     /// `accept`, `reject` or `hold` by this class alone.
     pub verdict: LotVerdict,
+    /// Upper 95 % confidence bound of the share of such parts in the lot, a ratio: exact for its size; undecided parts count as nonconforming.
+    #[serde(default)]
+    pub share_nonconforming_upper_95: Option<f64>,
     /// `null` where the whole lot is inspected.
     #[serde(default)]
     pub operating_characteristic: Option<OperatingCharacteristic>,
@@ -289,7 +293,7 @@ fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
 /// counted apart, never ignored.
 pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampling {
     let of = |verdict| parts.iter().filter(|p| p.verdict == verdict).count() as u64;
-    let unmeasured = of(PartVerdict::Unmeasured);
+    let unmeasured = unmeasured_of(parts);
     let mut beyond = 0;
     let mut required = 0;
     let mut classes = IndexMap::new();
@@ -332,6 +336,11 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
                 nonconforming,
                 undecided,
                 verdict,
+                share_nonconforming_upper_95: share_upper(
+                    plan.lot_size,
+                    inside as u64 - unmeasured_of(&parts[..inside]),
+                    nonconforming + undecided,
+                ),
                 operating_characteristic: plan.curve(class),
                 variables: sections,
                 by_variables,
@@ -359,6 +368,17 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
         nonconforming_beyond_sample: beyond,
         classes,
     }
+}
+
+fn unmeasured_of(parts: &[PartRecord]) -> u64 {
+    let unmeasured = |p: &&PartRecord| p.verdict == PartVerdict::Unmeasured;
+    parts.iter().filter(unmeasured).count() as u64
+}
+
+/// The largest share that a sample as good as this leaves possible with 95 % confidence.
+fn share_upper(lot: u64, measured: u64, nonconforming: u64) -> Option<f64> {
+    let most = lot_upper_bound(lot, measured, nonconforming, 0.95).ok()?;
+    Some(most as f64 / lot as f64)
 }
 
 /// Undecided parts are counted both ways: the class accepts only if it would with all of them

@@ -1,24 +1,22 @@
 //! Lot statistics of a characteristic over the parts that have a value.
 
+use super::capability::{self, Indices};
 use crate::diagnostic::Note;
 use crate::judgement::{PartRecord, PartVerdict};
 use crate::limits::{Bound, Limits};
-use crate::statistics::Undefined;
-use crate::statistics::capability::{Capability, cpk_lower_bound};
+use crate::station::Station;
 use crate::statistics::outliers::generalized_esd;
-use crate::statistics::summary::{Summary, moving_range_degrees_of_freedom, moving_range_sigma};
+use crate::statistics::summary::Summary;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
 
-/// Confidence of the lower bounds of capability indices, one-sided.
-const CONFIDENCE: f64 = 0.95;
 /// Significance of the outlier test where no lot rule names one.
 const ALPHA: f64 = 0.01;
 /// The most outliers looked for in one characteristic.
 const OUTLIERS_MAX: usize = 10;
 
 /// Statistics of one characteristic over all parts that have a value.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
 #[allow(missing_docs)]
 pub struct Statistics {
     pub n: u64,
@@ -36,6 +34,21 @@ pub struct Statistics {
     pub ppk: Option<f64>,
     pub cpk_lower_95: Option<f64>,
     pub ppk_lower_95: Option<f64>,
+    /// Where most of the spread is the measurement's, so that the indices are null: what they are
+    /// at least.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub at_least: Option<Indices>,
+    /// By percentiles (ISO 22514-2), where the values are not normally distributed.
+    #[serde(default)]
+    pub pp_percentile: Option<f64>,
+    #[serde(default)]
+    pub ppk_percentile: Option<f64>,
+    /// Of the test of Anderson and Darling.
+    #[serde(default)]
+    pub normality_p_value: Option<f64>,
+    /// Holds at least 95 % of the parts with a confidence of 95 %.
+    #[serde(default)]
+    pub tolerance_95_95: Option<[f64; 2]>,
     /// Part numbers.
     pub outliers: Vec<String>,
     pub nonconforming: u64,
@@ -45,28 +58,44 @@ pub struct Statistics {
 }
 
 impl Statistics {
-    /// A capability index by its name, `cp`, `cpk`, `pp` or `ppk`.
+    /// The index that a rule of this name (`cp`, `cpk`, `pp`, `ppk`) is held against: of values
+    /// that are not normally distributed, Pp and Ppk by percentiles where they can be had (ISO
+    /// 22514-2); what the index is at least, where noise dominates the spread.
     pub fn index(&self, name: &str) -> Option<f64> {
-        match name {
-            "cp" => self.cp,
-            "cpk" => self.cpk,
-            "pp" => self.pp,
-            "ppk" => self.ppk,
+        let by_percentiles = match name {
+            "pp" => self.pp_percentile,
+            "ppk" => self.ppk_percentile,
             _ => None,
+        };
+        by_percentiles
+            .or_else(|| self.indices().get(name))
+            .or_else(|| self.at_least?.get(name))
+    }
+
+    fn indices(&self) -> Indices {
+        Indices {
+            cp: self.cp,
+            cpk: self.cpk,
+            pp: self.pp,
+            ppk: self.ppk,
         }
     }
 }
 
 /// The statistics of every bound, in the order of the limit file; parts in measuring order.
-pub fn statistics(limits: &Limits, parts: &[PartRecord]) -> IndexMap<String, Statistics> {
+pub fn statistics(
+    limits: &Limits,
+    station: &Station,
+    parts: &[PartRecord],
+) -> IndexMap<String, Statistics> {
     limits
         .bounds
         .iter()
-        .map(|bound| (bound.key.clone(), of_bound(bound, limits, parts)))
+        .map(|bound| (bound.key.clone(), of_bound(bound, limits, station, parts)))
         .collect()
 }
 
-fn of_bound(bound: &Bound, limits: &Limits, parts: &[PartRecord]) -> Statistics {
+fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartRecord]) -> Statistics {
     let readings = || {
         parts
             .iter()
@@ -87,42 +116,13 @@ fn of_bound(bound: &Bound, limits: &Limits, parts: &[PartRecord]) -> Statistics 
             format!("{bounded} parts are known only to lie beyond the sweep; the statistics are of the other {}", values.len()),
         ));
     }
-    let mut keep = |name: &str, value: Result<f64, Undefined>| match value {
-        Ok(value) => Some(value),
-        // Said once, below: with one limit there is no width to compare the spread with.
-        Err(Undefined::OneSided) => None,
-        Err(why) => {
-            warnings.push(Note::new(
-                &format!("{name}_undefined"),
-                format!("no {name}: {}", why.text()),
-            ));
-            None
-        }
-    };
     let summary = Summary::of(&values).ok();
-    let sigma_within = keep("sigma_within", moving_range_sigma(&values));
-    let capability = Capability::of(&values, bound.lower, bound.upper);
-    let [cp, cpk, pp, ppk] = [
-        ("cp", capability.cp),
-        ("cpk", capability.cpk),
-        ("pp", capability.pp),
-        ("ppk", capability.ppk),
-    ]
-    .map(|(name, value)| keep(name, value));
-    if bound.lower.is_none() || bound.upper.is_none() {
-        warnings.push(Note::new(
-            "one_sided",
-            format!("no cp, no pp: {}", Undefined::OneSided.text()),
-        ));
-    }
+    let mean = summary.as_ref().map(|s| s.mean);
+    let standard_deviation = summary.as_ref().and_then(|s| s.standard_deviation.ok());
+    let noise = capability::repeatability(station, bound, mean);
+    let stated = capability::of(&values, mean, standard_deviation, bound, noise);
+    warnings.extend(stated.warnings);
     let n = values.len();
-    let lower = |index: Option<f64>, freedom: f64| {
-        index.and_then(|index| cpk_lower_bound(index, n as u64, freedom, CONFIDENCE).ok())
-    };
-    let cpk_lower_95 = moving_range_degrees_of_freedom(n as u64)
-        .ok()
-        .and_then(|nu| lower(cpk, nu));
-    let ppk_lower_95 = lower(ppk, n.saturating_sub(1) as f64);
     let outliers = match generalized_esd(&values, OUTLIERS_MAX.min(n / 4), alpha(bound, limits)) {
         Ok(found) => found
             .outliers
@@ -139,18 +139,23 @@ fn of_bound(bound: &Bound, limits: &Limits, parts: &[PartRecord]) -> Statistics 
     };
     Statistics {
         n: n as u64,
-        mean: summary.as_ref().map(|s| s.mean),
-        standard_deviation: summary.as_ref().and_then(|s| s.standard_deviation.ok()),
+        mean,
+        standard_deviation,
         minimum: summary.as_ref().map(|s| s.minimum),
         maximum: summary.as_ref().map(|s| s.maximum),
         median: summary.as_ref().map(|s| s.median),
-        sigma_within,
-        cp,
-        cpk,
-        pp,
-        ppk,
-        cpk_lower_95,
-        ppk_lower_95,
+        sigma_within: stated.sigma_within,
+        cp: stated.indices.cp,
+        cpk: stated.indices.cpk,
+        pp: stated.indices.pp,
+        ppk: stated.indices.ppk,
+        cpk_lower_95: stated.cpk_lower_95,
+        ppk_lower_95: stated.ppk_lower_95,
+        at_least: stated.at_least,
+        pp_percentile: stated.pp_percentile,
+        ppk_percentile: stated.ppk_percentile,
+        normality_p_value: stated.normality_p_value,
+        tolerance_95_95: stated.tolerance_95_95,
         outliers,
         nonconforming: with(PartVerdict::Nonconforming),
         undecided: with(PartVerdict::Undecided),

@@ -69,7 +69,7 @@ pub fn judge(
         checked.into_iter().map(|c| (c.section, c.reason)).unzip();
     let unmet: Vec<Note> = unmet.into_iter().flatten().collect();
     let sampling = sampling::count(plan, limits, parts);
-    let statistics = statistics(limits, parts);
+    let statistics = statistics(limits, station, parts);
     let rejections = over_ac(&sampling);
     let mut holds = undecided(&sampling, parts);
     holds.extend(short_sample(lot, &sampling));

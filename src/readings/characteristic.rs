@@ -112,4 +112,12 @@ impl Characteristic {
                 | Characteristic::FittedResistance
         )
     }
+
+    /// Whether the value is a loss of a passive part: above 0, and small beside |Z|.
+    pub(super) fn is_loss(self) -> bool {
+        matches!(
+            self,
+            Characteristic::DissipationFactor | Characteristic::Esr | Characteristic::EsrMinimum
+        )
+    }
 }

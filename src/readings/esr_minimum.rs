@@ -63,7 +63,7 @@ pub(super) fn read(sweep: &Sweep, place: Place) -> Outcome {
         centre = at;
     }
     match found {
-        Some((fit, at)) => estimate(&fit, at, from, to),
+        Some((fit, at)) => Ok(estimate(&fit, at, from, to)),
         None => Err(hidden()),
     }
 }
@@ -79,11 +79,8 @@ fn hidden() -> Reading {
     )
 }
 
-fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Outcome {
+fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Estimate {
     let z = fit.impedance(at);
-    if z.re.is_nan() || z.re <= 0.0 {
-        return Err(hidden());
-    }
     let mut estimate = Estimate::new(z.re, 1.0, -z.im, fit.sigma(at, Complex64::ONE)).at(at);
     if at <= from * 1.001 || at >= to * 0.999 {
         estimate.warnings.push(Note::new(
@@ -91,7 +88,7 @@ fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Outcome {
             "the resistance still falls at the end of the range: the true minimum may lie beyond it",
         ));
     }
-    Ok(estimate)
+    estimate
 }
 
 /// Where the fitted R is smallest between two frequencies: the least of 40 steps, then golden

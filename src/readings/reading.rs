@@ -86,12 +86,35 @@ impl Estimate {
     }
 
     /// The reading with the uncertainty that a budget gives it.
+    ///
+    /// A resistance or loss that the points' scatter hides is no value: noise of either sign would
+    /// conform to a maximum. What is known then is that it lies below the estimate and twice its
+    /// uncertainty.
     pub(super) fn into_reading(self, characteristic: Characteristic, budget: &Budget) -> Reading {
-        let components = budget.components(characteristic, &self);
-        let mut reading = Reading::known(self.value, components.map(|c| combined(&c)));
-        if reading.value != Value::Missing {
-            reading.frequency = self.frequency;
-            reading.warnings = self.warnings;
+        let u = budget
+            .components(characteristic, &self)
+            .map(|c| combined(&c));
+        let hidden = self.value <= 0.0 || self.scatter > self.value;
+        let most = self.value.max(0.0) + 2.0 * u.unwrap_or(0.0).max(self.scatter);
+        let mut reading = Reading::known(self.value, u);
+        if reading.value == Value::Missing {
+            return reading;
+        }
+        reading.frequency = self.frequency;
+        reading.warnings = self.warnings;
+        if hidden && characteristic.is_loss() && most > 0.0 && most.is_finite() {
+            let shown = match characteristic.unit() {
+                "1" => format!("{:.3} %", 100.0 * most),
+                unit => crate::quantity::engineering(most, unit, 3),
+            };
+            reading.value = Value::Below(most);
+            reading.warnings.push(Note::new(
+                "hidden_by_noise",
+                format!(
+                    "the noise of the sweep hides the {}: it is known only to lie below {shown}; average more, or use a jig made for this impedance",
+                    characteristic.title(),
+                ),
+            ));
         }
         reading
     }

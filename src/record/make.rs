@@ -3,7 +3,7 @@
 
 use super::{Digests, Inputs, LotRecord, PartRecord, sha256};
 use crate::diagnostic::{Faults, Note};
-use crate::judgement::{JudgedTry, judge_part, judge_try};
+use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
 use crate::lot::{self, Lot};
 use crate::readings::{Budget, Characteristic};
@@ -104,7 +104,7 @@ pub fn make(
         digests: &digests,
         judgement,
         parts,
-        warnings: Vec::new(),
+        warnings: undecidable(&limits, &station),
         issued: occasion.issued.clone(),
         supersedes: occasion.supersedes.clone(),
     });

@@ -48,7 +48,8 @@ impl Undefined {
     pub fn text(&self) -> String {
         match self {
             Self::TooFewValues { needed, found } => {
-                format!("it needs at least {needed} values and there are {found}")
+                let values = if *needed == 1 { "value" } else { "values" };
+                format!("it needs at least {needed} {values} and there are {found}")
             }
             Self::NotFinite => "a value is not a finite number".to_owned(),
             Self::ZeroSpread => "all values are equal, so their spread is zero".to_owned(),

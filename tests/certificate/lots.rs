@@ -508,6 +508,7 @@ fn statistics(values: &[f64], bound: &BoundSection) -> Statistics {
         } else {
             vec![]
         },
+        ..Statistics::default()
     }
 }
 
@@ -681,6 +682,7 @@ fn sampling(parts: u64) -> Sampling {
         nonconforming: 0,
         undecided: 0,
         verdict: LotVerdict::Accept,
+        share_nonconforming_upper_95: None,
         operating_characteristic: OperatingCharacteristic::binomial(parts, ac, 4000),
         variables: vec![],
         by_variables: false,

@@ -26,6 +26,10 @@ use std::sync::Arc;
 /// The oldest SQLite that may write a ledger (3.51.3).
 const OLDEST: i32 = 3_051_003;
 
+/// How often and how long the second lock is tried: two seconds in all.
+const SECOND_LOCK_TRIES: u32 = 100;
+const SECOND_LOCK_PAUSE: std::time::Duration = std::time::Duration::from_millis(20);
+
 /// A ledger in an SQLite file.
 pub struct SqliteStore {
     connection: Connection,
@@ -93,18 +97,24 @@ impl SqliteStore {
             .write(true)
             .open(&path)
             .map_err(|e| LedgerError::io("opening the lock file", &path, e))?;
-        match file.try_lock() {
-            Ok(()) => Ok(file),
-            Err(TryLockError::WouldBlock) => Err(LedgerError::Locks {
-                path: self.path.clone(),
-                why: "two processes hold the ledger at the same time on this file system"
-                    .to_owned(),
-            }),
-            Err(TryLockError::Error(error)) => Err(LedgerError::Locks {
-                path: self.path.clone(),
-                why: format!("this file system gives no locks ({error})"),
-            }),
+        // A process started by another thread holds a copy of every lock from its birth until it
+        // runs its own program: a lock that is taken for a moment says nothing yet.
+        for _ in 0..SECOND_LOCK_TRIES {
+            match file.try_lock() {
+                Ok(()) => return Ok(file),
+                Err(TryLockError::WouldBlock) => std::thread::sleep(SECOND_LOCK_PAUSE),
+                Err(TryLockError::Error(error)) => {
+                    return Err(LedgerError::Locks {
+                        path: self.path.clone(),
+                        why: format!("this file system gives no locks ({error})"),
+                    });
+                }
+            }
         }
+        Err(LedgerError::Locks {
+            path: self.path.clone(),
+            why: "two processes hold the ledger at the same time on this file system".to_owned(),
+        })
     }
 
     /// Reads the row from the file through a connection of its own and compares.

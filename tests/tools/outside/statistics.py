@@ -53,12 +53,18 @@ def again(values, lower, upper):
     def bound(index, nu):
         return index - z * numpy.sqrt(1 / (9 * n) + index**2 / (2 * nu))
 
+    def exact(index):
+        """Lower bound of a one-sided index: the noncentral t that makes it as likely as 5 %."""
+        scale = 3 * numpy.sqrt(n)
+        return optimize.brentq(lambda c: stats.nct.sf(scale * index, n - 1, scale * c) - 0.05, index - 5 * abs(index) - 1, index, xtol=1e-13, rtol=1e-12)
+
+    both = lower is not None and upper is not None
     result = {
         "mean": mean, "standard_deviation": s, "median": numpy.median(x), "minimum": x.min(), "maximum": x.max(), "sigma_within": within,
         "cpk": near / (3 * within), "ppk": near / (3 * s),
-        "cpk_lower_95": bound(near / (3 * within), moving_range_freedom(n)), "ppk_lower_95": bound(near / (3 * s), n - 1),
+        "cpk_lower_95": bound(near / (3 * within), moving_range_freedom(n)), "ppk_lower_95": (lambda index: bound(index, n - 1) if both else exact(index))(near / (3 * s)),
     }
-    if lower is not None and upper is not None:
+    if both:
         result |= {"cp": (upper - lower) / (6 * within), "pp": (upper - lower) / (6 * s)}
     return result
 
@@ -67,7 +73,7 @@ SOURCES = {
     ("mean", "standard_deviation"): f"`DescrStatsW` of {STATSMODELS}",
     ("median", "minimum", "maximum", "sigma_within"): NUMPY,
     ("cp", "cpk", "pp", "ppk"): f"{NUMPY}; definitions of ISO 22514-2",
-    ("cpk_lower_95", "ppk_lower_95"): f"{SCIPY}; Bissell 1990, degrees of freedom of the moving range solved anew",
+    ("cpk_lower_95", "ppk_lower_95"): f"{SCIPY}; Bissell 1990, noncentral t with one limit, degrees of freedom of the moving range solved anew",
 }
 
 
@@ -83,6 +89,8 @@ def sample_lots(found):
             if len(values) < 2:
                 continue
             for name, value in again(values, bound["lower"], bound["upper"]).items():
+                if name.startswith(("cp", "pp")) and of[name] is None and (len(values) < 25 or of.get("at_least")):
+                    continue  # refused: too few values, or mostly the measurement's spread
                 difference = numpy.inf if of[name] is None else abs(of[name] / value - 1)
                 worst[name] = max(worst.get(name, 0), difference)
                 count[name] = count.get(name, 0) + 1

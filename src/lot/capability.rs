@@ -1,0 +1,215 @@
+//! Capability of one characteristic as the record states it, or why it states none.
+
+use crate::diagnostic::Note;
+use crate::limits::Bound;
+use crate::station::{Repeatability, Station};
+use crate::statistics::Undefined;
+use crate::statistics::capability::{
+    Capability, cpk_lower_bound, one_sided_lower_bound, worth_stating,
+};
+use crate::statistics::normality::anderson_darling;
+use crate::statistics::percentile::box_cox;
+use crate::statistics::summary::moving_range_degrees_of_freedom;
+use crate::statistics::tolerance::{distribution_free_size, two_sided_factor};
+use serde::{Deserialize, Serialize};
+
+/// Confidence of bounds and of the tolerance interval, one-sided.
+const CONFIDENCE: f64 = 0.95;
+/// Share of the parts in the tolerance interval.
+const CONTENT: f64 = 0.95;
+/// A p-value below this speaks against a normal distribution.
+const NORMALITY_ALPHA: f64 = 0.05;
+
+/// The four indices.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct Indices {
+    pub cp: Option<f64>,
+    pub cpk: Option<f64>,
+    pub pp: Option<f64>,
+    pub ppk: Option<f64>,
+}
+
+impl Indices {
+    /// An index by its name, `cp`, `cpk`, `pp` or `ppk`.
+    pub fn get(&self, name: &str) -> Option<f64> {
+        match name {
+            "cp" => self.cp,
+            "cpk" => self.cpk,
+            "pp" => self.pp,
+            "ppk" => self.ppk,
+            _ => None,
+        }
+    }
+}
+
+/// All that is said of the capability of a characteristic.
+#[derive(Debug, Clone, Default)]
+pub(super) struct Stated {
+    pub(super) sigma_within: Option<f64>,
+    pub(super) indices: Indices,
+    pub(super) at_least: Option<Indices>,
+    pub(super) cpk_lower_95: Option<f64>,
+    pub(super) ppk_lower_95: Option<f64>,
+    pub(super) pp_percentile: Option<f64>,
+    pub(super) ppk_percentile: Option<f64>,
+    pub(super) normality_p_value: Option<f64>,
+    pub(super) tolerance_95_95: Option<[f64; 2]>,
+    pub(super) warnings: Vec<Note>,
+}
+
+/// The standard deviation of repeated readings that a station states of a characteristic, at the
+/// mean of the lot; `None` where it states none.
+pub(super) fn repeatability(station: &Station, bound: &Bound, mean: Option<f64>) -> Option<f64> {
+    let of = |(name, _): &&(String, Repeatability)| name == bound.characteristic.name();
+    let (_, stated) = station.uncertainty.repeatability.iter().find(of)?;
+    match stated {
+        Repeatability::Relative(ratio) => mean.map(|mean| ratio * mean.abs()),
+        Repeatability::Absolute(value) => Some(*value),
+    }
+}
+
+/// The capability of values in measuring order.
+///
+/// An index is given where it is worth stating (see [`worth_stating`]) and null with a warning
+/// where not. `mean` and `s` are those of the values; `noise` is the standard deviation of repeated readings.
+pub(super) fn of(
+    values: &[f64],
+    mean: Option<f64>,
+    s: Option<f64>,
+    bound: &Bound,
+    noise: Option<f64>,
+) -> Stated {
+    let n = values.len() as u64;
+    let all = Capability::of(values, bound.lower, bound.upper);
+    let mut stated = Stated::default();
+    stated.sigma_within = keep(&mut stated.warnings, "sigma_within", all.sigma_within);
+    let checked = |sigma: Result<f64, Undefined>, index: Result<f64, Undefined>| {
+        let worth = sigma.and_then(|sigma| worth_stating(n, sigma, noise));
+        index.and_then(|index| worth.map(|()| index))
+    };
+    let [cp, cpk, pp, ppk] = [
+        ("cp", all.sigma_within, all.cp),
+        ("cpk", all.sigma_within, all.cpk),
+        ("pp", all.sigma_overall, all.pp),
+        ("ppk", all.sigma_overall, all.ppk),
+    ]
+    .map(|(name, sigma, index)| keep(&mut stated.warnings, name, checked(sigma, index)));
+    stated.indices = Indices { cp, cpk, pp, ppk };
+    stated.at_least = at_least(&all, n, noise);
+    if bound.lower.is_none() || bound.upper.is_none() {
+        let why = Undefined::OneSided.text();
+        let note = Note::new("one_sided", format!("no cp, no pp: {why}"));
+        stated.warnings.push(note);
+    }
+    stated.cpk_lower_95 = moving_range_degrees_of_freedom(n)
+        .ok()
+        .zip(cpk)
+        .and_then(|(nu, cpk)| cpk_lower_bound(cpk, n, nu, CONFIDENCE).ok());
+    stated.ppk_lower_95 = ppk.and_then(|ppk| ppk_lower(ppk, n, bound));
+    distribution(&mut stated, values, mean.zip(s), bound);
+    stated
+}
+
+/// Exact for one limit (noncentral t law); with two, the approximation of Bissell (1990).
+fn ppk_lower(ppk: f64, n: u64, bound: &Bound) -> Option<f64> {
+    if bound.lower.is_some() && bound.upper.is_some() {
+        return cpk_lower_bound(ppk, n, n.saturating_sub(1) as f64, CONFIDENCE).ok();
+    }
+    one_sided_lower_bound(ppk, n, CONFIDENCE).ok()
+}
+
+/// Noise only widens the spread that is seen: where it dominates, the true indices are at least
+/// those of the spread that is seen, sampling apart.
+fn at_least(all: &Capability, n: u64, noise: Option<f64>) -> Option<Indices> {
+    let dominated = |sigma: Result<f64, Undefined>| {
+        let worth = sigma.and_then(|sigma| worth_stating(n, sigma, noise));
+        matches!(worth, Err(Undefined::MeasurementDominates { .. }))
+    };
+    let (within, overall) = (dominated(all.sigma_within), dominated(all.sigma_overall));
+    let when = |dominated: bool, index: Result<f64, Undefined>| index.ok().filter(|_| dominated);
+    (within || overall).then(|| Indices {
+        cp: when(within, all.cp),
+        cpk: when(within, all.cpk),
+        pp: when(overall, all.pp),
+        ppk: when(overall, all.ppk),
+    })
+}
+
+/// What depends on whether the values are normally distributed: the percentile indices and the
+/// tolerance interval.
+fn distribution(stated: &mut Stated, values: &[f64], moments: Option<(f64, f64)>, bound: &Bound) {
+    let p = match anderson_darling(values) {
+        Ok(test) => test.p_value,
+        Err(why) => {
+            let text = format!(
+                "no test for normality, no tolerance interval: {}",
+                why.text()
+            );
+            let note = Note::new("normality_undefined", text);
+            stated.warnings.push(note);
+            return;
+        }
+    };
+    stated.normality_p_value = Some(p);
+    let n = values.len() as u64;
+    if p >= NORMALITY_ALPHA {
+        let interval = two_sided_factor(n, CONTENT, CONFIDENCE)
+            .ok()
+            .zip(moments)
+            .map(|(k, (mean, s))| [mean - k * s, mean + k * s]);
+        stated.tolerance_95_95 = interval;
+        return;
+    }
+    let needed = distribution_free_size(CONTENT, CONFIDENCE, true).unwrap_or(u64::MAX);
+    let interval = if n >= needed {
+        let low = values.iter().copied().fold(f64::INFINITY, f64::min);
+        let high = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+        stated.tolerance_95_95 = Some([low, high]);
+        "the tolerance interval is from the smallest to the largest value".to_owned()
+    } else {
+        format!("no tolerance interval, it would need {needed} values")
+    };
+    let indices = if stated.indices == Indices::default() {
+        String::new()
+    } else {
+        match percentile(stated, values, bound) {
+            Ok(()) => "; pp_percentile and ppk_percentile hold for it better".to_owned(),
+            Err(why) => format!("; no indices by percentiles either: {why}"),
+        }
+    };
+    stated.warnings.push(Note::new(
+        "not_normal",
+        format!(
+            "not normally distributed (Anderson-Darling p {p:.3}), which cp, cpk, pp and ppk assume{indices}; {interval}"
+        ),
+    ));
+}
+
+/// Indices by percentiles of a normal distribution after a Box-Cox transformation, if that fits.
+fn percentile(stated: &mut Stated, values: &[f64], bound: &Bound) -> Result<(), String> {
+    let fit = box_cox(values).map_err(|why| why.text())?;
+    if fit.normality.p_value < NORMALITY_ALPHA {
+        return Err(format!(
+            "no power makes the values normal (p {:.3} with the best)",
+            fit.normality.p_value
+        ));
+    }
+    let indices = fit.quantiles.capability(bound.lower, bound.upper);
+    stated.ppk_percentile = Some(indices.ppk.map_err(|why| why.text())?);
+    stated.pp_percentile = indices.pp.ok();
+    Ok(())
+}
+
+fn keep(warnings: &mut Vec<Note>, name: &str, value: Result<f64, Undefined>) -> Option<f64> {
+    match value {
+        Ok(value) => Some(value),
+        // Said once for both: with one limit there is no width to compare the spread with.
+        Err(Undefined::OneSided) => None,
+        Err(why) => {
+            let code = format!("{name}_undefined");
+            warnings.push(Note::new(&code, format!("no {name}: {}", why.text())));
+            None
+        }
+    }
+}
