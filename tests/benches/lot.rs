@@ -9,7 +9,7 @@ use num_complex::Complex64;
 use reelgate::certificate::{self, Curve, Paper};
 use reelgate::judgement::{judge_part, judge_try};
 use reelgate::readings::Budget;
-use reelgate::record::{Sources, make, sha256};
+use reelgate::record::{Occasion, Sources, make, sha256};
 use reelgate::statistics::sampling::Severity;
 use reelgate::sweep::{Attempt, RawFile, read_file};
 use std::f64::consts::TAU;
@@ -115,15 +115,13 @@ fn main() {
     let records: Vec<_> = attempts.iter().map(judge).collect();
     let plan =
         reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
-    let whole = || {
-        make(
-            &sources,
-            Severity::Normal,
-            "2026-10-05T10:00:00+02:00",
-            &|| (),
-        )
-        .expect("a record")
+    let occasion = Occasion {
+        issued: "2026-10-05T10:00:00+02:00".to_owned(),
+        severity: Severity::Normal,
+        supersedes: None,
+        further: vec![],
     };
+    let whole = || make(&sources, &occasion, &|| ()).expect("a record");
     let made = whole();
     assert_eq!(
         made.record.sampling.unmeasured,
@@ -144,6 +142,7 @@ fn main() {
     let files = certificate::Sources {
         limit_file: Some(LIMITS),
         station_file: Some(STATION),
+        ledger: None,
     };
 
     let floor = time(|| {
