@@ -5,6 +5,7 @@
 
 mod assemble;
 mod canonical;
+mod circuit;
 mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
@@ -14,6 +15,7 @@ pub use crate::lot::{
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
+pub use circuit::{CircuitSection, ParameterSection};
 pub use make::{Made, Occasion, PartSweep, Refusal, Sources, make};
 
 use crate::diagnostic::Note;
@@ -50,6 +52,9 @@ pub struct LotRecord {
     pub sampling: Sampling,
     /// By characteristic key, in the order of the limit file.
     pub statistics: IndexMap<String, Statistics>,
+    /// The equivalent circuit of the lot's median part, where there is one.
+    #[serde(default)]
+    pub circuit: Option<CircuitSection>,
     /// In measuring order.
     pub parts: Vec<PartRecord>,
 }
