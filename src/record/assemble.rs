@@ -101,6 +101,7 @@ impl LotRecord {
             explanation: judgement.explanation,
             sampling: judgement.sampling,
             statistics: judgement.statistics,
+            findings: judgement.findings,
             parts,
         }
     }

@@ -230,6 +230,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
             ],
             sampling: sampling(parts as u64),
             statistics: IndexMap::new(),
+            findings: Findings::default(),
             parts: records,
         },
         curves: vec![],
