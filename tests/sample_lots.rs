@@ -4,6 +4,7 @@
 //! values of the models behind the sweeps (see `sample-lots/README.md`). Two lots hold sweeps that
 //! no code of this project computed: a circuit simulator's and a network library's.
 
+use reelgate::ledger::Signer;
 use serde_json::Value;
 use std::collections::BTreeSet;
 use std::fs;
@@ -29,8 +30,13 @@ fn json(path: &Path) -> Value {
 fn site() -> tempfile::TempDir {
     let site = tempfile::tempdir().expect("a folder");
     copy(Path::new("limits"), &site.path().join("limits"));
+    let key = Signer::new("test/ledger", &[7; 32]).expect("a key");
+    fs::write(site.path().join(KEY), key.secret_text()).expect("a key");
     site
 }
+
+/// The key of every site's ledger: certificates carry what it signs, and must come out the same.
+const KEY: &str = "test-ledger.key";
 
 fn copy(from: &Path, to: &Path) {
     fs::create_dir_all(to).expect("a folder");
@@ -54,8 +60,10 @@ fn judge(site: &Path, lot: &Path) -> (i32, Value) {
             "json",
             "--now",
             "2026-11-02T08:00:00+01:00",
-            "--site",
+            "--ledger-key",
         ])
+        .arg(site.join(KEY))
+        .arg("--site")
         .arg(site)
         .arg(lot)
         .output()

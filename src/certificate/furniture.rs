@@ -11,11 +11,11 @@ const HEAD: Style = Style::regular(8.6).ink(QUIET);
 const HEAD_STRONG: Style = Style::bold(8.6);
 const FOOT: Style = Style::regular(8.0).ink(QUIET);
 
-pub(super) fn furniture(flow: &mut Flow, record: &LotRecord) {
+pub(super) fn furniture(flow: &mut Flow, record: &LotRecord, copy: Option<&str>) {
     let count = flow.pages.len();
     let sheet = flow.sheet;
     for (index, page) in flow.pages.iter_mut().enumerate() {
-        head(page, &sheet, record);
+        head(page, &sheet, record, copy.is_some());
         foot(
             page,
             &sheet,
@@ -25,10 +25,15 @@ pub(super) fn furniture(flow: &mut Flow, record: &LotRecord) {
     }
 }
 
-fn head(page: &mut Canvas, sheet: &super::paper::Sheet, record: &LotRecord) {
+fn head(page: &mut Canvas, sheet: &super::paper::Sheet, record: &LotRecord, copy: bool) {
     let y = 38.0;
     let half = sheet.measure() / 2.0 - 12.0;
-    let x = sheet.left + page.text((sheet.left, y), HEAD, "Lot record ");
+    let title = if copy {
+        "Copy of lot record "
+    } else {
+        "Lot record "
+    };
+    let x = sheet.left + page.text((sheet.left, y), HEAD, title);
     let lot = elide(&record.lot.lot, HEAD_STRONG, half - (x - sheet.left));
     page.text((x, y), HEAD_STRONG, &lot);
     let verdict = format!(": {}", lot_word(record.verdict));

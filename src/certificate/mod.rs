@@ -53,7 +53,25 @@ pub struct Sources<'a> {
     pub limit_file: Option<&'a str>,
     /// Text of the station file.
     pub station_file: Option<&'a str>,
+    /// The record's place in the ledger.
+    pub ledger: Option<InLedger<'a>>,
 }
+
+/// Where the ledger has the record, and what proves it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct InLedger<'a> {
+    /// Index of the entry.
+    pub index: u64,
+    /// Inclusion proof and signed checkpoint, in the text form of C2SP `tlog-proof`.
+    pub proof: &'a str,
+    /// What a copy is marked with; `None` for the original.
+    pub copy: Option<&'a str>,
+}
+
+/// Name under which the document carries [`InLedger::proof`].
+pub const PROOF_NAME: &str = "ledger.tlog-proof";
+/// Name under which the document carries the JSON record.
+pub const RECORD_NAME: &str = "record.json";
 
 /// A rendered lot record.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -180,9 +198,9 @@ fn layout(
     flow.new_page();
     section::sources::sources(&mut flow, sources);
     section::station::station(&mut flow, record);
-    let coded = section::integrity::integrity(&mut flow, record, digest);
+    let coded = section::integrity::integrity(&mut flow, record, digest, sources);
     section::signatures::signatures(&mut flow, record);
-    furniture::furniture(&mut flow, record);
+    furniture::furniture(&mut flow, record, sources.ledger.and_then(|l| l.copy));
     let mut warnings = missing_glyphs(&flow);
     if !coded {
         warnings.push(Note::new(
@@ -249,7 +267,7 @@ fn describe(record: &LotRecord, warnings: &mut Vec<Note>) -> Description {
 fn attachments(record: &LotRecord, sources: &Sources, json: Vec<u8>) -> Vec<Attachment> {
     let mut out = vec![
         Attachment {
-            name: "record.json".to_owned(),
+            name: RECORD_NAME.to_owned(),
             mime: "application/json",
             relationship: "Data",
             description: "The lot record that this document shows".to_owned(),
@@ -263,6 +281,13 @@ fn attachments(record: &LotRecord, sources: &Sources, json: Vec<u8>) -> Vec<Atta
             bytes: results_csv::results(record),
         },
     ];
+    out.extend(sources.ledger.map(|ledger| Attachment {
+        name: PROOF_NAME.to_owned(),
+        mime: "text/plain",
+        relationship: "Data",
+        description: "Proof that the record is in the ledger".to_owned(),
+        bytes: ledger.proof.as_bytes().to_vec(),
+    }));
     for (name, text) in [
         ("limits.yaml", sources.limit_file),
         ("station.yaml", sources.station_file),

@@ -69,6 +69,9 @@ pub fn plain_text(record: &LotRecord, sources: &Sources) -> String {
     let digest =
         record::to_bytes(record).map_or_else(|_| ABSENT.to_owned(), |bytes| record::sha256(&bytes));
     out.facts(integrity::facts(record, &digest));
+    if let Some(ledger) = &sources.ledger {
+        out.facts(integrity::ledger_facts(ledger));
+    }
     out.0
 }
 

@@ -1,15 +1,14 @@
 //! `reelgate judge LOT…`: lot folders in; verdict, JSON and PDF lot record out.
 
+use super::evidence::{self, Evidence};
+use super::keep::{self, Kept, NotKept, Place};
 use super::site::{Site, Stop, Unreadable, gather};
-use super::store::{Paths, write_whole};
 use super::{Context, Format, budget, exit, explain, present};
-use crate::certificate::{self, Curve, Paper};
+use crate::certificate::Paper;
 use crate::diagnostic::{self, Faults, printable};
-use crate::record::{self, LotRecord, LotVerdict, Made, Refusal, Sources};
-use crate::statistics::sampling::Severity;
+use crate::record::{self, LotRecord, LotVerdict, Refusal, Sources};
 use chrono::{DateTime, FixedOffset};
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
-use std::fs;
 use std::io::IsTerminal;
 use std::path::{Path, PathBuf};
 
@@ -34,12 +33,26 @@ pub struct Args {
     /// Paper of the PDF lot record
     #[arg(long, value_enum, default_value = "a4")]
     paper: PaperArg,
+    /// Key that a new ledger begins with [default: one is made]
+    #[arg(long, env = "REELGATE_LEDGER_KEY", value_name = "FILE")]
+    ledger_key: Option<PathBuf>,
 }
 
+/// Paper, as the command line spells it.
 #[derive(Debug, Clone, Copy, clap::ValueEnum)]
-enum PaperArg {
+#[allow(missing_docs)]
+pub enum PaperArg {
     A4,
     Letter,
+}
+
+impl From<PaperArg> for Paper {
+    fn from(paper: PaperArg) -> Self {
+        match paper {
+            PaperArg::A4 => Paper::A4,
+            PaperArg::Letter => Paper::Letter,
+        }
+    }
 }
 
 /// Judges every lot; one that cannot be judged does not keep the others from it.
@@ -49,12 +62,12 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     let mut printed = true;
     for folder in &args.lots {
         match judge(args, folder, context) {
-            Ok((record, paths, budget)) => {
+            Ok((kept, budget)) => {
                 if context.format == Format::Text {
-                    printed &=
-                        print(args, context, &record, &paths, &budget, records.is_empty()).is_ok();
+                    printed &= print(args, context, &kept, &budget, records.is_empty()).is_ok();
                 }
-                records.push(record);
+                printed &= kept.unwritten.is_none();
+                records.push(kept.record);
             }
             Err(()) => failed = true,
         }
@@ -80,86 +93,76 @@ fn status(records: &[LotRecord], failed: bool, printed: bool) -> u8 {
     }
 }
 
-/// One lot from its folder to its record on the disk; what went wrong is on standard error.
-fn judge(
-    args: &Args,
-    folder: &Path,
-    context: &mut Context,
-) -> Result<(LotRecord, Paths, String), ()> {
+/// One lot from its folder to its record; what went wrong is on standard error.
+fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, String), ()> {
     let site = Site::new(&context.site);
     let sources = gather(&site, folder).map_err(|stop| match stop {
         Stop::Unreadable(all) => say_unreadable(context, &all),
         Stop::Faults(faults) => say_faults(context, &faults),
     })?;
+    let evidence = Evidence::of(&sources).map_err(|faults| say_faults(context, &faults))?;
+    let place = Place {
+        records: site.records(),
+        certificates: site.certificates(),
+        key: args.ledger_key.clone(),
+        now: keep::now(args.now),
+    };
     let bar = bar(sources.sweeps.len());
-    let now = args
-        .now
-        .unwrap_or_else(|| chrono::Local::now().fixed_offset());
-    let issued = now.to_rfc3339_opts(chrono::SecondsFormat::Secs, false);
-    let made = record::make(&sources, Severity::Normal, &issued, &|| bar.inc(1));
+    let kept = keep::judge(&place, &sources, &evidence, args.paper.into(), &|| {
+        bar.inc(1)
+    });
     bar.finish_and_clear();
-    let mut made = made.map_err(|refusal| match refusal {
-        Refusal::Faults(all) => all.iter().for_each(|faults| say_faults(context, faults)),
-        Refusal::Impossible(note) => say(context, &folder.display().to_string(), &note.text),
-    })?;
-    let paths = Paths::of(&site.certificates(), &made.record.record);
-    keep(args, &sources, &mut made, &paths)
-        .map_err(|text| say(context, &paths.json.display().to_string(), &text))?;
-    let budget = args
-        .budget
-        .as_ref()
-        .map_or(String::new(), |part| budget::screen(&sources, &made, part));
-    Ok((made.record, paths, budget))
+    let kept = kept.map_err(|why| say_not_kept(context, folder, why))?;
+    if let Some(why) = &kept.unwritten {
+        say(
+            context,
+            &kept.record.record,
+            &format!("recorded, but {why}"),
+        );
+    }
+    let budget = match &args.budget {
+        None => String::new(),
+        Some(part) => budget_of(&sources, &kept, part),
+    };
+    Ok((kept, budget))
 }
 
-/// Writes PDF and JSON. A record that exists already keeps its time of issue, and must then come
-/// out the same byte for byte.
-fn keep(args: &Args, sources: &Sources, made: &mut Made, paths: &Paths) -> Result<(), String> {
-    let existing = match fs::read(&paths.json) {
-        Ok(bytes) => Some(bytes),
-        Err(e) if e.kind() == std::io::ErrorKind::NotFound => None,
-        Err(e) => return Err(format!("cannot be read: {e}")),
+/// The uncertainty budget, from the judgement made now or made again.
+fn budget_of(sources: &Sources, kept: &Kept, part: &str) -> String {
+    let again;
+    let made = match &kept.made {
+        Some(made) => made,
+        None => match record::make(
+            sources,
+            &evidence::first_occasion(&kept.record.issued),
+            &|| (),
+        ) {
+            Ok(made) => {
+                again = made;
+                &again
+            }
+            Err(_) => return String::new(),
+        },
     };
-    if let Some(old) = existing
-        .as_deref()
-        .and_then(|bytes| record::from_bytes(bytes).ok())
-    {
-        made.record.issued = old.issued;
-    }
-    let json = record::to_bytes(&made.record).map_err(|e| e.to_string())?;
-    if existing.is_some_and(|old| old != json) {
-        return Err("exists and is not what these inputs give: the record was changed after it was issued, or another build \
-                    of the program made it; keep it as evidence in another place and judge again"
-            .to_owned());
-    }
-    let pdf = certificate(args, sources, made)?;
-    write_whole(&paths.pdf, &pdf)
-        .and_then(|()| write_whole(&paths.json, &json))
-        .map_err(|e| format!("the record could not be written: {e}"))
+    budget::screen(sources, made, part)
 }
 
-fn certificate(args: &Args, sources: &Sources, made: &Made) -> Result<Vec<u8>, String> {
-    let curves: Vec<Curve> = made
-        .curves
-        .iter()
-        .map(|c| Curve {
-            part: c.part.clone(),
-            verdict: c.verdict,
-            frequency: c.sweep.frequency.clone(),
-            impedance: c.sweep.impedance.clone(),
-        })
-        .collect();
-    let paper = match args.paper {
-        PaperArg::A4 => Paper::A4,
-        PaperArg::Letter => Paper::Letter,
-    };
-    let texts = certificate::Sources {
-        limit_file: std::str::from_utf8(&sources.limits.bytes).ok(),
-        station_file: std::str::from_utf8(&sources.station.bytes).ok(),
-    };
-    certificate::render(&made.record, &curves, &texts, paper)
-        .map(|made| made.pdf)
-        .map_err(|e| format!("the PDF lot record could not be made: {e}"))
+fn say_not_kept(context: &mut Context, folder: &Path, why: NotKept) {
+    let folder = folder.display().to_string();
+    match why {
+        NotKept::Refused(Refusal::Faults(all)) => {
+            all.iter().for_each(|faults| say_faults(context, faults));
+        }
+        NotKept::Refused(Refusal::Impossible(note)) => say(context, &folder, &note.text),
+        NotKept::Ledger(error) => say(context, &folder, &error.to_string()),
+        NotKept::Changed(path) => say(
+            context,
+            &path.display().to_string(),
+            "was changed after it was issued: keep it as evidence in another place, run `reelgate records verify`, \
+             and judge again, which makes it as it was",
+        ),
+        NotKept::Other(text) => say(context, &folder, &text),
+    }
 }
 
 fn bar(files: usize) -> ProgressBar {
@@ -176,11 +179,11 @@ fn bar(files: usize) -> ProgressBar {
 fn print(
     args: &Args,
     context: &mut Context,
-    record: &LotRecord,
-    paths: &Paths,
+    kept: &Kept,
     budget: &str,
     first: bool,
 ) -> std::io::Result<()> {
+    let Kept { record, paths, .. } = kept;
     let gap = if first { "" } else { "\n" };
     let pdf = printable(&paths.pdf.display().to_string());
     let chain = args

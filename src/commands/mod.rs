@@ -1,11 +1,14 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
 mod budget;
+mod evidence;
 mod explain;
 mod judge;
+mod keep;
 mod limits;
 mod plan;
 mod present;
+mod records;
 mod site;
 mod store;
 mod text;
@@ -73,6 +76,7 @@ enum Command {
     Judge(judge::Args),
     Plan(plan::Args),
     Limits(limits::Args),
+    Records(records::Args),
 }
 
 /// What every command gets.
@@ -109,6 +113,7 @@ pub fn run(
     match cli.command {
         Command::Judge(args) => judge::run(&args, &mut context),
         Command::Plan(args) => plan::run(&args, &mut context),
+        Command::Records(args) => records::run(&args, &mut context),
         Command::Limits(args) => {
             let json = context.format == Format::Json;
             limits::run(&args, &context.site, json, context.out, context.err)

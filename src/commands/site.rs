@@ -49,9 +49,14 @@ impl Site {
             .join(format!("{station}.yaml"))
     }
 
+    /// `records`
+    pub fn records(&self) -> PathBuf {
+        self.root.join("records")
+    }
+
     /// `records/certificates`
     pub fn certificates(&self) -> PathBuf {
-        self.root.join("records").join("certificates")
+        self.records().join("certificates")
     }
 }
 

@@ -19,6 +19,24 @@ impl Ledger {
         objects: &[Object],
         made: &Made,
     ) -> Result<Recorded, LedgerError> {
+        let holds = |_: &dyn Reader| Ok(true);
+        self.judged_while(record, record_json, inputs, objects, made, &holds)
+    }
+
+    /// The same for a record that says something about other entries: `holds` looks, when no other
+    /// process can append any more, whether that is still so.
+    ///
+    /// # Errors
+    /// [`LedgerError::Overtaken`] where it is not, besides those of [`Ledger::judged`].
+    pub fn judged_while(
+        &mut self,
+        record: &LotRecord,
+        record_json: &[u8],
+        inputs: &str,
+        objects: &[Object],
+        made: &Made,
+        holds: &dyn Fn(&dyn Reader) -> Result<bool, LedgerError>,
+    ) -> Result<Recorded, LedgerError> {
         if let Some(&index) = self.store.find(Query::Inputs(inputs))?.first() {
             return self.entry(index);
         }
@@ -43,6 +61,9 @@ impl Ledger {
         self.append(&all, made, &|reader| {
             if let Some(&index) = reader.find(Query::Inputs(inputs))?.first() {
                 return Ok(Chosen::Before(index));
+            }
+            if !holds(reader)? {
+                return Err(LedgerError::Overtaken);
             }
             let earlier = earlier_of(reader, record)?;
             Ok(Chosen::Act(act(earlier)))

@@ -35,6 +35,8 @@ pub enum LedgerError {
     Damaged { what: String, why: String },
     /// The key is not the one of this ledger.
     Key(String),
+    /// What was to be recorded rested on what the ledger said, and it has grown meanwhile.
+    Overtaken,
     /// What was to be recorded cannot be.
     Refused(String),
 }
@@ -98,6 +100,9 @@ impl fmt::Display for LedgerError {
             LedgerError::Damaged { what, why } => {
                 write!(f, "{what}: {why}: verify the records before going on")
             }
+            LedgerError::Overtaken => f.write_str(
+                "other lots were recorded at the same moment: nothing was recorded; do the same again",
+            ),
             LedgerError::Key(why) | LedgerError::Refused(why) => f.write_str(why),
         }
     }

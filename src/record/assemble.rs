@@ -22,6 +22,8 @@ pub struct Inputs<'a> {
     pub warnings: Vec<Note>,
     /// The time of issue, RFC 3339 with offset.
     pub issued: String,
+    /// The record of the same lot that was made before, from other inputs.
+    pub supersedes: Option<String>,
 }
 
 /// SHA-256 of every file that the verdict rests on, lower-case hexadecimal.
@@ -81,6 +83,7 @@ impl LotRecord {
             parts,
             warnings,
             issued,
+            supersedes,
         } = inputs;
         let mut all = judgement.warnings;
         all.extend(warnings);
@@ -88,6 +91,7 @@ impl LotRecord {
             schema: SCHEMA,
             record: digests.identity(&lot.lot),
             issued,
+            supersedes,
             program: Program {
                 name: "reelgate".to_owned(),
                 version: env!("CARGO_PKG_VERSION").to_owned(),

@@ -44,6 +44,19 @@ pub struct PartSweep {
     pub sweep: Sweep,
 }
 
+/// The occasion on which a lot is judged: what its record says besides what follows from its files.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Occasion {
+    /// The time of issue, RFC 3339 with offset.
+    pub issued: String,
+    /// Severity of inspection in force.
+    pub severity: Severity,
+    /// The record of the same lot that was made before, from other inputs.
+    pub supersedes: Option<String>,
+    /// Further reasons to hold the lot, which other records give.
+    pub further: Vec<Note>,
+}
+
 /// Why there is no record.
 #[derive(Debug)]
 pub enum Refusal {
@@ -55,20 +68,18 @@ pub enum Refusal {
 
 /// Makes the record of a lot.
 ///
-/// `issued` is the time of issue, RFC 3339 with offset. `read` is called after each sweep file,
-/// from any thread, for a progress display.
+/// `read` is called after each sweep file, from any thread, for a progress display.
 ///
 /// # Errors
 /// Every fault of the three files at once; a plan that the lot size does not allow; sweeps of
 /// compensation standards that cannot be used; no sweep file at all.
 pub fn make(
     sources: &Sources,
-    severity: Severity,
-    issued: &str,
+    occasion: &Occasion,
     read: &(dyn Fn() + Sync),
 ) -> Result<Made, Refusal> {
     let (lot, limits, station) = parse(sources)?;
-    let plan = lot::plan(&limits.acceptance, lot.quantity, severity)
+    let plan = lot::plan(&limits.acceptance, lot.quantity, occasion.severity)
         .map_err(|text| Refusal::Impossible(Note::new("no_sampling_plan", text)))?;
     let standards = standards(sources, &station)?;
     let mut attempts = attempts(sources, &station, standards.as_ref(), read)?;
@@ -82,8 +93,9 @@ pub fn make(
         .par_iter()
         .map(|attempt| judge_try(attempt, &limits, &budget, age))
         .collect();
-    let (parts, curves, refused) = parts(&attempts, judged, &limits);
-    let judgement = lot::judge(&lot, &limits, &station, &plan, &parts, refused);
+    let (parts, curves, mut holding) = parts(&attempts, judged, &limits);
+    holding.extend(occasion.further.iter().cloned());
+    let judgement = lot::judge(&lot, &limits, &station, &plan, &parts, holding);
     let digests = digests(sources);
     let record = LotRecord::assemble(Inputs {
         lot: &lot,
@@ -93,7 +105,8 @@ pub fn make(
         judgement,
         parts,
         warnings: undecidable(&limits, &station),
-        issued: issued.to_owned(),
+        issued: occasion.issued.clone(),
+        supersedes: occasion.supersedes.clone(),
     });
     Ok(Made { record, curves })
 }

@@ -14,7 +14,7 @@ pub use crate::lot::{
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
-pub use make::{Made, PartSweep, Refusal, Sources, make};
+pub use make::{Made, Occasion, PartSweep, Refusal, Sources, make};
 
 use crate::diagnostic::Note;
 use indexmap::IndexMap;
@@ -32,6 +32,9 @@ pub struct LotRecord {
     pub record: String,
     /// When the record was made, RFC 3339 with offset.
     pub issued: String,
+    /// The record of the same lot that was made before this one, from other inputs.
+    #[serde(default)]
+    pub supersedes: Option<String>,
     pub program: Program,
     pub lot: LotSection,
     pub limits: LimitsSection,

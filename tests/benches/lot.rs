@@ -9,7 +9,7 @@ use num_complex::Complex64;
 use reelgate::certificate::{self, Curve, Paper};
 use reelgate::judgement::{judge_part, judge_try};
 use reelgate::readings::Budget;
-use reelgate::record::{Sources, make, sha256};
+use reelgate::record::{Occasion, Sources, make, sha256};
 use reelgate::statistics::sampling::Severity;
 use reelgate::sweep::{Attempt, RawFile, read_file};
 use std::f64::consts::TAU;
@@ -38,20 +38,28 @@ layout: {columns: {frequency: Frequency (Hz), resistance: R (Ohm), reactance: X 
 uncertainty: {magnitude: 0.2 %, phase: 0.05 °}
 ";
 
-/// A sweep of a series R-L-C with a resistance that has a minimum; the values are invented.
+/// A number in -0.5 .. 0.5 that looks random and is always the same.
+fn scatter(i: usize, part: usize, k: usize) -> f64 {
+    let mut x = (i as u64) << 32 ^ (part as u64) << 8 ^ k as u64;
+    for _ in 0..3 {
+        x = (x ^ x >> 31).wrapping_mul(0x9E37_79B9_7F4A_7C15);
+    }
+    (x >> 11) as f64 / (1u64 << 53) as f64 - 0.5
+}
+
+/// A sweep of a series R-L-C whose dielectric has a constant loss angle, and with it the dispersion
+/// that goes with one; the values are invented.
 fn sweep(part: usize) -> RawFile {
-    let share = ((part as f64 * 0.618_034).fract() - 0.5) * 0.04;
-    let (c, l) = (4.65e-6 * (1.0 + share), 0.5e-9);
+    let (c, l) = (4.65e-6 * (1.0 + 0.04 * scatter(0, part, 9)), 0.5e-9);
+    let exponent = -(1.0 - 0.02 * std::f64::consts::FRAC_2_PI);
     let mut bytes = b"Frequency (Hz),R (Ohm),X (Ohm)\n".to_vec();
     for i in 0..POINTS {
         let f = 1e3 * 65e3f64.powf(i as f64 / (POINTS - 1) as f64);
         let w = TAU * f;
-        let z = Complex64::new(
-            0.02 / (w * c) + 3e-3 * (1.0 + (f / 3e7).sqrt()),
-            w * l - 1.0 / (w * c),
-        );
-        let noise = 1.0 + 1e-3 * ((i * 37 + part * 101) as f64 * 0.618_034).fract();
-        let _ = writeln!(bytes, "{f:.3},{:.7e},{:.7e}", z.re * noise, z.im * noise);
+        let dielectric = Complex64::new(0.0, f / 1e3).powf(exponent) / (TAU * 1e3 * c);
+        let noise = Complex64::new(1.0 + 2e-3 * scatter(i, part, 1), 6e-4 * scatter(i, part, 2));
+        let z = (dielectric + Complex64::new(3e-3, w * l)) * noise;
+        let _ = writeln!(bytes, "{f:.3},{:.7e},{:.7e}", z.re, z.im);
     }
     RawFile {
         name: format!("sweeps/{part:04}.csv"),
@@ -107,16 +115,20 @@ fn main() {
     let records: Vec<_> = attempts.iter().map(judge).collect();
     let plan =
         reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
-    let whole = || {
-        make(
-            &sources,
-            Severity::Normal,
-            "2026-10-05T10:00:00+02:00",
-            &|| (),
-        )
-        .expect("a record")
+    let occasion = Occasion {
+        issued: "2026-10-05T10:00:00+02:00".to_owned(),
+        severity: Severity::Normal,
+        supersedes: None,
+        further: vec![],
     };
+    let whole = || make(&sources, &occasion, &|| ()).expect("a record");
     let made = whole();
+    assert_eq!(
+        made.record.sampling.unmeasured,
+        0,
+        "{:?}",
+        made.record.parts.iter().find(|p| !p.faults.is_empty())
+    );
     let curves: Vec<Curve> = made
         .curves
         .iter()
@@ -130,6 +142,7 @@ fn main() {
     let files = certificate::Sources {
         limit_file: Some(LIMITS),
         station_file: Some(STATION),
+        ledger: None,
     };
 
     let floor = time(|| {

@@ -197,6 +197,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
             schema: SCHEMA,
             record: "26K-0457-7c1f0be2a94d".into(),
             issued: "2026-10-05T09:14:03+02:00".into(),
+            supersedes: None,
             program: Program {
                 name: "reelgate".into(),
                 version: "0.1.0".into(),

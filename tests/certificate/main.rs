@@ -16,6 +16,7 @@ fn sources(case: &Case) -> Sources<'_> {
     Sources {
         limit_file: Some(&case.limit_file),
         station_file: Some(&case.station_file),
+        ledger: None,
     }
 }
 

@@ -158,6 +158,7 @@ pub(in crate::certificate) fn identity(record: &LotRecord) -> Vec<(&'static str,
     add("Supplier", &lot.supplier);
     add("Date code", &lot.date_code);
     add("Order", &lot.order);
+    add("Supersedes record", &record.supersedes);
     out.push(("Quantity", lot.quantity.to_string()));
     out.push(("Measured", instant(&lot.measured)));
     let place = match &lot.operator {

@@ -6,19 +6,26 @@ use crate::certificate::figures::instant;
 use crate::certificate::flow::Flow;
 use crate::certificate::ink::{QUIET, TEXT};
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
+use crate::certificate::{InLedger, Sources};
 use crate::record::LotRecord;
 use qrcode::{Color, EcLevel, QrCode};
 
 const SIDE: f64 = 112.0;
 
 /// Sets the section; false where the identity is too long for a code.
-pub(in crate::certificate) fn integrity(flow: &mut Flow, record: &LotRecord, digest: &str) -> bool {
+pub(in crate::certificate) fn integrity(
+    flow: &mut Flow,
+    record: &LotRecord,
+    digest: &str,
+    sources: &Sources,
+) -> bool {
     flow.heading("Integrity", 180.0);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
     ]);
-    for (label, value) in facts(record, digest) {
+    let in_ledger = sources.ledger.as_ref().map_or_else(Vec::new, ledger_facts);
+    for (label, value) in facts(record, digest).into_iter().chain(in_ledger) {
         table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
     }
     table.set(flow);
@@ -48,6 +55,22 @@ pub(in crate::certificate) fn integrity(flow: &mut Flow, record: &LotRecord, dig
         }
     }
     coded.is_some()
+}
+
+/// The place in the ledger and the checkpoint that is signed, for the document and its text twin.
+pub(in crate::certificate) fn ledger_facts(ledger: &InLedger) -> Vec<(&'static str, String)> {
+    let mut out = vec![("Entry of the ledger", ledger.index.to_string())];
+    out.extend(ledger.copy.map(|copy| ("Copy", copy.to_owned())));
+    let note = ledger.proof.split_once("\n\n").map_or("", |(_, note)| note);
+    for (line, label) in note.lines().filter(|line| !line.is_empty()).zip([
+        "Checkpoint: ledger",
+        "Checkpoint: entries",
+        "Checkpoint: root of the tree",
+        "Checkpoint: signature",
+    ]) {
+        out.push((label, line.to_owned()));
+    }
+    out
 }
 
 /// Digests and versions, for the document and its text twin.

@@ -1,0 +1,279 @@
+//! What a record rests on, as objects of the ledger, and the way back from them.
+
+use crate::diagnostic::{Faults, Note};
+use crate::ledger::{Act, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest};
+use crate::lot::{self, Lot};
+use crate::record::{self, Made, Occasion, Refusal, Sources, sha256};
+use crate::statistics::sampling::Severity;
+use crate::sweep::RawFile;
+use std::collections::BTreeMap;
+
+/// Sweep files named in one reason; the record has all.
+const NAMED: usize = 4;
+
+/// The files of a lot with what the ledger calls them.
+pub struct Evidence<'a> {
+    #[allow(missing_docs)]
+    pub lot: Lot,
+    sources: &'a Sources,
+    limits: String,
+    station: String,
+}
+
+impl<'a> Evidence<'a> {
+    /// # Errors
+    /// Faults of the lot file.
+    pub fn of(sources: &'a Sources) -> Result<Evidence<'a>, Faults> {
+        let lot = lot::read(&sources.lot.name, &sources.lot.bytes)?;
+        Ok(Evidence {
+            limits: format!("limits/parts/{}.yaml", lot.part),
+            station: format!("limits/stations/{}.yaml", lot.station),
+            lot,
+            sources,
+        })
+    }
+
+    /// Every file, and the label as it was scanned.
+    pub fn objects(&self) -> Vec<Object<'_>> {
+        let file = |role, name, file: &'a RawFile| Object {
+            role,
+            name,
+            bytes: &file.bytes,
+        };
+        let mut all = vec![
+            file("lot", "lot.yaml", &self.sources.lot),
+            file("limits", &self.limits, &self.sources.limits),
+            file("station", &self.station, &self.sources.station),
+        ];
+        all.extend(self.lot.label.as_ref().map(|label| Object {
+            role: "label",
+            name: "label",
+            bytes: label.as_bytes(),
+        }));
+        for (role, files) in [
+            ("compensation", &self.sources.compensation),
+            ("sweep", &self.sources.sweeps),
+        ] {
+            all.extend(files.iter().map(|f| file(role, f.name.as_str(), f)));
+        }
+        all
+    }
+
+    /// What the ledger finds the record by.
+    pub fn digest(&self) -> String {
+        inputs_digest(&self.objects())
+    }
+
+    /// What the entries before one say about this lot.
+    ///
+    /// # Errors
+    /// Those of the ledger.
+    pub fn occasion(
+        &self,
+        reader: &dyn Reader,
+        before: u64,
+        issued: &str,
+    ) -> Result<Occasion, LedgerError> {
+        let mut entries = Entries::new(reader);
+        Ok(Occasion {
+            supersedes: supersedes(&self.lot, &mut entries, before)?,
+            further: used_before(&self.lot, &self.sources.sweeps, &mut entries, before)?,
+            ..first_occasion(issued)
+        })
+    }
+}
+
+/// The occasion where there are no other records.
+pub fn first_occasion(issued: &str) -> Occasion {
+    Occasion {
+        issued: issued.to_owned(),
+        severity: Severity::Normal,
+        supersedes: None,
+        further: Vec::new(),
+    }
+}
+
+/// Entries of the ledger, each read once.
+struct Entries<'a> {
+    reader: &'a dyn Reader,
+    read: BTreeMap<u64, Option<Entry>>,
+}
+
+impl<'a> Entries<'a> {
+    fn new(reader: &'a dyn Reader) -> Self {
+        Entries {
+            reader,
+            read: BTreeMap::new(),
+        }
+    }
+
+    fn get(&mut self, index: u64) -> Result<Option<&Entry>, LedgerError> {
+        if !self.read.contains_key(&index) {
+            let row = self.reader.row(index)?;
+            let entry = row.map(|row| Entry::read(index, &row.body)).transpose()?;
+            self.read.insert(index, entry);
+        }
+        Ok(self.read.get(&index).and_then(Option::as_ref))
+    }
+
+    fn find(&self, query: Query, before: u64) -> Result<Vec<u64>, LedgerError> {
+        let mut found = self.reader.find(query)?;
+        found.retain(|index| *index < before);
+        Ok(found)
+    }
+}
+
+/// The record of an entry that judged a lot, and whether it is this one.
+fn judged<'e>(entry: &'e Entry, of: &Lot) -> Option<(&'e str, &'e str, bool)> {
+    match &entry.act {
+        Act::Judged {
+            record,
+            lot,
+            part,
+            supplier,
+            ..
+        } => {
+            let same = (lot, part, supplier) == (&of.lot, &of.part, &of.supplier);
+            Some((record, lot, same))
+        }
+        _ => None,
+    }
+}
+
+/// The newest record of the same lot of the same part from the same supplier.
+fn supersedes(
+    lot: &Lot,
+    entries: &mut Entries,
+    before: u64,
+) -> Result<Option<String>, LedgerError> {
+    for index in entries
+        .find(Query::Lot(&lot.lot), before)?
+        .into_iter()
+        .rev()
+    {
+        let found = entries.get(index)?.and_then(|entry| judged(entry, lot));
+        if let Some((record, _, true)) = found {
+            return Ok(Some(record.to_owned()));
+        }
+    }
+    Ok(None)
+}
+
+/// A reason for each record of another lot that rests on a sweep of this one. A file without a
+/// byte is no sweep.
+fn used_before(
+    lot: &Lot,
+    sweeps: &[RawFile],
+    entries: &mut Entries,
+    before: u64,
+) -> Result<Vec<Note>, LedgerError> {
+    let mut uses: BTreeMap<u64, (String, Vec<&str>)> = BTreeMap::new();
+    for file in sweeps.iter().filter(|file| !file.bytes.is_empty()) {
+        let digest = sha256(&file.bytes);
+        for index in entries.find(Query::Object(&digest), before)? {
+            let Some(entry) = entries.get(index)? else {
+                continue;
+            };
+            let as_sweep = entry.objects_of("sweep").any(|o| o.sha256 == digest);
+            if let (Some((record, other, false)), true) = (judged(entry, lot), as_sweep) {
+                let words = format!("lot {other} (record {record})");
+                let files = &mut uses.entry(index).or_insert((words, Vec::new())).1;
+                files.push(&file.name);
+            }
+        }
+    }
+    Ok(uses
+        .into_values()
+        .map(|(words, files)| note(&words, &files))
+        .collect())
+}
+
+fn note(other: &str, files: &[&str]) -> Note {
+    let named: Vec<&str> = files.iter().take(NAMED).copied().collect();
+    let more = match files.len().saturating_sub(NAMED) {
+        0 => String::new(),
+        n => format!(" and {n} more"),
+    };
+    Note::new(
+        "duplicate_sweep",
+        format!(
+            "{}{more} already used for {other}: find out which lot was measured, measure the other again",
+            named.join(", ")
+        ),
+    )
+}
+
+/// The files that an entry's record was made from, out of the archive.
+///
+/// # Errors
+/// Objects that are missing or damaged.
+pub fn sources(ledger: &Ledger, entry: &Entry) -> Result<Sources, LedgerError> {
+    let files = |role: &str| -> Result<Vec<RawFile>, LedgerError> {
+        entry
+            .objects_of(role)
+            .map(|object| {
+                Ok(RawFile {
+                    name: object.name.clone(),
+                    bytes: ledger.archive().get(&object.sha256)?,
+                })
+            })
+            .collect()
+    };
+    let one = |role: &str| -> Result<RawFile, LedgerError> {
+        let mut found = files(role)?;
+        match (found.pop(), found.is_empty()) {
+            (Some(file), true) => Ok(file),
+            _ => Err(LedgerError::Refused(format!(
+                "entry {} has not one {role}",
+                entry.index
+            ))),
+        }
+    };
+    Ok(Sources {
+        lot: one("lot")?,
+        limits: one("limits")?,
+        station: one("station")?,
+        compensation: files("compensation")?,
+        sweeps: files("sweep")?,
+    })
+}
+
+/// Why a record cannot be made again.
+pub enum NotRemade {
+    #[allow(missing_docs)]
+    Ledger(LedgerError),
+    #[allow(missing_docs)]
+    Refused(String),
+}
+
+impl From<LedgerError> for NotRemade {
+    fn from(error: LedgerError) -> Self {
+        NotRemade::Ledger(error)
+    }
+}
+
+impl std::fmt::Display for NotRemade {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            NotRemade::Ledger(error) => error.fmt(f),
+            NotRemade::Refused(text) => f.write_str(text),
+        }
+    }
+}
+
+/// A record made again from the archived bytes, as it was when its entry was made, with those bytes.
+///
+/// # Errors
+/// An archive that does not hold them any more; files that this program cannot judge.
+pub fn remake(ledger: &Ledger, entry: &Entry) -> Result<(Sources, Made), NotRemade> {
+    let sources = sources(ledger, entry)?;
+    let refused = |faults: &Faults| crate::diagnostic::render(faults, false);
+    let occasion = Evidence::of(&sources)
+        .map_err(|faults| NotRemade::Refused(refused(&faults)))?
+        .occasion(ledger.store(), entry.index, &entry.time)?;
+    let made = record::make(&sources, &occasion, &|| ()).map_err(|refusal| match refusal {
+        Refusal::Faults(all) => NotRemade::Refused(all.iter().map(refused).collect()),
+        Refusal::Impossible(note) => NotRemade::Refused(note.text),
+    })?;
+    Ok((sources, made))
+}

@@ -1,0 +1,433 @@
+//! Keeping a record: its entry in the ledger first, then its files beside it.
+
+use super::evidence::{self, Evidence, first_occasion};
+use super::store::{Paths, write_whole};
+use crate::certificate::{self, Curve, InLedger, Paper};
+use crate::ledger::disk::System;
+use crate::ledger::{
+    Act, Entry, FILE, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer, hex,
+    ledger_key, sha256, sha256_hex,
+};
+use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
+use chrono::{DateTime, FixedOffset, Timelike};
+use std::collections::BTreeSet;
+use std::fs;
+use std::io::ErrorKind;
+use std::path::{Path, PathBuf};
+
+/// Name and version, as entries have it.
+pub const PROGRAM: &str = concat!("reelgate ", env!("CARGO_PKG_VERSION"));
+
+/// How often a lot is judged anew because other lots that bear on it were recorded meanwhile.
+const TRIES: usize = 20;
+
+/// Where and when records are kept.
+#[derive(Debug)]
+#[allow(missing_docs)]
+pub struct Place {
+    /// `records/`
+    pub records: PathBuf,
+    /// `records/certificates/`
+    pub certificates: PathBuf,
+    /// Key that a new ledger begins with; without one the key is made.
+    pub key: Option<PathBuf>,
+    /// The time, to the second.
+    pub now: DateTime<FixedOffset>,
+}
+
+/// The time that was given, else the clock's; to the second.
+pub fn now(given: Option<DateTime<FixedOffset>>) -> DateTime<FixedOffset> {
+    let now = given.unwrap_or_else(|| chrono::Local::now().fixed_offset());
+    now.with_nanosecond(0).unwrap_or(now)
+}
+
+/// A record that is in the ledger.
+#[derive(Debug)]
+#[allow(missing_docs)]
+pub struct Kept {
+    pub record: LotRecord,
+    pub paths: Paths,
+    /// Present where the lot was judged now.
+    pub made: Option<Made>,
+    /// Why its files are not on the disk, though it is in the ledger.
+    pub unwritten: Option<String>,
+}
+
+/// Why a lot has no record.
+#[derive(Debug)]
+#[allow(missing_docs)]
+pub enum NotKept {
+    Refused(Refusal),
+    Ledger(LedgerError),
+    /// A file beside the ledger is not what was issued.
+    Changed(PathBuf),
+    Other(String),
+}
+
+impl From<LedgerError> for NotKept {
+    fn from(error: LedgerError) -> Self {
+        NotKept::Ledger(error)
+    }
+}
+
+impl Place {
+    /// The ledger for reading; `None` where there is none yet.
+    pub fn look(&self) -> Result<Option<Ledger>, LedgerError> {
+        match Ledger::open(&self.records) {
+            Ok(ledger) => Ok(Some(ledger)),
+            Err(LedgerError::Missing { .. }) if !self.records.join(FILE).exists() => Ok(None),
+            Err(error) => Err(error),
+        }
+    }
+
+    /// The ledger for appending, made where there is none.
+    pub fn open(&self) -> Result<Ledger, LedgerError> {
+        let given = self.key.as_deref().map(read_key).transpose()?;
+        let signer = ledger_key(
+            &self.records,
+            &|| given.clone().map_or_else(random_key, Ok),
+            &System,
+        )?;
+        if given.is_some_and(|given| given.verifier() != signer.verifier()) {
+            return Err(LedgerError::Key(
+                "the key that was given is not the one of this ledger: leave --ledger-key out"
+                    .to_owned(),
+            ));
+        }
+        Ledger::open_for_writing(&self.records, signer, self.now)
+    }
+
+    /// Who makes an entry here and now.
+    pub fn by<'a>(&self, operator: Option<&'a str>) -> By<'a> {
+        By {
+            by: operator,
+            time: self.now,
+            program: PROGRAM,
+        }
+    }
+}
+
+fn read_key(path: &Path) -> Result<Signer, LedgerError> {
+    let text = fs::read_to_string(path).map_err(|source| LedgerError::Io {
+        doing: "reading the key",
+        path: path.to_owned(),
+        source,
+    })?;
+    Signer::read(&text).map_err(|e| LedgerError::Key(format!("{}: {e}", path.display())))
+}
+
+/// A key from the randomness of the system, named after itself.
+fn random_key() -> Result<Signer, LedgerError> {
+    let wrong = |e: String| LedgerError::Key(format!("no key for the ledger could be made: {e}"));
+    let mut secret = [0; 32];
+    getrandom::fill(&mut secret).map_err(|e| wrong(e.to_string()))?;
+    let named = |name: &str| Signer::new(name, &secret).map_err(|e| wrong(e.to_string()));
+    let public = named("ledger")?.verifier().public();
+    let id = hex(&sha256(&public));
+    named(&format!("ledger-{}", id.get(..16).unwrap_or(&id)))
+}
+
+/// Judges a lot, unless the ledger has it already, and keeps its record.
+pub fn judge(
+    place: &Place,
+    sources: &Sources,
+    evidence: &Evidence,
+    paper: Paper,
+    read: &(dyn Fn() + Sync),
+) -> Result<Kept, NotKept> {
+    let inputs = evidence.digest();
+    for _ in 0..TRIES {
+        let issued = place.now.to_rfc3339();
+        let occasion = match place.look()? {
+            None => first_occasion(&issued),
+            Some(ledger) => match ledger.find(Query::Inputs(&inputs))?.first() {
+                Some(entry) => return answer(place, &ledger, entry, paper),
+                None => evidence.occasion(ledger.store(), ledger.size()?, &issued)?,
+            },
+        };
+        let made = record::make(sources, &occasion, read).map_err(NotKept::Refused)?;
+        let json = record::to_bytes(&made.record).map_err(|e| NotKept::Other(e.to_string()))?;
+        match append(place, evidence, &inputs, &occasion, (&made, &json)) {
+            Err(NotKept::Ledger(LedgerError::Overtaken)) => {}
+            Err(error) => return Err(error),
+            Ok((mut ledger, recorded)) if recorded.new => {
+                return Ok(finish(
+                    place,
+                    &mut ledger,
+                    &recorded,
+                    (sources, made, &json),
+                    paper,
+                ));
+            }
+            Ok((ledger, recorded)) => return answer(place, &ledger, &recorded.entry, paper),
+        }
+    }
+    Err(LedgerError::Overtaken.into())
+}
+
+fn append(
+    place: &Place,
+    evidence: &Evidence,
+    inputs: &str,
+    occasion: &Occasion,
+    (made, json): (&Made, &[u8]),
+) -> Result<(Ledger, Recorded), NotKept> {
+    let mut ledger = place.open()?;
+    let recorded = ledger.judged_while(
+        &made.record,
+        json,
+        inputs,
+        &evidence.objects(),
+        &place.by(evidence.lot.operator.as_deref()),
+        &|reader: &dyn Reader| {
+            let now = evidence.occasion(reader, reader.size()?, &occasion.issued)?;
+            Ok(now == *occasion)
+        },
+    )?;
+    Ok((ledger, recorded))
+}
+
+/// The files of a record that was made now. From here on it is in the ledger, whatever happens.
+fn finish(
+    place: &Place,
+    ledger: &mut Ledger,
+    recorded: &Recorded,
+    (sources, made, json): (&Sources, Made, &[u8]),
+    paper: Paper,
+) -> Kept {
+    let paths = Paths::of(&place.certificates, &made.record.record);
+    let written = issue(place, ledger, recorded, sources, &made, &[paper])
+        .and_then(|pdf| write(&paths, Some(&pdf), json));
+    Kept {
+        record: made.record.clone(),
+        paths,
+        made: Some(made),
+        unwritten: written.err(),
+    }
+}
+
+/// The record that is there, with what is missing of its files made again.
+fn answer(place: &Place, ledger: &Ledger, entry: &Entry, paper: Paper) -> Result<Kept, NotKept> {
+    let json = ledger.object(entry, "record")?;
+    let record = record::from_bytes(&json)
+        .map_err(|e| NotKept::Other(format!("the archived record is no record: {e}")))?;
+    let paths = Paths::of(&place.certificates, &record.record);
+    let known = certificates_of(ledger, &record.record)?;
+    let has_json = on_disk(&paths.json, |bytes| bytes == json)?;
+    let has_pdf = on_disk(&paths.pdf, |bytes| known.contains(&sha256_hex(bytes)))?;
+    let written = if has_json && has_pdf {
+        Ok(())
+    } else {
+        restore(place, entry.index, has_pdf, paper)
+            .and_then(|pdf| write(&paths, pdf.as_deref(), &json))
+    };
+    Ok(Kept {
+        record,
+        paths,
+        made: None,
+        unwritten: written.err(),
+    })
+}
+
+/// Whether the file is there; one that is not what it should be is not touched.
+fn on_disk(path: &Path, right: impl Fn(&[u8]) -> bool) -> Result<bool, NotKept> {
+    match fs::read(path) {
+        Ok(bytes) if right(&bytes) => Ok(true),
+        Ok(_) => Err(NotKept::Changed(path.to_owned())),
+        Err(e) if e.kind() == ErrorKind::NotFound => Ok(false),
+        Err(e) => Err(NotKept::Other(format!(
+            "{}: cannot be read: {e}",
+            path.display()
+        ))),
+    }
+}
+
+/// The PDF of a record that is in the ledger, where it is needed: as it was issued, if it was.
+fn restore(
+    place: &Place,
+    index: u64,
+    has_pdf: bool,
+    paper: Paper,
+) -> Result<Option<Vec<u8>>, String> {
+    if has_pdf {
+        return Ok(None);
+    }
+    let mut ledger = place.open().map_err(|e| e.to_string())?;
+    let recorded = ledger.entry(index).map_err(|e| e.to_string())?;
+    let (sources, made) = evidence::remake(&ledger, &recorded.entry).map_err(|e| e.to_string())?;
+    let papers = [paper, Paper::A4, Paper::Letter];
+    issue(place, &mut ledger, &recorded, &sources, &made, &papers).map(Some)
+}
+
+/// The certificate on the paper on which it was issued already, else on the first; it is known to
+/// the ledger before it is anywhere else.
+fn issue(
+    place: &Place,
+    ledger: &mut Ledger,
+    recorded: &Recorded,
+    sources: &Sources,
+    made: &Made,
+    papers: &[Paper],
+) -> Result<Vec<u8>, String> {
+    let proof = recorded.proof_text();
+    let in_ledger = InLedger {
+        index: recorded.entry.index,
+        proof: &proof,
+        copy: None,
+    };
+    let known = certificates_of(ledger, &made.record.record).map_err(|e| e.to_string())?;
+    let papers = if known.is_empty() {
+        &papers[..1]
+    } else {
+        papers
+    };
+    let mut drawn = Vec::new();
+    for paper in papers {
+        let pdf = draw(sources, made, in_ledger, *paper)?;
+        if known.contains(&sha256_hex(&pdf)) {
+            return Ok(pdf);
+        }
+        drawn.push(pdf);
+    }
+    let pdf = drawn.into_iter().next().ok_or("no paper to draw on")?;
+    let by = place.by(made.record.lot.operator.as_deref());
+    ledger
+        .issued(&made.record.record, &pdf, &by)
+        .map_err(|e| e.to_string())?;
+    Ok(pdf)
+}
+
+/// Makes the certificate of a record again, marked as a copy and with the ledger's newest
+/// checkpoint; its path.
+///
+/// # Errors
+/// In words. Nothing is written that the ledger does not know.
+pub fn reissue(
+    place: &Place,
+    record: &str,
+    by: Option<&str>,
+    reason: &str,
+) -> Result<PathBuf, String> {
+    let text = |e: LedgerError| e.to_string();
+    let mut ledger = place.open().map_err(text)?;
+    let entry = judged(&ledger, record).map_err(text)?;
+    let copies = ledger
+        .find(Query::Record(record))
+        .map_err(text)?
+        .iter()
+        .filter(|entry| matches!(entry.act, Act::Reissue { .. }))
+        .count();
+    let number = copies + 1;
+    let (sources, made) = evidence::remake(&ledger, &entry).map_err(|e| e.to_string())?;
+    let paper = issued_paper(&ledger, &entry, &sources, &made)?;
+    let size = ledger.size().map_err(text)?;
+    let proof = Proof {
+        index: entry.index,
+        hashes: ledger.inclusion_proof(entry.index, size).map_err(text)?,
+        checkpoint: ledger.head().map_err(text)?.unwrap_or_default(),
+    };
+    let copy = format!("{number}, made on {}", place.now.to_rfc3339());
+    let in_ledger = InLedger {
+        index: entry.index,
+        proof: &proof.text(),
+        copy: Some(&copy),
+    };
+    let pdf = draw(&sources, &made, in_ledger, paper)?;
+    ledger
+        .reissued(record, &pdf, reason, &place.by(by))
+        .map_err(text)?;
+    let path = place
+        .certificates
+        .join(format!("{record}.copy-{number}.pdf"));
+    write_whole(&path, &pdf).map_err(|e| {
+        format!(
+            "recorded, but {}: could not be written: {e}",
+            path.display()
+        )
+    })?;
+    Ok(path)
+}
+
+/// The paper on which the original was issued.
+fn issued_paper(
+    ledger: &Ledger,
+    entry: &Entry,
+    sources: &Sources,
+    made: &Made,
+) -> Result<Paper, String> {
+    let recorded = ledger.entry(entry.index).map_err(|e| e.to_string())?;
+    let proof = recorded.proof_text();
+    let in_ledger = InLedger {
+        index: entry.index,
+        proof: &proof,
+        copy: None,
+    };
+    let known = certificates_of(ledger, &made.record.record).map_err(|e| e.to_string())?;
+    let letter = draw(sources, made, in_ledger, Paper::Letter)?;
+    Ok(if known.contains(&sha256_hex(&letter)) {
+        Paper::Letter
+    } else {
+        Paper::A4
+    })
+}
+
+/// The entry by which a record was made.
+///
+/// # Errors
+/// A ledger without such a record.
+pub fn judged(ledger: &Ledger, record: &str) -> Result<Entry, LedgerError> {
+    ledger
+        .find(Query::Record(record))?
+        .into_iter()
+        .find(|entry| matches!(entry.act, Act::Judged { .. }))
+        .ok_or_else(|| LedgerError::Refused(format!("the ledger has no record {record:?}")))
+}
+
+/// Digests of the certificates of a record that the ledger knows.
+pub fn certificates_of(ledger: &Ledger, record: &str) -> Result<BTreeSet<String>, LedgerError> {
+    let entries = ledger.find(Query::Record(record))?;
+    Ok(entries
+        .into_iter()
+        .filter_map(|entry| match entry.act {
+            Act::Issue { certificate, .. } | Act::Reissue { certificate, .. } => Some(certificate),
+            _ => None,
+        })
+        .collect())
+}
+
+/// The PDF lot record.
+pub fn draw(
+    sources: &Sources,
+    made: &Made,
+    ledger: InLedger,
+    paper: Paper,
+) -> Result<Vec<u8>, String> {
+    let curves: Vec<Curve> = made
+        .curves
+        .iter()
+        .map(|c| Curve {
+            part: c.part.clone(),
+            verdict: c.verdict,
+            frequency: c.sweep.frequency.clone(),
+            impedance: c.sweep.impedance.clone(),
+        })
+        .collect();
+    let texts = certificate::Sources {
+        limit_file: std::str::from_utf8(&sources.limits.bytes).ok(),
+        station_file: std::str::from_utf8(&sources.station.bytes).ok(),
+        ledger: Some(ledger),
+    };
+    certificate::render(&made.record, &curves, &texts, paper)
+        .map(|made| made.pdf)
+        .map_err(|e| format!("the PDF lot record could not be made: {e}"))
+}
+
+fn write(paths: &Paths, pdf: Option<&[u8]>, json: &[u8]) -> Result<(), String> {
+    for (path, bytes) in [(&paths.pdf, pdf), (&paths.json, Some(json))] {
+        if let Some(bytes) = bytes {
+            write_whole(path, bytes)
+                .map_err(|e| format!("{}: could not be written: {e}", path.display()))?;
+        }
+    }
+    Ok(())
+}

@@ -1,0 +1,244 @@
+//! `records`: list, show, export, re-issue, dispose of and verify what was judged.
+
+mod document;
+mod list;
+mod show;
+mod verify;
+
+use super::keep::{self, PROGRAM, Place, certificates_of};
+use super::site::Site;
+use super::store::Paths;
+use super::{Context, exit};
+use crate::diagnostic::printable;
+use crate::ledger::bag::{Export, export};
+use crate::ledger::disk::System;
+use crate::ledger::{Decision, Ledger, LedgerError, sha256_hex};
+use chrono::{DateTime, FixedOffset};
+use clap::{Subcommand, ValueEnum};
+use std::path::{Path, PathBuf};
+
+/// List, show, verify and export records; dispose of lots
+#[derive(Debug, clap::Args)]
+pub struct Args {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+enum Command {
+    /// List judged lots, in the order of the ledger
+    List(list::Args),
+    /// Show a whole record as plain text, with every part and what happened to it since
+    Show {
+        /// A record, or a lot that has one record
+        record: String,
+    },
+    /// Check database, log, archive and certificates; judge every record again and compare
+    ///
+    /// Exit status 0: all proven; 1: something is wrong; 2: could not look.
+    Verify(verify::Args),
+    /// Write a record with all that it rests on as a BagIt package (RFC 8493)
+    Export {
+        /// A record, or a lot that has one record
+        record: String,
+        /// A folder that does not exist yet
+        folder: PathBuf,
+        #[command(flatten)]
+        clock: Clock,
+    },
+    /// Make the PDF of a record again, marked as a copy
+    Reissue {
+        /// A record, or a lot that has one record
+        record: String,
+        /// Why
+        #[arg(long, value_name = "TEXT")]
+        reason: String,
+        /// For whom or by whom: the code that the site uses for a person
+        #[arg(long, value_name = "PERSON")]
+        by: Option<String>,
+        #[command(flatten)]
+        clock: Clock,
+    },
+    /// Record what becomes of a held or rejected lot
+    Dispose {
+        /// A record, or a lot that has one record
+        record: String,
+        /// What becomes of the lot
+        #[arg(long, value_enum)]
+        decision: DecisionArg,
+        /// Why
+        #[arg(long, value_name = "TEXT")]
+        reason: String,
+        /// Who decided: the code that the site uses for a person
+        #[arg(long, value_name = "PERSON")]
+        by: String,
+        #[command(flatten)]
+        clock: Clock,
+    },
+}
+
+#[derive(Debug, clap::Args)]
+struct Clock {
+    /// The time, RFC 3339 with offset [default: now]
+    #[arg(long, env = "REELGATE_NOW", value_name = "TIME", value_parser = DateTime::parse_from_rfc3339)]
+    now: Option<DateTime<FixedOffset>>,
+}
+
+#[derive(Debug, Clone, Copy, ValueEnum)]
+enum DecisionArg {
+    /// Used as it is
+    Concession,
+    /// Sent back to the supplier
+    Return,
+    /// Inspected part by part
+    Sort,
+    /// Made unusable
+    Scrap,
+    /// To be measured again
+    Retest,
+}
+
+impl From<DecisionArg> for Decision {
+    fn from(decision: DecisionArg) -> Self {
+        match decision {
+            DecisionArg::Concession => Decision::Concession,
+            DecisionArg::Return => Decision::Return,
+            DecisionArg::Sort => Decision::Sort,
+            DecisionArg::Scrap => Decision::Scrap,
+            DecisionArg::Retest => Decision::Retest,
+        }
+    }
+}
+
+/// What a command comes to: its exit status and output, or why it could not be done.
+type Done = Result<(u8, Vec<u8>), String>;
+
+/// Runs the command.
+pub fn run(args: &Args, context: &mut Context) -> u8 {
+    let site = Site::new(&context.site);
+    let done = match &args.command {
+        Command::List(args) => list::run(args, &site, context.format),
+        Command::Show { record } => show::run(record, &site, context.format),
+        Command::Verify(args) => verify::run(args, &site, context.format),
+        Command::Export {
+            record,
+            folder,
+            clock,
+        } => export_record(record, folder, clock, &site),
+        Command::Reissue {
+            record,
+            reason,
+            by,
+            clock,
+        } => reissue(record, reason, by.as_deref(), &place(&site, clock)),
+        Command::Dispose {
+            record,
+            decision,
+            reason,
+            by,
+            clock,
+        } => dispose(record, *decision, reason, by, &place(&site, clock)),
+    };
+    match done {
+        Ok((status, text)) => {
+            let printed = context
+                .out
+                .write_all(&text)
+                .and_then(|()| context.out.flush());
+            printed.map_or(exit::NOT_PRINTED, |()| status)
+        }
+        Err(text) => {
+            let _ = writeln!(context.err, "error: {}", printable(&text));
+            exit::FAILED
+        }
+    }
+}
+
+fn place(site: &Site, clock: &Clock) -> Place {
+    Place {
+        records: site.records(),
+        certificates: site.certificates(),
+        key: None,
+        now: keep::now(clock.now),
+    }
+}
+
+fn open(site: &Site) -> Result<Ledger, String> {
+    Ledger::open(&site.records()).map_err(|e| e.to_string())
+}
+
+/// The record of that name, or the only one of that lot.
+fn resolve(ledger: &Ledger, name: &str) -> Result<String, String> {
+    use crate::ledger::Query;
+    let text = |e: LedgerError| e.to_string();
+    if !ledger.find(Query::Record(name)).map_err(text)?.is_empty() {
+        return Ok(name.to_owned());
+    }
+    let of_lot = ledger.find(Query::Lot(name)).map_err(text)?;
+    let records: Vec<&str> = of_lot.iter().filter_map(|e| e.act.record()).collect();
+    match records.as_slice() {
+        [one] => Ok((*one).to_owned()),
+        [] => Err(format!(
+            "there is no record and no lot `{name}`: `reelgate records list` shows what there is"
+        )),
+        several => Err(format!(
+            "lot {name} has {} records: name one of {}",
+            several.len(),
+            several.join(", ")
+        )),
+    }
+}
+
+fn export_record(name: &str, folder: &Path, clock: &Clock, site: &Site) -> Done {
+    let ledger = open(site)?;
+    let record = resolve(&ledger, name)?;
+    let known = certificates_of(&ledger, &record).map_err(|e| e.to_string())?;
+    let pdf = std::fs::read(Paths::of(&site.certificates(), &record).pdf)
+        .ok()
+        .filter(|bytes| known.contains(&sha256_hex(bytes)));
+    let what = Export {
+        record: &record,
+        certificate: pdf.as_deref(),
+        time: keep::now(clock.now),
+        program: PROGRAM,
+    };
+    export(&ledger, &what, folder, &System).map_err(|e| e.to_string())?;
+    let without = if pdf.is_none() {
+        ", without its PDF, which is not there as it was issued"
+    } else {
+        ""
+    };
+    Ok((
+        exit::OK,
+        format!(
+            "Record {record} is in {}{without}\n",
+            printable(&folder.display().to_string())
+        )
+        .into_bytes(),
+    ))
+}
+
+fn reissue(name: &str, reason: &str, by: Option<&str>, place: &Place) -> Done {
+    let ledger = Ledger::open(&place.records).map_err(|e| e.to_string())?;
+    let record = resolve(&ledger, name)?;
+    drop(ledger);
+    let path = keep::reissue(place, &record, by, reason)?;
+    let text = format!("Copy  {}\n", printable(&path.display().to_string()));
+    Ok((exit::OK, text.into_bytes()))
+}
+
+fn dispose(name: &str, decision: DecisionArg, reason: &str, by: &str, place: &Place) -> Done {
+    let text = |e: LedgerError| e.to_string();
+    // Looked for before anything is opened for writing, which would make a ledger.
+    let record = resolve(&Ledger::open(&place.records).map_err(text)?, name)?;
+    let mut ledger = place.open().map_err(text)?;
+    let recorded = ledger
+        .dispose(&record, decision.into(), reason, &place.by(Some(by)))
+        .map_err(text)?;
+    let again = if recorded.new { "" } else { " (as before)" };
+    let index = recorded.entry.index;
+    Ok((
+        exit::OK,
+        format!("Entry {index}{again}: {}\n", show::words(&recorded.entry)).into_bytes(),
+    ))
+}

@@ -1,0 +1,78 @@
+//! `records show`: a whole record as plain text, for screen readers and quick looking.
+
+use super::{Done, list, open, resolve};
+use crate::certificate::{InLedger, Sources, plain_text};
+use crate::commands::site::Site;
+use crate::commands::{Format, exit, keep};
+use crate::diagnostic::printable;
+use crate::ledger::{Act, Entry, Query};
+use crate::record;
+
+/// As text with what happened since, or the JSON record as it was archived.
+pub fn run(name: &str, site: &Site, format: Format) -> Done {
+    let ledger = open(site)?;
+    let name = resolve(&ledger, name)?;
+    let text = |e: crate::ledger::LedgerError| e.to_string();
+    let entry = keep::judged(&ledger, &name).map_err(text)?;
+    let json = ledger.object(&entry, "record").map_err(text)?;
+    if format == Format::Json {
+        return Ok((exit::OK, json));
+    }
+    let record = record::from_bytes(&json)
+        .map_err(|e| format!("record {name}: the archived bytes are no record: {e}"))?;
+    let file = |role| ledger.object(&entry, role).map_err(text);
+    let (limits, station) = (file("limits")?, file("station")?);
+    let proof = ledger.entry(entry.index).map_err(text)?.proof_text();
+    let sources = Sources {
+        limit_file: std::str::from_utf8(&limits).ok(),
+        station_file: std::str::from_utf8(&station).ok(),
+        ledger: Some(InLedger {
+            index: entry.index,
+            proof: &proof,
+            copy: None,
+        }),
+    };
+    let mut out = plain_text(&record, &sources);
+    out.push_str("\nIn the ledger\n");
+    for entry in ledger.find(Query::Record(&name)).map_err(text)? {
+        out.push_str(&format!("Entry {}: {}\n", entry.index, words(&entry)));
+    }
+    Ok((exit::OK, out.into_bytes()))
+}
+
+/// An entry in one line.
+pub fn words(entry: &Entry) -> String {
+    let what = match &entry.act {
+        Act::Judged {
+            verdict, earlier, ..
+        } => {
+            let before = earlier.map_or(String::new(), |e| {
+                format!(", after entry {e} on the same lot")
+            });
+            format!("judged: {verdict}{before}")
+        }
+        Act::Disposition {
+            decision, reason, ..
+        } => format!(
+            "disposition: {}, because: {reason}",
+            list::decision(*decision)
+        ),
+        Act::Approval { file, .. } => format!("approval of {file}"),
+        Act::Issue { certificate, .. } => format!("certificate issued, SHA-256 {certificate}"),
+        Act::Reissue {
+            certificate,
+            reason,
+            ..
+        } => format!("copy issued, SHA-256 {certificate}, because: {reason}"),
+    };
+    let by = entry
+        .by
+        .as_ref()
+        .map_or(String::new(), |by| format!(" by {by}"));
+    let notes: String = entry
+        .notes
+        .iter()
+        .map(|note| format!("; {}", note.text))
+        .collect();
+    printable(&format!("{}{by}: {what}{notes}", entry.time))
+}

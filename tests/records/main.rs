@@ -1,0 +1,215 @@
+//! Records from end to end, through the program: judged, listed, shown, exported, disposed of,
+//! verified, and tampered with in every place.
+
+mod site;
+mod tamper;
+
+use serde_json::Value;
+use site::{Site, run};
+use std::fs;
+use std::process::Command;
+
+#[test]
+fn a_judged_lot_is_listed_shown_and_proven() {
+    let site = Site::new();
+    let record = site.judge("26K-0001");
+    let list = site.json(&["records", "list"]);
+    assert_eq!(list.as_array().map(Vec::len), Some(1));
+    assert_eq!(list[0]["record"], record["record"]);
+    assert_eq!(list[0]["verdict"], "hold");
+    assert_eq!(list[0]["disposition"], Value::Null);
+
+    let name = record["record"].as_str().expect("a name");
+    assert_eq!(site.json(&["records", "show", name]), record);
+    let text = site.ok(&["records", "show", "26K-0001"]);
+    assert!(text.contains(&format!("Lot record {name}")), "{text}");
+    assert!(text.contains("Entry 0: 2026-11-02T08:00:00+01:00 by OP-17: judged: hold"));
+    for part in record["parts"].as_array().expect("parts") {
+        let part = part["part"].as_str().expect("a name");
+        assert!(
+            text.contains(&format!("Part {part}")),
+            "no part {part} in\n{text}"
+        );
+    }
+
+    let verified = site.json(&["records", "verify"]);
+    assert_eq!(verified["proven"], true);
+    assert_eq!(verified["judged_again"], 1);
+    assert!(
+        verified["reach"]
+            .as_str()
+            .expect("words")
+            .contains("cannot be excluded")
+    );
+    let pdf = site.file(&format!("records/certificates/{name}.pdf"));
+    let verified = site.json(&["records", "verify", pdf.to_str().expect("a path")]);
+    assert!(
+        verified["reach"]
+            .as_str()
+            .expect("words")
+            .contains("1 checkpoint(s) from outside")
+    );
+}
+
+#[test]
+fn the_same_inputs_are_one_record_and_other_inputs_name_it() {
+    let site = Site::new();
+    let first = site.judge("26K-0001");
+    assert_eq!(site.judge("26K-0001"), first);
+    // The PDF is lost; judging again makes it as it was.
+    let pdf = site.certificate(&first, "pdf");
+    let bytes = fs::read(&pdf).expect("a PDF");
+    fs::remove_file(&pdf).expect("gone");
+    assert_eq!(site.judge("26K-0001"), first);
+    assert!(fs::read(&pdf).expect("a PDF") == bytes);
+    assert_eq!(
+        site.json(&["records", "list"]).as_array().map(Vec::len),
+        Some(1)
+    );
+    assert_eq!(site.json(&["records", "verify"])["entries"], 2);
+
+    site.copy_sweep("26K-0001", "004");
+    let second = site.judge("26K-0001");
+    assert_eq!(second["supersedes"], first["record"]);
+    assert_ne!(second["record"], first["record"]);
+    let list = site.json(&["records", "list", "--lot", "26K-0001"]);
+    assert_eq!(list[0]["superseded_by"], second["record"]);
+    assert_eq!(site.json(&["records", "verify"])["proven"], true);
+    let ambiguous = site.fails(&["records", "show", "26K-0001"]);
+    assert!(ambiguous.contains("2 records"), "{ambiguous}");
+}
+
+#[test]
+fn a_sweep_that_another_lot_rests_on_holds_the_lot() {
+    let site = Site::new();
+    site.judge("26K-0001");
+    site.lot("26K-0002");
+    let record = site.judge("26K-0002");
+    let reasons = record["reasons"].as_array().expect("reasons");
+    let reason = reasons
+        .iter()
+        .find(|reason| reason["code"] == "duplicate_sweep")
+        .expect("the reason");
+    let text = reason["text"].as_str().expect("words");
+    assert!(text.contains("26K-0001"), "{text}");
+    assert_eq!(site.json(&["records", "verify"])["proven"], true);
+}
+
+#[test]
+fn what_becomes_of_a_lot_is_an_entry() {
+    let site = Site::new();
+    let record = site.judge("26K-0001");
+    let name = record["record"].as_str().expect("a name");
+    let decide = [
+        "records",
+        "dispose",
+        name,
+        "--decision",
+        "return",
+        "--by",
+        "QE-03",
+    ];
+    let said = site.ok(&[&decide[..], &["--reason", "sample too small"]].concat());
+    assert!(
+        said.contains("disposition: return, because: sample too small"),
+        "{said}"
+    );
+    assert!(
+        site.fails(&[&decide[..], &["--reason", " "]].concat())
+            .contains("says why")
+    );
+    assert!(
+        site.fails(&[
+            "records",
+            "dispose",
+            "26K-9999",
+            "--decision",
+            "sort",
+            "--reason",
+            "x",
+            "--by",
+            "y"
+        ])
+        .contains("no record and no lot")
+    );
+    let list = site.json(&[
+        "records",
+        "list",
+        "--verdict",
+        "hold",
+        "--from",
+        "2026-11-02",
+        "--to",
+        "2026-11-02",
+    ]);
+    assert_eq!(list[0]["disposition"], "return");
+    assert_eq!(
+        site.json(&["records", "list", "--to", "2026-11-01"]),
+        serde_json::json!([])
+    );
+    let csv = site.ok(&["records", "list", "--csv"]);
+    assert!(csv.contains(",hold,return,"), "{csv}");
+
+    let copy = [
+        "records",
+        "reissue",
+        name,
+        "--reason",
+        "the first one got wet",
+    ];
+    site.ok(&copy);
+    site.ok(&copy);
+    let copies: Vec<_> = (1..=2)
+        .map(|n| fs::read(site.certificate(&record, &format!("copy-{n}.pdf"))).expect("a copy"))
+        .collect();
+    assert!(copies[0].starts_with(b"%PDF-") && copies[0] != copies[1]);
+    let verified = site.json(&["records", "verify"]);
+    assert_eq!(verified["proven"], true, "{verified:#}");
+    assert_eq!(verified["certificates"], 3);
+}
+
+#[test]
+fn an_exported_record_is_proven_without_the_program() {
+    let site = Site::new();
+    let record = site.judge("26K-0001");
+    let name = record["record"].as_str().expect("a name");
+    site.ok(&["records", "reissue", name, "--reason", "for the customer"]);
+    let folder = site.file("package");
+    site.ok(&["records", "export", name, folder.to_str().expect("a path")]);
+    let python = std::env::var("REELGATE_PYTHON").unwrap_or_else(|_| "python3".to_owned());
+    let checked = || {
+        let mut command = Command::new(&python);
+        let command = command.arg("tests/tools/verify_record.py").arg(&folder);
+        let output = command.output().expect("python");
+        (
+            output.status.code(),
+            String::from_utf8_lossy(&output.stdout).into_owned(),
+        )
+    };
+    let (status, said) = checked();
+    assert_eq!(status, Some(0), "{said}");
+    assert!(said.contains(name) && said.contains("hold"), "{said}");
+    assert!(folder.join("data/certificate.pdf").exists());
+    fs::write(folder.join("data/certificate.pdf"), b"%PDF-1.7 another").expect("a change");
+    assert_eq!(checked().0, Some(1));
+    assert!(
+        site.fails(&["records", "export", name, folder.to_str().expect("a path")])
+            .contains("is there already")
+    );
+}
+
+#[test]
+fn nothing_to_look_at_is_not_proven() {
+    let site = Site::new();
+    assert!(site.fails(&["records", "verify"]).contains("no ledger"));
+    assert!(!site.file("records").exists());
+    site.judge("26K-0001");
+    let missing = site.fails(&["records", "verify", "no-such.pdf"]);
+    assert!(missing.contains("no-such.pdf: cannot be read"), "{missing}");
+    // A run that could not judge leaves no ledger.
+    let other = Site::new();
+    fs::write(other.file("lots/26K-0001/lot.yaml"), "lot: [").expect("a change");
+    let (status, ..) = run(&other, &["judge", "lots/26K-0001"]);
+    assert_eq!(status, Some(2));
+    assert!(!other.file("records").exists());
+}
