@@ -108,6 +108,7 @@ impl LotRecord {
             sampling: judgement.sampling,
             statistics: judgement.statistics,
             circuit,
+            findings: judgement.findings,
             parts,
         }
     }

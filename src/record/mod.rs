@@ -10,8 +10,8 @@ mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics,
-    Step, VariablesSection,
+    ClassSection, ConditionSection, Findings, GroupSection, JointOutlier, JointSection, LotVerdict,
+    MixedSection, OperatingCharacteristic, Sampling, Statistics, Step, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
@@ -55,6 +55,9 @@ pub struct LotRecord {
     /// The equivalent circuit of the lot's median part, where there is one.
     #[serde(default)]
     pub circuit: Option<CircuitSection>,
+    /// What lot rules found beside.
+    #[serde(default, skip_serializing_if = "Findings::is_empty")]
+    pub findings: Findings,
     /// In measuring order.
     pub parts: Vec<PartRecord>,
 }
