@@ -375,6 +375,7 @@ fn warnings_are_documented() {
         "src/judgement/bench.rs",
         "src/lot/statistics.rs",
         "src/lot/capability.rs",
+        "src/lot/rules/warnings.rs",
     ]);
     given.remove("sigma_within"); // the name of a statistic
     given.extend(codes_in(&verdict().1));
@@ -392,7 +393,13 @@ fn warnings_are_documented() {
 fn reasons_are_documented() {
     let page = "docs/operator.md";
     let documented = codes_of_table(page, "## Reasons", "## What is kept");
-    let mut given = codes_of_source(&["src/lot/conditions.rs", "src/judgement/part.rs"]);
+    let rules =
+        ["capability", "joint", "mixed", "outliers"].map(|rule| format!("src/lot/rules/{rule}.rs"));
+    let mut given = codes_of_source(&rules.each_ref().map(String::as_str));
+    given.extend(codes_of_source(&[
+        "src/lot/conditions.rs",
+        "src/judgement/part.rs",
+    ]));
     given.extend(codes_in(&verdict().0));
     given.remove("no_reading"); // the cause of parts that have neither fault nor warning
     let (missing, surplus) = (&given - &documented, &documented - &given);

@@ -165,7 +165,7 @@ fn characteristics(out: &mut String, record: &LotRecord) {
             column.limits(bound),
             column.spread(s),
             column.range(s),
-            s.cpk.map_or(NO_VALUE.to_owned(), |v| format!("{v:.2}")),
+            cpk(s),
             s.nonconforming.to_string(),
         ]);
     }
@@ -185,6 +185,32 @@ fn characteristics(out: &mut String, record: &LotRecord) {
                 "    ",
             ));
         }
+    }
+    joint(out, record);
+}
+
+/// Where noise dominates the spread, what it is at least.
+fn cpk(s: &Statistics) -> String {
+    let at_least = || s.at_least.and_then(|indices| indices.cpk);
+    match (s.cpk, at_least()) {
+        (Some(v), _) => format!("{v:.2}"),
+        (None, Some(v)) => format!("≥ {v:.2}"),
+        (None, None) => NO_VALUE.to_owned(),
+    }
+}
+
+/// Parts found by several characteristics together. Groups of a mixed lot stand in the reasons.
+fn joint(out: &mut String, record: &LotRecord) {
+    for section in record
+        .findings
+        .joint
+        .iter()
+        .filter(|s| !s.outliers.is_empty())
+    {
+        let parts: Vec<&str> = section.outliers.iter().map(|o| o.part.as_str()).collect();
+        let of = section.of.join(", ");
+        let line = format!("unlike the rest in {of} together: {}", parts.join(", "));
+        out.push_str(&wrapped(&line, "  ", "    "));
     }
 }
 

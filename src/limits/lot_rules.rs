@@ -1,35 +1,54 @@
 //! Rules that turn lot statistics into a hold.
 
+mod of;
+
 use super::bound::Bounded;
-use super::{Bound, CapabilityRule, OutlierRule};
-use crate::diagnostic::yaml::{Fields, Node, Reader, Shape, nearest};
-use crate::diagnostic::{Span, excerpt};
+use super::{Action, Bound, CapabilityRule, MixedRule, OutlierMethod, OutlierRule, TrendRule};
+use crate::diagnostic::yaml::{Fields, Node, Reader, Shape};
 use crate::quantity::Dimension;
+use of::of;
 
-type Rules = (Vec<CapabilityRule>, Vec<OutlierRule>);
+/// The rules of a file, in its order.
+#[derive(Default)]
+pub struct Rules {
+    pub capability: Vec<CapabilityRule>,
+    pub outliers: Vec<OutlierRule>,
+    pub mixed: Vec<MixedRule>,
+    pub trend: Vec<TrendRule>,
+}
 
-/// Capability and outlier rules; none where the file says nothing.
+/// The lot rules; none where the file says nothing.
 ///
 /// Where the bounds have faults of their own, only rules of what is surely not bounded are faults.
 pub fn read(reader: &mut Reader<'_>, node: Option<&Node>, bounded: &Bounded) -> Option<Rules> {
     let Some(node) = node else {
-        return Some((Vec::new(), Vec::new()));
+        return Some(Rules::default());
     };
     let before = reader.count();
-    let fields = reader.fields(node, "`lot_rules`", &["capability", "outliers"])?;
-    let mut rules: Rules = (Vec::new(), Vec::new());
-    let mut complete = true;
-    for item in items(fields.get("capability")) {
-        let rule = capability(reader, item, bounded);
-        complete &= rule.is_some();
-        rules.0.extend(rule);
-    }
-    for item in items(fields.get("outliers")) {
-        let rule = outliers(reader, item, bounded);
-        complete &= rule.is_some();
-        rules.1.extend(rule);
-    }
-    (complete && reader.count() == before).then_some(rules)
+    let keys = ["capability", "outliers", "mixed", "trend"];
+    let fields = reader.fields(node, "`lot_rules`", &keys)?;
+    let rules = Rules {
+        capability: each(reader, fields.get("capability"), bounded, capability),
+        outliers: each(reader, fields.get("outliers"), bounded, outliers),
+        mixed: each(reader, fields.get("mixed"), bounded, mixed),
+        trend: each(reader, fields.get("trend"), bounded, trend),
+    };
+    (reader.count() == before).then_some(rules)
+}
+
+type ReadRule<T> = fn(&mut Reader<'_>, &Node, &Bounded) -> Option<T>;
+
+/// Every rule under a key; one that has faults leaves them in the reader.
+fn each<T>(
+    reader: &mut Reader<'_>,
+    node: Option<&Node>,
+    bounded: &Bounded,
+    read: ReadRule<T>,
+) -> Vec<T> {
+    items(node)
+        .into_iter()
+        .filter_map(|item| read(reader, item, bounded))
+        .collect()
 }
 
 /// One rule, or a list of them.
@@ -86,110 +105,75 @@ fn two_sided(
 fn outliers(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<OutlierRule> {
     let what = "`outliers`";
     let fields = reader.fields(node, what, &["of", "method", "alpha", "allowed"])?;
+    let names = OutlierMethod::ALL.map(OutlierMethod::name);
     let method = reader
         .required(&fields, "method", what, "generalized_esd")
-        .and_then(|node| reader.one_of(node, "an outlier test", &["generalized_esd"]));
-    let alpha = reader
-        .required(&fields, "alpha", what, "0.01")
-        .and_then(|node| {
-            let expected = "a significance level above 0 and at most 0.5";
-            let possible = |v: f64| v > 0.0 && v <= 0.5;
-            reader.quantity_if(node, "`alpha`", Dimension::Ratio, possible, expected)
-        });
+        .and_then(|node| reader.one_of(node, "an outlier test", &names))
+        .and_then(|at| OutlierMethod::ALL.get(at).copied());
+    let level = match (method, fields.get("alpha")) {
+        (Some(method), Some(node)) if !method.has_alpha() => {
+            reader.fault(
+                node.span,
+                "alpha_without_meaning",
+                format!("`alpha` of `{}`, which has fixed limits", method.name()),
+                "no `alpha`",
+                Some("delete it, or use another method".to_owned()),
+            );
+            None
+        }
+        (Some(method), _) if !method.has_alpha() => Some(None),
+        _ => alpha(reader, &fields, what).map(Some),
+    };
     let allowed = reader
         .required(&fields, "allowed", what, "0")
         .and_then(|node| reader.integer(node, "`allowed`", (0, 1000)));
     let of = of(reader, &fields, what, bounded);
-    method?;
+    if let (Some(OutlierMethod::Joint), Some([_])) = (method, of.as_deref()) {
+        reader.fault(
+            fields.get("of").map_or(fields.span, |node| node.span),
+            "joint_of_one",
+            "one characteristic",
+            "at least two: a joint distance is of several characteristics together",
+            Some("name more, or use `generalized_esd`".to_owned()),
+        );
+    }
     Some(OutlierRule {
         of: of?,
-        alpha: alpha?,
+        method: method?,
+        alpha: level?,
         allowed: allowed?,
     })
 }
 
-/// The keys of the bounds that a rule is of: `capacitance` is every bound of it,
-/// `capacitance@1kHz` that one.
-fn of(
-    reader: &mut Reader<'_>,
-    fields: &Fields<'_>,
-    what: &str,
-    bounded: &Bounded,
-) -> Option<Vec<String>> {
-    let node = reader.required(fields, "of", what, "capacitance")?;
-    let names: Vec<&Node> = match &node.shape {
-        Shape::List(list) if list.is_empty() => {
-            let found = format!("{what} of nothing");
-            reader.fault(
-                node.span,
-                "empty_list",
-                found,
-                "at least one characteristic",
-                None,
-            );
-            return None;
-        }
-        Shape::List(list) => list.iter().collect(),
-        _ => vec![node],
-    };
-    let before = reader.count();
-    let mut keys: Vec<String> = Vec::new();
-    for node in names {
-        let Some(name) = reader.line(node, "a characteristic") else {
-            continue;
-        };
-        let matching = resolve(&name, &bounded.bounds);
-        if matching.is_empty() && !may_be_bounded(&name, bounded) {
-            not_bounded(reader, node.span, &name, &bounded.bounds);
-        }
-        for key in matching {
-            if keys.contains(&key) {
-                let found = format!("`{key}` a second time");
-                reader.fault(node.span, "duplicate_entry", found, "each once", None);
-            } else {
-                keys.push(key);
-            }
-        }
-    }
-    (reader.count() == before).then_some(keys)
+fn mixed(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<MixedRule> {
+    let what = "`mixed`";
+    let fields = reader.fields(node, what, &["of", "alpha"])?;
+    let alpha = alpha(reader, &fields, what);
+    let of = of(reader, &fields, what, bounded);
+    Some(MixedRule {
+        of: of?,
+        alpha: alpha?,
+    })
 }
 
-/// Whether a bound with faults, or under a misspelt name, may be the one meant.
-fn may_be_bounded(name: &str, bounded: &Bounded) -> bool {
-    let name = name.split('@').next().unwrap_or(name);
-    let near = |other: &String| other == name || nearest(other, &[name]).is_some();
-    !bounded.complete && bounded.names.iter().any(near)
+fn trend(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<TrendRule> {
+    let what = "`trend`";
+    let fields = reader.fields(node, what, &["of", "action"])?;
+    let action = reader
+        .required(&fields, "action", what, "warn")
+        .and_then(|node| reader.one_of(node, "what to do", &Action::ALL.map(Action::name)))
+        .and_then(|at| Action::ALL.get(at).copied());
+    let of = of(reader, &fields, what, bounded);
+    Some(TrendRule {
+        of: of?,
+        action: action?,
+    })
 }
 
-fn resolve(name: &str, bounds: &[Bound]) -> Vec<String> {
-    let named = |b: &&Bound| b.key == name || b.characteristic.name() == name;
-    bounds.iter().filter(named).map(|b| b.key.clone()).collect()
-}
-
-fn not_bounded(reader: &mut Reader<'_>, span: Span, name: &str, bounds: &[Bound]) {
-    let mut known: Vec<&str> = Vec::new();
-    for bound in bounds {
-        for text in [bound.characteristic.name(), bound.key.as_str()] {
-            if !known.contains(&text) {
-                known.push(text);
-            }
-        }
-    }
-    if crate::readings::Characteristic::ALL
-        .iter()
-        .any(|c| c.name() == name)
-    {
-        reader.fault(
-            span,
-            "rule_without_bound",
-            format!("`{name}`, which this file does not bound"),
-            "a characteristic that is bounded",
-            Some(format!(
-                "bound `{name}` under `characteristics`, or take it out here"
-            )),
-        );
-        return;
-    }
-    let is = "no characteristic that this file bounds";
-    reader.unknown(span, "rule_without_bound", &excerpt(name), is, &known);
+/// A significance level.
+fn alpha(reader: &mut Reader<'_>, fields: &Fields<'_>, what: &str) -> Option<f64> {
+    let node = reader.required(fields, "alpha", what, "0.01")?;
+    let expected = "a significance level above 0 and at most 0.5";
+    let possible = |v: f64| v > 0.0 && v <= 0.5;
+    reader.quantity_if(node, "`alpha`", Dimension::Ratio, possible, expected)
 }

@@ -166,15 +166,109 @@ pub struct CapabilityRule {
     pub min: f64,
 }
 
+/// A test for outliers.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum OutlierMethod {
+    /// Several at once (Rosner 1983).
+    GeneralizedEsd,
+    /// A single one (Grubbs 1969).
+    Grubbs,
+    /// Beyond 3.5 in units of the median deviation (Iglewicz & Hoaglin 1993).
+    ModifiedZ,
+    /// Beyond the median ± 6 robust sigmas.
+    PartAverage,
+    /// By several characteristics together: robust Mahalanobis distance.
+    Joint,
+}
+
+impl OutlierMethod {
+    /// In the order of the documentation.
+    pub const ALL: [OutlierMethod; 5] = [
+        OutlierMethod::GeneralizedEsd,
+        OutlierMethod::Grubbs,
+        OutlierMethod::ModifiedZ,
+        OutlierMethod::PartAverage,
+        OutlierMethod::Joint,
+    ];
+
+    /// As limit files spell it.
+    pub fn name(self) -> &'static str {
+        match self {
+            OutlierMethod::GeneralizedEsd => "generalized_esd",
+            OutlierMethod::Grubbs => "grubbs",
+            OutlierMethod::ModifiedZ => "modified_z",
+            OutlierMethod::PartAverage => "part_average",
+            OutlierMethod::Joint => "joint",
+        }
+    }
+
+    /// In words, for a sentence.
+    pub fn words(self) -> &'static str {
+        match self {
+            OutlierMethod::GeneralizedEsd => "generalized ESD",
+            OutlierMethod::Grubbs => "Grubbs",
+            OutlierMethod::ModifiedZ => "modified z-score above 3.5",
+            OutlierMethod::PartAverage => "part-average limits",
+            OutlierMethod::Joint => "joint robust distance",
+        }
+    }
+
+    /// Whether it has a significance level.
+    pub fn has_alpha(self) -> bool {
+        !matches!(self, OutlierMethod::ModifiedZ | OutlierMethod::PartAverage)
+    }
+}
+
 /// Outliers allowed in the lot.
 #[derive(Debug, Clone, PartialEq)]
 pub struct OutlierRule {
+    /// Keys of the bounds it applies to: of each by itself, or of all together where joint.
+    pub of: Vec<String>,
+    #[allow(missing_docs)]
+    pub method: OutlierMethod,
+    /// Significance level, where the method has one.
+    pub alpha: Option<f64>,
+    /// How many outliers are allowed for each characteristic; together where joint.
+    pub allowed: u64,
+}
+
+/// A lot of two populations is held.
+#[derive(Debug, Clone, PartialEq)]
+pub struct MixedRule {
     /// Keys of the bounds it applies to.
     pub of: Vec<String>,
-    /// Significance level of the generalized ESD test.
+    /// Significance level of the test for a single peak.
     pub alpha: f64,
-    /// How many outliers are allowed for each characteristic.
-    pub allowed: u64,
+}
+
+/// What is done where a rule finds something.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[allow(missing_docs)]
+pub enum Action {
+    Warn,
+    Hold,
+}
+
+impl Action {
+    #[allow(missing_docs)]
+    pub const ALL: [Action; 2] = [Action::Warn, Action::Hold];
+
+    /// As limit files spell it.
+    pub fn name(self) -> &'static str {
+        match self {
+            Action::Warn => "warn",
+            Action::Hold => "hold",
+        }
+    }
+}
+
+/// A lot unlike the accepted lots before it.
+#[derive(Debug, Clone, PartialEq)]
+pub struct TrendRule {
+    /// Keys of the bounds it applies to.
+    pub of: Vec<String>,
+    #[allow(missing_docs)]
+    pub action: Action,
 }
 
 /// How many further tries are allowed after a try with that outcome.
@@ -199,5 +293,7 @@ pub struct Limits {
     pub acceptance: Acceptance,
     pub capability_rules: Vec<CapabilityRule>,
     pub outlier_rules: Vec<OutlierRule>,
+    pub mixed_rules: Vec<MixedRule>,
+    pub trend_rules: Vec<TrendRule>,
     pub retest: Retest,
 }

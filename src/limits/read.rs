@@ -72,7 +72,7 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
     if let Some(conditions) = conditions.as_ref().filter(|_| bounded.complete) {
         conditions::ageing_has_capacitance(reader, &fields, conditions, &bounded.bounds);
     }
-    let (capability_rules, outlier_rules) = rules?;
+    let rules = rules?;
     Some(Limits {
         part: part?,
         revision: revision?,
@@ -84,8 +84,10 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
         bounds: bounded.complete.then_some(bounded.bounds)?,
         decision_rule: decision_rule?,
         acceptance: acceptance?,
-        capability_rules,
-        outlier_rules,
+        capability_rules: rules.capability,
+        outlier_rules: rules.outliers,
+        mixed_rules: rules.mixed,
+        trend_rules: rules.trend,
         retest: retest?,
     })
 }

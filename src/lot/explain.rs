@@ -1,10 +1,9 @@
 //! The chain from numbers to verdict: each rule with its source, what went in, what came out, so
 //! that a person with a calculator can follow.
 
-use super::{ConditionSection, LotVerdict, Plan, PlanClass, Sampling, Statistics};
+use super::{ConditionSection, LotVerdict, Plan, PlanClass, Sampling};
 use crate::limits::{Bound, DecisionRuleKind, Limits};
 use crate::quantity::engineering;
-use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
 
 /// One step of the chain.
@@ -22,7 +21,7 @@ pub struct Step {
     pub result: String,
 }
 
-fn step(about: &str, rule: &str, source: &str, numbers: String, result: String) -> Step {
+pub(super) fn step(about: &str, rule: &str, source: &str, numbers: String, result: String) -> Step {
     Step {
         about: about.to_owned(),
         rule: rule.to_owned(),
@@ -37,7 +36,8 @@ pub(super) struct Decided<'a> {
     pub(super) limits: &'a Limits,
     pub(super) plan: &'a Plan,
     pub(super) sampling: &'a Sampling,
-    pub(super) statistics: &'a IndexMap<String, Statistics>,
+    /// Of the lot rules.
+    pub(super) rules: Vec<Step>,
     pub(super) conditions: &'a [ConditionSection],
     pub(super) verdict: LotVerdict,
 }
@@ -51,8 +51,7 @@ pub(super) fn explain(decided: &Decided) -> Vec<Step> {
         steps.push(plan_of(decided.plan, name, class));
         steps.extend(count(decided.sampling, name));
     }
-    steps.extend(capability(decided));
-    steps.extend(outliers(decided));
+    steps.extend(decided.rules.iter().cloned());
     steps.push(precedence(decided));
     steps
 }
@@ -185,115 +184,10 @@ fn count(sampling: &Sampling, name: &str) -> Option<Step> {
     ))
 }
 
-fn capability(decided: &Decided) -> Vec<Step> {
-    let mut steps = Vec::new();
-    for rule in &decided.limits.capability_rules {
-        for key in &rule.of {
-            let (Some(s), Some(bound)) = (
-                decided.statistics.get(key),
-                decided.limits.bounds.iter().find(|b| b.key == *key),
-            ) else {
-                continue;
-            };
-            let within = rule.index.starts_with('c');
-            let (symbol, sigma) = if within {
-                ("σ within", s.sigma_within)
-            } else {
-                ("s", s.standard_deviation)
-            };
-            let formula = match rule.index.as_str() {
-                "cp" | "pp" => "(U − L) / 6σ",
-                _ => "the smaller of (U − mean) / 3σ and (mean − L) / 3σ",
-            };
-            let value = s.index(&rule.index);
-            let how = how_had(s, rule.index.as_str());
-            let result = match value {
-                Some(index) if index >= rule.min => format!("{how}{index:.3} ≥ {}", rule.min),
-                Some(index) => format!("{how}{index:.3} < {}: holds the lot", rule.min),
-                None => "cannot be had: holds the lot".to_owned(),
-            };
-            steps.push(step(
-                key,
-                &format!(
-                    "{} = {formula}, at least {}",
-                    rule.index.to_uppercase(),
-                    rule.min
-                ),
-                "ISO 22514-2:2017, 7; σ within by the mean moving range over 1.128 (ISO 7870-2)",
-                format!(
-                    "{}, mean {}, {symbol} {}",
-                    limits_of(bound),
-                    number(s.mean, bound),
-                    number(sigma, bound)
-                ),
-                result,
-            ));
-        }
-    }
-    steps
-}
-
-/// Where the index is not the one of the formula as it stands.
-fn how_had(s: &Statistics, index: &str) -> &'static str {
-    let by_percentiles = match index {
-        "pp" => s.pp_percentile,
-        "ppk" => s.ppk_percentile,
-        _ => None,
-    };
-    if by_percentiles.is_some() {
-        return "not normally distributed, so by the 0.135 %, 50 % and 99.865 % quantiles of the fitted distribution: ";
-    }
-    match s.at_least.and_then(|at_least| at_least.get(index)) {
-        Some(_) => "most of the spread is the measurement's, so at least: ",
-        None => "",
-    }
-}
-
-fn limits_of(bound: &Bound) -> String {
-    format!(
-        "L {}, U {}",
-        number(bound.lower, bound),
-        number(bound.upper, bound)
-    )
-}
-
-fn number(value: Option<f64>, bound: &Bound) -> String {
+pub(super) fn number(value: Option<f64>, bound: &Bound) -> String {
     value.map_or("–".to_owned(), |v| {
         engineering(v, bound.characteristic.unit(), 5)
     })
-}
-
-fn outliers(decided: &Decided) -> Vec<Step> {
-    let mut steps = Vec::new();
-    for rule in &decided.limits.outlier_rules {
-        for key in &rule.of {
-            let Some(s) = decided.statistics.get(key) else {
-                continue;
-            };
-            let found = s.outliers.len() as u64;
-            let which = if found == 0 {
-                "none".to_owned()
-            } else {
-                s.outliers.join(", ")
-            };
-            let result = if found > rule.allowed {
-                format!("{which}: holds the lot")
-            } else {
-                which
-            };
-            steps.push(step(
-                key,
-                &format!(
-                    "at most {} outliers by the generalized extreme studentized deviate test",
-                    rule.allowed
-                ),
-                "Rosner 1983; NIST/SEMATECH e-Handbook 1.3.5.17.3",
-                format!("{} values, significance {}", s.n, rule.alpha),
-                result,
-            ));
-        }
-    }
-    steps
 }
 
 fn precedence(decided: &Decided) -> Step {

@@ -1,19 +1,14 @@
 //! Lot statistics of a characteristic over the parts that have a value.
 
 use super::capability::{self, Indices};
+use super::outliers;
 use crate::diagnostic::Note;
 use crate::judgement::{PartRecord, PartVerdict};
 use crate::limits::{Bound, Limits};
 use crate::station::Station;
-use crate::statistics::outliers::generalized_esd;
 use crate::statistics::summary::Summary;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
-
-/// Significance of the outlier test where no lot rule names one.
-const ALPHA: f64 = 0.01;
-/// The most outliers looked for in one characteristic.
-const OUTLIERS_MAX: usize = 10;
 
 /// Statistics of one characteristic over all parts that have a value.
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
@@ -102,9 +97,7 @@ fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartReco
             .filter_map(|p| p.readings.get(&bound.key).map(|r| (p, r)))
     };
     let valid = || readings().filter(|(_, r)| r.verdict != PartVerdict::Unmeasured);
-    let (names, values): (Vec<&str>, Vec<f64>) = valid()
-        .filter_map(|(p, r)| r.value.map(|v| (p.part.as_str(), v)))
-        .unzip();
+    let (names, values): (Vec<&str>, Vec<f64>) = values(&bound.key, parts).into_iter().unzip();
     let with = |verdict| readings().filter(|(_, r)| r.verdict == verdict).count() as u64;
     let mut warnings = Vec::new();
     let bounded = valid()
@@ -122,13 +115,11 @@ fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartReco
     let noise = capability::repeatability(station, bound, mean);
     let stated = capability::of(&values, mean, standard_deviation, bound, noise);
     warnings.extend(stated.warnings);
-    let n = values.len();
-    let outliers = match generalized_esd(&values, OUTLIERS_MAX.min(n / 4), alpha(bound, limits)) {
-        Ok(found) => found
-            .outliers
-            .iter()
-            .map(|i| names[*i].to_owned())
-            .collect(),
+    let outliers = match outliers::of_bound(bound, limits, &values) {
+        Ok(found) => {
+            let name = |i: &usize| names.get(*i).map(|name| (*name).to_owned());
+            found.iter().filter_map(name).collect()
+        }
         Err(why) => {
             warnings.push(Note::new(
                 "outliers_undefined",
@@ -138,7 +129,7 @@ fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartReco
         }
     };
     Statistics {
-        n: n as u64,
+        n: values.len() as u64,
         mean,
         standard_deviation,
         minimum: summary.as_ref().map(|s| s.minimum),
@@ -163,11 +154,14 @@ fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartReco
     }
 }
 
-/// The significance of the lot rule that names this bound, or the usual one.
-fn alpha(bound: &Bound, limits: &Limits) -> f64 {
-    limits
-        .outlier_rules
+/// Parts that have a valid value, with it, in measuring order.
+pub(super) fn values<'a>(key: &str, parts: &'a [PartRecord]) -> Vec<(&'a str, f64)> {
+    parts
         .iter()
-        .find(|rule| rule.of.contains(&bound.key))
-        .map_or(ALPHA, |rule| rule.alpha)
+        .filter_map(|part| {
+            let reading = part.readings.get(key)?;
+            let valid = reading.verdict != PartVerdict::Unmeasured;
+            Some((part.part.as_str(), reading.value.filter(|_| valid)?))
+        })
+        .collect()
 }

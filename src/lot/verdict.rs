@@ -6,6 +6,7 @@
 
 use super::conditions::{self, ConditionSection, some_parts};
 use super::explain::{Decided, Step, explain};
+use super::rules::{self, Findings, Judged};
 use super::{ClassSection, LotVerdict::*, Plan, Sampling, Statistics, sampling};
 use super::{Lot, statistics};
 use crate::diagnostic::Note;
@@ -47,6 +48,7 @@ pub struct LotJudgement {
     pub warnings: Vec<Note>,
     pub sampling: Sampling,
     pub statistics: IndexMap<String, Statistics>,
+    pub findings: Findings,
     pub conditions: Vec<ConditionSection>,
     /// The chain from numbers to verdict.
     pub explanation: Vec<Step>,
@@ -77,7 +79,12 @@ pub fn judge(
     holds.extend(beyond(&sampling));
     holds.extend(duplicates(parts));
     holds.extend(further);
-    holds.extend(lot_rules(limits, &statistics));
+    let ruled = rules::evaluate(&Judged {
+        limits,
+        parts,
+        statistics: &statistics,
+    });
+    holds.extend(ruled.holds);
     let verdict = if !unmet.is_empty() {
         Hold
     } else if !rejections.is_empty() {
@@ -98,15 +105,18 @@ pub fn judge(
         limits,
         plan,
         sampling: &sampling,
-        statistics: &statistics,
+        rules: ruled.steps,
         conditions: &sections,
         verdict,
     });
+    let mut warnings = warnings(limits, station, &sampling);
+    warnings.extend(ruled.warnings);
     LotJudgement {
         verdict,
         explanation,
         reasons,
-        warnings: warnings(limits, station, &sampling),
+        warnings,
+        findings: ruled.findings,
         sampling,
         statistics,
         conditions: sections,
@@ -313,61 +323,6 @@ fn duplicates(parts: &[PartRecord]) -> Vec<Note> {
             )
         })
         .collect()
-}
-
-fn lot_rules(limits: &Limits, statistics: &IndexMap<String, Statistics>) -> Vec<Note> {
-    let mut notes = Vec::new();
-    for rule in &limits.capability_rules {
-        for key in &rule.of {
-            let Some(of) = statistics.get(key) else {
-                continue;
-            };
-            let name = rule.index.to_uppercase();
-            match of.index(&rule.index) {
-                Some(index) if index >= rule.min => {}
-                Some(index) => notes.push(Note::new(
-                    "capability_below_min",
-                    format!("{name} of {key} is {index:.2} from {} parts, at least {} is demanded: a quality engineer decides", of.n, rule.min),
-                )),
-                None => {
-                    let why = of.warnings.iter().find(|w| w.code == format!("{}_undefined", rule.index) || w.code == "one_sided").map_or("", |w| w.text.as_str());
-                    notes.push(Note::new(
-                        "capability_not_available",
-                        format!("{name} of {key} is demanded and cannot be had ({why}): a quality engineer decides"),
-                    ));
-                }
-            }
-        }
-    }
-    for rule in &limits.outlier_rules {
-        for key in &rule.of {
-            let Some(of) = statistics.get(key) else {
-                continue;
-            };
-            if of.outliers.len() as u64 > rule.allowed {
-                let names: Vec<&str> = of.outliers.iter().map(String::as_str).collect();
-                notes.push(Note::new(
-                    "outliers_found",
-                    format!(
-                        "{key}: {} unlike the rest of the lot ({}, significance {}), {} allowed: look at these parts",
-                        names.len(),
-                        some_parts(&names),
-                        rule.alpha,
-                        rule.allowed
-                    ),
-                ));
-            } else if let Some(why) = of.warnings.iter().find(|w| w.code == "outliers_undefined") {
-                notes.push(Note::new(
-                    "outliers_not_available",
-                    format!(
-                        "outliers of {key} are to be looked for and cannot be ({})",
-                        why.text
-                    ),
-                ));
-            }
-        }
-    }
-    notes
 }
 
 fn warnings(limits: &Limits, station: &Station, sampling: &Sampling) -> Vec<Note> {

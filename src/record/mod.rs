@@ -5,15 +5,17 @@
 
 mod assemble;
 mod canonical;
+mod circuit;
 mod make;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ClassSection, ConditionSection, LotVerdict, OperatingCharacteristic, Sampling, Statistics,
-    Step, VariablesSection,
+    ClassSection, ConditionSection, Findings, GroupSection, JointOutlier, JointSection, LotVerdict,
+    MixedSection, OperatingCharacteristic, Sampling, Statistics, Step, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
+pub use circuit::{CircuitSection, ParameterSection};
 pub use make::{Made, Occasion, PartSweep, Refusal, Sources, make};
 
 use crate::diagnostic::Note;
@@ -50,6 +52,12 @@ pub struct LotRecord {
     pub sampling: Sampling,
     /// By characteristic key, in the order of the limit file.
     pub statistics: IndexMap<String, Statistics>,
+    /// The equivalent circuit of the lot's median part, where there is one.
+    #[serde(default)]
+    pub circuit: Option<CircuitSection>,
+    /// What lot rules found beside.
+    #[serde(default, skip_serializing_if = "Findings::is_empty")]
+    pub findings: Findings,
     /// In measuring order.
     pub parts: Vec<PartRecord>,
 }

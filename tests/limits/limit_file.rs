@@ -304,7 +304,17 @@ fn rules_that_say_nothing_are_refused() {
     );
     only("alpha: 0.01", "alpha: 1", "impossible_value 1");
     only("allowed: 0", "allowed: 0.5", "out_of_range 0.5");
-    only("generalized_esd", "grubbs", "unknown_value grubbs");
+    only("generalized_esd", "eyesight", "unknown_value eyesight");
+    only(
+        "generalized_esd",
+        "modified_z",
+        "alpha_without_meaning 0.01",
+    );
+    only(
+        "of: [capacitance, esr_minimum, srf], method: generalized_esd",
+        "of: srf, method: joint",
+        "joint_of_one srf",
+    );
     only(
         "{kind: guarded_acceptance",
         "{kind: simple_acceptance",

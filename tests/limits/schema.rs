@@ -77,6 +77,11 @@ fn the_sample_files_are_valid_for_reader_and_schema() {
 #[test]
 fn the_full_shapes_are_valid() {
     accepts(&validator(reelgate::limits::SCHEMA), "limits", LIMITS);
+    let rules = "lot_rules:\n  mixed: {of: capacitance, alpha: 0.05}\n  trend: [{of: [capacitance, srf], action: hold}, {of: esr_minimum, action: warn}]\n";
+    let outliers = "outliers:\n    - {of: [capacitance, srf], method: joint, alpha: 1 %, allowed: 0}\n    - {of: capacitance, method: part_average, allowed: 1}\n    - ";
+    let all = with(LIMITS, "lot_rules:\n", rules);
+    let all = with(&all, "outliers:   ", outliers);
+    accepts(&validator(reelgate::limits::SCHEMA), "limits", &all);
     accepts(&validator(reelgate::station::SCHEMA), "station", STATION);
     accepts(&validator(reelgate::lot::SCHEMA), "lot", LOT);
 }
@@ -105,6 +110,14 @@ fn faulty_limit_files_are_refused() {
         ),
         ("{of: capacitance,", "{of: capacitanse,"),
         ("allowed: 0", "allowed: 0.5"),
+        ("method: generalized_esd", "method: modified_z"),
+        ("method: generalized_esd, alpha: 0.01", "method: grubbs"),
+        ("method: generalized_esd", "method: eyesight"),
+        ("lot_rules:\n", "lot_rules:\n  mixed: {of: capacitance}\n"),
+        (
+            "lot_rules:\n",
+            "lot_rules:\n  trend: {of: capacitance, action: reject}\n",
+        ),
         ("{kind: guarded_acceptance", "{kind: simple_acceptance"),
         ("kind: guarded_acceptance", "kind: guarded"),
         ("unmeasured: 1", "unmeasured: -1"),

@@ -83,7 +83,10 @@ fn a_number_is_a_decimal_number() {
             with(LIMITS, "alpha: 0.01", &format!("alpha: {text}")).as_bytes(),
         )
     };
-    assert_eq!(alpha("1e-2").expect("valid").outlier_rules[0].alpha, 0.01);
+    assert_eq!(
+        alpha("1e-2").expect("valid").outlier_rules[0].alpha,
+        Some(0.01)
+    );
     for trap in [".nan", ".inf", "0x1"] {
         assert_eq!(listed(alpha(trap)), [format!("not_a_quantity {trap}")]);
     }

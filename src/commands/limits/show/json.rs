@@ -22,8 +22,14 @@ pub fn object(limits: &Limits) -> Value {
                 "of": rule.of, "index": rule.index, "min": rule.min,
             })).collect::<Vec<_>>(),
             "outliers": limits.outlier_rules.iter().map(|rule| json!({
-                "of": rule.of, "method": "generalized_esd", "alpha": rule.alpha,
+                "of": rule.of, "method": rule.method.name(), "alpha": rule.alpha,
                 "allowed": rule.allowed,
+            })).collect::<Vec<_>>(),
+            "mixed": limits.mixed_rules.iter().map(|rule| json!({
+                "of": rule.of, "alpha": rule.alpha,
+            })).collect::<Vec<_>>(),
+            "trend": limits.trend_rules.iter().map(|rule| json!({
+                "of": rule.of, "action": rule.action.name(),
             })).collect::<Vec<_>>(),
         },
         "retest": {

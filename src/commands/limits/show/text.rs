@@ -1,7 +1,9 @@
 //! A limit file resolved, for people. Fits 80 columns.
 
 use crate::diagnostic::{printable, wrap};
-use crate::limits::{Acceptance, Bound, Conditions, DecisionRuleKind, Limits, Retest, aql_text};
+use crate::limits::{
+    Acceptance, Action, Bound, Conditions, DecisionRuleKind, Limits, OutlierRule, Retest, aql_text,
+};
 use crate::quantity::{NO_VALUE, shortest};
 use crate::readings::{Equivalent, Place};
 use comfy_table::{CellAlignment, ContentArrangement, LineStyle, Table, presets};
@@ -85,32 +87,61 @@ fn sections(limits: &Limits) -> Vec<(&'static str, String)> {
         ("Decision rule", decision_rule(limits)),
         ("Acceptance", acceptance(&limits.acceptance)),
     ];
-    for rule in &limits.capability_rules {
-        let of = rule.of.join(", ");
-        let text = format!("held where {} of {of} is below {}", rule.index, rule.min);
-        sections.push(("Lot rule", text));
-    }
-    for rule in &limits.outlier_rules {
-        let of = rule.of.join(", ");
-        let parts = match rule.allowed {
-            0 => "a part is an outlier".to_owned(),
-            1 => "more than one part is an outlier".to_owned(),
-            most => format!("more than {most} parts are outliers"),
-        };
-        let text = format!(
-            "held where {parts} of {of} (generalized ESD, alpha {})",
-            rule.alpha
-        );
-        sections.push(("Lot rule", text));
-    }
-    if limits.capability_rules.is_empty() && limits.outlier_rules.is_empty() {
+    let rules = lot_rules(limits);
+    if rules.is_empty() {
         sections.push((
             "Lot rules",
             "none: statistics are reported and decide nothing".to_owned(),
         ));
     }
+    sections.extend(rules.into_iter().map(|rule| ("Lot rule", rule)));
     sections.push(("Retest", retest(limits.retest)));
     sections
+}
+
+/// Each lot rule in a sentence.
+fn lot_rules(limits: &Limits) -> Vec<String> {
+    let capability = limits.capability_rules.iter().map(|rule| {
+        let of = rule.of.join(", ");
+        format!("held where {} of {of} is below {}", rule.index, rule.min)
+    });
+    let outliers = limits.outlier_rules.iter().map(outlier_rule);
+    let mixed = limits.mixed_rules.iter().map(|rule| {
+        let of = rule.of.join(", ");
+        format!(
+            "held where {of} has two populations (dip test at alpha {}, mixture by BIC)",
+            rule.alpha
+        )
+    });
+    let trend = limits.trend_rules.iter().map(|rule| {
+        let of = rule.of.join(", ");
+        let done = match rule.action {
+            Action::Warn => "a warning",
+            Action::Hold => "held",
+        };
+        format!("{done} where {of} is unlike that of the accepted lots before")
+    });
+    capability
+        .chain(outliers)
+        .chain(mixed)
+        .chain(trend)
+        .collect()
+}
+
+fn outlier_rule(rule: &OutlierRule) -> String {
+    let parts = match rule.allowed {
+        0 => "a part is an outlier".to_owned(),
+        1 => "more than one part is an outlier".to_owned(),
+        most => format!("more than {most} parts are outliers"),
+    };
+    let level = rule
+        .alpha
+        .map_or(String::new(), |alpha| format!(", alpha {alpha}"));
+    format!(
+        "held where {parts} of {} ({}{level})",
+        rule.of.join(", "),
+        rule.method.words()
+    )
 }
 
 fn conditions(conditions: &Conditions) -> String {

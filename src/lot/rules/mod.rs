@@ -1,0 +1,64 @@
+//! The lot rules of a limit file: what each finds, why it holds the lot, and how that came about.
+
+mod capability;
+mod joint;
+mod mixed;
+mod outliers;
+mod warnings;
+
+pub use joint::{JointOutlier, JointSection};
+pub use mixed::{GroupSection, MixedSection};
+
+use super::Statistics;
+use super::explain::Step;
+use crate::diagnostic::Note;
+use crate::judgement::PartRecord;
+use crate::limits::Limits;
+use indexmap::IndexMap;
+use serde::{Deserialize, Serialize};
+
+/// Seed of every pseudo-random number of the lot rules: the same parts, the same record.
+const SEED: u64 = 20_250_101;
+
+/// What lot rules found that is more than a statistic of one characteristic.
+#[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
+pub struct Findings {
+    /// Outliers by several characteristics together, one a rule.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub joint: Vec<JointSection>,
+    /// Two populations, one a characteristic that a rule names.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub mixed: Vec<MixedSection>,
+}
+
+impl Findings {
+    /// Whether no rule looked for anything.
+    pub fn is_empty(&self) -> bool {
+        self.joint.is_empty() && self.mixed.is_empty()
+    }
+}
+
+/// The outcome of all rules.
+#[derive(Debug, Clone, Default)]
+pub(super) struct Ruled {
+    pub(super) holds: Vec<Note>,
+    pub(super) warnings: Vec<Note>,
+    pub(super) steps: Vec<Step>,
+    pub(super) findings: Findings,
+}
+
+/// What the rules look at.
+pub(super) struct Judged<'a> {
+    pub(super) limits: &'a Limits,
+    pub(super) parts: &'a [PartRecord],
+    pub(super) statistics: &'a IndexMap<String, Statistics>,
+}
+
+/// Every rule, in the order of the documentation.
+pub(super) fn evaluate(judged: &Judged) -> Ruled {
+    let mut ruled = Ruled::default();
+    capability::evaluate(judged, &mut ruled);
+    outliers::evaluate(judged, &mut ruled);
+    mixed::evaluate(judged, &mut ruled);
+    ruled
+}
