@@ -410,3 +410,31 @@ fn reasons_are_documented() {
         list(&surplus)
     );
 }
+
+/// Every finding of `records verify` stands in `docs/auditor.md`, and no other.
+#[test]
+fn findings_are_documented() {
+    let page = "docs/auditor.md";
+    let documented = codes_of_table(page, "<!-- codes: findings -->", "<!-- end -->");
+    let source = program(Path::new("src/ledger/verify.rs"))
+        + &program(Path::new("src/commands/records/verify.rs"))
+        + &program(Path::new("src/commands/records/verify"));
+    let of_code = |c: char| c.is_ascii_lowercase() || c == '_';
+    let mut given: BTreeSet<String> = source
+        .split('"')
+        .skip(1)
+        .step_by(2)
+        .filter(|text| text.contains('_') && text.chars().all(of_code))
+        .map(str::to_owned)
+        .collect();
+    for key in ["since_entry", "since_time", "judged_again"] {
+        given.remove(key);
+    }
+    let (missing, surplus) = (&given - &documented, &documented - &given);
+    assert!(missing.is_empty(), "add to {page}: {}", list(&missing));
+    assert!(
+        surplus.is_empty(),
+        "not given any more, in {page}: {}",
+        list(&surplus)
+    );
+}

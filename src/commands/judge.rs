@@ -36,6 +36,9 @@ pub struct Args {
     /// Key that a new ledger begins with [default: one is made]
     #[arg(long, env = "REELGATE_LEDGER_KEY", value_name = "FILE")]
     ledger_key: Option<PathBuf>,
+    /// File on another machine or share that gets each new checkpoint
+    #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
+    witness: Option<PathBuf>,
 }
 
 /// Paper, as the command line spells it.
@@ -105,6 +108,7 @@ fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, Str
         records: site.records(),
         certificates: site.certificates(),
         key: args.ledger_key.clone(),
+        witness: args.witness.clone(),
         now: keep::now(args.now),
     };
     let bar = bar(sources.sweeps.len());
@@ -119,6 +123,9 @@ fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, Str
             &kept.record.record,
             &format!("recorded, but {why}"),
         );
+    }
+    if let Some(why) = &kept.warning {
+        let _ = writeln!(context.err, "warning: {}", printable(why));
     }
     let budget = match &args.budget {
         None => String::new(),

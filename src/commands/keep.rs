@@ -5,8 +5,8 @@ use super::store::{Paths, write_whole};
 use crate::certificate::{self, Curve, InLedger, Paper};
 use crate::ledger::disk::System;
 use crate::ledger::{
-    Act, Entry, FILE, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer, hex,
-    ledger_key, sha256, sha256_hex,
+    Act, Entry, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer, hex,
+    ledger_key, sha256, sha256_hex, witness,
 };
 use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
 use chrono::{DateTime, FixedOffset, Timelike};
@@ -31,6 +31,8 @@ pub struct Place {
     pub certificates: PathBuf,
     /// Key that a new ledger begins with; without one the key is made.
     pub key: Option<PathBuf>,
+    /// File on another machine or share that gets every new checkpoint.
+    pub witness: Option<PathBuf>,
     /// The time, to the second.
     pub now: DateTime<FixedOffset>,
 }
@@ -51,6 +53,8 @@ pub struct Kept {
     pub made: Option<Made>,
     /// Why its files are not on the disk, though it is in the ledger.
     pub unwritten: Option<String>,
+    /// What the operator should know though the record is kept.
+    pub warning: Option<String>,
 }
 
 /// Why a lot has no record.
@@ -71,11 +75,12 @@ impl From<LedgerError> for NotKept {
 }
 
 impl Place {
-    /// The ledger for reading; `None` where there is none yet.
+    /// The ledger for reading; `None` where there is none yet, or another process is making it.
+    /// One that is gone is found out on opening it for appending.
     pub fn look(&self) -> Result<Option<Ledger>, LedgerError> {
         match Ledger::open(&self.records) {
             Ok(ledger) => Ok(Some(ledger)),
-            Err(LedgerError::Missing { .. }) if !self.records.join(FILE).exists() => Ok(None),
+            Err(LedgerError::Missing { .. }) => Ok(None),
             Err(error) => Err(error),
         }
     }
@@ -94,7 +99,30 @@ impl Place {
                     .to_owned(),
             ));
         }
-        Ledger::open_for_writing(&self.records, signer, self.now)
+        let ledger = Ledger::open_for_writing(&self.records, signer, self.now)?;
+        // A witness that cannot be reached keeps nobody from working; one that contradicts does.
+        let seen = self.witness.as_deref().map(witness::read);
+        if let Some(Ok(seen)) = seen
+            && let Some(last) = seen.last()
+        {
+            ledger.continues(last)?;
+        }
+        Ok(ledger)
+    }
+
+    /// Gives the newest checkpoint to the witness.
+    ///
+    /// # Errors
+    /// In words; the entry stands all the same.
+    pub fn tell_witness(&self, ledger: &Ledger) -> Result<(), String> {
+        let Some(path) = &self.witness else {
+            return Ok(());
+        };
+        let without = |e: LedgerError| format!("the witness file was not written: {e}");
+        match ledger.head().map_err(without)? {
+            Some(head) => witness::append(path, &head).map_err(without),
+            None => Ok(()),
+        }
     }
 
     /// Who makes an entry here and now.
@@ -203,6 +231,7 @@ fn finish(
         paths,
         made: Some(made),
         unwritten: written.err(),
+        warning: place.tell_witness(ledger).err(),
     }
 }
 
@@ -226,11 +255,16 @@ fn answer(place: &Place, ledger: &Ledger, entry: &Entry, paper: Paper) -> Result
         paths,
         made: None,
         unwritten: written.err(),
+        warning: None,
     })
 }
 
 /// Whether the file is there; one that is not what it should be is not touched.
 fn on_disk(path: &Path, right: impl Fn(&[u8]) -> bool) -> Result<bool, NotKept> {
+    // A pipe in the place of a file would be waited for.
+    if fs::symlink_metadata(path).is_ok_and(|kind| !kind.is_file()) {
+        return Err(NotKept::Changed(path.to_owned()));
+    }
     match fs::read(path) {
         Ok(bytes) if right(&bytes) => Ok(true),
         Ok(_) => Err(NotKept::Changed(path.to_owned())),
@@ -307,7 +341,7 @@ pub fn reissue(
     record: &str,
     by: Option<&str>,
     reason: &str,
-) -> Result<PathBuf, String> {
+) -> Result<(PathBuf, Option<String>), String> {
     let text = |e: LedgerError| e.to_string();
     let mut ledger = place.open().map_err(text)?;
     let entry = judged(&ledger, record).map_err(text)?;
@@ -336,6 +370,7 @@ pub fn reissue(
     ledger
         .reissued(record, &pdf, reason, &place.by(by))
         .map_err(text)?;
+    let told = place.tell_witness(&ledger);
     let path = place
         .certificates
         .join(format!("{record}.copy-{number}.pdf"));
@@ -345,7 +380,7 @@ pub fn reissue(
             path.display()
         )
     })?;
-    Ok(path)
+    Ok((path, told.err()))
 }
 
 /// The paper on which the original was issued.

@@ -8,13 +8,14 @@ mod verify;
 use super::keep::{self, PROGRAM, Place, certificates_of};
 use super::site::Site;
 use super::store::Paths;
-use super::{Context, exit};
+use super::{Context, Format, exit};
 use crate::diagnostic::printable;
 use crate::ledger::bag::{Export, export};
 use crate::ledger::disk::System;
 use crate::ledger::{Decision, Ledger, LedgerError, sha256_hex};
 use chrono::{DateTime, FixedOffset};
 use clap::{Subcommand, ValueEnum};
+use serde_json::json;
 use std::path::{Path, PathBuf};
 
 /// List, show, verify and export records; dispose of lots
@@ -44,7 +45,7 @@ enum Command {
         /// A folder that does not exist yet
         folder: PathBuf,
         #[command(flatten)]
-        clock: Clock,
+        with: Circumstances,
     },
     /// Make the PDF of a record again, marked as a copy
     Reissue {
@@ -57,7 +58,7 @@ enum Command {
         #[arg(long, value_name = "PERSON")]
         by: Option<String>,
         #[command(flatten)]
-        clock: Clock,
+        with: Circumstances,
     },
     /// Record what becomes of a held or rejected lot
     Dispose {
@@ -73,15 +74,18 @@ enum Command {
         #[arg(long, value_name = "PERSON")]
         by: String,
         #[command(flatten)]
-        clock: Clock,
+        with: Circumstances,
     },
 }
 
 #[derive(Debug, clap::Args)]
-struct Clock {
+struct Circumstances {
     /// The time, RFC 3339 with offset [default: now]
     #[arg(long, env = "REELGATE_NOW", value_name = "TIME", value_parser = DateTime::parse_from_rfc3339)]
     now: Option<DateTime<FixedOffset>>,
+    /// File on another machine or share that gets each new checkpoint
+    #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
+    witness: Option<PathBuf>,
 }
 
 #[derive(Debug, Clone, Copy, ValueEnum)]
@@ -113,6 +117,27 @@ impl From<DecisionArg> for Decision {
 /// What a command comes to: its exit status and output, or why it could not be done.
 type Done = Result<(u8, Vec<u8>), String>;
 
+/// What an act came to, for people and for programs.
+struct Act {
+    text: String,
+    value: serde_json::Value,
+    /// What should be known though the act is done.
+    warning: Option<String>,
+}
+
+impl Act {
+    fn done(self, context: &mut Context) -> Done {
+        if let Some(warning) = &self.warning {
+            let _ = writeln!(context.err, "warning: {}", printable(warning));
+        }
+        let text = match context.format {
+            Format::Text => format!("{}\n", self.text),
+            Format::Json => format!("{:#}\n", self.value),
+        };
+        Ok((exit::OK, text.into_bytes()))
+    }
+}
+
 /// Runs the command.
 pub fn run(args: &Args, context: &mut Context) -> u8 {
     let site = Site::new(&context.site);
@@ -123,21 +148,23 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
         Command::Export {
             record,
             folder,
-            clock,
-        } => export_record(record, folder, clock, &site),
+            with,
+        } => export_record(record, folder, with, &site).and_then(|act| act.done(context)),
         Command::Reissue {
             record,
             reason,
             by,
-            clock,
-        } => reissue(record, reason, by.as_deref(), &place(&site, clock)),
+            with,
+        } => reissue(record, reason, by.as_deref(), &place(&site, with))
+            .and_then(|act| act.done(context)),
         Command::Dispose {
             record,
             decision,
             reason,
             by,
-            clock,
-        } => dispose(record, *decision, reason, by, &place(&site, clock)),
+            with,
+        } => dispose(record, *decision, reason, by, &place(&site, with))
+            .and_then(|act| act.done(context)),
     };
     match done {
         Ok((status, text)) => {
@@ -154,12 +181,13 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     }
 }
 
-fn place(site: &Site, clock: &Clock) -> Place {
+fn place(site: &Site, with: &Circumstances) -> Place {
     Place {
         records: site.records(),
         certificates: site.certificates(),
         key: None,
-        now: keep::now(clock.now),
+        witness: with.witness.clone(),
+        now: keep::now(with.now),
     }
 }
 
@@ -189,7 +217,12 @@ fn resolve(ledger: &Ledger, name: &str) -> Result<String, String> {
     }
 }
 
-fn export_record(name: &str, folder: &Path, clock: &Clock, site: &Site) -> Done {
+fn export_record(
+    name: &str,
+    folder: &Path,
+    with: &Circumstances,
+    site: &Site,
+) -> Result<Act, String> {
     let ledger = open(site)?;
     let record = resolve(&ledger, name)?;
     let known = certificates_of(&ledger, &record).map_err(|e| e.to_string())?;
@@ -199,35 +232,41 @@ fn export_record(name: &str, folder: &Path, clock: &Clock, site: &Site) -> Done 
     let what = Export {
         record: &record,
         certificate: pdf.as_deref(),
-        time: keep::now(clock.now),
+        time: keep::now(with.now),
         program: PROGRAM,
     };
     export(&ledger, &what, folder, &System).map_err(|e| e.to_string())?;
-    let without = if pdf.is_none() {
-        ", without its PDF, which is not there as it was issued"
-    } else {
-        ""
-    };
-    Ok((
-        exit::OK,
-        format!(
-            "Record {record} is in {}{without}\n",
-            printable(&folder.display().to_string())
-        )
-        .into_bytes(),
-    ))
+    let folder = printable(&folder.display().to_string());
+    let warning = pdf
+        .is_none()
+        .then(|| "without its PDF, which is not there as it was issued".to_owned());
+    Ok(Act {
+        text: format!("Record {record} is in {folder}"),
+        value: json!({"record": record, "package": folder, "certificate": pdf.is_some()}),
+        warning,
+    })
 }
 
-fn reissue(name: &str, reason: &str, by: Option<&str>, place: &Place) -> Done {
+fn reissue(name: &str, reason: &str, by: Option<&str>, place: &Place) -> Result<Act, String> {
     let ledger = Ledger::open(&place.records).map_err(|e| e.to_string())?;
     let record = resolve(&ledger, name)?;
     drop(ledger);
-    let path = keep::reissue(place, &record, by, reason)?;
-    let text = format!("Copy  {}\n", printable(&path.display().to_string()));
-    Ok((exit::OK, text.into_bytes()))
+    let (path, warning) = keep::reissue(place, &record, by, reason)?;
+    let path = printable(&path.display().to_string());
+    Ok(Act {
+        text: format!("Copy  {path}"),
+        value: json!({"record": record, "copy": path}),
+        warning,
+    })
 }
 
-fn dispose(name: &str, decision: DecisionArg, reason: &str, by: &str, place: &Place) -> Done {
+fn dispose(
+    name: &str,
+    decision: DecisionArg,
+    reason: &str,
+    by: &str,
+    place: &Place,
+) -> Result<Act, String> {
     let text = |e: LedgerError| e.to_string();
     // Looked for before anything is opened for writing, which would make a ledger.
     let record = resolve(&Ledger::open(&place.records).map_err(text)?, name)?;
@@ -236,9 +275,10 @@ fn dispose(name: &str, decision: DecisionArg, reason: &str, by: &str, place: &Pl
         .dispose(&record, decision.into(), reason, &place.by(Some(by)))
         .map_err(text)?;
     let again = if recorded.new { "" } else { " (as before)" };
-    let index = recorded.entry.index;
-    Ok((
-        exit::OK,
-        format!("Entry {index}{again}: {}\n", show::words(&recorded.entry)).into_bytes(),
-    ))
+    let entry = &recorded.entry;
+    Ok(Act {
+        text: format!("Entry {}{again}: {}", entry.index, show::words(entry)),
+        value: serde_json::to_value(entry).map_err(|e| e.to_string())?,
+        warning: place.tell_witness(&ledger).err(),
+    })
 }

@@ -18,6 +18,7 @@ pub struct Inputs<'a> {
     pub digests: &'a Digests,
     pub judgement: LotJudgement,
     pub parts: Vec<PartRecord>,
+    pub circuit: Option<CircuitSection>,
     /// Further warnings from reading the files.
     pub warnings: Vec<Note>,
     /// The time of issue, RFC 3339 with offset.
@@ -81,6 +82,7 @@ impl LotRecord {
             digests,
             judgement,
             parts,
+            circuit,
             warnings,
             issued,
             supersedes,
@@ -105,6 +107,7 @@ impl LotRecord {
             explanation: judgement.explanation,
             sampling: judgement.sampling,
             statistics: judgement.statistics,
+            circuit,
             findings: judgement.findings,
             parts,
         }

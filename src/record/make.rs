@@ -1,7 +1,7 @@
 //! From the bytes of the input files to the record: the whole of the pipeline, without a file or
 //! a clock. Judging and recomputing from an archive both come through here.
 
-use super::{Digests, Inputs, LotRecord, PartRecord, sha256};
+use super::{Digests, Inputs, LotRecord, PartRecord, circuit, sha256};
 use crate::diagnostic::{Faults, Note};
 use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
@@ -114,6 +114,7 @@ pub fn make(
         &occasion.history,
     );
     let digests = digests(sources);
+    let circuit = circuit::of_median_part(&limits, &parts, &curves);
     let record = LotRecord::assemble(Inputs {
         lot: &lot,
         limits: &limits,
@@ -121,6 +122,7 @@ pub fn make(
         digests: &digests,
         judgement,
         parts,
+        circuit,
         warnings: undecidable(&limits, &station),
         issued: occasion.issued.clone(),
         supersedes: occasion.supersedes.clone(),

@@ -5,6 +5,7 @@
 
 mod assemble;
 mod canonical;
+mod circuit;
 mod make;
 mod past;
 
@@ -16,6 +17,7 @@ pub use crate::lot::{
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
+pub use circuit::{CircuitSection, ParameterSection};
 pub use make::{Made, Occasion, PartSweep, Refusal, Sources, make};
 
 use crate::diagnostic::Note;
@@ -52,6 +54,9 @@ pub struct LotRecord {
     pub sampling: Sampling,
     /// By characteristic key, in the order of the limit file.
     pub statistics: IndexMap<String, Statistics>,
+    /// The equivalent circuit of the lot's median part, where there is one.
+    #[serde(default)]
+    pub circuit: Option<CircuitSection>,
     /// What lot rules found beside.
     #[serde(default, skip_serializing_if = "Findings::is_empty")]
     pub findings: Findings,

@@ -231,6 +231,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
             ],
             sampling: sampling(parts as u64),
             statistics: IndexMap::new(),
+            circuit: None,
             findings: Findings::default(),
             parts: records,
         },

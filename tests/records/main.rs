@@ -213,3 +213,116 @@ fn nothing_to_look_at_is_not_proven() {
     assert_eq!(status, Some(2));
     assert!(!other.file("records").exists());
 }
+
+#[test]
+fn recorded_but_not_written_is_said_and_mended_by_judging_again() {
+    let site = Site::new();
+    fs::create_dir(site.file("records")).expect("a folder");
+    let folder = site.file("records/certificates");
+    fs::write(&folder, "in the way").expect("a file");
+    let (status, _, err) = run(&site, &["judge", "lots/26K-0001"]);
+    assert_eq!(status, Some(4));
+    assert!(
+        err.contains("recorded, but") && err.contains("could not be written"),
+        "{err}"
+    );
+    fs::remove_file(&folder).expect("gone");
+    let found = site.json(&["records", "verify"]);
+    assert_eq!(
+        (&found["proven"], &found["entries"]),
+        (&true.into(), &2.into())
+    );
+    assert!(
+        found["remarks"][0]
+            .as_str()
+            .expect("words")
+            .contains("not there")
+    );
+    let record = site.judge("26K-0001");
+    assert!(
+        site.certificate(&record, "pdf").exists() && site.certificate(&record, "json").exists()
+    );
+    let found = site.json(&["records", "verify"]);
+    assert_eq!(found["remarks"], serde_json::json!([]));
+    assert_eq!(found["entries"], 2);
+}
+
+#[test]
+fn benches_that_judge_at_once_lose_nothing_and_see_each_other() {
+    let site = Site::new();
+    let lots: Vec<String> = (1..=8).map(|n| format!("26K-000{n}")).collect();
+    lots.iter().skip(1).for_each(|lot| site.lot(lot));
+    std::thread::scope(|scope| {
+        for lot in &lots {
+            // Each lot twice at the same time.
+            scope.spawn(|| site.judge(lot));
+            scope.spawn(|| site.judge(lot));
+        }
+    });
+    let found = site.json(&["records", "verify"]);
+    assert_eq!(found["proven"], true, "{found:#}");
+    assert_eq!(
+        (&found["records"], &found["entries"]),
+        (&8.into(), &16.into())
+    );
+    // All lots have the same sweeps: all but the one that came first say so.
+    let list = site.json(&["records", "list"]);
+    let duplicates = list.as_array().expect("a list").iter().filter(|line| {
+        let record = site.json(&["records", "show", line["record"].as_str().expect("a name")]);
+        record["reasons"].to_string().contains("duplicate_sweep")
+    });
+    assert_eq!(duplicates.count(), 7);
+}
+
+#[test]
+fn a_witness_elsewhere_gets_each_checkpoint_and_keeps_an_old_copy_from_growing() {
+    let site = Site::new();
+    let witness = site.file("share.txt");
+    let path = witness.to_str().expect("a path");
+    let judge = ["judge", "lots/26K-0001", "--witness", path];
+    assert_eq!(run(&site, &judge).0, Some(3));
+    let ledger = site.file("records/ledger.sqlite");
+    let old = fs::read(&ledger).expect("a database");
+    site.ok(&[
+        "records",
+        "dispose",
+        "26K-0001",
+        "--decision",
+        "sort",
+        "--reason",
+        "x",
+        "--by",
+        "QE-03",
+        "--witness",
+        path,
+    ]);
+    let found = site.json(&["records", "verify", "--witness", path]);
+    assert!(
+        found["reach"]
+            .as_str()
+            .expect("words")
+            .contains("covers 3 of 3"),
+        "{found:#}"
+    );
+
+    fs::write(&ledger, old).expect("an older copy");
+    let wrong = site.wrong(&["--witness", path]);
+    assert!(
+        wrong.iter().any(|(code, _)| code == "ledger_truncated"),
+        "{wrong:?}"
+    );
+    site.copy_sweep("26K-0001", "004");
+    let (status, _, err) = run(&site, &judge);
+    assert_eq!(status, Some(2));
+    assert!(err.contains("an old copy was put back"), "{err}");
+    // A witness that cannot be reached keeps nobody from working.
+    let (status, _, err) = run(
+        &site,
+        &["judge", "lots/26K-0001", "--witness", "no/such/share.txt"],
+    );
+    assert_eq!(status, Some(3));
+    assert!(
+        err.contains("warning: the witness file was not written"),
+        "{err}"
+    );
+}

@@ -11,6 +11,7 @@ use crate::certificate::plot::limit::{Side, limit};
 use crate::certificate::plot::trace::{Coverage, clip, columns, simplify};
 use crate::certificate::plot::view::extent;
 use crate::certificate::text::Style;
+use crate::quantity::{engineering, with_uncertainty};
 use crate::record::{BoundSection, LotRecord, PartVerdict};
 
 /// Most curves that carry their part's number.
@@ -51,10 +52,67 @@ pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves
     }
     key(flow);
     // Two plots share a page of either paper.
-    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 14.0 - 140.0) / 2.0;
+    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 14.0 - 176.0) / 2.0;
     for quantity in [Quantity::Magnitude, Quantity::Resistance] {
         plot(flow, record, curves, quantity, height);
     }
+    circuit(flow, record);
+}
+
+/// The curve of the equivalent circuit, above the others and thin.
+fn fitted(page: &mut Canvas, frame: &Frame, record: &LotRecord, quantity: Quantity) {
+    let Some(circuit) = &record.circuit else {
+        return;
+    };
+    let value = |p: &[f64; 3]| match quantity {
+        Quantity::Magnitude => p[1],
+        Quantity::Resistance => p[2],
+    };
+    let placed: Vec<Point> = circuit
+        .curve
+        .iter()
+        .filter(|p| p[0] > 0.0 && value(p) > 0.0)
+        .map(|p| frame.place((p[0].log10(), value(p).log10())))
+        .collect();
+    page.lines(clip(&placed, frame.area), Pen::dashed(0.7, TEXT));
+}
+
+/// What the dashed curve is, and the elements of the circuit.
+fn circuit(flow: &mut Flow, record: &LotRecord) {
+    let Some(circuit) = &record.circuit else {
+        return;
+    };
+    let share = |v: f64| engineering(v, "1", 2);
+    let mut text = format!(
+        "Equivalent circuit of part {}, the middle of the lot: {}",
+        circuit.part, circuit.model
+    );
+    if circuit.described {
+        text.push_str(&format!(
+            ", dashed; it leaves {} of |Z| (root mean square), where the sweep's own noise is {}. ",
+            share(circuit.residual),
+            share(circuit.noise)
+        ));
+        let each: Vec<String> = circuit
+            .parameters
+            .iter()
+            .map(|(name, p)| {
+                let value = match p.standard_uncertainty {
+                    Some(u) => with_uncertainty(p.value, u, &p.unit),
+                    None => "not visible".to_owned(),
+                };
+                format!("{name} {value}")
+            })
+            .collect();
+        text.push_str(&format!("{}.", each.join("; ")));
+    } else {
+        let why: Vec<&str> = circuit.notes.iter().map(|n| n.text.as_str()).collect();
+        text.push_str(&format!(
+            " does not describe it and is not drawn: {}.",
+            why.join("; ")
+        ));
+    }
+    flow.paragraph_of(&text, SMALL, SMALL_LEADING);
 }
 
 /// The curve's points (hertz, ohm) as logarithms; points without a logarithm are gaps.
@@ -117,6 +175,7 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
     let page = flow.page();
     log_grid(page, area, (&frame.x, "Hz"), (&frame.y, "Ω"));
     let unseen = traces(page, &frame, curves, &logs);
+    fitted(page, &frame, record, quantity);
     let mut drawn = Vec::new();
     for bound in bounds {
         drawn.extend(level(page, &frame, bound, where_found(record, bound)));

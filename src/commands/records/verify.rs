@@ -21,7 +21,7 @@ pub struct Args {
     #[arg(value_name = "PDF")]
     documents: Vec<PathBuf>,
     /// File of checkpoints that was kept elsewhere
-    #[arg(long, value_name = "FILE")]
+    #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Vec<PathBuf>,
 }
 
@@ -139,6 +139,9 @@ impl Document {
     fn read(path: &Path) -> Result<Document, String> {
         let name = path.display().to_string();
         let mut bytes = Vec::new();
+        if std::fs::metadata(path).is_ok_and(|kind| !kind.is_file()) {
+            return Err(format!("{name}: is not a plain file"));
+        }
         std::fs::File::open(path)
             .and_then(|file| file.take(document::MOST_BYTES + 1).read_to_end(&mut bytes))
             .map_err(|e| format!("{name}: cannot be read: {e}"))?;

@@ -80,6 +80,11 @@ pub(super) fn schema_version(
 ) -> Result<(i32, i32), LedgerError> {
     let get = |name| connection.pragma_query_value(None, name, |row| row.get::<_, i32>(0));
     let at = |e| database("opening the ledger", path, &e);
+    // Both from one moment: another process may be making the tables.
+    let _moment = match connection.is_autocommit() {
+        true => Some(connection.unchecked_transaction().map_err(at)?),
+        false => None,
+    };
     Ok((
         get("application_id").map_err(at)?,
         get("user_version").map_err(at)?,

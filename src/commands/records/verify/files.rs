@@ -189,6 +189,11 @@ fn json(path: &Path, stem: &str, entries: &[Entry], outcome: &mut Outcome) {
         return outcome.wrong("record_unknown", &place, None, text);
     };
     let recorded = entry.objects_of("record").next().map(|o| o.sha256.as_str());
+    let kind = fs::symlink_metadata(path);
+    if kind.is_ok_and(|kind| !kind.is_file()) {
+        let text = "is not a plain file".to_owned();
+        return outcome.wrong("record_unreadable", &place, Some(entry.index), text);
+    }
     match fs::read(path) {
         Err(e) => outcome.wrong(
             "record_unreadable",
