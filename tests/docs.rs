@@ -393,8 +393,8 @@ fn warnings_are_documented() {
 fn reasons_are_documented() {
     let page = "docs/operator.md";
     let documented = codes_of_table(page, "## Reasons", "## What is kept");
-    let rules =
-        ["capability", "joint", "mixed", "outliers"].map(|rule| format!("src/lot/rules/{rule}.rs"));
+    let rules = ["capability", "joint", "mixed", "outliers", "trend"]
+        .map(|rule| format!("src/lot/rules/{rule}.rs"));
     let mut given = codes_of_source(&rules.each_ref().map(String::as_str));
     given.extend(codes_of_source(&[
         "src/lot/conditions.rs",

@@ -446,18 +446,23 @@ fn with_capability(values: &[f64], index: &str, noise: f64, lower: Option<f64>) 
 fn an_index_is_stated_where_it_means_something() {
     let values = |n| -> Vec<f64> { (0..n).map(value).collect() };
     let both = Some(0.9e-6);
-    // Handbook 6.1.6: the normal approximation holds from about 25 values.
-    let few = with_capability(&values(24), "ppk", 0.0, both);
+    // Below 8 values the shape that an index assumes cannot even be tested.
+    let few = with_capability(&values(7), "ppk", 0.0, both);
     assert_eq!(
         outcome(&few),
         (LotVerdict::Hold, vec!["capability_not_available"])
     );
     assert!(
-        few.reasons[0].text.contains("at least 25 values"),
+        few.reasons[0].text.contains("at least 8 values"),
         "{}",
         few.reasons[0].text
     );
     assert_eq!(few.statistics[KEY].ppk, None);
+    assert!(
+        with_capability(&values(8), "ppk", 0.0, both).statistics[KEY]
+            .ppk
+            .is_some()
+    );
     let enough = with_capability(&values(25), "ppk", 0.0, both);
     assert_eq!(enough.verdict, LotVerdict::Accept);
     assert!(enough.statistics[KEY].at_least.is_none());

@@ -2,7 +2,7 @@
 
 use crate::diagnostic::{Faults, Note};
 use crate::ledger::{Act, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest};
-use crate::lot::{self, Lot};
+use crate::lot::{self, History, Lot};
 use crate::record::{self, Made, Occasion, Refusal, Sources, sha256};
 use crate::statistics::sampling::Severity;
 use crate::sweep::RawFile;
@@ -88,6 +88,7 @@ pub fn first_occasion(issued: &str) -> Occasion {
     Occasion {
         issued: issued.to_owned(),
         severity: Severity::Normal,
+        history: History::default(),
         supersedes: None,
         further: Vec::new(),
     }

@@ -6,7 +6,8 @@ use super::text::{WIDTH, clipped, wrapped};
 use crate::diagnostic::printable;
 use crate::quantity::{NO_VALUE, engineering, scale, scaled_unit, shortest, with_uncertainty};
 use crate::record::{
-    BoundSection, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord, Statistics,
+    BoundSection, ClassState, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord,
+    Statistics,
 };
 use anstyle::{AnsiColor, Style};
 use comfy_table::{CellAlignment, ColumnConstraint, ContentArrangement, Table, Width, presets};
@@ -114,6 +115,12 @@ fn sample(out: &mut String, record: &LotRecord) {
         "  ",
         "  ",
     ));
+    let unusual = |state: &&ClassState| state.severity != "normal" || state.discontinued;
+    let states = s.switching.iter().flat_map(|switching| &switching.classes);
+    for (name, state) in states.filter(|(_, state)| unusual(state)) {
+        let line = format!("class {name}, {} inspection: {}", state.severity, state.why);
+        out.push_str(&wrapped(&line, "  ", "    "));
+    }
     for (name, class) in &s.classes {
         let undecided = if class.undecided > 0 {
             format!(", {} undecided", class.undecided)

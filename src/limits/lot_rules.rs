@@ -15,6 +15,7 @@ pub struct Rules {
     pub outliers: Vec<OutlierRule>,
     pub mixed: Vec<MixedRule>,
     pub trend: Vec<TrendRule>,
+    pub reduced_inspection: bool,
 }
 
 /// The lot rules; none where the file says nothing.
@@ -25,13 +26,17 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>, bounded: &Bounded) -> 
         return Some(Rules::default());
     };
     let before = reader.count();
-    let keys = ["capability", "outliers", "mixed", "trend"];
+    let keys = ["capability", "outliers", "mixed", "trend", "switching"];
     let fields = reader.fields(node, "`lot_rules`", &keys)?;
     let rules = Rules {
         capability: each(reader, fields.get("capability"), bounded, capability),
         outliers: each(reader, fields.get("outliers"), bounded, outliers),
         mixed: each(reader, fields.get("mixed"), bounded, mixed),
         trend: each(reader, fields.get("trend"), bounded, trend),
+        reduced_inspection: fields
+            .get("switching")
+            .and_then(|node| reduced(reader, node))
+            .unwrap_or(false),
     };
     (reader.count() == before).then_some(rules)
 }
@@ -168,6 +173,16 @@ fn trend(reader: &mut Reader<'_>, node: &Node, bounded: &Bounded) -> Option<Tren
         of: of?,
         action: action?,
     })
+}
+
+/// Whether reduced inspection is wanted.
+fn reduced(reader: &mut Reader<'_>, node: &Node) -> Option<bool> {
+    let what = "`switching`";
+    let fields = reader.fields(node, what, &["reduced"])?;
+    let node = reader.required(&fields, "reduced", what, "allowed")?;
+    let choices = ["allowed", "not_allowed"];
+    let chosen = reader.one_of(node, "whether reduced inspection is wanted", &choices)?;
+    Some(chosen == 0)
 }
 
 /// A significance level.

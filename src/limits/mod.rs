@@ -295,5 +295,7 @@ pub struct Limits {
     pub outlier_rules: Vec<OutlierRule>,
     pub mixed_rules: Vec<MixedRule>,
     pub trend_rules: Vec<TrendRule>,
+    /// Reduced inspection is wanted where the switching rules allow it (ISO 2859-1 9.3.3.1 c).
+    pub reduced_inspection: bool,
     pub retest: Retest,
 }

@@ -88,6 +88,7 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
         outlier_rules: rules.outliers,
         mixed_rules: rules.mixed,
         trend_rules: rules.trend,
+        reduced_inspection: rules.reduced_inspection,
         retest: retest?,
     })
 }

@@ -46,6 +46,7 @@ pub(super) struct Decided<'a> {
 pub(super) fn explain(decided: &Decided) -> Vec<Step> {
     let mut steps = conditions(decided.conditions);
     steps.push(decision_rule(decided.limits));
+    steps.extend(switching(decided.plan));
     steps.extend(code_letter(decided.plan));
     for (name, class) in &decided.plan.classes {
         steps.push(plan_of(decided.plan, name, class));
@@ -98,6 +99,26 @@ fn decision_rule(limits: &Limits) -> Step {
     step("each part", rule, source, format!("k = {k}"), result)
 }
 
+fn switching(plan: &Plan) -> Vec<Step> {
+    let classes = plan.switching.iter().flat_map(|s| &s.classes);
+    classes
+        .map(|(name, state)| {
+            let result = if state.discontinued {
+                "discontinued: holds the lot".to_owned()
+            } else {
+                format!("{} inspection", state.severity)
+            };
+            step(
+                &format!("class {name}"),
+                "the lots before give the severity of inspection",
+                "ISO 2859-1:1999, 9.3 and 9.4",
+                state.why.clone(),
+                result,
+            )
+        })
+        .collect()
+}
+
 fn code_letter(plan: &Plan) -> Option<Step> {
     let letter = plan.code_letter.as_ref()?;
     let level = plan.level.as_deref().unwrap_or("II");
@@ -130,10 +151,9 @@ fn plan_of(plan: &Plan, name: &str, class: &PlanClass) -> Step {
             step(
                 &format!("class {name}"),
                 "code letter, AQL and severity give the plan",
-                plan.source
-                    .split(", code letter")
-                    .next()
-                    .unwrap_or(&plan.source),
+                class
+                    .severity
+                    .map_or(&plan.source, |severity| severity.table()),
                 format!("letter {letter}{arrow}, AQL {aql} %"),
                 format!("{result}{whole}"),
             )

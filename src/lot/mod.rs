@@ -6,10 +6,12 @@ mod capability;
 mod conditions;
 mod curve;
 mod explain;
+mod history;
 mod outliers;
 mod rules;
 mod sampling;
 mod statistics;
+mod switching;
 mod variables;
 mod verdict;
 
@@ -17,9 +19,11 @@ pub use capability::Indices;
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
-pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection};
-pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan};
+pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
+pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection, TrendSection};
+pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
+pub use switching::{ClassState, Switching, severity_state};
 pub use variables::VariablesSection;
 pub use verdict::{LotJudgement, LotVerdict, judge};
 

@@ -1,7 +1,7 @@
 //! The sampling plan in force and the counts against it.
 
 use super::variables::{self as by_variables, VariablesSection};
-use super::{LotVerdict, OperatingCharacteristic};
+use super::{LotVerdict, OperatingCharacteristic, Switching};
 use crate::judgement::{PartRecord, PartVerdict};
 use crate::limits::{Acceptance, Limits, NotNormal};
 use crate::statistics::Undefined;
@@ -42,6 +42,9 @@ pub struct Sampling {
     pub nonconforming_beyond_sample: u64,
     /// By class; for schemes without classes the class `all`.
     pub classes: IndexMap<String, ClassSection>,
+    /// Where the switching rules stand, and why; `null` for schemes without severities.
+    #[serde(default)]
+    pub switching: Option<Switching>,
 }
 
 /// One class of nonconformity against its plan.
@@ -52,6 +55,9 @@ pub struct ClassSection {
     pub aql: Option<f64>,
     /// After arrows.
     pub code_letter: Option<String>,
+    /// `null` where the scheme has none, or in records that know one for all classes.
+    #[serde(default)]
+    pub severity: Option<String>,
     pub n: u64,
     pub ac: u64,
     pub re: u64,
@@ -82,10 +88,13 @@ pub struct Plan {
     pub scheme: &'static str,
     pub level: Option<String>,
     pub code_letter: Option<String>,
+    /// The most severe of the classes.
     pub severity: Option<Severity>,
     pub source: String,
     pub lot_size: u64,
     pub classes: IndexMap<String, PlanClass>,
+    /// What the severities come from.
+    pub switching: Option<Switching>,
 }
 
 /// The plan of one class: n parts, at most Ac nonconforming.
@@ -94,6 +103,7 @@ pub struct Plan {
 pub struct PlanClass {
     pub aql: Option<f64>,
     pub code_letter: Option<String>,
+    pub severity: Option<Severity>,
     /// By attributes.
     pub n: u64,
     pub ac: u64,
@@ -110,6 +120,7 @@ impl PlanClass {
         PlanClass {
             aql,
             code_letter,
+            severity: None,
             n,
             ac,
             re: ac.saturating_add(1),
@@ -157,6 +168,35 @@ impl Plan {
 /// # Errors
 /// A sentence for people where the lot size or the scheme allows no plan.
 pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Result<Plan, String> {
+    of_severities(acceptance, lot_size, &|_| severity)
+}
+
+/// The plan with the severity of each class by the switching rules.
+///
+/// # Errors
+/// As [`plan`].
+pub fn plan_in_state(
+    acceptance: &Acceptance,
+    lot_size: u64,
+    switching: Option<Switching>,
+) -> Result<Plan, String> {
+    let severity = |class: &str| {
+        switching
+            .as_ref()
+            .map_or(Severity::Normal, |s| s.severity(class))
+    };
+    let plan = of_severities(acceptance, lot_size, &severity)?;
+    Ok(Plan { switching, ..plan })
+}
+
+/// The severity of each class.
+type Severities<'a> = &'a dyn Fn(&str) -> Severity;
+
+fn of_severities(
+    acceptance: &Acceptance,
+    lot_size: u64,
+    severity: Severities,
+) -> Result<Plan, String> {
     match acceptance {
         Acceptance::Attributes { level, aql } => attributes(level, aql, lot_size, severity),
         Acceptance::Fixed { sample, accept } => Ok(Plan {
@@ -167,6 +207,7 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
             lot_size,
             source: "fixed sample and acceptance number of the limit file".to_owned(),
             classes: single((*sample).min(lot_size), *accept),
+            switching: None,
         }),
         Acceptance::ZeroAcceptance {
             quality_limit,
@@ -188,6 +229,7 @@ pub fn plan(acceptance: &Acceptance, lot_size: u64, severity: Severity) -> Resul
                 lot_size,
                 source: "hypergeometric law, exact for the lot size".to_owned(),
                 classes: single(n, 0),
+                switching: None,
             })
         }
         Acceptance::Variables {
@@ -207,7 +249,7 @@ fn attributes(
     level: &str,
     aql: &[(String, f64)],
     lot_size: u64,
-    severity: Severity,
+    severity: Severities,
 ) -> Result<Plan, String> {
     let parsed: InspectionLevel = level
         .parse()
@@ -218,24 +260,28 @@ fn attributes(
     let letter = code_letter(lot_size, parsed).map_err(|why| no_plan(lot_size, why))?;
     let mut classes = IndexMap::new();
     for (class, aql) in aql {
+        let severity = severity(class);
         let plan =
             plan_for(lot_size, parsed, *aql, severity).map_err(|why| no_plan(lot_size, why))?;
-        classes.insert(
-            class.clone(),
-            PlanClass::new(Some(*aql), Some(plan.letter.to_string()), plan.n, plan.ac),
-        );
+        let letter = Some(plan.letter.to_string());
+        let of = PlanClass {
+            severity: Some(severity),
+            ..PlanClass::new(Some(*aql), letter, plan.n, plan.ac)
+        };
+        classes.insert(class.clone(), of);
     }
     Ok(Plan {
         scheme: "attributes",
         level: Some(level.to_owned()),
         code_letter: Some(letter.to_string()),
-        severity: Some(severity),
+        severity: most_severe(&classes),
         lot_size,
         source: format!(
             "{}, code letter by Table 1, single sampling",
-            severity.table()
+            tables(&classes)
         ),
         classes,
+        switching: None,
     })
 }
 
@@ -245,15 +291,15 @@ fn with_variables(
     aql: &[(String, f64)],
     not_normal: NotNormal,
     lot_size: u64,
-    severity: Severity,
+    severity: Severities,
 ) -> Result<Plan, String> {
     let mut plan = attributes(level, aql, lot_size, severity)?;
     let level: InspectionLevel = level
         .parse()
         .map_err(|_| format!("`{level}` is not an inspection level"))?;
-    for class in plan.classes.values_mut() {
+    for (name, class) in &mut plan.classes {
         let Some(aql) = class.aql else { continue };
-        class.variables = variables::plan_for(lot_size, level, aql, severity).ok();
+        class.variables = variables::plan_for(lot_size, level, aql, severity(name)).ok();
         class.not_normal = not_normal;
     }
     plan.scheme = "variables";
@@ -269,21 +315,47 @@ fn no_plan(lot_size: u64, why: Undefined) -> String {
 }
 
 /// The tables of ISO 2859-1 begin with lots of two: a single part is inspected itself.
-fn single_part(level: &str, aql: &[(String, f64)], severity: Severity) -> Plan {
+fn single_part(level: &str, aql: &[(String, f64)], severity: Severities) -> Plan {
     let lot_size = 1;
-    let class = |aql: f64| PlanClass::new(Some(aql), None, 1, 0);
+    let class = |name: &str, aql: f64| PlanClass {
+        severity: Some(severity(name)),
+        ..PlanClass::new(Some(aql), None, 1, 0)
+    };
+    let classes = aql
+        .iter()
+        .map(|(name, aql)| (name.clone(), class(name, *aql)))
+        .collect();
     Plan {
         scheme: "attributes",
         level: Some(level.to_owned()),
         code_letter: None,
-        severity: Some(severity),
+        severity: most_severe(&classes),
         lot_size,
         source: "100 % inspection of a lot of one".to_owned(),
-        classes: aql
-            .iter()
-            .map(|(name, aql)| (name.clone(), class(*aql)))
-            .collect(),
+        classes,
+        switching: None,
     }
+}
+
+fn most_severe(classes: &IndexMap<String, PlanClass>) -> Option<Severity> {
+    let any = |severity| classes.values().any(|c| c.severity == Some(severity));
+    [Severity::Tightened, Severity::Normal, Severity::Reduced]
+        .into_iter()
+        .find(|severity| any(*severity))
+}
+
+/// The tables of the severities in force, each once.
+fn tables(classes: &IndexMap<String, PlanClass>) -> String {
+    let mut tables: Vec<&str> = Vec::new();
+    for table in classes
+        .values()
+        .filter_map(|c| c.severity.map(Severity::table))
+    {
+        if !tables.contains(&table) {
+            tables.push(table);
+        }
+    }
+    tables.join(" and ")
 }
 
 /// Counts the parts, in sample order, against the plan.
@@ -330,6 +402,7 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
             ClassSection {
                 aql: class.aql,
                 code_letter: class.code_letter.clone(),
+                severity: class.severity.map(|s| s.to_string()),
                 n,
                 ac: class.ac,
                 re: class.re,
@@ -367,6 +440,7 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
         unmeasured,
         nonconforming_beyond_sample: beyond,
         classes,
+        switching: plan.switching.clone(),
     }
 }
 

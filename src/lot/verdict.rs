@@ -8,7 +8,7 @@ use super::conditions::{self, ConditionSection, some_parts};
 use super::explain::{Decided, Step, explain};
 use super::rules::{self, Findings, Judged};
 use super::{ClassSection, LotVerdict::*, Plan, Sampling, Statistics, sampling};
-use super::{Lot, statistics};
+use super::{History, Lot, statistics};
 use crate::diagnostic::Note;
 use crate::judgement::{AGEING_UNKNOWN, PartRecord, PartVerdict};
 use crate::limits::Limits;
@@ -57,7 +57,8 @@ pub struct LotJudgement {
 /// Judges a lot from its parts, in sample order.
 ///
 /// `further` are reasons found on the way here that hold the lot (a retest that the limit file
-/// does not allow).
+/// does not allow). `history` is what the lot rules compare with; the plan has the switching rules
+/// behind it.
 pub fn judge(
     lot: &Lot,
     limits: &Limits,
@@ -65,6 +66,7 @@ pub fn judge(
     plan: &Plan,
     parts: &[PartRecord],
     further: Vec<Note>,
+    history: &History,
 ) -> LotJudgement {
     let checked = conditions::check(lot, limits, station, parts);
     let (sections, unmet): (Vec<_>, Vec<_>) =
@@ -79,7 +81,10 @@ pub fn judge(
     holds.extend(beyond(&sampling));
     holds.extend(duplicates(parts));
     holds.extend(further);
+    holds.extend(discontinued(&sampling));
     let ruled = rules::evaluate(&Judged {
+        lot: &lot.lot,
+        history,
         limits,
         parts,
         statistics: &statistics,
@@ -295,6 +300,24 @@ fn beyond(sampling: &Sampling) -> Vec<Note> {
             )
         })
         .into_iter()
+        .collect()
+}
+
+/// Until the supplier has acted, no lot is accepted.
+fn discontinued(sampling: &Sampling) -> Vec<Note> {
+    let classes = sampling.switching.iter().flat_map(|s| &s.classes);
+    classes
+        .filter(|(_, state)| state.discontinued)
+        .map(|(class, state)| {
+            Note::new(
+                "inspection_discontinued",
+                format!(
+                    "{}: acceptance inspection is discontinued until the supplier has acted ({}): a quality engineer decides",
+                    class_words(class),
+                    state.why
+                ),
+            )
+        })
         .collect()
 }
 

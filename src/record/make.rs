@@ -5,7 +5,7 @@ use super::{Digests, Inputs, LotRecord, PartRecord, circuit, sha256};
 use crate::diagnostic::{Faults, Note};
 use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
-use crate::lot::{self, Lot};
+use crate::lot::{self, History, Lot};
 use crate::readings::{Budget, Characteristic};
 use crate::station::{self, Station};
 use crate::statistics::sampling::Severity;
@@ -45,12 +45,15 @@ pub struct PartSweep {
 }
 
 /// The occasion on which a lot is judged: what its record says besides what follows from its files.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq)]
 pub struct Occasion {
     /// The time of issue, RFC 3339 with offset.
     pub issued: String,
-    /// Severity of inspection in force.
+    /// Severity with which inspection began.
     pub severity: Severity,
+    /// The lots before, of the same part and supplier: they give the severity now in force, and
+    /// what lot rules compare with.
+    pub history: History,
     /// The record of the same lot that was made before, from other inputs.
     pub supersedes: Option<String>,
     /// Further reasons to hold the lot, which other records give.
@@ -79,7 +82,13 @@ pub fn make(
     read: &(dyn Fn() + Sync),
 ) -> Result<Made, Refusal> {
     let (lot, limits, station) = parse(sources)?;
-    let plan = lot::plan(&limits.acceptance, lot.quantity, occasion.severity)
+    let switching = lot::severity_state(
+        &occasion.history,
+        &limits.acceptance,
+        occasion.severity,
+        limits.reduced_inspection,
+    );
+    let plan = lot::plan_in_state(&limits.acceptance, lot.quantity, switching)
         .map_err(|text| Refusal::Impossible(Note::new("no_sampling_plan", text)))?;
     let standards = standards(sources, &station)?;
     let mut attempts = attempts(sources, &station, standards.as_ref(), read)?;
@@ -95,7 +104,15 @@ pub fn make(
         .collect();
     let (parts, curves, mut holding) = parts(&attempts, judged, &limits);
     holding.extend(occasion.further.iter().cloned());
-    let judgement = lot::judge(&lot, &limits, &station, &plan, &parts, holding);
+    let judgement = lot::judge(
+        &lot,
+        &limits,
+        &station,
+        &plan,
+        &parts,
+        holding,
+        &occasion.history,
+    );
     let digests = digests(sources);
     let circuit = circuit::of_median_part(&limits, &parts, &curves);
     let record = LotRecord::assemble(Inputs {

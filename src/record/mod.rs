@@ -7,11 +7,13 @@ mod assemble;
 mod canonical;
 mod circuit;
 mod make;
+mod past;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ClassSection, ConditionSection, Findings, GroupSection, JointOutlier, JointSection, LotVerdict,
-    MixedSection, OperatingCharacteristic, Sampling, Statistics, Step, VariablesSection,
+    ClassSection, ClassState, ConditionSection, Findings, GroupSection, JointOutlier, JointSection,
+    LotVerdict, MixedSection, OperatingCharacteristic, Sampling, Statistics, Step, Switching,
+    TrendSection, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};

@@ -93,10 +93,10 @@ fn ratio(distance: f64, spread: f64) -> Result<f64, Undefined> {
     }
 }
 
-/// The smallest sample from which an index is worth stating: the normal approximation of its bound
-/// holds from about 25 values (NIST/SEMATECH e-Handbook 6.1.6, from memory), and below, a Cpk of
-/// 1.33 does not even show 1.00.
-pub const CAPABILITY_SIZE_MIN: u64 = 25;
+/// The smallest sample from which an index is worth stating: below, the test for normality has
+/// nothing to say of the shape that an index assumes. Up to about 25 values the confidence bound
+/// beside it says how little it means (a Cpk of 1.33 does not even show 1.00).
+pub const CAPABILITY_SIZE_MIN: u64 = 8;
 
 /// The largest share of the variance that may be the measurement's for an index to say something of
 /// the parts: one half. Common practice, no source.

@@ -118,6 +118,7 @@ fn main() {
     let occasion = Occasion {
         issued: "2026-10-05T10:00:00+02:00".to_owned(),
         severity: Severity::Normal,
+        history: reelgate::lot::History::default(),
         supersedes: None,
         further: vec![],
     };
@@ -170,7 +171,17 @@ fn main() {
         ),
         (
             "plan, conditions, statistics",
-            time(|| reelgate::lot::judge(&lot, &limits, &station, &plan, &records, vec![])),
+            time(|| {
+                reelgate::lot::judge(
+                    &lot,
+                    &limits,
+                    &station,
+                    &plan,
+                    &records,
+                    vec![],
+                    &reelgate::lot::History::default(),
+                )
+            }),
         ),
         ("the whole record, all cores", time(whole)),
         ("JSON", time(|| reelgate::record::to_bytes(&made.record))),

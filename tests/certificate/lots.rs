@@ -678,6 +678,7 @@ fn sampling(parts: u64) -> Sampling {
     let class = |aql: f64, ac: u64| ClassSection {
         aql: Some(aql),
         code_letter: Some("L".into()),
+        severity: Some("normal".into()),
         n: parts,
         ac,
         re: ac + 1,
@@ -707,6 +708,7 @@ fn sampling(parts: u64) -> Sampling {
             ("B".to_owned(), class(1.5, 5)),
         ]
         .into(),
+        switching: None,
     }
 }
 

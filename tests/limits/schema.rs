@@ -77,7 +77,7 @@ fn the_sample_files_are_valid_for_reader_and_schema() {
 #[test]
 fn the_full_shapes_are_valid() {
     accepts(&validator(reelgate::limits::SCHEMA), "limits", LIMITS);
-    let rules = "lot_rules:\n  mixed: {of: capacitance, alpha: 0.05}\n  trend: [{of: [capacitance, srf], action: hold}, {of: esr_minimum, action: warn}]\n";
+    let rules = "lot_rules:\n  mixed: {of: capacitance, alpha: 0.05}\n  trend: [{of: [capacitance, srf], action: hold}, {of: esr_minimum, action: warn}]\n  switching: {reduced: allowed}\n";
     let outliers = "outliers:\n    - {of: [capacitance, srf], method: joint, alpha: 1 %, allowed: 0}\n    - {of: capacitance, method: part_average, allowed: 1}\n    - ";
     let all = with(LIMITS, "lot_rules:\n", rules);
     let all = with(&all, "outliers:   ", outliers);

@@ -7,7 +7,7 @@ use reelgate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord}
 use reelgate::limits::{
     Acceptance, Bound, Conditions, DecisionRule, DecisionRuleKind, Limits, Retest,
 };
-use reelgate::lot::{Lot, LotJudgement, LotVerdict, judge, plan};
+use reelgate::lot::{History, Lot, LotJudgement, LotVerdict, judge, plan};
 use reelgate::readings::{Characteristic, Equivalent, Place};
 use reelgate::station::{Compensation, Instrument, Jig, Method, Station, Uncertainty};
 use reelgate::statistics::sampling::Severity;
@@ -67,6 +67,7 @@ pub fn limits(acceptance: Acceptance) -> Limits {
         outlier_rules: vec![],
         mixed_rules: vec![],
         trend_rules: vec![],
+        reduced_inspection: false,
         retest: Retest::default(),
     }
 }
@@ -162,7 +163,15 @@ pub fn parts(n: usize, others: &[(usize, PartVerdict)]) -> Vec<PartRecord> {
 
 pub fn judged(lot: &Lot, limits: &Limits, station: &Station, parts: &[PartRecord]) -> LotJudgement {
     let plan = plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
-    judge(lot, limits, station, &plan, parts, vec![])
+    judge(
+        lot,
+        limits,
+        station,
+        &plan,
+        parts,
+        vec![],
+        &History::default(),
+    )
 }
 
 pub fn outcome(judgement: &LotJudgement) -> (LotVerdict, Vec<&str>) {

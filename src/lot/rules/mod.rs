@@ -4,13 +4,15 @@ mod capability;
 mod joint;
 mod mixed;
 mod outliers;
+mod trend;
 mod warnings;
 
 pub use joint::{JointOutlier, JointSection};
 pub use mixed::{GroupSection, MixedSection};
+pub use trend::TrendSection;
 
-use super::Statistics;
 use super::explain::Step;
+use super::{History, Statistics};
 use crate::diagnostic::Note;
 use crate::judgement::PartRecord;
 use crate::limits::Limits;
@@ -29,12 +31,15 @@ pub struct Findings {
     /// Two populations, one a characteristic that a rule names.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub mixed: Vec<MixedSection>,
+    /// Against the accepted lots before, one a characteristic that a rule names.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub trend: Vec<TrendSection>,
 }
 
 impl Findings {
     /// Whether no rule looked for anything.
     pub fn is_empty(&self) -> bool {
-        self.joint.is_empty() && self.mixed.is_empty()
+        self.joint.is_empty() && self.mixed.is_empty() && self.trend.is_empty()
     }
 }
 
@@ -49,9 +54,12 @@ pub(super) struct Ruled {
 
 /// What the rules look at.
 pub(super) struct Judged<'a> {
+    /// The lot's number.
+    pub(super) lot: &'a str,
     pub(super) limits: &'a Limits,
     pub(super) parts: &'a [PartRecord],
     pub(super) statistics: &'a IndexMap<String, Statistics>,
+    pub(super) history: &'a History,
 }
 
 /// Every rule, in the order of the documentation.
@@ -60,5 +68,6 @@ pub(super) fn evaluate(judged: &Judged) -> Ruled {
     capability::evaluate(judged, &mut ruled);
     outliers::evaluate(judged, &mut ruled);
     mixed::evaluate(judged, &mut ruled);
+    trend::evaluate(judged, &mut ruled);
     ruled
 }

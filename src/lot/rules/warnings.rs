@@ -14,3 +14,21 @@ pub(super) fn mixed_possible(found: &MixedSection, words: &str) -> Note {
         ),
     )
 }
+
+/// A rule compares with the lots before, and there are too few.
+pub(super) fn no_history(key: &str, found: usize, needed: usize) -> Note {
+    let lots = match found {
+        0 => "no accepted lots of this part and supplier".to_owned(),
+        1 => "one accepted lot of this part and supplier".to_owned(),
+        many => format!("{many} accepted lots of this part and supplier"),
+    };
+    Note::new(
+        "no_history",
+        format!("{key}: {lots} before this one, {needed} are needed to compare it with"),
+    )
+}
+
+/// A rule that warns.
+pub(super) fn lot_unlike_previous(text: String) -> Note {
+    Note::new("lot_unlike_previous", text)
+}

@@ -31,6 +31,7 @@ pub fn object(limits: &Limits) -> Value {
             "trend": limits.trend_rules.iter().map(|rule| json!({
                 "of": rule.of, "action": rule.action.name(),
             })).collect::<Vec<_>>(),
+            "switching": {"reduced": if limits.reduced_inspection { "allowed" } else { "not_allowed" }},
         },
         "retest": {
             "unmeasured": limits.retest.unmeasured,

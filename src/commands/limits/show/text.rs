@@ -121,10 +121,14 @@ fn lot_rules(limits: &Limits) -> Vec<String> {
         };
         format!("{done} where {of} is unlike that of the accepted lots before")
     });
+    let reduced = limits
+        .reduced_inspection
+        .then(|| "reduced inspection where the switching rules allow it".to_owned());
     capability
         .chain(outliers)
         .chain(mixed)
         .chain(trend)
+        .chain(reduced)
         .collect()
 }
 
