@@ -7,7 +7,7 @@ use crate::quantity::Dimension;
 use std::f64::consts::FRAC_PI_2;
 
 /// Characteristics whose repeatability a station can state, with the dimension of an absolute one.
-pub const REPEATABLE: [(&str, Dimension); 7] = [
+pub const REPEATABLE: [(&str, Dimension); 9] = [
     ("capacitance", Dimension::Capacitance),
     ("dissipation_factor", Dimension::Ratio),
     ("esr", Dimension::Resistance),
@@ -15,6 +15,8 @@ pub const REPEATABLE: [(&str, Dimension); 7] = [
     ("esr_minimum", Dimension::Resistance),
     ("srf", Dimension::Frequency),
     ("esl", Dimension::Inductance),
+    ("c_1khz", Dimension::Capacitance),
+    ("r_0", Dimension::Resistance),
 ];
 
 /// The uncertainties; none stated where the file has no `uncertainty`.
