@@ -198,11 +198,14 @@ fn print(
         .as_ref()
         .map_or(String::new(), |part| explain::screen(record, part));
     let screen = present::screen(record);
+    let before = record.supersedes.as_ref().map_or(String::new(), |name| {
+        format!("Instead of  {}\n", printable(name))
+    });
     write!(
         context.out,
         "{gap}{screen}{chain}{budget}
 Record  {pdf}
-"
+{before}"
     )?;
     context.out.flush()
 }

@@ -288,9 +288,19 @@ fn restore(
     }
     let mut ledger = place.open().map_err(|e| e.to_string())?;
     let recorded = ledger.entry(index).map_err(|e| e.to_string())?;
-    let (sources, made) = evidence::remake(&ledger, &recorded.entry).map_err(|e| e.to_string())?;
+    let (sources, made) = drawn_again(&ledger, &recorded.entry)?;
     let papers = [paper, Paper::A4, Paper::Letter];
     issue(place, &mut ledger, &recorded, &sources, &made, &papers).map(Some)
+}
+
+/// The archived record, which another version of the program may have made, with curves from its
+/// archived files.
+fn drawn_again(ledger: &Ledger, entry: &Entry) -> Result<(Sources, Made), String> {
+    let (sources, mut made) = evidence::remake(ledger, entry).map_err(|e| e.to_string())?;
+    let json = ledger.object(entry, "record").map_err(|e| e.to_string())?;
+    made.record =
+        record::from_bytes(&json).map_err(|e| format!("the archived record is no record: {e}"))?;
+    Ok((sources, made))
 }
 
 /// The certificate on the paper on which it was issued already, else on the first; it is known to
@@ -352,7 +362,7 @@ pub fn reissue(
         .filter(|entry| matches!(entry.act, Act::Reissue { .. }))
         .count();
     let number = copies + 1;
-    let (sources, made) = evidence::remake(&ledger, &entry).map_err(|e| e.to_string())?;
+    let (sources, made) = drawn_again(&ledger, &entry)?;
     let paper = issued_paper(&ledger, &entry, &sources, &made)?;
     let size = ledger.size().map_err(text)?;
     let proof = Proof {

@@ -326,3 +326,50 @@ fn a_witness_elsewhere_gets_each_checkpoint_and_keeps_an_old_copy_from_growing()
         "{err}"
     );
 }
+
+#[test]
+fn the_document_says_where_it_is_recorded_and_a_copy_says_so_on_every_page() {
+    use reelgate::certificate::{InLedger, Paper, Sources, placed_text};
+    let site = Site::new();
+    let first = site.judge("26K-0001");
+    site.copy_sweep("26K-0001", "004");
+    let second = site.judge("26K-0001");
+    let json = fs::read(site.certificate(&second, "json")).expect("a record");
+    let record = reelgate::record::from_bytes(&json).expect("a record");
+    let ledger = reelgate::ledger::Ledger::open(&site.file("records")).expect("a ledger");
+    let recorded = ledger.entry(2).expect("an entry");
+    let proof = recorded.proof_text();
+    let texts = |copy| {
+        let ledger = Some(InLedger {
+            index: 2,
+            proof: &proof,
+            copy,
+        });
+        let sources = Sources {
+            ledger,
+            ..Sources::default()
+        };
+        placed_text(&record, &[], &sources, Paper::A4).0
+    };
+    let original = texts(None);
+    let says = |text: &str| original.iter().any(|placed| placed.text.contains(text));
+    for line in recorded.checkpoint.lines().take(3) {
+        assert!(says(line), "{line}");
+    }
+    let on_first_page = original.iter().filter(|placed| placed.page == 1);
+    let first = first["record"].as_str().expect("a name");
+    assert!(
+        on_first_page
+            .clone()
+            .any(|placed| placed.text.contains(first))
+    );
+    assert!(!says("Copy"));
+    let copy = texts(Some("1, made on 2026-11-02T08:00:00+01:00"));
+    let pages = copy.iter().map(|placed| placed.page).max().expect("pages");
+    for page in 1..=pages {
+        let marked = |placed: &&reelgate::certificate::PlacedText| {
+            placed.page == page && placed.text.starts_with("Copy of lot record")
+        };
+        assert_eq!(copy.iter().filter(marked).count(), 1, "page {page}");
+    }
+}

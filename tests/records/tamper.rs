@@ -1,7 +1,8 @@
 //! What is changed behind the program's back is found and named.
 
 use crate::site::{Site, copy, run};
-use reelgate::ledger::{Ledger, Query};
+use reelgate::ledger::{Ledger, Made, Object, ObjectRef, Query, Signer, inputs_digest};
+use reelgate::record::{self, LotRecord, LotVerdict};
 use rusqlite::Connection;
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -177,50 +178,48 @@ fn an_older_copy_of_the_database_is_found_by_a_newer_certificate() {
     );
 }
 
-/// Somebody with the ledger's key makes a whole new ledger with another verdict: the files do not
-/// give that record.
-#[test]
-fn a_record_that_its_files_do_not_give_is_found() {
-    use reelgate::ledger::{Made, Object, Signer, inputs_digest};
-    let site = Site::new();
-    let record = site.judge("26K-0001");
-    let key = fs::read_to_string(site.file("records/ledger.key")).expect("a key");
-    let ledger = Ledger::open(&site.file("records")).expect("a ledger");
+/// Somebody with the ledger's key makes a whole new ledger with another record of the same files.
+fn forge(site: &Site, change: impl Fn(&mut LotRecord)) {
+    let records = site.file("records");
+    let key = fs::read_to_string(records.join("ledger.key")).expect("a key");
+    let ledger = Ledger::open(&records).expect("a ledger");
     let entry = ledger.entry(0).expect("an entry").entry;
-    let mut forged = reelgate::record::from_bytes(&ledger.object(&entry, "record").expect("bytes"))
-        .expect("a record");
-    forged.verdict = reelgate::record::LotVerdict::Accept;
-    let json = reelgate::record::to_bytes(&forged).expect("JSON");
-    let files: Vec<(String, String, Vec<u8>)> = entry.objects[1..]
-        .iter()
-        .map(|o| {
-            (
-                o.role.clone(),
-                o.name.clone(),
-                ledger.archive().get(&o.sha256).expect("bytes"),
-            )
-        })
-        .collect();
+    let bytes = ledger.object(&entry, "record").expect("bytes");
+    let mut forged = record::from_bytes(&bytes).expect("a record");
+    change(&mut forged);
+    let json = record::to_bytes(&forged).expect("JSON");
+    let get = |o: &ObjectRef| ledger.archive().get(&o.sha256).expect("bytes");
+    let files: Vec<(&ObjectRef, Vec<u8>)> =
+        entry.objects[1..].iter().map(|o| (o, get(o))).collect();
     let objects: Vec<Object> = files
         .iter()
-        .map(|(role, name, bytes)| Object { role, name, bytes })
+        .map(|(o, bytes)| Object {
+            role: &o.role,
+            name: &o.name,
+            bytes,
+        })
         .collect();
-    drop(ledger);
-    copy(&site.file("records"), &site.file("kept"));
-    fs::remove_dir_all(site.file("records")).expect("gone");
+    fs::remove_dir_all(&records).expect("gone");
     let time = chrono::DateTime::parse_from_rfc3339(&entry.time).expect("a time");
     let signer = Signer::read(&key).expect("a key");
-    let mut ledger =
-        Ledger::open_for_writing(&site.file("records"), signer, time).expect("a ledger");
+    let mut ledger = Ledger::open_for_writing(&records, signer, time).expect("a ledger");
     let made = Made {
         by: Some("OP-17"),
         time,
-        program: "reelgate 0.1.0",
+        program: "reelgate 0.0.1",
     };
     ledger
         .judged(&forged, &json, &inputs_digest(&objects), &objects, &made)
         .expect("forged");
-    drop(ledger);
+    fs::write(records.join("ledger.key"), key).expect("a key");
+}
+
+#[test]
+fn a_record_that_its_files_do_not_give_is_found() {
+    let site = Site::new();
+    let record = site.judge("26K-0001");
+    copy(&site.file("records"), &site.file("kept"));
+    forge(&site, |record| record.verdict = LotVerdict::Accept);
     let wrong = site.wrong(&[]);
     found(&wrong, "record_not_reproduced", "verdict");
     // The document that left the site knows another history.
@@ -233,4 +232,24 @@ fn a_record_that_its_files_do_not_give_is_found() {
         "history_rewritten",
         "kept",
     );
+}
+
+#[test]
+fn a_record_of_an_earlier_version_is_proven_where_it_comes_out_the_same() {
+    let site = Site::new();
+    let first = site.judge("26K-0001");
+    let earlier = |record: &mut LotRecord| {
+        record.program.version = "0.0.1".to_owned();
+        record.record = "26K-0001-0123456789ab".to_owned();
+    };
+    forge(&site, earlier);
+    assert_eq!(site.json(&["records", "verify"])["proven"], true);
+    // The same files answer with that record, though its name holds another version.
+    let again = site.judge("26K-0001");
+    assert_eq!(again["record"], "26K-0001-0123456789ab");
+    assert_ne!(again["record"], first["record"]);
+    assert!(site.certificate(&again, "pdf").exists());
+    assert_eq!(site.json(&["records", "verify"])["proven"], true);
+    forge(&site, |record| record.verdict = LotVerdict::Accept);
+    found(&site.wrong(&[]), "record_of_other_version", "0.0.1");
 }

@@ -276,7 +276,7 @@ def lot_rule_reasons(site, counted, outliers):
         rule = rules["capability"]
         name, place, low, high, _ = next(b for b in site.bounds if b[0] == rule["of"])
         series = [v for _, v in values(counted, key(name, place))]
-        if len(series) < 25:
+        if len(series) < 8:
             found.append("capability_not_available")
         elif capability(series, low, high, rule["index"]) < rule["min"]:
             found.append("capability_below_min")

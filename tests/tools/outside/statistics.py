@@ -89,7 +89,7 @@ def sample_lots(found):
             if len(values) < 2:
                 continue
             for name, value in again(values, bound["lower"], bound["upper"]).items():
-                if name.startswith(("cp", "pp")) and of[name] is None and (len(values) < 25 or of.get("at_least")):
+                if name.startswith(("cp", "pp")) and of[name] is None and (len(values) < 8 or of.get("at_least")):
                     continue  # refused: too few values, or mostly the measurement's spread
                 difference = numpy.inf if of[name] is None else abs(of[name] / value - 1)
                 worst[name] = max(worst.get(name, 0), difference)
