@@ -295,3 +295,58 @@ fn a_lot_is_held_against_the_lots_before() {
     assert_eq!(alone.verdict, LotVerdict::Accept);
     assert!(codes(&alone).contains(&"no_history".to_owned()));
 }
+
+/// The record of a sample lot, read back from its bytes, as history of the next.
+#[test]
+fn a_record_becomes_history() {
+    let site = tempfile::tempdir().expect("a folder");
+    let copied = std::process::Command::new("cp")
+        .args(["-r", "limits"])
+        .arg(site.path())
+        .status();
+    assert!(copied.expect("cp").success());
+    let output = std::process::Command::new(env!("CARGO_BIN_EXE_reelgate"))
+        .args([
+            "judge",
+            "--format",
+            "json",
+            "--now",
+            "2026-11-02T08:00:00+01:00",
+        ])
+        .arg("--site")
+        .arg(site.path())
+        .arg("sample-lots/26K-0457")
+        .output()
+        .expect("reelgate runs");
+    let record = reelgate::record::from_bytes(&output.stdout).expect("a record");
+    let past = PastLot::of(&record);
+    assert_eq!(
+        (past.lot.as_str(), past.verdict),
+        ("26K-0457", LotVerdict::Accept)
+    );
+    assert!(past.conditions_met && past.complete);
+    for (name, class) in &record.sampling.classes {
+        let of = &past.classes[name];
+        assert_eq!(
+            (of.n, of.ac, of.severity),
+            (class.n, class.ac, Some(Severity::Normal))
+        );
+    }
+    assert_eq!(past.characteristics.len(), record.statistics.len());
+    let history = History {
+        lots: vec![past],
+        set: None,
+    };
+    let acceptance = Acceptance::Attributes {
+        level: "II".into(),
+        aql: record
+            .sampling
+            .classes
+            .iter()
+            .map(|(name, class)| (name.clone(), class.aql.expect("an AQL")))
+            .collect(),
+    };
+    let state = severity_state(&history, &acceptance, Severity::Normal, false).expect("severities");
+    assert_eq!(state.history, [record.record]);
+    assert!(state.classes.values().all(|c| c.lots == 1 && c.score >= 2));
+}

@@ -52,18 +52,18 @@ impl Archive {
     /// is there already is read and compared, not written again.
     pub fn put_all(&self, objects: &[&[u8]]) -> Result<Vec<String>, LedgerError> {
         let names: Vec<String> = objects.iter().map(|bytes| sha256_hex(bytes)).collect();
-        let todo: BTreeMap<&str, &[u8]> = names
+        let absent: BTreeMap<&str, &[u8]> = names
             .iter()
             .map(String::as_str)
             .zip(objects.iter().copied())
             .collect();
-        if todo.is_empty() {
+        if absent.is_empty() {
             return Ok(names);
         }
-        self.make_folders(todo.keys().copied())?;
-        let todo: Vec<(&str, &[u8])> = todo.into_iter().collect();
-        in_parallel(&todo, |(name, bytes)| self.put(name, bytes))?;
-        let folders: BTreeSet<PathBuf> = todo
+        self.make_folders(absent.keys().copied())?;
+        let absent: Vec<(&str, &[u8])> = absent.into_iter().collect();
+        in_parallel(&absent, |(name, bytes)| self.put(name, bytes))?;
+        let folders: BTreeSet<PathBuf> = absent
             .iter()
             .filter_map(|(name, _)| self.path(name).parent().map(Path::to_owned))
             .collect();

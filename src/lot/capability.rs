@@ -43,6 +43,24 @@ impl Indices {
     }
 }
 
+/// The factor of the tolerance interval, solved once for the characteristics of a lot that have as
+/// many values: it takes longer than all the rest of them.
+#[derive(Debug, Default)]
+pub(super) struct Factor(Option<(u64, Option<f64>)>);
+
+impl Factor {
+    fn of(&mut self, n: u64) -> Option<f64> {
+        match self.0 {
+            Some((known, factor)) if known == n => factor,
+            _ => {
+                let factor = two_sided_factor(n, CONTENT, CONFIDENCE).ok();
+                self.0 = Some((n, factor));
+                factor
+            }
+        }
+    }
+}
+
 /// All that is said of the capability of a characteristic.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Stated {
@@ -79,6 +97,7 @@ pub(super) fn of(
     s: Option<f64>,
     bound: &Bound,
     noise: Option<f64>,
+    factor: &mut Factor,
 ) -> Stated {
     let n = values.len() as u64;
     let all = Capability::of(values, bound.lower, bound.upper);
@@ -107,7 +126,7 @@ pub(super) fn of(
         .zip(cpk)
         .and_then(|(nu, cpk)| cpk_lower_bound(cpk, n, nu, CONFIDENCE).ok());
     stated.ppk_lower_95 = ppk.and_then(|ppk| ppk_lower(ppk, n, bound));
-    distribution(&mut stated, values, mean.zip(s), bound);
+    distribution(&mut stated, values, mean.zip(s), bound, factor);
     stated
 }
 
@@ -138,7 +157,13 @@ fn at_least(all: &Capability, n: u64, noise: Option<f64>) -> Option<Indices> {
 
 /// What depends on whether the values are normally distributed: the percentile indices and the
 /// tolerance interval.
-fn distribution(stated: &mut Stated, values: &[f64], moments: Option<(f64, f64)>, bound: &Bound) {
+fn distribution(
+    stated: &mut Stated,
+    values: &[f64],
+    moments: Option<(f64, f64)>,
+    bound: &Bound,
+    factor: &mut Factor,
+) {
     let p = match anderson_darling(values) {
         Ok(test) => test.p_value,
         Err(why) => {
@@ -154,8 +179,8 @@ fn distribution(stated: &mut Stated, values: &[f64], moments: Option<(f64, f64)>
     stated.normality_p_value = Some(p);
     let n = values.len() as u64;
     if p >= NORMALITY_ALPHA {
-        let interval = two_sided_factor(n, CONTENT, CONFIDENCE)
-            .ok()
+        let interval = factor
+            .of(n)
             .zip(moments)
             .map(|(k, (mean, s))| [mean - k * s, mean + k * s]);
         stated.tolerance_95_95 = interval;

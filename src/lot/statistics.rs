@@ -1,6 +1,6 @@
 //! Lot statistics of a characteristic over the parts that have a value.
 
-use super::capability::{self, Indices};
+use super::capability::{self, Factor, Indices};
 use super::outliers;
 use crate::diagnostic::Note;
 use crate::judgement::{PartRecord, PartVerdict};
@@ -83,14 +83,26 @@ pub fn statistics(
     station: &Station,
     parts: &[PartRecord],
 ) -> IndexMap<String, Statistics> {
+    let mut factor = Factor::default();
     limits
         .bounds
         .iter()
-        .map(|bound| (bound.key.clone(), of_bound(bound, limits, station, parts)))
+        .map(|bound| {
+            (
+                bound.key.clone(),
+                of_bound(bound, limits, station, parts, &mut factor),
+            )
+        })
         .collect()
 }
 
-fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartRecord]) -> Statistics {
+fn of_bound(
+    bound: &Bound,
+    limits: &Limits,
+    station: &Station,
+    parts: &[PartRecord],
+    factor: &mut Factor,
+) -> Statistics {
     let readings = || {
         parts
             .iter()
@@ -113,7 +125,7 @@ fn of_bound(bound: &Bound, limits: &Limits, station: &Station, parts: &[PartReco
     let mean = summary.as_ref().map(|s| s.mean);
     let standard_deviation = summary.as_ref().and_then(|s| s.standard_deviation.ok());
     let noise = capability::repeatability(station, bound, mean);
-    let stated = capability::of(&values, mean, standard_deviation, bound, noise);
+    let stated = capability::of(&values, mean, standard_deviation, bound, noise, factor);
     warnings.extend(stated.warnings);
     let outliers = match outliers::of_bound(bound, limits, &values) {
         Ok(found) => {
