@@ -1,15 +1,19 @@
 //! What a record rests on, as objects of the ledger, and the way back from them.
 
 use crate::diagnostic::{Faults, Note};
-use crate::ledger::{Act, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest};
-use crate::lot::{self, History, Lot};
+use crate::ledger::{
+    Act, Archive, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest,
+};
+use crate::lot::{self, History, Lot, PastLot};
 use crate::record::{self, Made, Occasion, Refusal, Sources, sha256};
 use crate::statistics::sampling::Severity;
 use crate::sweep::RawFile;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// Sweep files named in one reason; the record has all.
 const NAMED: usize = 4;
+/// Lots before this one that are looked at; the switching rules look back ten.
+const LOTS_BEFORE: usize = 40;
 
 /// The files of a lot with what the ledger calls them.
 pub struct Evidence<'a> {
@@ -71,6 +75,7 @@ impl<'a> Evidence<'a> {
     pub fn occasion(
         &self,
         reader: &dyn Reader,
+        archive: &Archive,
         before: u64,
         issued: &str,
     ) -> Result<Occasion, LedgerError> {
@@ -78,6 +83,7 @@ impl<'a> Evidence<'a> {
         Ok(Occasion {
             supersedes: supersedes(&self.lot, &mut entries, before)?,
             further: used_before(&self.lot, &self.sources.sweeps, &mut entries, before)?,
+            history: history(&self.lot, &mut entries, archive, before)?,
             ..first_occasion(issued)
         })
     }
@@ -158,6 +164,46 @@ fn supersedes(
         }
     }
     Ok(None)
+}
+
+/// The lots of the same part from the same supplier that were judged before, oldest first; of a lot
+/// that was judged several times the first record, which is its original inspection.
+fn history(
+    lot: &Lot,
+    entries: &mut Entries,
+    archive: &Archive,
+    before: u64,
+) -> Result<History, LedgerError> {
+    let query = Query::PartSupplier {
+        part: &lot.part,
+        supplier: lot.supplier.as_deref(),
+    };
+    let found = entries.find(query, before)?;
+    let mut seen = BTreeSet::from([lot.lot.clone()]);
+    let mut lots = Vec::new();
+    for index in found.into_iter().rev().take(LOTS_BEFORE).rev() {
+        let Some(entry) = entries.get(index)? else {
+            continue;
+        };
+        let Some((record, number, _)) = judged(entry, lot) else {
+            continue;
+        };
+        if !seen.insert(number.to_owned()) {
+            continue;
+        }
+        let kept = entry
+            .objects_of("record")
+            .next()
+            .map(|o| archive.get(&o.sha256));
+        let bytes = kept.transpose()?.unwrap_or_default();
+        let past = record::from_bytes(&bytes).map_err(|e| {
+            LedgerError::Refused(format!(
+                "the record {record} of an earlier lot cannot be read ({e})"
+            ))
+        })?;
+        lots.push(PastLot::of(&past));
+    }
+    Ok(History { lots, set: None })
 }
 
 /// A reason for each record of another lot that rests on a sweep of this one. A file without a
@@ -271,7 +317,7 @@ pub fn remake(ledger: &Ledger, entry: &Entry) -> Result<(Sources, Made), NotRema
     let refused = |faults: &Faults| crate::diagnostic::render(faults, false);
     let occasion = Evidence::of(&sources)
         .map_err(|faults| NotRemade::Refused(refused(&faults)))?
-        .occasion(ledger.store(), entry.index, &entry.time)?;
+        .occasion(ledger.store(), ledger.archive(), entry.index, &entry.time)?;
     let made = record::make(&sources, &occasion, &|| ()).map_err(|refusal| match refusal {
         Refusal::Faults(all) => NotRemade::Refused(all.iter().map(refused).collect()),
         Refusal::Impossible(note) => NotRemade::Refused(note.text),

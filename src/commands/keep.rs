@@ -5,8 +5,8 @@ use super::store::{Paths, write_whole};
 use crate::certificate::{self, Curve, InLedger, Paper};
 use crate::ledger::disk::System;
 use crate::ledger::{
-    Act, Entry, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer, hex,
-    ledger_key, sha256, sha256_hex, witness,
+    Act, Archive, Entry, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer,
+    hex, ledger_key, sha256, sha256_hex, witness,
 };
 use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
 use chrono::{DateTime, FixedOffset, Timelike};
@@ -14,6 +14,7 @@ use std::collections::BTreeSet;
 use std::fs;
 use std::io::ErrorKind;
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
 /// Name and version, as entries have it.
 pub const PROGRAM: &str = concat!("reelgate ", env!("CARGO_PKG_VERSION"));
@@ -170,7 +171,9 @@ pub fn judge(
             None => first_occasion(&issued),
             Some(ledger) => match ledger.find(Query::Inputs(&inputs))?.first() {
                 Some(entry) => return answer(place, &ledger, entry, paper),
-                None => evidence.occasion(ledger.store(), ledger.size()?, &issued)?,
+                None => {
+                    evidence.occasion(ledger.store(), ledger.archive(), ledger.size()?, &issued)?
+                }
             },
         };
         let made = record::make(sources, &occasion, read).map_err(NotKept::Refused)?;
@@ -201,6 +204,7 @@ fn append(
     (made, json): (&Made, &[u8]),
 ) -> Result<(Ledger, Recorded), NotKept> {
     let mut ledger = place.open()?;
+    let archive = Archive::new(&place.records, Arc::new(System));
     let recorded = ledger.judged_while(
         &made.record,
         json,
@@ -208,7 +212,7 @@ fn append(
         &evidence.objects(),
         &place.by(evidence.lot.operator.as_deref()),
         &|reader: &dyn Reader| {
-            let now = evidence.occasion(reader, reader.size()?, &occasion.issued)?;
+            let now = evidence.occasion(reader, &archive, reader.size()?, &occasion.issued)?;
             Ok(now == *occasion)
         },
     )?;
