@@ -3,8 +3,8 @@
 use super::capability::{self, Factor, Indices};
 use super::outliers;
 use crate::diagnostic::Note;
-use crate::judgement::{PartRecord, PartVerdict};
-use crate::limits::{Bound, Limits};
+use crate::judgement::{PartRecord, PartVerdict, Risks, acceptance_window, global_risks};
+use crate::limits::{Bound, Limits, Window};
 use crate::station::Station;
 use crate::statistics::summary::Summary;
 use indexmap::IndexMap;
@@ -44,6 +44,13 @@ pub struct Statistics {
     /// Holds at least 95 % of the parts with a confidence of 95 %.
     #[serde(default)]
     pub tolerance_95_95: Option<[f64; 2]>,
+    /// Probability that a part of such a lot does not conform and is accepted by the decision rule
+    /// (JCGM 106:2012, 9.5.2), parts and readings taken as normally distributed.
+    #[serde(default)]
+    pub consumers_risk: Option<f64>,
+    /// Probability that a part of such a lot conforms and is not accepted by the decision rule.
+    #[serde(default)]
+    pub producers_risk: Option<f64>,
     /// Part numbers.
     pub outliers: Vec<String>,
     pub nonconforming: u64,
@@ -140,6 +147,13 @@ fn of_bound(
             Vec::new()
         }
     };
+    let uncertainties = valid().filter_map(|(_, r)| r.standard_uncertainty);
+    let risks = risks(
+        bound,
+        limits,
+        mean.zip(standard_deviation),
+        mean_of(uncertainties),
+    );
     Statistics {
         n: values.len() as u64,
         mean,
@@ -159,6 +173,8 @@ fn of_bound(
         ppk_percentile: stated.ppk_percentile,
         normality_p_value: stated.normality_p_value,
         tolerance_95_95: stated.tolerance_95_95,
+        consumers_risk: risks.map(|r| r.consumer),
+        producers_risk: risks.map(|r| r.producer),
         outliers,
         nonconforming: with(PartVerdict::Nonconforming),
         undecided: with(PartVerdict::Undecided),
@@ -176,4 +192,26 @@ pub(super) fn values<'a>(key: &str, parts: &'a [PartRecord]) -> Vec<(&'a str, f6
             Some((part.part.as_str(), reading.value.filter(|_| valid)?))
         })
         .collect()
+}
+
+fn mean_of(values: impl Iterator<Item = f64>) -> Option<f64> {
+    let (n, sum) = values.fold((0.0, 0.0), |(n, sum), value| (n + 1.0, sum + value));
+    (n > 0.0).then(|| sum / n)
+}
+
+/// Risks of the decision rule for a lot of that mean and spread. The spread seen stands for that of
+/// the parts: it holds some of the measurement's own, which errs on the side of larger risks.
+fn risks(
+    bound: &Bound,
+    limits: &Limits,
+    process: Option<(f64, f64)>,
+    u: Option<f64>,
+) -> Option<Risks> {
+    let tolerance = Window {
+        lower: bound.lower,
+        upper: bound.upper,
+    };
+    let (process, u) = process.zip(u)?;
+    let acceptance = acceptance_window(tolerance, u, &limits.decision_rule)?;
+    global_risks(process, u, tolerance, acceptance)
 }
