@@ -1,5 +1,6 @@
 //! Figures as the document prints them: one SI prefix a characteristic, decimals from uncertainty.
 
+use crate::quantity::PREFIXES;
 use crate::record::{BoundSection, LotRecord, ReadingRecord};
 
 /// How the values of one characteristic are printed.
@@ -15,19 +16,6 @@ pub(super) struct Scale {
 
 /// En dash: no value.
 pub(super) const ABSENT: &str = "–";
-
-const PREFIXES: [(i32, &str); 10] = [
-    (-15, "f"),
-    (-12, "p"),
-    (-9, "n"),
-    (-6, "µ"),
-    (-3, "m"),
-    (0, ""),
-    (3, "k"),
-    (6, "M"),
-    (9, "G"),
-    (12, "T"),
-];
 
 /// The engineering exponent (a multiple of three) and prefix for a magnitude.
 pub(super) fn prefix(magnitude: f64) -> (i32, &'static str) {

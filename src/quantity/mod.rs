@@ -28,6 +28,7 @@ pub use dimension::Dimension;
 pub use error::QuantityError;
 pub use format::{NO_VALUE, engineering, frequency_key, shortest};
 pub use parse::parse;
+pub(crate) use scale::PREFIXES;
 pub use scale::{scale, scaled_unit};
 pub use tolerance::{Deviation, Tolerance, parse_tolerance};
 pub use uncertain::with_uncertainty;

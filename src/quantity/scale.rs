@@ -6,7 +6,8 @@ use std::f64::consts::PI;
 /// Significant digits at which [`shortest`] stops, so that 4.7 × 0.9 does not end in …999996.
 pub(super) const SHORTEST_DIGITS: usize = 12;
 
-pub(super) const PREFIXES: [(i32, &str); 10] = [
+/// SI prefixes and their exponents, ascending by three.
+pub(crate) const PREFIXES: [(i32, &str); 10] = [
     (-15, "f"),
     (-12, "p"),
     (-9, "n"),

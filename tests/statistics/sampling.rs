@@ -7,7 +7,7 @@ use reelgate::statistics::sampling::{
     neighbouring_aqls, one_step_tighter, plan_for, single_sampling,
 };
 
-/// Table 1. The file's cross-reading: a public transcription of level II and a national edition of the table.
+/// Table 1. The file's cross-reading: a public copy of level II and a national edition of the table.
 #[test]
 fn every_code_letter_of_table_1() {
     let table = rows("s1_code_letters.csv");
@@ -49,7 +49,7 @@ fn every_cell_of_table_2b() {
     every_cell("s1_single_tightened.csv", Severity::Tightened, 257);
 }
 
-/// The reference for this table is recalled from the standard, without an independent transcription.
+/// The reference for this table is recalled from the standard, without an independent copy.
 #[test]
 fn every_cell_of_table_2c() {
     every_cell(

@@ -3,7 +3,7 @@
 //! Rows are code letters A to R, columns the AQLs 0.010 to 10; a number is the acceptance number Ac
 //! (Re = Ac + 1), `V` an arrow down (use the first plan below), `U` an arrow up (the first plan
 //! above). Tables 2-A and 2-B are the same as MIL-STD-105E Tables II-A and II-B. Table 2-C stands
-//! here from memory of the standard, without an independent transcription.
+//! here from memory of the standard, without an independent copy.
 
 pub(super) const LETTERS: usize = 16;
 pub(super) const COLUMNS: usize = 16;
