@@ -1,7 +1,7 @@
 //! A shift common to the whole lot: how often it is found where there is one and where there is
 //! none, and what a lot record says of it.
 
-use reelgate::lot::{CommonShift, LotSeries, common_shift};
+use reelgate::lot::{Common, CommonShift, LotSeries, common_shift};
 use reelgate::statistics::random::Random;
 use reelgate::statistics::summary::quartiles_of;
 use std::f64::consts::TAU;
@@ -60,9 +60,9 @@ fn found(seed: u64, runs: usize, mark: Mark) -> [f64; 2] {
     for _ in 0..runs {
         let before: Vec<LotSeries> = (0..LOTS).map(|_| lot(&mut random, &|_, p| p)).collect();
         let now = lot(&mut random, mark);
-        match common_shift(now, &before, vec![]).found.as_deref() {
-            Some("impedance_scaled") => count[0] += 1,
-            Some("esl_shifted") => count[1] += 1,
+        match common_shift(now, &before, vec![]).found {
+            Some(Common::ImpedanceScaled) => count[0] += 1,
+            Some(Common::EslShifted) => count[1] += 1,
             _ => {}
         }
     }

@@ -7,7 +7,7 @@
 //! another capacitance has another SRF too.
 
 use super::trend::comparable_lots;
-use super::{Judged, Ruled};
+use super::{Judged, Ruled, warnings};
 use crate::diagnostic::Note;
 use crate::judgement::PartRecord;
 use crate::limits::Limits;
@@ -64,6 +64,16 @@ pub struct Shift {
     pub p_value: f64,
 }
 
+/// What a whole lot has in common that parts do not do by themselves.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum Common {
+    /// Capacitance and ESR by one factor.
+    ImpedanceScaled,
+    /// The ESL.
+    EslShifted,
+}
+
 /// A lot against the lots before it on the same station.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct CommonShift {
@@ -74,9 +84,9 @@ pub struct CommonShift {
     /// Empty where too few lots went before.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub shifts: Vec<Shift>,
-    /// What was found: `impedance_scaled` or `esl_shifted`.
+    /// What was found, where something was.
     #[serde(default, skip_serializing_if = "Option::is_none")]
-    pub found: Option<String>,
+    pub found: Option<Common>,
     /// |Z| reads by this factor, where it is scaled.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub factor: Option<f64>,
@@ -210,10 +220,10 @@ pub fn common_shift(lot: LotSeries, before: &[LotSeries], records: Vec<String>) 
     let against = |other: &Course| other.common(&lot) && other.shift * c.shift < 0.0;
     let stays = !f.moved() && !cr.moved() && f.shift.abs() < 0.25 * c.shift.abs();
     if c.common(&lot) && (against(&r) || against(&l)) && stays {
-        section.found = Some("impedance_scaled".to_owned());
+        section.found = Some(Common::ImpedanceScaled);
         section.factor = Some((-c.shift).exp());
     } else if l.common(&lot) {
-        section.found = Some("esl_shifted".to_owned());
+        section.found = Some(Common::EslShifted);
     }
     section
 }
@@ -233,8 +243,8 @@ pub(super) fn evaluate(judged: &Judged, ruled: &mut Ruled) {
     let section = common_shift(lot, &before, records);
     let warning = warning(&section, judged.station);
     if !section.shifts.is_empty() {
-        let result = match section.found.as_deref() {
-            Some("impedance_scaled") => "one factor on |Z|: a warning",
+        let result = match section.found {
+            Some(Common::ImpedanceScaled) => "one factor on |Z|: a warning",
             Some(_) => "the ESL of the whole lot has shifted: a warning",
             None => "no shift common to the whole lot",
         };
@@ -276,14 +286,14 @@ fn percent(ratio: f64) -> String {
 
 /// The sentence for an operator and a quality engineer.
 fn warning(section: &CommonShift, station: &Station) -> Option<Note> {
-    let code = section.found.as_deref()?;
+    let found = section.found?;
     let shift = |of: &str| {
-        let found = section.shifts.iter().find(|s| s.of == of);
-        found.map_or((0.0, 1.0), |s| (s.shift, s.p_value))
+        let one = section.shifts.iter().find(|s| s.of == of);
+        one.map_or((0.0, 1.0), |s| (s.shift, s.p_value))
     };
     let lots = section.history.len();
-    let text = if code == "impedance_scaled" {
-        format!(
+    Some(match found {
+        Common::ImpedanceScaled => warnings::impedance_scaled(format!(
             "the whole lot reads as if every impedance were multiplied by {:.4}: capacitance {}, ESR {}, ESL {} against the {lots} accepted lots before on {}, SRF and C × ESR as before (p {:.1e}): \
              a lot of truly other capacitance would have another SRF. Suspect {}; measure a part of known value, and a part kept from an earlier lot",
             section.factor.unwrap_or(1.0),
@@ -293,23 +303,22 @@ fn warning(section: &CommonShift, station: &Station) -> Option<Note> {
             station.name,
             shift("capacitance").1,
             suspect(station),
-        )
-    } else {
-        let now = section.lot.esl[1];
-        let (ratio, p) = shift("esl");
-        let previous = now / (1.0 + ratio);
-        let difference = now - previous;
-        let sign = if difference < 0.0 { "-" } else { "+" };
-        format!(
-            "the ESL of the whole lot, from SRF and capacitance, is {}; in the {lots} accepted lots before on {} it was {} ({sign}{}, p {p:.1e}). It depends on the part's geometry and on the jig, not on the capacitance: \
-             check how parts sit in the jig and its short, and measure a part kept from an earlier lot; if that reads as before, ask the supplier what has changed in the part",
-            engineering(now, "H", 4),
-            station.name,
-            engineering(previous, "H", 4),
-            engineering(difference.abs(), "H", 3),
-        )
-    };
-    Some(Note::new(code, text))
+        )),
+        Common::EslShifted => {
+            let now = section.lot.esl[1];
+            let (ratio, p) = shift("esl");
+            let previous = now / (1.0 + ratio);
+            let sign = if ratio < 0.0 { "-" } else { "+" };
+            warnings::esl_shifted(format!(
+                "the ESL of the whole lot, from SRF and capacitance, is {}; in the {lots} accepted lots before on {} it was {} ({sign}{}, p {p:.1e}). It depends on the part's geometry and on the jig, not on the capacitance: \
+                 check how parts sit in the jig and its short, and measure a part kept from an earlier lot; if that reads as before, ask the supplier what has changed in the part",
+                engineering(now, "H", 4),
+                station.name,
+                engineering(previous, "H", 4),
+                engineering((now - previous).abs(), "H", 3),
+            ))
+        }
+    })
 }
 
 /// What scales every impedance by one factor with the station's method. A load standard takes the

@@ -8,7 +8,7 @@ mod outliers;
 mod trend;
 mod warnings;
 
-pub use common_shift::{CommonShift, LotSeries, Shift, common_shift};
+pub use common_shift::{Common, CommonShift, LotSeries, Shift, common_shift};
 pub use joint::{JointOutlier, JointSection};
 pub use mixed::{GroupSection, MixedSection};
 pub use trend::TrendSection;
