@@ -97,6 +97,9 @@ pub fn station() -> Station {
         layout: None,
         compensation: Compensation::default(),
         uncertainty: Uncertainty::default(),
+        watch: None,
+        instrument_link: None,
+        jig_check: None,
     }
 }
 
