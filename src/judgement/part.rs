@@ -283,6 +283,7 @@ pub fn judge_part(
     let none = JudgedTry {
         verdict: PartVerdict::Unmeasured,
         drive: None,
+        series: None,
         class: None,
         readings: IndexMap::new(),
         faults: vec![nothing_left()],
