@@ -22,7 +22,10 @@ pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
 pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
-pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection, TrendSection};
+pub use rules::{
+    Common, CommonShift, Findings, GroupSection, JointOutlier, JointSection, LotSeries,
+    MixedSection, Shift, TrendSection, common_shift,
+};
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
 pub use switching::{ClassState, Switching, severity_state};
