@@ -322,6 +322,7 @@ impl Intake {
             Err(why) if why.kind == label::ErrorKind::Ask => {
                 // A bare word: it is asked for where it belongs.
                 self.scanned = true;
+                self.fill(known);
                 return vec![Message::plain(words::WHICH_FIELD)];
             }
             Err(why) => return vec![Message::warn(words::refused(&why.to_string()))],
@@ -329,11 +330,26 @@ impl Intake {
         let mut said = self.take_label(typed, text, label, known);
         if said.iter().all(|m| m.tone != Tone::Bad) {
             self.scanned = true;
+            self.fill(known);
         } else {
             said.push(Message::plain(words::ANOTHER_REEL));
             self.forget();
         }
         said
+    }
+
+    /// What the order says need not be asked for.
+    fn fill(&mut self, known: &dyn Known) {
+        let order = self.order.clone();
+        if self.part.is_none()
+            && let Some(part) = &order.part
+        {
+            self.part(part, known);
+        }
+        self.lot = self.lot.take().or(order.lot);
+        self.quantity = self.quantity.or(order.quantity);
+        self.supplier = self.supplier.take().or(order.supplier.map(Some));
+        self.purchase = self.purchase.take().or(order.order.map(Some));
     }
 
     /// A label or a single code: what contradicts is said, and nothing of it kept.

@@ -15,6 +15,7 @@ pub mod operate;
 pub mod plain;
 pub mod run;
 pub mod scene;
+pub mod screen;
 pub mod source;
 pub mod tag;
 pub mod words;

@@ -324,7 +324,7 @@ impl Run {
 
     /// The name of a part of the sample, from 0.
     pub fn part_name(&self, index: u64) -> String {
-        let width = self.began.quantity.to_string().len().max(3);
+        let width = self.began.parts.to_string().len().max(3);
         format!("{:0width$}", index + 1)
     }
 

@@ -9,6 +9,7 @@ use crate::diagnostic::printable;
 use crate::limits::Limits;
 use crate::lot::{Plan, Switching};
 use crate::quantity::{NO_VALUE, engineering, shortest, with_uncertainty};
+use crate::readings::Characteristic;
 use crate::record::{BoundSection, LotRecord, ReadingRecord};
 use crate::station::{Method, Station};
 
@@ -155,16 +156,20 @@ fn conditions(limits: &Limits) -> String {
         .flat_map(|b| match b.place {
             crate::readings::Place::At(f) => vec![f],
             crate::readings::Place::Between(f, g) => vec![f, g],
+            crate::readings::Place::Anywhere if b.characteristic == Characteristic::Srf => {
+                b.lower.into_iter().chain(b.upper).collect()
+            }
             crate::readings::Place::Anywhere => vec![],
         })
         .collect();
     at.sort_by(f64::total_cmp);
     if let (Some(first), Some(last)) = (at.first(), at.last()) {
-        all.push(format!(
-            "sweep {} to {} at least",
-            shortest(*first, "Hz"),
-            shortest(*last, "Hz")
-        ));
+        let (first, last) = (shortest(*first, "Hz"), shortest(*last, "Hz"));
+        all.push(if first == last {
+            format!("sweep across {first}")
+        } else {
+            format!("sweep {first} to {last} at least")
+        });
     }
     all.join("; ")
 }
@@ -219,7 +224,7 @@ pub fn prompt(run: &Run, desk: &Desk, positions: &[u64], hands_free: bool) -> St
             part,
             attempt,
         } => {
-            let text = if attempt > 1 {
+            let text = if attempt > 1 && run.counting(&part).is_some() {
                 words::reseat(&part, attempt)
             } else {
                 let position = positions.get(index as usize).copied().unwrap_or(index + 1);

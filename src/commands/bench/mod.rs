@@ -6,6 +6,7 @@ mod front;
 mod lot_file;
 mod shop;
 mod sitting;
+mod terminal;
 
 use super::judge::PaperArg;
 use super::site::Site;
@@ -16,8 +17,10 @@ use crate::lot::{LotVerdict, SEED_MAX};
 use chrono::{DateTime, FixedOffset};
 use front::{Front, Plain};
 use shop::Shop;
+use terminal::Screen;
 use sitting::{Over, Sitting, Wishes};
-use std::path::PathBuf;
+use std::io::IsTerminal;
+use std::path::{Path, PathBuf};
 use std::sync::mpsc::channel;
 
 /// Lead an operator through lots: scan, measure, verdict
@@ -75,28 +78,50 @@ pub struct Args {
 /// Leads through lots until the operator leaves; the exit status is that of the worst lot, as with `judge`.
 pub fn run(args: &Args, context: &mut Context) -> u8 {
     let site = Site::new(&context.site);
+    // Paths are shown to people: no `./` in front of them.
+    let root = if context.site == Path::new(".") {
+        PathBuf::new()
+    } else {
+        context.site.clone()
+    };
     let shop = Shop {
-        root: context.site.clone(),
+        root: root.clone(),
         site,
         lots: args
             .lots
             .clone()
-            .unwrap_or_else(|| context.site.join("lots")),
+            .unwrap_or_else(|| root.join("lots")),
         fixed: args.now,
         key: args.ledger_key.clone(),
         witness: args.witness.clone(),
     };
     let (door, come) = channel();
-    let over = {
+    let on_terminal = std::io::stdin().is_terminal() && std::io::stdout().is_terminal();
+    let over = if args.plain || !on_terminal {
         feed::lines(door.clone());
         let mut front = Plain::new(context.out, args.bell);
-        let over = sit(args, &shop, &mut front, (door, come));
-        front.close();
-        over
+        sit(args, &shop, &mut front, (door, come))
+    } else {
+        match Screen::open(colour(), args.bell) {
+            Ok(mut front) => {
+                feed::terminal(door.clone());
+                let over = sit(args, &shop, &mut front, (door, come));
+                front.close();
+                over
+            }
+            Err(error) => {
+                Over::Failed(format!("the terminal cannot be used ({error}): try --plain"))
+            }
+        }
     };
     match over {
         Over::Left(verdicts) => status(&verdicts),
-        Over::Paused => exit::PAUSED,
+        Over::Paused(text) => {
+            if !args.plain && on_terminal {
+                let _ = writeln!(context.out, "{text}");
+            }
+            exit::PAUSED
+        }
         Over::Failed(why) => {
             let lines: Vec<String> = why.lines().map(printable).collect();
             let _ = writeln!(context.err, "error: {}", lines.join("\n"));
@@ -133,6 +158,11 @@ fn sit(args: &Args, shop: &Shop, front: &mut dyn Front, (door, come): Channel) -
         verdicts: Vec::new(),
     };
     sitting.run()
+}
+
+/// NO_COLOR, set to anything, forbids colours.
+fn colour() -> bool {
+    std::env::var_os("NO_COLOR").is_none_or(|v| v.is_empty())
 }
 
 fn status(verdicts: &[LotVerdict]) -> u8 {

@@ -18,6 +18,7 @@ use crate::commands::evidence::Evidence;
 use crate::commands::keep::{self, NotKept};
 use crate::commands::site::{Stop, gather};
 use crate::diagnostic::{self, excerpt, printable};
+use crate::judgement::PartVerdict;
 use crate::lot::LotVerdict;
 use crate::record::{self, Refusal};
 use crate::sweep::RawFile;
@@ -30,7 +31,7 @@ pub enum Over {
     /// The operator left, or the input ended; verdicts of this sitting.
     Left(Vec<LotVerdict>),
     /// The operator left in the middle of a run.
-    Paused,
+    Paused(String),
     /// Nothing more can be kept, or shown.
     Failed(String),
 }
@@ -78,6 +79,8 @@ struct Work {
     wish: Sender<Wish>,
     source: String,
     hands_free: bool,
+    /// A verdict has come that was not shown yet: whether it is good.
+    rings: Option<bool>,
     /// Digests of sweeps that were on the disk already when the run was resumed.
     adopted: Vec<String>,
 }
@@ -317,6 +320,7 @@ impl Sitting<'_> {
             wish,
             source,
             hands_free: opened.hands_free,
+            rings: None,
             adopted: Vec::new(),
         }
     }
@@ -483,6 +487,9 @@ impl Sitting<'_> {
         }
         loop {
             self.draw(&work)?;
+            if let Some(good) = work.rings.take() {
+                self.front.bell(good);
+            }
             let typed = match self.wait() {
                 None => None,
                 Some(In::Line(line)) => Some(Typed::Line(line)),
@@ -528,7 +535,7 @@ impl Sitting<'_> {
     fn pause(&mut self, work: &Work) -> Done<Option<String>> {
         let lot = printable(&work.run.began.lot);
         let text = words::paused(&lot, work.run.done(), work.run.parts);
-        let said = [Message::plain(text)];
+        let said = [Message::plain(text.clone())];
         let scene = Scene {
             page: Page::Work {
                 run: &work.run,
@@ -543,7 +550,7 @@ impl Sitting<'_> {
         };
         // Whoever closed the terminal sees nothing any more; the run is kept all the same.
         let _ = self.front.draw(&scene);
-        Err(Over::Paused)
+        Err(Over::Paused(text))
     }
 
     /// Starts a measurement where that is the operator's to do.
@@ -721,6 +728,7 @@ impl Sitting<'_> {
                     seen,
                 };
                 self.record(work, event)?;
+                work.rings = Some(told.verdict() == PartVerdict::Conforming);
                 work.told = Some(told);
                 Ok(())
             }
