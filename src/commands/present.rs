@@ -2,12 +2,12 @@
 //!
 //! Fits 80 columns. The verdict is a word and a mark; colour only repeats it.
 
+use super::switching;
 use super::text::{WIDTH, clipped, wrapped};
 use crate::diagnostic::printable;
 use crate::quantity::{NO_VALUE, engineering, scale, scaled_unit, shortest, with_uncertainty};
 use crate::record::{
-    BoundSection, ClassState, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord,
-    Statistics,
+    BoundSection, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord, Statistics,
 };
 use anstyle::{AnsiColor, Style};
 use comfy_table::{CellAlignment, ColumnConstraint, ContentArrangement, Table, Width, presets};
@@ -115,11 +115,8 @@ fn sample(out: &mut String, record: &LotRecord) {
         "  ",
         "  ",
     ));
-    let unusual = |state: &&ClassState| state.severity != "normal" || state.discontinued;
-    let states = s.switching.iter().flat_map(|switching| &switching.classes);
-    for (name, state) in states.filter(|(_, state)| unusual(state)) {
-        let line = format!("class {name}, {} inspection: {}", state.severity, state.why);
-        out.push_str(&wrapped(&line, "  ", "    "));
+    if let Some(state) = &s.switching {
+        out.push_str(&switching::states(state));
     }
     for (name, class) in &s.classes {
         let undecided = if class.undecided > 0 {

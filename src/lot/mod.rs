@@ -15,7 +15,7 @@ mod switching;
 mod variables;
 mod verdict;
 
-pub use capability::Indices;
+pub use capability::{Indices, NormalitySection, PercentileSection, ToleranceSection};
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
@@ -23,7 +23,7 @@ pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
 pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection, TrendSection};
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
-pub use switching::{ClassState, Switching, severity_state};
+pub use switching::{ChangeSection, ClassState, SetSection, Switching, severity_state};
 pub use variables::VariablesSection;
 pub use verdict::{LotJudgement, LotVerdict, judge};
 
