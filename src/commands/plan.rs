@@ -99,6 +99,7 @@ fn of_part(part: &str, args: &Args, context: &mut Context) -> Result<Plan, Strin
         let _ = write!(context.err, "{}", diagnostic::render(&faults, true));
         format!("{} is not valid", file.name)
     })?;
+    same_part(part, &limits)?;
     match args.severity {
         Some(severity) => plan(&limits.acceptance, args.lot_size, severity),
         None => {
@@ -107,6 +108,17 @@ fn of_part(part: &str, args: &Args, context: &mut Context) -> Result<Plan, Strin
             plan_in_state(&limits.acceptance, args.lot_size, switching)
         }
     }
+}
+
+/// The lots before are those of the part, so that its file must be of it.
+pub(super) fn same_part(part: &str, limits: &Limits) -> Result<(), String> {
+    if limits.part == part {
+        return Ok(());
+    }
+    Err(format!(
+        "the limit file of `{part}` says that it is of part `{}`: correct `part` or the name of the file",
+        limits.part
+    ))
 }
 
 /// The severities by the ledger; a site without one begins.

@@ -55,9 +55,9 @@ fn two_rejected_lots_bring_tightened_inspection() {
 #[test]
 fn a_severity_set_by_a_person_is_in_force_and_in_the_record() {
     let site = Site::new();
-    let part = "RG-0475-X7R";
     rejected_lot(&site, "26K-9001");
     let before = judged(&site, "26K-9001");
+    let part = before["lot"]["part"].as_str().expect("a part");
     assert_eq!(
         before["sampling"]["switching"]["classes"]["A"]["set"],
         Value::Null
@@ -128,7 +128,7 @@ fn a_severity_set_by_a_person_is_in_force_and_in_the_record() {
     let name = record["record"].as_str().expect("a name");
     let shown = site.ok(&["records", "show", name]);
     assert!(
-        shown.contains("by QE-02: severity of inspection of RG-0475-X7R"),
+        shown.contains(&format!("by QE-02: severity of inspection of {part}")),
         "{shown}"
     );
     assert!(!shown.contains('\u{1b}'));
@@ -170,11 +170,12 @@ fn a_discontinued_supplier_is_resumed_by_a_person_as_tightened() {
         .as_str()
         .expect("a supplier")
         .to_owned();
+    let part = last["lot"]["part"].as_str().expect("a part").to_owned();
     let set = |severity: &str| {
         [
             "records",
             "severity",
-            "RG-0475-X7R",
+            &part,
             "--supplier",
             &supplier,
             "--set",

@@ -111,7 +111,9 @@ fn table_2c_lies_in_the_gaps_of_mil_std_105e() {
         let (n, ac, re) = (row.count("n"), row.count("ac"), row.count("re"));
         if (ac, re) == (0, 2) {
             arrows += 1;
-            assert!((plan.n, plan.ac) >= (n, 0), "{letter} {aql}");
+            // Where there is no plan below, the arrow turns round to Ac 0.
+            let down = plan.ac == 1 && plan.n > n;
+            assert!(down || plan.ac == 0, "{letter} {aql}");
             continue;
         }
         plans += 1;

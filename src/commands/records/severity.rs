@@ -2,7 +2,7 @@
 
 use super::{Circumstances, Done, place, show};
 use crate::commands::evidence::{severity_at, severity_in_force};
-use crate::commands::plan::severity;
+use crate::commands::plan::{same_part, severity};
 use crate::commands::site::{Site, text_file};
 use crate::commands::text::wrapped;
 use crate::commands::{Context, Format, exit, switching};
@@ -45,6 +45,7 @@ pub struct Args {
 
 pub fn run(args: &Args, site: &Site, context: &mut Context) -> Done {
     let limits = limit_file(args, site, context)?;
+    same_part(&args.part, &limits)?;
     if !has_severities(&limits) {
         return Err(format!(
             "{}: its plan has no severities of inspection; only `attributes` and `variables` have",
