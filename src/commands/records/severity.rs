@@ -188,7 +188,7 @@ fn set(
 ) -> Done {
     let text = |e: LedgerError| e.to_string();
     refuse(args, severity, limits)?;
-    let mut place = place(site, &args.with);
+    let mut place = place(site, &args.with)?;
     place.key = args.ledger_key.clone();
     let archive = Archive::new(&place.records, Arc::new(disk::System));
     let act = SetSeverity {
