@@ -132,10 +132,7 @@ fn sample(out: &mut String, record: &LotRecord) {
         let most = class
             .share_nonconforming_upper_95
             .map_or(String::new(), |share| {
-                format!(
-                    "; with 95 % confidence at most {:.2} % of the lot",
-                    100.0 * share
-                )
+                format!("; at most {:.2} % of the lot (95 %)", 100.0 * share)
             });
         let line = format!(
             "class {name}: {plan}: {} nonconforming{undecided}{most}",
