@@ -4,7 +4,7 @@ use notify::event::{AccessKind, AccessMode, ModifyKind, RenameMode};
 use notify::{EventKind, RecommendedWatcher, RecursiveMode, Watcher};
 use std::ffi::OsString;
 use std::path::{Path, PathBuf};
-use std::sync::mpsc::{Receiver, RecvTimeoutError, Sender, channel};
+use std::sync::mpsc::{Receiver, Sender, channel};
 use std::time::Duration;
 
 /// Whether the platform tells when a writer closes a file.
@@ -75,10 +75,7 @@ impl Notices {
 
     /// Waits for a notice.
     pub fn next(&self, wait: Duration) -> Option<Notice> {
-        match self.channel.recv_timeout(wait) {
-            Ok(notice) => Some(notice),
-            Err(RecvTimeoutError::Timeout | RecvTimeoutError::Disconnected) => None,
-        }
+        self.channel.recv_timeout(wait).ok()
     }
 
     /// A notice that is there already.
