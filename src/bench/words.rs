@@ -330,7 +330,7 @@ pub fn standing(chances: &[Chance], left: u64) -> String {
         })
         .collect();
     format!(
-        "{left}; the lot CANNOT be accepted any more ({}). Type end to stop here, or go on",
+        "{left}; the lot CANNOT be accepted any more ({}): go on, or type end",
         each.join("; ")
     )
 }

@@ -317,7 +317,15 @@ fn readings(frame: &mut Frame, area: Rect, rows: &[[String; 4]], look: Look) {
         } else {
             look.tone(Tone::Warn)
         };
-        let gap = width.saturating_sub(3 + name.width() + value.width()).max(1);
+        // Where both do not fit, the value goes without its uncertainty, which the record has.
+        let fits = 4 + name.width() + value.width() <= width;
+        let value = match value.split_once(" ± ") {
+            Some((short, _)) if !fits => short,
+            _ => value.as_str(),
+        };
+        let gap = width
+            .saturating_sub(3 + name.width() + value.width())
+            .max(1);
         let first = format!(" {mark} {name}{}{value}", " ".repeat(gap));
         out.push(Line::styled(clip(&first, width), style));
         if tall {

@@ -6,6 +6,7 @@ use crate::bench::event::Event;
 use crate::bench::intake::Known;
 use crate::bench::run::Demands;
 use crate::bench::words;
+use crate::commands::evidence;
 use crate::commands::keep::{self, Place};
 use crate::commands::site::{Site, text_file};
 use crate::diagnostic::{self, printable};
@@ -39,8 +40,6 @@ pub struct Shop {
 pub struct Waiting {
     #[allow(missing_docs)]
     pub lot: String,
-    #[allow(missing_docs)]
-    pub station: String,
     #[allow(missing_docs)]
     pub words: String,
 }
@@ -185,14 +184,10 @@ impl Shop {
     fn switching(
         &self,
         limits: &Limits,
-        _supplier: Option<&str>,
+        supplier: Option<&str>,
     ) -> Result<Option<Switching>, String> {
-        Ok(lot::severity_state(
-            &lot::History::default(),
-            &limits.acceptance,
-            crate::statistics::sampling::Severity::Normal,
-            limits.reduced_inspection,
-        ))
+        let ledger = self.place().look().map_err(|e| e.to_string())?;
+        evidence::severity_at(ledger.as_ref(), limits, supplier).map_err(|e| e.to_string())
     }
 }
 
@@ -214,7 +209,6 @@ fn waiting(path: &Path) -> Option<Waiting> {
         .collect();
     Some(Waiting {
         lot: began.lot.clone(),
-        station: began.station.clone(),
         words: words::waiting_run(&printable(&began.lot), parts.len() as u64, began.parts),
     })
 }
