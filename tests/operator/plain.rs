@@ -12,7 +12,13 @@ fn a_lot_from_scan_to_label() {
         site.save(part);
         bench.see(&format!("Part {part}: CONFORMING ✔"));
         bench.see("capacitance at 1 kHz");
-        let left = ["4 parts left", "3 parts left", "2 parts left", "1 part left", "none left"];
+        let left = [
+            "4 parts left",
+            "3 parts left",
+            "2 parts left",
+            "1 part left",
+            "none left",
+        ];
         bench.see(&format!("{}; the lot can still be accepted", left[i]));
     }
     bench.see("All parts are measured");
@@ -23,9 +29,15 @@ fn a_lot_from_scan_to_label() {
     assert_eq!(bench.close().code(), Some(0));
 
     let label = site.text("lots/26K-9001/label.txt");
-    assert!(label.contains("ACCEPT") && label.contains("LOT  26K-9001"), "{label}");
+    assert!(
+        label.contains("ACCEPT") && label.contains("LOT  26K-9001"),
+        "{label}"
+    );
     let lot = site.text("lots/26K-9001/lot.yaml");
-    assert!(lot.contains("label: \"[)>\\u001E06\\u001DPRG-9475-X7R"), "{lot}");
+    assert!(
+        lot.contains("label: \"[)>\\u001E06\\u001DPRG-9475-X7R"),
+        "{lot}"
+    );
     assert_eq!(
         site.list("lots/26K-9001/sweeps"),
         ["001.csv", "002.csv", "003.csv", "004.csv", "005.csv"]
@@ -108,7 +120,10 @@ fn an_undone_placement_keeps_both_sweeps() {
     let tries = &record["parts"][0]["attempts"];
     assert_eq!(tries[0]["set_aside"], "misplaced");
     assert_eq!(tries[0]["verdict"], "nonconforming");
-    assert_eq!((&tries[0]["counts"], &tries[1]["counts"]), (&false.into(), &true.into()));
+    assert_eq!(
+        (&tries[0]["counts"], &tries[1]["counts"]),
+        (&false.into(), &true.into())
+    );
     assert_eq!(record["reasons"].as_array().map(Vec::len), Some(1));
 }
 
@@ -153,8 +168,15 @@ fn a_run_goes_on_after_it_was_killed() {
     bench.see("ACCEPT");
     assert_eq!(bench.close().code(), Some(0));
     let (_, record) = site.judge("26K-9001");
-    assert_eq!(record["lot"]["run"]["operators"], serde_json::json!(["OP-17", "OP-08"]));
-    let swept = site.events("26K-9001").iter().filter(|e| *e == "swept").count();
+    assert_eq!(
+        record["lot"]["run"]["operators"],
+        serde_json::json!(["OP-17", "OP-08"])
+    );
+    let swept = site
+        .events("26K-9001")
+        .iter()
+        .filter(|e| *e == "swept")
+        .count();
     assert_eq!(swept, 5, "each sweep once");
 }
 
@@ -170,7 +192,11 @@ fn a_sweep_kept_but_not_yet_in_the_journal_is_taken_in() {
     // The machine stopped between keeping the sweep and the line about it.
     let journal = site.file("lots/26K-9001/run.jsonl");
     let text = std::fs::read_to_string(&journal).expect("a journal");
-    let without: String = text.lines().filter(|l| !l.contains("\"swept\"")).map(|l| format!("{l}\n")).collect();
+    let without: String = text
+        .lines()
+        .filter(|l| !l.contains("\"swept\""))
+        .map(|l| format!("{l}\n"))
+        .collect();
     std::fs::write(&journal, without).expect("a journal");
     let mut bench = Bench::start(&site, &WHO);
     bench.line(LABEL);

@@ -69,7 +69,10 @@ fn an_unknown_part_and_a_date_code_to_come() {
     bench.line("[)>06PRG");
     bench.see("The scan cannot be used");
     bench.kill();
-    assert!(!super::site::exists(&site.file("lots")), "nothing was begun");
+    assert!(
+        !super::site::exists(&site.file("lots")),
+        "nothing was begun"
+    );
 }
 
 #[test]
@@ -118,6 +121,9 @@ fn control_text_of_a_label_cannot_act() {
     bench.line("=../x");
     bench.see("no limit file");
     let all = bench.all();
-    assert!(!all.contains('\u{1b}') && !all.contains('\u{202e}'), "{all:?}");
+    assert!(
+        !all.contains('\u{1b}') && !all.contains('\u{202e}'),
+        "{all:?}"
+    );
     bench.kill();
 }

@@ -65,7 +65,11 @@ impl Screen {
     fn until(&self, what: &str, seen: impl Fn(&str) -> bool) {
         let end = Instant::now() + PATIENCE;
         while !seen(&self.text()) {
-            assert!(Instant::now() < end, "{what} did not come:\n{}", self.text());
+            assert!(
+                Instant::now() < end,
+                "{what} did not come:\n{}",
+                self.text()
+            );
             thread::sleep(Duration::from_millis(10));
         }
     }
@@ -76,7 +80,9 @@ impl Screen {
 
     /// The scanner types and ends with Enter.
     fn line(&mut self, text: &str) {
-        self.keys.write_all(format!("{text}\r").as_bytes()).expect("keys");
+        self.keys
+            .write_all(format!("{text}\r").as_bytes())
+            .expect("keys");
         self.keys.flush().expect("keys");
     }
 
@@ -91,7 +97,11 @@ impl Screen {
     }
 
     fn alternate(&self) -> bool {
-        self.parser.lock().expect("a screen").screen().alternate_screen()
+        self.parser
+            .lock()
+            .expect("a screen")
+            .screen()
+            .alternate_screen()
     }
 }
 
@@ -160,7 +170,12 @@ fn no_colour_and_other_sizes() {
         pixel_width: 0,
         pixel_height: 0,
     };
-    screen.parser.lock().expect("a screen").screen_mut().set_size(24, 80);
+    screen
+        .parser
+        .lock()
+        .expect("a screen")
+        .screen_mut()
+        .set_size(24, 80);
     screen.master.resize(small).expect("resized");
     screen.see("Part 002 of 5");
     screen.keys.write_all(b"\x03").expect("keys");
@@ -176,7 +191,10 @@ fn with_captures(page: &str, captures: &[(&str, String)]) -> String {
     let mut page = page.to_owned();
     for (name, text) in captures {
         let mark = format!("<!-- capture: {name} -->\n```text\n");
-        let start = page.find(&mark).unwrap_or_else(|| panic!("{PAGE} has no {mark}")) + mark.len();
+        let start = page
+            .find(&mark)
+            .unwrap_or_else(|| panic!("{PAGE} has no {mark}"))
+            + mark.len();
         let end = start + page[start..].find("```").expect("the end of the block");
         let lines: Vec<&str> = text.lines().map(str::trim_end).collect();
         page.replace_range(start..end, &(lines.join("\n").trim_end().to_owned() + "\n"));
@@ -206,7 +224,12 @@ fn the_page_for_the_operator_shows_the_real_screen() {
     screen.see("part 002: unmeasured");
     screen.see("Part 002, try 2");
     captures.push(("fault", screen.text()));
-    for (part, sweep) in [("002, try 2", "002"), ("003", "003"), ("004", "004"), ("005", "005")] {
+    for (part, sweep) in [
+        ("002, try 2", "002"),
+        ("003", "003"),
+        ("004", "004"),
+        ("005", "005"),
+    ] {
         site.save(sweep);
         screen.see(&format!("part {part}: conforming"));
     }

@@ -14,8 +14,7 @@ pub const PATIENCE: Duration = Duration::from_secs(120);
 /// Now, as the program is told.
 pub const NOW: &str = "2026-10-05T09:12:00+02:00";
 /// The label of the reel, as a scanner types it.
-pub const LABEL: &str =
-    "[)>\u{1e}06\u{1d}PRG-9475-X7R\u{1d}Q400\u{1d}1T26K-9001\u{1d}10D2638\u{1d}KPO-9\u{1d}VSUP-041\u{1e}\u{4}";
+pub const LABEL: &str = "[)>\u{1e}06\u{1d}PRG-9475-X7R\u{1d}Q400\u{1d}1T26K-9001\u{1d}10D2638\u{1d}KPO-9\u{1d}VSUP-041\u{1e}\u{4}";
 
 const PART: &str = "part: RG-9475-X7R
 revision: 2
@@ -79,7 +78,12 @@ impl Site {
     pub fn list(&self, folder: &str) -> Vec<String> {
         let mut all: Vec<String> = fs::read_dir(self.file(folder))
             .unwrap_or_else(|e| panic!("{folder}: {e}"))
-            .map(|e| e.expect("an entry").file_name().to_string_lossy().into_owned())
+            .map(|e| {
+                e.expect("an entry")
+                    .file_name()
+                    .to_string_lossy()
+                    .into_owned()
+            })
             .collect();
         all.sort();
         all
@@ -104,7 +108,10 @@ impl Site {
     pub fn save_scaled(&self, part: &str, name: &str, factor: f64) {
         let path = format!("sample-lots/26K-0457/sweeps/{part}.csv");
         let text = fs::read_to_string(path).expect("a sweep");
-        let scaled: String = text.lines().map(|line| scale(line, factor) + "\n").collect();
+        let scaled: String = text
+            .lines()
+            .map(|line| scale(line, factor) + "\n")
+            .collect();
         self.put(name, scaled.as_bytes());
     }
 
@@ -204,7 +211,8 @@ impl Bench {
     /// A line is typed or scanned.
     pub fn line(&mut self, text: &str) {
         let pipe = self.child.stdin.as_mut().expect("a pipe");
-        pipe.write_all(format!("{text}\n").as_bytes()).expect("a line");
+        pipe.write_all(format!("{text}\n").as_bytes())
+            .expect("a line");
         pipe.flush().expect("a line");
     }
 
@@ -259,7 +267,9 @@ fn listen(mut from: impl Read + Send + 'static, to: Arc<Mutex<String>>) {
                 Err(e) => e.valid_up_to(),
             };
             let text: Vec<u8> = rest.drain(..whole).collect();
-            to.lock().expect("text").push_str(&String::from_utf8_lossy(&text));
+            to.lock()
+                .expect("text")
+                .push_str(&String::from_utf8_lossy(&text));
         }
     });
 }

@@ -1,7 +1,7 @@
 //! Threads that bring in what comes from outside: lines, keys, sweeps.
 
 use super::front::In;
-use crate::bench::source::{Event, Folder, Seen, Source, Trouble};
+use crate::bench::source::{Event, Folder, Instrument, Seen, Source, Trouble};
 use crate::station::Station;
 use std::io::BufRead;
 use std::path::Path;
@@ -107,13 +107,20 @@ pub fn no_source(station: &str) -> Trouble {
     )
 }
 
-/// Opens what the station file names: the watched folder.
+/// Opens what the station file names: the instrument, or else the watched folder.
 ///
 /// `known` is what a run that is resumed has seen.
 ///
 /// # Errors
-/// What is wrong with it; a station that names none.
+/// What is wrong with it; a station that names neither.
 pub fn open(root: &Path, station: &Station, known: Option<&[Seen]>) -> Result<Opened, Trouble> {
+    if let Some(link) = &station.instrument_link {
+        return Ok(Opened {
+            source: Box::new(Instrument::open(link, station)?),
+            hands_free: false,
+            baseline: None,
+        });
+    }
     let Some(watch) = &station.watch else {
         return Err(no_source(&station.name));
     };
