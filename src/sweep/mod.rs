@@ -18,12 +18,8 @@ pub mod touchstone;
 pub mod validity;
 
 pub use compensation::Standards;
-<<<<<<< HEAD
-pub use file::{Extent, extent, read_file, read_standard};
-=======
 pub use delimited::heading_scale;
-pub use file::{Extent, extent, read_file};
->>>>>>> main
+pub use file::{Extent, extent, read_file, read_standard};
 pub use naming::{is_sweep_file, natural_order, order};
 pub use network::{Network, Parameter};
 

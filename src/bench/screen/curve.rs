@@ -4,11 +4,11 @@ use crate::limits::Limits;
 use crate::quantity::shortest;
 use crate::readings::{Characteristic, Place};
 use crate::sweep::Sweep;
+use ratatui::Frame;
 use ratatui::layout::Rect;
 use ratatui::style::{Color, Modifier, Style};
 use ratatui::text::Span;
 use ratatui::widgets::canvas::{Canvas, Context, Line};
-use ratatui::Frame;
 use std::f64::consts::TAU;
 
 /// A limit as a stroke in hertz and ohm.
@@ -102,7 +102,13 @@ pub fn draw(frame: &mut Frame, area: Rect, sweep: &Sweep, limits: &Limits, colou
         .paint(|context: &mut Context| {
             for s in &strokes {
                 let x = |f: f64| f.log10().clamp(x0, x1);
-                let line = Line::new(x(s.from.0), s.from.1.log10(), x(s.to.0), s.to.1.log10(), shade(Color::Magenta));
+                let line = Line::new(
+                    x(s.from.0),
+                    s.from.1.log10(),
+                    x(s.to.0),
+                    s.to.1.log10(),
+                    shade(Color::Magenta),
+                );
                 context.draw(&line);
             }
             context.layer();
@@ -115,7 +121,9 @@ pub fn draw(frame: &mut Frame, area: Rect, sweep: &Sweep, limits: &Limits, colou
                     .map(|(f, z)| (f.log10(), z.log10()))
                     .collect();
                 for pair in points.windows(2) {
-                    context.draw(&Line::new(pair[0].0, pair[0].1, pair[1].0, pair[1].1, colour));
+                    context.draw(&Line::new(
+                        pair[0].0, pair[0].1, pair[1].0, pair[1].1, colour,
+                    ));
                 }
             };
             curve(resistances().collect(), shade(Color::DarkGray));
@@ -131,7 +139,11 @@ pub fn draw(frame: &mut Frame, area: Rect, sweep: &Sweep, limits: &Limits, colou
         height: 1.min(plot.height),
         ..plot
     };
-    let quiet = styled(Color::DarkGray).add_modifier(if colour { Modifier::empty() } else { Modifier::DIM });
+    let quiet = styled(Color::DarkGray).add_modifier(if colour {
+        Modifier::empty()
+    } else {
+        Modifier::DIM
+    });
     let left = shortest(rounded(f0), "Hz");
     let right = shortest(rounded(f1), "Hz");
     let middle = "|Z| and ESR";

@@ -135,7 +135,10 @@ fn said<'a>(messages: &[Message], width: usize, look: Look) -> Text<'a> {
             _ => "  ",
         };
         let text = printable(&message.text.replace('\n', " "));
-        for (i, line) in textwrap::wrap(&text, width.saturating_sub(2).max(10)).iter().enumerate() {
+        for (i, line) in textwrap::wrap(&text, width.saturating_sub(2).max(10))
+            .iter()
+            .enumerate()
+        {
             let head = if i == 0 { head } else { "  " };
             out.push(Line::styled(format!("{head}{line}"), style));
         }
@@ -215,7 +218,12 @@ fn banner(frame: &mut Frame, area: Rect, text: &str, style: Style) {
     frame.render_widget(Paragraph::new(lines), area);
 }
 
-fn work(frame: &mut Frame, area: Rect, (run, desk, told): (&Run, &Desk, Option<&Told>), look: Look) {
+fn work(
+    frame: &mut Frame,
+    area: Rect,
+    (run, desk, told): (&Run, &Desk, Option<&Told>),
+    look: Look,
+) {
     let [_, top, note, middle, foot] = Layout::vertical([
         Constraint::Length(u16::from(area.height > 14)),
         Constraint::Length(big::ROWS as u16),
@@ -245,10 +253,13 @@ fn work(frame: &mut Frame, area: Rect, (run, desk, told): (&Run, &Desk, Option<&
             let cautions: Vec<Line> = super::cautions::cautions(&desk.limits)
                 .iter()
                 .flat_map(|c| {
-                    textwrap::wrap(&format!("{}: {}", words::CAUTION, printable(c)), usize::from(middle.width).max(10))
-                        .into_iter()
-                        .map(|l| Line::styled(l.into_owned(), look.quiet()))
-                        .collect::<Vec<_>>()
+                    textwrap::wrap(
+                        &format!("{}: {}", words::CAUTION, printable(c)),
+                        usize::from(middle.width).max(10),
+                    )
+                    .into_iter()
+                    .map(|l| Line::styled(l.into_owned(), look.quiet()))
+                    .collect::<Vec<_>>()
                 })
                 .collect();
             frame.render_widget(Paragraph::new(cautions), middle);
@@ -330,7 +341,10 @@ fn readings(frame: &mut Frame, area: Rect, rows: &[[String; 4]], look: Look) {
         out.push(Line::styled(clip(&first, width), style));
         if tall {
             let room = width.saturating_sub(3);
-            out.push(Line::styled(format!("   {:>room$}", clip(limits, room)), look.quiet()));
+            out.push(Line::styled(
+                format!("   {:>room$}", clip(limits, room)),
+                look.quiet(),
+            ));
         }
     }
     frame.render_widget(Paragraph::new(out), area);
@@ -362,16 +376,30 @@ fn scan(frame: &mut Frame, area: Rect, fields: &[(&'static str, String)], look: 
     ])
     .areas(area);
     banner(frame, top, "SCAN", look.strong());
-    frame.render_widget(Paragraph::new(table(fields.iter().map(|(n, v)| (*n, v.clone())), usize::from(list.width), look)), list);
+    frame.render_widget(
+        Paragraph::new(table(
+            fields.iter().map(|(n, v)| (*n, v.clone())),
+            usize::from(list.width),
+            look,
+        )),
+        list,
+    );
 }
 
 /// Names and texts in two columns.
-fn table<'a>(rows: impl Iterator<Item = (&'a str, String)>, width: usize, look: Look) -> Vec<Line<'static>> {
+fn table<'a>(
+    rows: impl Iterator<Item = (&'a str, String)>,
+    width: usize,
+    look: Look,
+) -> Vec<Line<'static>> {
     const NAME: usize = 12;
     let mut out = Vec::new();
     for (name, text) in rows {
         let safe = printable(&text);
-        for (i, line) in textwrap::wrap(&safe, width.saturating_sub(NAME).max(10)).iter().enumerate() {
+        for (i, line) in textwrap::wrap(&safe, width.saturating_sub(NAME).max(10))
+            .iter()
+            .enumerate()
+        {
             let head = if i == 0 { name } else { "" };
             out.push(Line::from(vec![
                 Span::styled(format!("{head:<NAME$}"), look.quiet()),
@@ -411,8 +439,17 @@ fn end(frame: &mut Frame, area: Rect, ending: &Ending, look: Look) {
         Constraint::Min(0),
     ])
     .areas(area);
-    let text = format!("{} {}", words::lot_mark(record.verdict), words::lot_verdict(record.verdict));
-    banner(frame, top, &text, look.lot(record.verdict).add_modifier(Modifier::BOLD));
+    let text = format!(
+        "{} {}",
+        words::lot_mark(record.verdict),
+        words::lot_verdict(record.verdict)
+    );
+    banner(
+        frame,
+        top,
+        &text,
+        look.lot(record.verdict).add_modifier(Modifier::BOLD),
+    );
     let [why, label] = Layout::horizontal([
         Constraint::Min(30),
         Constraint::Length(if area.width >= 78 { 34 } else { 0 }),

@@ -17,11 +17,11 @@ use crate::lot::{LotVerdict, SEED_MAX};
 use chrono::{DateTime, FixedOffset};
 use front::{Front, Plain};
 use shop::Shop;
-use terminal::Screen;
 use sitting::{Over, Sitting, Wishes};
 use std::io::IsTerminal;
 use std::path::{Path, PathBuf};
 use std::sync::mpsc::channel;
+use terminal::Screen;
 
 /// Lead an operator through lots: scan, measure, verdict
 ///
@@ -87,10 +87,7 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     let shop = Shop {
         root: root.clone(),
         site,
-        lots: args
-            .lots
-            .clone()
-            .unwrap_or_else(|| root.join("lots")),
+        lots: args.lots.clone().unwrap_or_else(|| root.join("lots")),
         fixed: args.now,
         key: args.ledger_key.clone(),
         witness: args.witness.clone(),
@@ -109,9 +106,9 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
                 front.close();
                 over
             }
-            Err(error) => {
-                Over::Failed(format!("the terminal cannot be used ({error}): try --plain"))
-            }
+            Err(error) => Over::Failed(format!(
+                "the terminal cannot be used ({error}): try --plain"
+            )),
         }
     };
     match over {

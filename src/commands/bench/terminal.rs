@@ -132,7 +132,11 @@ impl Keeper {
     #[cfg(unix)]
     fn post() -> Option<Keeper> {
         use std::os::unix::process::CommandExt;
-        let set = Command::new("stty").arg("-g").stdin(Stdio::inherit()).output().ok()?;
+        let set = Command::new("stty")
+            .arg("-g")
+            .stdin(Stdio::inherit())
+            .output()
+            .ok()?;
         let set = String::from_utf8(set.stdout).ok()?;
         let child = Command::new("sh")
             .args(["-c", WATCH, "sh", set.trim()])
