@@ -76,6 +76,9 @@ pub struct Began {
     /// SHA-256 of the limit file that the plan is from.
     pub limits_sha256: String,
     pub revision: String,
+    /// What lay in the watched folder then.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub baseline: Option<Vec<Seen>>,
 }
 
 /// One thing that happened.
@@ -115,7 +118,7 @@ pub enum Event {
         #[serde(default, skip_serializing_if = "Option::is_none")]
         seen: Option<Seen>,
     },
-    /// What lay in the watched folder when the run began.
+    /// What lay in the watched folder when it was first looked at, where that was later than the beginning.
     Baseline {
         seen: Vec<Seen>,
     },

@@ -176,8 +176,8 @@ impl Run {
             again: BTreeSet::new(),
             given_up: BTreeSet::new(),
             by_part: BTreeMap::new(),
-            seen: Vec::new(),
-            baseline: false,
+            seen: began.baseline.clone().unwrap_or_default(),
+            baseline: began.baseline.is_some(),
             began: began.clone(),
         };
         for line in rest {

@@ -62,6 +62,8 @@ pub struct Scene<'a> {
     pub prompt: &'a str,
     /// Said since the last line was typed.
     pub said: &'a [Message],
+    /// How many messages of the same run were said before these.
+    pub said_before: usize,
     /// What the source is doing.
     pub activity: &'a str,
     /// Where the sweeps come from.

@@ -119,6 +119,8 @@ fn control_text_of_a_label_cannot_act() {
     bench.line("P../../etc/passwd");
     bench.see("no limit file");
     bench.line("=../x");
+    bench.see("Part number?");
+    bench.line("=../x");
     bench.see("no limit file");
     let all = bench.all();
     assert!(

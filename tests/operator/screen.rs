@@ -3,9 +3,14 @@
 use super::site::{LABEL, PATIENCE, Site, WHO};
 use portable_pty::{Child, CommandBuilder, MasterPty, PtySize, native_pty_system};
 use std::io::{Read, Write};
+use std::num::NonZero;
 use std::sync::{Arc, Mutex};
 use std::thread;
 use std::time::{Duration, Instant};
+
+fn cells(n: u16) -> NonZero<u16> {
+    NonZero::new(n).expect("not 0")
+}
 
 struct Screen {
     child: Box<dyn Child + Send + Sync>,
@@ -35,7 +40,11 @@ impl Screen {
             command.env(name, value);
         }
         let child = pair.slave.spawn_command(command).expect("reelgate starts");
-        let parser = Arc::new(Mutex::new(vt100::Parser::new(size.rows, size.cols, 0)));
+        let parser = Arc::new(Mutex::new(vt100::Parser::new(
+            cells(size.rows),
+            cells(size.cols),
+            0,
+        )));
         let raw = Arc::new(Mutex::new(Vec::new()));
         let mut reader = pair.master.try_clone_reader().expect("a reader");
         let (to, also) = (parser.clone(), raw.clone());
@@ -175,7 +184,7 @@ fn no_colour_and_other_sizes() {
         .lock()
         .expect("a screen")
         .screen_mut()
-        .set_size(24, 80);
+        .set_size(cells(24), cells(80));
     screen.master.resize(small).expect("resized");
     screen.see("Part 002 of 5");
     screen.keys.write_all(b"\x03").expect("keys");

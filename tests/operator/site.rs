@@ -116,7 +116,7 @@ impl Site {
     }
 
     fn put(&self, name: &str, bytes: &[u8]) {
-        let beside = self.file("incoming").join(format!("{name}.tmp"));
+        let beside = self.file(&format!("{name}.tmp"));
         fs::write(&beside, bytes).expect("a sweep");
         fs::rename(beside, self.file("incoming").join(format!("{name}.csv"))).expect("a sweep");
     }

@@ -46,6 +46,7 @@ pub struct Plain<'a> {
     out: &'a mut dyn Write,
     ring: bool,
     said: usize,
+    before: usize,
     prompt: String,
     page: Shown,
 }
@@ -66,6 +67,7 @@ impl<'a> Plain<'a> {
             out,
             ring,
             said: 0,
+            before: 0,
             prompt: String::new(),
             page: Shown::Nothing,
         }
@@ -107,11 +109,13 @@ impl Front for Plain<'_> {
             }
             Page::Plan(_) | Page::End(_) => {}
         }
-        if self.said > scene.said.len() {
+        if scene.said_before < self.before {
             self.said = 0;
         }
-        let new: Vec<&Message> = scene.said.iter().skip(self.said).collect();
-        self.said = scene.said.len();
+        self.before = scene.said_before;
+        let known = self.said.saturating_sub(scene.said_before);
+        let new: Vec<&Message> = scene.said.iter().skip(known).collect();
+        self.said = scene.said_before + scene.said.len();
         for one in new {
             self.out.write_all(plain::message(one).as_bytes())?;
         }

@@ -83,7 +83,12 @@ impl Shop {
             n => self.lots.join(format!("{lot}~{n}")),
         };
         let waits = |path: &PathBuf| waiting(path).is_some_and(|w| w.lot == lot);
-        let there = (1..).map(named).take_while(|path| path.exists());
+        // A journal that nothing was written to is that of a run that never began.
+        let begun = |path: &PathBuf| {
+            let empty = peek(path).is_some_and(|lines| lines.is_empty());
+            path.exists() && (!empty || path.join("lot.yaml").exists())
+        };
+        let there = (1..).map(named).take_while(begun);
         let mut all: Vec<PathBuf> = there.collect();
         let free = named(all.len() as u32 + 1);
         all.retain(waits);

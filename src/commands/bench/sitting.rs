@@ -74,6 +74,8 @@ struct Work {
     positions: Vec<u64>,
     told: Option<Told>,
     said: Vec<Message>,
+    /// Messages that are not shown any more.
+    dropped: usize,
     activity: String,
     pending: Option<Pending>,
     wish: Sender<Wish>,
@@ -172,6 +174,7 @@ impl Sitting<'_> {
             page: Page::Scan(&fields),
             prompt: words::prompt(Want::Label),
             said: &said,
+            said_before: 0,
             activity: "",
             source: "",
         };
@@ -208,6 +211,7 @@ impl Sitting<'_> {
                         page: Page::Scan(&fields),
                         prompt: words::prompt(want),
                         said: &said,
+                        said_before: 0,
                         activity: "",
                         source: "",
                     };
@@ -240,6 +244,7 @@ impl Sitting<'_> {
             page: Page::Plan(&text),
             prompt: words::BEGIN,
             said: &[],
+            said_before: 0,
             activity: "",
             source: "",
         };
@@ -292,13 +297,10 @@ impl Sitting<'_> {
             parts: force.demands.plan.required(),
             limits_sha256: force.limits_sha256.clone(),
             revision: force.desk.limits.revision.clone(),
+            baseline: opened.baseline.clone(),
         };
-        let at = || self.shop.now().to_rfc3339();
-        let mut lines = vec![folder.record(at(), Event::Began(began))?];
-        if let Some(seen) = &opened.baseline {
-            let seen = seen.clone();
-            lines.push(folder.record(at(), Event::Baseline { seen })?);
-        }
+        let at = self.shop.now().to_rfc3339();
+        let lines = [folder.record(at, Event::Began(began))?];
         let run = Run::replay(&lines, force.demands).map_err(|why| failed(no_run(&why)))?;
         Ok(self.at_work(run, folder, force.desk, opened))
     }
@@ -315,6 +317,7 @@ impl Sitting<'_> {
             positions,
             told: None,
             said: Vec::new(),
+            dropped: 0,
             activity: String::new(),
             pending: None,
             wish,
@@ -472,6 +475,7 @@ impl Sitting<'_> {
             },
             prompt: &prompt,
             said: &work.said,
+            said_before: work.dropped,
             activity: &work.activity,
             source: &work.source,
         };
@@ -505,6 +509,7 @@ impl Sitting<'_> {
                 Some(Typed::Leave) => vec![Act::Record(Event::Paused), Act::Leave],
                 Some(Typed::Line(line)) => {
                     self.front.turn();
+                    work.dropped += work.said.len();
                     work.said.clear();
                     operate::line(&work.run, &work.desk, &mut work.pending, &line)
                 }
@@ -513,6 +518,11 @@ impl Sitting<'_> {
                 match act {
                     Act::Say(message) => work.said.push(message),
                     Act::Record(event) => {
+                        // What the instrument is measuring is not wanted any more.
+                        if !work.hands_free {
+                            let _ = work.wish.send(Wish::Cancel);
+                            work.activity.clear();
+                        }
                         self.record(&mut work, event)?;
                         if work.run.last_kept().is_none_or(|t| {
                             work.told.as_ref().is_none_or(|told| told.part != t.part)
@@ -545,6 +555,7 @@ impl Sitting<'_> {
             },
             prompt: "",
             said: &said,
+            said_before: work.dropped + work.said.len(),
             activity: "",
             source: "",
         };
@@ -592,6 +603,7 @@ impl Sitting<'_> {
     }
 
     fn sweep(&mut self, work: &mut Work, taken: Taken) -> Done<()> {
+        work.dropped += work.said.len();
         work.said.clear();
         let sha256 = record::sha256(&taken.bytes);
         if let Some(file) = work.run.taken(&sha256) {
@@ -810,6 +822,7 @@ impl Sitting<'_> {
             page: Page::End(ending),
             prompt: words::NEXT_LOT,
             said: &[],
+            said_before: 0,
             activity: "",
             source: "",
         };

@@ -124,8 +124,8 @@ struct Keeper(Child);
 /// terminal though it is in the background.
 const WATCH: &str = r#"trap '' INT TERM HUP QUIT TTOU TSTP
 while read -r word; do [ "$word" = done ] && exit 0; done
-stty "$1" </dev/tty
-printf '\033[?1049l\033[?25h\033[0m' >/dev/tty"#;
+stty "$1" <&1
+printf '\033[?1049l\033[?25h\033[0m'"#;
 
 impl Keeper {
     /// `None` where there is no such process to be had; the terminal is then given back by this one alone.
@@ -141,7 +141,7 @@ impl Keeper {
         let child = Command::new("sh")
             .args(["-c", WATCH, "sh", set.trim()])
             .stdin(Stdio::piped())
-            .stdout(Stdio::null())
+            .stdout(Stdio::inherit())
             .stderr(Stdio::null())
             .process_group(0)
             .spawn()
