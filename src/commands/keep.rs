@@ -1,7 +1,7 @@
 //! Keeping a record: its entry in the ledger first, then its files beside it.
 
 use super::evidence::{self, Evidence, first_occasion};
-use super::store::{Paths, write_whole};
+use super::store::{Paths, remove_leftovers, write_whole};
 use crate::certificate::{self, Curve, InLedger, Paper};
 use crate::ledger::disk::System;
 use crate::ledger::{
@@ -9,12 +9,13 @@ use crate::ledger::{
     hex, ledger_key, sha256, sha256_hex, witness,
 };
 use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
-use chrono::{DateTime, FixedOffset, Timelike};
+use chrono::{DateTime, FixedOffset, Local, Timelike};
 use std::collections::BTreeSet;
 use std::fs;
 use std::io::ErrorKind;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use std::time::SystemTime;
 
 /// Name and version, as entries have it.
 pub const PROGRAM: &str = concat!("reelgate ", env!("CARGO_PKG_VERSION"));
@@ -40,7 +41,9 @@ pub struct Place {
 
 /// The time that was given, else the clock's; to the second.
 pub fn now(given: Option<DateTime<FixedOffset>>) -> DateTime<FixedOffset> {
-    let now = given.unwrap_or_else(|| chrono::Local::now().fixed_offset());
+    // `Local::now` does not survive a clock that stands before 1970.
+    let clock = || DateTime::<Local>::from(SystemTime::now()).fixed_offset();
+    let now = given.unwrap_or_else(clock);
     now.with_nanosecond(0).unwrap_or(now)
 }
 
@@ -251,6 +254,8 @@ fn answer(place: &Place, ledger: &Ledger, entry: &Entry, paper: Paper) -> Result
     let written = if has_json && has_pdf {
         Ok(())
     } else {
+        remove_leftovers(&paths.pdf);
+        remove_leftovers(&paths.json);
         restore(place, entry.index, has_pdf, paper)
             .and_then(|pdf| write(&paths, pdf.as_deref(), &json))
     };

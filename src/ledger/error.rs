@@ -50,6 +50,18 @@ impl LedgerError {
         }
     }
 
+    /// The same error where it came when the entry had been made: nobody may be told that nothing
+    /// was recorded.
+    pub(super) fn after_the_commit(mut self) -> Self {
+        if let LedgerError::Database {
+            outcome_unknown, ..
+        } = &mut self
+        {
+            *outcome_unknown = true;
+        }
+        self
+    }
+
     pub(super) fn damaged(what: impl Into<String>, why: impl Into<String>) -> Self {
         LedgerError::Damaged {
             what: what.into(),
