@@ -295,8 +295,8 @@ fn restore(
     if has_pdf {
         return Ok(None);
     }
-    let mut ledger = place.open().map_err(|e| e.to_string())?;
-    let recorded = ledger.entry(index).map_err(|e| e.to_string())?;
+    let mut ledger = place.open().map_err(unissued)?;
+    let recorded = ledger.entry(index).map_err(unissued)?;
     let (sources, made) = drawn_again(&ledger, &recorded.entry)?;
     let papers = [paper, Paper::A4, Paper::Letter];
     issue(place, &mut ledger, &recorded, &sources, &made, &papers).map(Some)
@@ -328,7 +328,7 @@ fn issue(
         proof: &proof,
         copy: None,
     };
-    let known = certificates_of(ledger, &made.record.record).map_err(|e| e.to_string())?;
+    let known = certificates_of(ledger, &made.record.record).map_err(unissued)?;
     let papers = if known.is_empty() {
         &papers[..1]
     } else {
@@ -346,8 +346,13 @@ fn issue(
     let by = place.by(made.record.lot.operator.as_deref());
     ledger
         .issued(&made.record.record, &pdf, &by)
-        .map_err(|e| e.to_string())?;
+        .map_err(unissued)?;
     Ok(pdf)
+}
+
+/// The record stands; what is missing is the entry of its certificate.
+fn unissued(error: LedgerError) -> String {
+    format!("its PDF was not entered in the ledger: {error}")
 }
 
 /// Makes the certificate of a record again, marked as a copy and with the ledger's newest

@@ -130,7 +130,7 @@ class Bench:
             return f"exit status {status}, and no record", "lost"
         if not killed and status == 2 and not err.strip():
             return "exit status 2 without a word", "mute"
-        if "nothing was recorded" in err and there:
+        if "no entry was made" in err and "recorded, but" not in err and there:
             return f"recorded, and said not to be: {err}", "untrue"
         again = self.run(site, ["judge", LOT])
         if again.returncode != 3:
