@@ -83,7 +83,7 @@ struct Circumstances {
     /// The time, RFC 3339 with offset [default: now]
     #[arg(long, env = "REELGATE_NOW", value_name = "TIME", value_parser = DateTime::parse_from_rfc3339)]
     now: Option<DateTime<FixedOffset>>,
-    /// File on another machine or share that gets each new checkpoint
+    /// File on another machine or share that gets each new checkpoint [default: the site file's]
     #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Option<PathBuf>,
 }
@@ -155,7 +155,8 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
             reason,
             by,
             with,
-        } => reissue(record, reason, by.as_deref(), &place(&site, with))
+        } => place(&site, with)
+            .and_then(|place| reissue(record, reason, by.as_deref(), &place))
             .and_then(|act| act.done(context)),
         Command::Dispose {
             record,
@@ -163,7 +164,8 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
             reason,
             by,
             with,
-        } => dispose(record, *decision, reason, by, &place(&site, with))
+        } => place(&site, with)
+            .and_then(|place| dispose(record, *decision, reason, by, &place))
             .and_then(|act| act.done(context)),
     };
     match done {
@@ -181,14 +183,15 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     }
 }
 
-fn place(site: &Site, with: &Circumstances) -> Place {
-    Place {
+fn place(site: &Site, with: &Circumstances) -> Result<Place, String> {
+    let rules = site.rules().map_err(|stop| stop.to_string())?;
+    Ok(Place {
         records: site.records(),
         certificates: site.certificates(),
         key: None,
-        witness: with.witness.clone(),
+        witness: site.witness(with.witness.as_deref(), rules.as_ref()),
         now: keep::now(with.now),
-    }
+    })
 }
 
 fn open(site: &Site) -> Result<Ledger, String> {

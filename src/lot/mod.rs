@@ -2,6 +2,7 @@
 //!
 //! No files, no clock: what a lot comes to depends on the arguments alone.
 
+mod bench_run;
 mod capability;
 mod conditions;
 mod curve;
@@ -15,12 +16,16 @@ mod switching;
 mod variables;
 mod verdict;
 
+pub use bench_run::{Aside, BenchRun, SEED_MAX, SetAside};
 pub use capability::Indices;
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
 pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
-pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection, TrendSection};
+pub use rules::{
+    Common, CommonShift, Findings, GroupSection, JointOutlier, JointSection, LotSeries,
+    MixedSection, Shift, TrendSection, common_shift,
+};
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
 pub use switching::{ClassState, Switching, severity_state};
@@ -59,6 +64,8 @@ pub struct Lot {
     pub last_heat: Option<NaiveDateTime>,
     /// A folder or a file, relative to the lot folder.
     pub sweeps: String,
+    /// What the operator's run says.
+    pub run: BenchRun,
 }
 
 impl Lot {

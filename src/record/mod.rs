@@ -11,9 +11,9 @@ mod past;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ClassSection, ClassState, ConditionSection, Findings, GroupSection, JointOutlier, JointSection,
-    LotVerdict, MixedSection, OperatingCharacteristic, Sampling, Statistics, Step, Switching,
-    TrendSection, VariablesSection,
+    ClassSection, ClassState, CommonShift, ConditionSection, Findings, GroupSection, JointOutlier,
+    JointSection, LotVerdict, MixedSection, OperatingCharacteristic, Sampling, SetAside,
+    Statistics, Step, Switching, TrendSection, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
@@ -40,6 +40,9 @@ pub struct LotRecord {
     #[serde(default)]
     pub supersedes: Option<String>,
     pub program: Program,
+    /// Where the site has a site file.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub site: Option<SiteSection>,
     pub lot: LotSection,
     pub limits: LimitsSection,
     pub station: StationSection,
@@ -71,6 +74,15 @@ pub struct Program {
     pub version: String,
 }
 
+/// The site file in force.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct SiteSection {
+    /// Its name.
+    pub site: String,
+    pub sha256: String,
+}
+
 /// The lot as `lot.yaml` states it.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[allow(missing_docs)]
@@ -92,8 +104,26 @@ pub struct LotSection {
     pub drive: Option<f64>,
     pub last_heat: Option<String>,
     pub sweeps: String,
+    /// What the operator's run says, where there was one.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub run: Option<RunSection>,
     /// Of lot.yaml.
     pub sha256: String,
+}
+
+/// What the operator's run says of the lot.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct RunSection {
+    /// The seed that the positions along the reel were drawn with.
+    pub seed: Option<u64>,
+    /// Every scan as typed, where the label came in more than one.
+    pub scans: Vec<String>,
+    /// Everybody who measured, in order.
+    pub operators: Vec<String>,
+    /// The last good check of the jig.
+    pub jig_checked: Option<String>,
+    pub set_aside: Vec<SetAside>,
 }
 
 /// The limit file in force.

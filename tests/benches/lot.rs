@@ -93,6 +93,7 @@ fn main() {
         .find_map(|a| a.parse().ok())
         .unwrap_or(125);
     let sources = Sources {
+        site: None,
         lot: text("lot.yaml", LOT),
         limits: text("limits/parts/RG-0475-X7R.yaml", LIMITS),
         station: text("limits/stations/BENCH-1.yaml", STATION),
@@ -110,8 +111,13 @@ fn main() {
         .iter()
         .flat_map(|f| read_file(f, &station, None))
         .collect();
-    let judge =
-        |a: &Attempt| judge_part(&[(a, judge_try(a, &limits, &budget, None))], &limits.retest).0;
+    let judge = |a: &Attempt| {
+        judge_part(
+            &[(a, judge_try(a, &limits, &budget, None), None)],
+            &limits.retest,
+        )
+        .0
+    };
     let records: Vec<_> = attempts.iter().map(judge).collect();
     let plan =
         reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");

@@ -202,6 +202,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 name: "reelgate".into(),
                 version: "0.1.0".into(),
             },
+            site: None,
             lot: lot(parts),
             limits: limits(&kinds),
             station: station(),
@@ -527,12 +528,14 @@ fn part(name: &str, kinds: &[Kind], dice: &mut Dice) -> PartRecord {
         verdict: PartVerdict::Conforming,
         class: None,
         drive: None,
+        series: None,
         attempts: vec![AttemptRecord {
             attempt: 1,
             file: format!("sweeps/{name}.csv"),
             sha256: format!("{:016x}", dice.0).repeat(4),
             verdict: PartVerdict::Conforming,
             counts: true,
+            set_aside: None,
             notes: vec![Note::new(
                 "delimiter_found",
                 "Fields are separated by semicolons, decimals by a comma.",
@@ -611,6 +614,7 @@ fn lot(parts: usize) -> LotSection {
         drive: Some(0.98),
         last_heat: Some("2026-07-01".into()),
         sweeps: "sweeps".into(),
+        run: None,
         sha256: "a1".repeat(32),
     }
 }

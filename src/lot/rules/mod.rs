@@ -1,12 +1,14 @@
 //! The lot rules of a limit file: what each finds, why it holds the lot, and how that came about.
 
 mod capability;
+mod common_shift;
 mod joint;
 mod mixed;
 mod outliers;
 mod trend;
 mod warnings;
 
+pub use common_shift::{Common, CommonShift, LotSeries, Shift, common_shift};
 pub use joint::{JointOutlier, JointSection};
 pub use mixed::{GroupSection, MixedSection};
 pub use trend::TrendSection;
@@ -16,6 +18,7 @@ use super::{History, Statistics};
 use crate::diagnostic::Note;
 use crate::judgement::PartRecord;
 use crate::limits::Limits;
+use crate::station::Station;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
 
@@ -34,12 +37,18 @@ pub struct Findings {
     /// Against the accepted lots before, one a characteristic that a rule names.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub trend: Vec<TrendSection>,
+    /// The lot against the lots before it on the same station, where its parts have a series circuit.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub common_shift: Option<CommonShift>,
 }
 
 impl Findings {
     /// Whether no rule looked for anything.
     pub fn is_empty(&self) -> bool {
-        self.joint.is_empty() && self.mixed.is_empty() && self.trend.is_empty()
+        self.joint.is_empty()
+            && self.mixed.is_empty()
+            && self.trend.is_empty()
+            && self.common_shift.is_none()
     }
 }
 
@@ -57,6 +66,7 @@ pub(super) struct Judged<'a> {
     /// The lot's number.
     pub(super) lot: &'a str,
     pub(super) limits: &'a Limits,
+    pub(super) station: &'a Station,
     pub(super) parts: &'a [PartRecord],
     pub(super) statistics: &'a IndexMap<String, Statistics>,
     pub(super) history: &'a History,
@@ -69,5 +79,6 @@ pub(super) fn evaluate(judged: &Judged) -> Ruled {
     outliers::evaluate(judged, &mut ruled);
     mixed::evaluate(judged, &mut ruled);
     trend::evaluate(judged, &mut ruled);
+    common_shift::evaluate(judged, &mut ruled);
     ruled
 }
