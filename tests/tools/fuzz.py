@@ -37,9 +37,10 @@ TARGETS = {
     "quantity": (48, 1024, "quantity"),
     "touchstone": (256, 256 << 10, "touchstone"),
     "delimited": (256, 256 << 10, "delimited"),
-    "lot": (256, 128 << 10, "yaml"),
-    "station": (384, 128 << 10, "yaml"),
-    "limits": (384, 128 << 10, "yaml"),
+    "site": (384, 64 << 10, "yaml"),
+    "lot": (256, 64 << 10, "yaml"),
+    "station": (384, 64 << 10, "yaml"),
+    "limits": (384, 64 << 10, "yaml"),
 }
 # Kept inputs are at most so long, and so many bytes for each target.
 KEPT_LENGTH, KEPT_BYTES = 4096, 160 << 10

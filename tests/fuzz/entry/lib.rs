@@ -9,7 +9,7 @@ mod sweeps;
 mod texts;
 
 pub use ledgers::{entry, note, record};
-pub use people::{limits, lot, station};
+pub use people::{limits, lot, site, station};
 pub use sweeps::{delimited, touchstone};
 pub use texts::{label, quantity};
 
@@ -22,10 +22,11 @@ pub static THOROUGH: AtomicBool = AtomicBool::new(false);
 pub type Target = (&'static str, fn(&[u8]));
 
 /// Every target.
-pub const TARGETS: [Target; 10] = [
+pub const TARGETS: [Target; 11] = [
     ("limits", limits),
     ("station", station),
     ("lot", lot),
+    ("site", site),
     ("delimited", delimited),
     ("touchstone", touchstone),
     ("label", label),

@@ -2,7 +2,7 @@
 
 use reelgate::diagnostic::yaml::{self, Node, Shape};
 use reelgate::diagnostic::{Faults, Source, as_json};
-use reelgate::{limits as limit_file, lot as lot_file, station as station_file};
+use reelgate::{limits as limit_file, lot as lot_file, site as site_file, station as station_file};
 use serde_yaml::Value;
 use std::sync::atomic::Ordering::Relaxed;
 
@@ -76,6 +76,18 @@ pub fn lot(bytes: &[u8]) {
     assert!(numbers.iter().flatten().all(|v| v.is_finite()), "{lot:?}");
     assert!(!lot.sweeps.starts_with('/') && !lot.sweeps.split('/').any(|p| p == ".."));
     assert!(lot.age_hours().is_none_or(f64::is_finite));
+}
+
+/// A site file.
+pub fn site(bytes: &[u8]) {
+    let Some(site) = taken(bytes, site_file::read("a.yaml", bytes)) else {
+        return;
+    };
+    for key in &site.trusted_keys {
+        assert!(!key.key.name().is_empty());
+        assert!(!key.counts_at(0) || key.from_entry == 0, "{key:?}");
+        assert_eq!(site.trusted(key.key.name()), Some(key), "names are unique");
+    }
 }
 
 /// What was read. Where inputs are many, the faults of some alone (chosen by their bytes) are shown and

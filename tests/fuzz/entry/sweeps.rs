@@ -1,65 +1,56 @@
 //! Sweep files. The first byte of the input says which station or which name the file has.
 
-use reelgate::station::{
-    Column, Compensation, Layout, Method, Reference, Standard, Station, Uncertainty,
-};
+use reelgate::station::{Station, read as read_station};
 use reelgate::sweep::{Attempt, RawFile, Standards, read_file};
+use std::sync::LazyLock;
 
-/// A table: `0` resistance and reactance, `1` two channels, `2` capacitance and loss, `3` ratio in
-/// dB and phase, `4` the sweep of a standard.
+fn stations(texts: [&str; 5]) -> [Station; 5] {
+    texts.map(|text| {
+        read_station("F.yaml", format!("station: F\n{text}\n").as_bytes()).expect("a station file")
+    })
+}
+
+static TABLES: LazyLock<[Station; 5]> = LazyLock::new(|| {
+    stations([
+        "method: direct\nlayout: {columns: {frequency: f, resistance: R, reactance: X}}",
+        "method: series_reference\nreference: {resistance: 1 Ω}\n\
+         layout: {columns: {frequency: f, a_re: a, a_im: b, b_re: c, b_im: d}}",
+        "method: direct\nlayout: {columns: {frequency: f, capacitance: C, esr: R}}",
+        "method: series_reference\nreference: {resistance: 1 Ω}\n\
+         layout: {columns: {frequency: f, ratio_db: g, phase: p}}",
+        "method: direct\nlayout: {columns: {frequency: f, resistance: R, reactance: X}}\n\
+         compensation: {short: {sweep: 001.csv, resistance: 0.1 mΩ}}",
+    ])
+});
+
+/// A table: `0` resistance and reactance, `1` two channels, `2` capacitance and resistance, `3`
+/// ratio in dB and phase, `4` the sweep of a standard, and of a part.
 pub fn delimited(bytes: &[u8]) {
     let Some((which, bytes)) = bytes.split_first() else {
         return;
     };
-    let columns: &[(Column, &str)] = match which % 5 {
-        1 => &[
-            (Column::Frequency, "f"),
-            (Column::ARe, "a"),
-            (Column::AIm, "b"),
-            (Column::BRe, "c"),
-            (Column::BIm, "d"),
-        ],
-        2 => &[
-            (Column::Frequency, "f"),
-            (Column::Capacitance, "C"),
-            (Column::Esr, "R"),
-        ],
-        3 => &[
-            (Column::Frequency, "f"),
-            (Column::RatioDb, "g"),
-            (Column::Phase, "p"),
-        ],
-        _ => &[
-            (Column::Frequency, "f"),
-            (Column::Resistance, "R"),
-            (Column::Reactance, "X"),
-        ],
-    };
-    let method = match which % 5 {
-        1 | 3 => Method::SeriesReference,
-        _ => Method::Direct,
-    };
-    let mut station = station(method);
-    station.layout = Some(Layout {
-        columns: columns.iter().map(|(c, h)| (*c, (*h).to_owned())).collect(),
-        peak: false,
-    });
-    let file = raw("001.csv", bytes);
-    if which % 5 == 4 {
-        station.compensation.short = Some(Standard {
-            sweep: file.name.clone(),
-            resistance: 0.0,
-            inductance: 0.0,
-            capacitance: 0.0,
-        });
-        match Standards::read(std::slice::from_ref(&file), &station) {
-            Ok(standards) => all_sound(&read_file(&file, &station, Some(&standards)), bytes),
-            Err(notes) => assert!(!notes.is_empty()),
-        }
+    let Some(station) = TABLES.get(usize::from(which % 5)) else {
         return;
+    };
+    let file = raw("001.csv", bytes);
+    if station.compensation.short.is_none() {
+        return all_sound(&read_file(&file, station, None), bytes);
     }
-    all_sound(&read_file(&file, &station, None), bytes);
+    match Standards::read(std::slice::from_ref(&file), station) {
+        Ok(standards) => all_sound(&read_file(&file, station, Some(&standards)), bytes),
+        Err(notes) => assert!(!notes.is_empty()),
+    }
 }
+
+static NETWORKS: LazyLock<[Station; 5]> = LazyLock::new(|| {
+    stations([
+        "method: reflection",
+        "method: shunt_through",
+        "method: series_through",
+        "method: reflection",
+        "method: shunt_through",
+    ])
+});
 
 /// A Touchstone file: `0` one port in reflection, `1` two ports in shunt, `2` two ports in series,
 /// `3` one port of impedances, `4` without the number of ports in the name.
@@ -67,37 +58,17 @@ pub fn touchstone(bytes: &[u8]) {
     let Some((which, bytes)) = bytes.split_first() else {
         return;
     };
-    let (name, method) = match which % 5 {
-        0 => ("001.s1p", Method::Reflection),
-        1 => ("001.s2p", Method::ShuntThrough),
-        2 => ("001.s2p", Method::SeriesThrough),
-        3 => ("001.z1p", Method::Reflection),
-        _ => ("001.ts", Method::ShuntThrough),
-    };
-    all_sound(&read_file(&raw(name, bytes), &station(method), None), bytes);
+    let which = usize::from(which % 5);
+    let names = ["001.s1p", "001.s2p", "001.s2p", "001.z1p", "001.ts"];
+    if let (Some(name), Some(station)) = (names.get(which), NETWORKS.get(which)) {
+        all_sound(&read_file(&raw(name, bytes), station, None), bytes);
+    }
 }
 
 fn raw(name: &str, bytes: &[u8]) -> RawFile {
     RawFile {
         name: name.to_owned(),
         bytes: bytes.to_vec(),
-    }
-}
-
-fn station(method: Method) -> Station {
-    Station {
-        name: "BENCH-F".to_owned(),
-        instrument: None,
-        jig: None,
-        method,
-        reference: (method == Method::SeriesReference).then_some(Reference {
-            resistance: 1.0,
-            tolerance: 0.0,
-            inductance: 0.0,
-        }),
-        layout: None,
-        compensation: Compensation::default(),
-        uncertainty: Uncertainty::default(),
     }
 }
 
