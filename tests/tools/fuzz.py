@@ -42,8 +42,8 @@ TARGETS = {
     "station": (384, 64 << 10, "yaml"),
     "limits": (384, 64 << 10, "yaml"),
 }
-# Kept inputs are at most so long, and so many bytes for each target.
-KEPT_LENGTH, KEPT_BYTES = 4096, 160 << 10
+# Kept inputs are at most so long, and so many for each target.
+KEPT_LENGTH, KEPT_INPUTS = 2048, 160
 
 
 def build(sanitizer):
@@ -92,13 +92,13 @@ def keep(programs, name):
     shutil.rmtree(merged, ignore_errors=True)
     os.makedirs(merged)
     sources = [merged, kept, os.path.join(OUT, "fuzz-corpus", name)]
-    command = runner(programs, name, sources, ["-merge=1", f"-max_len={KEPT_LENGTH}"])
+    command = runner(programs, name, sources, ["-set_cover_merge=1", f"-max_len={KEPT_LENGTH}"])
     subprocess.run(command, check=True, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
-    room = KEPT_BYTES
-    for digest in sorted(os.listdir(merged), key=lambda d: (os.path.getsize(os.path.join(merged, d)), d)):
-        room -= os.path.getsize(os.path.join(merged, digest))
-        if room > 0 and not os.path.exists(os.path.join(kept, digest[:16])):
-            shutil.copy(os.path.join(merged, digest), os.path.join(kept, digest[:16]))
+    digests = sorted(os.listdir(merged), key=lambda digest: (os.path.getsize(os.path.join(merged, digest)), digest))
+    # Where there are too many, some of every size.
+    every = max(1, -(-len(digests) // KEPT_INPUTS))
+    for digest in digests[::every]:
+        shutil.copy(os.path.join(merged, digest), os.path.join(kept, digest[:16]))
 
 
 def commit():
