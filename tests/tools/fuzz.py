@@ -5,7 +5,7 @@
 
 Builds the targets with cargo-fuzz (`cargo install cargo-fuzz`) on the stable toolchain, and runs
 each N times from its corpus, K targets at a time, at the lowest priority, with at most 512 MB of
-memory and five seconds for an input; then a share of that with inputs as long as the parser takes
+memory and five seconds (`--timeout`) for an input; then a share of that with inputs as long as the parser takes
 them. Prints a table with date, commit, executions and coverage, and writes it to
 target/fuzz-report.md. An input that broke something stands in target/fuzz-found/<target>/: mend the
 parser and keep the input in tests/fuzz/corpus/<target>/, where tests/fuzz_corpus.rs replays it.
@@ -61,17 +61,17 @@ def runner(programs, name, corpus, options):
     found = os.path.join(OUT, "fuzz-found", name)
     os.makedirs(found, exist_ok=True)
     words = os.path.join(CRATE, "dict", TARGETS[name][2])
-    return ["nice", "-n", "19", os.path.join(programs, name), "-rss_limit_mb=512", "-timeout=5", "-print_final_stats=1",
+    return ["nice", "-n", "19", os.path.join(programs, name), "-rss_limit_mb=512", "-print_final_stats=1",
             f"-artifact_prefix={found}/", f"-dict={words}", *options, *corpus]
 
 
-def run(programs, name, runs, longest, log):
+def run(programs, name, runs, longest, seconds, log):
     """One run; executions, edges, features and how many inputs are kept, or what was found."""
     corpus = os.path.join(OUT, "fuzz-corpus", name)
     os.makedirs(corpus, exist_ok=True)
     # Weighing inputs by rarity (-entropic=1) costs three times as much as reading them.
     command = runner(programs, name, [corpus, os.path.join(CRATE, "corpus", name)],
-                     [f"-runs={runs}", f"-max_len={longest}", "-reload=0", "-entropic=0"])
+                     [f"-runs={runs}", f"-max_len={longest}", f"-timeout={seconds}", "-reload=0", "-entropic=0"])
     with open(log, "w", encoding="utf-8") as out:
         code = subprocess.run(command, stdout=out, stderr=out).returncode
     with open(log, encoding="utf-8", errors="replace") as file:
@@ -115,6 +115,8 @@ def main():
     parser.add_argument("--only", help="only these targets: limits,label")
     parser.add_argument("--at-once", type=int, default=2)
     parser.add_argument("--sanitizer", default="none", choices=["none", "address"])
+    parser.add_argument("--timeout", type=int, default=5,
+                        help="seconds by the clock for one input; more on a machine that is busy otherwise")
     parser.add_argument("--keep", action="store_true")
     parser.add_argument("--built", help="folder with targets that were built before")
     arguments = parser.parse_args()
@@ -134,7 +136,7 @@ def main():
         for what, count, longest in (("", arguments.runs, short), (f", inputs to {long >> 10} KiB", arguments.long, long)):
             if count == 0:
                 continue
-            done = run(programs, name, count, longest, os.path.join(logs, f"{name}{longest}.log"))
+            done = run(programs, name, count, longest, arguments.timeout, os.path.join(logs, f"{name}{longest}.log"))
             row = (f"| {name}{what} | {done['executions']:,} | {done['edges']:,} | {done['features']:,} | "
                    f"{done['inputs']:,} | {done['memory']} MB | {done['wrong'] or 'nothing'} |")
             rows_of.append((row, done["wrong"]))
