@@ -237,8 +237,15 @@ fn finish(
         paths,
         made: Some(made),
         unwritten: written.err(),
-        warning: place.tell_witness(ledger).err(),
+        warning: warning(recorded, place.tell_witness(ledger).err()),
     }
+}
+
+/// Anomalies of the entry, and that the witness was not told.
+fn warning(recorded: &Recorded, witness: Option<String>) -> Option<String> {
+    let notes = recorded.entry.notes.iter().map(|note| note.text.clone());
+    let all: Vec<String> = notes.chain(witness).collect();
+    (!all.is_empty()).then(|| all.join("; "))
 }
 
 /// The record that is there, with what is missing of its files made again.

@@ -10,6 +10,7 @@
 use super::approval::{Approved, Statement};
 use super::{Act, Archive, Entry, LedgerError, Query, Reader};
 use crate::site::{self, Role, SiteFile, TrustedKey};
+use std::collections::BTreeMap;
 
 /// The approvals before a place in the ledger.
 #[derive(Debug, Default)]
@@ -141,14 +142,27 @@ impl Trust {
         &self.problems
     }
 
-    /// Statements about limit and station files that none of these keys has signed, by entry.
-    pub fn signed_by_none(&self, keys: &[&TrustedKey]) -> Vec<u64> {
-        let signed = |claim: &&Claim| {
-            !keys
-                .iter()
-                .any(|key| Statement::open(&claim.note, &key.key).is_ok())
-        };
-        self.claims.iter().filter(signed).map(|c| c.entry).collect()
+    /// Statements about limit and station files that none of these keys has signed, or that are
+    /// copies of earlier ones: entry, and what is wrong.
+    pub fn doubtful(&self, keys: &[&TrustedKey]) -> Vec<(u64, String)> {
+        let mut last: BTreeMap<&str, u64> = BTreeMap::new();
+        let mut found = Vec::new();
+        for claim in &self.claims {
+            let signs = |key: &&TrustedKey| Statement::open(&claim.note, &key.key).is_ok();
+            let file = claim.statement.file.as_str();
+            let wrong = if keys.iter().any(signs) {
+                fresh(claim, last.get(file).copied()).err()
+            } else {
+                Some("is not signed by a key that a site file lists".to_owned())
+            };
+            match wrong {
+                Some(why) => found.push((claim.entry, why)),
+                None => {
+                    last.insert(file, claim.entry);
+                }
+            }
+        }
+        found
     }
 
     /// Where a limit or station file stands by the keys of a site file.

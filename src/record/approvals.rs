@@ -1,5 +1,6 @@
 //! Approvals of the files that a lot is judged by, as its record shows them.
 
+use super::LotRecord;
 use crate::diagnostic::Note;
 use crate::lot::Step;
 use serde::{Deserialize, Serialize};
@@ -58,6 +59,24 @@ impl ApprovalSection {
             "{revision}by {} ({}), entry {} of {}: {}",
             self.by, self.role, self.entry, self.time, self.meaning
         )
+    }
+}
+
+impl LotRecord {
+    /// What there is to say of the approval of a file under that folder (`limits/parts/`); nothing
+    /// where the site neither demands approvals nor has one.
+    pub fn approval_words(&self, folder: &str) -> Option<String> {
+        let found = self.approvals.iter().find(|a| a.file.starts_with(folder));
+        let demanded = self
+            .site
+            .as_ref()
+            .is_some_and(|site| site.approval == "required");
+        match found {
+            Some(approval) => Some(format!("Approved: {}", approval.words())),
+            None => {
+                demanded.then(|| "Not approved in this form when the lot was judged".to_owned())
+            }
+        }
     }
 }
 

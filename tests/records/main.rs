@@ -1,7 +1,9 @@
 //! Records from end to end, through the program: judged, listed, shown, exported, disposed of,
 //! verified, and tampered with in every place.
 
+mod approvals;
 mod history;
+mod retest;
 mod site;
 mod tamper;
 
