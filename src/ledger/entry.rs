@@ -6,6 +6,7 @@
 
 use super::error::LedgerError;
 use crate::diagnostic::Note;
+use crate::statistics::sampling::Severity;
 use serde::{Deserialize, Serialize};
 
 /// The version of the shape of an entry.
@@ -58,8 +59,18 @@ pub enum Act {
         decision: Decision,
         reason: String,
     },
+    /// A person set the severity of inspection of a part from a supplier (`None`: lots that name
+    /// none), for one class or for all (ISO 2859-1:1999, 9.1 and 9.4).
+    Severity {
+        part: String,
+        supplier: Option<String>,
+        class: Option<String>,
+        severity: Severity,
+        reason: String,
+    },
     /// A limit, station or site file was approved. The object with role `limits`, `station` or
-    /// `site` is the file, those with role `compensation` belong to it; `statement` is the signed note (see [`super::approval`]).
+    /// `site` is the file, those with role `compensation` belong to it; `statement` is the signed
+    /// note (see [`super::approval`]).
     Approval {
         file: String,
         revision: Option<String>,
@@ -114,11 +125,12 @@ pub struct ObjectRef {
 }
 
 impl Act {
-    /// `judged`, `disposition`, `approval`, `withdrawal`, `issue`, `reissue`.
+    /// `judged`, `disposition`, `severity`, `approval`, `withdrawal`, `issue`, `reissue`.
     pub fn kind(&self) -> &'static str {
         match self {
             Act::Judged { .. } => "judged",
             Act::Disposition { .. } => "disposition",
+            Act::Severity { .. } => "severity",
             Act::Approval { .. } => "approval",
             Act::Withdrawal { .. } => "withdrawal",
             Act::Issue { .. } => "issue",
@@ -133,7 +145,7 @@ impl Act {
             | Act::Disposition { record, .. }
             | Act::Issue { record, .. }
             | Act::Reissue { record, .. } => Some(record),
-            Act::Approval { .. } | Act::Withdrawal { .. } => None,
+            Act::Severity { .. } | Act::Approval { .. } | Act::Withdrawal { .. } => None,
         }
     }
 }

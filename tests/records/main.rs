@@ -2,6 +2,7 @@
 //! verified, and tampered with in every place.
 
 mod approvals;
+mod clock;
 mod history;
 mod retest;
 mod site;
