@@ -319,7 +319,7 @@ fn history(
                 ..
             } if of.lot != Some(lot) && earlier.is_none_or(|earlier| kept.contains(&earlier)) => {
                 kept.insert(index);
-                history.lots.push(past(entry, record, archive)?);
+                history.lots.extend(past(entry, record, archive)?);
             }
             _ => {}
         }
@@ -344,7 +344,8 @@ fn in_view(found: &[u64], entries: &mut Entries) -> Result<usize, LedgerError> {
     Ok(0)
 }
 
-fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<PastLot, LedgerError> {
+/// `None` where the lot was judged by files that nobody had approved: it says nothing of the supplier.
+fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<Option<PastLot>, LedgerError> {
     let kept = entry
         .objects_of("record")
         .next()
@@ -355,7 +356,8 @@ fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<PastLot, Ledge
             "the record {record} of an earlier lot cannot be read ({e})"
         ))
     })?;
-    Ok(PastLot::of(&past))
+    let unapproved = |reason: &Note| lot::NOT_APPROVED.contains(&reason.code.as_str());
+    Ok((!past.reasons.iter().any(unapproved)).then(|| PastLot::of(&past)))
 }
 
 /// A reason for each record of another lot that rests on a sweep of this one. A file without a

@@ -1,6 +1,6 @@
 //! Further tries: the limit file says which replace the one before, and all of them stay in sight.
 
-use crate::site::Site;
+use crate::site::{Site, run};
 use serde_json::Value;
 use std::fs;
 use std::process::Command;
@@ -38,6 +38,13 @@ fn document(site: &Site, record: &Value) -> String {
         .arg("-")
         .output();
     String::from_utf8_lossy(&out.expect("pdftotext runs").stdout).into_owned()
+}
+
+/// The record of the lot, which is rejected.
+fn rejected(site: &Site) -> Value {
+    let (status, out, err) = run(site, &["judge", "--format", "json", "lots/26K-0001"]);
+    assert_eq!(status, Some(1), "{err}");
+    serde_json::from_str(&out).expect("a record")
 }
 
 /// A limit that no part meets.
@@ -100,7 +107,7 @@ fn measuring_until_it_passes_is_refused_and_visible() {
     no_part_conforms(&site, "{unmeasured: 1, nonconforming: 0}");
     try_again(&site, "001", 2, "004");
     try_again(&site, "001", 3, "005");
-    let record = site.judge("26K-0001");
+    let record = rejected(&site);
     assert!(has(&record, "retest_not_allowed"));
     let first = part(&record, "001");
     assert_eq!(first["verdict"], "nonconforming");
@@ -128,7 +135,7 @@ fn a_try_that_is_allowed_after_a_nonconforming_one_stays_beside_it() {
     let site = Site::new();
     no_part_conforms(&site, "{unmeasured: 1, nonconforming: 1}");
     try_again(&site, "001", 2, "004");
-    let record = site.judge("26K-0001");
+    let record = rejected(&site);
     assert!(!has(&record, "retest_not_allowed"));
     let found = tries(part(&record, "001"));
     assert_eq!(found.iter().map(|t| t.2).collect::<Vec<_>>(), [false, true]);
