@@ -62,7 +62,7 @@ pub enum Standing {
         /// That approval.
         in_force: Granted,
         /// The approval of this form, which the other one ended.
-        before: Option<Granted>,
+        before: Option<Box<Granted>>,
     },
     /// Its approval was taken back by this statement.
     Withdrawn(Granted),
@@ -198,7 +198,7 @@ impl Trust {
             // A second signature under the same form changes nothing.
             if !same {
                 if form.is_of(&granted.statement) {
-                    before = Some(granted.clone());
+                    before = Some(Box::new(granted.clone()));
                 }
                 now = Some(granted);
             }
