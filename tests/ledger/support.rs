@@ -3,8 +3,8 @@
 use chrono::{DateTime, FixedOffset};
 use reelgate::ledger::disk::{Disk, System};
 use reelgate::ledger::{
-    Anchor, Decision, Ledger, LedgerError, Made, Object, Recorded, Report, Signer, inputs_digest,
-    verify,
+    Act, Anchor, Decision, Ledger, LedgerError, Made, Object, Query, Recorded, Report, Signer,
+    inputs_digest, verify,
 };
 use reelgate::record::LotRecord;
 use serde_json::json;
