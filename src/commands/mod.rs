@@ -11,6 +11,7 @@ mod present;
 mod records;
 mod site;
 mod store;
+mod switching;
 mod text;
 
 use clap::{Parser, Subcommand, ValueEnum};

@@ -4,9 +4,13 @@
 //! cannot give it says in words that an operator can act on.
 
 mod event;
+mod folder;
+mod instrument;
 mod trouble;
 
 pub use event::{Event, Proof, Seen, Taken};
+pub use folder::Folder;
+pub use instrument::Instrument;
 pub use trouble::Trouble;
 
 use std::time::Duration;
