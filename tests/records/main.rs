@@ -1,8 +1,10 @@
 //! Records from end to end, through the program: judged, listed, shown, exported, disposed of,
 //! verified, and tampered with in every place.
 
+mod approvals;
 mod clock;
 mod history;
+mod retest;
 mod site;
 mod tamper;
 
