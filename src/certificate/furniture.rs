@@ -1,6 +1,6 @@
 //! Running head and foot of every page: what the document is, whose record, which page of how many.
 
-use super::canvas::{Anchor, Canvas};
+use super::canvas::{Anchor, Canvas, Item};
 use super::flow::Flow;
 use super::ink::QUIET;
 use super::section::lot_word;
@@ -15,6 +15,7 @@ pub(super) fn furniture(flow: &mut Flow, record: &LotRecord, copy: Option<&str>)
     let count = flow.pages.len();
     let sheet = flow.sheet;
     for (index, page) in flow.pages.iter_mut().enumerate() {
+        page.items.push(Item::Run(None));
         head(page, &sheet, record, copy.is_some());
         foot(
             page,

@@ -465,6 +465,7 @@ pub fn draw(
         limit_file: std::str::from_utf8(&sources.limits.bytes).ok(),
         station_file: std::str::from_utf8(&sources.station.bytes).ok(),
         ledger: Some(ledger),
+        signature: None,
     };
     certificate::render(&made.record, &curves, &texts, paper)
         .map(|made| made.pdf)

@@ -20,7 +20,10 @@ pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
 pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
-pub use rules::{Findings, GroupSection, JointOutlier, JointSection, MixedSection, TrendSection};
+pub use rules::{
+    ChartedLot, Findings, GroupSection, JointOutlier, JointSection, LotChart, MixedSection,
+    TrendSection,
+};
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
 pub use switching::{ClassState, Switching, severity_state};

@@ -17,6 +17,7 @@ fn sources(case: &Case) -> Sources<'_> {
         limit_file: Some(&case.limit_file),
         station_file: Some(&case.station_file),
         ledger: None,
+        signature: None,
     }
 }
 

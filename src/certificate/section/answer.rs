@@ -2,10 +2,11 @@
 
 use super::{Characteristic, lot_ink, lot_mark, lot_word};
 use crate::certificate::canvas::Area;
-use crate::certificate::figures::{ABSENT, fixed, index, instant, plain};
+use crate::certificate::figures::{ABSENT, fixed, index, instant, plain, sentence};
 use crate::certificate::flow::{BODY, BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
 use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
 use crate::certificate::plot::strip::strip;
+use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
 use crate::record::{ClassSection, LotRecord};
@@ -49,8 +50,10 @@ fn head(flow: &mut Flow, record: &LotRecord) {
     let word = lot_word(record.verdict).to_uppercase();
     flow.page()
         .mark(lot_mark(record.verdict), (left + 20.0, top + 25.0), 40.0);
+    let before = flow.enter(Role::Heading(1));
     flow.page()
         .text((left + 52.0, top + 39.0), WORD.ink(ink), &word);
+    flow.leave(before);
     flow.y = top + 64.0;
     let room = if beside { split - 26.0 - left } else { measure };
     why(flow, record, room);
@@ -76,11 +79,13 @@ fn side(
     let mut y = top;
     for (index, ((label, _), lines)) in identity.iter().zip(lines).enumerate() {
         let style = if index < 2 { KEY } else { VALUE };
+        let before = flow.enter(Role::Paragraph);
         flow.page().text((x, y + 9.0), SMALL, label);
         for line in lines {
             flow.page().text((x + LABEL, y + 9.0), style, line);
             y += SIDE;
         }
+        flow.leave(before);
         y += 3.0;
     }
     y
@@ -107,25 +112,29 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
     let Some((first, others)) = record.reasons.split_first() else {
         return;
     };
-    for line in wrap(&first.text, SENTENCE, room) {
+    let before = flow.enter(Role::Paragraph);
+    for line in wrap(&sentence(&first.text), SENTENCE, room) {
         let area = flow.take(SENTENCE_LEADING);
         flow.page()
             .text((area.left, area.top + 11.5), SENTENCE, &line);
     }
+    flow.leave(before);
     let mut left = FURTHER;
     let mut shown = 0;
     for reason in others {
-        let lines = wrap(&reason.text, BODY, room);
+        let lines = wrap(&sentence(&reason.text), BODY, room);
         if lines.len() > left {
             break;
         }
         left -= lines.len();
         shown += 1;
         flow.gap(3.0);
+        let before = flow.enter(Role::Paragraph);
         for line in lines {
             let area = flow.take(BODY_LEADING);
             flow.page().text((area.left, area.top + 9.5), BODY, &line);
         }
+        flow.leave(before);
     }
     let more = others.len() - shown;
     if more == 0 {
@@ -135,6 +144,7 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
     flow.gap(3.0);
     let area = flow.take(BODY_LEADING);
     let text = format!("and {more} more {plural}: see Reasons");
+    let before = flow.enter(Role::Paragraph);
     let wide = flow
         .page()
         .text((area.left, area.top + 9.5), BODY.ink(ACCEPT), &text);
@@ -143,6 +153,7 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
         ..area
     };
     flow.page().link(target, "reasons");
+    flow.leave(before);
 }
 
 /// What names the lot; only what the record has.
@@ -301,7 +312,7 @@ fn table(flow: &mut Flow, characteristics: &[Characteristic]) {
             exact(c.bound.lower),
             exact(c.bound.nominal),
             exact(c.bound.upper),
-            Cell::drawing(move |page, area| strip(page, area, c)),
+            Cell::drawing(c.in_words(), move |page, area| strip(page, area, c)),
             Cell::text(mean),
             Cell::text(index(c.statistics.and_then(|s| s.ppk))),
             count,

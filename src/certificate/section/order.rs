@@ -1,6 +1,7 @@
 //! Run charts: every characteristic in measuring order.
 
 use super::Characteristic;
+use super::distributions::figure;
 use crate::certificate::flow::Flow;
 use crate::certificate::plot::run_chart::run_chart;
 
@@ -15,7 +16,8 @@ pub(in crate::certificate) fn order(
     for c in characteristics.iter().filter(|c| !c.values.is_empty()) {
         flow.subheading(&c.title(), HEIGHT);
         let area = flow.take(HEIGHT);
-        run_chart(flow.page(), area, c, parts);
+        let words = format!("Values in measuring order. {}", c.in_words());
+        figure(flow, words, |page| run_chart(page, area, c, parts));
     }
     flow.gap(4.0);
     flow.small(

@@ -4,6 +4,7 @@ use crate::certificate::Sources;
 use crate::certificate::canvas::Anchor;
 use crate::certificate::flow::Flow;
 use crate::certificate::ink::QUIET;
+use crate::certificate::structure::Role;
 use crate::certificate::text::{Style, width, wrap};
 
 const CODE: Style = Style::regular(8.6);
@@ -31,6 +32,7 @@ fn verbatim(flow: &mut Flow, text: &str) {
         let room = flow.sheet.measure() - INDENT;
         let inset = width(&" ".repeat(spaces.min(200)), CODE) * 1.6;
         let inset = inset.min(room * 0.5);
+        let before = flow.enter(Role::Paragraph);
         for (n, part) in wrap(body, CODE, room - inset).iter().enumerate() {
             let area = flow.take(LEADING);
             let y = area.top + 8.0;
@@ -41,5 +43,6 @@ fn verbatim(flow: &mut Flow, text: &str) {
             }
             page.text((area.left + INDENT + inset, y), CODE, part);
         }
+        flow.leave(before);
     }
 }

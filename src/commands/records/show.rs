@@ -31,6 +31,7 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
             proof: &proof,
             copy: None,
         }),
+        signature: None,
     };
     let mut out = plain_text(&record, &sources);
     out.push_str("\nIn the ledger\n");

@@ -2,12 +2,14 @@
 
 mod capability;
 mod joint;
+mod lot_chart;
 mod mixed;
 mod outliers;
 mod trend;
 mod warnings;
 
 pub use joint::{JointOutlier, JointSection};
+pub use lot_chart::{ChartedLot, LotChart};
 pub use mixed::{GroupSection, MixedSection};
 pub use trend::TrendSection;
 
@@ -34,12 +36,18 @@ pub struct Findings {
     /// Against the accepted lots before, one a characteristic that a rule names.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub trend: Vec<TrendSection>,
+    /// Capacitance and self-resonant frequency together, where no rule looks at them: decides nothing.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub scatter: Option<JointSection>,
+    /// Lot means, one chart a characteristic, where accepted lots went before: decide nothing.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub lots: Vec<LotChart>,
 }
 
 impl Findings {
-    /// Whether no rule looked for anything.
+    /// Whether there is nothing to say.
     pub fn is_empty(&self) -> bool {
-        self.joint.is_empty() && self.mixed.is_empty() && self.trend.is_empty()
+        *self == Findings::default()
     }
 }
 
@@ -69,5 +77,7 @@ pub(super) fn evaluate(judged: &Judged) -> Ruled {
     outliers::evaluate(judged, &mut ruled);
     mixed::evaluate(judged, &mut ruled);
     trend::evaluate(judged, &mut ruled);
+    ruled.findings.scatter = joint::beside(judged, &ruled.findings.joint);
+    ruled.findings.lots = lot_chart::charts(judged);
     ruled
 }

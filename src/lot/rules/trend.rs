@@ -104,7 +104,10 @@ fn of_bound(judged: &Judged, rule: &TrendRule, bound: &Bound, ruled: &mut Ruled)
 
 /// Accepted lots, measured as demanded, other than this one, that have a mean of the characteristic.
 /// Of several records of one lot the last counts.
-fn comparable<'a>(judged: &Judged<'a>, key: &str) -> Vec<(&'a PastLot, PastCharacteristic)> {
+pub(super) fn comparable<'a>(
+    judged: &Judged<'a>,
+    key: &str,
+) -> Vec<(&'a PastLot, PastCharacteristic)> {
     let lots = &judged.history.lots;
     let last =
         |at: usize, lot: &PastLot| !lots.iter().skip(at + 1).any(|later| later.lot == lot.lot);
