@@ -241,6 +241,37 @@ fn every_unmet_condition_holds_whatever_the_counts_say() {
             &station,
         );
     }
+    // 2026-W38 ends on Sunday 2026-09-20 (ISO 8601): 15 days before the measurement.
+    for (code, weeks, expected) in [
+        (Some("2638"), 2.0, true),
+        (Some("2638"), 3.0, false),
+        (Some("2641"), 3.0, false),
+        (Some("2642"), 3.0, true),
+        (Some("26AB"), 3.0, true),
+        (None, 3.0, true),
+    ] {
+        let mut dated = limits.clone();
+        dated.conditions.date_code_age = Some(weeks * 604_800.0);
+        let lot = Lot {
+            date_code: code.map(str::to_owned),
+            ..good.clone()
+        };
+        let judgement = judged(&lot, &dated, &station, &sample);
+        let first = judgement.reasons[0].code.as_str();
+        assert_eq!(
+            first == "date_code_out_of_range",
+            expected,
+            "{code:?} {weeks}"
+        );
+    }
+    let mut late = good.clone();
+    late.measured = time("2026-10-05T19:50:01+02:00");
+    late.run.jig_checked = Some(time("2026-10-05T19:00:00+02:00"));
+    assert_ne!(
+        judged(&late, &limits, &station, &sample).reasons[0].code,
+        "jig_check_expired",
+        "a check of the run counts"
+    );
     check(
         "label_mismatch",
         &Lot {

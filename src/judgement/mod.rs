@@ -6,12 +6,14 @@
 mod bench;
 mod conformance;
 mod part;
+mod tries;
 mod zone;
 
 pub use bench::{Ability, BenchAbility, abilities, undecidable};
 pub use conformance::{Risks, acceptance_window, conformance_probability, global_risks};
 pub(crate) use part::AGEING_UNKNOWN;
 pub use part::{AttemptRecord, JudgedTry, PartRecord, judge_part, judge_try};
+pub use tries::{Standing, TryOutcome, standing};
 pub use zone::{ReadingRecord, judge_reading, zone};
 
 use serde::{Deserialize, Serialize};

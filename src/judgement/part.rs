@@ -1,5 +1,6 @@
 //! One part from its tries: which try counts, its verdict, its readings.
 
+use super::tries::{TryOutcome, nothing_left, standing};
 use super::{PartVerdict, ReadingRecord, judge_reading};
 use crate::diagnostic::Note;
 use crate::limits::{Limits, Retest, Window};
@@ -43,6 +44,9 @@ pub struct AttemptRecord {
     pub sha256: String,
     pub verdict: PartVerdict,
     pub counts: bool,
+    /// Why it was set aside, so that it never counts: `misplaced`, `jig_check`.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub set_aside: Option<String>,
     /// What was found out on reading the file.
     pub notes: Vec<Note>,
     pub faults: Vec<Note>,
@@ -207,57 +211,66 @@ fn drive_fault(drive: f64, limits: &Limits) -> Option<Note> {
     })
 }
 
-/// Judges one part from its tries, in order of their number.
+/// Judges one part from its tries, in order of their number; of each, why it was set aside, if it was.
 ///
-/// The first try counts. A later one takes its place only where the try before it came out
-/// `unmeasured` or `nonconforming` and the limit file's `retest` still allows one more after such
-/// an outcome; any other further try is kept and answered with the reason `retest_not_allowed`.
-pub fn judge_part(tries: &[(&Attempt, JudgedTry)], retest: &Retest) -> (PartRecord, Option<Note>) {
-    let mut counting = 0;
-    let mut left = *retest;
-    let mut refused = None;
-    for (index, (attempt, _)) in tries.iter().enumerate().skip(1) {
-        let allowance = match tries[counting].1.verdict {
-            PartVerdict::Unmeasured => Some(&mut left.unmeasured),
-            PartVerdict::Nonconforming => Some(&mut left.nonconforming),
-            _ => None,
-        };
-        match allowance {
-            Some(count) if *count > 0 && counting == index - 1 => {
-                *count -= 1;
-                counting = index;
-            }
-            _ => {
-                refused = Some(Note::new(
-                    "retest_not_allowed",
-                    format!(
-                        "part {}: try {} ({}) follows a try that came out {}; the limit file allows no such retest, so it does not count: \
-                         a quality engineer decides",
-                        attempt.part,
-                        attempt.attempt,
-                        attempt.file,
-                        tries[counting].1.verdict.name(),
-                    ),
-                ));
-            }
-        }
+/// Which try counts is said by [`standing`]. A try that is not allowed is kept and answered with the reason
+/// `retest_not_allowed`; one that was set aside as misplaced and had not come out conforming or unmeasured, with
+/// `misplaced_not_conforming`.
+pub fn judge_part(
+    tries: &[(&Attempt, JudgedTry, Option<&str>)],
+    retest: &Retest,
+) -> (PartRecord, Vec<Note>) {
+    let outcomes: Vec<TryOutcome> = tries
+        .iter()
+        .map(|(_, judged, set_aside)| TryOutcome {
+            verdict: judged.verdict,
+            set_aside: *set_aside,
+        })
+        .collect();
+    let standing = standing(&outcomes, retest);
+    let mut reasons = misplaced(tries);
+    let counted = standing.counts.map(|index| &tries[index].1);
+    if let (Some(refused), Some(counted)) = (standing.refused, counted) {
+        let attempt = tries[refused].0;
+        reasons.push(Note::new(
+            "retest_not_allowed",
+            format!(
+                "part {}: try {} ({}) follows a try that came out {}; the limit file allows no such retest, so it does not count: \
+                 a quality engineer decides",
+                attempt.part,
+                attempt.attempt,
+                attempt.file,
+                counted.verdict.name(),
+            ),
+        ));
     }
     let attempts = tries
         .iter()
         .enumerate()
-        .map(|(index, (attempt, judged))| AttemptRecord {
+        .map(|(index, (attempt, judged, set_aside))| AttemptRecord {
             attempt: attempt.attempt,
             file: attempt.file.clone(),
             sha256: attempt.sha256.clone(),
             verdict: judged.verdict,
-            counts: index == counting,
+            counts: standing.counts == Some(index),
+            set_aside: set_aside.map(str::to_owned),
             notes: attempt.notes.clone(),
             faults: judged.faults.clone(),
         })
         .collect();
-    let counted = &tries[counting].1;
+    let none = JudgedTry {
+        verdict: PartVerdict::Unmeasured,
+        drive: None,
+        class: None,
+        readings: IndexMap::new(),
+        faults: vec![nothing_left()],
+        warnings: Vec::new(),
+    };
+    let counted = counted.unwrap_or(&none);
     let record = PartRecord {
-        part: tries[counting].0.part.clone(),
+        part: tries
+            .first()
+            .map_or(String::new(), |(attempt, ..)| attempt.part.clone()),
         verdict: counted.verdict,
         drive: counted.drive,
         class: counted.class.clone(),
@@ -266,5 +279,26 @@ pub fn judge_part(tries: &[(&Attempt, JudgedTry)], retest: &Retest) -> (PartReco
         faults: counted.faults.clone(),
         warnings: counted.warnings.clone(),
     };
-    (record, refused)
+    (record, reasons)
+}
+
+/// A person's word that the part lay wrong must not turn a nonconforming part into a conforming one unseen.
+fn misplaced(tries: &[(&Attempt, JudgedTry, Option<&str>)]) -> Vec<Note> {
+    let doubtful = |verdict| matches!(verdict, PartVerdict::Nonconforming | PartVerdict::Undecided);
+    tries
+        .iter()
+        .filter(|(_, judged, aside)| *aside == Some("misplaced") && doubtful(judged.verdict))
+        .map(|(attempt, judged, _)| {
+            Note::new(
+                "misplaced_not_conforming",
+                format!(
+                    "part {}: try {} ({}) came out {} and was then set aside as misplaced: a quality engineer decides",
+                    attempt.part,
+                    attempt.attempt,
+                    attempt.file,
+                    judged.verdict.name()
+                ),
+            )
+        })
+        .collect()
 }

@@ -12,6 +12,15 @@ pub struct Week {
     pub week: u32,
 }
 
+impl Week {
+    /// Days from the Monday of the week to a day, negative where the day is before; `None` for a week that the
+    /// calendar does not have.
+    pub fn days_before(self, day: NaiveDate) -> Option<i64> {
+        let monday = NaiveDate::from_isoywd_opt(self.year, self.week, Weekday::Mon)?;
+        Some(day.signed_duration_since(monday).num_days())
+    }
+}
+
 /// What a date field holds.
 pub(super) enum Dates {
     /// Not a date field, or one of an agreed structure that is not known here.

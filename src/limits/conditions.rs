@@ -12,11 +12,18 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
         temperature: None,
         equivalent: Equivalent::Series,
         ageing: None,
+        date_code_age: None,
     };
     let Some(node) = node else {
         return Some(conditions);
     };
-    let known = ["drive", "temperature", "equivalent", "ageing"];
+    let known = [
+        "drive",
+        "temperature",
+        "equivalent",
+        "ageing",
+        "date_code_age",
+    ];
     let fields = reader.fields(node, "`conditions`", &known)?;
     if let Some(node) = fields.get("drive") {
         let possible = |low: f64, high: f64| low > 0.0 && high <= 1000.0;
@@ -43,6 +50,13 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
     }
     if let Some(node) = fields.get("ageing") {
         conditions.ageing = ageing(reader, node);
+    }
+    if let Some(node) = fields.get("date_code_age") {
+        let possible = |v: f64| (604_800.0..=3.2e9).contains(&v);
+        let expected = "a time from 1 week to 100 years";
+        let what = "`date_code_age`";
+        conditions.date_code_age =
+            reader.quantity_if(node, what, Dimension::Time, possible, expected);
     }
     Some(conditions)
 }

@@ -88,6 +88,8 @@ pub struct Conditions {
     pub temperature: Option<Window>,
     pub equivalent: Equivalent,
     pub ageing: Option<Ageing>,
+    /// Greatest age of the date code at measurement, in seconds.
+    pub date_code_age: Option<f64>,
 }
 
 /// Decision rule with measurement uncertainty (JCGM 106:2012 clause 8).

@@ -64,6 +64,7 @@ pub(super) fn check(
         calibration(lot, station),
         jig_check(lot, station),
         label_against_lot(lot),
+        date_code(lot, limits),
     ]
     .into_iter()
     .flatten()
@@ -167,6 +168,53 @@ fn ageing(lot: &Lot, limits: &Limits) -> Option<Checked> {
     ))
 }
 
+/// The week of the date code against the greatest age that the limit file allows. The code names a week:
+/// the parts are no older than its Monday and no younger than its Sunday.
+fn date_code(lot: &Lot, limits: &Limits) -> Option<Checked> {
+    let most = limits.conditions.date_code_age?;
+    let demanded = format!("a date code at most {:.0} weeks old", most / 604_800.0);
+    let ask = "ask the quality engineer before the reel is used";
+    let weeks = lot.date_code.as_deref().map(label::weeks);
+    let (found, failure) = match (lot.date_code.as_deref(), weeks.as_deref()) {
+        (Some(text), Some([week])) => {
+            let found = format!("date code {text}, measured {}", lot.measured.date_naive());
+            let days = week.days_before(lot.measured.date_naive());
+            let failure = match days {
+                None => Some(format!(
+                    "the date code {text} cannot be reckoned with: {ask}"
+                )),
+                Some(days) if days < 0 => Some(format!(
+                    "the date code {text} lies after the measurement: read the printed label again"
+                )),
+                Some(days) if (days - 6) as f64 * 86_400.0 > most => Some(format!(
+                    "the date code {text} is {} weeks old, {demanded} is demanded: {ask}",
+                    days / 7
+                )),
+                Some(_) => None,
+            };
+            (found, failure)
+        }
+        (Some(text), _) => (
+            format!("date code {text}"),
+            Some(format!(
+                "the week of the date code {text} is not clear: {ask}"
+            )),
+        ),
+        (None, _) => (
+            "not stated".to_owned(),
+            Some(format!(
+                "the date code is not known, {demanded} is demanded: give `date_code` in lot.yaml"
+            )),
+        ),
+    };
+    Some(checked(
+        "date code",
+        demanded,
+        found,
+        failure.map(|text| ("date_code_out_of_range", text)),
+    ))
+}
+
 fn calibration(lot: &Lot, station: &Station) -> Option<Checked> {
     let instrument = station.instrument.as_ref()?;
     let due = instrument.due?;
@@ -199,13 +247,14 @@ fn calibration(lot: &Lot, station: &Station) -> Option<Checked> {
 fn jig_check(lot: &Lot, station: &Station) -> Option<Checked> {
     let jig = station.jig.as_ref()?;
     let valid_for = jig.valid_for?;
+    let last = jig.checked.max(lot.run.jig_checked);
     let demanded = format!(
         "{} checked within {} before the measurement",
         jig.asset,
         shortest(valid_for, "s")
     );
     let again = "check the jig and measure the lot again";
-    let (found, failure) = match jig.checked {
+    let (found, failure) = match last {
         None => (
             "no check stated".to_owned(),
             Some(format!("no check of jig {} is stated: {again}", jig.asset)),

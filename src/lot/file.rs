@@ -1,6 +1,6 @@
 //! A lot file from its bytes.
 
-use super::Lot;
+use super::{Lot, bench_run};
 use crate::diagnostic::yaml::{Fields, Node, Reader, parse_date, parse_moment, shown};
 use crate::diagnostic::{Faults, Source, yaml};
 use crate::quantity::Dimension;
@@ -9,7 +9,7 @@ use chrono::{DateTime, FixedOffset, NaiveDateTime, NaiveTime};
 /// JSON Schema (draft 2020-12) of a lot file, for editors.
 pub const SCHEMA: &str = include_str!("lot.schema.json");
 
-const KEYS: [&str; 14] = [
+const KEYS: [&str; 15] = [
     "lot",
     "part",
     "supplier",
@@ -24,6 +24,7 @@ const KEYS: [&str; 14] = [
     "drive",
     "last_heat",
     "sweeps",
+    "run",
 ];
 
 /// Most parts that a lot can have.
@@ -75,6 +76,7 @@ fn lot(reader: &mut Reader<'_>, root: &Node) -> Option<Lot> {
     let sweeps = reader
         .required(&fields, "sweeps", what, "sweeps")
         .and_then(|node| reader.path(node, "`sweeps`"));
+    let run = bench_run::read(reader, fields.get("run"));
     let (temperature, humidity) = ambient?;
     Some(Lot {
         lot: lot?,
@@ -92,6 +94,7 @@ fn lot(reader: &mut Reader<'_>, root: &Node) -> Option<Lot> {
         drive: drive?,
         last_heat: last_heat?,
         sweeps: sweeps?,
+        run: run?,
     })
 }
 

@@ -2,6 +2,7 @@
 //!
 //! No files, no clock: what a lot comes to depends on the arguments alone.
 
+mod bench_run;
 mod capability;
 mod conditions;
 mod curve;
@@ -15,6 +16,7 @@ mod switching;
 mod variables;
 mod verdict;
 
+pub use bench_run::{Aside, BenchRun, SEED_MAX, SetAside};
 pub use capability::Indices;
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
@@ -62,6 +64,8 @@ pub struct Lot {
     pub last_heat: Option<NaiveDateTime>,
     /// A folder or a file, relative to the lot folder.
     pub sweeps: String,
+    /// What the operator's run says.
+    pub run: BenchRun,
 }
 
 impl Lot {

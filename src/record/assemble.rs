@@ -2,7 +2,7 @@
 
 use super::*;
 use crate::limits::{Acceptance, DecisionRuleKind, Limits, NotNormal};
-use crate::lot::{Lot, LotJudgement};
+use crate::lot::{BenchRun, Lot, LotJudgement};
 use crate::quantity::{engineering, shortest};
 use crate::readings::Place;
 use crate::station::{Method, Repeatability, Station};
@@ -132,8 +132,20 @@ fn lot_section(lot: &Lot, sha256: &str) -> LotSection {
             .last_heat
             .map(|t| t.format("%Y-%m-%dT%H:%M:%S").to_string()),
         sweeps: lot.sweeps.clone(),
+        run: run_section(lot),
         sha256: sha256.to_owned(),
     }
+}
+
+fn run_section(lot: &Lot) -> Option<RunSection> {
+    let run = &lot.run;
+    (*run != BenchRun::default()).then(|| RunSection {
+        seed: run.seed,
+        scans: run.scans.clone(),
+        operators: run.operators.clone(),
+        jig_checked: run.jig_checked.map(|t| t.to_rfc3339()),
+        set_aside: run.set_aside.clone(),
+    })
 }
 
 fn limits_section(

@@ -5,7 +5,7 @@ use super::{Digests, Inputs, LotRecord, PartRecord, circuit, sha256};
 use crate::diagnostic::{Faults, Note};
 use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
-use crate::lot::{self, History, Lot};
+use crate::lot::{self, Aside, History, Lot};
 use crate::readings::{Budget, Characteristic};
 use crate::station::{self, Station};
 use crate::statistics::sampling::Severity;
@@ -102,7 +102,7 @@ pub fn make(
         .par_iter()
         .map(|attempt| judge_try(attempt, &limits, &budget, age))
         .collect();
-    let (parts, curves, mut holding) = parts(&attempts, judged, &limits);
+    let (parts, curves, mut holding) = parts(&attempts, judged, &limits, &lot);
     holding.extend(occasion.further.iter().cloned());
     let judgement = lot::judge(
         &lot,
@@ -194,13 +194,21 @@ fn parts(
     attempts: &[Attempt],
     judged: Vec<JudgedTry>,
     limits: &Limits,
+    lot: &Lot,
 ) -> (Vec<PartRecord>, Vec<PartSweep>, Vec<Note>) {
     let mut judged = judged.into_iter();
     let (mut parts, mut curves, mut refused) = (Vec::new(), Vec::new(), Vec::new());
     for tries in attempts.chunk_by(|a, b| a.part == b.part) {
-        let paired: Vec<(&Attempt, JudgedTry)> = tries.iter().zip(judged.by_ref()).collect();
-        let (part, reason) = judge_part(&paired, &limits.retest);
-        refused.extend(reason);
+        let paired: Vec<(&Attempt, JudgedTry, Option<&str>)> = tries
+            .iter()
+            .zip(judged.by_ref())
+            .map(|(attempt, judged)| {
+                let aside = lot.run.aside(&attempt.part, attempt.attempt);
+                (attempt, judged, aside.map(Aside::name))
+            })
+            .collect();
+        let (part, reasons) = judge_part(&paired, &limits.retest);
+        refused.extend(reasons);
         let counting = part.attempts.iter().position(|a| a.counts);
         if let Some(sweep) = counting
             .and_then(|i| tries.get(i))

@@ -12,7 +12,7 @@ mod past;
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
     ChartedLot, ClassSection, ClassState, ConditionSection, Findings, GroupSection, JointOutlier,
-    JointSection, LotChart, LotVerdict, MixedSection, OperatingCharacteristic, Sampling,
+    JointSection, LotChart, LotVerdict, MixedSection, OperatingCharacteristic, Sampling, SetAside,
     Statistics, Step, Switching, TrendSection, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
@@ -92,8 +92,26 @@ pub struct LotSection {
     pub drive: Option<f64>,
     pub last_heat: Option<String>,
     pub sweeps: String,
+    /// What the operator's run says, where there was one.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub run: Option<RunSection>,
     /// Of lot.yaml.
     pub sha256: String,
+}
+
+/// What the operator's run says of the lot.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct RunSection {
+    /// The seed that the positions along the reel were drawn with.
+    pub seed: Option<u64>,
+    /// Every scan as typed, where the label came in more than one.
+    pub scans: Vec<String>,
+    /// Everybody who measured, in order.
+    pub operators: Vec<String>,
+    /// The last good check of the jig.
+    pub jig_checked: Option<String>,
+    pub set_aside: Vec<SetAside>,
 }
 
 /// The limit file in force.

@@ -1,6 +1,6 @@
 //! How the station's delimited sweep files look.
 
-use super::{Column, Layout};
+use super::{Column, InstrumentLink, Layout};
 use crate::diagnostic::yaml::{Fields, Node, Reader};
 use crate::diagnostic::{Span, excerpt};
 
@@ -31,6 +31,77 @@ const SETS: [&[Column]; 6] = [
     &[Column::Capacitance, Column::Esr],
     &[Column::Capacitance, Column::DissipationFactor],
 ];
+
+/// What a sweep consists of, in words.
+pub const EXPECTED: &str = "beside `frequency` one of: magnitude phase; resistance reactance; a_re a_im \
+                            b_re b_im; ratio_db phase; capacitance esr; capacitance dissipation_factor";
+
+/// The name of a column in files.
+pub fn name(column: Column) -> &'static str {
+    COLUMNS
+        .iter()
+        .find(|(_, c)| *c == column)
+        .map_or("", |(name, _)| name)
+}
+
+/// The column of a name.
+pub fn column(name: &str) -> Option<Column> {
+    COLUMNS
+        .iter()
+        .find(|(known, _)| *known == name)
+        .map(|(_, column)| *column)
+}
+
+/// Names of the columns that hold numbers.
+pub fn measured_names() -> impl Iterator<Item = &'static str> {
+    COLUMNS
+        .iter()
+        .filter(|(_, column)| *column != Column::Part)
+        .map(|(name, _)| *name)
+}
+
+/// Whether columns are `frequency` and one complete set, and nothing else.
+pub fn is_a_sweep(columns: &[Column]) -> bool {
+    columns.contains(&Column::Frequency)
+        && SETS.iter().any(|set| {
+            set.len() + 1 == columns.len() && set.iter().all(|column| columns.contains(column))
+        })
+}
+
+/// The layout of the files that are written from an instrument's answers where the station file
+/// states none.
+pub fn of_link(link: &InstrumentLink) -> Layout {
+    let columns = link
+        .read
+        .iter()
+        .flat_map(|answer| answer.quantities.iter().flatten())
+        .map(|column| (*column, heading(*column).to_owned()))
+        .collect();
+    Layout {
+        columns,
+        peak: false,
+    }
+}
+
+/// Quantity and unit, as our own files have them.
+fn heading(column: Column) -> &'static str {
+    match column {
+        Column::Frequency => "Frequency (Hz)",
+        Column::Magnitude => "Magnitude (Ohm)",
+        Column::Phase => "Phase (deg)",
+        Column::Resistance => "Resistance (Ohm)",
+        Column::Reactance => "Reactance (Ohm)",
+        Column::ARe => "A Re (V)",
+        Column::AIm => "A Im (V)",
+        Column::BRe => "B Re (V)",
+        Column::BIm => "B Im (V)",
+        Column::RatioDb => "Ratio (dB)",
+        Column::Capacitance => "Capacitance (F)",
+        Column::Esr => "ESR (Ohm)",
+        Column::DissipationFactor => "Dissipation factor",
+        Column::Part => "part",
+    }
+}
 
 /// The layout: `frequency`, one set, perhaps `part`; `amplitude` says what voltages are.
 pub fn read(reader: &mut Reader<'_>, node: &Node) -> Option<Layout> {
@@ -100,8 +171,6 @@ fn check_sets(reader: &mut Reader<'_>, fields: &Fields<'_>, columns: &[(Column, 
     let has = |column: &Column| columns.iter().any(|(c, _)| c == column);
     reader.required(fields, "frequency", "`columns`", "\"Frequency (Hz)\"");
     let complete: Vec<_> = SETS.iter().filter(|set| set.iter().all(has)).collect();
-    let expected = "beside `frequency` one of: magnitude phase; resistance reactance; a_re a_im \
-                    b_re b_im; ratio_db phase; capacitance esr; capacitance dissipation_factor";
     let [set] = complete.as_slice() else {
         let (found, hint) = if complete.is_empty() {
             (
@@ -118,7 +187,7 @@ fn check_sets(reader: &mut Reader<'_>, fields: &Fields<'_>, columns: &[(Column, 
             fields.span,
             "bad_columns",
             found,
-            expected,
+            EXPECTED,
             Some(hint.to_owned()),
         );
         return;
@@ -132,7 +201,7 @@ fn check_sets(reader: &mut Reader<'_>, fields: &Fields<'_>, columns: &[(Column, 
         if column.is_some_and(|c| !used(c)) {
             let found = format!("the column `{name}`, which is not needed");
             let hint = Some("delete it".to_owned());
-            reader.fault(key.span, "bad_columns", found, expected, hint);
+            reader.fault(key.span, "bad_columns", found, EXPECTED, hint);
         }
     }
 }

@@ -1,6 +1,9 @@
 //! A station file from its bytes.
 
-use super::{Column, Method, Reference, Station, equipment, layout, standards, uncertainty};
+use super::{
+    Column, Method, Reference, Station, equipment, jig_check, layout, link, standards, uncertainty,
+    watch,
+};
 use crate::diagnostic::yaml::{Fields, Node, Reader};
 use crate::diagnostic::{Faults, Source, yaml};
 use crate::quantity::Dimension;
@@ -8,7 +11,7 @@ use crate::quantity::Dimension;
 /// JSON Schema (draft 2020-12) of a station file, for editors.
 pub const SCHEMA: &str = include_str!("station.schema.json");
 
-const KEYS: [&str; 8] = [
+const KEYS: [&str; 11] = [
     "station",
     "instrument",
     "jig",
@@ -17,6 +20,9 @@ const KEYS: [&str; 8] = [
     "layout",
     "compensation",
     "uncertainty",
+    "watch",
+    "instrument_link",
+    "jig_check",
 ];
 
 /// Methods by their names in files.
@@ -71,16 +77,56 @@ fn station(reader: &mut Reader<'_>, root: &Node, path: &str) -> Option<Station> 
     }
     let compensation = standards::read(reader, fields.get("compensation"));
     let uncertainty = uncertainty::read(reader, fields.get("uncertainty"));
+    let watch = fields.get("watch").map(|node| watch::read(reader, node));
+    let link = instrument_link(reader, &fields, method, &layout);
+    let jig_check = fields
+        .get("jig_check")
+        .map(|node| jig_check::read(reader, node));
+    let link = given(link)?;
+    let layout = given(layout)?.or_else(|| link.as_ref().map(layout::of_link));
     Some(Station {
         name: name?,
         instrument: given(instrument)?,
         jig: given(jig)?,
         method: method?,
         reference: given(reference)?,
-        layout: given(layout)?,
+        layout,
         compensation: compensation?,
         uncertainty: uncertainty?,
+        watch: given(watch)?,
+        instrument_link: link,
+        jig_check: given(jig_check)?,
     })
+}
+
+/// The link, where its answers suit the method: a network method has no set of quantities.
+fn instrument_link(
+    reader: &mut Reader<'_>,
+    fields: &Fields<'_>,
+    method: Option<Method>,
+    layout: &Option<Option<super::Layout>>,
+) -> Option<Option<super::InstrumentLink>> {
+    let (key, node) = fields.entry("instrument_link")?;
+    let network = matches!(
+        method,
+        Some(Method::ShuntThrough | Method::SeriesThrough | Method::Reflection)
+    );
+    if network {
+        reader.fault(
+            key.span,
+            "layout_does_not_suit",
+            "`instrument_link` with a network method, whose sweeps are Touchstone files",
+            "`watch`, and the analyser's own software to save them",
+            Some("correct `method`, or put `watch` in its place".to_owned()),
+        );
+        return Some(None);
+    }
+    let stated = layout.as_ref().and_then(Option::as_ref);
+    let link = link::read(reader, node, stated);
+    if let (Some(link), Some(method), None) = (&link, method, layout) {
+        layout_suits(reader, node, method, &layout::of_link(link));
+    }
+    Some(link)
 }
 
 /// `None` only where the key is there and has faults.

@@ -110,8 +110,13 @@ fn main() {
         .iter()
         .flat_map(|f| read_file(f, &station, None))
         .collect();
-    let judge =
-        |a: &Attempt| judge_part(&[(a, judge_try(a, &limits, &budget, None))], &limits.retest).0;
+    let judge = |a: &Attempt| {
+        judge_part(
+            &[(a, judge_try(a, &limits, &budget, None), None)],
+            &limits.retest,
+        )
+        .0
+    };
     let records: Vec<_> = attempts.iter().map(judge).collect();
     let plan =
         reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");

@@ -533,6 +533,7 @@ fn part(name: &str, kinds: &[Kind], dice: &mut Dice) -> PartRecord {
             sha256: format!("{:016x}", dice.0).repeat(4),
             verdict: PartVerdict::Conforming,
             counts: true,
+            set_aside: None,
             notes: vec![Note::new(
                 "delimiter_found",
                 "Fields are separated by semicolons, decimals by a comma.",
@@ -611,6 +612,7 @@ fn lot(parts: usize) -> LotSection {
         drive: Some(0.98),
         last_heat: Some("2026-07-01".into()),
         sweeps: "sweeps".into(),
+        run: None,
         sha256: "a1".repeat(32),
     }
 }

@@ -1,7 +1,7 @@
 //! Lot files.
 
 use super::{LOT, listed, with};
-use reelgate::lot::{self, Lot};
+use reelgate::lot::{self, Aside, Lot};
 
 fn read(text: &str) -> Result<Lot, reelgate::diagnostic::Faults> {
     lot::read("lot.yaml", text.as_bytes())
@@ -43,6 +43,47 @@ fn the_last_heat_is_in_the_local_time_of_the_measurement() {
         lot.last_heat.map(|t| t.to_string()).as_deref(),
         Some("2026-07-02 01:00:00")
     );
+}
+
+#[test]
+fn what_the_operators_run_says() {
+    let run = "run: {seed: 7, scans: [\"Q4000\", \"1T26K-0457\"], operators: [OP-17, OP-08], \
+               jig_checked: 2026-10-05T08:00:00+02:00, \
+               set_aside: [{sweep: \"017\", why: misplaced, by: OP-17}, {sweep: 017~2, why: jig_check}]}";
+    let lot = read(&with(
+        LOT,
+        "sweeps: sweeps",
+        &format!("sweeps: sweeps\n{run}"),
+    ))
+    .expect("valid");
+    assert_eq!((lot.run.seed, lot.run.scans.len()), (Some(7), 2));
+    assert_eq!(lot.run.operators, ["OP-17", "OP-08"]);
+    assert_eq!(
+        lot.run.jig_checked.map(|t| t.to_rfc3339()).as_deref(),
+        Some("2026-10-05T08:00:00+02:00")
+    );
+    assert_eq!(lot.run.aside("017", 1), Some(Aside::Misplaced));
+    assert_eq!(lot.run.aside("017", 2), Some(Aside::JigCheck));
+    assert_eq!(lot.run.aside("018", 1), None);
+    for (piece, fault) in [
+        ("run: {seed: -1}", "out_of_range -1"),
+        ("run: {sed: 1}", "unknown_key sed"),
+        ("run: {set_aside: 017}", "not_a_list 017"),
+        (
+            "run: {set_aside: [{sweep: \"017\", why: tired}]}",
+            "unknown_value tired",
+        ),
+    ] {
+        let faults = listed(read(&with(
+            LOT,
+            "sweeps: sweeps",
+            &format!("sweeps: sweeps\n{piece}"),
+        )));
+        assert!(
+            faults.len() == 1 && faults[0].starts_with(fault),
+            "{piece}: {faults:?}"
+        );
+    }
 }
 
 #[test]

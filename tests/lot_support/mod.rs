@@ -35,6 +35,7 @@ pub fn lot(quantity: u64) -> Lot {
         drive: Some(1.0),
         last_heat: None,
         sweeps: "sweeps".into(),
+        run: Default::default(),
     }
 }
 
@@ -48,6 +49,7 @@ pub fn limits(acceptance: Acceptance) -> Limits {
             temperature: None,
             equivalent: Equivalent::Series,
             ageing: None,
+            date_code_age: None,
         },
         bounds: vec![Bound {
             key: KEY.into(),
@@ -97,6 +99,9 @@ pub fn station() -> Station {
         layout: None,
         compensation: Compensation::default(),
         uncertainty: Uncertainty::default(),
+        watch: None,
+        instrument_link: None,
+        jig_check: None,
     }
 }
 
@@ -134,6 +139,7 @@ pub fn part(i: usize, verdict: PartVerdict, value: f64) -> PartRecord {
             sha256: format!("{i:064x}"),
             verdict,
             counts: true,
+            set_aside: None,
             notes: vec![],
             faults: vec![],
         }],

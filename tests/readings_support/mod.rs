@@ -318,6 +318,9 @@ pub fn station(magnitude: f64, phase: f64) -> Station {
             phase: Some(phase),
             repeatability: vec![],
         },
+        watch: None,
+        instrument_link: None,
+        jig_check: None,
     }
 }
 

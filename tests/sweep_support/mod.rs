@@ -208,6 +208,9 @@ pub fn station(method: Method, layout: Option<Layout>) -> Station {
         layout,
         compensation: Compensation::default(),
         uncertainty: Uncertainty::default(),
+        watch: None,
+        instrument_link: None,
+        jig_check: None,
     }
 }
 
