@@ -11,6 +11,7 @@ mod canvas;
 mod figures;
 mod flow;
 mod furniture;
+mod grid;
 mod ink;
 mod paper;
 mod pdf;
@@ -135,7 +136,7 @@ pub fn render(
     sources: &Sources,
     paper: Paper,
 ) -> Result<Certificate, CertificateError> {
-    render_as(record, curves, sources, paper, Conformance::A3b)
+    render_as(record, curves, sources, paper, Conformance::A3b, false)
 }
 
 /// The same pages as PDF/A-1b (ISO 19005-1), without attachments: for validators that know only
@@ -149,7 +150,21 @@ pub fn render_archive_twin(
     sources: &Sources,
     paper: Paper,
 ) -> Result<Certificate, CertificateError> {
-    render_as(record, curves, sources, paper, Conformance::A1b)
+    render_as(record, curves, sources, paper, Conformance::A1b, false)
+}
+
+/// The same document with the grid of page one drawn over it, each line with its name and its place in
+/// points: for whoever changes the layout.
+///
+/// # Errors
+/// As [`render`].
+pub fn render_with_grid(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+) -> Result<Certificate, CertificateError> {
+    render_as(record, curves, sources, paper, Conformance::A3b, true)
 }
 
 fn render_as(
@@ -158,10 +173,14 @@ fn render_as(
     sources: &Sources,
     paper: Paper,
     conformance: Conformance,
+    with_grid: bool,
 ) -> Result<Certificate, CertificateError> {
     let json = record::to_bytes(record).map_err(CertificateError::Record)?;
     let digest = record::sha256(&json);
-    let (flow, mut warnings) = layout(record, curves, sources, paper, &digest);
+    let (mut flow, mut warnings) = layout(record, curves, sources, paper, &digest);
+    if with_grid {
+        grid::draw(&mut flow);
+    }
     let written = pdf::write(&flow).ok_or(CertificateError::Typeface)?;
     let description = describe(record, &mut warnings);
     let attachments = attachments(record, sources, json);

@@ -512,10 +512,8 @@ impl<'t> Grid<'t> {
                     x + self.size * MARK / 2.0,
                     y - self.size * super::typeface::CAP_HEIGHT / 2.0,
                 );
-                let before = match &cell.spoken {
-                    Some(words) => Some(flow.enter(Role::Figure(words.clone()))),
-                    None => None,
-                };
+                let spoken = cell.spoken.as_ref();
+                let before = spoken.map(|words| flow.enter(Role::Figure(words.clone())));
                 flow.page().mark(kind, centre, self.size * MARK);
                 if let Some(before) = before {
                     flow.leave(before);

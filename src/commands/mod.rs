@@ -9,6 +9,7 @@ mod limits;
 mod plan;
 mod present;
 mod records;
+mod signing;
 mod site;
 mod store;
 mod text;

@@ -6,9 +6,11 @@ mod show;
 mod verify;
 
 use super::keep::{self, PROGRAM, Place, certificates_of};
+use super::signing::SigningArgs;
 use super::site::Site;
 use super::store::Paths;
 use super::{Context, Format, exit};
+use crate::certificate::as_issued;
 use crate::diagnostic::printable;
 use crate::ledger::bag::{Export, export};
 use crate::ledger::disk::System;
@@ -57,6 +59,8 @@ enum Command {
         /// For whom or by whom: the code that the site uses for a person
         #[arg(long, value_name = "PERSON")]
         by: Option<String>,
+        #[command(flatten)]
+        signing: SigningArgs,
         #[command(flatten)]
         with: Circumstances,
     },
@@ -154,8 +158,10 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
             record,
             reason,
             by,
+            signing,
             with,
-        } => reissue(record, reason, by.as_deref(), &place(&site, with))
+        } => signed_place(&site, with, signing)
+            .and_then(|place| reissue(record, reason, by.as_deref(), &place))
             .and_then(|act| act.done(context)),
         Command::Dispose {
             record,
@@ -188,7 +194,16 @@ fn place(site: &Site, with: &Circumstances) -> Place {
         key: None,
         witness: with.witness.clone(),
         now: keep::now(with.now),
+        signer: None,
     }
+}
+
+fn signed_place(site: &Site, with: &Circumstances, signing: &SigningArgs) -> Result<Place, String> {
+    let place = place(site, with);
+    Ok(Place {
+        signer: signing.signer(place.now)?,
+        ..place
+    })
 }
 
 fn open(site: &Site) -> Result<Ledger, String> {
@@ -228,7 +243,7 @@ fn export_record(
     let known = certificates_of(&ledger, &record).map_err(|e| e.to_string())?;
     let pdf = std::fs::read(Paths::of(&site.certificates(), &record).pdf)
         .ok()
-        .filter(|bytes| known.contains(&sha256_hex(bytes)));
+        .filter(|bytes| known.contains(&sha256_hex(as_issued(bytes))));
     let what = Export {
         record: &record,
         certificate: pdf.as_deref(),

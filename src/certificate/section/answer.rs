@@ -5,19 +5,26 @@ use crate::certificate::canvas::Area;
 use crate::certificate::figures::{ABSENT, fixed, index, instant, plain, sentence};
 use crate::certificate::flow::{BODY, BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
 use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
+use crate::certificate::paper::Sheet;
 use crate::certificate::plot::strip::strip;
 use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
 use crate::record::{ClassSection, LotRecord};
 
-const WORD: Style = Style::bold(42.0);
-const SENTENCE: Style = Style::regular(12.5);
+const VERDICT: Style = Style::bold(42.0);
+const REASON: Style = Style::regular(12.5);
+/// Where the verdict's word begins, behind its mark: points from the left margin.
+pub(in crate::certificate) const WORD_LEFT: f64 = 52.0;
+/// Baseline of the verdict's word, points from the top margin.
+pub(in crate::certificate) const WORD: f64 = 39.0;
+/// Where the sentence why begins, points from the top margin.
+pub(in crate::certificate) const SENTENCE: f64 = 64.0;
 const SENTENCE_LEADING: f64 = 16.0;
 const KEY: Style = Style::bold(10.5);
 const VALUE: Style = Style::regular(10.5);
 /// Width of the labels in the right column, and its line height.
-const LABEL: f64 = 58.0;
+pub(in crate::certificate) const LABEL: f64 = 58.0;
 const SIDE: f64 = 13.0;
 
 /// The first page (more, where texts are very long).
@@ -36,11 +43,16 @@ pub(in crate::certificate) fn answer(
     table(flow, characteristics);
 }
 
+/// Where the right column of page one begins.
+pub(in crate::certificate) fn split(sheet: &Sheet) -> f64 {
+    sheet.left + sheet.measure() * 0.57
+}
+
 /// Verdict and reason on the left, identity of the lot on the right.
 fn head(flow: &mut Flow, record: &LotRecord) {
     let measure = flow.sheet.measure();
     let left = flow.left();
-    let split = left + measure * 0.57;
+    let split = split(&flow.sheet);
     let identity = identity(record);
     let lines = side_lines(&identity, flow.right() - split - LABEL);
     let side_height: f64 = lines.iter().map(|l| 3.0 + l.len() as f64 * SIDE).sum();
@@ -52,9 +64,9 @@ fn head(flow: &mut Flow, record: &LotRecord) {
         .mark(lot_mark(record.verdict), (left + 20.0, top + 25.0), 40.0);
     let before = flow.enter(Role::Heading(1));
     flow.page()
-        .text((left + 52.0, top + 39.0), WORD.ink(ink), &word);
+        .text((left + WORD_LEFT, top + WORD), VERDICT.ink(ink), &word);
     flow.leave(before);
-    flow.y = top + 64.0;
+    flow.y = top + SENTENCE;
     let room = if beside { split - 26.0 - left } else { measure };
     why(flow, record, room);
     if beside {
@@ -113,10 +125,10 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
         return;
     };
     let before = flow.enter(Role::Paragraph);
-    for line in wrap(&sentence(&first.text), SENTENCE, room) {
+    for line in wrap(&sentence(&first.text), REASON, room) {
         let area = flow.take(SENTENCE_LEADING);
         flow.page()
-            .text((area.left, area.top + 11.5), SENTENCE, &line);
+            .text((area.left, area.top + 11.5), REASON, &line);
     }
     flow.leave(before);
     let mut left = FURTHER;

@@ -57,7 +57,9 @@ pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves
     for quantity in [Quantity::Magnitude, Quantity::Resistance] {
         plot(flow, record, curves, quantity, height);
     }
-    circuit(flow, record);
+    if let Some(words) = circuit_words(record) {
+        flow.paragraph_of(&words, SMALL, SMALL_LEADING);
+    }
 }
 
 /// The curve of the equivalent circuit, above the others and thin.
@@ -78,11 +80,10 @@ fn fitted(page: &mut Canvas, frame: &Frame, record: &LotRecord, quantity: Quanti
     page.lines(clip(&placed, frame.area), Pen::dashed(0.7, TEXT));
 }
 
-/// What the dashed curve is, and the elements of the circuit.
-fn circuit(flow: &mut Flow, record: &LotRecord) {
-    let Some(circuit) = &record.circuit else {
-        return;
-    };
+/// What the dashed curve is, and the elements of the circuit, for the document and its text
+/// twin.
+pub(in crate::certificate) fn circuit_words(record: &LotRecord) -> Option<String> {
+    let circuit = record.circuit.as_ref()?;
     let share = |v: f64| engineering(v, "1", 2);
     let mut text = format!(
         "Equivalent circuit of part {}, the middle of the lot: {}",
@@ -113,7 +114,7 @@ fn circuit(flow: &mut Flow, record: &LotRecord) {
             why.join("; ")
         ));
     }
-    flow.paragraph_of(&text, SMALL, SMALL_LEADING);
+    Some(text)
 }
 
 /// The curve's points (hertz, ohm) as logarithms; points without a logarithm are gaps.

@@ -57,7 +57,27 @@ pub(in crate::certificate) fn facts(record: &LotRecord) -> Vec<(&'static str, St
     add("Last heat", lot.last_heat.clone());
     add("Label as scanned", lot.label.as_deref().map(visible));
     add("Sweeps", Some(lot.sweeps.clone()));
+    if let Some(run) = &lot.run {
+        add("Seed of the sample", run.seed.map(|s| s.to_string()));
+        add("Scans", Some(joined(run.scans.iter().map(|s| visible(s)))));
+        add("Operators", Some(run.operators.join(", ")));
+        add(
+            "Last good check of the jig",
+            run.jig_checked.as_deref().map(instant),
+        );
+        let aside = run.set_aside.iter().map(|a| {
+            let by =
+                a.by.as_ref()
+                    .map_or(String::new(), |by| format!(" by {by}"));
+            format!("{}: {}{by}", a.sweep, a.why.name().replace('_', " "))
+        });
+        add("Sweeps set aside", Some(joined(aside)));
+    }
     out
+}
+
+fn joined(each: impl Iterator<Item = String>) -> String {
+    each.collect::<Vec<_>>().join("; ")
 }
 
 /// A scan with its control characters as their names in angle brackets.

@@ -10,6 +10,7 @@ use sha2::{Digest, Sha256};
 const END: &[u8] = b"%%EOF";
 /// Between the document and what is appended.
 const BEGIN: &[u8] = b"\n";
+const FORM: &[u8] = b"/SubFilter /ETSI.CAdES.detached";
 const CONTENTS: &[u8] = b"/Contents <";
 const TIME: &[u8] = b"/M (D:";
 /// How the time is written, `20261005091403+02'00'`.
@@ -117,12 +118,14 @@ impl Update {
 /// Width of the four numbers of a byte range.
 const RANGE: usize = 44;
 
-/// Cuts a file behind the last but one end-of-file mark: the document, and what was appended.
+/// Cuts a file behind the last but one end-of-file mark: the document, and what was appended;
+/// `None` where that holds no signature.
 pub(super) fn split(pdf: &[u8]) -> Option<(&[u8], &[u8])> {
     let last = find_last(pdf, END)?;
     let end = find_last(pdf.get(..last)?, END)? + END.len();
     let (document, appended) = pdf.split_at_checked(end)?;
-    appended.starts_with(BEGIN).then_some((document, appended))
+    let signature = appended.starts_with(BEGIN) && find(appended, FORM).is_some();
+    signature.then_some((document, appended))
 }
 
 /// Time, room and contents of an update.

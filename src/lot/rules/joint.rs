@@ -46,9 +46,9 @@ pub struct JointOutlier {
 pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
     let (names, points) = points(judged, &rule.of);
     let of = rule.of.join(", ");
-    let found = of_points(rule.of.clone(), rule.alpha, &names, &points);
-    let (section, result) = match found {
-        Ok(section) => {
+    let (section, tested) = of_points(rule.of.clone(), rule.alpha, &names, &points);
+    let result = match tested {
+        Ok(()) => {
             let parts: Vec<&str> = section.outliers.iter().map(|o| o.part.as_str()).collect();
             let mut result = if parts.is_empty() {
                 "none".to_owned()
@@ -68,9 +68,9 @@ pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
                 ));
                 result += ": holds the lot";
             }
-            (section, result)
+            result
         }
-        Err((section, why)) => {
+        Err(why) => {
             ruled.holds.push(Note::new(
                 "outliers_not_available",
                 format!(
@@ -78,8 +78,7 @@ pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
                     why.text()
                 ),
             ));
-            let result = format!("cannot be tested ({}): holds the lot", why.text());
-            (section, result)
+            format!("cannot be tested ({}): holds the lot", why.text())
         }
     };
     let critical = section.critical.map_or(String::new(), |c| {
@@ -118,7 +117,8 @@ pub(super) fn beside(judged: &Judged, ruled: &[JointSection]) -> Option<JointSec
         return None;
     }
     let (names, points) = points(judged, &of);
-    of_points(of, None, &names, &points).ok()
+    let (section, tested) = of_points(of, None, &names, &points);
+    tested.ok().map(|()| section)
 }
 
 /// `019 (38.1), 044 (31.7)`
@@ -152,7 +152,7 @@ fn of_points(
     alpha: Option<f64>,
     names: &[&str],
     points: &[Vec<f64>],
-) -> Result<JointSection, (JointSection, Undefined)> {
+) -> (JointSection, Result<(), Undefined>) {
     let mut section = JointSection {
         of,
         n: points.len() as u64,
@@ -174,8 +174,8 @@ fn of_points(
                 })
             };
             section.outliers = test.outliers.iter().filter_map(outlier).collect();
-            Ok(section)
+            (section, Ok(()))
         }
-        Err(why) => Err((section, why)),
+        Err(why) => (section, Err(why)),
     }
 }
