@@ -57,6 +57,8 @@ fn past(number: usize, lot: &str, state: Option<Severity>, count: u64) -> PastLo
             },
         )]),
         characteristics: IndexMap::new(),
+        station: "BENCH-1".into(),
+        series: None,
     }
 }
 

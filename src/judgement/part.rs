@@ -3,10 +3,11 @@
 use super::tries::{TryOutcome, nothing_left, standing};
 use super::{PartVerdict, ReadingRecord, judge_reading};
 use crate::diagnostic::Note;
-use crate::limits::{Limits, Retest, Window};
+use crate::limits::{Bound, Limits, Retest, Window};
 use crate::quantity::engineering;
 use crate::readings::{
     self, Budget, Characteristic, Extremes, Place, Reader, Reading, Referral, Request,
+    SeriesCircuit,
 };
 use crate::sweep::{Attempt, Sweep};
 use indexmap::IndexMap;
@@ -28,6 +29,9 @@ pub struct PartRecord {
     /// V rms across the part at the test frequency, where the sweep carries it.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub drive: Option<f64>,
+    /// Where the sweep holds it: what a shift common to the whole lot is looked for in.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub series: Option<SeriesCircuit>,
     /// Every try in order; the part's verdict and readings are of the try marked `counts`.
     pub attempts: Vec<AttemptRecord>,
     pub readings: IndexMap<String, ReadingRecord>,
@@ -58,6 +62,7 @@ pub struct AttemptRecord {
 pub struct JudgedTry {
     pub verdict: PartVerdict,
     pub drive: Option<f64>,
+    pub series: Option<SeriesCircuit>,
     pub class: Option<String>,
     pub readings: IndexMap<String, ReadingRecord>,
     pub faults: Vec<Note>,
@@ -80,6 +85,7 @@ pub fn judge_try(
             return JudgedTry {
                 verdict: PartVerdict::Unmeasured,
                 drive: None,
+                series: None,
                 class: None,
                 readings: IndexMap::new(),
                 faults: faults.clone(),
@@ -112,6 +118,7 @@ pub fn judge_try(
         }
         readings.insert(bound.key.clone(), record);
     }
+    let series = capacitance_request(limits).and_then(|request| reader.series(&request));
     let verdict = PartVerdict::of_all(readings.values().map(|r| r.verdict));
     let class = limits
         .bounds
@@ -134,11 +141,26 @@ pub fn judge_try(
     JudgedTry {
         verdict,
         drive,
+        series,
         class,
         readings,
         faults,
         warnings,
     }
+}
+
+/// The capacitance that the limit file bounds first.
+fn capacitance_request(limits: &Limits) -> Option<Request> {
+    let of_capacitance = |b: &&Bound| b.characteristic == Characteristic::Capacitance;
+    limits
+        .bounds
+        .iter()
+        .find(of_capacitance)
+        .map(|bound| Request {
+            characteristic: bound.characteristic,
+            place: bound.place,
+            equivalent: limits.conditions.equivalent,
+        })
 }
 
 /// The capacitance at the referee time, and the value as measured beside it. Where the limit file
@@ -172,7 +194,7 @@ fn referred(extremes: Extremes, limits: &Limits, age: Option<f64>) -> (Extremes,
 /// The frequency at which the drive is looked at: that of the first capacitance bound, or else of
 /// the first bound that has one.
 fn drive_frequency(limits: &Limits) -> Option<f64> {
-    let at = |b: &crate::limits::Bound| match b.place {
+    let at = |b: &Bound| match b.place {
         Place::At(f) => Some(f),
         _ => None,
     };
@@ -261,6 +283,7 @@ pub fn judge_part(
     let none = JudgedTry {
         verdict: PartVerdict::Unmeasured,
         drive: None,
+        series: None,
         class: None,
         readings: IndexMap::new(),
         faults: vec![nothing_left()],
@@ -273,6 +296,7 @@ pub fn judge_part(
             .map_or(String::new(), |(attempt, ..)| attempt.part.clone()),
         verdict: counted.verdict,
         drive: counted.drive,
+        series: counted.series,
         class: counted.class.clone(),
         attempts,
         readings: counted.readings.clone(),

@@ -1,6 +1,6 @@
 //! The lots before this one of the same part and supplier, as far as they bear on it.
 
-use super::LotVerdict;
+use super::{LotSeries, LotVerdict};
 use crate::statistics::sampling::Severity;
 use indexmap::IndexMap;
 
@@ -41,6 +41,10 @@ pub struct PastLot {
     pub classes: IndexMap<String, PastClass>,
     /// By key of the bound; only those with a mean.
     pub characteristics: IndexMap<String, PastCharacteristic>,
+    /// The station it was measured on.
+    pub station: String,
+    /// Of the series circuits of its parts.
+    pub series: Option<LotSeries>,
 }
 
 /// One class of nonconformity of an earlier lot.

@@ -86,6 +86,7 @@ pub fn judge(
         lot: &lot.lot,
         history,
         limits,
+        station,
         parts,
         statistics: &statistics,
     });

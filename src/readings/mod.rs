@@ -12,12 +12,14 @@ mod esl;
 mod esr_minimum;
 mod local_fit;
 mod reading;
+mod series;
 mod srf;
 mod uncertainty;
 
 pub use ageing::{AgeingError, Referral, refer};
 pub use characteristic::{Characteristic, Equivalent, Place};
 pub use reading::{Extremes, Reading, Request, Value};
+pub use series::SeriesCircuit;
 pub use uncertainty::{Budget, Component, combined};
 
 use crate::diagnostic::Note;
@@ -26,6 +28,7 @@ use at_frequency::local;
 use circuit::CircuitFit;
 use local_fit::LocalFit;
 use reading::Outcome;
+use series::Resonance;
 use std::cell::{OnceCell, RefCell};
 
 /// Reads characteristics from one sweep; what several of them share is computed once.
@@ -34,7 +37,7 @@ pub struct Reader<'a> {
     sweep: &'a Sweep,
     budget: &'a Budget,
     circuit: OnceCell<Result<CircuitFit, Note>>,
-    resonance: OnceCell<Outcome>,
+    resonance: OnceCell<Resonance>,
     /// The local fit that was asked for last, and its frequency.
     local: RefCell<Option<(f64, Option<LocalFit>)>>,
 }
@@ -94,7 +97,7 @@ impl<'a> Reader<'a> {
         self.circuit.get_or_init(|| circuit::fit(self.sweep))
     }
 
-    fn resonance(&self) -> &Outcome {
+    fn resonance(&self) -> &Resonance {
         self.resonance.get_or_init(|| srf::read(self.sweep))
     }
 
@@ -127,8 +130,8 @@ impl<'a> Reader<'a> {
                 return (lowest, Some(highest));
             }
             (Characteristic::EsrMinimum, place) => esr_minimum::read(sweep, place),
-            (Characteristic::Srf, _) => self.resonance().clone(),
-            (Characteristic::Esl, _) => esl::read(sweep, self.resonance()),
+            (Characteristic::Srf, _) => self.resonance().outcome.clone(),
+            (Characteristic::Esl, _) => esl::read(sweep, &self.resonance().outcome),
             (c @ (Characteristic::FittedCapacitance | Characteristic::FittedResistance), _) => {
                 circuit::read(sweep, self.circuit(), c)
             }

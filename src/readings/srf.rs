@@ -6,7 +6,8 @@
 //! crossing is then the root of the reactance of a local fit over ±0.4 decade.
 
 use super::local_fit::{LocalFit, WIDTH, grown};
-use super::reading::{Estimate, Outcome};
+use super::reading::Estimate;
+use super::series::Resonance;
 use super::{Reading, Value};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
@@ -64,11 +65,15 @@ fn crossings(sweep: &Sweep) -> Vec<Crossing> {
 ///
 /// A sweep that is capacitive up to its end gives `Value::Above` its last frequency; one that is
 /// inductive from its start `Value::Below` its first.
-pub(super) fn read(sweep: &Sweep) -> Outcome {
+pub(super) fn read(sweep: &Sweep) -> Resonance {
+    let none = |reading| Resonance {
+        outcome: Err(reading),
+        resistance: None,
+    };
     let n = sweep.frequency.len();
     let found = crossings(sweep);
     let Some(at) = found.iter().position(|c| c.rises) else {
-        return Err(without_crossing(sweep, &found));
+        return none(without_crossing(sweep, &found));
     };
     let crossing = found[at];
     let centre = 0.5 * (crossing.first + crossing.last);
@@ -87,7 +92,7 @@ pub(super) fn read(sweep: &Sweep) -> Outcome {
         (centre - half).max(lower).exp(),
         (centre + half).min(upper).exp(),
     ) else {
-        return Err(Reading::missing(
+        return none(Reading::missing(
             "srf_not_resolved",
             "the reactance changes sign, but its course there gives no definite crossing; measure again",
         ));
@@ -109,7 +114,10 @@ pub(super) fn read(sweep: &Sweep) -> Outcome {
             "the reactance crosses zero more than once: the first crossing is given; look for a second part left in the jig",
         ));
     }
-    Ok(estimate)
+    Resonance {
+        outcome: Ok(estimate),
+        resistance: Some(resonance.resistance),
+    }
 }
 
 fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
@@ -149,7 +157,7 @@ fn without_crossing(sweep: &Sweep, found: &[Crossing]) -> Reading {
 }
 
 /// The self-resonance had from a local fit.
-struct Resonance {
+struct Root {
     /// Hz
     frequency: f64,
     /// Standard uncertainty of ln f from the fit.
@@ -161,7 +169,7 @@ struct Resonance {
 }
 
 /// The root of the fitted reactance between two frequencies.
-fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<Resonance> {
+fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<Root> {
     let points = &sweep.frequency;
     let range = points.partition_point(|f| *f < low)..points.partition_point(|f| *f <= high);
     let range = grown(points, range, centre, 5);
@@ -194,7 +202,7 @@ fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<Resonance> 
         }
     }
     let slope = fit.slope(root).im;
-    (slope.is_finite() && slope > 0.0).then(|| Resonance {
+    (slope.is_finite() && slope > 0.0).then(|| Root {
         frequency: root,
         sigma: fit.sigma(root, Complex64::I) / slope,
         slope,

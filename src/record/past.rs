@@ -39,6 +39,8 @@ impl PastLot {
             complete: sampling.presented >= sampling.required && sampling.unmeasured == 0,
             classes: classes.collect(),
             characteristics: characteristics.collect(),
+            station: record.station.station.clone(),
+            series: record.findings.common_shift.as_ref().map(|s| s.lot),
         }
     }
 }

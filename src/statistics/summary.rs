@@ -136,6 +136,22 @@ pub(super) fn median(values: &[f64]) -> Result<f64, Undefined> {
     Ok(median_of_sorted(&sorted))
 }
 
+/// First quartile, median and third quartile, interpolated linearly between the values (type 7 of
+/// Hyndman & Fan 1996).
+///
+/// # Errors
+/// [`Undefined::TooFewValues`] for no value, [`Undefined::NotFinite`].
+pub fn quartiles_of(values: &[f64]) -> Result<[f64; 3], Undefined> {
+    if values.is_empty() {
+        return Err(Undefined::TooFewValues {
+            needed: 1,
+            found: 0,
+        });
+    }
+    let (first, median, third) = quartiles(&sorted(values)?);
+    Ok([first, median, third])
+}
+
 /// First quartile, median and third quartile of ascending values, interpolated linearly (type 7 of
 /// Hyndman & Fan 1996); NaN of none.
 pub(super) fn quartiles(sorted: &[f64]) -> (f64, f64, f64) {

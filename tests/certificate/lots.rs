@@ -664,6 +664,7 @@ fn part(name: &str, kinds: &[Kind], dice: &mut Dice) -> PartRecord {
         verdict: PartVerdict::Conforming,
         class: None,
         drive: None,
+        series: None,
         attempts: vec![AttemptRecord {
             attempt: 1,
             file: format!("sweeps/{name}.csv"),

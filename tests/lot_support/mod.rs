@@ -133,6 +133,7 @@ pub fn part(i: usize, verdict: PartVerdict, value: f64) -> PartRecord {
         verdict,
         class,
         drive: None,
+        series: None,
         attempts: vec![AttemptRecord {
             attempt: 1,
             file: format!("sweeps/{:03}.csv", i + 1),

@@ -1,6 +1,7 @@
 //! The lot rules of a limit file: what each finds, why it holds the lot, and how that came about.
 
 mod capability;
+mod common_shift;
 mod joint;
 mod lot_chart;
 mod mixed;
@@ -8,6 +9,7 @@ mod outliers;
 mod trend;
 mod warnings;
 
+pub use common_shift::{Common, CommonShift, LotSeries, Shift, common_shift};
 pub use joint::{JointOutlier, JointSection};
 pub use lot_chart::{ChartedLot, LotChart};
 pub use mixed::{GroupSection, MixedSection};
@@ -18,6 +20,7 @@ use super::{History, Statistics};
 use crate::diagnostic::Note;
 use crate::judgement::PartRecord;
 use crate::limits::Limits;
+use crate::station::Station;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
 
@@ -42,6 +45,9 @@ pub struct Findings {
     /// Lot means, one chart a characteristic, where accepted lots went before: decide nothing.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub lots: Vec<LotChart>,
+    /// The lot against the lots before it on the same station, where its parts have a series circuit.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub common_shift: Option<CommonShift>,
 }
 
 impl Findings {
@@ -65,6 +71,7 @@ pub(super) struct Judged<'a> {
     /// The lot's number.
     pub(super) lot: &'a str,
     pub(super) limits: &'a Limits,
+    pub(super) station: &'a Station,
     pub(super) parts: &'a [PartRecord],
     pub(super) statistics: &'a IndexMap<String, Statistics>,
     pub(super) history: &'a History,
@@ -79,5 +86,6 @@ pub(super) fn evaluate(judged: &Judged) -> Ruled {
     trend::evaluate(judged, &mut ruled);
     ruled.findings.scatter = joint::beside(judged, &ruled.findings.joint);
     ruled.findings.lots = lot_chart::charts(judged);
+    common_shift::evaluate(judged, &mut ruled);
     ruled
 }

@@ -102,21 +102,28 @@ fn of_bound(judged: &Judged, rule: &TrendRule, bound: &Bound, ruled: &mut Ruled)
     ruled.findings.trend.push(section);
 }
 
-/// Accepted lots, measured as demanded, other than this one, that have a mean of the characteristic.
-/// Of several records of one lot the last counts.
+/// Lots to compare with that have a mean of the characteristic.
 pub(super) fn comparable<'a>(
     judged: &Judged<'a>,
     key: &str,
 ) -> Vec<(&'a PastLot, PastCharacteristic)> {
+    comparable_lots(judged)
+        .filter_map(|lot| Some((lot, *lot.characteristics.get(key)?)))
+        .collect()
+}
+
+/// Accepted lots, measured as demanded, other than this one. Of several records of one lot the last
+/// counts.
+pub(super) fn comparable_lots<'a>(judged: &Judged<'a>) -> impl Iterator<Item = &'a PastLot> {
     let lots = &judged.history.lots;
+    let this = judged.lot;
     let last =
-        |at: usize, lot: &PastLot| !lots.iter().skip(at + 1).any(|later| later.lot == lot.lot);
+        move |at: usize, lot: &PastLot| !lots.iter().skip(at + 1).any(|later| later.lot == lot.lot);
     lots.iter()
         .enumerate()
-        .filter(|(at, lot)| lot.lot != judged.lot && last(*at, lot))
+        .filter(move |(at, lot)| lot.lot != this && last(*at, lot))
         .filter(|(_, lot)| lot.verdict == LotVerdict::Accept && lot.conditions_met)
-        .filter_map(|(_, lot)| Some((lot, *lot.characteristics.get(key)?)))
-        .collect()
+        .map(|(_, lot)| lot)
 }
 
 fn compare(judged: &Judged, section: &mut TrendSection, past: &[PastCharacteristic]) {

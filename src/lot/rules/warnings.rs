@@ -28,6 +28,16 @@ pub(super) fn no_history(key: &str, found: usize, needed: usize) -> Note {
     )
 }
 
+/// Capacitance and ESR of the whole lot are scaled by one factor.
+pub(super) fn impedance_scaled(text: String) -> Note {
+    Note::new("impedance_scaled", text)
+}
+
+/// The ESL of the whole lot has shifted.
+pub(super) fn esl_shifted(text: String) -> Note {
+    Note::new("esl_shifted", text)
+}
+
 /// A rule that warns.
 pub(super) fn lot_unlike_previous(text: String) -> Note {
     Note::new("lot_unlike_previous", text)
