@@ -9,6 +9,8 @@
 
 pub mod quantity;
 pub mod diagnostic;
+pub mod keys;
+pub mod site;
 pub mod statistics;
 pub mod label;
 pub mod station;

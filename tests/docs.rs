@@ -261,6 +261,7 @@ fn example_files_are_valid() {
                 "part" => format!("limits/parts/{value}.yaml"),
                 "station" => format!("limits/stations/{value}.yaml"),
                 "lot" => "lot/lot.yaml".to_owned(),
+                "site" => "limits/site.yaml".to_owned(),
                 _ => panic!("{}: an example that begins with `{key}`", path.display()),
             };
             let file = site.path().join(&name);

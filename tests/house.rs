@@ -112,6 +112,9 @@ fn a_module_uses_only_those_above_it() {
 fn what_must_not_see_what() {
     let forbidden = [
         ("readings", "limits"),
+        ("readings", "site"),
+        ("judgement", "site"),
+        ("lot", "site"),
         ("certificate", "ledger"),
         ("ledger", "certificate"),
         ("statistics", "quantity"),

@@ -15,6 +15,9 @@ const NAMED: usize = 4;
 /// Lots before this one that are looked at; the switching rules look back ten.
 const LOTS_BEFORE: usize = 40;
 
+/// What the ledger calls the site file.
+const SITE_FILE: &str = "limits/site.yaml";
+
 /// The files of a lot with what the ledger calls them.
 pub struct Evidence<'a> {
     #[allow(missing_docs)]
@@ -49,6 +52,8 @@ impl<'a> Evidence<'a> {
             file("limits", &self.limits, &self.sources.limits),
             file("station", &self.station, &self.sources.station),
         ];
+        let site = self.sources.site.as_ref();
+        all.extend(site.map(|site| file("site", SITE_FILE, site)));
         all.extend(self.lot.label.as_ref().map(|label| Object {
             role: "label",
             name: "label",
@@ -276,7 +281,12 @@ pub fn sources(ledger: &Ledger, entry: &Entry) -> Result<Sources, LedgerError> {
             ))),
         }
     };
+    let site = match entry.objects_of("site").next() {
+        Some(_) => Some(one("site")?),
+        None => None,
+    };
     Ok(Sources {
+        site,
         lot: one("lot")?,
         limits: one("limits")?,
         station: one("station")?,

@@ -37,7 +37,7 @@ pub struct Args {
     /// Key that a new ledger begins with [default: one is made]
     #[arg(long, env = "REELGATE_LEDGER_KEY", value_name = "FILE")]
     ledger_key: Option<PathBuf>,
-    /// File on another machine or share that gets each new checkpoint
+    /// File on another machine or share that gets each new checkpoint [default: the site file's]
     #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Option<PathBuf>,
     #[command(flatten)]
@@ -102,21 +102,21 @@ fn status(records: &[LotRecord], failed: bool, printed: bool) -> u8 {
 /// One lot from its folder to its record; what went wrong is on standard error.
 fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, String), ()> {
     let site = Site::new(&context.site);
-    let sources = gather(&site, folder).map_err(|stop| match stop {
-        Stop::Unreadable(all) => say_unreadable(context, &all),
-        Stop::Faults(faults) => say_faults(context, &faults),
-    })?;
+    let sources = gather(&site, folder).map_err(|stop| say_stop(context, stop))?;
     let evidence = Evidence::of(&sources).map_err(|faults| say_faults(context, &faults))?;
     let now = keep::now(args.now);
     // Before anything is judged: a record that cannot be signed is not begun.
-    let signer = args.signing.signer(now).map_err(|why| {
-        let _ = writeln!(context.err, "error: {}", printable(&why));
-    })?;
+    let signer = args
+        .signing
+        .signer(&site, sources.site.as_ref(), now)
+        .map_err(|why| {
+            let _ = writeln!(context.err, "error: {}", printable(&why));
+        })?;
     let place = Place {
         records: site.records(),
         certificates: site.certificates(),
         key: args.ledger_key.clone(),
-        witness: args.witness.clone(),
+        witness: site.witness(args.witness.as_deref(), sources.site.as_ref()),
         now,
         signer,
     };
@@ -239,6 +239,13 @@ fn say(context: &mut Context, path: &str, text: &str) {
         printable(path),
         printable(text)
     );
+}
+
+fn say_stop(context: &mut Context, stop: Stop) {
+    match stop {
+        Stop::Unreadable(all) => say_unreadable(context, &all),
+        Stop::Faults(faults) => say_faults(context, &faults),
+    }
 }
 
 fn say_unreadable(context: &mut Context, all: &[Unreadable]) {

@@ -1,4 +1,4 @@
-//! `limits`: check limit, station and lot files, show what a limit file resolves to, print schemas.
+//! `limits`: check limit, station, lot and site files, show what a limit file resolves to, print schemas.
 
 mod check;
 mod files;
@@ -24,7 +24,7 @@ pub struct Args {
 
 #[derive(Debug, Subcommand)]
 enum Command {
-    /// List every fault of limit, station and lot files
+    /// List every fault of limit, station, lot and site files
     Check {
         /// Files and folders; without any, the limits/ of the site
         paths: Vec<PathBuf>,
@@ -54,6 +54,8 @@ pub enum Kind {
     Station,
     /// A lot file
     Lot,
+    /// The site file
+    Site,
 }
 
 /// Runs the command: 0 all valid, 2 anything invalid or unreadable, 4 output failed.
@@ -78,5 +80,6 @@ fn schema(kind: Kind, out: &mut dyn Write) -> io::Result<()> {
         Kind::Limits => crate::limits::SCHEMA.as_bytes(),
         Kind::Station => crate::station::SCHEMA.as_bytes(),
         Kind::Lot => crate::lot::SCHEMA.as_bytes(),
+        Kind::Site => crate::site::SCHEMA.as_bytes(),
     })
 }

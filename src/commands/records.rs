@@ -87,7 +87,7 @@ struct Circumstances {
     /// The time, RFC 3339 with offset [default: now]
     #[arg(long, env = "REELGATE_NOW", value_name = "TIME", value_parser = DateTime::parse_from_rfc3339)]
     now: Option<DateTime<FixedOffset>>,
-    /// File on another machine or share that gets each new checkpoint
+    /// File on another machine or share that gets each new checkpoint [default: the site file's]
     #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Option<PathBuf>,
 }
@@ -169,7 +169,8 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
             reason,
             by,
             with,
-        } => dispose(record, *decision, reason, by, &place(&site, with))
+        } => place(&site, with)
+            .and_then(|place| dispose(record, *decision, reason, by, &place))
             .and_then(|act| act.done(context)),
     };
     match done {
@@ -187,21 +188,24 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     }
 }
 
-fn place(site: &Site, with: &Circumstances) -> Place {
-    Place {
+fn place(site: &Site, with: &Circumstances) -> Result<Place, String> {
+    let rules = site.rules().map_err(|stop| stop.to_string())?;
+    Ok(Place {
         records: site.records(),
         certificates: site.certificates(),
         key: None,
-        witness: with.witness.clone(),
+        witness: site.witness(with.witness.as_deref(), rules.as_ref()),
         now: keep::now(with.now),
         signer: None,
-    }
+    })
 }
 
 fn signed_place(site: &Site, with: &Circumstances, signing: &SigningArgs) -> Result<Place, String> {
-    let place = place(site, with);
+    let place = place(site, with)?;
+    // Its faults were found above.
+    let rules = site.rules().ok().flatten();
     Ok(Place {
-        signer: signing.signer(place.now)?,
+        signer: signing.signer(site, rules.as_ref(), place.now)?,
         ..place
     })
 }

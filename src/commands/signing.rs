@@ -1,6 +1,8 @@
 //! Certificate and key that documents are signed with, from the files that the site names.
 
+use super::site::Site;
 use crate::certificate::Signer;
+use crate::sweep::RawFile;
 use chrono::{DateTime, FixedOffset};
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -8,7 +10,7 @@ use std::path::{Path, PathBuf};
 /// Where certificate and key are.
 #[derive(Debug, Clone, Default, clap::Args)]
 pub struct SigningArgs {
-    /// Certificate to sign the PDF with (PEM, its chain behind it)
+    /// Certificate to sign the PDF with, PEM, its chain behind it [default: the site file's]
     #[arg(
         long,
         env = "REELGATE_SIGN_CERTIFICATE",
@@ -16,7 +18,7 @@ pub struct SigningArgs {
         requires = "sign_key"
     )]
     sign_certificate: Option<PathBuf>,
-    /// Private key of that certificate (PKCS #8 PEM, ECDSA P-256)
+    /// Private key of that certificate, PKCS #8 PEM, ECDSA P-256 [default: the site file's]
     #[arg(
         long,
         env = "REELGATE_SIGN_KEY",
@@ -25,26 +27,27 @@ pub struct SigningArgs {
     )]
     sign_key: Option<PathBuf>,
     /// File whose first line is the passphrase of an encrypted key
-    #[arg(
-        long,
-        env = "REELGATE_SIGN_PASSPHRASE",
-        value_name = "FILE",
-        requires = "sign_key"
-    )]
+    #[arg(long, env = "REELGATE_SIGN_PASSPHRASE", value_name = "FILE")]
     sign_passphrase: Option<PathBuf>,
 }
 
 impl SigningArgs {
-    /// Who signs, if anyone; valid at the time of issue.
+    /// Who signs, if anyone, valid at the time of issue: by what was asked for, else by the site file.
     ///
     /// # Errors
     /// In words, with the file: one that cannot be read, is no such file, does not belong to the
     /// other, or a certificate that is not valid.
-    pub fn signer(&self, time: DateTime<FixedOffset>) -> Result<Option<Signer>, String> {
-        let (Some(certificate), Some(key)) = (&self.sign_certificate, &self.sign_key) else {
+    pub fn signer(
+        &self,
+        site: &Site,
+        rules: Option<&RawFile>,
+        time: DateTime<FixedOffset>,
+    ) -> Result<Option<Signer>, String> {
+        let asked = self.sign_certificate.clone().zip(self.sign_key.clone());
+        let Some((certificate, key)) = asked.or_else(|| site.signing(rules)) else {
             return Ok(None);
         };
-        signer(certificate, key, self.sign_passphrase.as_deref(), time).map(Some)
+        signer(&certificate, &key, self.sign_passphrase.as_deref(), time).map(Some)
     }
 }
 

@@ -3,6 +3,7 @@
 use crate::diagnostic::{Faults, Note};
 use crate::lot;
 use crate::record::Sources;
+use crate::site::{self, SiteFile};
 use crate::sweep::{RawFile, is_sweep_file};
 use std::fs;
 use std::io::Read;
@@ -33,6 +34,44 @@ impl Site {
         }
     }
 
+    /// What holds for the whole site: `limits/site.yaml`, where there is one.
+    ///
+    /// # Errors
+    /// A file that cannot be read, or its faults.
+    pub fn rules(&self) -> Result<Option<RawFile>, Stop> {
+        let path = self.root.join("limits").join("site.yaml");
+        if path.symlink_metadata().is_err() {
+            return Ok(None);
+        }
+        // A link that leads nowhere is no missing site file.
+        let raw = text_file(&path).map_err(|e| Stop::Unreadable(vec![e]))?;
+        site::read(&raw.name, &raw.bytes).map_err(Stop::Faults)?;
+        Ok(Some(raw))
+    }
+
+    /// Where a path of the site file leads: relative to the site's folder.
+    pub fn resolve(&self, path: &str) -> PathBuf {
+        self.root.join(path)
+    }
+
+    /// The witness file: the one that was asked for, else the one that the site file names.
+    pub fn witness(&self, asked: Option<&Path>, rules: Option<&RawFile>) -> Option<PathBuf> {
+        if let Some(path) = asked {
+            return Some(path.to_owned());
+        }
+        let file = meaning(rules?)?;
+        file.witness.map(|path| self.resolve(&path))
+    }
+
+    /// Certificate and key that the site file names.
+    pub fn signing(&self, rules: Option<&RawFile>) -> Option<(PathBuf, PathBuf)> {
+        let signing = meaning(rules?)?.signing?;
+        Some((
+            self.resolve(&signing.certificate),
+            self.resolve(&signing.key),
+        ))
+    }
+
     /// `limits/parts/<part>.yaml`
     pub fn limit_file(&self, part: &str) -> PathBuf {
         self.root
@@ -58,6 +97,11 @@ impl Site {
     pub fn certificates(&self) -> PathBuf {
         self.records().join("certificates")
     }
+}
+
+/// What a site file means; [`Site::rules`] has found no fault in it.
+pub fn meaning(rules: &RawFile) -> Option<SiteFile> {
+    site::read(&rules.name, &rules.bytes).ok()
 }
 
 /// A file that could not be read: its path and a sentence.
@@ -153,6 +197,20 @@ pub enum Stop {
     Faults(Faults),
 }
 
+impl std::fmt::Display for Stop {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Stop::Unreadable(all) => {
+                let each = all
+                    .iter()
+                    .map(|one| format!("{}: {}", one.path.display(), one.note.text));
+                f.write_str(&each.collect::<Vec<_>>().join("; "))
+            }
+            Stop::Faults(faults) => f.write_str(&crate::diagnostic::render(faults, false)),
+        }
+    }
+}
+
 /// Collects every file that the verdict on a lot folder rests on.
 ///
 /// A sweep file that cannot be read is an empty file with its name: its part is then unmeasured
@@ -171,6 +229,7 @@ pub fn gather(site: &Site, folder: &Path) -> Result<Sources, Stop> {
     }
     let file = text_file(&folder.join("lot.yaml")).map_err(|e| Stop::Unreadable(vec![e]))?;
     let lot = lot::read(&file.name, &file.bytes).map_err(Stop::Faults)?;
+    let rules = site.rules()?;
     let limits = controlled_file(&site.limit_file(&lot.part), "limit", &lot.part);
     let station = controlled_file(&site.station_file(&lot.station), "station", &lot.station);
     match (limits, station, sweeps(folder, &lot.sweeps)) {
@@ -178,6 +237,7 @@ pub fn gather(site: &Site, folder: &Path) -> Result<Sources, Stop> {
             let compensation = compensation(&site.station_file(&lot.station), &station)
                 .map_err(Stop::Unreadable)?;
             Ok(Sources {
+                site: rules,
                 lot: file,
                 limits,
                 station,

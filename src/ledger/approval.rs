@@ -4,7 +4,7 @@
 //! cannot be taken for that of another file, another site or another act.
 
 use super::digest::sha256_hex;
-use super::note::{NoteError, Signer, Verifier};
+use crate::keys::{NoteError, Signer, Verifier};
 
 const PURPOSE: &str = "reelgate approval 1";
 

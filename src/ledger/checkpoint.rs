@@ -5,7 +5,7 @@
 //! ledger still begins with the entries it then had.
 
 use super::digest::Hash;
-use super::note::{NoteError, Signer, Verifier};
+use crate::keys::{NoteError, Signer, Verifier};
 use base64::Engine as _;
 use base64::engine::general_purpose::STANDARD;
 

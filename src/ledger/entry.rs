@@ -96,7 +96,7 @@ pub enum Decision {
 #[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct ObjectRef {
-    /// `record`, `lot`, `label`, `limits`, `station`, `compensation`, `sweep`, `certificate`.
+    /// `record`, `site`, `lot`, `label`, `limits`, `station`, `compensation`, `sweep`, `certificate`.
     pub role: String,
     /// The name it had, relative to the lot folder or the site.
     pub name: String,

@@ -5,7 +5,7 @@
 
 use super::disk::Disk;
 use super::error::LedgerError;
-use super::note::Signer;
+use crate::keys::Signer;
 use std::fs::{self, File};
 use std::io::ErrorKind;
 use std::path::Path;

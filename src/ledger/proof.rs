@@ -5,7 +5,7 @@
 use super::checkpoint::Checkpoint;
 use super::digest::Hash;
 use super::merkle::{leaf_hash, verify_inclusion};
-use super::note::{NoteError, Verifier};
+use crate::keys::{NoteError, Verifier};
 use base64::Engine as _;
 use base64::engine::general_purpose::STANDARD;
 

@@ -5,6 +5,7 @@ use crate::limits::{Acceptance, DecisionRuleKind, Limits, NotNormal};
 use crate::lot::{BenchRun, Lot, LotJudgement};
 use crate::quantity::{engineering, shortest};
 use crate::readings::Place;
+use crate::site::SiteFile;
 use crate::station::{Method, Repeatability, Station};
 use sha2::{Digest, Sha256};
 
@@ -12,6 +13,7 @@ use sha2::{Digest, Sha256};
 #[derive(Debug)]
 #[allow(missing_docs)]
 pub struct Inputs<'a> {
+    pub site: Option<&'a SiteFile>,
     pub lot: &'a Lot,
     pub limits: &'a Limits,
     pub station: &'a Station,
@@ -31,6 +33,7 @@ pub struct Inputs<'a> {
 #[derive(Debug, Clone, PartialEq, Eq)]
 #[allow(missing_docs)]
 pub struct Digests {
+    pub site: Option<String>,
     pub lot: String,
     pub limits: String,
     pub station: String,
@@ -58,6 +61,10 @@ impl Digests {
             add(name);
             add(digest);
         }
+        if let Some(site) = &self.site {
+            add("site");
+            add(site);
+        }
         let digest = hex(&hash.finalize());
         format!("{lot}-{}", &digest[..12])
     }
@@ -76,6 +83,7 @@ impl LotRecord {
     /// The record of a judged lot.
     pub fn assemble(inputs: Inputs) -> LotRecord {
         let Inputs {
+            site,
             lot,
             limits,
             station,
@@ -98,6 +106,12 @@ impl LotRecord {
                 name: "reelgate".to_owned(),
                 version: env!("CARGO_PKG_VERSION").to_owned(),
             },
+            site: site
+                .zip(digests.site.as_ref())
+                .map(|(site, sha256)| SiteSection {
+                    site: site.name.clone(),
+                    sha256: sha256.clone(),
+                }),
             lot: lot_section(lot, &digests.lot),
             limits: limits_section(limits, &digests.limits, judgement.conditions),
             station: station_section(station, digests),

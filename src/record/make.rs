@@ -7,16 +7,19 @@ use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
 use crate::lot::{self, Aside, History, Lot};
 use crate::readings::{Budget, Characteristic};
+use crate::site::{self, SiteFile};
 use crate::station::{self, Station};
 use crate::statistics::sampling::Severity;
 use crate::sweep::{self, Attempt, RawFile, Standards, Sweep, validity};
 use rayon::prelude::*;
 
-/// The files that a verdict rests on, as they lie on the disk. Names of the first three are those
+/// The files that a verdict rests on, as they lie on the disk. Names of the first four are those
 /// that messages show.
 #[derive(Debug, Clone)]
 #[allow(missing_docs)]
 pub struct Sources {
+    /// The site file, where the site has one.
+    pub site: Option<RawFile>,
     pub lot: RawFile,
     pub limits: RawFile,
     pub station: RawFile,
@@ -63,7 +66,7 @@ pub struct Occasion {
 /// Why there is no record.
 #[derive(Debug)]
 pub enum Refusal {
-    /// Faults in lot, limit or station file.
+    /// Faults in site, lot, limit or station file.
     Faults(Vec<Faults>),
     /// The files are sound, and there is nothing to judge by: a code and a sentence.
     Impossible(Note),
@@ -74,14 +77,14 @@ pub enum Refusal {
 /// `read` is called after each sweep file, from any thread, for a progress display.
 ///
 /// # Errors
-/// Every fault of the three files at once; a plan that the lot size does not allow; sweeps of
+/// Every fault of the four files at once; a plan that the lot size does not allow; sweeps of
 /// compensation standards that cannot be used; no sweep file at all.
 pub fn make(
     sources: &Sources,
     occasion: &Occasion,
     read: &(dyn Fn() + Sync),
 ) -> Result<Made, Refusal> {
-    let (lot, limits, station) = parse(sources)?;
+    let (site, lot, limits, station) = parse(sources)?;
     let switching = lot::severity_state(
         &occasion.history,
         &limits.acceptance,
@@ -116,6 +119,7 @@ pub fn make(
     let digests = digests(sources);
     let circuit = circuit::of_median_part(&limits, &parts, &curves);
     let record = LotRecord::assemble(Inputs {
+        site: site.as_ref(),
         lot: &lot,
         limits: &limits,
         station: &station,
@@ -139,14 +143,18 @@ fn nominal_capacitance(limits: &Limits) -> Option<f64> {
     of_capacitance.filter_map(|bound| bound.nominal).next()
 }
 
-fn parse(sources: &Sources) -> Result<(Lot, Limits, Station), Refusal> {
+fn parse(sources: &Sources) -> Result<(Option<SiteFile>, Lot, Limits, Station), Refusal> {
+    let site = sources.site.as_ref();
+    let site = site
+        .map(|file| site::read(&file.name, &file.bytes))
+        .transpose();
     let lot = lot::read(&sources.lot.name, &sources.lot.bytes);
     let limits = limits::read(&sources.limits.name, &sources.limits.bytes);
     let station = station::read(&sources.station.name, &sources.station.bytes);
-    match (lot, limits, station) {
-        (Ok(lot), Ok(limits), Ok(station)) => Ok((lot, limits, station)),
-        (lot, limits, station) => {
-            let all = [lot.err(), limits.err(), station.err()];
+    match (site, lot, limits, station) {
+        (Ok(site), Ok(lot), Ok(limits), Ok(station)) => Ok((site, lot, limits, station)),
+        (site, lot, limits, station) => {
+            let all = [site.err(), lot.err(), limits.err(), station.err()];
             Err(Refusal::Faults(all.into_iter().flatten().collect()))
         }
     }
@@ -233,6 +241,7 @@ fn digests(sources: &Sources) -> Digests {
             .collect()
     };
     Digests {
+        site: sources.site.as_ref().map(|file| sha256(&file.bytes)),
         lot: sha256(&sources.lot.bytes),
         limits: sha256(&sources.limits.bytes),
         station: sha256(&sources.station.bytes),

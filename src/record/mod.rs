@@ -40,6 +40,9 @@ pub struct LotRecord {
     #[serde(default)]
     pub supersedes: Option<String>,
     pub program: Program,
+    /// Where the site has a site file.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub site: Option<SiteSection>,
     pub lot: LotSection,
     pub limits: LimitsSection,
     pub station: StationSection,
@@ -69,6 +72,15 @@ pub struct LotRecord {
 pub struct Program {
     pub name: String,
     pub version: String,
+}
+
+/// The site file in force.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[allow(missing_docs)]
+pub struct SiteSection {
+    /// Its name.
+    pub site: String,
+    pub sha256: String,
 }
 
 /// The lot as `lot.yaml` states it.

@@ -93,6 +93,7 @@ fn main() {
         .find_map(|a| a.parse().ok())
         .unwrap_or(125);
     let sources = Sources {
+        site: None,
         lot: text("lot.yaml", LOT),
         limits: text("limits/parts/RG-0475-X7R.yaml", LIMITS),
         station: text("limits/stations/BENCH-1.yaml", STATION),

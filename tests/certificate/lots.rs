@@ -202,6 +202,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 name: "reelgate".into(),
                 version: "0.1.0".into(),
             },
+            site: None,
             lot: lot(parts),
             limits: limits(&kinds),
             station: station(),

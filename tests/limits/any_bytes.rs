@@ -1,9 +1,9 @@
 //! No bytes bring a reader down, and what it finds can always be shown.
 
-use super::{FAULTY, LIMITS, LOT, STATION};
+use super::{FAULTY, LIMITS, LOT, SITE, STATION};
 use proptest::prelude::*;
 use reelgate::diagnostic::{Faults, as_json};
-use reelgate::{limits, lot, station};
+use reelgate::{limits, lot, site, station};
 use unicode_width::UnicodeWidthStr;
 
 fn showable(faults: Option<Faults>) {
@@ -20,11 +20,18 @@ fn read_all(bytes: &[u8]) {
     showable(limits::read("a.yaml", bytes).err());
     showable(station::read("a.yaml", bytes).err());
     showable(lot::read("a.yaml", bytes).err());
+    showable(site::read("a.yaml", bytes).err());
 }
 
 /// A file with pieces cut out, doubled, or overwritten with what YAML and quantities are made of.
 fn mangled() -> impl Strategy<Value = String> {
-    let files = prop_oneof![Just(LIMITS), Just(FAULTY), Just(STATION), Just(LOT)];
+    let files = prop_oneof![
+        Just(LIMITS),
+        Just(FAULTY),
+        Just(STATION),
+        Just(LOT),
+        Just(SITE)
+    ];
     let piece = prop_oneof![
         "[ \\[\\]{}:,&*!|>'\"%@`#?~<=.\\-\n0-9a-zµΩ±°]{0,6}",
         Just("\u{feff}".to_owned()),
@@ -72,7 +79,7 @@ proptest! {
 
 #[test]
 fn every_beginning_of_a_file() {
-    for file in [LIMITS, STATION, LOT] {
+    for file in [LIMITS, STATION, LOT, SITE] {
         for length in 0..file.len() {
             read_all(&file.as_bytes()[..length]);
         }

@@ -1,6 +1,6 @@
 //! `limits check`, `limits show`, `limits schema`.
 
-use super::{FAULTY, LIMITS, LOT, STATION};
+use super::{FAULTY, LIMITS, LOT, SITE, STATION};
 use serde_json::Value;
 use std::ffi::OsString;
 use std::fs;
@@ -73,6 +73,23 @@ fn check_finds_all_files_of_a_site() {
             .replace('\n', " ")
             .contains("lot 26K-0457 of RG-0475-X7R")
     );
+}
+
+#[test]
+fn check_reads_the_site_file_too() {
+    let site = site();
+    let path = site.path().join("limits/site.yaml");
+    fs::write(&path, SITE).expect("a file");
+    let ran = run(site.path(), &["limits", "check"]);
+    assert_eq!(ran.status, 0, "{}", ran.err);
+    let words = ran.out.replace('\n', " ");
+    let said = "site Goods-in, hall 2, approval required, 2 trusted keys";
+    assert!(words.contains(said), "{words}");
+    fs::write(&path, SITE.replace("approval:", "aproval:")).expect("a file");
+    let ran = run(site.path(), &["limits", "check"]);
+    assert_eq!(ran.status, 2);
+    assert!(ran.err.contains("site.yaml:2:1"), "{}", ran.err);
+    assert!(ran.err.contains("did you mean `approval`?"), "{}", ran.err);
 }
 
 #[test]
@@ -191,6 +208,7 @@ fn schemas_are_printed() {
         ("limits", "Limit file"),
         ("station", "Station file"),
         ("lot", "Lot file"),
+        ("site", "Site file"),
     ] {
         let ran = run(Path::new("."), &["limits", "schema", kind]);
         let json: Value = serde_json::from_str(&ran.out).expect("JSON");

@@ -1,4 +1,4 @@
-//! Limit, station and lot files: what valid ones mean, every fault of invalid ones, how faults
+//! Limit, station, lot and site files: what valid ones mean, every fault of invalid ones, how faults
 //! look, that no bytes bring the readers down, and the command that checks them.
 
 mod any_bytes;
@@ -7,6 +7,7 @@ mod limit_file;
 mod lot_file;
 mod rendering;
 mod schema;
+mod site_file;
 mod station_file;
 mod yaml;
 
@@ -16,6 +17,7 @@ pub const LIMITS: &str = include_str!("files/good.yaml");
 pub const FAULTY: &str = include_str!("files/faulty.yaml");
 pub const STATION: &str = include_str!("files/station.yaml");
 pub const LOT: &str = include_str!("files/lot.yaml");
+pub const SITE: &str = include_str!("files/site.yaml");
 
 /// A text with one piece replaced.
 pub fn with(text: &str, piece: &str, by: &str) -> String {

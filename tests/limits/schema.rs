@@ -1,6 +1,6 @@
 //! The JSON Schemas accept what the readers accept, and refuse what a schema can tell.
 
-use super::{FAULTY, LIMITS, LOT, STATION, with};
+use super::{FAULTY, LIMITS, LOT, SITE, STATION, with};
 use jsonschema::Validator;
 use serde_json::Value;
 use std::fs;
@@ -84,6 +84,31 @@ fn the_full_shapes_are_valid() {
     accepts(&validator(reelgate::limits::SCHEMA), "limits", &all);
     accepts(&validator(reelgate::station::SCHEMA), "station", STATION);
     accepts(&validator(reelgate::lot::SCHEMA), "lot", LOT);
+    accepts(&validator(reelgate::site::SCHEMA), "site", SITE);
+    accepts(&validator(reelgate::site::SCHEMA), "site", "site: Hall 2\n");
+}
+
+#[test]
+fn faulty_site_files_are_refused() {
+    let site = validator(reelgate::site::SCHEMA);
+    for (piece, by) in [
+        ("site: Goods-in, hall 2\n", ""),
+        ("approval: required", "approval: yes"),
+        ("approval: required", "aproval: required"),
+        ("role: quality_engineer", "role: metrologist"),
+        ("{name: QE-02", "{name: QЕ-02"),
+        ("+913c4863+", "+"),
+        ("from_entry: 12", "from_entry: -1"),
+        (", key: ../keys/goods-in.key.pem", ""),
+        ("/reelgate-witness.txt", "/"),
+    ] {
+        let text = with(SITE, piece, by);
+        assert!(!site.is_valid(&value(&text)), "{by}");
+        assert!(
+            reelgate::site::read("site.yaml", text.as_bytes()).is_err(),
+            "{by}"
+        );
+    }
 }
 
 #[test]

@@ -81,6 +81,52 @@ fn the_same_inputs_are_one_record_and_other_inputs_name_it() {
 }
 
 #[test]
+fn a_site_file_is_archived_with_each_record() {
+    let site = Site::new();
+    let without = site.judge("26K-0001");
+    assert!(without.get("site").is_none());
+    let text = "site: Hall 2\nwitness: witness.txt\n";
+    fs::write(site.file("limits/site.yaml"), text).expect("a file");
+    let with = site.judge("26K-0001");
+    assert_ne!(with["record"], without["record"]);
+    assert_eq!(with["supersedes"], without["record"]);
+    assert_eq!(with["site"]["site"], "Hall 2");
+    let digest = reelgate::ledger::sha256_hex(text.as_bytes());
+    assert_eq!(with["site"]["sha256"], digest.as_str());
+    let shown = site.ok(&["records", "show", with["record"].as_str().expect("a name")]);
+    assert!(
+        shown.contains("Hall 2") && shown.contains(&digest),
+        "{shown}"
+    );
+    // The witness that the site file names has the checkpoint; another that is asked for goes before.
+    let witness = fs::read_to_string(site.file("witness.txt")).expect("a witness file");
+    run(&site, &["judge", "--witness", "other.txt", "lots/26K-0001"]);
+    site.copy_sweep("26K-0001", "004");
+    let (status, _, err) = run(&site, &["judge", "--witness", "other.txt", "lots/26K-0001"]);
+    assert_eq!((status, err.as_str()), (Some(3), ""));
+    assert_eq!(
+        fs::read_to_string(site.file("witness.txt")).expect("a file"),
+        witness
+    );
+    assert!(site.file("other.txt").exists());
+    let verified = site.json(&["records", "verify"]);
+    assert_eq!(verified["proven"], true);
+    assert!(
+        verified["reach"]
+            .as_str()
+            .expect("words")
+            .contains("1 checkpoint(s) from outside")
+    );
+    // A fault in it keeps lots from being judged, with its place.
+    fs::write(site.file("limits/site.yaml"), "site: Hall 2\nwitnes: x\n").expect("a file");
+    let err = site.fails(&["judge", "lots/26K-0001"]);
+    assert!(
+        err.contains("site.yaml:2:1") && err.contains("did you mean `witness`?"),
+        "{err}"
+    );
+}
+
+#[test]
 fn a_sweep_that_another_lot_rests_on_holds_the_lot() {
     let site = Site::new();
     site.judge("26K-0001");

@@ -86,7 +86,7 @@ pub(in crate::certificate) fn facts(
     record: &LotRecord,
     digest: &str,
 ) -> Vec<(&'static str, String)> {
-    vec![
+    let mut out = vec![
         ("Record", record.record.clone()),
         ("Issued", instant(&record.issued)),
         (
@@ -98,7 +98,12 @@ pub(in crate::certificate) fn facts(
         ("SHA-256 of the limit file", record.limits.sha256.clone()),
         ("SHA-256 of the station file", record.station.sha256.clone()),
         ("SHA-256 of the lot file", record.lot.sha256.clone()),
-    ]
+    ];
+    if let Some(site) = &record.site {
+        out.push(("Site", site.site.clone()));
+        out.push(("SHA-256 of the site file", site.sha256.clone()));
+    }
+    out
 }
 
 /// What the code says, one fact a line.

@@ -174,6 +174,12 @@ fn words(valid: &Valid) -> String {
         ),
         Valid::Station(station) => format!("station {}", station.name),
         Valid::Lot(lot) => format!("lot {} of {}", lot.lot, lot.part),
+        Valid::Site(site) => format!(
+            "site {}, approval {}, {}",
+            site.name,
+            site.approval.name(),
+            count(site.trusted_keys.len(), "trusted key")
+        ),
     };
     printable(&text)
 }
@@ -198,6 +204,7 @@ fn file_json(file: &Checked, bench: Option<&Station>) -> serde_json::Value {
         Ok(Valid::Limits(_)) => Some("limits"),
         Ok(Valid::Station(_)) => Some("station"),
         Ok(Valid::Lot(_)) => Some("lot"),
+        Ok(Valid::Site(_)) => Some("site"),
         Err(_) => None,
     };
     let faults = file.result.as_ref().err().map_or(json!([]), as_json);

@@ -5,6 +5,7 @@ use crate::diagnostic::yaml::{Node, Shape};
 use crate::diagnostic::{Faults, MAX_BYTES, Source, yaml};
 use crate::limits::Limits;
 use crate::lot::Lot;
+use crate::site::SiteFile;
 use crate::station::Station;
 use std::fs;
 use std::io::Read;
@@ -93,6 +94,8 @@ pub enum Valid {
     Station(Box<Station>),
     /// A lot file.
     Lot(Box<Lot>),
+    /// The site file.
+    Site(Box<SiteFile>),
 }
 
 /// Reads a file as what it is.
@@ -112,6 +115,7 @@ pub fn read(path: &Path) -> Result<Valid, Faults> {
         Kind::Limits => crate::limits::read(&name, &bytes).map(|l| Valid::Limits(Box::new(l))),
         Kind::Station => station(path, &name, &bytes),
         Kind::Lot => crate::lot::read(&name, &bytes).map(|l| Valid::Lot(Box::new(l))),
+        Kind::Site => crate::site::read(&name, &bytes).map(|s| Valid::Site(Box::new(s))),
     }
 }
 
@@ -142,6 +146,9 @@ fn kind(path: &Path, name: &str, bytes: &[u8]) -> Result<Kind, Faults> {
     match folder.map(|f| f.to_string_lossy()).as_deref() {
         Some("parts") => return Ok(Kind::Limits),
         Some("stations") => return Ok(Kind::Station),
+        Some("limits") if path.file_name().is_some_and(|name| name == "site.yaml") => {
+            return Ok(Kind::Site);
+        }
         _ => {}
     }
     let source = Source::new(name, bytes)?;
@@ -150,8 +157,8 @@ fn kind(path: &Path, name: &str, bytes: &[u8]) -> Result<Kind, Faults> {
         Faults::of_file(
             name,
             "unknown_kind",
-            "keys of neither a limit file, a station file nor a lot file",
-            "`characteristics`, `method` or `lot` among the keys of the file",
+            "keys of neither a limit file, a station file, a lot file nor a site file",
+            "`characteristics`, `method`, `lot` or `site` among the keys of the file",
             Some("check that this is the file you meant".to_owned()),
         )
     })
@@ -186,6 +193,8 @@ fn by_keys(root: &Node) -> Option<Kind> {
         "station",
     ]) {
         Some(Kind::Station)
+    } else if has(&["site", "trusted_keys", "approval", "signing", "witness"]) {
+        Some(Kind::Site)
     } else if has(&["part", "revision", "retest"]) {
         Some(Kind::Limits)
     } else {

@@ -33,16 +33,44 @@ pub fn run(args: &Args, site: &Site, format: Format) -> Done {
         .iter()
         .map(|path| Document::read(path))
         .collect::<Result<_, _>>()?;
-    let outcome = match Ledger::open(&site.records()) {
-        Ok(ledger) => examine(&ledger, site, &documents, &args.witness)?,
+    let (witness, remark) = named_witness(args, site);
+    let mut outcome = match Ledger::open(&site.records()) {
+        Ok(ledger) => examine(&ledger, site, &documents, &witness)?,
         Err(error) => unopened(error, site)?,
     };
+    outcome.remarks.extend(remark);
     let status = if outcome.findings.is_empty() {
         exit::OK
     } else {
         exit::REJECT
     };
     Ok((status, report::bytes(&outcome, format)))
+}
+
+/// The witness files that were asked for, else the one that the site file names; and what is to be
+/// said where that one cannot be looked at.
+fn named_witness(args: &Args, site: &Site) -> (Vec<PathBuf>, Option<String>) {
+    if !args.witness.is_empty() {
+        return (args.witness.clone(), None);
+    }
+    let rules = match site.rules() {
+        Ok(rules) => rules,
+        Err(stop) => {
+            return (
+                Vec::new(),
+                Some(format!("the site file was not read: {stop}")),
+            );
+        }
+    };
+    match site.witness(None, rules.as_ref()) {
+        Some(path) if path.exists() => (vec![path], None),
+        Some(path) => {
+            let text =
+                "the witness file that the site file names is not there, or not to be reached";
+            (Vec::new(), Some(format!("{}: {text}", path.display())))
+        }
+        None => (Vec::new(), None),
+    }
 }
 
 /// A ledger that cannot be opened: damaged, or not to be looked at.

@@ -4,10 +4,10 @@
 //! A note is a text that ends in a newline, an empty line, and signature lines
 //! `— <key name> <base64 of key ID ‖ signature>`.
 
-use super::digest::{hex, sha256};
 use base64::Engine as _;
 use base64::engine::general_purpose::STANDARD;
 use ed25519_dalek::{Signature, Signer as _, SigningKey, VerifyingKey};
+use sha2::{Digest as _, Sha256};
 use std::fmt;
 
 /// Signature type of Ed25519 in `signed-note`.
@@ -192,7 +192,7 @@ impl Verifier {
     fn id(&self) -> [u8; 4] {
         let name = self.name.as_bytes();
         let bytes = [name, &[b'\n', ED25519], self.key.as_bytes()].concat();
-        let [a, b, c, d, ..] = sha256(&bytes);
+        let [a, b, c, d, ..]: [u8; 32] = Sha256::digest(&bytes).into();
         [a, b, c, d]
     }
 
@@ -278,4 +278,9 @@ fn check_text(text: &str) -> Result<(), NoteError> {
         return wrong("the text holds a control character");
     }
     Ok(())
+}
+
+/// Lower-case hexadecimal.
+fn hex(bytes: &[u8]) -> String {
+    bytes.iter().map(|b| format!("{b:02x}")).collect()
 }
