@@ -442,7 +442,7 @@ pub fn found() -> Case {
         "mixed_lot",
         "capacitance@1kHz: two populations in one lot: find out whether two reels were mixed",
     )];
-    let group = |second: bool| {
+    let group = |second: bool| -> Vec<String> {
         let of = names.iter().enumerate();
         of.filter(|(i, _)| (i % 3 != 0) == second)
             .map(|(_, n)| n.clone())
@@ -459,8 +459,8 @@ pub fn found() -> Case {
         separation: Some(4.87),
         mixed: true,
         groups: serde_json::from_value(serde_json::json!([
-            {"mean": 4.4312e-6, "standard_deviation": 4.81e-8, "share": 0.333, "parts": group(false) as Vec<String>},
-            {"mean": 4.6927e-6, "standard_deviation": 5.23e-8, "share": 0.667, "parts": group(true) as Vec<String>},
+            {"mean": 4.4312e-6, "standard_deviation": 4.81e-8, "share": 0.333, "parts": group(false)},
+            {"mean": 4.6927e-6, "standard_deviation": 5.23e-8, "share": 0.667, "parts": group(true)},
         ]))
         .expect("groups"),
     }];

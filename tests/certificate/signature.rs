@@ -140,7 +140,11 @@ fn a_signed_document_is_sound_still_and_says_who_signed() {
         .objects
         .values()
         .filter_map(|o| o.as_dict().ok())
-        .filter(|d| d.get(b"Subtype").and_then(|s| s.as_name()) == Ok(b"Widget"))
+        .filter(|d| {
+            d.get(b"Subtype")
+                .and_then(|s| s.as_name())
+                .is_ok_and(|s| s == b"Widget")
+        })
         .collect();
     assert_eq!(widgets.len(), 1);
     let flags = widgets[0]

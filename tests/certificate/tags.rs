@@ -68,7 +68,11 @@ fn every_reading_is_in_a_cell_and_every_drawing_has_words() {
     let of = |kind: &[u8]| {
         elements(&document)
             .into_iter()
-            .filter(|d| d.get(b"S").and_then(Object::as_name) == Ok(kind))
+            .filter(|d| {
+                d.get(b"S")
+                    .and_then(Object::as_name)
+                    .is_ok_and(|s| s == kind)
+            })
             .collect::<Vec<_>>()
     };
     assert!(of(b"TD").len() > 125 * 5, "{}", of(b"TD").len());
@@ -102,7 +106,7 @@ fn every_reading_is_in_a_cell_and_every_drawing_has_words() {
 
 /// Marked-content numbers of a page's content, and whether anything is drawn outside of all.
 fn marks(document: &Document, page: ObjectId) -> (Vec<i64>, bool) {
-    let content = document.get_page_content(page).expect("content");
+    let content = document.get_page_content(page);
     let content = lopdf::content::Content::decode(&content).expect("operations");
     let (mut depth, mut numbers, mut bare) = (0, Vec::new(), false);
     for operation in content.operations {
@@ -154,7 +158,7 @@ fn all_content_is_marked_once_and_the_way_back_leads_to_its_element() {
         let value = |key: i64| {
             numbers
                 .chunks(2)
-                .find(|pair| pair[0].as_i64() == Ok(key))
+                .find(|pair| pair[0].as_i64().is_ok_and(|k| k == key))
                 .map(|pair| pair[1].as_reference().expect("reference"))
         };
         let mut reached = BTreeSet::new();
@@ -195,10 +199,8 @@ fn all_content_is_marked_once_and_the_way_back_leads_to_its_element() {
                 let element = document
                     .get_dictionary(value(key).expect("entry"))
                     .expect("element");
-                assert_eq!(
-                    element.get(b"S").and_then(Object::as_name),
-                    Ok(&b"Link"[..])
-                );
+                let kind = element.get(b"S").and_then(Object::as_name);
+                assert!(kind.is_ok_and(|k| k == b"Link"));
                 assert!(link.has(b"Contents"));
             }
         }
