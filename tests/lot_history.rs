@@ -13,16 +13,27 @@ use reelgate::lot::{
 use reelgate::statistics::sampling::Severity;
 use serde_json::Value;
 
+fn set(after: usize, severity: Severity, reason: &str) -> SeveritySet {
+    SeveritySet {
+        after,
+        class: None,
+        severity,
+        reason: reason.into(),
+        by: Some("QE-02".into()),
+        time: "2026-10-01T08:00:00+02:00".into(),
+        entry: 7,
+    }
+}
+
 /// An earlier lot of one class, judged as its plan says.
 fn past(number: usize, lot: &str, state: Option<Severity>, count: u64) -> PastLot {
     let switching = severity_state(
         &History {
             lots: vec![],
-            set: state.map(|severity| SeveritySet {
-                after: 0,
-                severity,
-                reason: "a test".into(),
-            }),
+            set: state
+                .map(|severity| set(0, severity, "a test"))
+                .into_iter()
+                .collect(),
         },
         &aql(0.65),
         Severity::Normal,
@@ -53,7 +64,9 @@ fn past(number: usize, lot: &str, state: Option<Severity>, count: u64) -> PastLo
                 nonconforming: count,
                 undecided: 0,
                 by_variables: false,
+                accepted_one_step_tighter: false,
                 verdict,
+                before: None,
             },
         )]),
         characteristics: IndexMap::new(),
@@ -125,7 +138,7 @@ fn what_is_no_result_does_not_count() {
     let rejected = |number: usize| past(number, &format!("L{number}"), None, 4);
     let mut history = History {
         lots: vec![rejected(0), rejected(1)],
-        set: None,
+        set: vec![],
     };
     let tightened = state(&history);
     assert_eq!(tightened.severity, "tightened");
@@ -138,11 +151,7 @@ fn what_is_no_result_does_not_count() {
     );
 
     history.lots[1] = rejected(1);
-    history.set = Some(SeveritySet {
-        after: 2,
-        severity: Severity::Normal,
-        reason: "new tooling, audited".into(),
-    });
+    history.set = vec![set(2, Severity::Normal, "new tooling, audited")];
     let set = state(&history);
     assert_eq!((set.severity.as_str(), set.lots), ("normal", 0));
     assert!(set.why.contains("new tooling, audited"));
@@ -151,7 +160,7 @@ fn what_is_no_result_does_not_count() {
         lots: (0..20)
             .map(|i| past(i, &format!("L{i}"), None, 0))
             .collect(),
-        set: None,
+        set: vec![],
     };
     assert_eq!(
         state(&clean).severity,
@@ -250,7 +259,7 @@ fn after(means: &[f64], action: Action) -> LotJudgement {
     });
     of(&History {
         lots: lots.collect(),
-        set: None,
+        set: vec![],
     })
 }
 
@@ -337,7 +346,7 @@ fn a_record_becomes_history() {
     assert_eq!(past.characteristics.len(), record.statistics.len());
     let history = History {
         lots: vec![past],
-        set: None,
+        set: vec![],
     };
     let acceptance = Acceptance::Attributes {
         level: "II".into(),
@@ -351,4 +360,63 @@ fn a_record_becomes_history() {
     let state = severity_state(&history, &acceptance, Severity::Normal, false).expect("severities");
     assert_eq!(state.history, [record.record]);
     assert!(state.classes.values().all(|c| c.lots == 1 && c.score >= 2));
+}
+
+/// Looking back over the last 40 records gives what looking back over all of them gives, since the
+/// oldest brings the state that its own record found.
+#[test]
+fn a_window_gives_what_the_whole_history_gives() {
+    let mut seed = 7_u64;
+    let mut random = move |below: u64| {
+        seed = seed.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1);
+        (seed >> 33) % below
+    };
+    let mut all = History::default();
+    let mut seen = std::collections::BTreeSet::new();
+    for number in 0..600 {
+        // Good years and bad ones.
+        let bad = if number / 100 % 2 == 0 { 40 } else { 4 };
+        let full = severity_state(&all, &aql(0.65), Severity::Normal, true).expect("severities");
+        let from = all.lots.len().saturating_sub(40);
+        let window = History {
+            lots: all.lots[from..].to_vec(),
+            set: all
+                .set
+                .iter()
+                .filter(|s| s.after > from || from == 0)
+                .map(|s| SeveritySet {
+                    after: s.after - from,
+                    ..s.clone()
+                })
+                .collect(),
+        };
+        let seen_here =
+            severity_state(&window, &aql(0.65), Severity::Normal, true).expect("severities");
+        let (mut full, short) = (full.classes["A"].clone(), seen_here.classes["A"].clone());
+        seen.insert((full.severity.clone(), full.discontinued));
+        let mut short = short;
+        // What is shown of the way there is what is in view.
+        for state in [&mut full, &mut short] {
+            state.changes.clear();
+            state.set = None;
+            state.why.clear();
+            state.cause.clear();
+        }
+        assert_eq!(short, full, "lot {number}");
+        if full.discontinued && random(8) == 0 {
+            all.set
+                .push(set(all.lots.len(), Severity::Tightened, "acted"));
+        }
+        let count = if random(bad) == 0 { 9 } else { 0 };
+        let severity = full.severity.parse().expect("a severity");
+        let mut lot = past(number, &format!("L{number}"), Some(severity), count);
+        let before = severity_state(&all, &aql(0.65), Severity::Normal, true).expect("severities");
+        lot.classes["A"].before = Some(before.classes["A"].clone());
+        all.lots.push(lot);
+    }
+    assert_eq!(
+        seen.len(),
+        4,
+        "normal, tightened, reduced, discontinued: {seen:?}"
+    );
 }

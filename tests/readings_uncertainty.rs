@@ -14,6 +14,19 @@ use std::f64::consts::TAU;
 const MAGNITUDE: f64 = 2e-3;
 const PHASE: f64 = 0.05 * TAU / 360.0;
 const TOLERANCE: f64 = 1e-3;
+/// Standard uncertainty of the part's temperature in K, and what it does to the invented parts.
+const TEMPERATURE: f64 = 0.8;
+const COEFFICIENTS: [(Ch, f64); 4] = [
+    (Ch::Capacitance, 1e-3),
+    (Ch::Esr, -1.5e-2),
+    (Ch::EsrMinimum, -1e-2),
+    (Ch::Srf, -5e-4),
+];
+
+fn coefficient(of: Ch) -> f64 {
+    let found = COEFFICIENTS.iter().find(|(ch, _)| *ch == of);
+    found.map_or(0.0, |(_, share)| *share)
+}
 
 fn bench() -> Station {
     let mut station = station(MAGNITUDE, PHASE);
@@ -23,6 +36,7 @@ fn bench() -> Station {
         tolerance: TOLERANCE,
         inductance: 0.0,
     });
+    station.uncertainty.temperature = Some(TEMPERATURE);
     station.uncertainty.repeatability = vec![
         ("capacitance".into(), Repeatability::Relative(1e-3)),
         ("esr_minimum".into(), Repeatability::Absolute(1e-4)),
@@ -124,9 +138,10 @@ fn sensitivities_are_the_derivatives() {
 #[test]
 fn monte_carlo_agrees() {
     // Each draw: one error of magnitude, phase and reference common to the sweep, fresh noise at
-    // every point, one repeatability. 2000 draws give a standard deviation to 1.6 %.
+    // every point, one repeatability, one
+    // temperature of the part. 2000 draws give a standard deviation to 1.6 %.
     let (magnitude_noise, phase_noise) = (2e-3, 1e-3);
-    let budget = Budget::of(&bench());
+    let budget = Budget::of(&bench()).with_temperature_coefficients(&COEFFICIENTS);
     for name in ["mlcc_4u7_0805_x7r", "polymer_47u"] {
         let exact = clean(&part(name).network, &grid(1e3, 65e6, 50));
         let all = requests();
@@ -136,6 +151,7 @@ fn monte_carlo_agrees() {
             let mut random = Random::new(1000 + draw);
             let (a, b) = random.normal_pair();
             let reference = TOLERANCE * (2.0 * random.uniform() - 1.0);
+            let warmer = TEMPERATURE * random.normal_pair().0;
             let factor =
                 Complex64::from_polar((1.0 + MAGNITUDE * a) * (1.0 + reference), PHASE * b);
             let mut sweep = noisy(&exact, magnitude_noise, phase_noise, &mut random);
@@ -148,7 +164,9 @@ fn monte_carlo_agrees() {
                     Ch::Srf => 5e-4 * reading.known_value().unwrap(),
                     _ => 0.0,
                 };
-                let value = reading.known_value().unwrap() + repeat * random.normal_pair().0;
+                let changed = 1.0 + coefficient(request.characteristic) * warmer;
+                let value =
+                    reading.known_value().unwrap() * changed + repeat * random.normal_pair().0;
                 let u = reading.standard_uncertainty.unwrap();
                 *sum = (sum.0 + value, sum.1 + value * value, sum.2 + u * u);
             }
@@ -165,6 +183,36 @@ fn monte_carlo_agrees() {
             );
         }
     }
+}
+
+/// The budget of a 4.7 µF part, worked by hand: a temperature known within ±2 K (rectangular, so
+/// 2 K/√3) and 0.1 % a kelvin are 0.12 % of the capacitance.
+#[test]
+fn the_temperature_term_needs_both_its_halves() {
+    let sweep = clean(&part("mlcc_4u7_0805_x7r").network, &grid(1e3, 65e6, 50));
+    let mut bench = bench();
+    bench.uncertainty.temperature = Some(2.0 / 3f64.sqrt());
+    let request = at(Ch::Capacitance, 1e4);
+    let line = |budget: &Budget, request: &Request| {
+        let table = budget_table(&sweep, request, budget);
+        let found = table.iter().find(|c| c.unit == "K").cloned();
+        (found, combined(&table))
+    };
+    let told = Budget::of(&bench).with_temperature_coefficients(&[(Ch::Capacitance, 1e-3)]);
+    let value = read(&sweep, &request, &told).highest.known_value().unwrap();
+    let (temperature, with) = line(&told, &request);
+    let share = temperature.expect("a line").contribution / value;
+    assert_eq!(format!("{:.2} %", 100.0 * share), "0.12 %");
+    let (none, without) = line(&Budget::of(&bench), &request);
+    assert!(none.is_none());
+    assert!(
+        (with.powi(2) - without.powi(2) - (share * value).powi(2)).abs() < 1e-12 * with.powi(2)
+    );
+    // Of another characteristic nothing is known.
+    assert!(line(&told, &at(Ch::Impedance, 1e4)).0.is_none());
+    bench.uncertainty.temperature = None;
+    let silent = Budget::of(&bench).with_temperature_coefficients(&[(Ch::Capacitance, 1e-3)]);
+    assert_eq!(line(&silent, &request), (None, without));
 }
 
 #[test]

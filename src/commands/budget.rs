@@ -23,7 +23,8 @@ pub fn screen(sources: &Sources, made: &Made, part: &str) -> String {
         out.push_str("  there is no such part with a valid sweep\n");
         return out;
     };
-    let budget = Budget::of(&station);
+    let budget = Budget::of(&station)
+        .with_temperature_coefficients(&limits.conditions.temperature_coefficients);
     let reader = Reader::new(&curve.sweep, &budget);
     for bound in &limits.bounds {
         let request = Request {

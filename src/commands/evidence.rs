@@ -4,7 +4,8 @@ use crate::diagnostic::{Faults, Note};
 use crate::ledger::{
     Act, Archive, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest,
 };
-use crate::lot::{self, History, Lot, PastLot};
+use crate::limits::Limits;
+use crate::lot::{self, History, Lot, PastLot, SeveritySet, Switching};
 use crate::record::{self, Made, Occasion, Refusal, Sources, sha256};
 use crate::statistics::sampling::Severity;
 use crate::sweep::RawFile;
@@ -12,7 +13,7 @@ use std::collections::{BTreeMap, BTreeSet};
 
 /// Sweep files named in one reason; the record has all.
 const NAMED: usize = 4;
-/// Lots before this one that are looked at; the switching rules look back ten.
+/// Records before this one that are looked at. The oldest brings the state of the switching rules with it.
 const LOTS_BEFORE: usize = 40;
 
 /// What the ledger calls the site file.
@@ -88,9 +89,64 @@ impl<'a> Evidence<'a> {
         Ok(Occasion {
             supersedes: supersedes(&self.lot, &mut entries, before)?,
             further: used_before(&self.lot, &self.sources.sweeps, &mut entries, before)?,
-            history: history(&self.lot, &mut entries, archive, before)?,
+            history: history(&of(&self.lot), &mut entries, archive, before)?,
             ..first_occasion(issued)
         })
+    }
+}
+
+/// What the entries before one say about the severity of inspection of the next lot of a part from
+/// a supplier (`None`: lots that name none); `None` where the scheme has no severities.
+///
+/// The plan in force is then [`lot::plan_in_state`].
+///
+/// # Errors
+/// Those of the ledger.
+pub fn severity_in_force(
+    reader: &dyn Reader,
+    archive: &Archive,
+    limits: &Limits,
+    supplier: Option<&str>,
+    before: u64,
+) -> Result<Option<Switching>, LedgerError> {
+    let of = Of {
+        part: &limits.part,
+        supplier,
+        lot: None,
+    };
+    let history = history(&of, &mut Entries::new(reader), archive, before)?;
+    let begins = first_occasion("").severity;
+    Ok(lot::severity_state(
+        &history,
+        &limits.acceptance,
+        begins,
+        limits.reduced_inspection,
+    ))
+}
+
+/// The same where there may be no ledger yet.
+///
+/// # Errors
+/// Those of the ledger.
+pub fn severity_at(
+    ledger: Option<&Ledger>,
+    limits: &Limits,
+    supplier: Option<&str>,
+) -> Result<Option<Switching>, LedgerError> {
+    match ledger {
+        Some(ledger) => severity_in_force(
+            ledger.store(),
+            ledger.archive(),
+            limits,
+            supplier,
+            ledger.size()?,
+        ),
+        None => Ok(lot::severity_state(
+            &History::default(),
+            &limits.acceptance,
+            first_occasion("").severity,
+            limits.reduced_inspection,
+        )),
     }
 }
 
@@ -171,44 +227,102 @@ fn supersedes(
     Ok(None)
 }
 
-/// The lots of the same part from the same supplier that were judged before, oldest first; of a lot
-/// that was judged several times the first record, which is its original inspection.
+/// Whose history is asked for.
+struct Of<'a> {
+    part: &'a str,
+    supplier: Option<&'a str>,
+    /// A lot that is no history of itself.
+    lot: Option<&'a str>,
+}
+
+fn of(lot: &Lot) -> Of<'_> {
+    Of {
+        part: &lot.part,
+        supplier: lot.supplier.as_deref(),
+        lot: Some(&lot.lot),
+    }
+}
+
+/// The records of the part from the supplier that were made before, oldest first, and the severities
+/// that were set in between. Of a lot that was first judged before the oldest record in view, no later
+/// record is in it, since it is not known whether it counted then.
 fn history(
-    lot: &Lot,
+    of: &Of,
     entries: &mut Entries,
     archive: &Archive,
     before: u64,
 ) -> Result<History, LedgerError> {
     let query = Query::PartSupplier {
-        part: &lot.part,
-        supplier: lot.supplier.as_deref(),
+        part: of.part,
+        supplier: of.supplier,
     };
     let found = entries.find(query, before)?;
-    let mut seen = BTreeSet::from([lot.lot.clone()]);
-    let mut lots = Vec::new();
-    for index in found.into_iter().rev().take(LOTS_BEFORE).rev() {
+    let from = in_view(&found, entries)?;
+    let mut history = History::default();
+    let mut kept = BTreeSet::new();
+    for index in found.into_iter().skip(from) {
         let Some(entry) = entries.get(index)? else {
             continue;
         };
-        let Some((record, number, _)) = judged(entry, lot) else {
-            continue;
-        };
-        if !seen.insert(number.to_owned()) {
-            continue;
+        match &entry.act {
+            Act::Severity {
+                class,
+                severity,
+                reason,
+                ..
+            } => history.set.push(SeveritySet {
+                after: history.lots.len(),
+                class: class.clone(),
+                severity: *severity,
+                reason: reason.clone(),
+                by: entry.by.clone(),
+                time: entry.time.clone(),
+                entry: index,
+            }),
+            Act::Judged {
+                record,
+                lot,
+                earlier,
+                ..
+            } if of.lot != Some(lot) && earlier.is_none_or(|earlier| kept.contains(&earlier)) => {
+                kept.insert(index);
+                history.lots.push(past(entry, record, archive)?);
+            }
+            _ => {}
         }
-        let kept = entry
-            .objects_of("record")
-            .next()
-            .map(|o| archive.get(&o.sha256));
-        let bytes = kept.transpose()?.unwrap_or_default();
-        let past = record::from_bytes(&bytes).map_err(|e| {
-            LedgerError::Refused(format!(
-                "the record {record} of an earlier lot cannot be read ({e})"
-            ))
-        })?;
-        lots.push(PastLot::of(&past));
     }
-    Ok(History { lots, set: None })
+    Ok(history)
+}
+
+/// Where in the entries found the newest [`LOTS_BEFORE`] judgements begin.
+fn in_view(found: &[u64], entries: &mut Entries) -> Result<usize, LedgerError> {
+    let mut left = LOTS_BEFORE;
+    for (place, index) in found.iter().enumerate().rev() {
+        let judged = entries
+            .get(*index)?
+            .is_some_and(|entry| matches!(entry.act, Act::Judged { .. }));
+        if judged {
+            left -= 1;
+        }
+        if left == 0 {
+            return Ok(place);
+        }
+    }
+    Ok(0)
+}
+
+fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<PastLot, LedgerError> {
+    let kept = entry
+        .objects_of("record")
+        .next()
+        .map(|o| archive.get(&o.sha256));
+    let bytes = kept.transpose()?.unwrap_or_default();
+    let past = record::from_bytes(&bytes).map_err(|e| {
+        LedgerError::Refused(format!(
+            "the record {record} of an earlier lot cannot be read ({e})"
+        ))
+    })?;
+    Ok(PastLot::of(&past))
 }
 
 /// A reason for each record of another lot that rests on a sweep of this one. A file without a

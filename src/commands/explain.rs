@@ -67,6 +67,9 @@ fn of_part(out: &mut String, record: &LotRecord, part: &PartRecord) {
             continue;
         };
         let _ = writeln!(out, "  {}", printable(&bound.name));
+        let (rule, source) = rule(record);
+        out.push_str(&wrapped(rule, "    rule   ", "           "));
+        out.push_str(&wrapped(source, "    source ", "           "));
         out.push_str(&wrapped(
             &in_numbers(record, reading),
             "    in     ",
@@ -77,6 +80,24 @@ fn of_part(out: &mut String, record: &LotRecord, part: &PartRecord) {
             "    out    ",
             "           ",
         ));
+    }
+}
+
+/// How a reading is held against its limits, with the clause.
+fn rule(record: &LotRecord) -> (&'static str, &'static str) {
+    match record.limits.decision_rule.as_str() {
+        "guarded_acceptance" => (
+            "conforming where L + k u ≤ value ≤ U − k u, nonconforming where the value is outside the limits, else undecided",
+            "JCGM 106:2012, 8.3.2",
+        ),
+        "guarded_rejection" => (
+            "nonconforming where the value is below L − k u or above U + k u, conforming where it is inside the limits, else undecided",
+            "JCGM 106:2012, 8.3.3",
+        ),
+        _ => (
+            "conforming where L ≤ value ≤ U, else nonconforming",
+            "JCGM 106:2012, 8.2",
+        ),
     }
 }
 

@@ -12,6 +12,7 @@ mod records;
 mod signing;
 mod site;
 mod store;
+mod switching;
 mod text;
 
 use clap::{Parser, Subcommand, ValueEnum};

@@ -1,11 +1,13 @@
 //! `reelgate plan`: the sampling plan for a part and a quantity, or for the plan's own figures.
 
+use super::evidence::severity_at;
 use super::site::{Site, text_file};
 use super::text::wrapped;
-use super::{Context, Format, exit};
+use super::{Context, Format, exit, switching};
 use crate::diagnostic::{self, printable};
-use crate::limits::{self, Acceptance};
-use crate::lot::{OperatingCharacteristic, Plan, PlanClass, plan};
+use crate::ledger::{Ledger, LedgerError};
+use crate::limits::{self, Acceptance, Limits};
+use crate::lot::{OperatingCharacteristic, Plan, PlanClass, Switching, plan, plan_in_state};
 use crate::quantity::shortest;
 use crate::statistics::sampling::{InspectionLevel, Severity};
 use serde_json::{Value, json};
@@ -31,9 +33,12 @@ pub struct Args {
     /// AQL of ISO 2859-1, in percent
     #[arg(long, value_name = "A")]
     aql: Option<f64>,
-    /// Severity of inspection
-    #[arg(long, value_name = "S", default_value = "normal", value_parser = severity)]
-    severity: Severity,
+    /// Supplier of the lot: the switching rules look at the lots before [default: lots that name none]
+    #[arg(long, value_name = "SUPPLIER", requires = "part")]
+    supplier: Option<String>,
+    /// Severity of inspection [default: that in force for part and supplier; by its own figures: normal]
+    #[arg(long, value_name = "S", value_parser = severity)]
+    severity: Option<Severity>,
 }
 
 fn level(text: &str) -> Result<InspectionLevel, String> {
@@ -41,7 +46,7 @@ fn level(text: &str) -> Result<InspectionLevel, String> {
         .map_err(|_| "one of S-1, S-2, S-3, S-4, I, II, III was expected".to_owned())
 }
 
-fn severity(text: &str) -> Result<Severity, String> {
+pub(super) fn severity(text: &str) -> Result<Severity, String> {
     text.parse()
         .map_err(|_| "one of normal, tightened, reduced was expected".to_owned())
 }
@@ -56,7 +61,8 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
                 level: args.level.to_string(),
                 aql: vec![("A".to_owned(), aql)],
             };
-            plan(&acceptance, args.lot_size, args.severity)
+            let severity = args.severity.unwrap_or(Severity::Normal);
+            plan(&acceptance, args.lot_size, severity)
         }
         (None, None) => Err("a part number, or --level and --aql, were expected".to_owned()),
     };
@@ -73,8 +79,8 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
         Format::Text
     };
     let text = match context.format_given.unwrap_or(default) {
-        Format::Json => format!("{:#}\n", as_json(&plan, args.part.is_none())),
-        Format::Text => as_text(&plan),
+        Format::Json => format!("{:#}\n", as_json(&plan, args)),
+        Format::Text => as_text(&plan, args.supplier.as_deref()),
     };
     match context
         .out
@@ -93,16 +99,53 @@ fn of_part(part: &str, args: &Args, context: &mut Context) -> Result<Plan, Strin
         let _ = write!(context.err, "{}", diagnostic::render(&faults, true));
         format!("{} is not valid", file.name)
     })?;
-    plan(&limits.acceptance, args.lot_size, args.severity)
+    same_part(part, &limits)?;
+    match args.severity {
+        Some(severity) => plan(&limits.acceptance, args.lot_size, severity),
+        None => {
+            let switching = in_force(&limits, args, &Site::new(&context.site))
+                .map_err(|e| format!("the severity in force cannot be found: {e}"))?;
+            plan_in_state(&limits.acceptance, args.lot_size, switching)
+        }
+    }
+}
+
+/// The lots before are those of the part, so that its file must be of it.
+pub(super) fn same_part(part: &str, limits: &Limits) -> Result<(), String> {
+    if limits.part == part {
+        return Ok(());
+    }
+    Err(format!(
+        "the limit file of `{part}` says that it is of part `{}`: correct `part` or the name of the file",
+        limits.part
+    ))
+}
+
+/// The severities by the ledger; a site without one begins.
+fn in_force(limits: &Limits, args: &Args, site: &Site) -> Result<Option<Switching>, LedgerError> {
+    let ledger = match Ledger::open(&site.records()) {
+        Ok(ledger) => Some(ledger),
+        Err(LedgerError::Missing { .. }) => None,
+        Err(error) => return Err(error),
+    };
+    severity_at(ledger.as_ref(), limits, args.supplier.as_deref())
 }
 
 fn class_json(class: &PlanClass, curve: Option<OperatingCharacteristic>) -> Value {
-    json!({"aql": class.aql, "plan_letter": class.code_letter, "n": class.n, "ac": class.ac, "re": class.re,
-           "operating_characteristic": curve})
+    let mut all = json!({"aql": class.aql, "plan_letter": class.code_letter, "n": class.n, "ac": class.ac, "re": class.re,
+           "operating_characteristic": curve});
+    if let Some(object) = all.as_object_mut()
+        && let Some(plan) = class.variables
+    {
+        let variables = json!({"n": plan.n, "k": plan.k, "m": plan.m});
+        object.insert("variables".to_owned(), variables);
+    }
+    all
 }
 
 /// A plan by its own figures is flat: `code_letter`, `n`, `ac`, `re`.
-fn as_json(plan: &Plan, flat: bool) -> Value {
+fn as_json(plan: &Plan, args: &Args) -> Value {
+    let flat = args.part.is_none();
     let mut all = json!({
         "scheme": plan.scheme,
         "lot_size": plan.lot_size,
@@ -120,6 +163,8 @@ fn as_json(plan: &Plan, flat: bool) -> Value {
         match (flat, classes().next()) {
             (true, Some((_, Value::Object(class)))) => object.extend(class),
             _ => {
+                object.insert("supplier".to_owned(), args.supplier.clone().into());
+                object.insert("switching".to_owned(), json!(plan.switching));
                 object.insert("required".to_owned(), plan.required().into());
                 object.insert("classes".to_owned(), Value::Object(classes().collect()));
             }
@@ -128,7 +173,7 @@ fn as_json(plan: &Plan, flat: bool) -> Value {
     all
 }
 
-fn as_text(plan: &Plan) -> String {
+fn as_text(plan: &Plan, supplier: Option<&str>) -> String {
     let mut out = String::new();
     let severity = plan
         .severity
@@ -144,19 +189,36 @@ fn as_text(plan: &Plan) -> String {
         plan.lot_size
     );
     out.push_str(&wrapped(&plan.source, "", ""));
+    if let Some(state) = &plan.switching {
+        out.push_str(&switching::screen(state, supplier));
+    }
     for (name, class) in &plan.classes {
         let aql = class.aql.map_or(String::new(), |a| format!(", AQL {a} %"));
-        let _ = writeln!(
-            out,
-            "\nclass {name}{aql}: n {}, Ac {}, Re {}",
-            class.n, class.ac, class.re
-        );
+        let _ = writeln!(out, "\n{}", printable(&plan_words(name, &aql, class)));
         match plan.curve(class) {
             Some(curve) => draw(&mut out, &curve),
             None => out.push_str("  the whole lot is inspected\n"),
         }
     }
     out
+}
+
+fn plan_words(name: &str, aql: &str, class: &PlanClass) -> String {
+    match class.variables {
+        Some(plan) => format!(
+            "class {name}{aql}: by variables n {}, k {:.3}, M {:.3} %; where that cannot be, by attributes n {}, Ac {}, Re {}",
+            plan.n,
+            plan.k,
+            100.0 * plan.m,
+            class.n,
+            class.ac,
+            class.re
+        ),
+        None => format!(
+            "class {name}{aql}: n {}, Ac {}, Re {}",
+            class.n, class.ac, class.re
+        ),
+    }
 }
 
 /// Probability of acceptance against the share nonconforming.

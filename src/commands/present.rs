@@ -2,12 +2,12 @@
 //!
 //! Fits 80 columns. The verdict is a word and a mark; colour only repeats it.
 
+use super::switching;
 use super::text::{WIDTH, clipped, wrapped};
 use crate::diagnostic::printable;
 use crate::quantity::{NO_VALUE, engineering, scale, scaled_unit, shortest, with_uncertainty};
 use crate::record::{
-    BoundSection, ClassState, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord,
-    Statistics,
+    BoundSection, LotRecord, LotVerdict, PartRecord, PartVerdict, ReadingRecord, Statistics,
 };
 use anstyle::{AnsiColor, Style};
 use comfy_table::{CellAlignment, ColumnConstraint, ContentArrangement, Table, Width, presets};
@@ -115,11 +115,8 @@ fn sample(out: &mut String, record: &LotRecord) {
         "  ",
         "  ",
     ));
-    let unusual = |state: &&ClassState| state.severity != "normal" || state.discontinued;
-    let states = s.switching.iter().flat_map(|switching| &switching.classes);
-    for (name, state) in states.filter(|(_, state)| unusual(state)) {
-        let line = format!("class {name}, {} inspection: {}", state.severity, state.why);
-        out.push_str(&wrapped(&line, "  ", "    "));
+    if let Some(state) = &s.switching {
+        out.push_str(&switching::states(state));
     }
     for (name, class) in &s.classes {
         let undecided = if class.undecided > 0 {
@@ -127,9 +124,19 @@ fn sample(out: &mut String, record: &LotRecord) {
         } else {
             String::new()
         };
+        let plan = if class.by_variables {
+            format!("n {} by variables", class.n)
+        } else {
+            format!("n {}, Ac {}, Re {}", class.n, class.ac, class.re)
+        };
+        let most = class
+            .share_nonconforming_upper_95
+            .map_or(String::new(), |share| {
+                format!("; at most {:.2} % of the lot (95 %)", 100.0 * share)
+            });
         let line = format!(
-            "class {name}: n {}, Ac {}, Re {}: {} nonconforming{undecided}",
-            class.n, class.ac, class.re, class.nonconforming
+            "class {name}: {plan}: {} nonconforming{undecided}{most}",
+            class.nonconforming
         );
         out.push_str(&wrapped(&line, "  ", "    "));
     }
@@ -180,6 +187,7 @@ fn characteristics(out: &mut String, record: &LotRecord) {
         name.set_constraint(ColumnConstraint::UpperBoundary(Width::Fixed(24)));
     }
     push(out, &table);
+    intervals(out, record);
     for bound in &record.limits.characteristics {
         let Some(s) = record.statistics.get(&bound.key) else {
             continue;
@@ -194,6 +202,65 @@ fn characteristics(out: &mut String, record: &LotRecord) {
         }
     }
     joint(out, record);
+    before(out, record);
+}
+
+/// Where 95 % of the parts of the lot lie, and the index of values that are not normal.
+fn intervals(out: &mut String, record: &LotRecord) {
+    let mut first = true;
+    for bound in &record.limits.characteristics {
+        let Some(s) = record.statistics.get(&bound.key) else {
+            continue;
+        };
+        let mut words = Vec::new();
+        if let Some([low, high]) = s.tolerance_95_95 {
+            let column = Scaled::of(bound, s);
+            let unit = &column.unit;
+            words.push(format!(
+                "{} to {} {unit}",
+                column.number(low),
+                column.number(high)
+            ));
+        }
+        if let (Some(ppk), Some(p)) = (s.ppk_percentile, s.normality_p_value) {
+            words.push(format!(
+                "Ppk by percentiles {ppk:.2} (not normal, p {p:.3})"
+            ));
+        }
+        if words.is_empty() {
+            continue;
+        }
+        if first {
+            out.push_str("  95 % of the parts, with 95 % confidence:\n");
+            first = false;
+        }
+        let line = format!("{}: {}", bound.name, words.join("; "));
+        out.push_str(&wrapped(&line, "    ", "      "));
+    }
+}
+
+/// What a rule found in comparing with the lots before.
+fn before(out: &mut String, record: &LotRecord) {
+    for of in &record.findings.trend {
+        let p = |p: Option<f64>| p.map_or(NO_VALUE.to_owned(), |p| format!("{p:.3}"));
+        let line = if of.previous_mean.is_none() {
+            format!("{}: too few accepted lots before to compare with", of.of)
+        } else {
+            format!(
+                "{} against {} accepted lots before: shift p {}, spread p {}{}",
+                of.of,
+                of.history.len(),
+                p(of.shift_p_value),
+                p(of.spread_p_value),
+                if of.signals.is_empty() {
+                    ", like them".to_owned()
+                } else {
+                    format!("; {}", of.signals.join("; "))
+                }
+            )
+        };
+        out.push_str(&wrapped(&line, "  ", "    "));
+    }
 }
 
 /// Where noise dominates the spread, what it is at least.

@@ -2,6 +2,8 @@
 
 mod document;
 mod list;
+mod severities;
+mod severity;
 mod show;
 mod verify;
 
@@ -64,6 +66,8 @@ enum Command {
         #[command(flatten)]
         with: Circumstances,
     },
+    /// Show the severity of inspection of a part from a supplier, or set it
+    Severity(severity::Args),
     /// Record what becomes of a held or rejected lot
     Dispose {
         /// A record, or a lot that has one record
@@ -148,6 +152,7 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
     let done = match &args.command {
         Command::List(args) => list::run(args, &site, context.format),
         Command::Show { record } => show::run(record, &site, context.format),
+        Command::Severity(args) => severity::run(args, &site, context),
         Command::Verify(args) => verify::run(args, &site, context.format),
         Command::Export {
             record,

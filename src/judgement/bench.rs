@@ -156,6 +156,14 @@ fn standard_uncertainty(
             Repeatability::Relative(ratio) => ratio * limit.abs(),
             Repeatability::Absolute(value) => *value,
         });
+    let temperature = limits
+        .conditions
+        .temperature_coefficients
+        .iter()
+        .find(|(of, _)| *of == bound.characteristic)
+        .map_or(0.0, |(_, share)| {
+            share * limit * stated.temperature.unwrap_or(0.0)
+        });
     let (instrument, why) = match bound.characteristic {
         Capacitance | FittedCapacitance | Impedance | Esl => {
             (magnitude()? * limit.abs(), "magnitude dominates".to_owned())
@@ -181,7 +189,13 @@ fn standard_uncertainty(
             (of_magnitude.hypot(of_phase), why)
         }
     };
-    Ok((instrument.hypot(repeatability), why))
+    let others = instrument.hypot(repeatability);
+    let why = if temperature.abs() > others {
+        "the uncertainty of the temperature dominates".to_owned()
+    } else {
+        why
+    };
+    Ok((others.hypot(temperature), why))
 }
 
 /// |X| where ESR is bounded, from the nominal capacitance; of a band its lower end, where it is

@@ -98,7 +98,10 @@ pub fn judge_try(
         .and_then(|drive| drive_fault(drive, limits))
         .into_iter()
         .collect();
-    let reader = Reader::new(sweep, budget);
+    let of_part = budget
+        .clone()
+        .with_temperature_coefficients(&limits.conditions.temperature_coefficients);
+    let reader = Reader::new(sweep, &of_part);
     let mut readings = IndexMap::new();
     for bound in &limits.bounds {
         let request = Request {

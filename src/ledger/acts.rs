@@ -2,6 +2,7 @@
 
 use super::*;
 use crate::record::LotVerdict;
+use crate::statistics::sampling::Severity;
 use store::Decided;
 
 impl Ledger {
@@ -96,6 +97,40 @@ impl Ledger {
             }
             let last = reader.find(Query::Record(record))?.last().copied();
             repeat_or_new(reader, last.as_slice(), &act, made.by)
+        })
+    }
+
+    /// Records the severity of inspection that a person sets. `class` is `None` for every class.
+    /// `allowed` looks, when no other process can append any more, whether it can be set as things are.
+    ///
+    /// # Errors
+    /// Besides those of the store and of `allowed`: no reason, nobody named.
+    pub fn set_severity(
+        &mut self,
+        act: &SetSeverity,
+        made: &Made,
+        allowed: &dyn Fn(&dyn Reader) -> Result<(), LedgerError>,
+    ) -> Result<Recorded, LedgerError> {
+        need(made.by.unwrap_or(""), "a severity that is set says by whom")?;
+        need(act.reason, "a severity that is set says why")?;
+        let new = Act::Severity {
+            part: act.part.to_owned(),
+            supplier: act.supplier.map(str::to_owned),
+            class: act.class.map(str::to_owned),
+            severity: act.severity,
+            reason: act.reason.to_owned(),
+        };
+        self.append(&[], made, &|reader| {
+            let query = Query::PartSupplier {
+                part: act.part,
+                supplier: act.supplier,
+            };
+            let last = reader.find(query)?.last().copied();
+            let chosen = repeat_or_new(reader, last.as_slice(), &new, made.by)?;
+            if matches!(chosen, Chosen::Act(_)) {
+                allowed(reader)?;
+            }
+            Ok(chosen)
         })
     }
 
@@ -207,6 +242,17 @@ impl Ledger {
         })?;
         recorded(self.store.as_ref(), &row, new)
     }
+}
+
+/// A severity to be set.
+#[derive(Debug, Clone, Copy)]
+#[allow(missing_docs)]
+pub struct SetSeverity<'a> {
+    pub part: &'a str,
+    pub supplier: Option<&'a str>,
+    pub class: Option<&'a str>,
+    pub severity: Severity,
+    pub reason: &'a str,
 }
 
 /// What an act comes to before it has a place.

@@ -6,6 +6,7 @@
 
 use super::error::LedgerError;
 use crate::diagnostic::Note;
+use crate::statistics::sampling::Severity;
 use serde::{Deserialize, Serialize};
 
 /// The version of the shape of an entry.
@@ -58,6 +59,15 @@ pub enum Act {
         decision: Decision,
         reason: String,
     },
+    /// A person set the severity of inspection of a part from a supplier (`None`: lots that name
+    /// none), for one class or for all (ISO 2859-1:1999, 9.1 and 9.4).
+    Severity {
+        part: String,
+        supplier: Option<String>,
+        class: Option<String>,
+        severity: Severity,
+        reason: String,
+    },
     /// A limit or station file was approved. The object with role `limits` or `station` is the
     /// file; `statement` is the signed note (see [`super::approval`]).
     Approval {
@@ -107,11 +117,12 @@ pub struct ObjectRef {
 }
 
 impl Act {
-    /// `judged`, `disposition`, `approval`, `issue`, `reissue`.
+    /// `judged`, `disposition`, `severity`, `approval`, `issue`, `reissue`.
     pub fn kind(&self) -> &'static str {
         match self {
             Act::Judged { .. } => "judged",
             Act::Disposition { .. } => "disposition",
+            Act::Severity { .. } => "severity",
             Act::Approval { .. } => "approval",
             Act::Issue { .. } => "issue",
             Act::Reissue { .. } => "reissue",
@@ -125,7 +136,7 @@ impl Act {
             | Act::Disposition { record, .. }
             | Act::Issue { record, .. }
             | Act::Reissue { record, .. } => Some(record),
-            Act::Approval { .. } => None,
+            Act::Severity { .. } | Act::Approval { .. } => None,
         }
     }
 }

@@ -27,6 +27,7 @@ mod verify;
 pub mod witness;
 
 pub use crate::keys::{NoteError, Signer, Verifier};
+pub use acts::SetSeverity;
 pub use archive::{Archive, Listing, MAX_OBJECT};
 pub use checkpoint::Checkpoint;
 pub use digest::{Hash, hex, sha256, sha256_hex};

@@ -41,7 +41,7 @@ pub enum Query<'a> {
     Record(&'a str),
     /// Lots judged under a lot number.
     Lot(&'a str),
-    /// Lots judged of a part from a supplier (`None`: the lots that name no supplier).
+    /// Lots judged of a part from a supplier (`None`: the lots that name no supplier), and severities set for it.
     #[allow(missing_docs)]
     PartSupplier {
         part: &'a str,

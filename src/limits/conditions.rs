@@ -13,6 +13,7 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
         equivalent: Equivalent::Series,
         ageing: None,
         date_code_age: None,
+        temperature_coefficients: Vec::new(),
     };
     let Some(node) = node else {
         return Some(conditions);
@@ -23,6 +24,7 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
         "equivalent",
         "ageing",
         "date_code_age",
+        "temperature_coefficient",
     ];
     let fields = reader.fields(node, "`conditions`", &known)?;
     if let Some(node) = fields.get("drive") {
@@ -50,6 +52,9 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Conditions> 
     }
     if let Some(node) = fields.get("ageing") {
         conditions.ageing = ageing(reader, node);
+    }
+    if let Some(node) = fields.get("temperature_coefficient") {
+        conditions.temperature_coefficients = temperature_coefficients(reader, node);
     }
     if let Some(node) = fields.get("date_code_age") {
         let possible = |v: f64| (604_800.0..=3.2e9).contains(&v);
@@ -101,6 +106,48 @@ fn ageing(reader: &mut Reader<'_>, node: &Node) -> Option<Ageing> {
         per_decade: per_decade?,
         refer_to: refer_to?,
     })
+}
+
+/// By characteristic, relative per kelvin.
+fn temperature_coefficients(reader: &mut Reader<'_>, node: &Node) -> Vec<(Characteristic, f64)> {
+    let names = Characteristic::ALL.map(Characteristic::name);
+    let Some(fields) = reader.fields(node, "`temperature_coefficient`", &names) else {
+        return Vec::new();
+    };
+    let expected = "a change above 0 and at most 10 % per kelvin, such as `0.1 %/K`";
+    let possible = |v: f64| v != 0.0 && v.abs() <= 0.1;
+    let mut all = Vec::new();
+    for (name, _, value) in fields.iter() {
+        let characteristic = Characteristic::ALL.into_iter().find(|c| c.name() == name);
+        let what = format!("`{name}`");
+        let share = reader.share_per_kelvin_if(value, &what, possible, expected);
+        all.extend(characteristic.zip(share));
+    }
+    all
+}
+
+/// A coefficient of what is not bounded would say nothing.
+pub fn coefficients_are_of_bounds(
+    reader: &mut Reader<'_>,
+    fields: &Fields<'_>,
+    conditions: &Conditions,
+    bounds: &[Bound],
+) {
+    for (characteristic, _) in &conditions.temperature_coefficients {
+        if bounds.iter().any(|b| b.characteristic == *characteristic) {
+            continue;
+        }
+        if let Some(node) = fields.get("conditions") {
+            let name = characteristic.name();
+            reader.fault(
+                node.span,
+                "no_effect",
+                format!("a `temperature_coefficient` of `{name}`, which the file does not bound"),
+                "coefficients of characteristics that are bounded",
+                Some(format!("delete it, or bound `{name}`")),
+            );
+        }
+    }
 }
 
 /// Ageing refers capacitance; without a bound of it the key would say nothing.

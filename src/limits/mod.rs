@@ -90,6 +90,9 @@ pub struct Conditions {
     pub ageing: Option<Ageing>,
     /// Greatest age of the date code at measurement, in seconds.
     pub date_code_age: Option<f64>,
+    /// Relative change per kelvin of a characteristic that is bounded: what the uncertainty of the
+    /// part's temperature makes of it. Nothing is corrected by it.
+    pub temperature_coefficients: Vec<(Characteristic, f64)>,
 }
 
 /// Decision rule with measurement uncertainty (JCGM 106:2012 clause 8).

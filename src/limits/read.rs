@@ -71,6 +71,7 @@ fn limits(reader: &mut yaml::Reader<'_>, root: &yaml::Node, path: &str) -> Optio
     stated::check(reader, &fields, &bounded.bounds);
     if let Some(conditions) = conditions.as_ref().filter(|_| bounded.complete) {
         conditions::ageing_has_capacitance(reader, &fields, conditions, &bounded.bounds);
+        conditions::coefficients_are_of_bounds(reader, &fields, conditions, &bounded.bounds);
     }
     let rules = rules?;
     Some(Limits {

@@ -10,13 +10,15 @@ use crate::statistics::capability::{
 use crate::statistics::normality::anderson_darling;
 use crate::statistics::percentile::box_cox;
 use crate::statistics::summary::moving_range_degrees_of_freedom;
-use crate::statistics::tolerance::{distribution_free_size, two_sided_factor};
+use crate::statistics::tolerance::{distribution_free_size, two_sided_factors};
 use serde::{Deserialize, Serialize};
 
 /// Confidence of bounds and of the tolerance interval, one-sided.
 const CONFIDENCE: f64 = 0.95;
-/// Share of the parts in the tolerance interval.
+/// Share of the parts in the tolerance interval that is shown first.
 const CONTENT: f64 = 0.95;
+/// Content and confidence of the tolerance intervals.
+const INTERVALS: [(f64, f64); 3] = [(CONTENT, CONFIDENCE), (0.95, 0.99), (0.99, 0.95)];
 /// A p-value below this speaks against a normal distribution.
 const NORMALITY_ALPHA: f64 = 0.05;
 
@@ -43,19 +45,55 @@ impl Indices {
     }
 }
 
-/// The factor of the tolerance interval, solved once for the characteristics of a lot that have as
-/// many values: it takes longer than all the rest of them.
+/// The test for normality of one characteristic, mean and standard deviation estimated.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct NormalitySection {
+    /// Values tested.
+    pub n: u64,
+    /// A² of Anderson and Darling.
+    pub a2: f64,
+    /// A² (1 + 0.75/n + 2.25/n²), from which the p-value is (D'Agostino and Stephens 1986, Table 4.9).
+    pub a2_adjusted: f64,
+    #[allow(missing_docs)]
+    pub p_value: f64,
+}
+
+/// Quantiles of a normal distribution after a Box-Cox transformation, which the percentile indices are of.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct PercentileSection {
+    /// λ of y = (x^λ − 1)/λ, or ln x at 0.
+    pub exponent: f64,
+    /// p-value of the test for normality of the transformed values.
+    pub p_value: f64,
+    /// 0.135 %, 50 % and 99.865 %.
+    pub quantiles: [f64; 3],
+}
+
+/// Tolerance intervals: each holds at least that share of the parts with that confidence.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+pub struct ToleranceSection {
+    /// Content 95 %, confidence 99 %.
+    pub of_95_with_99: Option<[f64; 2]>,
+    /// Content 99 %, confidence 95 %.
+    pub of_99_with_95: Option<[f64; 2]>,
+    /// Factors k of x̄ ± k s: content and confidence 95/95, 95/99, 99/95; null where not by k s.
+    pub factors: Option<[f64; 3]>,
+}
+
+/// The factors of the tolerance intervals, solved once for the characteristics of a lot that have
+/// as many values: they take longer than all the rest of them.
 #[derive(Debug, Default)]
-pub(super) struct Factor(Option<(u64, Option<f64>)>);
+pub(super) struct Factor(Option<(u64, Option<[f64; 3]>)>);
 
 impl Factor {
-    fn of(&mut self, n: u64) -> Option<f64> {
+    fn of(&mut self, n: u64) -> Option<[f64; 3]> {
         match self.0 {
-            Some((known, factor)) if known == n => factor,
+            Some((known, factors)) if known == n => factors,
             _ => {
-                let factor = two_sided_factor(n, CONTENT, CONFIDENCE).ok();
-                self.0 = Some((n, factor));
-                factor
+                let factors = two_sided_factors(n, &INTERVALS).ok();
+                let factors = factors.and_then(|all| <[f64; 3]>::try_from(all).ok());
+                self.0 = Some((n, factors));
+                factors
             }
         }
     }
@@ -71,8 +109,10 @@ pub(super) struct Stated {
     pub(super) ppk_lower_95: Option<f64>,
     pub(super) pp_percentile: Option<f64>,
     pub(super) ppk_percentile: Option<f64>,
-    pub(super) normality_p_value: Option<f64>,
+    pub(super) normality: Option<NormalitySection>,
+    pub(super) percentile: Option<PercentileSection>,
     pub(super) tolerance_95_95: Option<[f64; 2]>,
+    pub(super) tolerance: ToleranceSection,
     pub(super) warnings: Vec<Note>,
 }
 
@@ -164,8 +204,17 @@ fn distribution(
     bound: &Bound,
     factor: &mut Factor,
 ) {
+    let n = values.len() as u64;
     let p = match anderson_darling(values) {
-        Ok(test) => test.p_value,
+        Ok(test) => {
+            stated.normality = Some(NormalitySection {
+                n,
+                a2: test.statistic,
+                a2_adjusted: test.adjusted,
+                p_value: test.p_value,
+            });
+            test.p_value
+        }
         Err(why) => {
             let text = format!(
                 "no test for normality, no tolerance interval: {}",
@@ -176,21 +225,32 @@ fn distribution(
             return;
         }
     };
-    stated.normality_p_value = Some(p);
-    let n = values.len() as u64;
     if p >= NORMALITY_ALPHA {
-        let interval = factor
-            .of(n)
-            .zip(moments)
-            .map(|(k, (mean, s))| [mean - k * s, mean + k * s]);
-        stated.tolerance_95_95 = interval;
+        if let Some((factors, (mean, s))) = factor.of(n).zip(moments) {
+            let [first, second, third] = factors.map(|k| [mean - k * s, mean + k * s]);
+            stated.tolerance_95_95 = Some(first);
+            stated.tolerance = ToleranceSection {
+                of_95_with_99: Some(second),
+                of_99_with_95: Some(third),
+                factors: Some(factors),
+            };
+        }
         return;
     }
+    let low = values.iter().copied().fold(f64::INFINITY, f64::min);
+    let high = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    let [first, second, third] = INTERVALS.map(|(content, confidence)| {
+        let needed = distribution_free_size(content, confidence, true);
+        (n >= needed.unwrap_or(u64::MAX)).then_some([low, high])
+    });
+    stated.tolerance_95_95 = first;
+    stated.tolerance = ToleranceSection {
+        of_95_with_99: second,
+        of_99_with_95: third,
+        factors: None,
+    };
     let needed = distribution_free_size(CONTENT, CONFIDENCE, true).unwrap_or(u64::MAX);
     let interval = if n >= needed {
-        let low = values.iter().copied().fold(f64::INFINITY, f64::min);
-        let high = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-        stated.tolerance_95_95 = Some([low, high]);
         "the tolerance interval is from the smallest to the largest value".to_owned()
     } else {
         format!("no tolerance interval, it would need {needed} values")
@@ -220,6 +280,11 @@ fn percentile(stated: &mut Stated, values: &[f64], bound: &Bound) -> Result<(), 
             fit.normality.p_value
         ));
     }
+    stated.percentile = Some(PercentileSection {
+        exponent: fit.exponent,
+        p_value: fit.normality.p_value,
+        quantiles: [fit.quantiles.low, fit.quantiles.middle, fit.quantiles.high],
+    });
     let indices = fit.quantiles.capability(bound.lower, bound.upper);
     stated.ppk_percentile = Some(indices.ppk.map_err(|why| why.text())?);
     stated.pp_percentile = indices.pp.ok();

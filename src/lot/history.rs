@@ -1,6 +1,6 @@
 //! The lots before this one of the same part and supplier, as far as they bear on it.
 
-use super::{LotSeries, LotVerdict};
+use super::{ClassState, LotSeries, LotVerdict};
 use crate::statistics::sampling::Severity;
 use indexmap::IndexMap;
 
@@ -9,19 +9,28 @@ use indexmap::IndexMap;
 pub struct History {
     #[allow(missing_docs)]
     pub lots: Vec<PastLot>,
-    /// The latest decision of the responsible authority on the severity, if there is one.
-    pub set: Option<SeveritySet>,
+    /// Decisions of the responsible authority on the severity, oldest first.
+    pub set: Vec<SeveritySet>,
 }
 
-/// A severity that a person set, for every class: what went before does not count any more.
+/// A severity that a person set: what went before does not count any more (ISO 2859-1:1999, 9.1 and,
+/// after discontinuation, 9.4).
 #[derive(Debug, Clone, PartialEq)]
 pub struct SeveritySet {
     /// So many of the lots of the history were before it.
     pub after: usize,
+    /// For one class; `None` for every one.
+    pub class: Option<String>,
     #[allow(missing_docs)]
     pub severity: Severity,
     /// Why, in the person's words.
     pub reason: String,
+    /// The code that the site uses for the person.
+    pub by: Option<String>,
+    /// RFC 3339 with offset.
+    pub time: String,
+    /// Index of its entry in the ledger.
+    pub entry: u64,
 }
 
 /// One earlier lot.
@@ -61,7 +70,11 @@ pub struct PastClass {
     pub nonconforming: u64,
     pub undecided: u64,
     pub by_variables: bool,
+    /// By variables: every characteristic would have been accepted with the AQL one step tighter too.
+    pub accepted_one_step_tighter: bool,
     pub verdict: LotVerdict,
+    /// Where the switching rules stood before this lot, as its record has it.
+    pub before: Option<ClassState>,
 }
 
 /// One characteristic of an earlier lot.

@@ -17,7 +17,7 @@ mod variables;
 mod verdict;
 
 pub use bench_run::{Aside, BenchRun, SEED_MAX, SetAside};
-pub use capability::Indices;
+pub use capability::{Indices, NormalitySection, PercentileSection, ToleranceSection};
 pub use conditions::ConditionSection;
 pub use curve::OperatingCharacteristic;
 pub use explain::Step;
@@ -28,7 +28,7 @@ pub use rules::{
 };
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};
-pub use switching::{ClassState, Switching, severity_state};
+pub use switching::{ChangeSection, ClassState, SetSection, Switching, severity_state};
 pub use variables::VariablesSection;
 pub use verdict::{LotJudgement, LotVerdict, judge};
 

@@ -50,6 +50,74 @@ pub(super) fn find(
     }
 }
 
+/// What a test comes to in numbers, so that it can be followed; names are those of the parts.
+pub(super) fn numbers(
+    method: OutlierMethod,
+    values: &[f64],
+    names: &[&str],
+    alpha: f64,
+    show: &dyn Fn(f64) -> String,
+) -> String {
+    let name = |index: usize| names.get(index).copied().unwrap_or("?");
+    let found = match method {
+        OutlierMethod::GeneralizedEsd => esd_numbers(values, alpha, &name),
+        OutlierMethod::Grubbs => grubbs(values, Side::Either, alpha).map(|test| {
+            format!(
+                "G {:.3} of part {}, critical {:.3}",
+                test.statistic,
+                name(test.index),
+                test.critical
+            )
+        }),
+        OutlierMethod::ModifiedZ => modified_z_scores(values).map(|scores| {
+            let most = scores
+                .iter()
+                .enumerate()
+                .max_by(|a, b| a.1.abs().total_cmp(&b.1.abs()));
+            most.map_or(String::new(), |(index, z)| {
+                format!("largest score {z:.3} of part {}", name(index))
+            })
+        }),
+        OutlierMethod::PartAverage => part_average_limits(values).map(|limits| {
+            format!(
+                "median {}, robust σ {}, limits {} and {}",
+                show(limits.median),
+                show(limits.robust_sigma),
+                show(limits.lower),
+                show(limits.upper)
+            )
+        }),
+        OutlierMethod::Joint => Ok(String::new()),
+    };
+    match found {
+        Ok(text) if !text.is_empty() => format!("; {text}"),
+        _ => String::new(),
+    }
+}
+
+/// Each step of the generalized ESD test up to the one after the last outlier.
+fn esd_numbers<'a>(
+    values: &[f64],
+    alpha: f64,
+    name: &dyn Fn(usize) -> &'a str,
+) -> Result<String, Undefined> {
+    let test = generalized_esd(values, OUTLIERS_MAX.min(values.len() / 4), alpha)?;
+    let each = test.steps.iter().take(test.outliers.len() + 1).map(|step| {
+        let sign = if step.statistic > step.critical {
+            '>'
+        } else {
+            '≤'
+        };
+        format!(
+            "R {:.3} of part {} {sign} λ {:.3}",
+            step.statistic,
+            name(step.index),
+            step.critical
+        )
+    });
+    Ok(each.collect::<Vec<_>>().join(", "))
+}
+
 /// The outliers by every rule that names the bound, each once; by generalized ESD where none does.
 pub(super) fn of_bound(
     bound: &Bound,

@@ -7,7 +7,7 @@ use crate::limits::{Acceptance, Limits, NotNormal};
 use crate::statistics::Undefined;
 use crate::statistics::operating_characteristic::zero_acceptance_sample;
 use crate::statistics::sampling::{InspectionLevel, Severity, code_letter, plan_for};
-use crate::statistics::share::lot_upper_bound;
+use crate::statistics::share::{lot_lower_bound, lot_upper_bound};
 use crate::statistics::variables;
 use indexmap::IndexMap;
 use serde::{Deserialize, Serialize};
@@ -67,7 +67,14 @@ pub struct ClassSection {
     pub undecided: u64,
     /// `accept`, `reject` or `hold` by this class alone.
     pub verdict: LotVerdict,
-    /// Upper 95 % confidence bound of the share of such parts in the lot, a ratio: exact for its size; undecided parts count as nonconforming.
+    /// Share of such parts in the measured sample, a ratio; undecided parts count as nonconforming.
+    #[serde(default)]
+    pub share_nonconforming: Option<f64>,
+    /// Lower and upper 95 % confidence bounds (one-sided each) of the share of such parts in the lot, ratios:
+    /// exact for its size. Undecided parts count as conforming in the lower, as nonconforming in the upper.
+    #[serde(default)]
+    pub share_nonconforming_lower_95: Option<f64>,
+    #[allow(missing_docs)]
     #[serde(default)]
     pub share_nonconforming_upper_95: Option<f64>,
     /// `null` where the whole lot is inspected.
@@ -79,6 +86,9 @@ pub struct ClassSection {
     /// True where `n`, `ac` and `re` did not decide, but `variables`.
     #[serde(default)]
     pub by_variables: bool,
+    /// Why there is no plan by variables though the scheme is by variables.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub no_variables: Option<String>,
 }
 
 /// A sampling plan for a lot size.
@@ -95,6 +105,8 @@ pub struct Plan {
     pub classes: IndexMap<String, PlanClass>,
     /// What the severities come from.
     pub switching: Option<Switching>,
+    /// Quality limit and consumer's risk of zero acceptance, ratios.
+    pub quality_limit: Option<(f64, f64)>,
 }
 
 /// The plan of one class: n parts, at most Ac nonconforming.
@@ -110,6 +122,10 @@ pub struct PlanClass {
     pub re: u64,
     /// Where the class is judged by variables.
     pub variables: Option<variables::Plan>,
+    /// The constants one step tighter, which the switching rules ask for.
+    pub tighter: Option<variables::Plan>,
+    /// Why a class that is to be judged by variables has no plan for it.
+    pub no_variables: Option<String>,
     /// What is done where a characteristic is not normal.
     pub not_normal: NotNormal,
 }
@@ -125,6 +141,8 @@ impl PlanClass {
             ac,
             re: ac.saturating_add(1),
             variables: None,
+            tighter: None,
+            no_variables: None,
             not_normal: NotNormal::Hold,
         }
     }
@@ -208,6 +226,7 @@ fn of_severities(
             source: "fixed sample and acceptance number of the limit file".to_owned(),
             classes: single((*sample).min(lot_size), *accept),
             switching: None,
+            quality_limit: None,
         }),
         Acceptance::ZeroAcceptance {
             quality_limit,
@@ -230,6 +249,7 @@ fn of_severities(
                 source: "hypergeometric law, exact for the lot size".to_owned(),
                 classes: single(n, 0),
                 switching: None,
+                quality_limit: Some((*quality_limit, *consumers_risk)),
             })
         }
         Acceptance::Variables {
@@ -282,6 +302,7 @@ fn attributes(
         ),
         classes,
         switching: None,
+        quality_limit: None,
     })
 }
 
@@ -299,7 +320,14 @@ fn with_variables(
         .map_err(|_| format!("`{level}` is not an inspection level"))?;
     for (name, class) in &mut plan.classes {
         let Some(aql) = class.aql else { continue };
-        class.variables = variables::plan_for(lot_size, level, aql, severity(name)).ok();
+        let severity = severity(name);
+        match variables::plan_for(lot_size, level, aql, severity) {
+            Ok(plan) => class.variables = Some(plan),
+            Err(why) => class.no_variables = Some(why.text()),
+        }
+        class.tighter = code_letter(lot_size, level)
+            .ok()
+            .and_then(|letter| variables::one_step_tighter(letter, aql, severity));
         class.not_normal = not_normal;
     }
     plan.scheme = "variables";
@@ -334,6 +362,7 @@ fn single_part(level: &str, aql: &[(String, f64)], severity: Severities) -> Plan
         source: "100 % inspection of a lot of one".to_owned(),
         classes,
         switching: None,
+        quality_limit: None,
     }
 }
 
@@ -392,6 +421,7 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
         beyond += with(&parts[inside..], PartVerdict::Nonconforming);
         let nonconforming = with(&parts[..inside], PartVerdict::Nonconforming);
         let undecided = with(&parts[..inside], PartVerdict::Undecided);
+        let measured = inside as u64 - unmeasured_of(&parts[..inside]);
         let verdict = if by_variables {
             by_variables::verdict(&sections)
         } else {
@@ -409,14 +439,17 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
                 nonconforming,
                 undecided,
                 verdict,
+                share_nonconforming: share(measured, nonconforming + undecided),
+                share_nonconforming_lower_95: share_lower(plan.lot_size, measured, nonconforming),
                 share_nonconforming_upper_95: share_upper(
                     plan.lot_size,
-                    inside as u64 - unmeasured_of(&parts[..inside]),
+                    measured,
                     nonconforming + undecided,
                 ),
                 operating_characteristic: plan.curve(class),
                 variables: sections,
                 by_variables,
+                no_variables: class.no_variables.clone(),
             },
         );
     }
@@ -447,6 +480,16 @@ pub(super) fn count(plan: &Plan, limits: &Limits, parts: &[PartRecord]) -> Sampl
 fn unmeasured_of(parts: &[PartRecord]) -> u64 {
     let unmeasured = |p: &&PartRecord| p.verdict == PartVerdict::Unmeasured;
     parts.iter().filter(unmeasured).count() as u64
+}
+
+fn share(measured: u64, nonconforming: u64) -> Option<f64> {
+    (measured > 0).then(|| nonconforming as f64 / measured as f64)
+}
+
+/// The smallest share that a sample as bad as this leaves possible with 95 % confidence.
+fn share_lower(lot: u64, measured: u64, nonconforming: u64) -> Option<f64> {
+    let least = lot_lower_bound(lot, measured, nonconforming, 0.95).ok()?;
+    Some(least as f64 / lot as f64)
 }
 
 /// The largest share that a sample as good as this leaves possible with 95 % confidence.

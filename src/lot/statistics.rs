@@ -1,6 +1,8 @@
 //! Lot statistics of a characteristic over the parts that have a value.
 
-use super::capability::{self, Factor, Indices};
+use super::capability::{
+    self, Factor, Indices, NormalitySection, PercentileSection, ToleranceSection,
+};
 use super::outliers;
 use crate::diagnostic::Note;
 use crate::judgement::{PartRecord, PartVerdict, Risks, acceptance_window, global_risks};
@@ -38,12 +40,21 @@ pub struct Statistics {
     pub pp_percentile: Option<f64>,
     #[serde(default)]
     pub ppk_percentile: Option<f64>,
+    /// What the percentile indices are of.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub percentile: Option<PercentileSection>,
     /// Of the test of Anderson and Darling.
     #[serde(default)]
     pub normality_p_value: Option<f64>,
+    /// The whole of that test.
+    #[serde(default)]
+    pub normality: Option<NormalitySection>,
     /// Holds at least 95 % of the parts with a confidence of 95 %.
     #[serde(default)]
     pub tolerance_95_95: Option<[f64; 2]>,
+    /// Other contents and confidences.
+    #[serde(default)]
+    pub tolerance: ToleranceSection,
     /// Probability that a part of such a lot does not conform and is accepted by the decision rule
     /// (JCGM 106:2012, 9.5.2), parts and readings taken as normally distributed.
     #[serde(default)]
@@ -171,8 +182,11 @@ fn of_bound(
         at_least: stated.at_least,
         pp_percentile: stated.pp_percentile,
         ppk_percentile: stated.ppk_percentile,
-        normality_p_value: stated.normality_p_value,
+        percentile: stated.percentile,
+        normality_p_value: stated.normality.map(|test| test.p_value),
+        normality: stated.normality,
         tolerance_95_95: stated.tolerance_95_95,
+        tolerance: stated.tolerance,
         consumers_risk: risks.map(|r| r.consumer),
         producers_risk: risks.map(|r| r.producer),
         outliers,

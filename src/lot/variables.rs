@@ -33,6 +33,17 @@ pub struct VariablesSection {
     pub q_upper: Option<f64>,
     /// Estimated share nonconforming, a ratio.
     pub estimated_share: Option<f64>,
+    /// Estimated shares below the lower and above the upper limit.
+    #[serde(default)]
+    pub share_lower: Option<f64>,
+    #[serde(default)]
+    pub share_upper: Option<f64>,
+    /// Whether the AQL one step tighter would accept it too, which the switching score asks for.
+    #[serde(default)]
+    pub accepted_one_step_tighter: Option<bool>,
+    /// A² of the test for normality, mean and standard deviation estimated.
+    #[serde(default)]
+    pub anderson_darling: Option<f64>,
     /// Of the test for normality.
     pub normality_p_value: Option<f64>,
     /// `accept`, `reject`, or `hold` where it could not be judged by variables.
@@ -48,6 +59,7 @@ pub(super) fn judge(
     limits: &Limits,
     parts: &[PartRecord],
 ) -> Vec<VariablesSection> {
+    let tighter = plan.tighter;
     let Some(plan) = plan.variables else {
         return Vec::new();
     };
@@ -55,7 +67,7 @@ pub(super) fn judge(
         .bounds
         .iter()
         .filter(|b| b.class == class)
-        .map(|bound| of_bound(bound, &plan, parts))
+        .map(|bound| of_bound(bound, &plan, tighter.as_ref(), parts))
         .collect()
 }
 
@@ -78,7 +90,12 @@ pub(super) fn not_normal(sections: &[VariablesSection]) -> bool {
         .any(|s| s.normality_p_value.is_none_or(|p| p < NORMALITY_ALPHA))
 }
 
-fn of_bound(bound: &Bound, plan: &Plan, parts: &[PartRecord]) -> VariablesSection {
+fn of_bound(
+    bound: &Bound,
+    plan: &Plan,
+    tighter: Option<&Plan>,
+    parts: &[PartRecord],
+) -> VariablesSection {
     let sample = usize::try_from(plan.n)
         .unwrap_or(usize::MAX)
         .min(parts.len());
@@ -102,12 +119,19 @@ fn of_bound(bound: &Bound, plan: &Plan, parts: &[PartRecord]) -> VariablesSectio
         q_lower: None,
         q_upper: None,
         estimated_share: None,
+        share_lower: None,
+        share_upper: None,
+        accepted_one_step_tighter: None,
+        anderson_darling: None,
         normality_p_value: None,
         verdict: LotVerdict::Hold,
         why: String::new(),
     };
     match anderson_darling(&values) {
-        Ok(test) => section.normality_p_value = Some(test.p_value),
+        Ok(test) => {
+            section.anderson_darling = Some(test.statistic);
+            section.normality_p_value = Some(test.p_value);
+        }
         Err(why) => {
             section.why = format!("normality cannot be tested: {}", why.text());
             return section;
@@ -125,6 +149,8 @@ fn of_bound(bound: &Bound, plan: &Plan, parts: &[PartRecord]) -> VariablesSectio
     section.standard_deviation = Some(outcome.standard_deviation);
     (section.q_lower, section.q_upper) = (finite(outcome.q_lower), finite(outcome.q_upper));
     section.estimated_share = Some(outcome.p());
+    section.share_lower = bound.lower.map(|_| outcome.p_lower);
+    section.share_upper = bound.upper.map(|_| outcome.p_upper);
     section.form = Some(if outcome.form == Form::K { "k" } else { "M" }.to_owned());
     let p = section.normality_p_value.unwrap_or(0.0);
     if p < NORMALITY_ALPHA {
@@ -133,6 +159,7 @@ fn of_bound(bound: &Bound, plan: &Plan, parts: &[PartRecord]) -> VariablesSectio
         );
         return section;
     }
+    section.accepted_one_step_tighter = tighter.map(|plan| outcome.accepted_by(plan));
     section.verdict = if outcome.accepted {
         LotVerdict::Accept
     } else {

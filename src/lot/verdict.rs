@@ -113,6 +113,7 @@ pub fn judge(
         sampling: &sampling,
         rules: ruled.steps,
         conditions: &sections,
+        reasons: reasons.iter().map(|reason| reason.code.clone()).collect(),
         verdict,
     });
     let mut warnings = warnings(limits, station, &sampling);
@@ -352,6 +353,13 @@ fn duplicates(parts: &[PartRecord]) -> Vec<Note> {
 fn warnings(limits: &Limits, station: &Station, sampling: &Sampling) -> Vec<Note> {
     let mut notes = Vec::new();
     for (name, class) in &sampling.classes {
+        if let Some(why) = &class.no_variables {
+            let text = format!(
+                "{}: judged by attributes instead: no plan by variables ({why})",
+                class_words(name)
+            );
+            notes.push(Note::new("judged_by_attributes", text));
+        }
         if !class.by_variables && !class.variables.is_empty() {
             let text = format!(
                 "{}: judged by attributes instead: {}",

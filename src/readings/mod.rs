@@ -30,6 +30,7 @@ use local_fit::LocalFit;
 use reading::Outcome;
 use series::Resonance;
 use std::cell::{OnceCell, RefCell};
+use uncertainty::TEMPERATURE;
 
 /// Reads characteristics from one sweep; what several of them share is computed once.
 #[derive(Debug, Clone)]
@@ -89,7 +90,10 @@ impl<'a> Reader<'a> {
             .unwrap_or(lowest)
             .ok()
             .and_then(|estimate| self.budget.components(request.characteristic, &estimate))
-            .map_or_else(Vec::new, |components| components.to_vec())
+            .map_or_else(Vec::new, |components| {
+                let stated = |c: &Component| c.name != TEMPERATURE || c.contribution > 0.0;
+                components.into_iter().filter(stated).collect()
+            })
     }
 
     /// The equivalent circuit of the sweep, or why there is none.

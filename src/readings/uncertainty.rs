@@ -1,13 +1,17 @@
 //! Standard uncertainty of readings from what the station states and what the sweep itself shows.
 //!
 //! First-order propagation (JCGM 100:2008 clause 5.1.2) of relative magnitude and phase of Z, the
-//! reference resistor's tolerance (rectangular, clause 4.3.7), the scatter about the fit, and the
-//! station's repeatability of the characteristic. No correlation between them is assumed. One set
+//! reference resistor's tolerance (rectangular, clause 4.3.7), the scatter about the fit, the
+//! station's repeatability of the characteristic, and the part's temperature where it is told how
+//! the characteristic changes with it. No correlation between them is assumed. One set
 //! of terms serves both the reading's uncertainty and the budget as a table.
 
 use super::Characteristic;
 use super::reading::Estimate;
 use crate::station::{Repeatability, Station};
+
+/// The line that is there only where station and limit file state what it needs.
+pub(super) const TEMPERATURE: &str = "temperature of the part";
 
 /// A station's uncertainty, ready to be propagated.
 #[derive(Debug, Clone, PartialEq, Default)]
@@ -19,6 +23,10 @@ pub struct Budget {
     /// Relative standard uncertainty of the reference resistance; 0 without one.
     reference: f64,
     repeatability: Vec<(String, Repeatability)>,
+    /// Standard uncertainty of the part's temperature in K; `None` where not stated.
+    temperature: Option<f64>,
+    /// Relative change of a characteristic per kelvin.
+    coefficients: Vec<(Characteristic, f64)>,
 }
 
 /// One line of an uncertainty budget.
@@ -28,7 +36,7 @@ pub struct Component {
     pub name: &'static str,
     /// Its standard uncertainty, in `unit`.
     pub standard_uncertainty: f64,
-    /// `1` (relative), `rad`, or the unit of the reading.
+    /// `1` (relative), `rad`, `K`, or the unit of the reading.
     pub unit: &'static str,
     /// Change of the reading per unit of the input.
     pub sensitivity: f64,
@@ -75,6 +83,17 @@ impl Budget {
             phase: stated.phase,
             reference: station.reference.map_or(0.0, |r| r.tolerance / 3f64.sqrt()),
             repeatability: stated.repeatability.clone(),
+            temperature: stated.temperature,
+            coefficients: Vec::new(),
+        }
+    }
+
+    /// The budget for parts that change with temperature so much: relative changes per kelvin by
+    /// characteristic. They count where the station states the uncertainty of the temperature.
+    pub fn with_temperature_coefficients(self, coefficients: &[(Characteristic, f64)]) -> Budget {
+        Budget {
+            coefficients: coefficients.to_vec(),
+            ..self
         }
     }
 
@@ -84,7 +103,7 @@ impl Budget {
         &self,
         characteristic: Characteristic,
         estimate: &Estimate,
-    ) -> Option<[Component; 5]> {
+    ) -> Option<[Component; 6]> {
         let of_magnitude = estimate.per_log_magnitude;
         let magnitude = match self.magnitude {
             Some(u) => u,
@@ -104,6 +123,11 @@ impl Budget {
                 Repeatability::Relative(ratio) => ratio * estimate.value.abs(),
                 Repeatability::Absolute(absolute) => *absolute,
             });
+        let coefficient = self
+            .coefficients
+            .iter()
+            .find(|(of, _)| *of == characteristic)
+            .map_or(0.0, |(_, share)| share * estimate.value);
         let unit = characteristic.unit();
         let reference = Component {
             distribution: "rectangular",
@@ -115,6 +139,12 @@ impl Budget {
             reference,
             Component::new("scatter about the fit", estimate.scatter, unit, 1.0),
             Component::new("repeatability", repeatability, unit, 1.0),
+            Component::new(
+                TEMPERATURE,
+                self.temperature.unwrap_or(0.0),
+                "K",
+                coefficient,
+            ),
         ];
         combined(&components).is_finite().then_some(components)
     }

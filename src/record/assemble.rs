@@ -317,6 +317,9 @@ fn uncertainty(station: &Station) -> Vec<String> {
     if let Some(u) = stated.phase {
         words.push(format!("phase {} °", significant(u.to_degrees())));
     }
+    if let Some(u) = stated.temperature {
+        words.push(format!("temperature {} K", significant(u)));
+    }
     for (name, u) in &stated.repeatability {
         let value = match u {
             Repeatability::Relative(ratio) => shortest(*ratio, "1"),

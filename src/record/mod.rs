@@ -11,9 +11,10 @@ mod past;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ChartedLot, ClassSection, ClassState, CommonShift, ConditionSection, Findings, GroupSection,
-    JointOutlier, JointSection, LotChart, LotVerdict, MixedSection, OperatingCharacteristic,
-    Sampling, SetAside, Statistics, Step, Switching, TrendSection, VariablesSection,
+    ChangeSection, ChartedLot, ClassSection, ClassState, CommonShift, ConditionSection, Findings,
+    GroupSection, JointOutlier, JointSection, LotChart, LotVerdict, MixedSection,
+    OperatingCharacteristic, Sampling, SetAside, SetSection, Statistics, Step, Switching,
+    TrendSection, VariablesSection,
 };
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};

@@ -18,7 +18,16 @@ impl PastLot {
                 nonconforming: class.nonconforming,
                 undecided: class.undecided,
                 by_variables: class.by_variables,
+                accepted_one_step_tighter: class.by_variables
+                    && class
+                        .variables
+                        .iter()
+                        .all(|of| of.accepted_one_step_tighter == Some(true)),
                 verdict: class.verdict,
+                before: sampling
+                    .switching
+                    .as_ref()
+                    .and_then(|switching| switching.classes.get(name).cloned()),
             };
             (name.clone(), past)
         });

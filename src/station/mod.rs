@@ -123,6 +123,9 @@ pub struct Uncertainty {
     pub magnitude: Option<f64>,
     /// Standard uncertainty of the phase in radians.
     pub phase: Option<f64>,
+    /// Standard uncertainty of the part's temperature in K: of the thermometer, and of how well the
+    /// part has taken on what it shows.
+    pub temperature: Option<f64>,
     /// Repeatability by characteristic name: standard uncertainty, relative or in the SI unit.
     pub repeatability: Vec<(String, Repeatability)>,
 }

@@ -27,7 +27,7 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Uncertainty>
     let fields = reader.fields(
         node,
         "`uncertainty`",
-        &["magnitude", "phase", "repeatability"],
+        &["magnitude", "phase", "temperature", "repeatability"],
     )?;
     let magnitude = fields
         .get("magnitude")
@@ -37,12 +37,18 @@ pub fn read(reader: &mut Reader<'_>, node: Option<&Node>) -> Option<Uncertainty>
         let possible = |v: f64| v > 0.0 && v <= FRAC_PI_2;
         reader.quantity_if(node, "`phase`", Dimension::Angle, possible, expected)
     });
+    let temperature = fields.get("temperature").map(|node| {
+        let expected = "a standard uncertainty above 0 K and at most 50 K, such as `0.5 K`";
+        let possible = |v: f64| v > 0.0 && v <= 50.0;
+        reader.temperature_difference_if(node, "`temperature`", possible, expected)
+    });
     let repeatability = fields
         .get("repeatability")
         .map(|node| repeatability(reader, node));
     Some(Uncertainty {
         magnitude: given(magnitude)?,
         phase: given(phase)?,
+        temperature: given(temperature)?,
         repeatability: given(repeatability)?.unwrap_or_default(),
     })
 }

@@ -93,6 +93,17 @@ pub enum Change {
 }
 
 impl Change {
+    /// Its clause of ISO 2859-1:1999.
+    pub fn clause(self) -> &'static str {
+        match self {
+            Self::TwoOfFiveNotAccepted => "9.3.1",
+            Self::FiveAccepted => "9.3.2",
+            Self::ScoreReached => "9.3.3",
+            Self::NotAcceptedOnReduced | Self::ReducedNoLongerAllowed => "9.3.4",
+            Self::FiveNotAcceptedOnTightened => "9.4",
+        }
+    }
+
     /// In words, with the clause.
     pub fn text(self) -> &'static str {
         match self {

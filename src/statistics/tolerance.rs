@@ -41,8 +41,32 @@ pub fn one_sided_factor(n: u64, content: f64, confidence: f64) -> Result<f64, Un
 /// As [`one_sided_factor`].
 pub fn two_sided_factor(n: u64, content: f64, confidence: f64) -> Result<f64, Undefined> {
     check(n, content, confidence)?;
-    let nu = (n - 1) as f64;
     let weighted = weighted_half_widths((n as f64).sqrt(), content)?;
+    factor(n, &weighted, confidence)
+}
+
+/// Several of them, each of a content and a confidence, for the same n: what a content takes is done
+/// once where the pairs of it follow one another.
+///
+/// # Errors
+/// As [`one_sided_factor`].
+pub fn two_sided_factors(n: u64, pairs: &[(f64, f64)]) -> Result<Vec<f64>, Undefined> {
+    let mut last: Option<(f64, Vec<(f64, f64)>)> = None;
+    pairs
+        .iter()
+        .map(|&(content, confidence)| {
+            check(n, content, confidence)?;
+            if last.as_ref().is_none_or(|(known, _)| *known != content) {
+                last = Some((content, weighted_half_widths((n as f64).sqrt(), content)?));
+            }
+            let weighted = last.as_ref().map_or(&[][..], |(_, weighted)| weighted);
+            factor(n, weighted, confidence)
+        })
+        .collect()
+}
+
+fn factor(n: u64, weighted: &[(f64, f64)], confidence: f64) -> Result<f64, Undefined> {
+    let nu = (n - 1) as f64;
     let held = |k: f64| -> f64 {
         let tail = |r: f64| chi_squared_sf(nu * (r / k) * (r / k), nu);
         weighted.iter().map(|(r, w)| w * tail(*r)).sum()

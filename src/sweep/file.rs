@@ -39,6 +39,41 @@ pub fn read_file(file: &RawFile, station: &Station, standards: Option<&Standards
         .collect()
 }
 
+/// How far a file's sweeps reach, before any method or check.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Extent {
+    /// Sweeps in the file: more than one in a table with a `part` column.
+    pub parts: usize,
+    /// Points of all of them.
+    pub points: usize,
+    /// Frequency of the file's last point in Hz, as written.
+    pub last: f64,
+}
+
+/// How many points a file holds, and where it ends: what there is to see while it is being written.
+///
+/// # Errors
+/// The faults of reading, where the file does not read as a sweep to its last byte.
+pub fn extent(file: &RawFile, station: &Station) -> Result<Extent, Vec<Note>> {
+    let contents = try_read(file, station)?;
+    let mut extent = Extent {
+        parts: 0,
+        points: 0,
+        last: f64::NAN,
+    };
+    let mut last_line = 0;
+    for portion in contents.portions {
+        let raw = portion.raw?;
+        extent.parts += 1;
+        extent.points += raw.frequency.len();
+        let end = raw.lines.last().copied().unwrap_or(0);
+        if let Some(last) = raw.frequency.last().filter(|_| end >= last_line) {
+            (extent.last, last_line) = (*last, end);
+        }
+    }
+    Ok(extent)
+}
+
 /// Reads the sweep of a compensation standard: no compensation, and none of the checks that
 /// expect a capacitor.
 pub(super) fn read_standard(file: &RawFile, station: &Station) -> Result<Sweep, Vec<Note>> {

@@ -18,7 +18,7 @@ pub mod touchstone;
 pub mod validity;
 
 pub use compensation::Standards;
-pub use file::read_file;
+pub use file::{Extent, extent, read_file};
 pub use naming::{is_sweep_file, natural_order, order};
 pub use network::{Network, Parameter};
 

@@ -372,6 +372,42 @@ fn conditions_that_cannot_be() {
     );
 }
 
+/// As data sheets write it: ppm of class 1 and film, percent of class 2 and electrolytics.
+#[test]
+fn temperature_coefficients() {
+    let with_coefficient = |text: &str| {
+        let line = format!("equivalent: series\n  temperature_coefficient: {{{text}}}\n");
+        read(&with(LIMITS, "equivalent: series ", &format!("{line}  #")))
+    };
+    for (text, expected) in [
+        ("capacitance: 0.1 %/K", 1e-3),
+        ("capacitance: -200 ppm/K", -2e-4),
+        ("capacitance: +500 ppm / °C", 5e-4),
+        ("capacitance: ±30 ppm/°C", 3e-5),
+        ("capacitance: 0.2 % per K", 2e-3),
+    ] {
+        let limits = with_coefficient(text).expect("a valid file");
+        let [(of, share)] = limits.conditions.temperature_coefficients[..] else {
+            panic!("{text}")
+        };
+        assert_eq!(of.name(), "capacitance");
+        assert!(near(Some(share), expected), "{text}: {share}");
+    }
+    for (text, fault) in [
+        ("capacitance: 0.1 %", "not_per_kelvin 0.1 %"),
+        ("capacitance: 0.001/K", "share_without_sign 0.001/K"),
+        ("capacitance: 0 %/K", "impossible_value 0 %/K"),
+        ("capacitance: 11 %/K", "impossible_value 11 %/K"),
+        ("capacitance: much %/K", "not_a_quantity much %/K"),
+        ("capacity: 0.1 %/K", "unknown_key capacity"),
+        ("esl: 0.1 %/K", "no_effect conditions"),
+    ] {
+        assert_eq!(listed(with_coefficient(text)), [fault], "{text}");
+    }
+    let none = read(LIMITS).expect("a valid file").conditions;
+    assert!(none.temperature_coefficients.is_empty());
+}
+
 #[test]
 fn code_and_description_agree_with_the_nominal_value() {
     read(&with(LIMITS, "revision: 3", "revision: 3\ncode: 475")).expect("4.7 µF");

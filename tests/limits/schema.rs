@@ -82,6 +82,15 @@ fn the_full_shapes_are_valid() {
     let all = with(LIMITS, "lot_rules:\n", rules);
     let all = with(&all, "outliers:   ", outliers);
     accepts(&validator(reelgate::limits::SCHEMA), "limits", &all);
+    let coefficients = "equivalent: series\n  temperature_coefficient: {capacitance: ±30 ppm/K, srf: -0.05 %/°C}\n  #";
+    let told = with(LIMITS, "equivalent: series ", coefficients);
+    accepts(&validator(reelgate::limits::SCHEMA), "limits", &told);
+    let station = with(
+        STATION,
+        "phase: 0.05 °,",
+        "phase: 0.05 °, temperature: 0.5 K,",
+    );
+    accepts(&validator(reelgate::station::SCHEMA), "station", &station);
     accepts(&validator(reelgate::station::SCHEMA), "station", STATION);
     accepts(&validator(reelgate::lot::SCHEMA), "lot", LOT);
     accepts(&validator(reelgate::site::SCHEMA), "site", SITE);
@@ -147,6 +156,14 @@ fn faulty_limit_files_are_refused() {
         ("kind: guarded_acceptance", "kind: guarded"),
         ("unmeasured: 1", "unmeasured: -1"),
         ("part: RG-0475-X7R", "part: RG/0475"),
+        (
+            "  equivalent: series ",
+            "  temperature_coefficient: {capacitance: 0.1 %}\n  equivalent: series ",
+        ),
+        (
+            "  equivalent: series ",
+            "  temperature_coefficient: {capacity: 0.1 %/K}\n  equivalent: series ",
+        ),
     ] {
         let text = with(LIMITS, piece, by);
         assert!(!limits.is_valid(&value(&text)), "{by}");

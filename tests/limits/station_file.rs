@@ -221,6 +221,22 @@ fn times_and_uncertainties() {
     );
     only("phase: 0.05 °", "phase: 100 °", "impossible_value 100 °");
     only("srf: 0.3 %", "q: 0.3 %", "unknown_key q");
+    let temperature = |text: &str| {
+        let by = format!("phase: 0.05 °, temperature: {text},");
+        read(&with(STATION, "phase: 0.05 °,", &by))
+    };
+    for text in ["0.5 K", "0.5 °C", "0.5K"] {
+        let station = temperature(text).expect("a valid file");
+        assert_eq!(station.uncertainty.temperature, Some(0.5), "{text}");
+    }
+    for (text, fault) in [
+        ("0 K", "impossible_value 0 K"),
+        ("60 K", "impossible_value 60 K"),
+        ("0.5", "not_a_quantity 0.5"),
+        ("warm", "not_a_quantity warm"),
+    ] {
+        assert_eq!(listed(temperature(text)), [fault], "{text}");
+    }
 }
 
 #[test]

@@ -50,6 +50,7 @@ pub fn limits(acceptance: Acceptance) -> Limits {
             equivalent: Equivalent::Series,
             ageing: None,
             date_code_age: None,
+            temperature_coefficients: vec![],
         },
         bounds: vec![Bound {
             key: KEY.into(),

@@ -316,6 +316,7 @@ pub fn station(magnitude: f64, phase: f64) -> Station {
         uncertainty: Uncertainty {
             magnitude: Some(magnitude),
             phase: Some(phase),
+            temperature: None,
             repeatability: vec![],
         },
         watch: None,

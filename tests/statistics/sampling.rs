@@ -49,7 +49,80 @@ fn every_cell_of_table_2b() {
     every_cell("s1_single_tightened.csv", Severity::Tightened, 257);
 }
 
-/// The reference for this table is recalled from the standard, without an independent copy.
+/// Three columns of Table 2-C as an independent transcription of a national edition prints them: with
+/// the diagonals of the table they say what every other column is.
+#[test]
+fn three_columns_of_table_2c_as_printed() {
+    let table = rows("s1_single_reduced_columns.csv");
+    assert_eq!(table.len(), 48);
+    for row in table.iter() {
+        let letter: CodeLetter = row.text("letter").parse().unwrap();
+        let plan = single_sampling(letter, row.number("aql_percent"), Severity::Reduced).unwrap();
+        let at = |l: CodeLetter| CodeLetter::ALL.iter().position(|known| *known == l);
+        match row.text("cell") {
+            "v" => assert!(at(plan.letter) > at(letter), "{letter}"),
+            "^" => assert!(at(plan.letter) < at(letter), "{letter}"),
+            ac => assert_eq!((plan.letter, plan.ac), (letter, ac.parse().unwrap())),
+        }
+    }
+}
+
+/// The diagonals: code letter and AQL, each one step further, have the same Ac. So every column
+/// follows from the three that an independent transcription has.
+#[test]
+fn table_2c_is_made_of_diagonals() {
+    const AC: [Option<u64>; 11] = [
+        Some(0),
+        None,
+        None,
+        None,
+        Some(1),
+        Some(2),
+        Some(3),
+        Some(5),
+        Some(6),
+        Some(8),
+        Some(10),
+    ];
+    for (row, letter) in CodeLetter::ALL[..16].iter().enumerate() {
+        for (column, aql) in AQL_SERIES.into_iter().enumerate() {
+            let plan = single_sampling(*letter, aql, Severity::Reduced).unwrap();
+            let own = plan.letter == *letter;
+            let expected = (row + column).checked_sub(14).and_then(|d| *AC.get(d)?);
+            match expected {
+                Some(ac) => assert_eq!((own, plan.ac), (true, ac), "{letter} {aql}"),
+                None => assert!(!own, "{letter} {aql}"),
+            }
+        }
+    }
+}
+
+/// MIL-STD-105E Table II-C has its plans at the same places with the same samples. Its Re leaves a gap
+/// above Ac, in which ISO 2859-1:1999 put one number; the plans with Ac 0 and Re 2 became an arrow down.
+#[test]
+fn table_2c_lies_in_the_gaps_of_mil_std_105e() {
+    let table = rows("s1_single_reduced_105E_transcription.csv");
+    assert_eq!(table.len(), 256);
+    let (mut plans, mut arrows) = (0, 0);
+    for row in table.iter() {
+        let letter: CodeLetter = row.text("letter").parse().unwrap();
+        let aql = row.number("aql_percent");
+        let plan = single_sampling(letter, aql, Severity::Reduced).unwrap();
+        let (n, ac, re) = (row.count("n"), row.count("ac"), row.count("re"));
+        if (ac, re) == (0, 2) {
+            arrows += 1;
+            // Where there is no plan below, the arrow turns round to Ac 0.
+            let down = plan.ac == 1 && plan.n > n;
+            assert!(down || plan.ac == 0, "{letter} {aql}");
+            continue;
+        }
+        plans += 1;
+        assert_eq!(plan.n, n, "{letter} {aql}");
+        assert!(ac <= plan.ac && plan.ac < re, "{letter} {aql}");
+    }
+    assert_eq!((plans, arrows), (227, 29));
+}
+
 #[test]
 fn every_cell_of_table_2c() {
     every_cell(

@@ -2,9 +2,12 @@
 
 use crate::reference::{assert_near, assert_within, rows};
 use reelgate::statistics::Undefined;
-use reelgate::statistics::sampling::{InspectionLevel, Severity};
+use reelgate::statistics::sampling::{
+    AQL_SERIES, CodeLetter, InspectionLevel, Severity, neighbouring_aqls,
+};
 use reelgate::statistics::variables::{
-    Form, Plan, acceptance_probability, estimated_share, plan_for, plan_of_size, quality_at,
+    Form, Plan, acceptance_probability, estimated_share, one_step_tighter, plan_for,
+    plan_of_letter, plan_of_size, quality_at,
 };
 
 /// The data of all four examples of MIL-STD-414 section B.
@@ -142,12 +145,78 @@ fn plans_of_lots() {
     // Letter D has no plan at AQL 0.25; the arrow leads to 7 items.
     let arrow = plan(30, 0.25, Severity::Normal).unwrap();
     assert_eq!((arrow.n, arrow.k), (7, 2.0));
-    assert_eq!(plan(1000, 2.5, Severity::Reduced), Err(Undefined::NoPlan));
     assert_eq!(plan(1000, 0.010, Severity::Normal), Err(Undefined::NoPlan));
     assert_eq!(
         plan(3, 4.0, Severity::Normal),
         Err(Undefined::WholeLot { sample: 3, lot: 3 })
     );
+}
+
+/// Tightened inspection is the column of the next smaller AQL, for every letter and AQL.
+#[test]
+fn every_tightened_plan_is_the_next_smaller_aql() {
+    for letter in &CodeLetter::ALL[..16] {
+        for aql in AQL_SERIES.into_iter().filter(|aql| *aql >= 0.040) {
+            let tightened = plan_of_letter(*letter, aql, Severity::Tightened);
+            let smaller = neighbouring_aqls(aql).0.unwrap();
+            let normal = plan_of_letter(*letter, smaller, Severity::Normal);
+            assert_eq!(tightened, normal, "{letter} {aql}");
+            assert_eq!(
+                one_step_tighter(*letter, aql, Severity::Normal),
+                normal.ok()
+            );
+        }
+    }
+}
+
+/// Reduced inspection is the smaller sample and the next larger AQL of MIL-STD-414 Tables B-1 and B-3;
+/// ANSI/ASQ Z1.9 Table B-4, which is made so too, has the same samples, and M within its recalculation.
+#[test]
+fn every_reduced_plan() {
+    let normal = rows("s2_mil414_normal_s_method.csv");
+    let of_normal = |n: u64, aql: f64| {
+        let mut found = normal.iter();
+        found.find(|row| row.count("n") == n && row.number("aql_percent") == aql)
+    };
+    let (mut cells, mut arrows) = (0, 0);
+    for row in rows("s2_z19_reduced_m.csv").iter() {
+        // H of ISO 2859-1 stands for H and I of Z1.9; its sample is that of I.
+        let letter = match row.text("letter") {
+            "H" => continue,
+            "I" => "H",
+            other => other,
+        };
+        let aql = row.number("aql_percent");
+        let larger = neighbouring_aqls(aql).1.unwrap_or(15.0);
+        let plan = plan_of_letter(letter.parse().unwrap(), aql, Severity::Reduced).unwrap();
+        let cell = of_normal(plan.n, larger).unwrap();
+        assert_eq!(plan.k, cell.number("k_B1"), "{letter} {aql}");
+        assert_near(plan.m, cell.number("M_B3_percent") / 100.0, 1e-15);
+        if of_normal(row.count("n"), larger).is_none() {
+            arrows += 1;
+            assert!(plan.n > row.count("n"), "{letter} {aql}: the arrow down");
+            continue;
+        }
+        cells += 1;
+        assert_eq!(plan.n, row.count("n"), "{letter} {aql}");
+        assert_near(plan.m, row.number("M_percent") / 100.0, 0.04);
+    }
+    assert_eq!((cells, arrows), (131, 12));
+}
+
+/// Reduced inspection never demands more parts, nor a larger k, than normal inspection.
+#[test]
+fn reduced_is_never_stricter_than_normal() {
+    for letter in &CodeLetter::ALL[..16] {
+        for aql in AQL_SERIES.into_iter().filter(|aql| *aql >= 0.040) {
+            let normal = plan_of_letter(*letter, aql, Severity::Normal).unwrap();
+            let reduced = plan_of_letter(*letter, aql, Severity::Reduced).unwrap();
+            assert!(
+                reduced.n <= normal.n && reduced.k <= normal.k,
+                "{letter} {aql}"
+            );
+        }
+    }
 }
 
 /// Equal values inside a limit are accepted, outside not; on the limit they are inside.

@@ -4,9 +4,11 @@
 //! cannot give it says in words that an operator can act on.
 
 mod event;
+mod folder;
 mod trouble;
 
 pub use event::{Event, Proof, Seen, Taken};
+pub use folder::Folder;
 pub use trouble::Trouble;
 
 use std::time::Duration;

@@ -1,6 +1,6 @@
 //! `records list`: judged lots in the order of the ledger.
 
-use super::{Done, open};
+use super::{Done, open, severities};
 use crate::commands::site::Site;
 use crate::commands::{Format, exit};
 use crate::diagnostic::printable;
@@ -30,6 +30,9 @@ pub struct Args {
     /// Of this lot
     #[arg(long, value_name = "LOT")]
     lot: Option<String>,
+    /// Instead: severities of inspection that a person set
+    #[arg(long, conflicts_with_all = ["verdict", "lot"])]
+    severities: bool,
     /// As a CSV table for other programs
     #[arg(long)]
     csv: bool,
@@ -82,6 +85,13 @@ struct Line {
 
 pub fn run(args: &Args, site: &Site, format: Format) -> Done {
     let entries = open(site)?.entries().map_err(|e| e.to_string())?;
+    let set = severities::lines(&entries, |part, supplier, time| {
+        wanted_of(args, part, supplier, time)
+    });
+    if args.severities {
+        let bytes = severities::bytes(&set, args.csv, format)?;
+        return Ok((exit::OK, bytes));
+    }
     let lines: Vec<Line> = lines(&entries)
         .into_iter()
         .filter(|line| wanted(args, line))
@@ -93,7 +103,14 @@ pub fn run(args: &Args, site: &Site, format: Format) -> Done {
             bytes.push(b'\n');
             bytes
         }
-        (false, Format::Text) => text(&lines).into_bytes(),
+        (false, Format::Text) => {
+            let mut out = text(&lines);
+            // A list of certain lots or verdicts is of nothing else.
+            if !set.is_empty() && args.verdict.is_none() && args.lot.is_none() {
+                out.push_str(&severities::text(&set));
+            }
+            out.into_bytes()
+        }
     };
     Ok((exit::OK, bytes))
 }
@@ -146,19 +163,25 @@ fn lines(entries: &[Entry]) -> Vec<Line> {
 }
 
 fn wanted(args: &Args, line: &Line) -> bool {
-    let is = |wanted: &Option<String>, found: Option<&str>| {
-        wanted.as_deref().is_none_or(|wanted| found == Some(wanted))
-    };
-    let time = DateTime::parse_from_rfc3339(&line.issued).ok();
+    is(&args.verdict, Some(&line.verdict))
+        && is(&args.lot, Some(&line.lot))
+        && wanted_of(args, &line.part, line.supplier.as_deref(), &line.issued)
+}
+
+fn is(wanted: &Option<String>, found: Option<&str>) -> bool {
+    wanted.as_deref().is_none_or(|wanted| found == Some(wanted))
+}
+
+/// Of the part, supplier and time that were asked for.
+fn wanted_of(args: &Args, part: &str, supplier: Option<&str>, time: &str) -> bool {
+    let time = DateTime::parse_from_rfc3339(time).ok();
     let in_time = |limit: &Option<Limit>, out: std::cmp::Ordering| match (limit, &time) {
         (None, _) => true,
         (Some(limit), Some(time)) => limit.compare(time) != out,
         (Some(_), None) => false,
     };
-    is(&args.part, Some(&line.part))
-        && is(&args.supplier, line.supplier.as_deref())
-        && is(&args.verdict, Some(&line.verdict))
-        && is(&args.lot, Some(&line.lot))
+    is(&args.part, Some(part))
+        && is(&args.supplier, supplier)
         && in_time(&args.from, std::cmp::Ordering::Less)
         && in_time(&args.to, std::cmp::Ordering::Greater)
 }
@@ -241,7 +264,7 @@ fn csv(lines: &[Line]) -> Result<Vec<u8>, csv::Error> {
 }
 
 /// A cell that a spreadsheet would take for a formula gets an apostrophe in front.
-fn cell(text: &str) -> String {
+pub(super) fn cell(text: &str) -> String {
     if text.starts_with(['=', '+', '-', '@', '\t', '\r']) {
         format!("'{text}")
     } else {

@@ -6,8 +6,9 @@ use crate::commands::site::Site;
 use crate::commands::store::Paths;
 use crate::commands::{Format, exit, keep};
 use crate::diagnostic::printable;
-use crate::ledger::{Act, Entry, Query};
-use crate::record;
+use crate::ledger::{Act, Entry, Ledger, LedgerError, Query};
+use crate::record::{self, LotRecord};
+use std::collections::BTreeSet;
 
 /// As text with what happened since, or the JSON record as it was archived.
 pub fn run(name: &str, site: &Site, format: Format) -> Done {
@@ -37,7 +38,10 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
     };
     let mut out = plain_text(&record, &sources);
     out.push_str("\nIn the ledger\n");
-    for entry in ledger.find(Query::Record(&name)).map_err(text)? {
+    let of_record = ledger.find(Query::Record(&name)).map_err(text)?;
+    let mut entries = decisions(&ledger, &record).map_err(text)?;
+    entries.extend(of_record);
+    for entry in entries {
         out.push_str(&format!("Entry {}: {}\n", entry.index, words(&entry)));
     }
     Ok((exit::OK, out.into_bytes()))
@@ -47,6 +51,22 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
 fn signatory(site: &Site, record: &str) -> Option<Signatory> {
     let pdf = std::fs::read(Paths::of(&site.certificates(), record).pdf).ok()?;
     Some(certificate::examine(&pdf)?.ok()?.by)
+}
+
+/// The decisions of persons on the severity of inspection that the record rests on.
+fn decisions(ledger: &Ledger, record: &LotRecord) -> Result<Vec<Entry>, LedgerError> {
+    let classes = record
+        .sampling
+        .switching
+        .iter()
+        .flat_map(|s| s.classes.values());
+    let indices: BTreeSet<u64> = classes
+        .filter_map(|state| Some(state.set.as_ref()?.entry))
+        .collect();
+    indices
+        .into_iter()
+        .map(|index| Ok(ledger.entry(index)?.entry))
+        .collect()
 }
 
 /// An entry in one line.
@@ -66,6 +86,23 @@ pub fn words(entry: &Entry) -> String {
             "disposition: {}, because: {reason}",
             list::decision(*decision)
         ),
+        Act::Severity {
+            part,
+            supplier,
+            class,
+            severity,
+            reason,
+        } => {
+            let supplier = supplier
+                .as_ref()
+                .map_or("no stated supplier".to_owned(), |s| s.clone());
+            let class = class
+                .as_ref()
+                .map_or("every class".to_owned(), |c| format!("class {c}"));
+            format!(
+                "severity of inspection of {part} from {supplier}, {class}, set to {severity}, because: {reason}"
+            )
+        }
         Act::Approval { file, .. } => format!("approval of {file}"),
         Act::Issue { certificate, .. } => format!("certificate issued, SHA-256 {certificate}"),
         Act::Reissue {

@@ -2,6 +2,7 @@
 //!
 //! A method that answers `None` has put a fault down, so that a file without faults is complete.
 
+mod kelvin;
 mod scalars;
 
 pub use scalars::{parse_date, parse_moment, shown};

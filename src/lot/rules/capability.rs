@@ -74,16 +74,54 @@ fn explained(rule: &CapabilityRule, bound: &Bound, s: &Statistics) -> Step {
             rule.index.to_uppercase(),
             rule.min
         ),
-        "ISO 22514-2:2017, 7; σ within by the mean moving range over 1.128 (ISO 7870-2)",
+        "ISO 22514-2:2017, 7; σ within by the mean moving range over 1.128 (ISO 7870-2); Anderson-Darling by D'Agostino and Stephens 1986, Table 4.9",
         format!(
-            "L {}, U {}, mean {}, {symbol} {}",
+            "n {}, L {}, U {}, mean {}, {symbol} {}{}{}{}",
+            s.n,
             number(bound.lower, bound),
             number(bound.upper, bound),
             number(s.mean, bound),
-            number(sigma, bound)
+            number(sigma, bound),
+            normality(s),
+            quantiles(s, bound, &rule.index),
+            lower_bound(s, &rule.index)
         ),
         result,
     )
+}
+
+fn normality(s: &Statistics) -> String {
+    s.normality.map_or(String::new(), |test| {
+        format!(
+            "; Anderson-Darling A² {:.3}, adjusted {:.3}, p {:.4}",
+            test.a2, test.a2_adjusted, test.p_value
+        )
+    })
+}
+
+/// What a percentile index is of.
+fn quantiles(s: &Statistics, bound: &Bound, index: &str) -> String {
+    match (s.percentile, index) {
+        (Some(fit), "pp" | "ppk") => {
+            let [low, middle, high] = fit.quantiles.map(|x| number(Some(x), bound));
+            format!(
+                "; Box-Cox λ {:.3} (p {:.3}), quantiles 0.135 % {low}, 50 % {middle}, 99.865 % {high}",
+                fit.exponent, fit.p_value
+            )
+        }
+        _ => String::new(),
+    }
+}
+
+fn lower_bound(s: &Statistics, index: &str) -> String {
+    let bound = match index {
+        "cpk" => s.cpk_lower_95,
+        "ppk" => s.ppk_lower_95,
+        _ => None,
+    };
+    bound.map_or(String::new(), |bound| {
+        format!("; lower 95 % confidence bound {bound:.3}")
+    })
 }
 
 /// Where the index is not the one of the formula as it stands.

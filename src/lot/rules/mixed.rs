@@ -50,7 +50,10 @@ pub struct MixedSection {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[allow(missing_docs)]
 pub struct GroupSection {
-    /// Of the fitted population.
+    /// Of the fitted population in the mixture, a ratio.
+    #[serde(default)]
+    pub share: f64,
+    #[allow(missing_docs)]
     pub mean: f64,
     pub standard_deviation: f64,
     /// Parts that belong here more probably than to the other, in measuring order.
@@ -163,6 +166,7 @@ fn grouped(mixture: &Mixture, names: &[&str]) -> Vec<GroupSection> {
     let [low, high] = mixture.components;
     [(low, of(false)), (high, of(true))]
         .map(|(component, parts)| GroupSection {
+            share: component.weight,
             mean: component.mean,
             standard_deviation: component.standard_deviation,
             parts,
@@ -189,8 +193,12 @@ fn numbers(section: &MixedSection) -> String {
     let of = |value: Option<f64>, places: usize| {
         value.map_or("–".to_owned(), |v| format!("{v:.places$}"))
     };
+    let shares = match section.groups.as_slice() {
+        [low, high] => format!(", shares of the two {:.3} and {:.3}", low.share, high.share),
+        _ => String::new(),
+    };
     format!(
-        "{} values, significance {}, dip {} with p {} (from {DIP_SAMPLES} uniform samples, seed {SEED}), BIC of one {}, of two {}, separation {}",
+        "{} values, significance {}, dip {} with p {} (from {DIP_SAMPLES} uniform samples, seed {SEED}), BIC of one {}, of two {}, separation {}{shares}",
         section.n,
         section.alpha,
         of(section.dip, 4),

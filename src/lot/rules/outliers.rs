@@ -4,8 +4,8 @@ use super::{Judged, Ruled, joint};
 use crate::diagnostic::Note;
 use crate::limits::{OutlierMethod, OutlierRule};
 use crate::lot::conditions::some_parts;
-use crate::lot::explain::{Step, step};
-use crate::lot::outliers::{ALPHA, find};
+use crate::lot::explain::{Step, number, step};
+use crate::lot::outliers::{ALPHA, find, numbers};
 use crate::lot::statistics::values;
 
 pub(super) fn evaluate(judged: &Judged, ruled: &mut Ruled) {
@@ -53,7 +53,18 @@ fn of_key(judged: &Judged, rule: &OutlierRule, key: &str, ruled: &mut Ruled) {
             format!("cannot be tested ({}): holds the lot", why.text())
         }
     };
-    ruled.steps.push(explained(rule, key, values.len(), result));
+    let bound = judged.limits.bounds.iter().find(|bound| bound.key == key);
+    let show = |x: f64| bound.map_or(String::new(), |bound| number(Some(x), bound));
+    let alpha = rule.alpha.unwrap_or(ALPHA);
+    let found = numbers(rule.method, &values, &names, alpha, &show);
+    let step = explained(
+        rule,
+        key,
+        &format!("{} values", values.len()),
+        &found,
+        result,
+    );
+    ruled.steps.push(step);
 }
 
 /// `significance 0.01`, or the fixed limit of the method.
@@ -64,7 +75,7 @@ fn test(rule: &OutlierRule) -> String {
     }
 }
 
-fn explained(rule: &OutlierRule, key: &str, n: usize, result: String) -> Step {
+fn explained(rule: &OutlierRule, key: &str, n: &str, found: &str, result: String) -> Step {
     let (how, source) = match rule.method {
         OutlierMethod::GeneralizedEsd => (
             "by the generalized extreme studentized deviate test",
@@ -91,7 +102,7 @@ fn explained(rule: &OutlierRule, key: &str, n: usize, result: String) -> Step {
         key,
         &format!("at most {} outliers {how}", rule.allowed),
         source,
-        format!("{n} values{level}"),
+        format!("{n}{level}{found}"),
         result,
     )
 }

@@ -9,6 +9,7 @@ use crate::statistics::lot_to_lot::{
     EWMA_LAMBDA, EWMA_WIDTH, EwmaPoint, LOTS_MIN, LotSpread, RunRule, control_limits, ewma,
     mean_shift, run_signals, spread_change,
 };
+use crate::statistics::summary::Summary;
 use serde::{Deserialize, Serialize};
 
 /// Significance of shift and change of spread, two-sided. Common practice, no source.
@@ -35,7 +36,16 @@ pub struct TrendSection {
     pub mean: Option<f64>,
     /// Mean of the lot means before.
     pub previous_mean: Option<f64>,
+    /// Standard deviation of the lot means before.
+    #[serde(default)]
+    pub previous_standard_deviation: Option<f64>,
+    /// t of the shift.
+    #[serde(default)]
+    pub shift_statistic: Option<f64>,
     pub shift_p_value: Option<f64>,
+    /// F of the spread.
+    #[serde(default)]
+    pub spread_statistic: Option<f64>,
     pub spread_p_value: Option<f64>,
     /// Value and limits, from eight lots before on.
     pub ewma: Option<[f64; 3]>,
@@ -64,7 +74,10 @@ fn of_bound(judged: &Judged, rule: &TrendRule, bound: &Bound, ruled: &mut Ruled)
         history: before.iter().map(|(lot, _)| lot.record.clone()).collect(),
         mean: judged.statistics.get(&bound.key).and_then(|s| s.mean),
         previous_mean: None,
+        previous_standard_deviation: None,
+        shift_statistic: None,
         shift_p_value: None,
+        spread_statistic: None,
         spread_p_value: None,
         ewma: None,
         signals: Vec::new(),
@@ -130,7 +143,11 @@ fn compare(judged: &Judged, section: &mut TrendSection, past: &[PastCharacterist
     let Some(mean) = section.mean else { return };
     let means: Vec<f64> = past.iter().map(|of| of.mean).collect();
     section.previous_mean = Some(means.iter().sum::<f64>() / means.len() as f64);
+    section.previous_standard_deviation = Summary::of(&means)
+        .ok()
+        .and_then(|summary| summary.standard_deviation.ok());
     if let Ok(shift) = mean_shift(mean, &means) {
+        section.shift_statistic = Some(shift.statistic);
         section.shift_p_value = Some(shift.p_value);
         if shift.p_value < ALPHA {
             section.signals.push(format!(
@@ -161,6 +178,7 @@ fn spread(judged: &Judged, section: &mut TrendSection, past: &[PastCharacteristi
         .filter_map(|p| of(p.n, p.standard_deviation))
         .collect();
     if let Ok(change) = spread_change(now, &before) {
+        section.spread_statistic = Some(change.statistic);
         section.spread_p_value = Some(change.p_value);
         if change.p_value < ALPHA {
             let how = if change.statistic > 1.0 {
@@ -228,12 +246,17 @@ fn numbers(section: &TrendSection, bound: &Bound) -> String {
             number(Some(upper), bound)
         )
     });
+    let statistic =
+        |value: Option<f64>| value.map_or("–".to_owned(), |value| format!("{value:.3}"));
     format!(
-        "{} accepted lots before with mean {}, this lot {}; p of the shift {}, of the spread {}{chart}",
+        "{} accepted lots before with mean {} and standard deviation of the lot means {}, this lot {}; shift t {}, p {}; spread F {}, p {}{chart}",
         section.history.len(),
         number(section.previous_mean, bound),
+        number(section.previous_standard_deviation, bound),
         number(section.mean, bound),
+        statistic(section.shift_statistic),
         p(section.shift_p_value),
+        statistic(section.spread_statistic),
         p(section.spread_p_value)
     )
 }

@@ -7,6 +7,7 @@
 mod tables;
 
 use super::Undefined;
+use serde::{Deserialize, Serialize};
 use std::fmt;
 use std::str::FromStr;
 use tables::{CODE_LETTERS, LETTERS, NORMAL, REDUCED, SIZE_S, SIZES, SIZES_REDUCED, TIGHTENED, V};
@@ -39,7 +40,8 @@ pub enum InspectionLevel {
 }
 
 /// Severity of inspection, ISO 2859-1:1999 clause 9.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
 #[allow(missing_docs)]
 pub enum Severity {
     Normal,

@@ -7,6 +7,12 @@
 //! and are not tabled here. Letter H takes 25 items (the standards of the 1980s give it 20 or 25 by
 //! lot size), Q and R the largest sample, 200.
 //!
+//! Tightened inspection takes the normal plan of the next smaller AQL, reduced inspection that of the
+//! smaller sample and the next larger AQL. This is how the published tables of reduced inspection
+//! (MIL-STD-414 B-2 and B-4, ANSI/ASQ Z1.9 B-4) are made; they are not copied here: the plans follow from
+//! the normal tables. A public transcription of Z1.9 Table B-4 agrees in the sample sizes, and in M within
+//! the recalculation that Z1.9 made of its normal table.
+//!
 //! Normality must have been tested first
 //! ([`anderson_darling`](super::normality::anderson_darling)): the shares that these plans control
 //! lie in the tails of the assumed distribution.
@@ -21,7 +27,7 @@ use super::sampling::{
     CodeLetter, InspectionLevel, Severity, aql_index, code_letter, neighbouring_aqls,
 };
 use super::summary::Summary;
-use tables::{COLUMNS, FIRST_COLUMN, ROWS, Row};
+use tables::{COLUMNS, FIRST_COLUMN, REDUCED, REDUCED_ONLY, ROWS, Row};
 
 /// A single sampling plan by variables, standard deviation unknown.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -68,6 +74,14 @@ impl Outcome {
     /// Estimated share nonconforming of the lot, a ratio.
     pub fn p(&self) -> f64 {
         self.p_lower + self.p_upper
+    }
+
+    /// Whether another plan's constants accept the same sample.
+    pub fn accepted_by(&self, plan: &Plan) -> bool {
+        match (self.form, self.q_lower.or(self.q_upper)) {
+            (Form::K, Some(q)) => q >= plan.k,
+            _ => self.p() <= plan.m,
+        }
     }
 }
 
@@ -146,12 +160,12 @@ pub fn estimated_share(q: f64, n: u64) -> f64 {
 
 /// The plan for a lot, an inspection level and an AQL in percent from 0.040 to 10.
 ///
-/// Tightened inspection takes the column of the next smaller AQL (MIL-STD-414). For reduced
-/// inspection there is no table here.
+/// Tightened inspection takes the column of the next smaller AQL, reduced inspection the smaller
+/// sample of the code letter and the column of the next larger AQL.
 ///
 /// # Errors
-/// [`Undefined::LotTooSmall`]; [`Undefined::AqlNotInSeries`]; [`Undefined::NoPlan`] for reduced
-/// inspection, an AQL below the table's, or where no sample is large enough;
+/// [`Undefined::LotTooSmall`]; [`Undefined::AqlNotInSeries`]; [`Undefined::NoPlan`] for an AQL below the
+/// table's, or where no sample is large enough;
 /// [`Undefined::WholeLot`] where the sample would be the whole lot.
 pub fn plan_for(
     lot: u64,
@@ -159,14 +173,7 @@ pub fn plan_for(
     aql: f64,
     severity: Severity,
 ) -> Result<Plan, Undefined> {
-    let smallest = smallest_sample(code_letter(lot, level)?);
-    aql_index(aql).ok_or(Undefined::AqlNotInSeries { found: aql })?;
-    let aql = match severity {
-        Severity::Normal => aql,
-        Severity::Tightened => neighbouring_aqls(aql).0.ok_or(Undefined::NoPlan)?,
-        Severity::Reduced => return Err(Undefined::NoPlan),
-    };
-    let plan = plan_of_size(smallest, aql)?;
+    let plan = plan_of_letter(code_letter(lot, level)?, aql, severity)?;
     if plan.n >= lot {
         return Err(Undefined::WholeLot {
             sample: plan.n,
@@ -176,17 +183,50 @@ pub fn plan_for(
     Ok(plan)
 }
 
+/// The plan for a code letter of ISO 2859-1, an AQL in percent and a severity, arrows followed.
+///
+/// # Errors
+/// [`Undefined::AqlNotInSeries`], [`Undefined::NoPlan`].
+pub fn plan_of_letter(letter: CodeLetter, aql: f64, severity: Severity) -> Result<Plan, Undefined> {
+    let column = column(aql)?;
+    match severity {
+        Severity::Normal => plan_of_size(smallest_sample(letter), aql),
+        Severity::Tightened => {
+            let tighter = column.checked_sub(1).ok_or(Undefined::NoPlan)?;
+            find(tighter, smallest_sample(letter), |n| {
+                !REDUCED_ONLY.contains(&n)
+            })
+        }
+        Severity::Reduced => find(column + 1, reduced_sample(letter), |n| REDUCED.contains(&n)),
+    }
+}
+
+/// The plan by which the same sample is judged with the AQL one step tighter, which the switching
+/// rules ask for; `None` below the table.
+pub fn one_step_tighter(letter: CodeLetter, aql: f64, severity: Severity) -> Option<Plan> {
+    let tighter = neighbouring_aqls(aql).0?;
+    plan_of_letter(letter, tighter, severity).ok()
+}
+
 /// The normal-inspection plan of the smallest sample from a size on that has one for the AQL
 /// (arrows down followed).
 ///
 /// # Errors
 /// [`Undefined::AqlNotInSeries`], [`Undefined::NoPlan`].
 pub fn plan_of_size(smallest: u64, aql: f64) -> Result<Plan, Undefined> {
-    let column = aql_index(aql)
+    find(column(aql)?, smallest, |n| !REDUCED_ONLY.contains(&n))
+}
+
+/// Of an AQL from 0.040 to 10.
+fn column(aql: f64) -> Result<usize, Undefined> {
+    aql_index(aql)
         .ok_or(Undefined::AqlNotInSeries { found: aql })?
         .checked_sub(FIRST_COLUMN)
-        .filter(|column| *column < COLUMNS)
-        .ok_or(Undefined::NoPlan)?;
+        .filter(|column| *column < COLUMNS - 1)
+        .ok_or(Undefined::NoPlan)
+}
+
+fn find(column: usize, smallest: u64, used: impl Fn(u64) -> bool) -> Result<Plan, Undefined> {
     let plan = |row: &Row| {
         let (k, m) = (*row.k.get(column)?, *row.m.get(column)?);
         (!k.is_nan()).then_some(Plan {
@@ -196,7 +236,7 @@ pub fn plan_of_size(smallest: u64, aql: f64) -> Result<Plan, Undefined> {
         })
     };
     ROWS.iter()
-        .filter(|row| row.n >= smallest)
+        .filter(|row| row.n >= smallest && used(row.n))
         .find_map(plan)
         .ok_or(Undefined::NoPlan)
 }
@@ -217,6 +257,22 @@ fn smallest_sample(letter: CodeLetter) -> u64 {
         CodeLetter::M => 100,
         CodeLetter::N => 150,
         CodeLetter::P | CodeLetter::Q | CodeLetter::R | CodeLetter::S => 200,
+    }
+}
+
+/// Sample size of reduced inspection of a code letter before arrows.
+fn reduced_sample(letter: CodeLetter) -> u64 {
+    match letter {
+        CodeLetter::A | CodeLetter::B | CodeLetter::C | CodeLetter::D | CodeLetter::E => 3,
+        CodeLetter::F => 4,
+        CodeLetter::G => 5,
+        CodeLetter::H => 10,
+        CodeLetter::J => 15,
+        CodeLetter::K => 20,
+        CodeLetter::L => 25,
+        CodeLetter::M => 30,
+        CodeLetter::N => 50,
+        CodeLetter::P | CodeLetter::Q | CodeLetter::R | CodeLetter::S => 75,
     }
 }
 

@@ -53,6 +53,9 @@ fn conditions(limits: &Limits) -> Value {
         "ageing": conditions.ageing.map(|a| json!({
             "per_decade": a.per_decade, "refer_to": a.refer_to,
         })),
+        "temperature_coefficient": conditions.temperature_coefficients.iter()
+            .map(|(of, share)| (of.name().to_owned(), json!(share)))
+            .collect::<serde_json::Map<_, _>>(),
     })
 }
 

@@ -167,6 +167,13 @@ fn conditions(conditions: &Conditions) -> String {
             shortest(ageing.per_decade, "1")
         ));
     }
+    for (characteristic, share) in &conditions.temperature_coefficients {
+        parts.push(format!(
+            "{} changes by {} a kelvin",
+            characteristic.title(),
+            shortest(*share, "1")
+        ));
+    }
     parts.join("; ")
 }
 
