@@ -187,7 +187,9 @@ fn sampling(out: &mut Text, record: &LotRecord) {
         out.line(&words.join(", "));
         if class.share_nonconforming_upper_95.is_some() {
             out.line(&format!(
-                "  Share nonconforming in the lot, at most (confidence 95 %): {} %",
+                "  Share nonconforming in the sample {} %, in the lot at least {} %, at most {} % (confidence 95 % each)",
+                plan::share(class.share_nonconforming),
+                plan::share(class.share_nonconforming_lower_95),
                 plan::share(class.share_nonconforming_upper_95)
             ));
         }
@@ -215,6 +217,9 @@ fn sampling(out: &mut Text, record: &LotRecord) {
                 "Severity of inspection, class {name}: {}{more}; score {}, lots that count {}; {}",
                 state.severity, state.score, state.lots, state.why
             ));
+        }
+        for words in plan::decisions(switching) {
+            out.line(&words);
         }
         out.line(&plan::before(switching));
     }

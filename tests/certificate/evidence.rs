@@ -76,7 +76,9 @@ fn shares_severity_populations_ellipse_and_lots_are_printed_as_in_the_record() {
         let table = pages.split_once("Share nonconforming").expect("heading").1;
         let words = behind(table, &format!("{class} "));
         assert_eq!(words[..3], [of.n.to_string(), "0".into(), "0".into()]);
-        same(words[3], share, class);
+        same(words[3], 1.667, class);
+        same(words[4], 0.0912, class);
+        same(words[5], share, class);
         let state = &record.sampling.switching.as_ref().expect("state").classes[class];
         for text in [&pages, &twin] {
             assert!(flat(text).contains(&state.severity), "{class}");

@@ -533,6 +533,8 @@ pub fn found() -> Case {
         lots: (1..=10).map(charted).collect(),
     }];
     for class in record.sampling.classes.values_mut() {
+        class.share_nonconforming = Some(0.01667);
+        class.share_nonconforming_lower_95 = Some(0.000912);
         class.share_nonconforming_upper_95 = Some(0.04873);
     }
     record.sampling.switching = serde_json::from_value(serde_json::json!({

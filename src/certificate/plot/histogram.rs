@@ -72,17 +72,28 @@ impl Bins {
     }
 }
 
+/// Mean, standard deviation and greatest height of the normal curve, in the printed unit, where it is
+/// to be drawn.
+fn curve(bins: &Bins, c: &Characteristic) -> Option<(f64, f64, f64)> {
+    let spread = c.statistics.and_then(|s| s.mean.zip(s.standard_deviation));
+    let (mean, s) = spread.filter(|(_, s)| *s > 0.0 && c.normal())?;
+    let (mean, s) = (c.scale.scaled(mean), c.scale.scaled(s));
+    let height = c.values.len() as f64 * bins.width / (s * std::f64::consts::TAU.sqrt());
+    height.is_finite().then_some((mean, s, height))
+}
+
+fn peak(bins: &Bins, c: &Characteristic) -> f64 {
+    curve(bins, c).map_or(0.0, |(_, _, height)| height)
+}
+
 /// The normal distribution of the record's mean and standard deviation, as so many parts would
 /// follow it; only where the test for normality does not speak against it.
 fn normal(canvas: &mut Canvas, (x, y): (&Axis, &Axis), bins: &Bins, c: &Characteristic) {
-    let spread = c.statistics.and_then(|s| s.mean.zip(s.standard_deviation));
-    let Some((mean, s)) = spread.filter(|(_, s)| *s > 0.0 && c.normal()) else {
+    let Some((mean, s, height)) = curve(bins, c) else {
         return;
     };
-    let (mean, s) = (c.scale.scaled(mean), c.scale.scaled(s));
-    let height = c.values.len() as f64 * bins.width / (s * std::f64::consts::TAU.sqrt());
     const STEPS: u32 = 80;
-    let curve = (0..=STEPS)
+    let points = (0..=STEPS)
         .map(|k| {
             let value = mean + s * (f64::from(k) / f64::from(STEPS) - 0.5) * 8.0;
             let z = (value - mean) / s;
@@ -95,7 +106,7 @@ fn normal(canvas: &mut Canvas, (x, y): (&Axis, &Axis), bins: &Bins, c: &Characte
         top: y.to,
         bottom: y.from,
     };
-    canvas.lines(clip(&curve, plot), Pen::solid(0.9, ACCEPT));
+    canvas.lines(clip(&points, plot), Pen::solid(0.9, ACCEPT));
 }
 
 /// Draws the histogram into the area (axes included).
@@ -127,7 +138,7 @@ pub(in crate::certificate) fn histogram(canvas: &mut Canvas, area: Area, c: &Cha
     let y = Axis {
         kind: Kind::Linear,
         low: 0.0,
-        high: f64::from(most) * 1.12,
+        high: f64::from(most).max(peak(&bins, c)) * 1.12,
         from: plot.bottom,
         to: plot.top,
     };

@@ -3,7 +3,7 @@
 use super::distributions::figure;
 use super::{lot_ink, lot_mark, lot_word};
 use crate::certificate::canvas::{Anchor, Area, Canvas, Pen};
-use crate::certificate::figures::{ABSENT, plain, significant};
+use crate::certificate::figures::{ABSENT, instant, plain, significant};
 use crate::certificate::flow::{Flow, SMALL};
 use crate::certificate::ink::{ACCEPT, QUIET, TEXT};
 use crate::certificate::plot::axis::{Axis, Kind, TICK, linear_below, linear_left};
@@ -137,7 +137,9 @@ fn shares(flow: &mut Flow, record: &LotRecord) {
         Column::new("n", Align::Right, Span::Natural),
         Column::new("Nonconforming", Align::Right, Span::Natural),
         Column::new("Undecided", Align::Right, Span::Natural),
-        Column::new("Share in the lot, at most", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("Share in the sample", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("In the lot at least", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("In the lot at most", Align::Decimal, Span::Natural).unit("%"),
     ]);
     for (name, class) in classes {
         table.row(vec![
@@ -145,6 +147,8 @@ fn shares(flow: &mut Flow, record: &LotRecord) {
             Cell::text(class.n.to_string()),
             Cell::text(class.nonconforming.to_string()),
             Cell::text(class.undecided.to_string()),
+            Cell::text(share(class.share_nonconforming)),
+            Cell::text(share(class.share_nonconforming_lower_95)),
             Cell::text(share(class.share_nonconforming_upper_95)),
         ]);
     }
@@ -153,7 +157,7 @@ fn shares(flow: &mut Flow, record: &LotRecord) {
     flow.small(SHARE);
 }
 
-const SHARE: &str = "Upper bound with a confidence of 95 %, exact for a lot of this size; undecided parts count as nonconforming.";
+const SHARE: &str = "Bounds one-sided with a confidence of 95 % each, exact for a lot of this size. Undecided parts count as nonconforming in the share and in the upper bound.";
 
 /// A share in percent.
 pub(in crate::certificate) fn share(value: Option<f64>) -> String {
@@ -189,7 +193,41 @@ fn switching(flow: &mut Flow, record: &LotRecord) {
     }
     table.set(flow);
     flow.y += 3.0;
+    for words in decisions(switching) {
+        flow.small(&words);
+    }
     flow.small(&before(switching));
+}
+
+/// Changes of the severity in view and decisions of persons, for the document and its text twin.
+pub(in crate::certificate) fn decisions(switching: &Switching) -> Vec<String> {
+    let mut out = Vec::new();
+    for (class, state) in &switching.classes {
+        for change in &state.changes {
+            let after = change
+                .after
+                .as_ref()
+                .map_or(String::new(), |lot| format!(" after lot {lot}"));
+            out.push(format!(
+                "Class {class}: from {} to {}{after}: {}.",
+                change.from, change.to, change.rule
+            ));
+        }
+        if let Some(set) = &state.set {
+            let by = set
+                .by
+                .as_ref()
+                .map_or(String::new(), |by| format!(" by {by}"));
+            out.push(format!(
+                "Class {class}: set to {}{by} on {}, entry {} of the ledger, because: {}.",
+                set.severity,
+                instant(&set.time),
+                set.entry,
+                set.reason
+            ));
+        }
+    }
+    out
 }
 
 /// The records that the switching rules looked at, for the document and its text twin.

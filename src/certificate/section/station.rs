@@ -7,12 +7,14 @@ use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::record::LotRecord;
 
 pub(in crate::certificate) fn station(flow: &mut Flow, record: &LotRecord) {
-    flow.heading("Station and calibration", 100.0);
+    let facts = facts(record);
+    // On one page, where that is possible.
+    flow.heading("Station and calibration", 17.0 * facts.len() as f64);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
     ]);
-    for (label, value) in facts(record) {
+    for (label, value) in facts {
         table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
     }
     table.set(flow);
