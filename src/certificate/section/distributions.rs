@@ -9,12 +9,19 @@ use crate::certificate::plot::probability::probability;
 use crate::certificate::structure::Role;
 
 const SPACE: f64 = 22.0;
+/// Fewer values have no distribution to draw.
+pub(super) const FEWEST: usize = 3;
 /// Room for a caption.
 const BELOW: f64 = 16.0;
 
 pub(in crate::certificate) fn distributions(flow: &mut Flow, characteristics: &[Characteristic]) {
     // Heading, what the drawings are, and four of them share a page of either paper.
     let height = (flow.sheet.bottom - flow.sheet.top - 84.0) / 4.0 - 62.0;
+    if characteristics.iter().all(|c| c.values.len() < FEWEST) {
+        flow.heading("Distributions", 40.0);
+        flow.small("Fewer than three parts have a value: there is no distribution to draw. The readings stand in the parts table.");
+        return;
+    }
     flow.heading("Distributions", height + 80.0);
     flow.small(
         "Left: number of parts; the curve is a normal distribution of the same mean and standard deviation, drawn only where the values \
@@ -24,8 +31,8 @@ pub(in crate::certificate) fn distributions(flow: &mut Flow, characteristics: &[
     );
     for c in characteristics {
         flow.subheading(&c.title(), height + BELOW);
-        if c.values.is_empty() {
-            flow.small("no values");
+        if c.values.len() < FEWEST {
+            flow.small("Fewer than three values.");
             continue;
         }
         let area = flow.take(height);

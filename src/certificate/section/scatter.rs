@@ -2,7 +2,7 @@
 //! another construction, though perhaps inside every limit.
 
 use super::Characteristic;
-use super::distributions::figure;
+use super::distributions::{FEWEST, figure};
 use crate::certificate::canvas::Point;
 use crate::certificate::figures::{plain, significant};
 use crate::certificate::flow::{Flow, SMALL, SMALL_LEADING};
@@ -93,7 +93,7 @@ pub(in crate::certificate) fn scatter(flow: &mut Flow, record: &LotRecord, all: 
             })
         })
         .collect();
-    if pairs.is_empty() {
+    if pairs.len() < FEWEST {
         return;
     }
     let core = found.and_then(|s| Core::of(s, x, y));
