@@ -19,14 +19,12 @@ fn flat(text: &str) -> String {
     text.split_whitespace().collect::<Vec<_>>().join(" ")
 }
 
-/// The word that follows some words.
+/// The first word behind some words that begins as a number.
 fn next<'t>(text: &'t str, words: &str) -> &'t str {
-    text.split_once(words)
-        .unwrap_or_else(|| panic!("{words} is nowhere"))
-        .1
-        .split_whitespace()
-        .next()
-        .unwrap_or_default()
+    text.match_indices(words)
+        .filter_map(|(at, _)| text[at + words.len()..].split_whitespace().next())
+        .find(|word| word.starts_with(|c: char| c.is_ascii_digit() || c == '−'))
+        .unwrap_or_else(|| panic!("no number follows {words}"))
         .trim_end_matches([';', ',', ':'])
 }
 
@@ -34,7 +32,10 @@ fn next<'t>(text: &'t str, words: &str) -> &'t str {
 fn what_the_statistics_have_beside_moments_and_indices_is_printed_as_in_the_record() {
     let case = lots::found();
     let text = text_of(&case);
-    let table = text.split_once("Normality p").expect("a table").1;
+    let section = text
+        .split_once("\nStatistics\n")
+        .or_else(|| text.split_once("Statistics\n"));
+    let section = section.expect("a heading").1;
     for (key, s) in &case.record.statistics {
         let bound = case
             .record
@@ -43,7 +44,14 @@ fn what_the_statistics_have_beside_moments_and_indices_is_printed_as_in_the_reco
             .iter()
             .find(|b| b.key == *key);
         let bound = bound.expect("a bound");
-        let words = behind(table, &format!("{}, ", bound.name));
+        // Moments stand in the first table that names the unit, these in the second.
+        let begin = format!("{}, ", bound.name);
+        let line = section
+            .lines()
+            .filter_map(|l| l.trim().strip_prefix(&begin))
+            .nth(1)
+            .unwrap_or_else(|| panic!("no second line of {key}"));
+        let words: Vec<&str> = line.split_whitespace().collect();
         let u = unit(key);
         let [low, high] = s.tolerance_95_95.expect("an interval");
         // The unit comes first.
