@@ -1,7 +1,7 @@
 //! Keeping a record: its entry in the ledger first, then its files beside it.
 
 use super::evidence::{self, Evidence, first_occasion};
-use super::store::{Paths, write_whole};
+use super::store::{Paths, remove_leftovers, write_whole};
 use crate::certificate::{self, Curve, InLedger, Paper, Signer};
 use crate::ledger::disk::System;
 use crate::ledger::{
@@ -9,12 +9,13 @@ use crate::ledger::{
     Signer as Sealer, hex, ledger_key, sha256, sha256_hex, witness,
 };
 use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
-use chrono::{DateTime, FixedOffset, Timelike};
+use chrono::{DateTime, FixedOffset, Local, Timelike};
 use std::collections::BTreeSet;
 use std::fs;
 use std::io::ErrorKind;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use std::time::SystemTime;
 
 /// Name and version, as entries have it.
 pub const PROGRAM: &str = concat!("reelgate ", env!("CARGO_PKG_VERSION"));
@@ -42,7 +43,9 @@ pub struct Place {
 
 /// The time that was given, else the clock's; to the second.
 pub fn now(given: Option<DateTime<FixedOffset>>) -> DateTime<FixedOffset> {
-    let now = given.unwrap_or_else(|| chrono::Local::now().fixed_offset());
+    // `Local::now` does not survive a clock that stands before 1970.
+    let clock = || DateTime::<Local>::from(SystemTime::now()).fixed_offset();
+    let now = given.unwrap_or_else(clock);
     now.with_nanosecond(0).unwrap_or(now)
 }
 
@@ -260,6 +263,8 @@ fn answer(place: &Place, ledger: &Ledger, entry: &Entry, paper: Paper) -> Result
     let written = if has_json && has_pdf {
         Ok(())
     } else {
+        remove_leftovers(&paths.pdf);
+        remove_leftovers(&paths.json);
         restore(place, entry.index, has_pdf, paper).and_then(|document| {
             let document = document.map(|d| {
                 warnings = d.warnings;
@@ -304,8 +309,8 @@ fn restore(
     if has_pdf {
         return Ok(None);
     }
-    let mut ledger = place.open().map_err(|e| e.to_string())?;
-    let recorded = ledger.entry(index).map_err(|e| e.to_string())?;
+    let mut ledger = place.open().map_err(unissued)?;
+    let recorded = ledger.entry(index).map_err(unissued)?;
     let (sources, made) = drawn_again(&ledger, &recorded.entry)?;
     let papers = [paper, Paper::A4, Paper::Letter];
     issue(place, &mut ledger, &recorded, &sources, &made, &papers).map(Some)
@@ -337,7 +342,7 @@ fn issue(
         proof: &proof,
         copy: None,
     };
-    let known = certificates_of(ledger, &made.record.record).map_err(|e| e.to_string())?;
+    let known = certificates_of(ledger, &made.record.record).map_err(unissued)?;
     let signer = place.signer.as_ref();
     let forms: Vec<(Paper, Option<&Signer>)> = match (papers.first(), known.is_empty()) {
         (Some(paper), true) => vec![(*paper, signer)],
@@ -362,7 +367,7 @@ fn issue(
     let by = place.by(made.record.lot.operator.as_deref());
     ledger
         .issued(&made.record.record, &unsigned, &by)
-        .map_err(|e| e.to_string())?;
+        .map_err(unissued)?;
     Ok(document)
 }
 
@@ -389,6 +394,11 @@ impl Document {
         let pdf = certificate::sign(self.pdf, signer, time).map_err(|e| e.to_string())?;
         Ok(Document { pdf, ..self })
     }
+}
+
+/// The record stands; what is missing is the entry of its certificate.
+fn unissued(error: LedgerError) -> String {
+    format!("its PDF was not entered in the ledger: {error}")
 }
 
 /// Makes the certificate of a record again, marked as a copy and with the ledger's newest

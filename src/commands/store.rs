@@ -4,6 +4,9 @@ use std::fs::{self, File};
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
 
+/// How the name of a file ends that is not whole yet.
+const TEMPORARY: &str = ".part";
+
 /// Where a record's two files lie.
 #[derive(Debug, Clone)]
 #[allow(missing_docs)]
@@ -30,9 +33,11 @@ pub fn write_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
     let folder = path.parent().unwrap_or(Path::new("."));
     fs::create_dir_all(folder)?;
     let mut name = path.file_name().unwrap_or_default().to_owned();
-    name.push(format!(".{}.part", std::process::id()));
+    name.push(format!(".{}{TEMPORARY}", std::process::id()));
     let temporary = folder.join(name);
     let written = File::create(&temporary).and_then(|mut file| {
+        // For `remove_leftovers`; a share that gives no locks is no reason not to write.
+        let _ = file.try_lock();
         file.write_all(bytes)?;
         file.sync_all()
     });
@@ -42,6 +47,33 @@ pub fn write_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
         return done;
     }
     sync_folder(folder)
+}
+
+/// Removes what runs that were killed have left beside a file. A file that a process is still
+/// writing is locked, and stays.
+pub fn remove_leftovers(path: &Path) {
+    let (Some(folder), Some(name)) = (path.parent(), path.file_name().and_then(|n| n.to_str()))
+    else {
+        return;
+    };
+    let leftover = |found: &str| {
+        let process = found
+            .strip_prefix(name)
+            .and_then(|rest| rest.strip_prefix('.'))
+            .and_then(|rest| rest.strip_suffix(TEMPORARY));
+        process.is_some_and(|p| !p.is_empty() && p.bytes().all(|b| b.is_ascii_digit()))
+    };
+    for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
+        if entry.file_name().to_str().is_some_and(leftover) {
+            let free = File::options()
+                .write(true)
+                .open(entry.path())
+                .is_ok_and(|file| file.try_lock().is_ok());
+            if free {
+                let _ = fs::remove_file(entry.path());
+            }
+        }
+    }
 }
 
 /// A rename is on the disk once its folder is. Windows has no such call for folders; there the

@@ -5,8 +5,8 @@ use super::{Fault, Faults, Quote};
 use std::ops::Range;
 
 /// Largest file that is read as a limit, station or lot file, in bytes. The longest sensible one
-/// has a few kilobytes.
-pub const MAX_BYTES: usize = 256 * 1024;
+/// has a few kilobytes; the time that two YAML readers take grows faster than the file.
+pub const MAX_BYTES: usize = 64 * 1024;
 
 /// A place within one line.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]

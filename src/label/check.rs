@@ -4,6 +4,7 @@ use super::date_code::{self, Dates};
 use super::fields::Fields;
 use super::{Label, identifier};
 use crate::diagnostic::Note;
+use std::collections::BTreeSet;
 
 /// Looks every field over and makes the label.
 pub(super) fn finish(mut fields: Fields, notes: Vec<Note>) -> Label {
@@ -35,17 +36,12 @@ fn note_unknown(list: &[(String, String)], notes: &mut Vec<Note>) {
 }
 
 fn note_repeats(list: &[(String, String)], notes: &mut Vec<Note>) {
-    let repeated = list
-        .iter()
-        .enumerate()
-        .filter(|(k, (id, _))| list.iter().take(*k).any(|(before, _)| before == id))
-        .map(|(_, (id, _))| id.as_str());
-    let mut names: Vec<&str> = Vec::new();
-    for id in repeated {
-        if !names.contains(&id) {
-            names.push(id);
-        }
-    }
+    let mut seen = BTreeSet::new();
+    let mut said = BTreeSet::new();
+    let repeated = list.iter().map(|(id, _)| id.as_str());
+    let names: Vec<&str> = repeated
+        .filter(|id| !seen.insert(*id) && said.insert(*id))
+        .collect();
     if !names.is_empty() {
         notes.push(Note::new(
             "repeated_di",

@@ -110,7 +110,15 @@ impl Message<'_> {
                     "header_missing",
                     "the message header did not arrive; every field begins with a data identifier",
                 ));
-                fields::bare(self.body.trim_end_matches(RS))?
+                let body = self.body.trim_end_matches(RS);
+                if body.contains(RS) {
+                    return Err(LabelError::refused(
+                        "control_character",
+                        "a record separator stands among the fields, and no header that says \
+                         which of them belong together: scan again",
+                    ));
+                }
+                fields::bare(body)?
             }
             header => self.enveloped(header, notes)?,
         };

@@ -90,6 +90,10 @@ impl Statement {
         if lines.next() != Some("") || lines.next().is_some() {
             return Err(bad());
         }
+        // What nobody could have signed with this program is not taken either.
+        if statement.text()? != text {
+            return Err(bad());
+        }
         Ok(statement)
     }
 }

@@ -14,7 +14,7 @@ pub enum LedgerError {
         path: PathBuf,
         source: io::Error,
     },
-    /// The database reported an error; nothing was recorded, unless `outcome_unknown`.
+    /// The database reported an error; no entry was made, unless `outcome_unknown`.
     Database {
         doing: &'static str,
         path: PathBuf,
@@ -50,6 +50,17 @@ impl LedgerError {
         }
     }
 
+    /// The same error where it came when the entry had been made: nobody may be told that none was.
+    pub(super) fn after_the_commit(mut self) -> Self {
+        if let LedgerError::Database {
+            outcome_unknown, ..
+        } = &mut self
+        {
+            *outcome_unknown = true;
+        }
+        self
+    }
+
     pub(super) fn damaged(what: impl Into<String>, why: impl Into<String>) -> Self {
         LedgerError::Damaged {
             what: what.into(),
@@ -77,7 +88,7 @@ impl fmt::Display for LedgerError {
                     "; whether the entry was made is not known: do the same again, it answers with \
                      the entry that is there"
                 } else {
-                    "; nothing was recorded"
+                    "; no entry was made"
                 };
                 f.write_str(hint)
             }

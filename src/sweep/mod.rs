@@ -18,6 +18,7 @@ pub mod touchstone;
 pub mod validity;
 
 pub use compensation::Standards;
+pub use delimited::heading_scale;
 pub use file::{Extent, extent, read_file};
 pub use naming::{is_sweep_file, natural_order, order};
 pub use network::{Network, Parameter};

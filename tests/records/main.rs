@@ -1,6 +1,7 @@
 //! Records from end to end, through the program: judged, listed, shown, exported, disposed of,
 //! verified, and tampered with in every place.
 
+mod clock;
 mod documents;
 mod history;
 mod site;

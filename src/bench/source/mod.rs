@@ -5,10 +5,12 @@
 
 mod event;
 mod folder;
+mod instrument;
 mod trouble;
 
 pub use event::{Event, Proof, Seen, Taken};
 pub use folder::Folder;
+pub use instrument::Instrument;
 pub use trouble::Trouble;
 
 use std::time::Duration;

@@ -19,8 +19,8 @@ use super::{Faults, Source};
 
 /// Reads the text of a file into nodes that know where they stand.
 pub fn parse(source: &Source) -> Result<Node, Faults> {
-    let result = meaning::read(source.text())
-        .map_err(|error| syntax::fault(source, &error))
+    let result = places::not_too_deep(source)
+        .and_then(|()| meaning::read(source.text()).map_err(|error| syntax::fault(source, &error)))
         .and_then(|meaning| {
             let place = places::read(source)?;
             join::join(source, meaning, place)

@@ -58,6 +58,32 @@ pub fn read(source: &Source) -> Result<Place, Vec<Fault>> {
     builder.finish()
 }
 
+/// Refuses brackets nested too deep before serde_yaml sees them: the time that it takes until it
+/// stops at 128 grows with the square of the depth.
+pub fn not_too_deep(source: &Source) -> Result<(), Vec<Fault>> {
+    let opens = |byte: &u8| matches!(byte, b'[' | b'{');
+    if source.text().as_bytes().iter().filter(|b| opens(b)).count() <= DEEPEST {
+        return Ok(());
+    }
+    let mut depth = 0_usize;
+    for event in Parser::new_from_str(source.text()) {
+        match event {
+            Ok((Event::SequenceStart(..) | Event::MappingStart(..), span)) => {
+                depth += 1;
+                if depth > DEEPEST {
+                    let span = at(source, span.start, span.end);
+                    return Err(vec![super::syntax::too_deep(source, span)]);
+                }
+            }
+            Ok((Event::SequenceEnd | Event::MappingEnd, _)) => depth = depth.saturating_sub(1),
+            Ok(_) => {}
+            // Whatever it is, the readers say it.
+            Err(_) => break,
+        }
+    }
+    Ok(())
+}
+
 /// The two parsers read the file differently.
 pub fn disagreement(source: &Source, span: Span, detail: &str) -> Fault {
     source.fault(

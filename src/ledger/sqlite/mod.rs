@@ -199,7 +199,8 @@ impl Store for SqliteStore {
         drop(lock);
         held.commit().map_err(|e| uncertain(&self.path, &e))?;
         self.step("reading the entry back")?;
-        self.read_back(&row)?;
+        self.read_back(&row)
+            .map_err(LedgerError::after_the_commit)?;
         Ok(row)
     }
 

@@ -11,7 +11,18 @@ mod unit;
 
 use super::raw::RawSweep;
 use crate::diagnostic::Note;
-use crate::station::Layout;
+use crate::station::{Column, Layout};
+
+/// The factor from the numbers under a heading to hertz, ohm, farad, volt, radian, decibel or 1.
+/// Without a unit in the heading it is 1, and that of degrees for a phase.
+pub fn heading_scale(heading: &str, column: Column) -> f64 {
+    let usual = match column {
+        Column::Phase => std::f64::consts::PI / 180.0,
+        _ => 1.0,
+    };
+    let unit = unit::split(heading, column).unit;
+    unit.map_or(usual, |unit| unit.scale)
+}
 
 /// The sweep of one part in a table, or why there is none.
 #[derive(Debug)]
