@@ -14,7 +14,8 @@ pub(in crate::certificate) fn lots(flow: &mut Flow, record: &LotRecord, all: &[C
     if charts.is_empty() {
         return;
     }
-    flow.heading("Lot to lot", HEIGHT + 60.0);
+    // With what the drawings are and the first of them.
+    flow.heading("Lot to lot", HEIGHT + 130.0);
     flow.small(
         "Accepted lots of the same part and supplier in the order in which they were recorded, this lot last and larger. Dot: \
          mean of the lot; bar: ± one standard deviation within it; fine line: mean of the lots before; dashed: their control \
