@@ -187,6 +187,7 @@ fn characteristics(out: &mut String, record: &LotRecord) {
         name.set_constraint(ColumnConstraint::UpperBoundary(Width::Fixed(24)));
     }
     push(out, &table);
+    no_cpk(out, record);
     intervals(out, record);
     for bound in &record.limits.characteristics {
         let Some(s) = record.statistics.get(&bound.key) else {
@@ -203,6 +204,26 @@ fn characteristics(out: &mut String, record: &LotRecord) {
     }
     joint(out, record);
     before(out, record);
+}
+
+/// Why there is no Cpk, once for the characteristics of which the same is true.
+fn no_cpk(out: &mut String, record: &LotRecord) {
+    let mut said: Vec<(&str, Vec<&str>)> = Vec::new();
+    for bound in &record.limits.characteristics {
+        let of = record.statistics.get(&bound.key);
+        let notes = of.iter().flat_map(|s| &s.warnings);
+        for note in notes.filter(|note| note.code == "cpk_undefined") {
+            let why = note.text.strip_prefix("no cpk: ").unwrap_or(&note.text);
+            match said.iter_mut().find(|(other, _)| *other == why) {
+                Some((_, names)) => names.push(&bound.name),
+                None => said.push((why, vec![&bound.name])),
+            }
+        }
+    }
+    for (why, names) in said {
+        let line = format!("no Cpk of {}: {why}", names.join(", "));
+        out.push_str(&wrapped(&line, "  ", "    "));
+    }
 }
 
 /// Where 95 % of the parts of the lot lie, and the index of values that are not normal.

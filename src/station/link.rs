@@ -9,7 +9,7 @@ use crate::diagnostic::yaml::{Node, Reader, Shape, shown};
 use crate::diagnostic::{Span, excerpt};
 use crate::quantity::Dimension;
 
-const KEYS: [&str; 11] = [
+const KEYS: [&str; 12] = [
     "tcp",
     "timeout",
     "ends_with",
@@ -18,6 +18,7 @@ const KEYS: [&str; 11] = [
     "trigger",
     "wait",
     "read",
+    "finish",
     "errors",
     "abort",
     "points",
@@ -56,6 +57,7 @@ pub fn read(
     };
     let setup = orders(reader, "setup");
     let trigger = orders(reader, "trigger");
+    let finish = orders(reader, "finish");
     let abort = orders(reader, "abort");
     let wait = fields.get("wait").map(|node| wait(reader, node));
     let example = "[{quantity: frequency, query: \"FREQ:DATA?\", format: ascii}, …]";
@@ -75,6 +77,7 @@ pub fn read(
         trigger: given(trigger)?.unwrap_or_default(),
         wait: given(wait)?,
         read: answers?,
+        finish: given(finish)?.unwrap_or_default(),
         errors: given(errors)?,
         abort: given(abort)?.unwrap_or_default(),
         points: given(points)?,

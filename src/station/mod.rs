@@ -237,6 +237,8 @@ pub struct InstrumentLink {
     pub wait: Option<Wait>,
     /// Asked after that. Together `frequency` and one complete set, each quantity once.
     pub read: Vec<Answer>,
+    /// Sent after that.
+    pub finish: Vec<String>,
     /// Asked after each of these steps.
     pub errors: Option<ErrorQueue>,
     /// Sent when a measurement is broken off.

@@ -8,6 +8,7 @@ mod lot_file;
 mod rendering;
 mod schema;
 mod site_file;
+mod station_bench;
 mod station_file;
 mod yaml;
 

@@ -192,6 +192,27 @@ fn faulty_station_and_lot_files_are_refused() {
     ] {
         assert!(!station.is_valid(&value(&with(STATION, piece, by))), "{by}");
     }
+    let bench = super::station_bench::sample();
+    for (piece, by) in [
+        ("folder: watched/bench-4, ", ""),
+        ("pattern: \"*.csv\"", "pattern: \"sub/*.csv\""),
+        ("settle: 0.5 s, points: 401", "settle: 0.5 s, points: 1"),
+        ("192.0.2.17:5025", "192.0.2.17"),
+        ("\"ERROR:NEXT?\"", "\"ERROR:NEXT\""),
+        (
+            "IMPEDANCES?\", format: real64, order: big",
+            "IMPEDANCES?\", format: real64",
+        ),
+        (
+            "IMPEDANCES?\", format: real64, order: big",
+            "IMPEDANCES?\", format: ascii, order: big",
+        ),
+        ("every: 25 parts", "every: some parts"),
+        ("at: 1 kHz, value: 4.683 µF", "value: 4.683 µF"),
+        ("asset: REF-03", "aset: REF-03"),
+    ] {
+        assert!(!station.is_valid(&value(&with(&bench, piece, by))), "{by}");
+    }
     let lot = validator(reelgate::lot::SCHEMA);
     for (piece, by) in [
         ("quantity: 4000", "quantity: 0"),

@@ -15,7 +15,7 @@ fn station(port: u16, read: &str, more: &str) -> Station {
     let text = format!(
         "station: T\nmethod: direct\ninstrument_link:\n  tcp: \"127.0.0.1:{port}\"\n  setup: [\"*CLS\", \
          \"SWE:POIN 60\"]\n  trigger: INIT\n  wait: {{query: \"*OPC?\", until: \"1\", longest: 20 s}}\n  \
-         errors: {{query: \"ERR?\", none: \"0\"}}\n  abort: [\"ABOR\", \"OUTP OFF\"]\n  read: [{read}]\n{more}"
+         errors: {{query: \"ERR?\", none: \"0\"}}\n  abort: [\"ABOR\", \"OUTP OFF\"]\n  finish: \"OUTP:REST\"\n  read: [{read}]\n{more}"
     );
     station::read("t.yaml", text.as_bytes()).unwrap_or_else(|faults| panic!("{faults}"))
 }
@@ -110,7 +110,15 @@ fn the_messages_are_those_of_the_station_file_in_its_order() {
         "{text}"
     );
     is_right(&taken, &station);
-    let once = ["INIT", "*OPC?", "ERR?", "F:ASC?", "Z:ASC?", "ERR?"];
+    let once = [
+        "INIT",
+        "*OPC?",
+        "ERR?",
+        "F:ASC?",
+        "Z:ASC?",
+        "OUTP:REST",
+        "ERR?",
+    ];
     let first = ["*IDN?", "*CLS", "SWE:POIN 60", "ERR?"];
     assert_eq!(
         simulated.heard(),
@@ -363,6 +371,44 @@ fn points_of_the_station_file_must_come() {
         trouble.text.contains("60 points") && trouble.text.contains("61"),
         "{trouble}"
     );
+}
+
+/// The cable is pulled again and again, at any step; `tests/tools/soak_sources` does it 500 times.
+#[test]
+fn no_broken_sweep_is_kept_however_often_the_cable_is_pulled() {
+    let count = if std::env::var_os("REELGATE_SOAK").is_some() {
+        500
+    } else {
+        24
+    };
+    let simulated = Simulated::new();
+    let station = station(simulated.port, BINARY, "");
+    let mut source = open(&station);
+    let mut state = 0x2545_f491_4f6c_dd1d_u64;
+    for i in 0..count {
+        // xorshift64 (Marsaglia 2003).
+        state ^= state << 13;
+        state ^= state >> 7;
+        state ^= state << 17;
+        let query = ["*OPC?", "ERR?", "F:R64L?", "Z:R64B?"][(state >> 33) as usize % 4];
+        let fault = [Fault::Close, Fault::CloseWithin][(state >> 40) as usize % 2].clone();
+        is_right(
+            &measure(&mut source, &format!("{i}")).expect("a sweep"),
+            &station,
+        );
+        simulated.fault(query, fault);
+        let trouble = measure(&mut source, &format!("{i}~2")).expect_err("a trouble");
+        assert_eq!(trouble.code, "connection_broken", "{trouble}");
+    }
+    is_right(&measure(&mut source, "last").expect("a sweep"), &station);
+    if count == 500 {
+        use std::io::Write;
+        writeln!(
+            std::io::stderr(),
+            "{count} broken connections, nothing of a broken sweep kept, every other sweep right"
+        )
+        .expect("said");
+    }
 }
 
 proptest! {

@@ -9,7 +9,7 @@ use std::path::Path;
 use std::time::{Duration, Instant};
 use tempfile::TempDir;
 
-/// How many files; `tests/tools/soak_folder` asks for more.
+/// How many files; `tests/tools/soak_sources` asks for more.
 fn count() -> u64 {
     let asked = std::env::var("REELGATE_SOAK").ok();
     asked.and_then(|text| text.parse().ok()).unwrap_or(300)
@@ -117,5 +117,53 @@ fn none_is_missed_and_none_taken_twice() {
             )
             .expect("said");
         }
+    }
+}
+
+/// Sweeps as they come at a bench: one saved, taken, judged, the next one. With `REELGATE_SOAK` it
+/// says how long it takes from the closed file to the sweep in hand, beside reading the same file.
+#[test]
+fn one_after_the_other_each_is_taken_before_the_next_is_saved() {
+    let count = count().min(1000);
+    let folder = TempDir::new().expect("a folder");
+    let watch = watch(", points: 60");
+    let mut source = Folder::open(folder.path(), &watch, &station(""), None).expect("a source");
+    let mut taken_after = Vec::new();
+    let mut read_in = Vec::new();
+    for i in 0..count {
+        let path = folder.path().join(format!("{i:06}.csv"));
+        fs::write(&path, sweep(i)).expect("saved");
+        let saved = Instant::now();
+        loop {
+            match source.next(Duration::from_secs(60)).expect("no trouble") {
+                Event::Sweep(taken) => {
+                    assert_eq!(taken.bytes, sweep(i).as_bytes());
+                    break;
+                }
+                Event::Arriving { .. } => {}
+                other => panic!("{other:?}"),
+            }
+        }
+        taken_after.push(saved.elapsed());
+        let began = Instant::now();
+        fs::read(&path).expect("read");
+        read_in.push(began.elapsed());
+    }
+    if std::env::var_os("REELGATE_SOAK").is_some() {
+        taken_after.sort();
+        read_in.sort();
+        let at = |times: &[Duration], share: f64| {
+            times[(times.len() as f64 * share) as usize].as_secs_f64() * 1e3
+        };
+        let (median, late) = (at(&taken_after, 0.5), at(&taken_after, 0.99));
+        let floor = at(&read_in, 0.5);
+        writeln!(
+            std::io::stderr(),
+            "{count} files, one after the other: {median:.2} ms in the median, {late:.2} ms for 99 of 100; \
+             reading the file {floor:.3} ms: ratios {:.0} and {:.0}",
+            median / floor,
+            late / floor
+        )
+        .expect("said");
     }
 }

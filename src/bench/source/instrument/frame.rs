@@ -94,7 +94,7 @@ pub fn block(bytes: &[u8], item: usize, expected: Option<usize>) -> Result<Frame
             "a sweep is smaller: check the question in the station file",
         ));
     }
-    if length % item.max(1) != 0 || length == 0 {
+    if !length.is_multiple_of(item.max(1)) || length == 0 {
         return Err(wrong(
             format!(
                 "the instrument announces a block of {length} bytes, which is no whole number of {item}"
@@ -137,7 +137,7 @@ fn indefinite(rest: &[u8], start: usize, item: usize, expected: Option<usize>) -
     let Some((b'\n', body)) = data.split_last().map(|(last, body)| (*last, body)) else {
         return Frame::Open;
     };
-    if body.is_empty() || body.len() % item.max(1) != 0 {
+    if body.is_empty() || !body.len().is_multiple_of(item.max(1)) {
         return Frame::Open;
     }
     let (contents, end) = (start + 2..start + 2 + body.len(), start + rest.len());

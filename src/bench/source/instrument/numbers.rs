@@ -76,7 +76,7 @@ pub fn read(
             }
         }
     }
-    if count % turns != 0 {
+    if !count.is_multiple_of(turns) {
         return Err(wrong(
             answer,
             format!("{count} values, where {turns} quantities take turns"),

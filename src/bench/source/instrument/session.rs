@@ -86,6 +86,9 @@ impl Session {
             points = points.or(Some(count));
             columns.extend(read);
         }
+        for order in &link.finish {
+            self.wire.send(order)?;
+        }
         self.errors(link, "the reading", cancelled)?;
         Ok(table::write(&columns, layout, self.identity.as_deref()))
     }
