@@ -1,6 +1,7 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
 mod approvals;
+mod bench;
 mod budget;
 mod evidence;
 mod explain;
@@ -32,6 +33,8 @@ pub mod exit {
     pub const FAILED: u8 = 2;
     /// A lot is held and none rejected.
     pub const HOLD: u8 = 3;
+    /// A run at the bench waits to be gone on with.
+    pub const PAUSED: u8 = 5;
     /// Judged and recorded, but the output could not be written.
     pub const NOT_PRINTED: u8 = 4;
 }
@@ -78,6 +81,7 @@ struct Cli {
 #[derive(Debug, Subcommand)]
 enum Command {
     Judge(judge::Args),
+    Bench(bench::Args),
     Plan(plan::Args),
     Limits(limits::Args),
     Records(records::Args),
@@ -116,6 +120,7 @@ pub fn run(
     };
     match cli.command {
         Command::Judge(args) => judge::run(&args, &mut context),
+        Command::Bench(args) => bench::run(&args, &mut context),
         Command::Plan(args) => plan::run(&args, &mut context),
         Command::Records(args) => records::run(&args, &mut context),
         Command::Limits(args) => {

@@ -97,7 +97,7 @@ pub fn remove_leftovers(path: &Path) {
 /// A rename is on the disk once its folder is. Windows has no such call for folders; there the
 /// file system's own journal orders the rename.
 #[cfg(unix)]
-fn sync_folder(folder: &Path) -> io::Result<()> {
+pub fn sync_folder(folder: &Path) -> io::Result<()> {
     let folder = if folder.as_os_str().is_empty() {
         Path::new(".")
     } else {
@@ -107,6 +107,6 @@ fn sync_folder(folder: &Path) -> io::Result<()> {
 }
 
 #[cfg(not(unix))]
-fn sync_folder(_: &Path) -> io::Result<()> {
+pub fn sync_folder(_: &Path) -> io::Result<()> {
     Ok(())
 }

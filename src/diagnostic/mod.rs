@@ -13,6 +13,6 @@ pub mod yaml;
 
 pub use fault::{Fault, Faults, Quote};
 pub use note::Note;
-pub use printable::{excerpt, printable, wrap};
+pub use printable::{excerpt, is_hidden, printable, wrap};
 pub use render::{as_json, render};
 pub use source::{MAX_BYTES, Source, Span};

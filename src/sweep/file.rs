@@ -74,9 +74,9 @@ pub fn extent(file: &RawFile, station: &Station) -> Result<Extent, Vec<Note>> {
     Ok(extent)
 }
 
-/// Reads the sweep of a compensation standard: no compensation, and none of the checks that
+/// Reads a sweep of the jig itself, empty, shorted or with a standard in it: no compensation, and none of the checks that
 /// expect a capacitor.
-pub(super) fn read_standard(file: &RawFile, station: &Station) -> Result<Sweep, Vec<Note>> {
+pub fn read_standard(file: &RawFile, station: &Station) -> Result<Sweep, Vec<Note>> {
     let mut portions = read(file, station).portions;
     match (portions.pop(), portions.is_empty()) {
         (Some(portion), true) => measure(&mut portion.raw?, station, &mut Vec::new()).map(|m| m.0),

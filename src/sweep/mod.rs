@@ -19,7 +19,7 @@ pub mod validity;
 
 pub use compensation::Standards;
 pub use delimited::heading_scale;
-pub use file::{Extent, extent, read_file};
+pub use file::{Extent, extent, read_file, read_standard};
 pub use naming::{is_sweep_file, natural_order, order};
 pub use network::{Network, Parameter};
 
