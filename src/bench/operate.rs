@@ -13,8 +13,10 @@ use crate::label;
 use crate::quantity::{Dimension, parse, shortest};
 
 /// What is to be done about a line.
+///
+/// A few are made for a line that is typed and none is kept: their size does not matter.
 #[derive(Debug, Clone, PartialEq)]
-#[allow(missing_docs)]
+#[allow(missing_docs, clippy::large_enum_variant)]
 pub enum Act {
     /// It happened: write it down, then take it in.
     Record(Event),
