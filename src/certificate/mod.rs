@@ -217,7 +217,7 @@ fn layout(
     section::statistics::statistics(&mut flow, &all);
     section::parts::parts(&mut flow, record, &all);
     section::files::files(&mut flow, record);
-    section::sources::sources(&mut flow, sources);
+    section::sources::sources(&mut flow, record, sources);
     section::station::station(&mut flow, record);
     let coded = section::integrity::integrity(&mut flow, record, digest, sources);
     section::signatures::signatures(&mut flow, record, sources.signature);

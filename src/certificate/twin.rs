@@ -54,12 +54,15 @@ pub fn plain_text(record: &LotRecord, sources: &Sources) -> String {
     for part in &record.parts {
         self::part(&mut out, part, &all);
     }
-    for (title, text) in [
-        ("Limit file", sources.limit_file),
-        ("Station file", sources.station_file),
+    for (title, folder, text) in [
+        ("Limit file", "limits/parts/", sources.limit_file),
+        ("Station file", "limits/stations/", sources.station_file),
     ] {
         if let Some(text) = text {
             out.heading(title);
+            if let Some(words) = record.approval_words(folder) {
+                out.line(&words);
+            }
             for (index, line) in text.lines().enumerate() {
                 out.line(&format!("{:>4}  {line}", index + 1));
             }

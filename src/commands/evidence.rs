@@ -1,12 +1,13 @@
 //! What a record rests on, as objects of the ledger, and the way back from them.
 
+use super::approvals::{self, SITE_FILE};
 use crate::diagnostic::{Faults, Note};
 use crate::ledger::{
-    Act, Archive, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest,
+    Act, Archive, Entry, Ledger, LedgerError, Object, Query, Reader, inputs_digest, trust::Trust,
 };
 use crate::limits::Limits;
 use crate::lot::{self, History, Lot, PastLot, SeveritySet, Switching};
-use crate::record::{self, Made, Occasion, Refusal, Sources, sha256};
+use crate::record::{self, Approvals, Made, Occasion, Refusal, Sources, sha256};
 use crate::statistics::sampling::Severity;
 use crate::sweep::RawFile;
 use std::collections::{BTreeMap, BTreeSet};
@@ -15,9 +16,6 @@ use std::collections::{BTreeMap, BTreeSet};
 const NAMED: usize = 4;
 /// Records before this one that are looked at. The oldest brings the state of the switching rules with it.
 const LOTS_BEFORE: usize = 40;
-
-/// What the ledger calls the site file.
-const SITE_FILE: &str = "limits/site.yaml";
 
 /// The files of a lot with what the ledger calls them.
 pub struct Evidence<'a> {
@@ -41,13 +39,33 @@ impl<'a> Evidence<'a> {
         })
     }
 
-    /// Every file, and the label as it was scanned.
-    pub fn objects(&self) -> Vec<Object<'_>> {
-        let file = |role, name, file: &'a RawFile| Object {
-            role,
-            name,
-            bytes: &file.bytes,
-        };
+    /// What the entries before one say of the approval of these files.
+    ///
+    /// # Errors
+    /// Those of the ledger.
+    pub fn approvals(
+        &self,
+        reader: &dyn Reader,
+        archive: &Archive,
+        before: u64,
+    ) -> Result<Approvals, LedgerError> {
+        let trust = Trust::read(reader, archive, before)?;
+        Ok(self.approvals_by(&trust))
+    }
+
+    fn approvals_by(&self, trust: &Trust) -> Approvals {
+        approvals::look(trust, self.sources, &self.limits, &self.station)
+    }
+
+    /// Every file, the label as it was scanned, and the statements about the files.
+    pub fn objects<'b>(&'b self, approvals: &'b Approvals) -> Vec<Object<'b>> {
+        fn file<'f>(role: &'f str, name: &'f str, file: &'f RawFile) -> Object<'f> {
+            Object {
+                role,
+                name,
+                bytes: &file.bytes,
+            }
+        }
         let mut all = vec![
             file("lot", "lot.yaml", &self.sources.lot),
             file("limits", &self.limits, &self.sources.limits),
@@ -66,12 +84,25 @@ impl<'a> Evidence<'a> {
         ] {
             all.extend(files.iter().map(|f| file(role, f.name.as_str(), f)));
         }
+        all.extend(approvals.notes.iter().map(|note| Object {
+            role: note.role,
+            name: &note.file,
+            bytes: note.text.as_bytes(),
+        }));
         all
     }
 
     /// What the ledger finds the record by.
-    pub fn digest(&self) -> String {
-        inputs_digest(&self.objects())
+    pub fn digest(&self, approvals: &Approvals) -> String {
+        inputs_digest(&self.objects(approvals))
+    }
+
+    /// The occasion where there are no other records.
+    pub fn first_occasion(&self, issued: &str) -> Occasion {
+        Occasion {
+            approvals: self.approvals_by(&Trust::default()),
+            ..first_occasion(issued)
+        }
     }
 
     /// What the entries before one say about this lot.
@@ -90,6 +121,7 @@ impl<'a> Evidence<'a> {
             supersedes: supersedes(&self.lot, &mut entries, before)?,
             further: used_before(&self.lot, &self.sources.sweeps, &mut entries, before)?,
             history: history(&of(&self.lot), &mut entries, archive, before)?,
+            approvals: self.approvals(reader, archive, before)?,
             ..first_occasion(issued)
         })
     }
@@ -150,7 +182,7 @@ pub fn severity_at(
     }
 }
 
-/// The occasion where there are no other records.
+/// The occasion where there is nothing but the lot.
 pub fn first_occasion(issued: &str) -> Occasion {
     Occasion {
         issued: issued.to_owned(),
@@ -158,6 +190,7 @@ pub fn first_occasion(issued: &str) -> Occasion {
         history: History::default(),
         supersedes: None,
         further: Vec::new(),
+        approvals: Approvals::default(),
     }
 }
 
@@ -286,7 +319,7 @@ fn history(
                 ..
             } if of.lot != Some(lot) && earlier.is_none_or(|earlier| kept.contains(&earlier)) => {
                 kept.insert(index);
-                history.lots.push(past(entry, record, archive)?);
+                history.lots.extend(past(entry, record, archive)?);
             }
             _ => {}
         }
@@ -311,7 +344,8 @@ fn in_view(found: &[u64], entries: &mut Entries) -> Result<usize, LedgerError> {
     Ok(0)
 }
 
-fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<PastLot, LedgerError> {
+/// `None` where the lot was judged by files that nobody had approved: it says nothing of the supplier.
+fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<Option<PastLot>, LedgerError> {
     let kept = entry
         .objects_of("record")
         .next()
@@ -322,7 +356,8 @@ fn past(entry: &Entry, record: &str, archive: &Archive) -> Result<PastLot, Ledge
             "the record {record} of an earlier lot cannot be read ({e})"
         ))
     })?;
-    Ok(PastLot::of(&past))
+    let unapproved = |reason: &Note| lot::NOT_APPROVED.contains(&reason.code.as_str());
+    Ok((!past.reasons.iter().any(unapproved)).then(|| PastLot::of(&past)))
 }
 
 /// A reason for each record of another lot that rests on a sweep of this one. A file without a
@@ -437,14 +472,23 @@ impl std::fmt::Display for NotRemade {
 /// # Errors
 /// An archive that does not hold them any more; files that this program cannot judge.
 pub fn remake(ledger: &Ledger, entry: &Entry) -> Result<(Sources, Made), NotRemade> {
+    remake_digested(ledger, entry).map(|(sources, made, _)| (sources, made))
+}
+
+/// The same, with the digest by which the ledger finds it.
+#[allow(missing_docs)]
+pub fn remake_digested(
+    ledger: &Ledger,
+    entry: &Entry,
+) -> Result<(Sources, Made, String), NotRemade> {
     let sources = sources(ledger, entry)?;
     let refused = |faults: &Faults| crate::diagnostic::render(faults, false);
-    let occasion = Evidence::of(&sources)
-        .map_err(|faults| NotRemade::Refused(refused(&faults)))?
-        .occasion(ledger.store(), ledger.archive(), entry.index, &entry.time)?;
+    let evidence = Evidence::of(&sources).map_err(|faults| NotRemade::Refused(refused(&faults)))?;
+    let occasion = evidence.occasion(ledger.store(), ledger.archive(), entry.index, &entry.time)?;
+    let digest = evidence.digest(&occasion.approvals);
     let made = record::make(&sources, &occasion, &|| ()).map_err(|refusal| match refusal {
         Refusal::Faults(all) => NotRemade::Refused(all.iter().map(refused).collect()),
         Refusal::Impossible(note) => NotRemade::Refused(note.text),
     })?;
-    Ok((sources, made))
+    Ok((sources, made, digest))
 }

@@ -1,6 +1,6 @@
 //! Keeping a record: its entry in the ledger first, then its files beside it.
 
-use super::evidence::{self, Evidence, first_occasion};
+use super::evidence::{self, Evidence};
 use super::store::{Paths, remove_leftovers, write_whole};
 use crate::certificate::{self, Curve, InLedger, Paper, Signer};
 use crate::ledger::disk::System;
@@ -169,18 +169,20 @@ pub fn judge(
     paper: Paper,
     read: &(dyn Fn() + Sync),
 ) -> Result<Kept, NotKept> {
-    let inputs = evidence.digest();
     for _ in 0..TRIES {
         let issued = place.now.to_rfc3339();
         let occasion = match place.look()? {
-            None => first_occasion(&issued),
-            Some(ledger) => match ledger.find(Query::Inputs(&inputs))?.first() {
-                Some(entry) => return answer(place, &ledger, entry, paper),
-                None => {
-                    evidence.occasion(ledger.store(), ledger.archive(), ledger.size()?, &issued)?
+            None => evidence.first_occasion(&issued),
+            Some(ledger) => {
+                let (store, archive, size) = (ledger.store(), ledger.archive(), ledger.size()?);
+                let inputs = evidence.digest(&evidence.approvals(store, archive, size)?);
+                match ledger.find(Query::Inputs(&inputs))?.first() {
+                    Some(entry) => return answer(place, &ledger, entry, paper),
+                    None => evidence.occasion(store, archive, size, &issued)?,
                 }
-            },
+            }
         };
+        let inputs = evidence.digest(&occasion.approvals);
         let made = record::make(sources, &occasion, read).map_err(NotKept::Refused)?;
         let json = record::to_bytes(&made.record).map_err(|e| NotKept::Other(e.to_string()))?;
         match append(place, evidence, &inputs, &occasion, (&made, &json)) {
@@ -214,7 +216,7 @@ fn append(
         &made.record,
         json,
         inputs,
-        &evidence.objects(),
+        &evidence.objects(&occasion.approvals),
         &place.by(evidence.lot.operator.as_deref()),
         &|reader: &dyn Reader| {
             let now = evidence.occasion(reader, &archive, reader.size()?, &occasion.issued)?;
@@ -238,6 +240,7 @@ fn finish(
         warnings = document.warnings;
         write(&paths, Some(&document.pdf), json)
     });
+    warnings.extend(recorded.entry.notes.iter().map(|note| note.text.clone()));
     warnings.extend(place.tell_witness(ledger).err());
     Kept {
         record: made.record.clone(),

@@ -1,9 +1,13 @@
 //! `limits`: check limit, station, lot and site files, show what a limit file resolves to, print schemas.
 
+mod approve;
 mod check;
+mod desk;
 mod files;
+mod key;
 mod show;
 
+use crate::diagnostic::printable;
 use clap::{Subcommand, ValueEnum};
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -37,6 +41,18 @@ enum Command {
         /// A limit file, or the number of a part of the site
         file: PathBuf,
     },
+    /// Make a key pair for a person who approves files
+    ///
+    /// The private key is encrypted under a passphrase (PKCS#8). Prints the line by which the site
+    /// file trusts it.
+    Key(key::Args),
+    /// Approve a limit, station or site file in its very form, with your key
+    ///
+    /// The file is checked first. With a station file the sweeps of its compensation standards
+    /// are approved.
+    Approve(approve::Approve),
+    /// Take the approval of a limit or station file back
+    Withdraw(approve::Withdraw),
     /// Print the JSON Schema of a kind of file, for editors
     Schema {
         /// The kind of file
@@ -68,10 +84,35 @@ pub fn run(args: &Args, site: &Path, json: bool, out: &mut dyn Write, err: &mut 
         }
         Command::Show { file } => show::run(file, site, json, out, err),
         Command::Schema { kind } => schema(*kind, out).map(|()| OK),
+        Command::Key(args) => said(key::run(args, json).map(|text| (text, None)), out, err),
+        Command::Approve(args) => said(approve::approve(args, site, json), out, err),
+        Command::Withdraw(args) => said(approve::withdraw(args, site, json), out, err),
     };
     match done.and_then(|status| out.flush().map(|()| status)) {
         Ok(status) => status,
         Err(_) => NOT_PRINTED,
+    }
+}
+
+fn said(
+    done: Result<(String, Option<String>), String>,
+    out: &mut dyn Write,
+    err: &mut dyn Write,
+) -> io::Result<u8> {
+    match done {
+        Ok((text, warning)) => {
+            if let Some(warning) = warning {
+                let _ = writeln!(err, "warning: {}", printable(&warning));
+            }
+            out.write_all(text.as_bytes())?;
+            Ok(OK)
+        }
+        Err(text) => {
+            // Lines of faults stay lines; nothing in them steers the terminal.
+            let lines: Vec<String> = text.lines().map(printable).collect();
+            let _ = writeln!(err, "error: {}", lines.join("\n"));
+            Ok(INVALID)
+        }
     }
 }
 

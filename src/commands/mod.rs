@@ -1,11 +1,13 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
+mod approvals;
 mod budget;
 mod evidence;
 mod explain;
 mod judge;
 mod keep;
 mod limits;
+mod passphrase;
 mod plan;
 mod present;
 mod records;

@@ -297,7 +297,7 @@ fn sweep_file(path: &Path, name: String) -> RawFile {
 }
 
 /// The sweeps of the compensation standards, beside the station file.
-fn compensation(station_path: &Path, file: &RawFile) -> Result<Vec<RawFile>, Vec<Unreadable>> {
+pub fn compensation(station_path: &Path, file: &RawFile) -> Result<Vec<RawFile>, Vec<Unreadable>> {
     let Ok(station) = crate::station::read(&file.name, &file.bytes) else {
         return Ok(Vec::new());
     };

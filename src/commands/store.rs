@@ -49,6 +49,24 @@ pub fn write_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
     sync_folder(folder)
 }
 
+/// Writes a file that only its owner can read, where there is none yet.
+///
+/// # Errors
+/// A file that exists, or any of the system's; nothing is then left.
+pub fn write_private(path: &Path, bytes: &[u8]) -> io::Result<()> {
+    let mut options = fs::OpenOptions::new();
+    options.write(true).create_new(true);
+    #[cfg(unix)]
+    std::os::unix::fs::OpenOptionsExt::mode(&mut options, 0o600);
+    let mut file = options.open(path)?;
+    let written = file.write_all(bytes).and_then(|()| file.sync_all());
+    if written.is_err() {
+        let _ = fs::remove_file(path);
+        return written;
+    }
+    sync_folder(path.parent().unwrap_or(Path::new(".")))
+}
+
 /// Removes what runs that were killed have left beside a file. A file that a process is still
 /// writing is locked, and stays.
 pub fn remove_leftovers(path: &Path) {

@@ -4,5 +4,7 @@
 //! theirs, whose public halves a site file lists.
 
 mod note;
+mod private;
 
 pub use note::{NoteError, Signer, Verifier};
+pub use private::{SHORTEST_PASSPHRASE, decrypt, encrypt};

@@ -134,35 +134,70 @@ impl Ledger {
         })
     }
 
-    /// Records an approval of a limit or station file: `note` is the signed statement, `verifier`
-    /// the key that the site trusts, `role` is `limits` or `station`.
+    /// Records an approval of a limit, station or site file, or that one is taken back: `note` is the
+    /// signed statement, `verifier` the key that the site trusts, `with` the files that belong to the
+    /// file.
     ///
     /// # Errors
-    /// A note that does not verify, or that is not about these bytes under this name for this ledger.
+    /// A note that does not verify, or that is not about these bytes under this name for this ledger;
+    /// [`LedgerError::Overtaken`] where another statement about the file was entered meanwhile.
     pub fn approve(
         &mut self,
         file: &Object,
+        with: &[Object],
         note: &str,
         verifier: &Verifier,
         made: &Made,
     ) -> Result<Recorded, LedgerError> {
         let statement = approval::Statement::open(note, verifier)
             .map_err(|e| LedgerError::Refused(format!("{}: not approved: {e}", file.name)))?;
-        if !statement.approves(self.verifier.name(), file.name, file.bytes) {
+        let belonging: Vec<(String, String)> = with
+            .iter()
+            .map(|o| (sha256_hex(o.bytes), o.name.to_owned()))
+            .collect();
+        if !statement.approves(self.verifier.name(), file.name, file.bytes)
+            || statement.kind.role() != file.role
+            || statement.with != belonging
+        {
             return Err(LedgerError::Refused(format!(
                 "{}: the approval is of another file, of other bytes, or for another ledger",
                 file.name
             )));
         }
-        let act = Act::Approval {
-            file: file.name.to_owned(),
-            revision: statement.revision,
-            sha256: statement.sha256,
-            statement: note.to_owned(),
+        let (name, entries) = (file.name.to_owned(), statement.entries);
+        let act = match statement.withdraws {
+            false => Act::Approval {
+                file: name.clone(),
+                revision: statement.revision,
+                sha256: statement.sha256,
+                statement: note.to_owned(),
+            },
+            true => Act::Withdrawal {
+                file: name.clone(),
+                sha256: statement.sha256,
+                reason: statement.meaning,
+                statement: note.to_owned(),
+            },
         };
-        self.append(&[*file], made, &|reader| {
-            let approvals = reader.find(Query::Kind("approval"))?;
-            repeat_or_new(reader, &approvals, &act, made.by)
+        let objects: Vec<Object> = std::iter::once(*file).chain(with.iter().copied()).collect();
+        self.append(&objects, made, &|reader| {
+            let mut earlier = reader.find(Query::Kind("approval"))?;
+            earlier.extend(reader.find(Query::Kind("withdrawal"))?);
+            let chosen = repeat_or_new(reader, &earlier, &act, made.by)?;
+            if matches!(chosen, Chosen::Act(_)) {
+                if entries > reader.size()? {
+                    return Err(LedgerError::Refused(format!(
+                        "{name}: the approval was signed for a longer ledger"
+                    )));
+                }
+                earlier.retain(|index| *index >= entries);
+                for index in earlier {
+                    if statement_of(reader, index)?.is_some_and(|file| file == name) {
+                        return Err(LedgerError::Overtaken);
+                    }
+                }
+            }
+            Ok(chosen)
         })
     }
 
@@ -342,6 +377,17 @@ fn repeat_or_new(
         }
     }
     Ok(Chosen::Act(act.clone()))
+}
+
+/// The file that an entry makes a statement about.
+fn statement_of(reader: &dyn Reader, index: u64) -> Result<Option<String>, LedgerError> {
+    let Some(row) = reader.row(index)? else {
+        return Ok(None);
+    };
+    Ok(match Entry::read(index, &row.body)?.act {
+        Act::Approval { file, .. } | Act::Withdrawal { file, .. } => Some(file),
+        _ => None,
+    })
 }
 
 /// The newest entry that judged the same lot of the same part from the same supplier.

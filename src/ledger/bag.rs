@@ -8,9 +8,10 @@ use super::disk::Disk;
 use super::entry::{Act, Entry};
 use super::error::LedgerError;
 use super::proof::Proof;
+use super::trust::Trust;
 use super::{Ledger, Query};
 use chrono::{DateTime, FixedOffset};
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};
 
 /// What a package is made of besides the ledger.
@@ -24,6 +25,9 @@ pub struct Export<'a> {
     /// Name and version of the program.
     pub program: &'a str,
 }
+
+/// Acts, and roles of their notes among the objects of a judged lot.
+const STATEMENTS: [&str; 2] = ["approval", "withdrawal"];
 
 /// Path within the package, with `/`, and content.
 type Files = BTreeMap<String, Vec<u8>>;
@@ -83,6 +87,7 @@ fn payload(ledger: &Ledger, export: &Export) -> Result<Files, LedgerError> {
         let bytes = ledger.archive().get(&object.sha256)?;
         files.insert(format!("data/objects/{}", object.sha256), bytes);
     }
+    add_approvals(ledger, judged, &mut files)?;
     if let Some(certificate) = export.certificate {
         files.insert("data/certificate.pdf".to_owned(), certificate.to_vec());
     }
@@ -90,6 +95,55 @@ fn payload(ledger: &Ledger, export: &Export) -> Result<Files, LedgerError> {
     files.insert("data/public-key.txt".to_owned(), key.into_bytes());
     files.insert("data/README.txt".to_owned(), README.as_bytes().to_vec());
     Ok(files)
+}
+
+/// The approvals that the record rests on, with their entries and the keys that were trusted.
+fn add_approvals(ledger: &Ledger, judged: &Entry, files: &mut Files) -> Result<(), LedgerError> {
+    let mut notes = Vec::new();
+    for object in judged
+        .objects
+        .iter()
+        .filter(|o| STATEMENTS.contains(&o.role.as_str()))
+    {
+        notes.push(ledger.archive().get(&object.sha256)?);
+    }
+    if notes.is_empty() {
+        return Ok(());
+    }
+    let trust = Trust::read(ledger.store(), ledger.archive(), judged.index)?;
+    let chain: Vec<u64> = trust.site_files().iter().map(|s| s.granted.entry).collect();
+    let mut entries = Vec::new();
+    for kind in STATEMENTS {
+        entries.extend(ledger.find(Query::Kind(kind))?);
+    }
+    for entry in entries {
+        let (Act::Approval { statement, .. } | Act::Withdrawal { statement, .. }) = &entry.act
+        else {
+            continue;
+        };
+        let wanted = notes.iter().any(|note| note == statement.as_bytes());
+        if entry.index >= judged.index || !(wanted || chain.contains(&entry.index)) {
+            continue;
+        }
+        let name = format!("data/approvals/{}-{}", entry.index, entry.act.kind());
+        add_proven(ledger, &entry, &name, files)?;
+        for object in &entry.objects {
+            let bytes = ledger.archive().get(&object.sha256)?;
+            files.insert(format!("data/objects/{}", object.sha256), bytes);
+        }
+    }
+    let own = judged.objects_of("site").next();
+    let own = own.map(|o| ledger.archive().get(&o.sha256)).transpose()?;
+    let own = own.and_then(|bytes| crate::site::read("limits/site.yaml", &bytes).ok());
+    let sites = trust.site_files().iter().map(|site| &site.file);
+    let keys: BTreeSet<String> = sites
+        .chain(&own)
+        .flat_map(|site| &site.trusted_keys)
+        .map(|trusted| trusted.key.text() + "\n")
+        .collect();
+    let text: String = keys.into_iter().collect();
+    files.insert("data/approval-keys.txt".to_owned(), text.into_bytes());
+    Ok(())
 }
 
 /// The entry's bytes, and the proof that it is in the ledger as it now is.
@@ -201,6 +255,9 @@ objects/<sha256>      the bytes that the entries rest on, by SHA-256; the entry 
                       what each is: the record itself, the lot, limit and station files as they
                       were, the sweeps
 certificate.pdf       the certificate, where one was given
+approvals/            the entries by which the files that the lot was judged by were approved, and the site
+                      files that say whose approvals count, likewise
+approval-keys.txt     the public keys that those site files list, in the form of public-key.txt
 public-key.txt        the public key of the ledger: name+id+base64 of 01 and 32 bytes (Ed25519)
 
 To check by hand, with sha256sum and any program that knows Ed25519:
@@ -211,6 +268,9 @@ To check by hand, with sha256sum and any program that knows Ed25519:
    line of the checkpoint, in base64.
 4. The signature of the checkpoint, without its first four bytes, is an Ed25519 signature of the
    checkpoint's text (up to the line before the empty one, with its line end).
-5. Compare public-key.txt with the key that the site has given you by another way, and the
+5. The approvals are objects with the role \"approval\": signed notes like the checkpoint, by one of
+   approval-keys.txt. The note has the SHA-256 of the file that was approved; that of the lot's own
+   file must be the same.
+6. Compare public-key.txt with the key that the site has given you by another way, and the
    checkpoint with one from a certificate that has left the site.
 ";

@@ -68,12 +68,20 @@ pub enum Act {
         severity: Severity,
         reason: String,
     },
-    /// A limit or station file was approved. The object with role `limits` or `station` is the
-    /// file; `statement` is the signed note (see [`super::approval`]).
+    /// A limit, station or site file was approved. The object with role `limits`, `station` or
+    /// `site` is the file, those with role `compensation` belong to it; `statement` is the signed
+    /// note (see [`super::approval`]).
     Approval {
         file: String,
         revision: Option<String>,
         sha256: String,
+        statement: String,
+    },
+    /// The approval of a file was taken back; `statement` is the signed note.
+    Withdrawal {
+        file: String,
+        sha256: String,
+        reason: String,
         statement: String,
     },
     /// A certificate was made of a record: what it is known by.
@@ -106,7 +114,7 @@ pub enum Decision {
 #[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct ObjectRef {
-    /// `record`, `site`, `lot`, `label`, `limits`, `station`, `compensation`, `sweep`, `certificate`.
+    /// `approval`, `withdrawal` (the signed notes), `record`, `site`, `lot`, `label`, `limits`, `station`, `compensation`, `sweep`, `certificate`.
     pub role: String,
     /// The name it had, relative to the lot folder or the site.
     pub name: String,
@@ -117,13 +125,14 @@ pub struct ObjectRef {
 }
 
 impl Act {
-    /// `judged`, `disposition`, `severity`, `approval`, `issue`, `reissue`.
+    /// `judged`, `disposition`, `severity`, `approval`, `withdrawal`, `issue`, `reissue`.
     pub fn kind(&self) -> &'static str {
         match self {
             Act::Judged { .. } => "judged",
             Act::Disposition { .. } => "disposition",
             Act::Severity { .. } => "severity",
             Act::Approval { .. } => "approval",
+            Act::Withdrawal { .. } => "withdrawal",
             Act::Issue { .. } => "issue",
             Act::Reissue { .. } => "reissue",
         }
@@ -136,7 +145,7 @@ impl Act {
             | Act::Disposition { record, .. }
             | Act::Issue { record, .. }
             | Act::Reissue { record, .. } => Some(record),
-            Act::Severity { .. } | Act::Approval { .. } => None,
+            Act::Severity { .. } | Act::Approval { .. } | Act::Withdrawal { .. } => None,
         }
     }
 }

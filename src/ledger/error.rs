@@ -112,7 +112,7 @@ impl fmt::Display for LedgerError {
                 write!(f, "{what}: {why}: verify the records before going on")
             }
             LedgerError::Overtaken => f.write_str(
-                "other lots were recorded at the same moment: nothing was recorded; do the same again",
+                "something else was recorded at the same moment: nothing was recorded; do the same again",
             ),
             LedgerError::Key(why) | LedgerError::Refused(why) => f.write_str(why),
         }

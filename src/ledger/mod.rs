@@ -23,6 +23,7 @@ mod proof;
 mod schema;
 mod sqlite;
 mod store;
+pub mod trust;
 mod verify;
 pub mod witness;
 

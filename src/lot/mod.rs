@@ -30,7 +30,7 @@ pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state}
 pub use statistics::{Statistics, statistics};
 pub use switching::{ChangeSection, ClassState, SetSection, Switching, severity_state};
 pub use variables::VariablesSection;
-pub use verdict::{LotJudgement, LotVerdict, judge};
+pub use verdict::{LotJudgement, LotVerdict, NOT_APPROVED, judge};
 
 mod file;
 

@@ -38,6 +38,13 @@ impl LotVerdict {
     }
 }
 
+/// Reasons that make the files doubtful which a lot is judged by.
+pub const NOT_APPROVED: [&str; 3] = [
+    "site_not_approved",
+    "limits_not_approved",
+    "station_not_approved",
+];
+
 /// What a lot comes to.
 #[derive(Debug, Clone, PartialEq)]
 #[allow(missing_docs)]
@@ -57,7 +64,7 @@ pub struct LotJudgement {
 /// Judges a lot from its parts, in sample order.
 ///
 /// `further` are reasons found on the way here that hold the lot (a retest that the limit file
-/// does not allow). `history` is what the lot rules compare with; the plan has the switching rules
+/// does not allow, files that are not approved). `history` is what the lot rules compare with; the plan has the switching rules
 /// behind it.
 pub fn judge(
     lot: &Lot,
@@ -71,7 +78,12 @@ pub fn judge(
     let checked = conditions::check(lot, limits, station, parts);
     let (sections, unmet): (Vec<_>, Vec<_>) =
         checked.into_iter().map(|c| (c.section, c.reason)).unzip();
-    let unmet: Vec<Note> = unmet.into_iter().flatten().collect();
+    let (unapproved, further): (Vec<Note>, Vec<Note>) = further
+        .into_iter()
+        .partition(|note| NOT_APPROVED.contains(&note.code.as_str()));
+    let mut unmet: Vec<Note> = unmet.into_iter().flatten().collect();
+    // Counts by limits that nobody answers for neither accept nor reject.
+    unmet.splice(0..0, unapproved);
     let sampling = sampling::count(plan, limits, parts);
     let statistics = statistics(limits, station, parts);
     let rejections = over_ac(&sampling);

@@ -14,6 +14,7 @@ use sha2::{Digest, Sha256};
 #[allow(missing_docs)]
 pub struct Inputs<'a> {
     pub site: Option<&'a SiteFile>,
+    pub approvals: &'a Approvals,
     pub lot: &'a Lot,
     pub limits: &'a Limits,
     pub station: &'a Station,
@@ -34,6 +35,8 @@ pub struct Inputs<'a> {
 #[allow(missing_docs)]
 pub struct Digests {
     pub site: Option<String>,
+    /// Signed statements about these files: role and digest.
+    pub approvals: Vec<(String, String)>,
     pub lot: String,
     pub limits: String,
     pub station: String,
@@ -65,6 +68,10 @@ impl Digests {
             add("site");
             add(site);
         }
+        for (role, digest) in &self.approvals {
+            add(role);
+            add(digest);
+        }
         let digest = hex(&hash.finalize());
         format!("{lot}-{}", &digest[..12])
     }
@@ -84,6 +91,7 @@ impl LotRecord {
     pub fn assemble(inputs: Inputs) -> LotRecord {
         let Inputs {
             site,
+            approvals,
             lot,
             limits,
             station,
@@ -97,6 +105,8 @@ impl LotRecord {
         } = inputs;
         let mut all = judgement.warnings;
         all.extend(warnings);
+        let mut explanation: Vec<Step> = approvals.step().into_iter().collect();
+        explanation.extend(judgement.explanation);
         LotRecord {
             schema: SCHEMA,
             record: digests.identity(&lot.lot),
@@ -110,15 +120,17 @@ impl LotRecord {
                 .zip(digests.site.as_ref())
                 .map(|(site, sha256)| SiteSection {
                     site: site.name.clone(),
+                    approval: site.approval.name().to_owned(),
                     sha256: sha256.clone(),
                 }),
+            approvals: approvals.in_force.clone(),
             lot: lot_section(lot, &digests.lot),
             limits: limits_section(limits, &digests.limits, judgement.conditions),
             station: station_section(station, digests),
             verdict: judgement.verdict,
             reasons: judgement.reasons,
             warnings: all,
-            explanation: judgement.explanation,
+            explanation,
             sampling: judgement.sampling,
             statistics: judgement.statistics,
             circuit,

@@ -1,7 +1,7 @@
 //! From the bytes of the input files to the record: the whole of the pipeline, without a file or
 //! a clock. Judging and recomputing from an archive both come through here.
 
-use super::{Digests, Inputs, LotRecord, PartRecord, circuit, sha256};
+use super::{Approvals, Digests, Inputs, LotRecord, PartRecord, circuit, sha256};
 use crate::diagnostic::{Faults, Note};
 use crate::judgement::{JudgedTry, judge_part, judge_try, undecidable};
 use crate::limits::{self, Limits};
@@ -61,6 +61,8 @@ pub struct Occasion {
     pub supersedes: Option<String>,
     /// Further reasons to hold the lot, which other records give.
     pub further: Vec<Note>,
+    /// What the ledger says of the files that the lot is judged by.
+    pub approvals: Approvals,
 }
 
 /// Why there is no record.
@@ -107,6 +109,7 @@ pub fn make(
         .collect();
     let (parts, curves, mut holding) = parts(&attempts, judged, &limits, &lot);
     holding.extend(occasion.further.iter().cloned());
+    holding.extend(occasion.approvals.missing.iter().cloned());
     let judgement = lot::judge(
         &lot,
         &limits,
@@ -116,10 +119,11 @@ pub fn make(
         holding,
         &occasion.history,
     );
-    let digests = digests(sources);
+    let digests = digests(sources, &occasion.approvals);
     let circuit = circuit::of_median_part(&limits, &parts, &curves);
     let record = LotRecord::assemble(Inputs {
         site: site.as_ref(),
+        approvals: &occasion.approvals,
         lot: &lot,
         limits: &limits,
         station: &station,
@@ -233,7 +237,7 @@ fn parts(
     (parts, curves, refused)
 }
 
-fn digests(sources: &Sources) -> Digests {
+fn digests(sources: &Sources, approvals: &Approvals) -> Digests {
     let each = |files: &[RawFile]| {
         files
             .par_iter()
@@ -242,6 +246,11 @@ fn digests(sources: &Sources) -> Digests {
     };
     Digests {
         site: sources.site.as_ref().map(|file| sha256(&file.bytes)),
+        approvals: approvals
+            .notes
+            .iter()
+            .map(|note| (note.role.to_owned(), sha256(note.text.as_bytes())))
+            .collect(),
         lot: sha256(&sources.lot.bytes),
         limits: sha256(&sources.limits.bytes),
         station: sha256(&sources.station.bytes),

@@ -3,6 +3,7 @@
 //! Everything that the terminal, the PDF and the ledger show is in it. Values are SI and unrounded;
 //! a value that could not be had is `null`, with a warning that says why.
 
+mod approvals;
 mod assemble;
 mod canonical;
 mod circuit;
@@ -16,6 +17,7 @@ pub use crate::lot::{
     OperatingCharacteristic, Sampling, SetAside, SetSection, Statistics, Step, Switching,
     TrendSection, VariablesSection,
 };
+pub use approvals::{ApprovalSection, Approvals, SignedNote};
 pub use assemble::{Digests, Inputs, method, sha256};
 pub use canonical::{from_bytes, to_bytes};
 pub use circuit::{CircuitSection, ParameterSection};
@@ -44,6 +46,9 @@ pub struct LotRecord {
     /// Where the site has a site file.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub site: Option<SiteSection>,
+    /// Approvals in force of the files that the lot was judged by.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub approvals: Vec<ApprovalSection>,
     pub lot: LotSection,
     pub limits: LimitsSection,
     pub station: StationSection,
@@ -81,6 +86,8 @@ pub struct Program {
 pub struct SiteSection {
     /// Its name.
     pub site: String,
+    /// Whether it demands approvals: `required`, `optional`.
+    pub approval: String,
     pub sha256: String,
 }
 

@@ -122,6 +122,7 @@ fn main() {
     let plan =
         reelgate::lot::plan(&limits.acceptance, lot.quantity, Severity::Normal).expect("a plan");
     let occasion = Occasion {
+        approvals: Default::default(),
         issued: "2026-10-05T10:00:00+02:00".to_owned(),
         severity: Severity::Normal,
         history: reelgate::lot::History::default(),

@@ -203,6 +203,7 @@ pub fn accepted(parts: usize, characteristics: usize) -> Case {
                 version: "0.1.0".into(),
             },
             site: None,
+            approvals: vec![],
             lot: lot(parts),
             limits: limits(&kinds),
             station: station(),

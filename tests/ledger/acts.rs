@@ -199,7 +199,7 @@ fn approvals_are_of_these_bytes_for_this_ledger() {
     let trusted = engineer().verifier();
     assert!(
         ledger
-            .approve(&file, statement, &trusted, &made(3))
+            .approve(&file, &[], statement, &trusted, &made(3))
             .is_err()
     );
     let file = reelgate::ledger::Object {
@@ -209,7 +209,7 @@ fn approvals_are_of_these_bytes_for_this_ledger() {
     };
     assert!(
         ledger
-            .approve(&file, statement, &trusted, &made(3))
+            .approve(&file, &[], statement, &trusted, &made(3))
             .is_err()
     );
     let file = reelgate::ledger::Object {
@@ -219,11 +219,15 @@ fn approvals_are_of_these_bytes_for_this_ledger() {
     };
     assert!(
         ledger
-            .approve(&file, statement, &signer().verifier(), &made(3))
+            .approve(&file, &[], statement, &signer().verifier(), &made(3))
             .is_err()
     );
     let forged = statement.replace("revision: 3", "revision: 4");
-    assert!(ledger.approve(&file, &forged, &trusted, &made(3)).is_err());
+    assert!(
+        ledger
+            .approve(&file, &[], &forged, &trusted, &made(3))
+            .is_err()
+    );
     assert_eq!(ledger.size().expect("a size"), 1);
 }
 

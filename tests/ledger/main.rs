@@ -10,3 +10,4 @@ mod notes;
 mod opening;
 mod support;
 mod tamper;
+mod trust;

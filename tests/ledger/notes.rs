@@ -2,7 +2,7 @@
 
 use crate::support::{ORIGIN, engineer, scratch, signer};
 use proptest::prelude::*;
-use reelgate::ledger::approval::Statement;
+use reelgate::ledger::approval::{Approved, Statement};
 use reelgate::ledger::{Checkpoint, Signer, Verifier, hex, witness};
 
 fn head() -> Checkpoint {
@@ -113,7 +113,14 @@ fn texts_that_are_no_checkpoint() {
 #[test]
 fn approvals_say_what_they_are_for() {
     let statement = Statement {
+        withdraws: false,
         ledger: ORIGIN.to_owned(),
+        entries: 7,
+        kind: Approved::Station,
+        with: vec![(
+            reelgate::ledger::sha256_hex(b"o"),
+            "compensation/open 1.csv".to_owned(),
+        )],
         file: "limits/parts/RG-0475-X7R.yaml".to_owned(),
         revision: None,
         sha256: reelgate::ledger::sha256_hex(b"x"),

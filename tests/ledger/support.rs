@@ -3,8 +3,8 @@
 use chrono::{DateTime, FixedOffset};
 use reelgate::ledger::disk::{Disk, System};
 use reelgate::ledger::{
-    Anchor, Decision, Ledger, LedgerError, Made, Object, Recorded, Report, Signer, inputs_digest,
-    verify,
+    Act, Anchor, Decision, Ledger, LedgerError, Made, Object, Query, Recorded, Report, Signer,
+    inputs_digest, verify,
 };
 use reelgate::record::LotRecord;
 use serde_json::json;
@@ -137,8 +137,18 @@ pub fn site(records: &Path) -> Vec<String> {
 pub const LIMITS: &str = "limits/parts/RG-0475-X7R.yaml";
 
 pub fn approve(ledger: &mut Ledger, bytes: &[u8], minute: u32) -> Result<Recorded, LedgerError> {
+    // Signed after the last approval of other bytes.
+    let digest = reelgate::ledger::sha256_hex(bytes);
+    let approvals = ledger.find(Query::Kind("approval"))?;
+    let other = approvals
+        .iter()
+        .filter(|entry| !matches!(&entry.act, Act::Approval { sha256, .. } if *sha256 == digest));
     let statement = reelgate::ledger::approval::Statement {
+        withdraws: false,
         ledger: ORIGIN.to_owned(),
+        entries: other.last().map_or(0, |entry| entry.index + 1),
+        kind: reelgate::ledger::approval::Approved::Limits,
+        with: Vec::new(),
         file: LIMITS.to_owned(),
         revision: Some("3".to_owned()),
         sha256: reelgate::ledger::sha256_hex(bytes),
@@ -154,7 +164,7 @@ pub fn approve(ledger: &mut Ledger, bytes: &[u8], minute: u32) -> Result<Recorde
         by: Some("QE-03"),
         ..made(minute)
     };
-    ledger.approve(&file, &note, &engineer().verifier(), &by_engineer)
+    ledger.approve(&file, &[], &note, &engineer().verifier(), &by_engineer)
 }
 
 pub fn anchor<'a>(name: &'a str, checkpoint: &'a str) -> Anchor<'a> {

@@ -1,9 +1,11 @@
 //! Records from end to end, through the program: judged, listed, shown, exported, disposed of,
 //! verified, and tampered with in every place.
 
+mod approvals;
 mod clock;
 mod documents;
 mod history;
+mod retest;
 mod site;
 mod tamper;
 

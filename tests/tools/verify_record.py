@@ -3,9 +3,8 @@
 
     verify_record.py PACKAGE [--key name+id+base64]
 
-Nothing but the standard library of Python 3.11 or later. Answers 0 where everything holds and 1
-where something does not, one line for each. Without --key the key in the package is believed,
-which proves only that the package is whole in itself.
+With the standard library of Python 3.11 alone. Answers 0 where everything holds and 1 where something
+does not. Without --key the key in the package is believed, which proves only that it is whole.
 
 Sources: RFC 8493 (BagIt), RFC 9162 section 2.1 (Merkle tree), RFC 8032 section 5.1 (Ed25519),
 C2SP signed-note, tlog-checkpoint and tlog-proof.
@@ -36,8 +35,8 @@ def sha256(data):
 
 def add(a, b):
     """Sum of two points in extended coordinates (RFC 8032 section 5.1.4)."""
-    u, v = (a[1] - a[0]) * (b[1] - b[0]) % P, (a[1] + a[0]) * (b[1] + b[0]) % P
-    w, z = 2 * a[3] * b[3] * D % P, 2 * a[2] * b[2] % P
+    u, v = (a[1] - a[0]) * (b[1] - b[0]), (a[1] + a[0]) * (b[1] + b[0])
+    w, z = 2 * a[3] * b[3] * D, 2 * a[2] * b[2]
     e, f, g, h = v - u, z - w, z + w, v + u
     return e * f % P, g * h % P, f * g % P, e * h % P
 
@@ -212,9 +211,7 @@ def check_entry(files, name, key):
     if (entry["index"], entry["ledger"], key[0]) != (index, origin, origin):
         raise Wrong(f"{name}: says of itself that it is another entry")
     for item in entry["objects"]:
-        content = files.get("data/objects/" + item["sha256"])
-        if content is None:
-            raise Wrong(f"{name}: object {item['sha256']} ({item['role']}) is missing")
+        content = files.get("data/objects/" + item["sha256"], b"")
         if sha256(content).hex() != item["sha256"] or len(content) != item["bytes"]:
             raise Wrong(f"{name}: object {item['sha256']} ({item['role']}) is not what was recorded")
     return entry, size
@@ -222,17 +219,46 @@ def check_entry(files, name, key):
 
 def check_record(files, entry):
     """Checks that the record is the one that the entry speaks of."""
-    act = entry["act"]
-    records = [o for o in entry["objects"] if o["role"] == "record"]
+    act, records = entry["act"], [o for o in entry["objects"] if o["role"] == "record"]
     if act["kind"] != "judged" or len(records) != 1:
         raise Wrong("data/entry: not the entry of a judged lot with its record")
     record = json.loads(files["data/objects/" + records[0]["sha256"]])
     pairs = [(record["record"], act["record"]), (record["verdict"], act["verdict"])]
     pairs += [(record["lot"].get(name), act[name]) for name in ("lot", "part", "supplier")]
-    for found, said in pairs:
-        if found != said:
-            raise Wrong(f"the record says {found!r} where its entry says {said!r}")
+    if any(found != said for found, said in pairs):
+        raise Wrong(f"the record says something else than its entry: {pairs}")
     return record
+
+
+def signs(key, note):
+    try:
+        return bool(open_note(note, key))
+    except Wrong:
+        return False
+
+
+def check_approvals(files, entry, record, key):
+    """Checks the signed approvals, and that the record says of them what they are."""
+    names = sorted(p[:-5] for p in files if p.startswith("data/approvals/") and p.endswith(".json"))
+    entries = [check_entry(files, name, key)[0] for name in names]
+    sites = [o["sha256"] for e in [entry, *entries] for o in e["objects"] if o["role"] == "site"]
+    lines = files.get("data/approval-keys.txt", b"").decode().splitlines()
+    if not all(any(line.encode() in files["data/objects/" + site] for site in sites) for line in lines):
+        raise Wrong("data/approval-keys.txt: a key that no site file lists")
+    at, found = {e["act"]["statement"]: e["index"] for e in entries}, []
+    for item in [o for o in entry["objects"] if o["role"] == "approval"]:
+        note = files["data/objects/" + item["sha256"]].decode()
+        by = [key[0] for key in map(read_key, lines) if signs(key, note)]
+        said = dict(line.split(": ", 1) for line in note.split("\n\n")[0].split("\n")[1:])
+        if not by or said["ledger"] != entry["ledger"] or not int(said["entries"]) <= at[note] < entry["index"]:
+            raise Wrong("an approval is not signed by a key that a site file lists, or is of another ledger or time")
+        if any((o["name"], o["sha256"]) == (said["file"], said["sha256"]) for o in entry["objects"]):
+            found.append((said["file"], said["sha256"], by[0], at[note], said["meaning"]))
+    told = [tuple(a[k] for k in ("file", "sha256", "by", "entry", "meaning")) for a in record.get("approvals", [])]
+    if sorted(told) != sorted(found):
+        raise Wrong("the record says of its approvals what they are not")
+    if record.get("site", {}).get("approval") == "required" and record["verdict"] != "hold" and len(told) < 3:
+        raise Wrong("the record was made without the approvals that its site file demands")
 
 
 def verify(folder, trusted):
@@ -243,9 +269,9 @@ def verify(folder, trusted):
         raise Wrong("the key in the package is not the one that was given")
     entry, size = check_entry(files, "data/entry", key)
     record = check_record(files, entry)
+    check_approvals(files, entry, record, key)
     certificates = set()
-    later = [p[:-5] for p in files if p.startswith("data/history/") and p.endswith(".json")]
-    for name in sorted(later):
+    for name in sorted(p[:-5] for p in files if p.startswith("data/history/") and p.endswith(".json")):
         act = check_entry(files, name, key)[0]["act"]
         if act.get("record") != record["record"]:
             raise Wrong(f"{name}: about another record")
@@ -255,6 +281,7 @@ def verify(folder, trusted):
         raise Wrong("data/certificate.pdf: not a certificate that the ledger knows")
     anchor = "by the key given" if trusted else "by the key in the package, which proves nothing of who made it"
     print(f"ok: {record['record']}, {record['verdict']}: entry {entry['index']} of {size}, signed {anchor}")
+    return 0
 
 
 def main():
@@ -263,11 +290,10 @@ def main():
     parser.add_argument("--key", help="the ledger's public key, as the site gave it to you")
     arguments = parser.parse_args()
     try:
-        verify(arguments.package, arguments.key)
+        return verify(arguments.package, arguments.key)
     except (Wrong, ValueError, KeyError, TypeError, OSError, IndexError, AttributeError) as error:
         print(f"wrong: {error!r}" if not isinstance(error, Wrong) else f"wrong: {error}")
         return 1
-    return 0
 
 
 if __name__ == "__main__":

@@ -100,9 +100,14 @@ pub(in crate::certificate) fn facts(
         ("SHA-256 of the lot file", record.lot.sha256.clone()),
     ];
     if let Some(site) = &record.site {
-        out.push(("Site", site.site.clone()));
+        out.push((
+            "Site",
+            format!("{}, approvals {}", site.site, site.approval),
+        ));
         out.push(("SHA-256 of the site file", site.sha256.clone()));
     }
+    let approved = |a: &crate::record::ApprovalSection| format!("{}: {}", a.file, a.words());
+    out.extend(record.approvals.iter().map(|a| ("Approved", approved(a))));
     out
 }
 

@@ -6,19 +6,24 @@ use crate::certificate::flow::Flow;
 use crate::certificate::ink::QUIET;
 use crate::certificate::structure::Role;
 use crate::certificate::text::{Style, width, wrap};
+use crate::record::LotRecord;
 
 const CODE: Style = Style::regular(8.6);
 const NUMBER: Style = Style::regular(7.4).ink(QUIET);
 const LEADING: f64 = 10.8;
 const INDENT: f64 = 26.0;
 
-pub(in crate::certificate) fn sources(flow: &mut Flow, sources: &Sources) {
-    for (title, text) in [
-        ("Limit file", sources.limit_file),
-        ("Station file", sources.station_file),
+pub(in crate::certificate) fn sources(flow: &mut Flow, record: &LotRecord, sources: &Sources) {
+    for (title, folder, text) in [
+        ("Limit file", "limits/parts/", sources.limit_file),
+        ("Station file", "limits/stations/", sources.station_file),
     ] {
         if let Some(text) = text {
             flow.heading(title, 60.0);
+            if let Some(words) = record.approval_words(folder) {
+                flow.paragraph(&words);
+                flow.gap(4.0);
+            }
             verbatim(flow, text);
         }
     }

@@ -1,5 +1,6 @@
 //! `limits check`: every fault of every file.
 
+use super::desk::Desk;
 use super::files::{self, Valid};
 use super::{INVALID, OK};
 use crate::diagnostic::{Faults, as_json, printable, wrap};
@@ -14,6 +15,8 @@ use std::path::{Path, PathBuf};
 struct Checked {
     path: String,
     result: Result<Valid, Faults>,
+    /// Whether it is approved, and where it stands in words; of files that approvals are about.
+    approval: Option<(bool, String)>,
 }
 
 /// Checks files and folders; without any, the limits of the site.
@@ -29,6 +32,15 @@ pub fn run(
     let paths = if paths.is_empty() { &default } else { paths };
     let checked: Vec<Checked> = paths.iter().flat_map(|path| check(path)).collect();
     let mut checked = checked;
+    match Desk::open(site) {
+        Ok(desk) => checked.iter_mut().for_each(|file| file.ask(&desk)),
+        // A faulty site file is among the results where it was to be checked.
+        Err(_) if checked.iter().any(|file| file.result.is_err()) => {}
+        Err(text) => {
+            let line = printable(&format!("warning: approvals were not looked at: {text}"));
+            let _ = writeln!(err, "{line}");
+        }
+    }
     let bench = match station.map(files::read) {
         Some(Ok(Valid::Station(station))) => Some(station),
         Some(Ok(_)) => {
@@ -38,6 +50,7 @@ pub fn run(
             checked.push(Checked {
                 path,
                 result: Err(faults),
+                approval: None,
             });
             None
         }
@@ -46,6 +59,7 @@ pub fn run(
             checked.push(Checked {
                 path,
                 result: Err(faults),
+                approval: None,
             });
             None
         }
@@ -67,10 +81,20 @@ pub fn run(
     Ok(if invalid == 0 { OK } else { INVALID })
 }
 
+impl Checked {
+    fn ask(&mut self, desk: &Desk) {
+        let path = Path::new(&self.path);
+        if let (Ok(valid), Ok(bytes)) = (&self.result, files::bytes(path)) {
+            self.approval = desk.words(path, valid, bytes);
+        }
+    }
+}
+
 fn check(path: &Path) -> Vec<Checked> {
     let failed = |path: &Path, faults: Faults| Checked {
         path: path.display().to_string(),
         result: Err(faults),
+        approval: None,
     };
     match files::find(path) {
         Err(faults) => vec![failed(path, faults)],
@@ -80,6 +104,7 @@ fn check(path: &Path) -> Vec<Checked> {
             .map(|file| Checked {
                 path: file.display().to_string(),
                 result: files::read(file),
+                approval: None,
             })
             .collect(),
     }
@@ -113,6 +138,12 @@ fn write_text(
         };
         for line in wrap(&line, 80) {
             writeln!(out, "{line}")?;
+        }
+        if let Some((approved, words)) = &file.approval {
+            let mark = if *approved { "✔" } else { "‖" };
+            for line in wrap(&printable(&format!("{mark} {words}")), 76) {
+                writeln!(out, "    {line}")?;
+            }
         }
     }
     let valid = checked.len().saturating_sub(invalid);
@@ -212,6 +243,9 @@ fn file_json(file: &Checked, bench: Option<&Station>) -> serde_json::Value {
         json!({"path": file.path, "valid": file.result.is_ok(), "kind": kind, "faults": faults});
     if let (Ok(Valid::Limits(limits)), Some(station)) = (&file.result, bench) {
         all["bench"] = json!(abilities(limits, station));
+    }
+    if let Some((approved, words)) = &file.approval {
+        all["approval"] = json!({"approved": approved, "text": words});
     }
     all
 }

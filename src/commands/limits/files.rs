@@ -100,8 +100,12 @@ pub enum Valid {
 
 /// Reads a file as what it is.
 pub fn read(path: &Path) -> Result<Valid, Faults> {
+    parse(path, &bytes(path)?)
+}
+
+/// The file with these bytes, as what it is.
+pub fn parse(path: &Path, bytes: &[u8]) -> Result<Valid, Faults> {
     let name = path.display().to_string();
-    let bytes = bytes(path)?;
     if path.extension().is_some_and(|e| e != "yaml") {
         return Err(Faults::of_file(
             &name,
@@ -111,11 +115,11 @@ pub fn read(path: &Path) -> Result<Valid, Faults> {
             Some("rename the file".to_owned()),
         ));
     }
-    match kind(path, &name, &bytes)? {
-        Kind::Limits => crate::limits::read(&name, &bytes).map(|l| Valid::Limits(Box::new(l))),
-        Kind::Station => station(path, &name, &bytes),
-        Kind::Lot => crate::lot::read(&name, &bytes).map(|l| Valid::Lot(Box::new(l))),
-        Kind::Site => crate::site::read(&name, &bytes).map(|s| Valid::Site(Box::new(s))),
+    match kind(path, &name, bytes)? {
+        Kind::Limits => crate::limits::read(&name, bytes).map(|l| Valid::Limits(Box::new(l))),
+        Kind::Station => station(path, &name, bytes),
+        Kind::Lot => crate::lot::read(&name, bytes).map(|l| Valid::Lot(Box::new(l))),
+        Kind::Site => crate::site::read(&name, bytes).map(|s| Valid::Site(Box::new(s))),
     }
 }
 

@@ -265,7 +265,8 @@ fn csv(lines: &[Line]) -> Result<Vec<u8>, csv::Error> {
 
 /// A cell that a spreadsheet would take for a formula gets an apostrophe in front.
 pub(super) fn cell(text: &str) -> String {
-    if text.starts_with(['=', '+', '-', '@', '\t', '\r']) {
+    const BEGIN: [char; 11] = ['=', '+', '-', '@', '\t', '\r', '\n', '＝', '＋', '－', '＠'];
+    if text.starts_with(BEGIN) {
         format!("'{text}")
     } else {
         text.to_owned()
@@ -292,6 +293,9 @@ mod tests {
 
     #[test]
     fn no_cell_is_a_formula_and_no_text_breaks_a_row() {
+        for c in ['=', '+', '-', '@', '\t', '\r', '\n', '＝', '＋', '－', '＠'] {
+            assert_eq!(cell(&format!("{c}1")), format!("'{c}1"));
+        }
         let bytes = csv(&[line("=cmd|' /C x'!A0"), line("a,\"b\"\r\nc")]).expect("CSV");
         let text = String::from_utf8(bytes).expect("text");
         assert!(text.contains(",'=cmd|' /C x'!A0,"), "{text}");

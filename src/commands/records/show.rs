@@ -104,6 +104,9 @@ pub fn words(entry: &Entry) -> String {
             )
         }
         Act::Approval { file, .. } => format!("approval of {file}"),
+        Act::Withdrawal { file, reason, .. } => {
+            format!("approval of {file} withdrawn, because: {reason}")
+        }
         Act::Issue { certificate, .. } => format!("certificate issued, SHA-256 {certificate}"),
         Act::Reissue {
             certificate,

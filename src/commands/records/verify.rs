@@ -1,6 +1,7 @@
 //! `records verify`: whether the records are what was recorded.
 
 mod again;
+mod approvals;
 mod files;
 mod report;
 
@@ -110,6 +111,7 @@ fn examine(
         outcome.findings.extend(certificates.check(document, None));
     }
     files::beside(ledger, site, &certificates, &entries, &mut outcome);
+    approvals::check(ledger, &entries, site, &mut outcome);
     again::judge_all(ledger, &entries, &mut outcome);
     Ok(outcome)
 }

@@ -1,7 +1,7 @@
 //! Every record judged again from the archived bytes, and compared byte for byte.
 
 use super::Outcome;
-use crate::commands::evidence::{Evidence, remake};
+use crate::commands::evidence::remake_digested;
 use crate::diagnostic::excerpt;
 use crate::ledger::{Act, Entry, Ledger};
 use crate::record::{LotRecord, from_bytes, to_bytes};
@@ -27,8 +27,8 @@ fn judge(ledger: &Ledger, entry: &Entry) -> Result<(), (&'static str, String)> {
         .map_err(|e| impossible(e.to_string()))?;
     let record = from_bytes(&archived)
         .map_err(|e| impossible(format!("the archived record is no lot record ({e})")))?;
-    let (sources, made) = remake(ledger, entry).map_err(|e| impossible(e.to_string()))?;
-    let digest = Evidence::of(&sources).map_or(String::new(), |evidence| evidence.digest());
+    let (_, made, digest) =
+        remake_digested(ledger, entry).map_err(|e| impossible(e.to_string()))?;
     if let Some(what) = contradiction(entry, &record, &digest) {
         return Err((
             "entry_contradicts_record",
