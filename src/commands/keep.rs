@@ -241,6 +241,7 @@ fn finish(
         warnings.extend(document.warnings);
         write(&paths, Some(&document.pdf), json)
     });
+    warnings.extend(recorded.entry.notes.iter().map(|note| note.text.clone()));
     warnings.extend(place.tell_witness(ledger).err());
     Kept {
         record: made.record.clone(),
