@@ -157,7 +157,7 @@ impl Sitting<'_> {
         match self.scan(first)? {
             Scanned::Ready(identity) => self.plan(*identity),
             Scanned::Resume(lot, intake) => {
-                let work = match self.resume(&lot, intake) {
+                let work = match self.resume(&lot, *intake) {
                     Ok(work) => work,
                     Err(Over::Failed(why)) => return self.tell(vec![Message::bad(why)]),
                     Err(over) => return Err(over),
@@ -200,7 +200,7 @@ impl Sitting<'_> {
                     self.wishes.station = Some(identity.station.clone());
                     return Ok(Scanned::Ready(identity));
                 }
-                Outcome::Resume(lot) => return Ok(Scanned::Resume(lot, intake)),
+                Outcome::Resume(lot) => return Ok(Scanned::Resume(lot, Box::new(intake))),
                 Outcome::Want(want) => want,
             };
             let line = match first.take_if(|_| want == Want::Label) {
@@ -837,7 +837,7 @@ impl Sitting<'_> {
 
 enum Scanned {
     Ready(Box<Identity>),
-    Resume(String, Intake),
+    Resume(String, Box<Intake>),
 }
 
 fn is_leave(line: &str) -> bool {
