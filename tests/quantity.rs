@@ -545,6 +545,54 @@ fn part_numbers_give_codes_and_little_else() {
     }
 }
 
+#[derive(serde::Deserialize)]
+struct Letter {
+    position: String,
+    symbol: String,
+}
+
+/// EIA-198: every temperature characteristic of class 2 that its letters make, and those of class 1 in
+/// use, with their other names. None of them is a capacitance, and none hides the one beside it.
+#[test]
+fn temperature_characteristics_are_no_capacitances() {
+    let letters: Vec<Letter> = table("eia_class2_letters.csv");
+    let at = |position: &str| -> Vec<&str> {
+        let rows = letters.iter().filter(|l| l.position.starts_with(position));
+        rows.map(|l| l.symbol.as_str()).collect()
+    };
+    let (lows, digits, changes) = (at("1"), at("2"), at("3"));
+    assert_eq!((lows.len(), digits.len(), changes.len()), (3, 7, 13));
+    let mut codes: Vec<String> = Vec::new();
+    for low in &lows {
+        for digit in &digits {
+            codes.extend(changes.iter().map(|change| format!("{low}{digit}{change}")));
+        }
+    }
+    let combinations: Vec<std::collections::BTreeMap<String, String>> =
+        table("eia_class2_combinations.csv");
+    for row in &combinations {
+        assert!(codes.contains(&row["code"]), "{}", row["code"]);
+    }
+    let class_1: Vec<std::collections::BTreeMap<String, String>> = table("eia_class1_common.csv");
+    codes.extend(
+        class_1
+            .iter()
+            .flat_map(|row| [row["eia"].clone(), row["industry"].clone()]),
+    );
+    for code in codes {
+        let text = format!("4.7 µF ±10 % 25 V {code} 0805");
+        assert_eq!(find_capacitances(&text), [4.7e-6], "{text}");
+        let text = format!("CAP {code} 25V");
+        assert_eq!(find_capacitances(&text), Vec::<f64>::new(), "{text}");
+        let number = format!("RG-0475-{code}");
+        let codes = capacitance_code(&number);
+        assert!(codes.contains(&4.7e-6), "{number}: {codes:?}");
+        // `P100` and `U1G` of class 1 have the form of marking codes; class 2 has none such.
+        let class_2 = code.starts_with(['X', 'Y', 'Z']);
+        assert!(codes.len() == 1 || !class_2, "{number}: {codes:?}");
+    }
+}
+
 #[test]
 fn capacitances_written_out_are_found_in_descriptions() {
     let cases: [(&str, &[f64]); 12] = [

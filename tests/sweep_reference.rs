@@ -290,6 +290,40 @@ fn standards_that_are_named_must_be_used() {
         Standards::read(&files, &mixed).expect_err("mixed up")[0].code,
         "standard_implausible"
     );
+    // A load that is another one, and a short whose contact flickers at one point.
+    let mut wrong = station.clone();
+    if let Some(load) = &mut wrong.compensation.load {
+        load.resistance = 100.0;
+    }
+    let fault = &Standards::read(&files, &wrong).expect_err("another load")[0];
+    assert_eq!(fault.code, "standard_implausible");
+    assert!(fault.text.contains("0.499 times"), "{fault:?}");
+    let mut flickers = files.clone();
+    let text = String::from_utf8_lossy(&files[1].bytes).into_owned();
+    let lines: Vec<String> = text
+        .lines()
+        .enumerate()
+        .map(|(i, line)| {
+            let (f, z) = line.split_once(',').expect("columns");
+            let (re, im) = z.split_once(',').expect("columns");
+            match re.parse::<f64>() {
+                Ok(re) if i == 30 => format!("{f},{},{im}", re + 0.05),
+                _ => line.to_owned(),
+            }
+        })
+        .collect();
+    flickers[1].bytes = (lines.join("\n") + "\n").into_bytes();
+    let fault = &Standards::read(&flickers, &station).expect_err("a bad contact")[0];
+    // On so coarse a list one point off and a step look alike.
+    assert!(
+        ["intermittent_contact", "step_in_sweep"].contains(&fault.code.as_str()),
+        "{fault:?}"
+    );
+    assert!(fault.text.starts_with("short standard, "), "{fault:?}");
+    // With cable in the jig the standards are as sound.
+    for fixture in ["F1", "F2"] {
+        standards(&fixture_station(fixture), fixture);
+    }
     // A standard that does not reach as far as the sweep.
     let mut short = files.clone();
     let text = String::from_utf8_lossy(&short[1].bytes)

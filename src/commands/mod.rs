@@ -11,6 +11,7 @@ mod passphrase;
 mod plan;
 mod present;
 mod records;
+mod signing;
 mod site;
 mod store;
 mod switching;

@@ -12,7 +12,7 @@ pub(super) fn readable(text: &str) -> Vec<char> {
     let mut characters: Vec<char> = clean(&text).chars().collect();
     for at in 0..characters.len() {
         if let Some([low, digit, high]) = characters.get(at..at + 3) {
-            let class_2 = "XYZ".contains(*low) && "245678".contains(*digit);
+            let class_2 = "XYZ".contains(*low) && "2456789".contains(*digit);
             if class_2 && "ABCDEFLPRSTUV".contains(*high) {
                 characters
                     .iter_mut()

@@ -21,7 +21,16 @@ struct Candidate {
     value: f64,
     /// Sensitivity to the phase, Ω/rad.
     per_radian: f64,
-    scatter: f64,
+    scatter: Scatter,
+}
+
+/// Where the scatter comes from: it is worked out for the two extremes alone.
+#[derive(Debug, Clone, Copy)]
+enum Scatter {
+    /// Of a point that counts as it was measured.
+    OfPoint(f64),
+    /// Of a fit, by its number, along a direction of Z.
+    OfFit(usize, Complex64),
 }
 
 /// The lowest and the highest value of `characteristic` (ESR or impedance) from `from` to `to` Hz.
@@ -37,11 +46,18 @@ pub(super) fn read(
             return neither(outside(sweep, end));
         }
     }
-    let found = candidates(sweep, characteristic, from, to).unwrap_or_default();
+    let (found, fits) = candidates(sweep, characteristic, from, to).unwrap_or_default();
     let lowest = found.iter().min_by(|a, b| a.value.total_cmp(&b.value));
     let highest = found.iter().max_by(|a, b| a.value.total_cmp(&b.value));
-    let estimate =
-        |c: &Candidate| Ok(Estimate::new(c.value, 1.0, c.per_radian, c.scatter).at(c.frequency));
+    let estimate = |c: &Candidate| {
+        let scatter = match c.scatter {
+            Scatter::OfPoint(scatter) => scatter,
+            Scatter::OfFit(fit, direction) => fits
+                .get(fit)
+                .map_or(f64::INFINITY, |fit| fit.sigma(c.frequency, direction)),
+        };
+        Ok(Estimate::new(c.value, 1.0, c.per_radian, scatter).at(c.frequency))
+    };
     match (lowest, highest) {
         (Some(lowest), Some(highest)) => (estimate(lowest), estimate(highest)),
         _ => neither(Reading::missing(
@@ -51,6 +67,9 @@ pub(super) fn read(
     }
 }
 
+/// Candidates with the fits that they come from.
+type Candidates = (Vec<Candidate>, Vec<LocalFit>);
+
 /// Values at the band's ends and at the points between them; each fit serves the points within a
 /// quarter of its width around its centre.
 fn candidates(
@@ -58,34 +77,36 @@ fn candidates(
     characteristic: Characteristic,
     from: f64,
     to: f64,
-) -> Option<Vec<Candidate>> {
+) -> Option<Candidates> {
     let points = &sweep.frequency;
     let start = points.partition_point(|f| *f <= from);
     let end = points.partition_point(|f| *f < to);
     let mut found = Vec::with_capacity(end.saturating_sub(start) + 2);
     let reach = (WIDTH / 4.0).exp();
-    let mut fit: Option<(LocalFit, f64)> = None;
+    let mut fits: Vec<LocalFit> = Vec::new();
+    let mut until = f64::NEG_INFINITY;
     let between = (start..end).map(|i| (points[i], Some(sweep.impedance[i])));
     for (f, z) in std::iter::once((from, None))
         .chain(between)
         .chain([(to, None)])
     {
-        if fit.as_ref().is_none_or(|(_, until)| f > *until) {
+        if f > until {
             let centre = (f * reach).min(to.max(f));
-            fit = Some((local(sweep, centre)?, centre * reach));
+            fits.push(local(sweep, centre)?);
+            until = centre * reach;
         }
-        let Some((fit, _)) = &fit else { continue };
-        found.push(candidate(fit, characteristic, f, z));
+        found.push(candidate(&fits, characteristic, f, z)?);
     }
-    Some(found)
+    Some((found, fits))
 }
 
 fn candidate(
-    fit: &LocalFit,
+    fits: &[LocalFit],
     characteristic: Characteristic,
     f: f64,
     measured: Option<Complex64>,
-) -> Candidate {
+) -> Option<Candidate> {
+    let fit = fits.last()?;
     let of = |z: Complex64| match characteristic {
         Characteristic::Impedance => (z.norm(), 0.0, z / z.norm()),
         _ => (z.re, -z.im, Complex64::ONE),
@@ -95,18 +116,18 @@ fn candidate(
         let scatter = fit.point_scatter(z, direction);
         let (raw, per_radian, _) = of(z);
         if (raw - value).abs() > APART * scatter && (raw - value).abs() > 1e-6 * z.norm() {
-            return Candidate {
+            return Some(Candidate {
                 frequency: f,
                 value: raw,
                 per_radian,
-                scatter,
-            };
+                scatter: Scatter::OfPoint(scatter),
+            });
         }
     }
-    Candidate {
+    Some(Candidate {
         frequency: f,
         value,
         per_radian,
-        scatter: fit.sigma(f, direction),
-    }
+        scatter: Scatter::OfFit(fits.len() - 1, direction),
+    })
 }

@@ -19,6 +19,8 @@ const SEARCH: f64 = 0.15 * LN_10;
 const GATE: f64 = 0.3;
 /// How far from a fit's centre its minimum is believed: 0.2 decade. Farther off the fit is moved.
 const REACH: f64 = 0.2 * LN_10;
+/// Share of the golden section, (3 − √5)/2.
+const GOLDEN: f64 = 0.381_966_011_250_105;
 /// How often the fit may be moved.
 const MOVES: usize = 8;
 
@@ -105,13 +107,19 @@ fn minimum(fit: &LocalFit, low: f64, high: f64) -> f64 {
         }
     }
     let (mut a, mut b) = ((least.0 / step).max(low), (least.0 * step).min(high));
+    // Each step keeps one of its two inner points for the next.
+    let third = (b / a).powf(GOLDEN);
+    let (mut c, mut d) = (a * third, b / third);
+    let (mut at_c, mut at_d) = (resistance(c), resistance(d));
     for _ in 0..30 {
-        let third = (b / a).powf(0.381_966_011_250_105);
-        let (c, d) = (a * third, b / third);
-        if resistance(c) < resistance(d) {
-            b = d
+        if at_c < at_d {
+            (b, d, at_d) = (d, c, at_c);
+            c = a * (b / a).powf(GOLDEN);
+            at_c = resistance(c);
         } else {
-            a = c
+            (a, c, at_c) = (c, d, at_d);
+            d = b / (b / a).powf(GOLDEN);
+            at_d = resistance(d);
         }
     }
     (a * b).sqrt()

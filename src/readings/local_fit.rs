@@ -334,16 +334,24 @@ fn dot(a: Complex64, b: Complex64) -> f64 {
     a.re * b.re + a.im * b.im
 }
 
-/// `u` and `s` at one frequency, relative to the centre.
+/// Highest power of `u` in a term.
+const HIGHEST: usize = 4;
+
+/// Powers of `u`, and `s`, at one frequency, relative to the centre.
 struct Point {
-    u: Complex64,
+    u: [Complex64; HIGHEST + 1],
     s: Complex64,
 }
 
 impl Point {
     fn new(ratio: f64) -> Point {
+        let mut u = [Complex64::ONE; HIGHEST + 1];
+        let first = Complex64::new(ratio.ln(), FRAC_PI_2);
+        for power in 1..=HIGHEST {
+            u[power] = u[power - 1] * first;
+        }
         Point {
-            u: Complex64::new(ratio.ln(), FRAC_PI_2),
+            u,
             s: Complex64::new(0.0, ratio),
         }
     }
@@ -358,7 +366,7 @@ impl Point {
     }
 
     fn u_power(&self, power: i32) -> Complex64 {
-        (0..power).fold(Complex64::ONE, |product, _| product * self.u)
+        self.u[power as usize]
     }
 
     fn value(&self, term: Term) -> Complex64 {

@@ -9,6 +9,7 @@
 //! short that is taken as zero adds its inductance to every part.
 
 use super::file;
+use super::validity;
 use super::{RawFile, Sweep};
 use crate::diagnostic::Note;
 use crate::station::{Standard, Station};
@@ -21,6 +22,10 @@ const SAME: f64 = 1e-6;
 /// The open must read so many times the short (in the middle of the common range); less is no
 /// pair of standards.
 const OPEN_OVER_SHORT: f64 = 20.0;
+
+/// With open and short alone the load must read within this factor of what it is, in the lower half of
+/// its sweep, where those two suffice whatever the jig.
+const LOAD_OFF: f64 = 1.5;
 
 /// The standards of a station as measured on its jig, ready to be used.
 #[derive(Debug, Clone, PartialEq)]
@@ -49,7 +54,7 @@ impl Standards {
     ///
     /// # Errors
     /// A sweep that is missing or cannot be read, a load without open and short, an open that
-    /// does not stand clear of the short. At least one note, each naming the standard.
+    /// does not stand clear of the short, a load that reads like another. At least one note, each naming the standard.
     pub fn read(files: &[RawFile], station: &Station) -> Result<Standards, Vec<Note>> {
         let mut faults = Vec::new();
         let named = &station.compensation;
@@ -75,7 +80,10 @@ impl Standards {
             ));
         }
         if faults.is_empty() {
-            standards.distinct().map_err(|note| vec![note])?;
+            standards
+                .distinct()
+                .and_then(|()| standards.load_as_stated())
+                .map_err(|note| vec![note])?;
             Ok(standards)
         } else {
             Err(faults)
@@ -175,6 +183,46 @@ impl Standards {
     }
 }
 
+impl Standards {
+    /// The load, read with open and short alone, is about what the station file says.
+    fn load_as_stated(&self) -> Result<(), Note> {
+        let (Some(open), Some(short), Some(load)) = (&self.open, &self.short, &self.load) else {
+            return Ok(());
+        };
+        let half = load.frequency.len().div_ceil(2);
+        let mut ratios: Vec<f64> = load
+            .frequency
+            .iter()
+            .zip(&load.impedance)
+            .take(half)
+            .filter_map(|(f, read)| {
+                let omega = TAU * f;
+                let one = |m: &Measured| m.at(std::slice::from_ref(f)).ok()?.first().copied();
+                let g = Complex64::new(0.0, omega * open.standard.capacitance);
+                let s = short.standard.impedance(omega);
+                let found = open_short(*read, one(open)?, one(short)?, g, s);
+                Some(found.norm() / load.standard.impedance(omega).norm())
+            })
+            .filter(|ratio| ratio.is_finite())
+            .collect();
+        let middle = ratios.len() / 2;
+        if ratios.is_empty() {
+            return Ok(());
+        }
+        let (_, median, _) = ratios.select_nth_unstable_by(middle, f64::total_cmp);
+        if (1.0 / LOAD_OFF..=LOAD_OFF).contains(median) {
+            return Ok(());
+        }
+        Err(Note::new(
+            "standard_implausible",
+            format!(
+                "the load (`{}`) reads {median:.3} times what the station file states: is it the right standard, and was its contact good? Record it again, or correct the station file",
+                load.name
+            ),
+        ))
+    }
+}
+
 impl Standard {
     /// True impedance in Ω at an angular frequency: `R + jωL`, with `C` in parallel.
     fn impedance(&self, omega: f64) -> Complex64 {
@@ -247,6 +295,10 @@ impl Measured {
                 })
                 .collect::<Vec<_>>()
         })?;
+        if let Some(note) = validity::unsteady(&sweep) {
+            let text = format!("{role} standard, `{name}`: {}", note.text);
+            return Err(vec![Note::new(&note.code, text)]);
+        }
         Ok(Measured {
             name: name.clone(),
             position: sweep.frequency.iter().map(|f| f.ln()).collect(),

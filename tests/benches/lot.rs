@@ -1,6 +1,10 @@
 //! Where the time of judging a lot goes: reading, readings, statistics, PDF, each apart, and each as
 //! a ratio to a floor measured in the same run.
 //!
+//! Below the table stands what a sweep's numbers cost beside getting them: validity, readings and
+//! equivalent circuit, each as a ratio to reading and parsing the same files with the csv crate, which
+//! is what a program like this would be written with.
+//!
 //! The floor is what cannot be saved: the SHA-256 of the sweep files' bytes, which the record needs.
 //! `cargo bench --bench lot` prints a table; `-- 1250` sets the number of parts (125 where none is
 //! given), each with 401 points.
@@ -8,10 +12,11 @@
 use num_complex::Complex64;
 use reelgate::certificate::{self, Curve, Paper};
 use reelgate::judgement::{judge_part, judge_try};
-use reelgate::readings::Budget;
+use reelgate::readings::{Budget, circuit};
 use reelgate::record::{Occasion, Sources, make, sha256};
 use reelgate::statistics::sampling::Severity;
-use reelgate::sweep::{Attempt, RawFile, read_file};
+use reelgate::sweep::validity::{self, Evidence};
+use reelgate::sweep::{Attempt, RawFile, Sweep, read_file};
 use std::f64::consts::TAU;
 use std::hint::black_box;
 use std::io::Write;
@@ -151,6 +156,7 @@ fn main() {
         limit_file: Some(LIMITS),
         station_file: Some(STATION),
         ledger: None,
+        signature: None,
     };
 
     let floor = time(|| {
@@ -197,6 +203,7 @@ fn main() {
             time(|| certificate::render(&made.record, &curves, &files, Paper::A4)),
         ),
     ];
+    let pieces = pieces(&sources, &station, &attempts, &judge);
     let mut out = std::io::stdout().lock();
     let _ = writeln!(
         out,
@@ -210,4 +217,74 @@ fn main() {
             duration.as_secs_f64() * 1e3
         );
     }
+    let _ = writeln!(out, "\neach sweep, one core");
+    let csv = pieces[0].1.as_secs_f64();
+    for (name, duration) in pieces {
+        let each = duration.as_secs_f64() / parts as f64;
+        let _ = writeln!(
+            out,
+            "{name:<44} {:>10.1} µs {:>8.2} × the csv crate",
+            each * 1e6,
+            duration.as_secs_f64() / csv
+        );
+    }
+}
+
+/// The files' numbers by the csv crate with the standard library's numbers: a floor that a careful
+/// program has without work of its own.
+fn by_csv_crate(file: &RawFile) -> Vec<[f64; 3]> {
+    let mut reader = csv::Reader::from_reader(file.bytes.as_slice());
+    let mut record = csv::ByteRecord::new();
+    let mut rows = Vec::new();
+    while reader.read_byte_record(&mut record).expect("rows") {
+        let value = |i: usize| -> f64 {
+            let text = std::str::from_utf8(&record[i]).expect("text");
+            text.parse().expect("a number")
+        };
+        rows.push([value(0), value(1), value(2)]);
+    }
+    rows
+}
+
+/// What a sweep costs beside getting it.
+fn pieces(
+    sources: &Sources,
+    station: &reelgate::station::Station,
+    attempts: &[Attempt],
+    judge: &dyn Fn(&Attempt) -> reelgate::judgement::PartRecord,
+) -> Vec<(&'static str, Duration)> {
+    let evidence = Evidence::of(station);
+    let sweeps: Vec<&Sweep> = attempts
+        .iter()
+        .filter_map(|a| a.sweep.as_ref().ok())
+        .collect();
+    let read = |f: &RawFile| read_file(f, station, None);
+    let csv = time(|| sources.sweeps.iter().map(by_csv_crate).collect::<Vec<_>>());
+    let digest = time(|| {
+        sources
+            .sweeps
+            .iter()
+            .map(|f| sha256(&f.bytes))
+            .collect::<Vec<_>>()
+    });
+    let whole = time(|| sources.sweeps.iter().map(read).collect::<Vec<_>>());
+    let valid = time(|| {
+        sweeps
+            .iter()
+            .map(|s| validity::check(s, &evidence))
+            .collect::<Vec<_>>()
+    });
+    let readings = time(|| attempts.iter().map(judge).collect::<Vec<_>>());
+    let fit = time(|| sweeps.iter().map(|s| circuit::fit(s)).collect::<Vec<_>>());
+    vec![
+        ("reading and parsing by the csv crate", csv),
+        (
+            "reading and parsing (without digest, validity)",
+            whole.saturating_sub(digest + valid),
+        ),
+        ("validity", valid),
+        ("readings and judgement", readings),
+        ("equivalent circuit", fit),
+        ("validity, readings and circuit", valid + readings + fit),
+    ]
 }

@@ -149,9 +149,15 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
             Circuit::Ladder(stages) if stages > 2 => best.circuit == Circuit::Ladder(stages - 1),
             _ => true,
         };
-        // An element that came out negative says that the circuit is not the right one.
+        // An element that came out negative says that the circuit is not the right one, unless what
+        // is left is noise all the same.
         let whole = best.free.len() == best.circuit.parameters();
-        if !goes_on || enough(&best, limit) && (whole || circuit != Circuit::DispersiveEddy) {
+        if !goes_on {
+            continue;
+        }
+        if enough(&best, limit)
+            && (whole || circuit != Circuit::DispersiveEddy || is_noise(data, &best))
+        {
             continue;
         }
         let found = physical(data, circuit, &rough.parameters(circuit));
@@ -160,6 +166,23 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
         }
     }
     best
+}
+
+/// Whether neighbouring residuals go no more together than those of noise do: their correlation has
+/// a standard deviation of 1/√(2n) then.
+fn is_noise(data: &Data, m: &Minimum) -> bool {
+    let all = data.residual(m.circuit, &m.parameters);
+    autocorrelation(&all) < 2.0 / (2.0 * all.len() as f64).sqrt()
+}
+
+/// Correlation of neighbouring residuals; 0 where there are none.
+fn autocorrelation(all: &[Complex64]) -> f64 {
+    let square: f64 = all.iter().map(|r| r.norm_sqr()).sum();
+    let together: f64 = all
+        .windows(2)
+        .map(|r| r[0].re * r[1].re + r[0].im * r[1].im)
+        .sum();
+    if square > 0.0 { together / square } else { 0.0 }
 }
 
 /// Whether the sweep tells every element: an element known to no better than a factor of e is one
@@ -220,17 +243,12 @@ fn residual(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> Residual {
             (largest, largest_at) = (r.norm(), *f);
         }
     }
-    let square: f64 = all.iter().map(|r| r.norm_sqr()).sum();
-    let together: f64 = all
-        .windows(2)
-        .map(|r| r[0].re * r[1].re + r[0].im * r[1].im)
-        .sum();
     Residual {
         rms: rms(data, m),
         largest,
         largest_at,
         noise,
-        autocorrelation: if square > 0.0 { together / square } else { 0.0 },
+        autocorrelation: autocorrelation(&all),
     }
 }
 

@@ -8,11 +8,14 @@ use num_complex::Complex64;
 pub(super) type Square = [[f64; MOST]; MOST];
 
 /// The points to be fitted, with what the circuits need of their frequencies.
-pub(super) struct Data<'a> {
+pub(super) struct Data {
     pub(super) points: Vec<Point>,
-    pub(super) impedance: &'a [Complex64],
+    pub(super) impedance: Vec<Complex64>,
     /// 1/|Z|
     weight: Vec<f64>,
+    /// Every eighth point, where there are enough: a search that begins at its minimum is over in a
+    /// few steps.
+    thin: Option<Box<Data>>,
 }
 
 /// Where the search ended.
@@ -32,16 +35,30 @@ pub(super) struct Minimum {
 /// Evaluations after which a search is given up: a circuit that fits needs a dozen.
 const MOST_EVALUATIONS: usize = 60;
 
-impl<'a> Data<'a> {
-    pub(super) fn new(frequency: &[f64], impedance: &'a [Complex64]) -> Data<'a> {
-        Data {
+/// Every so manieth point is in the thin data, and at least so many are left.
+const THIN: usize = 8;
+const THIN_LEAST: usize = 32;
+
+impl Data {
+    pub(super) fn new(frequency: &[f64], impedance: &[Complex64]) -> Data {
+        let mut data = Data {
             points: frequency.iter().map(|f| Point::new(*f)).collect(),
-            impedance,
+            impedance: impedance.to_vec(),
             weight: impedance
                 .iter()
                 .map(|z| 1.0 / z.norm_sqr().sqrt())
                 .collect(),
+            thin: None,
+        };
+        if data.points.len() >= THIN * THIN_LEAST {
+            data.thin = Some(Box::new(Data {
+                points: data.points.iter().copied().step_by(THIN).collect(),
+                impedance: data.impedance.iter().copied().step_by(THIN).collect(),
+                weight: data.weight.iter().copied().step_by(THIN).collect(),
+                thin: None,
+            }));
         }
+        data
     }
 
     /// Number of real residuals.
@@ -55,7 +72,7 @@ impl<'a> Data<'a> {
         let mut scratch = [Complex64::ZERO; MOST];
         self.points
             .iter()
-            .zip(self.impedance)
+            .zip(&self.impedance)
             .zip(&self.weight)
             .map(|((at, z), w)| (circuit.evaluate(*at, &mut scratch) - z) * *w)
             .collect()
@@ -71,7 +88,7 @@ impl<'a> Data<'a> {
         let circuit = circuit.prepare(p);
         let mut derivatives = [Complex64::ZERO; MOST];
         let mut column = [Complex64::ZERO; MOST];
-        for ((at, z), w) in self.points.iter().zip(self.impedance).zip(&self.weight) {
+        for ((at, z), w) in self.points.iter().zip(&self.impedance).zip(&self.weight) {
             let residual = (circuit.evaluate(*at, &mut derivatives) - z) * *w;
             normal.sum += residual.norm_sqr();
             for (c, k) in column.iter_mut().zip(free) {
@@ -97,7 +114,7 @@ impl<'a> Data<'a> {
         let circuit = minimum.circuit.prepare(&minimum.parameters);
         let mut sums = [0.0; MOST];
         let mut derivatives = [Complex64::ZERO; MOST];
-        for ((at, z), w) in self.points.iter().zip(self.impedance).zip(&self.weight) {
+        for ((at, z), w) in self.points.iter().zip(&self.impedance).zip(&self.weight) {
             circuit.evaluate(*at, &mut derivatives);
             let r = residual(*z) * *w;
             for (sum, k) in sums.iter_mut().zip(&minimum.free) {
@@ -109,7 +126,22 @@ impl<'a> Data<'a> {
     }
 
     /// Searches the minimum over the parameters of `free`, from `start`.
+    ///
+    /// Circuits with one capacitance have one minimum, and it is looked for among few points first;
+    /// ladders have more than one, and are searched from `start`.
     pub(super) fn minimise(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
+        let ladder = matches!(circuit, Circuit::Ladder(_));
+        let near = self.thin.as_ref().filter(|_| !ladder);
+        let near = near
+            .map(|thin| thin.search(circuit, start, free))
+            .filter(|near| near.converged);
+        match near {
+            Some(near) => self.search(circuit, &near.parameters, free),
+            None => self.search(circuit, start, free),
+        }
+    }
+
+    fn search(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
         let n = free.len();
         let mut p = start.to_vec();
         let mut here = self.accumulate(circuit, &p, free);

@@ -57,6 +57,8 @@ struct Basis {
     key: Key,
     /// Orthonormal columns; real parts of all points, then imaginary parts.
     columns: Vec<Vec<f64>>,
+    /// Means of each column over the blocks of points, real and imaginary part in one.
+    means: Vec<Vec<Complex64>>,
     weight: Vec<f64>,
 }
 
@@ -71,17 +73,15 @@ pub(super) fn check(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option
     let impedance = sweep.impedance.get(from..to)?;
     let (resonance, loss) = envelope(frequency, impedance)?;
     let basis = basis(frequency, resonance, loss)?;
-    let residual = residual(&basis, impedance);
-    let scale = scale(&basis, impedance);
-    let (at, found) = worst_block(
-        &residual,
-        |i| {
-            let z = impedance.get(i).map_or(0.0, |z| z.norm());
-            noise.at(from + i) * z * basis.weight.get(i).copied().unwrap_or(0.0) / scale
-        },
-        evidence.systematic(),
-        scale,
-    )?;
+    let residual = block_residuals(&basis, impedance);
+    let sizes = sizes(&basis, impedance);
+    let scale = median(sizes.clone());
+    let noises: Vec<f64> = sizes
+        .iter()
+        .enumerate()
+        .map(|(i, size)| noise.at(from + i) * size / scale)
+        .collect();
+    let (at, found) = worst_block(&residual, &noises, evidence.systematic(), scale)?;
     let f = hertz(frequency.get(at).copied().unwrap_or(f64::NAN));
     Some(Note::new(
         "kramers_kronig",
@@ -196,9 +196,11 @@ impl Basis {
         ];
         raw.extend(tau.map(|tau| column(&|w| (1.0 + j * (w * tau)).finv())));
         let columns = orthonormal(raw);
+        let means = columns.iter().map(|column| block_means(column)).collect();
         Some(Basis {
             key,
             columns,
+            means,
             weight,
         })
     }
@@ -248,33 +250,47 @@ fn subtract(from: &mut [f64], what: &[f64], share: f64) {
     }
 }
 
-/// What no combination of the terms explains, weighted.
-fn residual(basis: &Basis, impedance: &[Complex64]) -> Vec<Complex64> {
+/// Means over blocks of points of real and imaginary parts that stand one after the other.
+fn block_means(values: &[f64]) -> Vec<Complex64> {
+    let (re, im) = values.split_at(values.len() / 2);
+    let mean = |block: &[f64]| block.iter().sum::<f64>() / block.len() as f64;
+    re.chunks(BLOCK)
+        .zip(im.chunks(BLOCK))
+        .map(|(re, im)| Complex64::new(mean(re), mean(im)))
+        .collect()
+}
+
+/// Block means of what no combination of the terms explains, weighted. Only the means are looked at, so
+/// that the columns' shares are taken out of the means and not of every point.
+fn block_residuals(basis: &Basis, impedance: &[Complex64]) -> Vec<Complex64> {
     let weighted = |part: fn(&Complex64) -> f64| {
         impedance
             .iter()
             .zip(&basis.weight)
             .map(move |(z, w)| part(z) * w)
     };
-    let mut rest: Vec<f64> = weighted(|z| z.re).chain(weighted(|z| z.im)).collect();
-    for column in &basis.columns {
-        let share = dot(column, &rest);
-        subtract(&mut rest, column, share);
+    let all: Vec<f64> = weighted(|z| z.re).chain(weighted(|z| z.im)).collect();
+    let mut rest = block_means(&all);
+    for (column, means) in basis.columns.iter().zip(&basis.means) {
+        let share = dot(column, &all);
+        for (value, mean) in rest.iter_mut().zip(means) {
+            *value -= mean * share;
+        }
     }
-    let (re, im) = rest.split_at(impedance.len());
-    re.iter()
-        .zip(im)
-        .map(|(re, im)| Complex64::new(*re, *im))
+    rest
+}
+
+/// Weighted magnitudes.
+fn sizes(basis: &Basis, impedance: &[Complex64]) -> Vec<f64> {
+    impedance
+        .iter()
+        .zip(&basis.weight)
+        .map(|(z, w)| z.norm_sqr().sqrt() * w)
         .collect()
 }
 
-/// The typical weighted impedance: what residuals are relative to.
-fn scale(basis: &Basis, impedance: &[Complex64]) -> f64 {
-    let mut sizes: Vec<f64> = impedance
-        .iter()
-        .zip(&basis.weight)
-        .map(|(z, w)| z.norm() * w)
-        .collect();
+/// The typical weighted impedance is what residuals are relative to.
+fn median(mut sizes: Vec<f64>) -> f64 {
     let middle = sizes.len() / 2;
     if sizes.is_empty() {
         return f64::NAN;
@@ -284,24 +300,24 @@ fn scale(basis: &Basis, impedance: &[Complex64]) -> f64 {
 
 /// The block of points whose mean residual stands out most, as centre index and relative size.
 fn worst_block(
-    residual: &[Complex64],
-    noise: impl Fn(usize) -> f64,
+    means: &[Complex64],
+    noises: &[f64],
     systematic: f64,
     scale: f64,
 ) -> Option<(usize, f64)> {
     let mut worst: Option<(usize, f64, f64)> = None;
-    for (at, block) in residual.chunks(BLOCK).enumerate() {
-        let m = block.len() as f64;
-        let mean = (block.iter().sum::<Complex64>() / m).norm() / scale;
+    for (at, mean) in means.iter().enumerate() {
         let start = at * BLOCK;
+        let length = BLOCK.min(noises.len().saturating_sub(start));
+        let (m, mean) = (length as f64, mean.norm() / scale);
         // The fit lets noise of the neighbouring points through as well.
-        let around = (start.saturating_sub(BLOCK)..start + 2 * BLOCK)
-            .map(&noise)
-            .fold(0.0, f64::max);
+        let around = start.saturating_sub(BLOCK)..(start + 2 * BLOCK).min(noises.len());
+        let around = noises.get(around).unwrap_or_default();
+        let around = around.iter().copied().fold(0.0, f64::max);
         let allowed = SIGNIFICANT * around / m.sqrt() + systematic + MODEL;
         let excess = mean / allowed;
         if worst.is_none_or(|(_, _, most)| excess > most) {
-            worst = Some((start + block.len() / 2, mean, excess));
+            worst = Some((start + length / 2, mean, excess));
         }
     }
     worst

@@ -130,6 +130,11 @@ pub fn check(sweep: &Sweep, evidence: &Evidence) -> Findings {
     findings
 }
 
+/// Whether a sweep jumps, of whatever it is: a standard is no capacitor, and its contact fails likewise.
+pub(super) fn unsteady(sweep: &Sweep) -> Option<Note> {
+    jumps::find(sweep, &noise::estimate(sweep)).map(|jump| jump.into_note())
+}
+
 /// More relative noise than this where |Z| is least makes ESR and resonance worthless.
 const FLOOR: f64 = 0.1;
 

@@ -93,6 +93,8 @@ fn weights(x: [f64; 4]) -> [f64; 4] {
 struct Square {
     d: f64,
     s: f64,
+    /// `1/s`: divisions are what the fit would spend its time on.
+    inverse: f64,
 }
 
 /// Relative variance `a + b/s + c s`.
@@ -104,22 +106,22 @@ struct Model {
 }
 
 impl Model {
-    fn at(&self, s: f64) -> f64 {
-        self.a + self.b / s + self.c * s
+    fn at(&self, point: &Square) -> f64 {
+        self.a + self.b * point.inverse + self.c * point.s
     }
 
     /// One multiplicative round over the points.
     fn round(&mut self, points: &[Square]) {
         let (mut above, mut below) = ([0.0; 3], [0.0; 3]);
         for point in points {
-            let model = self.at(point.s);
+            let model = self.at(point);
             let weight = 1.0 / model;
             let excess = (point.d * weight).min(CLIP) / CLIPPED_MEAN * weight;
             for ((above, below), term) in
                 above
                     .iter_mut()
                     .zip(&mut below)
-                    .zip([1.0, 1.0 / point.s, point.s])
+                    .zip([1.0, point.inverse, point.s])
             {
                 *above += term * excess;
                 *below += term * weight;
@@ -134,9 +136,13 @@ impl Model {
 }
 
 fn relative(sweep: &Sweep, deviation: &[Complex64]) -> Vec<f64> {
-    let square = |(d, z): (&Complex64, &Complex64)| Square {
-        d: d.norm_sqr().max(LEAST * LEAST),
-        s: z.norm_sqr().max(f64::MIN_POSITIVE),
+    let square = |(d, z): (&Complex64, &Complex64)| {
+        let s = z.norm_sqr().max(f64::MIN_POSITIVE);
+        Square {
+            d: d.norm_sqr().max(LEAST * LEAST),
+            s,
+            inverse: 1.0 / s,
+        }
     };
     let all: Vec<Square> = deviation.iter().zip(&sweep.impedance).map(square).collect();
     let known: Vec<Square> = all.iter().copied().filter(|p| p.d.is_finite()).collect();
@@ -153,7 +159,7 @@ fn relative(sweep: &Sweep, deviation: &[Complex64]) -> Vec<f64> {
                 next += 1;
             }
             let factor = local.get(next).map_or(1.0, |(_, factor)| *factor);
-            (model.at(point.s) * factor).sqrt()
+            (model.at(point) * factor).sqrt()
         })
         .collect()
 }
@@ -186,7 +192,7 @@ fn blocks(deviation: &[Complex64], all: &[Square], model: &Model) -> Vec<(usize,
         .enumerate()
         .map(|(at, (deviation, points))| {
             let known = deviation.iter().zip(points).filter(|(d, _)| d.is_finite());
-            let ratio = median(known.map(|(_, p)| p.d / model.at(p.s))) / LN_2;
+            let ratio = median(known.map(|(_, p)| p.d / model.at(p))) / LN_2;
             ((at + 1) * size, if ratio > 1.0 { ratio } else { 1.0 })
         })
         .collect()
