@@ -55,6 +55,7 @@ fn record(station: &str, characteristics: &str, conditions: &str, sweep: &str) -
         history: History::default(),
         supersedes: None,
         further: vec![],
+        approvals: Default::default(),
     };
     match make(&sources, &occasion, &|| ()) {
         Ok(made) => made.record,

@@ -1,5 +1,6 @@
 #!/usr/bin/env bash
-# Makes the pictures of docs/certificate.md anew from a sample lot. Needs poppler-utils.
+# Makes the pictures of docs/certificate.md anew: from a sample lot, and from invented records of the
+# tests what no sample lot has. Needs poppler-utils.
 # usage: docs/certificate/make.sh [path of a built reelgate]
 set -euo pipefail
 cd "$(dirname "${BASH_SOURCE[0]}")/../.."
@@ -32,5 +33,15 @@ picture reasons "$(page_of Reasons)"
 picture curves "$(page_of Curves)"
 picture distributions "$(page_of Distributions)"
 picture order "$(page_of 'In measuring order')"
+picture plan "$(page_of 'Severity of inspection')"
 picture parts "$(page_of Parts)"
 picture integrity "$(page_of Integrity)"
+
+# Another lot has capacitance and self-resonance.
+lot=26K-0457
+"${reelgate[@]}" --site "$site" judge "sample-lots/$lot" >/dev/null
+pdf=$(echo "$site"/records/certificates/"$lot"-*.pdf)
+pages=$(pdfinfo "$pdf" | awk '/^Pages:/ {print $2}')
+picture scatter "$(page_of 'Capacitance against self-resonance')"
+
+REELGATE_UPDATE=1 cargo test --quiet --locked --test certificate pictures

@@ -91,6 +91,8 @@ pub(super) enum Item {
     },
     /// A place to click that leads to an anchor.
     Link { area: Area, to: String },
+    /// What follows belongs to this run of the document's structure; to none, if it is furniture.
+    Run(Option<usize>),
 }
 
 /// Where text stands relative to its `x`.
@@ -217,6 +219,18 @@ impl Canvas {
             radius,
             ink,
         });
+    }
+
+    /// An open circle.
+    pub fn ring(&mut self, (x, y): Point, radius: f64, pen: Pen) {
+        const CORNERS: u32 = 24;
+        let corner = |k: u32| {
+            let angle = std::f64::consts::TAU * f64::from(k) / f64::from(CORNERS);
+            (x + radius * angle.cos(), y + radius * angle.sin())
+        };
+        // Closed by its first corner.
+        let outline = (0..CORNERS).chain([0]).map(corner).collect();
+        self.lines(vec![outline], pen);
     }
 
     pub fn link(&mut self, area: Area, to: &str) {

@@ -162,6 +162,15 @@ pub(super) fn significant(value: f64, digits: i32) -> String {
     }
 }
 
+/// A probability or the like: two significant digits; what is below a ten-thousandth is said to be so.
+pub(super) fn chance(value: f64) -> String {
+    const LEAST: f64 = 1e-4;
+    if value > 0.0 && value < LEAST {
+        return format!("< {}", plain(LEAST));
+    }
+    significant(value, 2)
+}
+
 /// A number with all its digits up to nine and no trailing zeros.
 pub(super) fn plain(value: f64) -> String {
     if !value.is_finite() {
@@ -216,6 +225,32 @@ pub(super) fn instant(text: &str) -> String {
     }
 }
 
+/// A sentence as a document sets it: a capital first, where the first word is a plain one and no
+/// name of something, and a full stop.
+pub(super) fn sentence(text: &str) -> String {
+    let word = text.split(' ').next().unwrap_or_default();
+    let plain = word
+        .strip_suffix([':', ','])
+        .unwrap_or(word)
+        .chars()
+        .all(|c| c.is_ascii_lowercase());
+    let name = matches!(word.trim_end_matches([':', ',']), "srf" | "esr" | "esl");
+    let mut out = String::new();
+    let mut letters = text.chars();
+    if let Some(first) = letters.next() {
+        out.push(if plain && !name {
+            first.to_ascii_uppercase()
+        } else {
+            first
+        });
+    }
+    out.extend(letters);
+    if !out.is_empty() && !out.ends_with(['.', '!', '?', ':']) {
+        out.push('.');
+    }
+    out
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -253,6 +288,22 @@ mod tests {
         assert_eq!(fixed(-0.0004, 3), "−4.00e−4");
         assert_eq!(fixed(f64::NAN, 3), ABSENT);
         assert_eq!(fixed(3.2e9, 1), "3.20e9");
+    }
+
+    #[test]
+    fn a_sentence_begins_with_a_capital_unless_it_begins_with_a_name() {
+        assert_eq!(sentence("class A: 3 of 50"), "Class A: 3 of 50.");
+        assert_eq!(sentence("srf: 1 part"), "srf: 1 part.");
+        assert_eq!(sentence("esr_minimum is high."), "esr_minimum is high.");
+        assert_eq!(sentence("3 of 50"), "3 of 50.");
+        assert_eq!(sentence(""), "");
+    }
+
+    #[test]
+    fn small_chances_are_said_to_be_small() {
+        assert_eq!(chance(4.3e-13), "< 0.0001");
+        assert_eq!(chance(0.0123), "0.012");
+        assert_eq!(chance(0.0), "0");
     }
 
     #[test]

@@ -1,8 +1,9 @@
 //! Content poured down pages: a cursor, page breaks, headings, paragraphs, notes of where things are.
 
-use super::canvas::{Area, Canvas};
+use super::canvas::{Area, Canvas, Item};
 use super::ink::QUIET;
 use super::paper::Sheet;
+use super::structure::{Role, Structure};
 use super::text::{Style, wrap};
 use std::collections::BTreeMap;
 
@@ -30,6 +31,7 @@ pub(super) struct Flow {
     pub y: f64,
     pub anchors: BTreeMap<String, Place>,
     pub bookmarks: Vec<Bookmark>,
+    pub structure: Structure,
 }
 
 pub(super) const BODY: Style = Style::regular(10.5);
@@ -47,7 +49,41 @@ impl Flow {
             y: sheet.top,
             anchors: BTreeMap::new(),
             bookmarks: Vec::new(),
+            structure: Structure::default(),
         }
+    }
+
+    /// Whatever is placed until [`Flow::leave`] belongs to a new element; answers where the cursor
+    /// was in the structure.
+    pub fn enter(&mut self, role: Role) -> Option<usize> {
+        let element = self.structure.add(role);
+        self.resume(element)
+    }
+
+    /// Goes on with an element that was left.
+    pub fn resume(&mut self, element: usize) -> Option<usize> {
+        let before = self.structure.go(Some(element));
+        self.belong();
+        before
+    }
+
+    /// Whatever is placed until [`Flow::leave`] is furniture.
+    pub fn aside(&mut self) -> Option<usize> {
+        let before = self.structure.go(None);
+        self.belong();
+        before
+    }
+
+    /// Goes back to where the cursor was in the structure.
+    pub fn leave(&mut self, before: Option<usize>) {
+        self.structure.go(before);
+        self.belong();
+    }
+
+    /// Begins a run on this page.
+    fn belong(&mut self) {
+        let run = self.structure.run();
+        self.page().items.push(Item::Run(run));
     }
 
     /// The page at the cursor.
@@ -82,6 +118,7 @@ impl Flow {
     pub fn new_page(&mut self) {
         self.pages.push(Canvas::default());
         self.y = self.sheet.top;
+        self.belong();
     }
 
     /// Starts a new page unless so much room is left (or the page is still empty).
@@ -126,7 +163,9 @@ impl Flow {
             place,
         });
         let at = (self.left(), self.y + 13.0);
+        let before = self.enter(Role::Heading(1));
         self.page().text(at, HEADING, title);
+        self.leave(before);
         self.y += 26.0;
     }
 
@@ -134,7 +173,9 @@ impl Flow {
     pub fn subheading(&mut self, title: &str, with: f64) {
         self.gap(12.0);
         self.need(18.0 + with);
-        self.paragraph_of(title, SUBHEADING, 14.0);
+        let before = self.enter(Role::Heading(2));
+        self.lines_of(title, SUBHEADING, 14.0);
+        self.leave(before);
         self.y += 2.0;
     }
 
@@ -148,8 +189,20 @@ impl Flow {
         self.y += 2.0;
     }
 
-    /// Wrapped text over the full measure.
+    /// A paragraph of its own, wrapped over the full measure.
     pub fn paragraph_of(&mut self, text: &str, style: Style, leading: f64) {
+        let lines = wrap(text, style, self.sheet.measure()).len();
+        // A short one stays together.
+        if lines <= 6 {
+            self.need(lines as f64 * leading);
+        }
+        let before = self.enter(Role::Paragraph);
+        self.lines_of(text, style, leading);
+        self.leave(before);
+    }
+
+    /// Wrapped text over the full measure.
+    pub fn lines_of(&mut self, text: &str, style: Style, leading: f64) {
         for line in wrap(text, style, self.sheet.measure()) {
             let area = self.take(leading);
             let baseline = area.bottom - (leading - style.size) / 2.0 - style.size * 0.22;
@@ -170,7 +223,10 @@ mod tests {
         assert!(flow.pages.len() > 1);
         for page in &flow.pages {
             for item in &page.items {
-                let area = super::super::canvas::text_area(item).expect("only text here");
+                let Some(area) = super::super::canvas::text_area(item) else {
+                    assert!(matches!(item, Item::Run(_)), "only text here");
+                    continue;
+                };
                 assert!(area.top >= flow.sheet.top - 1.0 && area.bottom <= flow.sheet.bottom + 1.0);
                 assert!(area.left >= flow.sheet.left && area.right <= flow.sheet.right + 0.01);
             }

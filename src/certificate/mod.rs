@@ -1,7 +1,8 @@
 //! The PDF lot record.
 //!
 //! Everything on it is drawn from the [`LotRecord`], the curves and the two source files; nothing is
-//! computed here but geometry and the bins of histograms. Same arguments, same bytes.
+//! computed here but geometry: bins of histograms, the places of so many values on a probability
+//! plot. Same arguments, same bytes.
 //!
 //! The way of a page: `section` places text and drawings in a `flow`, the flow fills `canvas`es with
 //! placed items, `pdf` writes them.
@@ -10,18 +11,22 @@ mod canvas;
 mod figures;
 mod flow;
 mod furniture;
+mod grid;
 mod ink;
 mod paper;
 mod pdf;
 mod plot;
 mod results_csv;
 mod section;
+mod sign;
+mod structure;
 mod table;
 mod text;
 mod twin;
 mod typeface;
 
 pub use paper::Paper;
+pub use sign::{SignError, Signatory, Signed, Signer, SignerError, as_issued, examine, sign};
 pub use twin::plain_text;
 
 use crate::diagnostic::Note;
@@ -55,6 +60,8 @@ pub struct Sources<'a> {
     pub station_file: Option<&'a str>,
     /// The record's place in the ledger.
     pub ledger: Option<InLedger<'a>>,
+    /// The certificate that the document is to be signed with, or was.
+    pub signature: Option<&'a Signatory>,
 }
 
 /// Where the ledger has the record, and what proves it.
@@ -129,7 +136,7 @@ pub fn render(
     sources: &Sources,
     paper: Paper,
 ) -> Result<Certificate, CertificateError> {
-    render_as(record, curves, sources, paper, Conformance::A3b)
+    render_as(record, curves, sources, paper, Conformance::A3b, false)
 }
 
 /// The same pages as PDF/A-1b (ISO 19005-1), without attachments: for validators that know only
@@ -143,7 +150,21 @@ pub fn render_archive_twin(
     sources: &Sources,
     paper: Paper,
 ) -> Result<Certificate, CertificateError> {
-    render_as(record, curves, sources, paper, Conformance::A1b)
+    render_as(record, curves, sources, paper, Conformance::A1b, false)
+}
+
+/// The same document with the grid of page one drawn over it, each line with its name and its place in
+/// points: for whoever changes the layout.
+///
+/// # Errors
+/// As [`render`].
+pub fn render_with_grid(
+    record: &LotRecord,
+    curves: &[Curve],
+    sources: &Sources,
+    paper: Paper,
+) -> Result<Certificate, CertificateError> {
+    render_as(record, curves, sources, paper, Conformance::A3b, true)
 }
 
 fn render_as(
@@ -152,23 +173,24 @@ fn render_as(
     sources: &Sources,
     paper: Paper,
     conformance: Conformance,
+    with_grid: bool,
 ) -> Result<Certificate, CertificateError> {
     let json = record::to_bytes(record).map_err(CertificateError::Record)?;
     let digest = record::sha256(&json);
-    let (flow, mut warnings) = layout(record, curves, sources, paper, &digest);
-    let document = pdf::write(&flow.pages, &flow.sheet).ok_or(CertificateError::Typeface)?;
+    let (mut flow, mut warnings) = layout(record, curves, sources, paper, &digest);
+    if with_grid {
+        grid::draw(&mut flow);
+    }
+    let written = pdf::write(&flow).ok_or(CertificateError::Typeface)?;
     let description = describe(record, &mut warnings);
     let attachments = attachments(record, sources, json);
     let with = Finish {
-        sheet: &flow.sheet,
-        pages: &flow.pages,
-        anchors: &flow.anchors,
-        bookmarks: &flow.bookmarks,
+        flow: &flow,
         description: &description,
         attachments: &attachments,
         conformance,
     };
-    let pdf = pdf::finish(document, &with).map_err(CertificateError::Document)?;
+    let pdf = pdf::finish(written, &with).map_err(CertificateError::Document)?;
     Ok(Certificate { pdf, warnings })
 }
 
@@ -186,20 +208,19 @@ fn layout(
     flow.new_page();
     section::reasons::reasons(&mut flow, record);
     section::curves::curves(&mut flow, record, curves);
-    flow.new_page();
     section::distributions::distributions(&mut flow, &all);
-    flow.new_page();
+    section::populations::populations(&mut flow, &all);
+    section::scatter::scatter(&mut flow, record, &all);
     section::order::order(&mut flow, &all, record.parts.len());
     section::plan::plan(&mut flow, record);
+    section::lots::lots(&mut flow, record, &all);
     section::statistics::statistics(&mut flow, &all);
-    flow.new_page();
     section::parts::parts(&mut flow, record, &all);
     section::files::files(&mut flow, record);
-    flow.new_page();
     section::sources::sources(&mut flow, record, sources);
     section::station::station(&mut flow, record);
     let coded = section::integrity::integrity(&mut flow, record, digest, sources);
-    section::signatures::signatures(&mut flow, record);
+    section::signatures::signatures(&mut flow, record, sources.signature);
     furniture::furniture(&mut flow, record, sources.ledger.and_then(|l| l.copy));
     let mut warnings = missing_glyphs(&flow);
     if !coded {

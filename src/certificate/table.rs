@@ -3,6 +3,7 @@
 use super::canvas::{Area, Canvas, Mark, Pen};
 use super::flow::Flow;
 use super::ink::{ACCEPT, Ink, QUIET, TEXT};
+use super::structure::{Role, Scope};
 use super::text::{Style, width, wrap};
 use super::typeface::Weight;
 
@@ -65,6 +66,8 @@ pub(super) struct Cell<'a> {
     /// Anchor it leads to.
     pub link: Option<String>,
     pub drawing: Option<Drawing<'a>>,
+    /// What a mark or drawing says, where no text beside it does.
+    pub spoken: Option<String>,
 }
 
 impl<'a> Cell<'a> {
@@ -95,9 +98,17 @@ impl<'a> Cell<'a> {
         self
     }
 
-    pub fn drawing(draw: impl Fn(&mut Canvas, Area) + 'a) -> Self {
+    /// What the mark says to whoever cannot see it.
+    pub fn spoken(mut self, words: &str) -> Self {
+        self.spoken = Some(words.to_owned());
+        self
+    }
+
+    /// A drawing with words for whoever cannot see it.
+    pub fn drawing(words: String, draw: impl Fn(&mut Canvas, Area) + 'a) -> Self {
         Cell {
             drawing: Some(Box::new(draw)),
+            spoken: Some(words),
             ..Cell::default()
         }
     }
@@ -171,7 +182,8 @@ impl<'a> Table<'a> {
             .first()
             .map_or(0.0, |r| grid.row_height(self.row_height, &grid.lines(r)));
         flow.need(head + first.min(60.0));
-        grid.head(flow);
+        let before = flow.enter(Role::Table);
+        grid.head(flow, false);
         for (index, row) in self.rows.iter().enumerate() {
             grid.row(flow, self, row);
             let last = index + 1 == self.rows.len();
@@ -180,6 +192,7 @@ impl<'a> Table<'a> {
                 flow.page().rule(l, r, y);
             }
         }
+        flow.leave(before);
     }
 }
 
@@ -195,6 +208,8 @@ struct Grid<'t> {
     edges: Vec<(f64, f64)>,
     /// Width before and after the decimal point.
     halves: Vec<(f64, f64)>,
+    /// Room for the marks of each column.
+    marks: Vec<f64>,
 }
 
 /// What stands before the decimal point, and the rest.
@@ -226,6 +241,8 @@ struct Spot {
 impl<'t> Grid<'t> {
     fn fit(table: &'t Table, left: f64, measure: f64) -> Grid<'t> {
         let mut size = table.size;
+        // Heads of two lines where there is room, of a word a line where there is not.
+        let mut lines = 2.0;
         loop {
             let mut grid = Grid {
                 columns: &table.columns,
@@ -233,26 +250,37 @@ impl<'t> Grid<'t> {
                 leading: size * 1.28,
                 edges: Vec::new(),
                 halves: Vec::new(),
+                marks: Vec::new(),
             };
-            let natural = grid.natural(table, measure);
+            let natural = grid.natural(table, measure, lines);
             if grid.place(&natural, left, measure) || size < 5.4 {
                 return grid;
             }
-            size *= 0.94;
+            if lines < 3.0 {
+                lines = f64::INFINITY;
+            } else {
+                size *= 0.94;
+            }
         }
     }
 
-    /// Widest content of each column.
-    fn natural(&mut self, table: &Table, measure: f64) -> Vec<f64> {
+    /// Widest content of each column, its head on so many lines.
+    fn natural(&mut self, table: &Table, measure: f64, head_lines: f64) -> Vec<f64> {
         let head = self.head_style();
         let mut widths = Vec::with_capacity(self.columns.len());
         for (index, column) in self.columns.iter().enumerate() {
             let words = column.head.split(' ').chain([column.unit.as_str()]);
             let mut widest = words.map(|w| width(w, head)).fold(0.0, f64::max);
+            // Lines of unequal words are a little longer than their share.
+            widest = widest.max(width(&column.head, head) / head_lines * 1.15);
+            let cells = || table.rows.iter().filter_map(|r| r.cells.get(index));
+            let mark = cells()
+                .map(|cell| mark_width(cell, self.size))
+                .fold(0.0, f64::max);
+            self.marks.push(mark);
             let (mut before, mut after) = (0.0f64, 0.0f64);
-            for cell in table.rows.iter().filter_map(|r| r.cells.get(index)) {
+            for cell in cells() {
                 let style = cell.style(self.size);
-                let mark = mark_width(cell, self.size);
                 if column.align == Align::Decimal {
                     let (whole, rest) = halves(&cell.text);
                     before = before.max(width(whole, style) + mark);
@@ -340,7 +368,8 @@ impl<'t> Grid<'t> {
         lines as f64 * self.leading + 5.0
     }
 
-    fn head(&self, flow: &mut Flow) {
+    /// The heads of the columns; those of a further page are furniture.
+    fn head(&self, flow: &mut Flow, again: bool) {
         let heads = self.head_lines();
         let most = heads.iter().map(Vec::len).max().unwrap_or(0);
         if self.columns.iter().all(|c| c.head.is_empty()) {
@@ -348,7 +377,13 @@ impl<'t> Grid<'t> {
         }
         let area = flow.take(self.head_height());
         let style = self.head_style();
+        let before = if again {
+            flow.aside()
+        } else {
+            flow.enter(Role::Row)
+        };
         for ((column, (x, w)), lines) in self.columns.iter().zip(&self.edges).zip(&heads) {
+            let outside = (!again).then(|| flow.enter(Role::Head(Scope::Column)));
             for (n, line) in lines.iter().enumerate() {
                 let row = most - lines.len() + n;
                 let y = area.top + (row as f64 + 0.78) * self.leading;
@@ -358,7 +393,11 @@ impl<'t> Grid<'t> {
                 };
                 flow.page().text((start, y), style, line);
             }
+            if let Some(outside) = outside {
+                flow.leave(outside);
+            }
         }
+        flow.leave(before);
         let y = area.bottom - 1.5;
         flow.page()
             .line((area.left, y), (area.right, y), Pen::solid(0.8, TEXT));
@@ -369,11 +408,12 @@ impl<'t> Grid<'t> {
         row.cells
             .iter()
             .zip(&self.edges)
-            .map(|(cell, (_, w))| {
+            .zip(&self.marks)
+            .map(|((cell, (_, w)), mark)| {
                 if cell.text.is_empty() {
                     return Vec::new();
                 }
-                let room = w - mark_width(cell, self.size) + 0.01;
+                let room = w - mark + 0.01;
                 wrap(&cell.text, cell.style(self.size), room.max(8.0))
             })
             .collect()
@@ -390,7 +430,16 @@ impl<'t> Grid<'t> {
         let height = self.row_height(table.row_height, &lines);
         if flow.room() < height.min(whole) {
             flow.new_page();
-            self.head(flow);
+            self.head(flow, true);
+        }
+        let outside = flow.enter(Role::Row);
+        let mut elements: Vec<usize> = Vec::new();
+        for index in 0..row.cells.len() {
+            elements.push(flow.structure.add(if index == 0 {
+                Role::Head(Scope::Row)
+            } else {
+                Role::Cell
+            }));
         }
         if let Some(anchor) = &row.anchor {
             flow.anchor(anchor);
@@ -419,22 +468,31 @@ impl<'t> Grid<'t> {
                     first,
                     tall: table.row_height > 0.0,
                 };
-                self.cell(flow.page(), index, cell, text, spot);
+                let Some(element) = elements.get(index) else {
+                    continue;
+                };
+                let before = flow.resume(*element);
+                self.cell(flow, index, cell, text, spot);
+                flow.leave(before);
             }
             if rest.iter().all(Vec::is_empty) {
-                return;
+                break;
             }
             lines = rest;
             first = false;
             flow.new_page();
-            self.head(flow);
+            self.head(flow, true);
         }
+        flow.leave(outside);
     }
 
-    fn cell(&self, page: &mut Canvas, index: usize, cell: &Cell, lines: &[String], spot: Spot) {
+    fn cell(&self, flow: &mut Flow, index: usize, cell: &Cell, lines: &[String], spot: Spot) {
         let Spot { area, first, tall } = spot;
         if let (Some(draw), true) = (&cell.drawing, first) {
-            draw(page, area);
+            let words = cell.spoken.clone().unwrap_or_default();
+            let before = flow.enter(Role::Figure(words));
+            draw(flow.page(), area);
+            flow.leave(before);
         }
         let style = cell.style(self.size);
         // Text stands in the middle of a row that a drawing made taller.
@@ -445,7 +503,7 @@ impl<'t> Grid<'t> {
             0.0
         };
         let top = area.top + lead + 1.2;
-        let mark = mark_width(cell, self.size);
+        let mark = self.marks.get(index).copied().unwrap_or(0.0);
         for (n, line) in lines.iter().enumerate() {
             let y = top + (n as f64 + 0.76) * self.leading;
             let x = self.start(index, area, line, style, mark);
@@ -454,9 +512,14 @@ impl<'t> Grid<'t> {
                     x + self.size * MARK / 2.0,
                     y - self.size * super::typeface::CAP_HEIGHT / 2.0,
                 );
-                page.mark(kind, centre, self.size * MARK);
+                let spoken = cell.spoken.as_ref();
+                let before = spoken.map(|words| flow.enter(Role::Figure(words.clone())));
+                flow.page().mark(kind, centre, self.size * MARK);
+                if let Some(before) = before {
+                    flow.leave(before);
+                }
             }
-            let wide = page.text((x + mark, y), style, line);
+            let wide = flow.page().text((x + mark, y), style, line);
             if let Some(to) = &cell.link {
                 let target = Area {
                     left: x,
@@ -464,7 +527,7 @@ impl<'t> Grid<'t> {
                     top: y - self.size * 0.8,
                     bottom: y + self.size * 0.25,
                 };
-                page.link(target, to);
+                flow.page().link(target, to);
             }
         }
     }

@@ -4,9 +4,10 @@
 //! terminal or turn the reading direction stands as its code point.
 
 use super::Sources;
-use super::figures::{ABSENT, index, plain, significant};
+use super::figures::{ABSENT, chance, index, plain, significant};
 use super::section::{
-    Characteristic, answer, characteristics, integrity, lot_word, part_word, plan, reasons, station,
+    Characteristic, answer, characteristics, curves, integrity, lot_word, lots, part_word, plan,
+    populations, reasons, scatter, signatures, station,
 };
 use crate::diagnostic::Note;
 use crate::record::{self, LotRecord, PartRecord, ReadingRecord};
@@ -48,6 +49,7 @@ pub fn plain_text(record: &LotRecord, sources: &Sources) -> String {
             out.note("Warning", note);
         }
     }
+    evidence(&mut out, record, &all);
     out.heading("Parts");
     for part in &record.parts {
         self::part(&mut out, part, &all);
@@ -75,7 +77,60 @@ pub fn plain_text(record: &LotRecord, sources: &Sources) -> String {
     if let Some(ledger) = &sources.ledger {
         out.facts(integrity::ledger_facts(ledger));
     }
+    if let Some(signatory) = sources.signature {
+        out.heading("Electronic signature");
+        out.facts(signatures::facts(signatory));
+    }
     out.0
+}
+
+/// What the pages between the characteristics and the parts have in drawings and tables.
+fn evidence(out: &mut Text, record: &LotRecord, all: &[Characteristic]) {
+    if let Some(circuit) = curves::circuit_words(record) {
+        out.heading("Equivalent circuit");
+        out.line(&circuit);
+    }
+    if all.iter().any(|c| c.mixed.is_some()) {
+        out.heading("Two populations");
+    }
+    for (c, mixed) in all.iter().filter_map(|c| Some((c, c.mixed?))) {
+        out.line(&populations::evidence(c, mixed));
+        let unit = &c.scale.unit;
+        for (name, group) in ["light", "dark"].iter().zip(&mixed.groups) {
+            out.line(&format!(
+                "  Group {name}: {} parts, mean {} {unit}, s {} {unit}: {}",
+                group.parts.len(),
+                c.scale.finer(group.mean),
+                c.scale.spread(group.standard_deviation),
+                group.parts.join(", ")
+            ));
+        }
+    }
+    if let Some(words) = scatter::caption(record, all) {
+        out.heading("Capacitance against self-resonance");
+        out.line(&words);
+    }
+    let charts = lots::charts(record, all);
+    if !charts.is_empty() {
+        out.heading("Lot to lot");
+    }
+    for (c, chart) in charts {
+        out.line(&format!(
+            "{}: {}",
+            c.bound.name,
+            lots::caption(record, c, chart)
+        ));
+        for lot in &chart.lots {
+            let s = lot.standard_deviation;
+            out.line(&format!(
+                "  Lot {}: n {}, mean {}, s {}",
+                lot.lot,
+                lot.n,
+                c.scale.finer(lot.mean),
+                s.map_or_else(|| ABSENT.to_owned(), |s| c.scale.spread(s))
+            ));
+        }
+    }
 }
 
 #[derive(Default)]
@@ -133,6 +188,14 @@ fn sampling(out: &mut Text, record: &LotRecord) {
             class.n, class.ac, class.re, class.nonconforming, class.undecided
         ));
         out.line(&words.join(", "));
+        if class.share_nonconforming_upper_95.is_some() {
+            out.line(&format!(
+                "  Share nonconforming in the sample {} %, in the lot at least {} %, at most {} % (confidence 95 % each)",
+                plan::share(class.share_nonconforming),
+                plan::share(class.share_nonconforming_lower_95),
+                plan::share(class.share_nonconforming_upper_95)
+            ));
+        }
         if let Some(oc) = &class.operating_characteristic {
             out.line(&format!("  Operating characteristic: {}", plan::words(oc)));
         }
@@ -146,6 +209,23 @@ fn sampling(out: &mut Text, record: &LotRecord) {
         }
     }
     out.line(&answer::plan(record));
+    if let Some(switching) = &record.sampling.switching {
+        for (name, state) in &switching.classes {
+            let more = if state.discontinued {
+                ", discontinued"
+            } else {
+                ""
+            };
+            out.line(&format!(
+                "Severity of inspection, class {name}: {}{more}; score {}, lots that count {}; {}",
+                state.severity, state.score, state.lots, state.why
+            ));
+        }
+        for words in plan::decisions(switching) {
+            out.line(&words);
+        }
+        out.line(&plan::before(switching));
+    }
 }
 
 fn characteristic(out: &mut Text, c: &Characteristic) {
@@ -199,6 +279,35 @@ fn characteristic(out: &mut Text, c: &Characteristic) {
         s.nonconforming,
         s.undecided
     ));
+    let chances = [
+        ("normality p", s.normality_p_value.map(chance)),
+        ("Pp by percentiles", s.pp_percentile.map(|v| index(Some(v)))),
+        (
+            "Ppk by percentiles",
+            s.ppk_percentile.map(|v| index(Some(v))),
+        ),
+        (
+            "tolerance interval 95 % / 95 %",
+            s.tolerance_95_95.map(|[low, high]| {
+                format!("{} to {} {unit}", c.scale.finer(low), c.scale.finer(high))
+            }),
+        ),
+        (
+            "consumer's risk",
+            s.consumers_risk.map(|v| format!("{} %", chance(v * 100.0))),
+        ),
+        (
+            "producer's risk",
+            s.producers_risk.map(|v| format!("{} %", chance(v * 100.0))),
+        ),
+    ];
+    let words: Vec<String> = chances
+        .into_iter()
+        .filter_map(|(word, value)| Some(format!("{word} {}", value?)))
+        .collect();
+    if !words.is_empty() {
+        out.line(&format!("  {}", words.join(", ")));
+    }
     if !s.outliers.is_empty() {
         out.line(&format!("  outliers: {}", s.outliers.join(", ")));
     }

@@ -2,6 +2,7 @@
 
 use super::evidence::{self, Evidence};
 use super::keep::{self, Kept, NotKept, Place};
+use super::signing::SigningArgs;
 use super::site::{Site, Stop, Unreadable, gather};
 use super::{Context, Format, budget, exit, explain, present};
 use crate::certificate::Paper;
@@ -39,6 +40,8 @@ pub struct Args {
     /// File on another machine or share that gets each new checkpoint [default: the site file's]
     #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Option<PathBuf>,
+    #[command(flatten)]
+    signing: SigningArgs,
 }
 
 /// Paper, as the command line spells it.
@@ -101,12 +104,21 @@ fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, Str
     let site = Site::new(&context.site);
     let sources = gather(&site, folder).map_err(|stop| say_stop(context, stop))?;
     let evidence = Evidence::of(&sources).map_err(|faults| say_faults(context, &faults))?;
+    let now = keep::now(args.now);
+    // Before anything is judged: a record that cannot be signed is not begun.
+    let signer = args
+        .signing
+        .signer(&site, sources.site.as_ref(), now)
+        .map_err(|why| {
+            let _ = writeln!(context.err, "error: {}", printable(&why));
+        })?;
     let place = Place {
         records: site.records(),
         certificates: site.certificates(),
         key: args.ledger_key.clone(),
         witness: site.witness(args.witness.as_deref(), sources.site.as_ref()),
-        now: keep::now(args.now),
+        now,
+        signer,
     };
     let bar = bar(sources.sweeps.len());
     let kept = keep::judge(&place, &sources, &evidence, args.paper.into(), &|| {
@@ -121,7 +133,7 @@ fn judge(args: &Args, folder: &Path, context: &mut Context) -> Result<(Kept, Str
             &format!("recorded, but {why}"),
         );
     }
-    if let Some(why) = &kept.warning {
+    for why in &kept.warnings {
         let _ = writeln!(context.err, "warning: {}", printable(why));
     }
     let budget = match &args.budget {

@@ -2,11 +2,11 @@
 
 use super::evidence::{self, Evidence};
 use super::store::{Paths, remove_leftovers, write_whole};
-use crate::certificate::{self, Curve, InLedger, Paper};
+use crate::certificate::{self, Curve, InLedger, Paper, Signer};
 use crate::ledger::disk::System;
 use crate::ledger::{
-    Act, Archive, Entry, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded, Signer,
-    hex, ledger_key, sha256, sha256_hex, witness,
+    Act, Archive, Entry, Ledger, LedgerError, Made as By, Proof, Query, Reader, Recorded,
+    Signer as Sealer, hex, ledger_key, sha256, sha256_hex, witness,
 };
 use crate::record::{self, LotRecord, Made, Occasion, Refusal, Sources};
 use chrono::{DateTime, FixedOffset, Local, Timelike};
@@ -37,6 +37,8 @@ pub struct Place {
     pub witness: Option<PathBuf>,
     /// The time, to the second.
     pub now: DateTime<FixedOffset>,
+    /// Who signs the documents.
+    pub signer: Option<Signer>,
 }
 
 /// The time that was given, else the clock's; to the second.
@@ -58,7 +60,7 @@ pub struct Kept {
     /// Why its files are not on the disk, though it is in the ledger.
     pub unwritten: Option<String>,
     /// What the operator should know though the record is kept.
-    pub warning: Option<String>,
+    pub warnings: Vec<String>,
 }
 
 /// Why a lot has no record.
@@ -139,21 +141,21 @@ impl Place {
     }
 }
 
-fn read_key(path: &Path) -> Result<Signer, LedgerError> {
+fn read_key(path: &Path) -> Result<Sealer, LedgerError> {
     let text = fs::read_to_string(path).map_err(|source| LedgerError::Io {
         doing: "reading the key",
         path: path.to_owned(),
         source,
     })?;
-    Signer::read(&text).map_err(|e| LedgerError::Key(format!("{}: {e}", path.display())))
+    Sealer::read(&text).map_err(|e| LedgerError::Key(format!("{}: {e}", path.display())))
 }
 
 /// A key from the randomness of the system, named after itself.
-fn random_key() -> Result<Signer, LedgerError> {
+fn random_key() -> Result<Sealer, LedgerError> {
     let wrong = |e: String| LedgerError::Key(format!("no key for the ledger could be made: {e}"));
     let mut secret = [0; 32];
     getrandom::fill(&mut secret).map_err(|e| wrong(e.to_string()))?;
-    let named = |name: &str| Signer::new(name, &secret).map_err(|e| wrong(e.to_string()));
+    let named = |name: &str| Sealer::new(name, &secret).map_err(|e| wrong(e.to_string()));
     let public = named("ledger")?.verifier().public();
     let id = hex(&sha256(&public));
     named(&format!("ledger-{}", id.get(..16).unwrap_or(&id)))
@@ -233,22 +235,21 @@ fn finish(
     paper: Paper,
 ) -> Kept {
     let paths = Paths::of(&place.certificates, &made.record.record);
-    let written = issue(place, ledger, recorded, sources, &made, &[paper])
-        .and_then(|pdf| write(&paths, Some(&pdf), json));
+    let notes = recorded.entry.notes.iter();
+    let mut warnings: Vec<String> = notes.map(|note| note.text.clone()).collect();
+    let written = issue(place, ledger, recorded, sources, &made, &[paper]).and_then(|document| {
+        warnings.extend(document.warnings);
+        write(&paths, Some(&document.pdf), json)
+    });
+    warnings.extend(recorded.entry.notes.iter().map(|note| note.text.clone()));
+    warnings.extend(place.tell_witness(ledger).err());
     Kept {
         record: made.record.clone(),
         paths,
         made: Some(made),
         unwritten: written.err(),
-        warning: warning(recorded, place.tell_witness(ledger).err()),
+        warnings,
     }
-}
-
-/// Anomalies of the entry, and that the witness was not told.
-fn warning(recorded: &Recorded, witness: Option<String>) -> Option<String> {
-    let notes = recorded.entry.notes.iter().map(|note| note.text.clone());
-    let all: Vec<String> = notes.chain(witness).collect();
-    (!all.is_empty()).then(|| all.join("; "))
 }
 
 /// The record that is there, with what is missing of its files made again.
@@ -259,21 +260,29 @@ fn answer(place: &Place, ledger: &Ledger, entry: &Entry, paper: Paper) -> Result
     let paths = Paths::of(&place.certificates, &record.record);
     let known = certificates_of(ledger, &record.record)?;
     let has_json = on_disk(&paths.json, |bytes| bytes == json)?;
-    let has_pdf = on_disk(&paths.pdf, |bytes| known.contains(&sha256_hex(bytes)))?;
+    let has_pdf = on_disk(&paths.pdf, |bytes| {
+        known.contains(&sha256_hex(certificate::as_issued(bytes)))
+    })?;
+    let mut warnings = Vec::new();
     let written = if has_json && has_pdf {
         Ok(())
     } else {
         remove_leftovers(&paths.pdf);
         remove_leftovers(&paths.json);
-        restore(place, entry.index, has_pdf, paper)
-            .and_then(|pdf| write(&paths, pdf.as_deref(), &json))
+        restore(place, entry.index, has_pdf, paper).and_then(|document| {
+            let document = document.map(|d| {
+                warnings = d.warnings;
+                d.pdf
+            });
+            write(&paths, document.as_deref(), &json)
+        })
     };
     Ok(Kept {
         record,
         paths,
         made: None,
         unwritten: written.err(),
-        warning: None,
+        warnings,
     })
 }
 
@@ -300,7 +309,7 @@ fn restore(
     index: u64,
     has_pdf: bool,
     paper: Paper,
-) -> Result<Option<Vec<u8>>, String> {
+) -> Result<Option<Document>, String> {
     if has_pdf {
         return Ok(None);
     }
@@ -330,7 +339,7 @@ fn issue(
     sources: &Sources,
     made: &Made,
     papers: &[Paper],
-) -> Result<Vec<u8>, String> {
+) -> Result<Document, String> {
     let proof = recorded.proof_text();
     let in_ledger = InLedger {
         index: recorded.entry.index,
@@ -338,25 +347,57 @@ fn issue(
         copy: None,
     };
     let known = certificates_of(ledger, &made.record.record).map_err(unissued)?;
-    let papers = if known.is_empty() {
-        &papers[..1]
-    } else {
-        papers
+    let signer = place.signer.as_ref();
+    let forms: Vec<(Paper, Option<&Signer>)> = match (papers.first(), known.is_empty()) {
+        (Some(paper), true) => vec![(*paper, signer)],
+        // It was issued before: on which paper, and with a signature or without, is found out.
+        _ => papers
+            .iter()
+            .flat_map(|paper| [(*paper, signer), (*paper, None)])
+            .collect(),
     };
-    let mut drawn = Vec::new();
-    for paper in papers {
-        let pdf = draw(sources, made, in_ledger, *paper)?;
-        if known.contains(&sha256_hex(&pdf)) {
-            return Ok(pdf);
+    let mut first = None;
+    for (paper, signer) in forms {
+        let drawn = draw(sources, made, in_ledger, paper, signer)?;
+        if known.contains(&sha256_hex(&drawn.pdf)) {
+            return drawn.signed(signer, time_of(&made.record, place));
         }
-        drawn.push(pdf);
+        first.get_or_insert((drawn, signer));
     }
-    let pdf = drawn.into_iter().next().ok_or("no paper to draw on")?;
+    let (drawn, signer) = first.ok_or("no paper to draw on")?;
+    let unsigned = drawn.pdf.clone();
+    // Signed first: what cannot be signed is not issued.
+    let document = drawn.signed(signer, time_of(&made.record, place))?;
     let by = place.by(made.record.lot.operator.as_deref());
     ledger
-        .issued(&made.record.record, &pdf, &by)
+        .issued(&made.record.record, &unsigned, &by)
         .map_err(unissued)?;
-    Ok(pdf)
+    Ok(document)
+}
+
+/// When a record was issued.
+fn time_of(record: &LotRecord, place: &Place) -> DateTime<FixedOffset> {
+    DateTime::parse_from_rfc3339(&record.issued).unwrap_or(place.now)
+}
+
+/// A PDF lot record with what it could not show as it is.
+pub struct Document {
+    #[allow(missing_docs)]
+    pub pdf: Vec<u8>,
+    #[allow(missing_docs)]
+    pub warnings: Vec<String>,
+}
+
+impl Document {
+    /// With a signature behind it, where someone signs.
+    fn signed(self, signer: Option<&Signer>, time: DateTime<FixedOffset>) -> Result<Self, String> {
+        let Some(signer) = signer else {
+            return Ok(self);
+        };
+        signer.valid_at(time).map_err(|e| e.to_string())?;
+        let pdf = certificate::sign(self.pdf, signer, time).map_err(|e| e.to_string())?;
+        Ok(Document { pdf, ..self })
+    }
 }
 
 /// The record stands; what is missing is the entry of its certificate.
@@ -386,7 +427,7 @@ pub fn reissue(
         .count();
     let number = copies + 1;
     let (sources, made) = drawn_again(&ledger, &entry)?;
-    let paper = issued_paper(&ledger, &entry, &sources, &made)?;
+    let paper = issued_paper(place, &ledger, &entry, &sources, &made)?;
     let size = ledger.size().map_err(text)?;
     let proof = Proof {
         index: entry.index,
@@ -399,9 +440,12 @@ pub fn reissue(
         proof: &proof.text(),
         copy: Some(&copy),
     };
-    let pdf = draw(&sources, &made, in_ledger, paper)?;
+    let signer = place.signer.as_ref();
+    let drawn = draw(&sources, &made, in_ledger, paper, signer)?;
+    let unsigned = drawn.pdf.clone();
+    let pdf = drawn.signed(signer, place.now)?.pdf;
     ledger
-        .reissued(record, &pdf, reason, &place.by(by))
+        .reissued(record, &unsigned, reason, &place.by(by))
         .map_err(text)?;
     let told = place.tell_witness(&ledger);
     let path = place
@@ -418,6 +462,7 @@ pub fn reissue(
 
 /// The paper on which the original was issued.
 fn issued_paper(
+    place: &Place,
     ledger: &Ledger,
     entry: &Entry,
     sources: &Sources,
@@ -431,12 +476,13 @@ fn issued_paper(
         copy: None,
     };
     let known = certificates_of(ledger, &made.record.record).map_err(|e| e.to_string())?;
-    let letter = draw(sources, made, in_ledger, Paper::Letter)?;
-    Ok(if known.contains(&sha256_hex(&letter)) {
-        Paper::Letter
-    } else {
-        Paper::A4
-    })
+    for signer in [place.signer.as_ref(), None] {
+        let letter = draw(sources, made, in_ledger, Paper::Letter, signer)?;
+        if known.contains(&sha256_hex(&letter.pdf)) {
+            return Ok(Paper::Letter);
+        }
+    }
+    Ok(Paper::A4)
 }
 
 /// The entry by which a record was made.
@@ -463,13 +509,14 @@ pub fn certificates_of(ledger: &Ledger, record: &str) -> Result<BTreeSet<String>
         .collect())
 }
 
-/// The PDF lot record.
+/// The PDF lot record, not signed yet, but naming who signs it.
 pub fn draw(
     sources: &Sources,
     made: &Made,
     ledger: InLedger,
     paper: Paper,
-) -> Result<Vec<u8>, String> {
+    signer: Option<&Signer>,
+) -> Result<Document, String> {
     let curves: Vec<Curve> = made
         .curves
         .iter()
@@ -484,9 +531,13 @@ pub fn draw(
         limit_file: std::str::from_utf8(&sources.limits.bytes).ok(),
         station_file: std::str::from_utf8(&sources.station.bytes).ok(),
         ledger: Some(ledger),
+        signature: signer.map(Signer::signatory),
     };
     certificate::render(&made.record, &curves, &texts, paper)
-        .map(|made| made.pdf)
+        .map(|made| Document {
+            pdf: made.pdf,
+            warnings: made.warnings.into_iter().map(|note| note.text).collect(),
+        })
         .map_err(|e| format!("the PDF lot record could not be made: {e}"))
 }
 

@@ -1,7 +1,7 @@
 //! Subcommands: arguments, wiring, what is printed. The only place with files and clock.
 
-mod bench;
 mod approvals;
+mod bench;
 mod budget;
 mod evidence;
 mod explain;
@@ -12,6 +12,7 @@ mod passphrase;
 mod plan;
 mod present;
 mod records;
+mod signing;
 mod site;
 mod store;
 mod switching;

@@ -8,9 +8,11 @@ mod show;
 mod verify;
 
 use super::keep::{self, PROGRAM, Place, certificates_of};
+use super::signing::SigningArgs;
 use super::site::Site;
 use super::store::Paths;
 use super::{Context, Format, exit};
+use crate::certificate::as_issued;
 use crate::diagnostic::printable;
 use crate::ledger::bag::{Export, export};
 use crate::ledger::disk::System;
@@ -59,6 +61,8 @@ enum Command {
         /// For whom or by whom: the code that the site uses for a person
         #[arg(long, value_name = "PERSON")]
         by: Option<String>,
+        #[command(flatten)]
+        signing: SigningArgs,
         #[command(flatten)]
         with: Circumstances,
     },
@@ -159,8 +163,9 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
             record,
             reason,
             by,
+            signing,
             with,
-        } => place(&site, with)
+        } => signed_place(&site, with, signing)
             .and_then(|place| reissue(record, reason, by.as_deref(), &place))
             .and_then(|act| act.done(context)),
         Command::Dispose {
@@ -196,6 +201,17 @@ fn place(site: &Site, with: &Circumstances) -> Result<Place, String> {
         key: None,
         witness: site.witness(with.witness.as_deref(), rules.as_ref()),
         now: keep::now(with.now),
+        signer: None,
+    })
+}
+
+fn signed_place(site: &Site, with: &Circumstances, signing: &SigningArgs) -> Result<Place, String> {
+    let place = place(site, with)?;
+    // Its faults were found above.
+    let rules = site.rules().ok().flatten();
+    Ok(Place {
+        signer: signing.signer(site, rules.as_ref(), place.now)?,
+        ..place
     })
 }
 
@@ -236,7 +252,7 @@ fn export_record(
     let known = certificates_of(&ledger, &record).map_err(|e| e.to_string())?;
     let pdf = std::fs::read(Paths::of(&site.certificates(), &record).pdf)
         .ok()
-        .filter(|bytes| known.contains(&sha256_hex(bytes)));
+        .filter(|bytes| known.contains(&sha256_hex(as_issued(bytes))));
     let what = Export {
         record: &record,
         certificate: pdf.as_deref(),

@@ -63,6 +63,15 @@ impl Site {
         file.witness.map(|path| self.resolve(&path))
     }
 
+    /// Certificate and key that the site file names.
+    pub fn signing(&self, rules: Option<&RawFile>) -> Option<(PathBuf, PathBuf)> {
+        let signing = meaning(rules?)?.signing?;
+        Some((
+            self.resolve(&signing.certificate),
+            self.resolve(&signing.key),
+        ))
+    }
+
     /// `limits/parts/<part>.yaml`
     pub fn limit_file(&self, part: &str) -> PathBuf {
         self.root

@@ -23,8 +23,8 @@ pub use curve::OperatingCharacteristic;
 pub use explain::Step;
 pub use history::{History, PastCharacteristic, PastClass, PastLot, SeveritySet};
 pub use rules::{
-    Common, CommonShift, Findings, GroupSection, JointOutlier, JointSection, LotSeries,
-    MixedSection, Shift, TrendSection, common_shift,
+    ChartedLot, Common, CommonShift, Findings, GroupSection, JointOutlier, JointSection, LotChart,
+    LotSeries, MixedSection, Shift, TrendSection, common_shift,
 };
 pub use sampling::{ClassSection, Plan, PlanClass, Sampling, plan, plan_in_state};
 pub use statistics::{Statistics, statistics};

@@ -12,9 +12,10 @@ mod past;
 
 pub use crate::judgement::{AttemptRecord, PartRecord, PartVerdict, ReadingRecord};
 pub use crate::lot::{
-    ChangeSection, ClassSection, ClassState, CommonShift, ConditionSection, Findings, GroupSection,
-    JointOutlier, JointSection, LotVerdict, MixedSection, OperatingCharacteristic, Sampling,
-    SetAside, SetSection, Statistics, Step, Switching, TrendSection, VariablesSection,
+    ChangeSection, ChartedLot, ClassSection, ClassState, CommonShift, ConditionSection, Findings,
+    GroupSection, JointOutlier, JointSection, LotChart, LotVerdict, MixedSection,
+    OperatingCharacteristic, Sampling, SetAside, SetSection, Statistics, Step, Switching,
+    TrendSection, VariablesSection,
 };
 pub use approvals::{ApprovalSection, Approvals, SignedNote};
 pub use assemble::{Digests, Inputs, method, sha256};

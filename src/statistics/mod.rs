@@ -9,6 +9,7 @@ pub mod capability;
 pub mod distributions;
 pub mod lot_to_lot;
 pub mod mixture;
+pub mod normal_scores;
 pub mod normality;
 pub mod operating_characteristic;
 pub mod outliers;

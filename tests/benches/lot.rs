@@ -156,6 +156,7 @@ fn main() {
         limit_file: Some(LIMITS),
         station_file: Some(STATION),
         ledger: None,
+        signature: None,
     };
 
     let floor = time(|| {

@@ -47,7 +47,7 @@ fn a_validator_accepts_the_pages_as_part_1_level_b() {
 }
 
 /// Python with the packages of `tests/requirements.txt`; `tests/run` sets it up.
-fn python() -> PathBuf {
+pub fn python() -> PathBuf {
     match std::env::var_os("REELGATE_PYTHON") {
         Some(python) => python.into(),
         None => Path::new(env!("CARGO_MANIFEST_DIR")).join(".venv/bin/python"),
@@ -55,7 +55,7 @@ fn python() -> PathBuf {
 }
 
 /// What pikepdf and zxing-cpp find in a document.
-fn looked_at(pdf: &[u8]) -> Value {
+pub fn looked_at(pdf: &[u8]) -> Value {
     let saved = tools::save(pdf);
     let pages = tools::pages(&saved.path).len();
     let last = pages.to_string();

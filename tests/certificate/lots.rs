@@ -429,6 +429,148 @@ pub fn hostile() -> Case {
     case
 }
 
+/// A lot of which the rules found something, among others: two populations in it, parts unlike it,
+/// nine lots before it, and all that its statistics can have. The numbers are set, not computed.
+pub fn found() -> Case {
+    let mut case = accepted(60, 5);
+    let record = &mut case.record;
+    let names: Vec<String> = record.parts.iter().map(|p| p.part.clone()).collect();
+    for (index, part) in record.parts.iter_mut().enumerate() {
+        if index % 3 == 0
+            && let Some(r) = part.readings.get_mut("capacitance@1kHz")
+        {
+            r.value = r.value.map(|v| v - 2.6e-7);
+        }
+    }
+    record.verdict = LotVerdict::Hold;
+    record.reasons = vec![Note::new(
+        "mixed_lot",
+        "capacitance@1kHz: two populations in one lot: find out whether two reels were mixed",
+    )];
+    let group = |second: bool| -> Vec<String> {
+        let of = names.iter().enumerate();
+        of.filter(|(i, _)| (i % 3 != 0) == second)
+            .map(|(_, n)| n.clone())
+            .collect()
+    };
+    record.findings.mixed = vec![MixedSection {
+        of: "capacitance@1kHz".into(),
+        n: 60,
+        alpha: 0.01,
+        dip: Some(0.0917),
+        dip_p_value: Some(0.0031),
+        bic_one: Some(-1421.3),
+        bic_two: Some(-1468.9),
+        separation: Some(4.87),
+        mixed: true,
+        groups: serde_json::from_value(serde_json::json!([
+            {"mean": 4.4312e-6, "standard_deviation": 4.81e-8, "share": 0.333, "parts": group(false)},
+            {"mean": 4.6927e-6, "standard_deviation": 5.23e-8, "share": 0.667, "parts": group(true)},
+        ]))
+        .expect("groups"),
+    }];
+    record.findings.joint = vec![JointSection {
+        of: vec![
+            "capacitance@1kHz".into(),
+            "esr_minimum".into(),
+            "srf".into(),
+        ],
+        n: 60,
+        alpha: 0.01,
+        critical: Some(21.73),
+        outliers: vec![
+            JointOutlier {
+                part: names[16].clone(),
+                squared_distance: 38.14,
+            },
+            JointOutlier {
+                part: names[41].clone(),
+                squared_distance: 24.06,
+            },
+        ],
+        centre: vec![4.6e-6, 4.1e-3, 2.32e6],
+        covariance: vec![
+            vec![1.69e-14, 0.0, -1.1e-3],
+            vec![0.0, 4.84e-8, 0.0],
+            vec![-1.1e-3, 0.0, 3.6e9],
+        ],
+    }];
+    record.findings.trend = vec![TrendSection {
+        of: "capacitance@1kHz".into(),
+        action: "warn".into(),
+        history: (1..=9)
+            .map(|k| format!("26J-000{k}-aaaaaaaaaaaa"))
+            .collect(),
+        mean: Some(4.6048e-6),
+        previous_mean: Some(4.6853e-6),
+        previous_standard_deviation: Some(2.07e-8),
+        shift_statistic: Some(-3.91),
+        spread_statistic: Some(2.83),
+        shift_p_value: Some(0.0042),
+        spread_p_value: Some(0.00000017),
+        ewma: Some([4.6612e-6, 4.6518e-6, 4.7188e-6]),
+        signals: vec!["the mean has shifted (t −3.91, p 4.2e−3)".into()],
+    }];
+    let charted = |k: usize| ChartedLot {
+        record: (k < 10).then(|| format!("26J-000{k}-aaaaaaaaaaaa")),
+        lot: if k < 10 {
+            format!("26J-000{k}")
+        } else {
+            "26K-0457".into()
+        },
+        n: 60,
+        mean: if k < 10 {
+            4.6853e-6 + 1.3e-8 * ((k * 7 % 5) as f64 - 2.0)
+        } else {
+            4.6048e-6
+        },
+        standard_deviation: Some(5.1e-8 + 1e-10 * k as f64),
+        ewma: Some([4.6853e-6 - 2.4e-9 * k as f64, 4.6518e-6, 4.7188e-6]),
+    };
+    record.findings.lots = vec![LotChart {
+        of: "capacitance@1kHz".into(),
+        centre: Some(4.6853e-6),
+        limits: Some([4.6231e-6, 4.7475e-6]),
+        lots: (1..=10).map(charted).collect(),
+    }];
+    for class in record.sampling.classes.values_mut() {
+        class.share_nonconforming = Some(0.01667);
+        class.share_nonconforming_lower_95 = Some(0.000912);
+        class.share_nonconforming_upper_95 = Some(0.04873);
+    }
+    record.sampling.switching = serde_json::from_value(serde_json::json!({
+        "classes": {
+            "A": {"severity": "normal", "discontinued": false, "score": 18, "lots": 9, "why": "inspection begins normal (ISO 2859-1:1999 9.1); 9 lots before this one count"},
+            "B": {"severity": "tightened", "discontinued": true, "score": 0, "lots": 9, "why": "after lot 26J-0004, two of five not accepted"},
+        },
+        "history": ["26J-0001-aaaaaaaaaaaa", "26J-0002-aaaaaaaaaaaa"],
+    }))
+    .expect("switching");
+    case.refresh();
+    let record = &mut case.record;
+    for (index, s) in record.statistics.values_mut().enumerate() {
+        let k = index as f64;
+        s.normality_p_value = Some(0.31 + 0.07 * k);
+        s.tolerance_95_95 = s
+            .mean
+            .zip(s.standard_deviation)
+            .map(|(m, sd)| [m - 2.3 * sd, m + 2.3 * sd]);
+        s.consumers_risk = Some(0.00123 + 0.001 * k);
+        s.producers_risk = Some(0.0456 - 0.001 * k);
+    }
+    if let Some(s) = record.statistics.get_mut("capacitance@1kHz") {
+        s.normality_p_value = Some(0.0000041);
+        s.pp_percentile = Some(1.87);
+        s.ppk_percentile = Some(1.53);
+        s.warnings = vec![Note::new(
+            "not_normal",
+            "not normally distributed (Anderson-Darling p 0.000)",
+        )];
+    }
+    case.recurve(201);
+    case
+}
+
 /// Nothing measured at all, nothing known but names.
 pub fn empty() -> Case {
     let mut case = accepted(0, 2);

@@ -1,12 +1,17 @@
 //! The PDF lot record, looked at by programs that are not ours.
 //!
-//! Needs qpdf and poppler-utils (pdftotext, pdffonts, pdfinfo, pdfdetach), as Debian packages them.
+//! Needs qpdf and poppler-utils (pdftotext, pdffonts, pdfinfo, pdfdetach, pdfsig), as Debian packages
+//! them.
 
 mod archive;
+mod evidence;
 mod layout;
 mod lots;
 mod numbers;
+mod pictures;
+mod signature;
 mod structure;
+mod tags;
 mod tools;
 
 use lots::Case;
@@ -17,6 +22,7 @@ fn sources(case: &Case) -> Sources<'_> {
         limit_file: Some(&case.limit_file),
         station_file: Some(&case.station_file),
         ledger: None,
+        signature: None,
     }
 }
 
@@ -30,6 +36,7 @@ fn cases() -> Vec<(&'static str, Case)> {
         ("accepted", lots::accepted(32, 8)),
         ("rejected", lots::rejected()),
         ("held", lots::held_single()),
+        ("found", lots::found()),
         ("hostile", lots::hostile()),
         ("empty", lots::empty()),
     ]

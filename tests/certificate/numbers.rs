@@ -6,7 +6,7 @@ use reelgate::certificate::Paper;
 use reelgate::record::LotRecord;
 
 /// What one printed unit is in SI, stated here apart from the program's own table.
-fn unit(key: &str) -> f64 {
+pub fn unit(key: &str) -> f64 {
     match key.split('@').next().unwrap_or_default() {
         "capacitance" => 1e-6,
         "esr_minimum" | "impedance" | "esr" => 1e-3,
@@ -18,7 +18,7 @@ fn unit(key: &str) -> f64 {
 }
 
 /// Checks that a printed number is the value to within half of its last digit.
-fn same(printed: &str, value: f64, what: &str) {
+pub fn same(printed: &str, value: f64, what: &str) {
     let plain = printed.replace('−', "-");
     let decimals = match plain.split_once('e') {
         Some((mantissa, exponent)) => {
@@ -94,7 +94,7 @@ impl Name for reelgate::record::PartRecord {
     }
 }
 
-fn text_of(case: &lots::Case) -> String {
+pub fn text_of(case: &lots::Case) -> String {
     let saved = tools::save(&rendered(case, Paper::A4).pdf);
     tools::pages(&saved.path).join("\n")
 }

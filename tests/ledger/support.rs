@@ -140,13 +140,13 @@ pub fn approve(ledger: &mut Ledger, bytes: &[u8], minute: u32) -> Result<Recorde
     // Signed after the last approval of other bytes.
     let digest = reelgate::ledger::sha256_hex(bytes);
     let approvals = ledger.find(Query::Kind("approval"))?;
-    let other = approvals
+    let mut other = approvals
         .iter()
         .filter(|entry| !matches!(&entry.act, Act::Approval { sha256, .. } if *sha256 == digest));
     let statement = reelgate::ledger::approval::Statement {
         withdraws: false,
         ledger: ORIGIN.to_owned(),
-        entries: other.last().map_or(0, |entry| entry.index + 1),
+        entries: other.next_back().map_or(0, |entry| entry.index + 1),
         kind: reelgate::ledger::approval::Approved::Limits,
         with: Vec::new(),
         file: LIMITS.to_owned(),

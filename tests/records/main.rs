@@ -3,6 +3,7 @@
 
 mod approvals;
 mod clock;
+mod documents;
 mod history;
 mod retest;
 mod site;

@@ -41,7 +41,7 @@ def main():
     codes = []
     for picture in pictures:
         with Image.open(picture) as image:
-            codes += [code.text for code in zxingcpp.read_barcodes(image)]
+            codes += [code.text for code in zxingcpp.read_barcodes(image, formats=zxingcpp.BarcodeFormat.QRCode)]
     found["codes"] = codes
     json.dump(found, sys.stdout)
 

@@ -2,14 +2,14 @@
 //! language, bookmarks, links, attachments, and ids that depend on nothing but the content.
 
 use super::attach::{Attachment, attach, name, text_string};
-use super::xmp;
-use crate::certificate::canvas::{Canvas, Item};
-use crate::certificate::flow::{Bookmark, Place};
+use super::write::Written;
+use super::{tags, xmp};
+use crate::certificate::canvas::Item;
+use crate::certificate::flow::{Bookmark, Flow, Place};
 use crate::certificate::paper::Sheet;
 use chrono::{DateTime, FixedOffset};
 use lopdf::{Dictionary, Document, Object, ObjectId, Stream, StringFormat};
 use sha2::{Digest, Sha256};
-use std::collections::BTreeMap;
 
 /// Made by `srgb.py` beside this file.
 static SRGB: &[u8] = include_bytes!("srgb.icc");
@@ -57,10 +57,7 @@ impl Description {
 
 /// What `finish` adds.
 pub(in crate::certificate) struct Finish<'a> {
-    pub sheet: &'a Sheet,
-    pub pages: &'a [Canvas],
-    pub anchors: &'a BTreeMap<String, Place>,
-    pub bookmarks: &'a [Bookmark],
+    pub flow: &'a Flow,
     pub description: &'a Description,
     pub attachments: &'a [Attachment],
     pub conformance: Conformance,
@@ -68,9 +65,13 @@ pub(in crate::certificate) struct Finish<'a> {
 
 /// Completes the document and answers its bytes.
 pub(in crate::certificate) fn finish(
-    mut document: Document,
+    written: Written,
     with: &Finish,
 ) -> Result<Vec<u8>, lopdf::Error> {
+    let Written {
+        mut document,
+        marked,
+    } = written;
     let description = with.description.printable();
     let page_ids: Vec<ObjectId> = document.page_iter().collect();
     let date = description.date.map(pdf_date);
@@ -79,10 +80,11 @@ pub(in crate::certificate) fn finish(
         Conformance::A1b => "1.4".to_owned(),
     };
     tidy_pages(&mut document, &page_ids)?;
-    links(&mut document, &page_ids, with)?;
+    let links = links(&mut document, &page_ids, with.flow)?;
+    let tree = tags::tree(&mut document, &page_ids, with.flow, &marked, &links)?;
     let metadata = metadata(&mut document, &description, with.conformance);
     let intent = output_intent(&mut document);
-    let outlines = outlines(&mut document, &page_ids, with);
+    let outlines = outlines(&mut document, &page_ids, with.flow);
     let files = match with.conformance {
         Conformance::A3b => attach(&mut document, with.attachments, date.as_deref()),
         Conformance::A1b => {
@@ -92,6 +94,10 @@ pub(in crate::certificate) fn finish(
     };
     let catalog = document.catalog_mut()?;
     catalog.set("Metadata", metadata);
+    catalog.set("StructTreeRoot", tree);
+    let mut marks = Dictionary::new();
+    marks.set("Marked", true);
+    catalog.set("MarkInfo", marks);
     catalog.set("OutputIntents", vec![Object::Dictionary(intent)]);
     catalog.set("Lang", text_string("en"));
     catalog.set("PageLayout", name("SinglePage"));
@@ -117,24 +123,46 @@ pub(in crate::certificate) fn finish(
         catalog.set("Names", trees);
     }
     information(&mut document, &description, date.as_deref());
-    bytes(document)
+    bytes(document, with.conformance)
 }
 
 /// Writes the file, with an id made from its content.
-fn bytes(mut document: Document) -> Result<Vec<u8>, lopdf::Error> {
+fn bytes(mut document: Document, conformance: Conformance) -> Result<Vec<u8>, lopdf::Error> {
     document.compress();
-    document.trailer.remove(b"ID");
-    let mut plain = Vec::new();
-    document.save_to(&mut plain)?;
-    let id = Object::String(
-        Sha256::digest(&plain).iter().take(16).copied().collect(),
-        StringFormat::Hexadecimal,
-    );
-    document.trailer.set("ID", vec![id.clone(), id]);
-    let mut out = Vec::with_capacity(plain.len() + 128);
-    document.save_to(&mut out)?;
+    let id = |bytes: Vec<u8>| Object::String(bytes, StringFormat::Hexadecimal);
+    let blank = id(vec![0; ID]);
+    document.trailer.set("ID", vec![blank.clone(), blank]);
+    let mut out = Vec::new();
+    match conformance {
+        // The structure has thousands of small objects, which are written together and compressed.
+        Conformance::A3b => {
+            let options = lopdf::SaveOptions::builder()
+                .use_object_streams(true)
+                .use_xref_streams(true)
+                .max_objects_per_stream(200)
+                .compression_level(6)
+                .build();
+            document.save_with_options(&mut out, options)?;
+        }
+        // Part 1 knows no object streams.
+        Conformance::A1b => document.save_to(&mut out)?,
+    }
+    let digest = Sha256::digest(&out);
+    let digits: String = digest.iter().take(ID).map(|b| format!("{b:02X}")).collect();
+    let blank = format!("<{}>", "0".repeat(2 * ID)).into_bytes();
+    // Both ids stand in the trailer, at the end of the file.
+    for _ in 0..2 {
+        let found = out.windows(blank.len()).rposition(|w| w == blank);
+        let place = found.and_then(|at| out.get_mut(at + 1..at + 1 + 2 * ID));
+        if let Some(place) = place {
+            place.copy_from_slice(digits.as_bytes());
+        }
+    }
     Ok(out)
 }
+
+/// Length of a file identifier in bytes.
+const ID: usize = 16;
 
 /// `D:20261005091403+02'00'` (ISO 32000-1, 7.9.4).
 fn pdf_date(date: DateTime<FixedOffset>) -> String {
@@ -156,22 +184,32 @@ fn tidy_pages(document: &mut Document, pages: &[ObjectId]) -> Result<(), lopdf::
     Ok(())
 }
 
-/// Link annotations; printed, without a border, to a place on a page.
-fn links(document: &mut Document, pages: &[ObjectId], with: &Finish) -> Result<(), lopdf::Error> {
-    for (page, canvas) in pages.iter().zip(with.pages) {
+/// Link annotations; printed, without a border, to a place on a page. Answers them with the
+/// runs that they stand in.
+fn links(
+    document: &mut Document,
+    pages: &[ObjectId],
+    flow: &Flow,
+) -> Result<Vec<tags::Link>, lopdf::Error> {
+    let mut all = Vec::new();
+    for (page, canvas) in pages.iter().zip(&flow.pages) {
         let mut annotations = Vec::new();
+        let mut within = None;
         for item in &canvas.items {
+            if let Item::Run(run) = item {
+                within = *run;
+            }
             let Item::Link { area, to } = item else {
                 continue;
             };
-            let Some(destination) = with
+            let Some(destination) = flow
                 .anchors
                 .get(to)
-                .and_then(|place| destination(pages, place, with.sheet))
+                .and_then(|place| destination(pages, place, &flow.sheet))
             else {
                 continue;
             };
-            let height = with.sheet.height;
+            let height = flow.sheet.height;
             let corners = [
                 area.left,
                 height - area.bottom,
@@ -185,7 +223,14 @@ fn links(document: &mut Document, pages: &[ObjectId], with: &Finish) -> Result<(
             link.set("Border", vec![Object::Integer(0); 3]);
             link.set("F", 4);
             link.set("Dest", destination);
-            annotations.push(Object::Reference(document.add_object(link)));
+            link.set("Contents", text_string(&to.replace(':', " ")));
+            let annotation = document.add_object(link);
+            annotations.push(Object::Reference(annotation));
+            all.push(tags::Link {
+                annotation,
+                page: *page,
+                run: within,
+            });
         }
         if !annotations.is_empty() {
             document
@@ -193,7 +238,7 @@ fn links(document: &mut Document, pages: &[ObjectId], with: &Finish) -> Result<(
                 .set("Annots", annotations);
         }
     }
-    Ok(())
+    Ok(all)
 }
 
 fn number(value: f64) -> Object {
@@ -243,11 +288,11 @@ fn output_intent(document: &mut Document) -> Dictionary {
 }
 
 /// Bookmarks, one level, in reading order.
-fn outlines(document: &mut Document, pages: &[ObjectId], with: &Finish) -> Option<ObjectId> {
-    let entries: Vec<(&Bookmark, Object)> = with
+fn outlines(document: &mut Document, pages: &[ObjectId], flow: &Flow) -> Option<ObjectId> {
+    let entries: Vec<(&Bookmark, Object)> = flow
         .bookmarks
         .iter()
-        .filter_map(|b| Some((b, destination(pages, &b.place, with.sheet)?)))
+        .filter_map(|b| Some((b, destination(pages, &b.place, &flow.sheet)?)))
         .collect();
     let root = document.new_object_id();
     let ids: Vec<ObjectId> = entries.iter().map(|_| document.new_object_id()).collect();

@@ -3,6 +3,7 @@
 
 mod attach;
 mod finish;
+mod tags;
 mod write;
 mod xmp;
 

@@ -1,8 +1,9 @@
 //! Pages of placed items to a PDF object tree.
 
 use crate::certificate::canvas::{Canvas, Dash, Item, Pen, Point};
+use crate::certificate::flow::Flow;
 use crate::certificate::ink::Ink;
-use crate::certificate::paper::Sheet;
+use crate::certificate::structure::Structure;
 use crate::certificate::text::Style;
 use crate::certificate::typeface::{Weight, face};
 use printpdf as pdf;
@@ -18,22 +19,33 @@ fn font_id(weight: Weight) -> pdf::FontId {
     )
 }
 
+/// Pages as a PDF object tree.
+pub(in crate::certificate) struct Written {
+    pub document: lopdf::Document,
+    /// The runs of each page that something was placed in, in the order of their numbers in its
+    /// content (marked-content identifiers).
+    pub marked: Vec<Vec<usize>>,
+}
+
 /// The document of the pages; `None` only if the embedded typeface is unreadable.
-pub(in crate::certificate) fn write(pages: &[Canvas], sheet: &Sheet) -> Option<lopdf::Document> {
+pub(in crate::certificate) fn write(flow: &Flow) -> Option<Written> {
+    let sheet = &flow.sheet;
     let mut document = pdf::PdfDocument::new("");
     for weight in [Weight::Regular, Weight::Bold] {
         let font = pdf::PdfFont::new(face(weight)?.font.clone());
         document.resources.fonts.map.insert(font_id(weight), font);
     }
     let (width, height) = (pt(sheet.width), pt(sheet.height));
-    document.pages = pages
-        .iter()
-        .map(|page| {
-            let ops = Writer::new(sheet.height).page(page);
-            pdf::PdfPage::new(width.into(), height.into(), ops)
-        })
-        .collect();
-    Some(document.to_lopdf_document(&pdf::PdfSaveOptions::default(), &mut Vec::new()))
+    let mut marked = Vec::new();
+    for page in &flow.pages {
+        let (ops, runs) = Writer::new(sheet.height, &flow.structure).page(page);
+        let page = pdf::PdfPage::new(width.into(), height.into(), ops);
+        document.pages.push(page);
+        marked.push(runs);
+    }
+    let options = pdf::PdfSaveOptions::default();
+    let document = document.to_lopdf_document(&options, &mut Vec::new());
+    Some(Written { document, marked })
 }
 
 /// To a hundredth of a point: finer than any printer, and short in the file. What is not a number
@@ -48,8 +60,14 @@ fn pt(value: f64) -> pdf::Pt {
 }
 
 /// Graphics state as last set, to leave out what would not change.
-struct Writer {
+struct Writer<'s> {
     height: f64,
+    structure: &'s Structure,
+    /// What the next item belongs to.
+    run: Option<usize>,
+    /// What the open marked content belongs to; the outer `None` where none is open.
+    open: Option<Option<usize>>,
+    marked: Vec<usize>,
     ops: Vec<pdf::Op>,
     fill: Option<Ink>,
     stroke: Option<Pen>,
@@ -57,10 +75,14 @@ struct Writer {
     in_text: bool,
 }
 
-impl Writer {
-    fn new(height: f64) -> Self {
+impl<'s> Writer<'s> {
+    fn new(height: f64, structure: &'s Structure) -> Self {
         Writer {
             height,
+            structure,
+            run: None,
+            open: None,
+            marked: Vec::new(),
             ops: Vec::new(),
             fill: None,
             stroke: None,
@@ -69,16 +91,30 @@ impl Writer {
         }
     }
 
-    fn page(mut self, canvas: &Canvas) -> Vec<pdf::Op> {
+    fn page(mut self, canvas: &Canvas) -> (Vec<pdf::Op>, Vec<usize>) {
         self.ops.push(pdf::Op::SetLineJoinStyle {
             join: pdf::LineJoinStyle::Round,
         });
         self.ops.push(pdf::Op::SetLineCapStyle {
             cap: pdf::LineCapStyle::Butt,
         });
-        for item in &canvas.items {
+        let mut items = canvas.items.iter().peekable();
+        while let Some(item) = items.next() {
             match item {
-                Item::Text { at, style, text } => self.text(*at, *style, text),
+                Item::Run(run) => {
+                    self.run = *run;
+                    continue;
+                }
+                Item::Link { .. } => continue,
+                _ => self.mark(),
+            }
+            match item {
+                Item::Text { at, style, text } => {
+                    // Words at the end of one line and the beginning of the next are not one word.
+                    let goes_on =
+                        matches!(items.peek(), Some(Item::Text { at: next, .. }) if next.1 > at.1);
+                    self.text(*at, *style, text, goes_on);
+                }
                 Item::Lines { lines, pen } => self.lines(lines, *pen),
                 Item::Fill { points, ink } => {
                     self.polygon(points.iter().map(|p| (*p, false)), *ink)
@@ -88,11 +124,42 @@ impl Writer {
                     radius,
                     ink,
                 } => self.polygon(circle(*centre, *radius), *ink),
-                Item::Link { .. } => {}
+                Item::Link { .. } | Item::Run(_) => {}
             }
         }
+        self.close();
+        (self.ops, self.marked)
+    }
+
+    /// Opens the marked content that the next item belongs to.
+    fn mark(&mut self) {
+        if self.open == Some(self.run) {
+            return;
+        }
+        self.close();
+        let op = match self.run {
+            None => pdf::Op::BeginMarkedContent {
+                tag: "Artifact".to_owned(),
+            },
+            Some(run) => {
+                let number = i64::try_from(self.marked.len()).unwrap_or(i64::MAX);
+                self.marked.push(run);
+                let map = [("MCID".to_owned(), pdf::DictItem::Int(number))];
+                pdf::Op::BeginMarkedContentWithProperties {
+                    tag: self.structure.name(run).to_owned(),
+                    properties: pdf::DictItem::Dict { map: map.into() },
+                }
+            }
+        };
+        self.ops.push(op);
+        self.open = Some(self.run);
+    }
+
+    fn close(&mut self) {
         self.end_text();
-        self.ops
+        if self.open.take().is_some() {
+            self.ops.push(pdf::Op::EndMarkedContent);
+        }
     }
 
     fn point(&self, (x, y): Point) -> pdf::Point {
@@ -116,7 +183,7 @@ impl Writer {
         }
     }
 
-    fn text(&mut self, at: Point, style: Style, text: &str) {
+    fn text(&mut self, at: Point, style: Style, text: &str, goes_on: bool) {
         if !self.in_text {
             self.ops.push(pdf::Op::StartTextSection);
             self.in_text = true;
@@ -133,8 +200,12 @@ impl Writer {
         self.ops.push(pdf::Op::SetTextMatrix {
             matrix: pdf::TextMatrix::Translate(p.x, p.y),
         });
+        let mut text = text.to_owned();
+        if goes_on {
+            text.push(' ');
+        }
         self.ops.push(pdf::Op::ShowText {
-            items: vec![pdf::TextItem::Text(text.to_owned())],
+            items: vec![pdf::TextItem::Text(text)],
         });
     }
 

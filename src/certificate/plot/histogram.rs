@@ -2,9 +2,12 @@
 
 use super::axis::{Axis, Kind, linear_below, linear_left, round_step};
 use super::limit::{Side, limit};
+use super::trace::clip;
 use super::view::View;
 use crate::certificate::canvas::{Area, Canvas, Pen};
-use crate::certificate::ink::{CONFORMING, CONFORMING_SOFT, NONCONFORMING, TEXT, UNDECIDED};
+use crate::certificate::ink::{
+    ACCEPT, CONFORMING, CONFORMING_SOFT, NONCONFORMING, TEXT, UNDECIDED,
+};
 use crate::certificate::section::Characteristic;
 use crate::record::PartVerdict;
 
@@ -37,15 +40,73 @@ pub(in crate::certificate) fn bins(values: &[f64]) -> Option<Bins> {
     let first = (low / width).floor() * width;
     let count = (((high - first) / width).floor() as usize + 1).min(64);
     let mut counts = vec![0u32; count];
-    for v in sorted {
-        let index = (((v - first) / width).floor().max(0.0) as usize).min(count - 1);
-        counts[index] += 1;
-    }
-    Some(Bins {
+    let mut bins = Bins {
         first,
         width,
-        counts,
-    })
+        counts: Vec::new(),
+    };
+    for v in sorted {
+        if let Some(count) = bins.index(v).and_then(|i| counts.get_mut(i.min(count - 1))) {
+            *count += 1;
+        }
+    }
+    bins.counts = counts;
+    Some(bins)
+}
+
+impl Bins {
+    /// The bin of a value, were there bins without end.
+    fn index(&self, value: f64) -> Option<usize> {
+        let place = ((value - self.first) / self.width).floor().max(0.0);
+        place.is_finite().then_some(place as usize)
+    }
+
+    /// The bin of a value that was counted.
+    fn place(&self, value: f64) -> Option<usize> {
+        let last = self.counts.len().checked_sub(1)?;
+        let end = self.first + self.width * self.counts.len() as f64;
+        (value >= self.first && value <= end)
+            .then(|| self.index(value))
+            .flatten()
+            .map(|i| i.min(last))
+    }
+}
+
+/// Mean, standard deviation and greatest height of the normal curve, in the printed unit, where it is
+/// to be drawn.
+fn curve(bins: &Bins, c: &Characteristic) -> Option<(f64, f64, f64)> {
+    let spread = c.statistics.and_then(|s| s.mean.zip(s.standard_deviation));
+    let (mean, s) = spread.filter(|(_, s)| *s > 0.0 && c.normal())?;
+    let (mean, s) = (c.scale.scaled(mean), c.scale.scaled(s));
+    let height = c.values.len() as f64 * bins.width / (s * std::f64::consts::TAU.sqrt());
+    height.is_finite().then_some((mean, s, height))
+}
+
+fn peak(bins: &Bins, c: &Characteristic) -> f64 {
+    curve(bins, c).map_or(0.0, |(_, _, height)| height)
+}
+
+/// The normal distribution of the record's mean and standard deviation, as so many parts would
+/// follow it; only where the test for normality does not speak against it.
+fn normal(canvas: &mut Canvas, (x, y): (&Axis, &Axis), bins: &Bins, c: &Characteristic) {
+    let Some((mean, s, height)) = curve(bins, c) else {
+        return;
+    };
+    const STEPS: u32 = 80;
+    let points = (0..=STEPS)
+        .map(|k| {
+            let value = mean + s * (f64::from(k) / f64::from(STEPS) - 0.5) * 8.0;
+            let z = (value - mean) / s;
+            (x.at(value), y.at(height * (-0.5 * z * z).exp()))
+        })
+        .collect::<Vec<_>>();
+    let plot = Area {
+        left: x.from,
+        right: x.to,
+        top: y.to,
+        bottom: y.from,
+    };
+    canvas.lines(clip(&points, plot), Pen::solid(0.9, ACCEPT));
 }
 
 /// Draws the histogram into the area (axes included).
@@ -77,10 +138,16 @@ pub(in crate::certificate) fn histogram(canvas: &mut Canvas, area: Area, c: &Cha
     let y = Axis {
         kind: Kind::Linear,
         low: 0.0,
-        high: f64::from(most) * 1.12,
+        high: f64::from(most).max(peak(&bins, c)) * 1.12,
         from: plot.bottom,
         to: plot.top,
     };
+    let second: Vec<f64> = c
+        .values
+        .iter()
+        .filter(|v| c.in_second_group(v.part))
+        .map(|v| c.scale.scaled(v.value))
+        .collect();
     for (index, count) in bins.counts.iter().enumerate().filter(|(_, c)| **c > 0) {
         let left = bins.first + bins.width * index as f64;
         let bar = Area {
@@ -90,8 +157,17 @@ pub(in crate::certificate) fn histogram(canvas: &mut Canvas, area: Area, c: &Cha
             bottom: plot.bottom,
         };
         canvas.fill_area(bar, CONFORMING_SOFT);
+        let dark = second
+            .iter()
+            .filter(|v| bins.place(**v) == Some(index))
+            .count();
+        if dark > 0 {
+            let top = y.at(dark as f64);
+            canvas.fill_area(Area { top, ..bar }, CONFORMING);
+        }
         canvas.frame(bar, Pen::solid(0.5, CONFORMING));
     }
+    normal(canvas, (&x, &y), &bins, c);
     rug(canvas, &x, c, plot);
     linear_below(canvas, plot, &x);
     linear_left(canvas, plot, &y, f64::from(most).min(4.0));

@@ -4,7 +4,10 @@
 pub(super) mod axis;
 pub(super) mod histogram;
 pub(super) mod limit;
+pub(super) mod lot_chart;
+pub(super) mod probability;
 pub(super) mod run_chart;
+pub(super) mod scatter;
 pub(super) mod strip;
 pub(super) mod trace;
 pub(super) mod view;

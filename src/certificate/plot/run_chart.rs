@@ -3,7 +3,7 @@
 use super::axis::{Axis, Kind, linear_below, linear_left};
 use super::limit::{Side, limit};
 use super::view::View;
-use crate::certificate::canvas::{Area, Canvas, Mark, Pen};
+use crate::certificate::canvas::{Area, Canvas, Mark, Pen, Point};
 use crate::certificate::ink::{CONFORMING, QUIET, TEXT};
 use crate::certificate::section::Characteristic;
 use crate::record::PartVerdict;
@@ -62,23 +62,48 @@ pub(in crate::certificate) fn run_chart(
 /// Dots; parts that are not conforming have the mark of their verdict; values off the chart stand
 /// at its edge.
 fn points(canvas: &mut Canvas, c: &Characteristic, x: &Axis, y: &Axis) {
-    let mut seen = BTreeSet::new();
-    let mut dots = Vec::new();
-    for v in &c.values {
+    let places = c.values.iter().map(|v| {
         let at = (
             x.at(v.order as f64 + 1.0),
             y.at(c.scale.scaled(v.value)).clamp(y.to, y.from),
         );
-        match v.verdict {
-            PartVerdict::Nonconforming => canvas.mark(Mark::Bad, at, 5.0),
-            PartVerdict::Undecided => canvas.mark(Mark::Doubt, at, 5.0),
+        (v.verdict, c.in_second_group(v.part), at)
+    });
+    dots(canvas, places);
+}
+
+/// One dot a part, darker in the second of two populations; parts at the same place on paper share
+/// one. Parts that are not conforming have the mark of their verdict.
+pub(in crate::certificate) fn dots(
+    canvas: &mut Canvas,
+    places: impl Iterator<Item = (PartVerdict, bool, Point)>,
+) {
+    let mut seen = BTreeSet::new();
+    let mut first = Vec::new();
+    let mut other = Vec::new();
+    let mut marks = Vec::new();
+    for (verdict, second, at) in places {
+        match verdict {
+            PartVerdict::Nonconforming => marks.push((Mark::Bad, at)),
+            PartVerdict::Undecided => marks.push((Mark::Doubt, at)),
             _ => {
                 let cell = ((at.0 * 3.0).round() as i64, (at.1 * 3.0).round() as i64);
-                if seen.insert(cell) {
-                    dots.push(vec![(at.0 - 1.0, at.1), (at.0 + 1.0, at.1)]);
+                if !seen.insert((second, cell)) {
+                    continue;
+                }
+                let dot = vec![(at.0 - 1.0, at.1), (at.0 + 1.0, at.1)];
+                if second {
+                    other.push(vec![(at.0, at.1 - 1.6), (at.0, at.1 + 1.6)]);
+                    other.push(vec![(at.0 - 1.6, at.1), (at.0 + 1.6, at.1)]);
+                } else {
+                    first.push(dot);
                 }
             }
         }
     }
-    canvas.lines(dots, Pen::solid(2.0, CONFORMING));
+    canvas.lines(first, Pen::solid(2.0, CONFORMING));
+    canvas.lines(other, Pen::solid(0.7, TEXT));
+    for (mark, at) in marks {
+        canvas.mark(mark, at, 5.0);
+    }
 }

@@ -2,21 +2,29 @@
 
 use super::{Characteristic, lot_ink, lot_mark, lot_word};
 use crate::certificate::canvas::Area;
-use crate::certificate::figures::{ABSENT, fixed, index, instant, plain};
+use crate::certificate::figures::{ABSENT, fixed, index, instant, plain, sentence};
 use crate::certificate::flow::{BODY, BODY_LEADING, Bookmark, Flow, SMALL, SMALL_LEADING};
 use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
+use crate::certificate::paper::Sheet;
 use crate::certificate::plot::strip::strip;
+use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
 use crate::record::{ClassSection, LotRecord};
 
-const WORD: Style = Style::bold(42.0);
-const SENTENCE: Style = Style::regular(12.5);
+const VERDICT: Style = Style::bold(42.0);
+const REASON: Style = Style::regular(12.5);
+/// Where the verdict's word begins, behind its mark: points from the left margin.
+pub(in crate::certificate) const WORD_LEFT: f64 = 52.0;
+/// Baseline of the verdict's word, points from the top margin.
+pub(in crate::certificate) const WORD: f64 = 39.0;
+/// Where the sentence why begins, points from the top margin.
+pub(in crate::certificate) const SENTENCE: f64 = 64.0;
 const SENTENCE_LEADING: f64 = 16.0;
 const KEY: Style = Style::bold(10.5);
 const VALUE: Style = Style::regular(10.5);
 /// Width of the labels in the right column, and its line height.
-const LABEL: f64 = 58.0;
+pub(in crate::certificate) const LABEL: f64 = 58.0;
 const SIDE: f64 = 13.0;
 
 /// The first page (more, where texts are very long).
@@ -35,11 +43,16 @@ pub(in crate::certificate) fn answer(
     table(flow, characteristics);
 }
 
+/// Where the right column of page one begins.
+pub(in crate::certificate) fn split(sheet: &Sheet) -> f64 {
+    sheet.left + sheet.measure() * 0.57
+}
+
 /// Verdict and reason on the left, identity of the lot on the right.
 fn head(flow: &mut Flow, record: &LotRecord) {
     let measure = flow.sheet.measure();
     let left = flow.left();
-    let split = left + measure * 0.57;
+    let split = split(&flow.sheet);
     let identity = identity(record);
     let lines = side_lines(&identity, flow.right() - split - LABEL);
     let side_height: f64 = lines.iter().map(|l| 3.0 + l.len() as f64 * SIDE).sum();
@@ -49,9 +62,11 @@ fn head(flow: &mut Flow, record: &LotRecord) {
     let word = lot_word(record.verdict).to_uppercase();
     flow.page()
         .mark(lot_mark(record.verdict), (left + 20.0, top + 25.0), 40.0);
+    let before = flow.enter(Role::Heading(1));
     flow.page()
-        .text((left + 52.0, top + 39.0), WORD.ink(ink), &word);
-    flow.y = top + 64.0;
+        .text((left + WORD_LEFT, top + WORD), VERDICT.ink(ink), &word);
+    flow.leave(before);
+    flow.y = top + SENTENCE;
     let room = if beside { split - 26.0 - left } else { measure };
     why(flow, record, room);
     if beside {
@@ -76,11 +91,13 @@ fn side(
     let mut y = top;
     for (index, ((label, _), lines)) in identity.iter().zip(lines).enumerate() {
         let style = if index < 2 { KEY } else { VALUE };
+        let before = flow.enter(Role::Paragraph);
         flow.page().text((x, y + 9.0), SMALL, label);
         for line in lines {
             flow.page().text((x + LABEL, y + 9.0), style, line);
             y += SIDE;
         }
+        flow.leave(before);
         y += 3.0;
     }
     y
@@ -107,25 +124,29 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
     let Some((first, others)) = record.reasons.split_first() else {
         return;
     };
-    for line in wrap(&first.text, SENTENCE, room) {
+    let before = flow.enter(Role::Paragraph);
+    for line in wrap(&sentence(&first.text), REASON, room) {
         let area = flow.take(SENTENCE_LEADING);
         flow.page()
-            .text((area.left, area.top + 11.5), SENTENCE, &line);
+            .text((area.left, area.top + 11.5), REASON, &line);
     }
+    flow.leave(before);
     let mut left = FURTHER;
     let mut shown = 0;
     for reason in others {
-        let lines = wrap(&reason.text, BODY, room);
+        let lines = wrap(&sentence(&reason.text), BODY, room);
         if lines.len() > left {
             break;
         }
         left -= lines.len();
         shown += 1;
         flow.gap(3.0);
+        let before = flow.enter(Role::Paragraph);
         for line in lines {
             let area = flow.take(BODY_LEADING);
             flow.page().text((area.left, area.top + 9.5), BODY, &line);
         }
+        flow.leave(before);
     }
     let more = others.len() - shown;
     if more == 0 {
@@ -135,6 +156,7 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
     flow.gap(3.0);
     let area = flow.take(BODY_LEADING);
     let text = format!("and {more} more {plural}: see Reasons");
+    let before = flow.enter(Role::Paragraph);
     let wide = flow
         .page()
         .text((area.left, area.top + 9.5), BODY.ink(ACCEPT), &text);
@@ -143,6 +165,7 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
         ..area
     };
     flow.page().link(target, "reasons");
+    flow.leave(before);
 }
 
 /// What names the lot; only what the record has.
@@ -301,7 +324,7 @@ fn table(flow: &mut Flow, characteristics: &[Characteristic]) {
             exact(c.bound.lower),
             exact(c.bound.nominal),
             exact(c.bound.upper),
-            Cell::drawing(move |page, area| strip(page, area, c)),
+            Cell::drawing(c.in_words(), move |page, area| strip(page, area, c)),
             Cell::text(mean),
             Cell::text(index(c.statistics.and_then(|s| s.ppk))),
             count,

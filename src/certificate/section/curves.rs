@@ -10,6 +10,7 @@ use crate::certificate::plot::axis::{Axis, Kind, log_grid};
 use crate::certificate::plot::limit::{Side, limit};
 use crate::certificate::plot::trace::{Coverage, clip, columns, simplify};
 use crate::certificate::plot::view::extent;
+use crate::certificate::structure::Role;
 use crate::certificate::text::Style;
 use crate::quantity::{engineering, with_uncertainty};
 use crate::record::{BoundSection, LotRecord, PartVerdict};
@@ -56,7 +57,9 @@ pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves
     for quantity in [Quantity::Magnitude, Quantity::Resistance] {
         plot(flow, record, curves, quantity, height);
     }
-    circuit(flow, record);
+    if let Some(words) = circuit_words(record) {
+        flow.paragraph_of(&words, SMALL, SMALL_LEADING);
+    }
 }
 
 /// The curve of the equivalent circuit, above the others and thin.
@@ -77,11 +80,10 @@ fn fitted(page: &mut Canvas, frame: &Frame, record: &LotRecord, quantity: Quanti
     page.lines(clip(&placed, frame.area), Pen::dashed(0.7, TEXT));
 }
 
-/// What the dashed curve is, and the elements of the circuit.
-fn circuit(flow: &mut Flow, record: &LotRecord) {
-    let Some(circuit) = &record.circuit else {
-        return;
-    };
+/// What the dashed curve is, and the elements of the circuit, for the document and its text
+/// twin.
+pub(in crate::certificate) fn circuit_words(record: &LotRecord) -> Option<String> {
+    let circuit = record.circuit.as_ref()?;
     let share = |v: f64| engineering(v, "1", 2);
     let mut text = format!(
         "Equivalent circuit of part {}, the middle of the lot: {}",
@@ -112,7 +114,7 @@ fn circuit(flow: &mut Flow, record: &LotRecord) {
             why.join("; ")
         ));
     }
-    flow.paragraph_of(&text, SMALL, SMALL_LEADING);
+    Some(text)
 }
 
 /// The curve's points (hertz, ohm) as logarithms; points without a logarithm are gaps.
@@ -169,9 +171,12 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
         .collect();
     let Some(frame) = frame(area, curves, &logs, &bounds) else {
         let at = (area.left, (area.top + area.bottom) / 2.0);
+        let before = flow.enter(Role::Paragraph);
         flow.page().text(at, SMALL, "No positive values to draw.");
+        flow.leave(before);
         return;
     };
+    let before = flow.enter(Role::Figure(in_words(quantity, curves)));
     let page = flow.page();
     log_grid(page, area, (&frame.x, "Hz"), (&frame.y, "Ω"));
     let unseen = traces(page, &frame, curves, &logs);
@@ -190,6 +195,7 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
             drawn.extend(resonance(page, &frame, bound));
         }
     }
+    flow.leave(before);
     if !drawn.is_empty() {
         let text = format!("Limits drawn: {}.", drawn.join("; "));
         flow.paragraph_of(&text, SMALL, SMALL_LEADING);
@@ -198,6 +204,27 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
         let text = format!("Outside these axes: {}.", listed(&unseen));
         flow.paragraph_of(&text, SMALL, SMALL_LEADING);
     }
+}
+
+/// What the plot shows, for whoever cannot see it.
+fn in_words(quantity: Quantity, curves: &[Curve]) -> String {
+    let kinds = [
+        PartVerdict::Conforming,
+        PartVerdict::Nonconforming,
+        PartVerdict::Undecided,
+        PartVerdict::Unmeasured,
+    ];
+    let each: Vec<String> = kinds
+        .into_iter()
+        .map(|kind| (kind, curves.iter().filter(|c| c.verdict == kind).count()))
+        .filter(|(_, count)| *count > 0)
+        .map(|(kind, count)| format!("{count} {}", part_word(kind)))
+        .collect();
+    format!(
+        "{} against frequency, one curve a part: {}",
+        quantity.title(),
+        each.join(", ")
+    )
 }
 
 /// The first parts by number, and how many more.
@@ -435,6 +462,7 @@ fn resonance(page: &mut Canvas, frame: &Frame, bound: &BoundSection) -> Vec<Stri
 /// What the strokes mean.
 fn key(flow: &mut Flow) {
     let area = flow.take(14.0);
+    let before = flow.enter(Role::Paragraph);
     let mut x = area.left;
     let y = area.top + 7.0;
     let entries = [
@@ -460,4 +488,5 @@ fn key(flow: &mut Flow) {
             .text((x, y + 3.0), SMALL.ink(TEXT), part_word(verdict))
             + 16.0;
     }
+    flow.leave(before);
 }

@@ -1,64 +1,69 @@
-//! A histogram for each characteristic.
+//! Each characteristic as a histogram and on a normal probability plot.
 
 use super::Characteristic;
-use crate::certificate::canvas::Area;
-use crate::certificate::figures::ABSENT;
-use crate::certificate::flow::{Flow, SMALL};
+use crate::certificate::canvas::{Area, Canvas};
+use crate::certificate::figures::{ABSENT, chance};
+use crate::certificate::flow::{Flow, SMALL, SMALL_LEADING};
 use crate::certificate::plot::histogram::histogram;
-use crate::certificate::text::{Style, wrap};
+use crate::certificate::plot::probability::probability;
+use crate::certificate::structure::Role;
 
-const HEIGHT: f64 = 132.0;
 const SPACE: f64 = 22.0;
-const TITLE: Style = Style::bold(9.2);
+/// Fewer values have no distribution to draw.
+pub(super) const FEWEST: usize = 3;
+/// Room for a caption.
+const BELOW: f64 = 16.0;
 
 pub(in crate::certificate) fn distributions(flow: &mut Flow, characteristics: &[Characteristic]) {
-    flow.heading("Distributions", HEIGHT + 60.0);
-    let width = (flow.sheet.measure() - SPACE) / 2.0;
-    for pair in characteristics.chunks(2) {
-        let titles: Vec<Vec<String>> = pair
-            .iter()
-            .map(|c| wrap(&c.title(), TITLE, width))
-            .collect();
-        let captions: Vec<Vec<String>> = pair
-            .iter()
-            .map(|c| wrap(&caption(c), SMALL, width))
-            .collect();
-        let most = |all: &[Vec<String>]| all.iter().map(Vec::len).max().unwrap_or(0) as f64;
-        let (above, below) = (most(&titles) * 12.0, most(&captions) * 10.5);
-        let area = flow.take(above + HEIGHT + below + 14.0);
-        for (index, c) in pair.iter().enumerate() {
-            let left = area.left + index as f64 * (width + SPACE);
-            for (n, line) in titles[index].iter().enumerate() {
-                flow.page()
-                    .text((left, area.top + 9.0 + n as f64 * 12.0), TITLE, line);
-            }
-            let plot = Area {
-                left,
-                right: left + width,
-                top: area.top + above,
-                bottom: area.top + above + HEIGHT,
-            };
-            if c.values.is_empty() {
-                let at = (left, area.top + above + 20.0);
-                flow.page().text(at, SMALL, "no values");
-            } else {
-                histogram(flow.page(), plot, c);
-            }
-            for (n, line) in captions[index].iter().enumerate() {
-                let y = plot.bottom + 8.0 + n as f64 * 10.5;
-                flow.page().text((left, y), SMALL, line);
-            }
-        }
+    // Heading, what the drawings are, and four of them share a page of either paper.
+    let height = (flow.sheet.bottom - flow.sheet.top - 84.0) / 4.0 - 62.0;
+    if characteristics.iter().all(|c| c.values.len() < FEWEST) {
+        flow.heading("Distributions", 40.0);
+        flow.small("Fewer than three parts have a value: there is no distribution to draw. The readings stand in the parts table.");
+        return;
     }
+    flow.heading("Distributions", height + 80.0);
     flow.small(
-        "Ordinate: number of parts. Hatched lines are limits, the dashed line is the nominal value; ticks on \
-         the axis are parts that are not conforming. Where the values fill only a small part of the space between the \
-         limits, the drawing shows the values large and the limits stand in the caption.",
+        "Left: number of parts; the curve is a normal distribution of the same mean and standard deviation, drawn only where the values \
+         do not speak against one; ticks on the axis are parts that are not conforming. Right: share of a normal population \
+         below, %; values of one lie along the line, which is dashed where they do not. Hatched lines are limits, the dashed \
+         upright line is the nominal value. Values that fill only a small part of the space between the limits are shown large.",
     );
+    for c in characteristics {
+        flow.subheading(&c.title(), height + BELOW);
+        if c.values.len() < FEWEST {
+            flow.small("Fewer than three values.");
+            continue;
+        }
+        let area = flow.take(height);
+        let half = (area.width() - SPACE) / 2.0;
+        let left = Area {
+            right: area.left + half,
+            ..area
+        };
+        let right = Area {
+            left: area.right - half,
+            ..area
+        };
+        figure(flow, format!("Histogram. {}", c.in_words()), |page| {
+            histogram(page, left, c);
+        });
+        let words = format!("Normal probability plot. {}", c.in_words());
+        figure(flow, words, |page| probability(page, right, c));
+        flow.y += 3.0;
+        flow.paragraph_of(&caption(c), SMALL, SMALL_LEADING);
+    }
+}
+
+/// A drawing with its words.
+pub(super) fn figure(flow: &mut Flow, words: String, draw: impl FnOnce(&mut Canvas)) {
+    let before = flow.enter(Role::Figure(words));
+    draw(flow.page());
+    flow.leave(before);
 }
 
 /// The limits and the values in words.
-fn caption(c: &Characteristic) -> String {
+pub(in crate::certificate) fn caption(c: &Characteristic) -> String {
     let mut out = Vec::new();
     let unit = &c.scale.unit;
     for (word, value) in [
@@ -80,5 +85,21 @@ fn caption(c: &Characteristic) -> String {
                 .map_or_else(|| ABSENT.to_owned(), |v| c.scale.spread(v))
         ));
     }
-    format!("{} ({unit})", out.join(" · "))
+    let mut text = format!("{} ({unit}).", out.join(" · "));
+    if let Some(p) = c.statistics.and_then(|s| s.normality_p_value) {
+        let word = if c.normal() {
+            "normal distribution not contradicted"
+        } else {
+            "not normally distributed"
+        };
+        text.push_str(&format!(" Anderson-Darling p {}: {word}.", chance(p)));
+    }
+    if let Some([light, dark]) = c.mixed.map(|m| m.groups.as_slice()) {
+        text.push_str(&format!(
+            " Two groups: {} parts light, {} parts dark (crosses).",
+            light.parts.len(),
+            dark.parts.len()
+        ));
+    }
+    text
 }

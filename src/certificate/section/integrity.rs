@@ -5,6 +5,7 @@ use crate::certificate::canvas::{Area, Canvas};
 use crate::certificate::figures::instant;
 use crate::certificate::flow::Flow;
 use crate::certificate::ink::{QUIET, TEXT};
+use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::{InLedger, Sources};
 use crate::record::LotRecord;
@@ -19,7 +20,8 @@ pub(in crate::certificate) fn integrity(
     digest: &str,
     sources: &Sources,
 ) -> bool {
-    flow.heading("Integrity", 180.0);
+    // With the signatures on one page, where that is possible.
+    flow.heading("Integrity", 600.0);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
@@ -33,6 +35,9 @@ pub(in crate::certificate) fn integrity(
     let coded = code(&payload(record, digest));
     if let Some(code) = &coded {
         let area = flow.take(SIDE);
+        let before = flow.enter(Role::Figure(
+            "Two-dimensional code with the record's identity and digest".to_owned(),
+        ));
         draw(
             flow.page(),
             Area {
@@ -41,6 +46,8 @@ pub(in crate::certificate) fn integrity(
             },
             code,
         );
+        flow.leave(before);
+        let before = flow.enter(Role::Paragraph);
         let style = crate::certificate::flow::SMALL;
         let room = area.width() - SIDE - 16.0;
         let text = "The code holds the record's identity and the SHA-256 of the JSON record. The JSON record is \
@@ -53,6 +60,7 @@ pub(in crate::certificate) fn integrity(
             let at = (area.left + SIDE + 16.0, area.top + 16.0 + n as f64 * 11.0);
             flow.page().text(at, style, line);
         }
+        flow.leave(before);
     }
     coded.is_some()
 }

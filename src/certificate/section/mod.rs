@@ -5,10 +5,13 @@ pub(super) mod curves;
 pub(super) mod distributions;
 pub(super) mod files;
 pub(super) mod integrity;
+pub(super) mod lots;
 pub(super) mod order;
 pub(super) mod parts;
 pub(super) mod plan;
+pub(super) mod populations;
 pub(super) mod reasons;
+pub(super) mod scatter;
 pub(super) mod signatures;
 pub(super) mod sources;
 pub(super) mod station;
@@ -17,7 +20,7 @@ pub(super) mod statistics;
 use super::canvas::Mark;
 use super::figures::Scale;
 use super::ink::{ACCEPT, Ink, NONCONFORMING, TEXT, UNDECIDED, UNMEASURED};
-use crate::record::{BoundSection, LotRecord, LotVerdict, PartVerdict, Statistics};
+use crate::record::{BoundSection, LotRecord, LotVerdict, MixedSection, PartVerdict, Statistics};
 
 /// One value of a characteristic.
 #[derive(Debug, Clone, Copy)]
@@ -37,6 +40,8 @@ pub(super) struct Characteristic<'a> {
     pub scale: Scale,
     pub values: Vec<Value<'a>>,
     pub statistics: Option<&'a Statistics>,
+    /// Two populations, where they were looked for and found at least possible.
+    pub mixed: Option<&'a MixedSection>,
 }
 
 impl Characteristic<'_> {
@@ -48,6 +53,20 @@ impl Characteristic<'_> {
             .collect()
     }
 
+    /// Whether the test of Anderson and Darling was made and does not speak against a normal
+    /// distribution.
+    pub fn normal(&self) -> bool {
+        self.statistics.is_some_and(|s| {
+            s.normality_p_value.is_some() && s.warnings.iter().all(|w| w.code != "not_normal")
+        })
+    }
+
+    /// Whether a part belongs to the second of two populations.
+    pub fn in_second_group(&self, part: &str) -> bool {
+        let second = self.mixed.and_then(|m| m.groups.get(1));
+        second.is_some_and(|g| g.parts.iter().any(|p| p == part))
+    }
+
     /// Name, with a number and its unit kept on one line.
     pub fn name(&self) -> String {
         let mut out = String::new();
@@ -56,6 +75,20 @@ impl Characteristic<'_> {
             out.push(if c == ' ' && digit { '\u{a0}' } else { c });
         }
         out
+    }
+
+    /// What a drawing of the values shows, for whoever cannot see it.
+    pub fn in_words(&self) -> String {
+        let unit = &self.scale.unit;
+        let mut words = vec![format!("{}: {} values", self.bound.name, self.values.len())];
+        if let Some((low, high)) = self.statistics.and_then(|s| Some((s.minimum?, s.maximum?))) {
+            let (low, high) = (self.scale.figure(low), self.scale.figure(high));
+            words.push(format!("from {low} to {high} {unit}"));
+        }
+        for (word, limit) in [("lower", self.bound.lower), ("upper", self.bound.upper)] {
+            words.extend(limit.map(|l| format!("{word} limit {} {unit}", self.scale.exact(l))));
+        }
+        words.join(", ")
     }
 
     /// Name with unit: `capacitance at 1 kHz, µF`.
@@ -75,6 +108,11 @@ pub(super) fn characteristics(record: &LotRecord) -> Vec<Characteristic<'_>> {
             scale: Scale::of(record, bound),
             values: values(record, &bound.key),
             statistics: record.statistics.get(&bound.key),
+            mixed: record
+                .findings
+                .mixed
+                .iter()
+                .find(|m| m.of == bound.key && m.groups.len() > 1),
         })
         .collect()
 }
@@ -86,6 +124,9 @@ fn values<'a>(record: &'a LotRecord, key: &str) -> Vec<Value<'a>> {
         .enumerate()
         .filter_map(|(order, part)| {
             let reading = part.readings.get(key)?;
+            if reading.verdict == PartVerdict::Unmeasured {
+                return None;
+            }
             let value = reading.value.filter(|v| v.is_finite())?;
             Some(Value {
                 order,

@@ -122,6 +122,7 @@ fn cell<'a>(reading: &ReadingRecord, c: &Characteristic) -> Cell<'a> {
         PartVerdict::Nonconforming | PartVerdict::Undecided => cell
             .bold()
             .mark(part_mark(reading.verdict))
+            .spoken(part_word(reading.verdict))
             .ink(part_ink(reading.verdict)),
         _ => cell,
     }

@@ -1,15 +1,17 @@
 //! The plan: how probably it accepts a lot of a given quality, and what sampling by variables found.
 
+use super::distributions::figure;
 use super::{lot_ink, lot_mark, lot_word};
-use crate::certificate::canvas::{Anchor, Area, Pen};
-use crate::certificate::figures::{ABSENT, plain, significant};
+use crate::certificate::canvas::{Anchor, Area, Canvas, Pen};
+use crate::certificate::figures::{ABSENT, instant, plain, significant};
 use crate::certificate::flow::{Flow, SMALL};
 use crate::certificate::ink::{ACCEPT, QUIET, TEXT};
 use crate::certificate::plot::axis::{Axis, Kind, TICK, linear_below, linear_left};
+use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::{Style, wrap};
 use crate::lot::{ClassSection, OperatingCharacteristic};
-use crate::record::LotRecord;
+use crate::record::{LotRecord, Switching};
 
 const HEIGHT: f64 = 128.0;
 const SPACE: f64 = 22.0;
@@ -17,6 +19,8 @@ const TITLE: Style = Style::bold(9.2);
 
 pub(in crate::certificate) fn plan(flow: &mut Flow, record: &LotRecord) {
     by_variables(flow, record);
+    shares(flow, record);
+    switching(flow, record);
     let curves: Vec<(&String, &ClassSection, &OperatingCharacteristic)> = record
         .sampling
         .classes
@@ -46,12 +50,17 @@ pub(in crate::certificate) fn plan(flow: &mut Flow, record: &LotRecord) {
             };
             let title = format!("Class {name}: n {}, Ac {}", class.n, class.ac);
             let title = crate::certificate::text::elide(&title, TITLE, width);
+            let before = flow.enter(Role::Heading(2));
             flow.page().text((left, area.top + 9.0), TITLE, &title);
-            draw(flow, plot, oc);
+            flow.leave(before);
+            let words = format!("Operating characteristic of class {name}: {}", words(oc));
+            figure(flow, words, |page| draw(page, plot, oc));
+            let before = flow.enter(Role::Paragraph);
             for (n, line) in caption.iter().enumerate() {
                 let at = (left, plot.bottom + 8.0 + n as f64 * 10.5);
                 flow.page().text(at, SMALL, line);
             }
+            flow.leave(before);
         }
     }
     flow.small(
@@ -70,7 +79,7 @@ pub(in crate::certificate) fn words(oc: &OperatingCharacteristic) -> String {
     )
 }
 
-fn draw(flow: &mut Flow, area: Area, oc: &OperatingCharacteristic) {
+fn draw(page: &mut Canvas, area: Area, oc: &OperatingCharacteristic) {
     let plot = Area {
         left: area.left + 26.0,
         right: area.right - 4.0,
@@ -87,7 +96,6 @@ fn draw(flow: &mut Flow, area: Area, oc: &OperatingCharacteristic) {
     };
     let x = axis(most, plot.left, plot.right);
     let y = axis(100.0, plot.bottom, plot.top);
-    let page = flow.page();
     for (share, chance, label) in [
         (oc.producers_risk_quality, 95.0, "95 %"),
         (oc.consumers_risk_quality, 10.0, "10 %"),
@@ -112,6 +120,122 @@ fn draw(flow: &mut Flow, area: Area, oc: &OperatingCharacteristic) {
     page.lines(vec![curve], Pen::solid(1.1, ACCEPT));
     linear_below(page, plot, &x);
     linear_left(page, plot, &y, 5.0);
+}
+
+/// What the counts say of the lot.
+fn shares(flow: &mut Flow, record: &LotRecord) {
+    let classes = &record.sampling.classes;
+    if classes
+        .values()
+        .all(|c| c.share_nonconforming_upper_95.is_none())
+    {
+        return;
+    }
+    flow.heading("Share nonconforming", 70.0);
+    let mut table = Table::new(vec![
+        Column::new("Class", Align::Left, Span::Natural),
+        Column::new("n", Align::Right, Span::Natural),
+        Column::new("Nonconforming", Align::Right, Span::Natural),
+        Column::new("Undecided", Align::Right, Span::Natural),
+        Column::new("Share in the sample", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("In the lot at least", Align::Decimal, Span::Natural).unit("%"),
+        Column::new("In the lot at most", Align::Decimal, Span::Natural).unit("%"),
+    ]);
+    for (name, class) in classes {
+        table.row(vec![
+            Cell::text(name.clone()).bold(),
+            Cell::text(class.n.to_string()),
+            Cell::text(class.nonconforming.to_string()),
+            Cell::text(class.undecided.to_string()),
+            Cell::text(share(class.share_nonconforming)),
+            Cell::text(share(class.share_nonconforming_lower_95)),
+            Cell::text(share(class.share_nonconforming_upper_95)),
+        ]);
+    }
+    table.set(flow);
+    flow.y += 3.0;
+    flow.small(SHARE);
+}
+
+const SHARE: &str = "Bounds one-sided with a confidence of 95 % each, exact for a lot of this size. Undecided parts count as nonconforming in the share and in the upper bound.";
+
+/// A share in percent.
+pub(in crate::certificate) fn share(value: Option<f64>) -> String {
+    value.map_or_else(|| ABSENT.to_owned(), |v| significant(v * 100.0, 3))
+}
+
+/// Where the switching rules stand, and why.
+fn switching(flow: &mut Flow, record: &LotRecord) {
+    let Some(switching) = &record.sampling.switching else {
+        return;
+    };
+    flow.heading("Severity of inspection", 70.0);
+    let mut table = Table::new(vec![
+        Column::new("Class", Align::Left, Span::Natural),
+        Column::new("Inspection", Align::Left, Span::Natural),
+        Column::new("Switching score", Align::Right, Span::Natural),
+        Column::new("Lots that count", Align::Right, Span::Natural),
+        Column::new("Why", Align::Left, Span::Share(1.0)),
+    ]);
+    for (name, state) in &switching.classes {
+        let severity = if state.discontinued {
+            format!("{}, discontinued", state.severity)
+        } else {
+            state.severity.clone()
+        };
+        table.row(vec![
+            Cell::text(name.clone()).bold(),
+            Cell::text(severity),
+            Cell::text(state.score.to_string()),
+            Cell::text(state.lots.to_string()),
+            Cell::text(state.why.clone()),
+        ]);
+    }
+    table.set(flow);
+    flow.y += 3.0;
+    for words in decisions(switching) {
+        flow.small(&words);
+    }
+    flow.small(&before(switching));
+}
+
+/// Changes of the severity in view and decisions of persons, for the document and its text twin.
+pub(in crate::certificate) fn decisions(switching: &Switching) -> Vec<String> {
+    let mut out = Vec::new();
+    for (class, state) in &switching.classes {
+        for change in &state.changes {
+            let after = change
+                .after
+                .as_ref()
+                .map_or(String::new(), |lot| format!(" after lot {lot}"));
+            out.push(format!(
+                "Class {class}: from {} to {}{after}: {}.",
+                change.from, change.to, change.rule
+            ));
+        }
+        if let Some(set) = &state.set {
+            let by = set
+                .by
+                .as_ref()
+                .map_or(String::new(), |by| format!(" by {by}"));
+            out.push(format!(
+                "Class {class}: set to {}{by} on {}, entry {} of the ledger, because: {}.",
+                set.severity,
+                instant(&set.time),
+                set.entry,
+                set.reason
+            ));
+        }
+    }
+    out
+}
+
+/// The records that the switching rules looked at, for the document and its text twin.
+pub(in crate::certificate) fn before(switching: &Switching) -> String {
+    match switching.history.as_slice() {
+        [] => "No record of the same part and supplier before this one.".to_owned(),
+        records => format!("Records before, oldest first: {}.", records.join(", ")),
+    }
 }
 
 /// What sampling by variables found, characteristic by characteristic.

@@ -2,9 +2,10 @@
 
 use super::{characteristics, part_anchor, part_ink, part_mark, part_word};
 use crate::certificate::canvas::Area;
-use crate::certificate::figures::ABSENT;
+use crate::certificate::figures::{ABSENT, sentence};
 use crate::certificate::flow::{BODY, BODY_LEADING, Flow, SMALL};
 use crate::certificate::ink::{ACCEPT, NONCONFORMING, QUIET};
+use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::width;
 use crate::diagnostic::Note;
@@ -35,8 +36,9 @@ pub(in crate::certificate) fn reasons(flow: &mut Flow, record: &LotRecord) {
 /// A sentence, its code below, and links to the parts that it names.
 fn note(flow: &mut Flow, note: &Note, names: &BTreeSet<&str>) {
     flow.need(30.0);
-    flow.paragraph_of(&note.text, BODY, BODY_LEADING);
+    flow.paragraph_of(&sentence(&note.text), BODY, BODY_LEADING);
     let area = flow.take(12.0);
+    let before = flow.enter(Role::Paragraph);
     let mut x = area.left;
     x += flow.page().text((x, area.top + 8.5), SMALL, &note.code) + 10.0;
     for part in named_parts(&note.text, names) {
@@ -55,6 +57,7 @@ fn note(flow: &mut Flow, note: &Note, names: &BTreeSet<&str>) {
         flow.page().link(target, &part_anchor(part));
         x += wide + 10.0;
     }
+    flow.leave(before);
     flow.y += 5.0;
 }
 

@@ -1,13 +1,65 @@
-//! Places to sign.
+//! Who signed, and how to check it; places to sign by hand.
 
+use crate::certificate::Signatory;
 use crate::certificate::canvas::Pen;
+use crate::certificate::figures::instant;
 use crate::certificate::flow::{Flow, SMALL};
-use crate::certificate::ink::TEXT;
+use crate::certificate::ink::{QUIET, TEXT};
+use crate::certificate::structure::Role;
+use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::certificate::text::Style;
 use crate::record::{LotRecord, LotVerdict};
 
-pub(in crate::certificate) fn signatures(flow: &mut Flow, record: &LotRecord) {
+const FIELD: f64 = 62.0;
+
+/// How a signature is checked.
+const HOW: &str = "The signature is over the whole file. Any program that knows PAdES signatures checks it, for example `pdfsig` of \
+     poppler-utils or pyHanko; whether the certificate is trusted depends on the authorities that your program knows, so compare its \
+     SHA-256 with what the site has published. The time is that of the program, not of a time-stamping authority.";
+
+/// The certificate, for the document and its text twin.
+pub(in crate::certificate) fn facts(by: &Signatory) -> Vec<(&'static str, String)> {
+    vec![
+        ("Signed by", by.subject.clone()),
+        ("Certificate issued by", by.issuer.clone()),
+        ("Serial number", by.serial.clone()),
+        (
+            "Valid",
+            format!(
+                "{} to {}",
+                instant(&by.valid_from),
+                instant(&by.valid_until)
+            ),
+        ),
+        ("SHA-256 of the certificate", by.sha256.clone()),
+        (
+            "Form",
+            "PAdES baseline, level B-B (ETSI EN 319 142-1): ECDSA P-256 with SHA-256".to_owned(),
+        ),
+    ]
+}
+
+/// Sets the section. An electronic signature is that of the site's certificate.
+pub(in crate::certificate) fn signatures(
+    flow: &mut Flow,
+    record: &LotRecord,
+    electronic: Option<&Signatory>,
+) {
     flow.heading("Signatures", 150.0);
+    if let Some(signatory) = electronic {
+        flow.subheading("Electronic signature", 120.0);
+        let mut table = Table::new(vec![
+            Column::new("", Align::Left, Span::Fixed(120.0)),
+            Column::new("", Align::Left, Span::Share(1.0)),
+        ]);
+        for (label, value) in facts(signatory) {
+            table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
+        }
+        table.set(flow);
+        flow.y += 3.0;
+        flow.small(HOW);
+        flow.subheading("By hand", 66.0);
+    }
     let mut fields = vec![
         "Inspected: measured as stated above",
         "Reviewed: record complete, evidence in order",
@@ -16,7 +68,8 @@ pub(in crate::certificate) fn signatures(flow: &mut Flow, record: &LotRecord) {
         fields.push("Disposition of the lot (what is to be done with it)");
     }
     for field in fields {
-        let area = flow.take(66.0);
+        let area = flow.take(FIELD);
+        let before = flow.enter(Role::Paragraph);
         let page = flow.page();
         page.text((area.left, area.top + 12.0), Style::bold(9.2), field);
         let y = area.bottom - 14.0;
@@ -33,5 +86,6 @@ pub(in crate::certificate) fn signatures(flow: &mut Flow, record: &LotRecord) {
             page.line((from, y), (to, y), Pen::solid(0.6, TEXT));
             page.text((from, y + 9.0), SMALL, label);
         }
+        flow.leave(before);
     }
 }

@@ -4,6 +4,7 @@ use crate::certificate::Sources;
 use crate::certificate::canvas::Anchor;
 use crate::certificate::flow::Flow;
 use crate::certificate::ink::QUIET;
+use crate::certificate::structure::Role;
 use crate::certificate::text::{Style, width, wrap};
 use crate::record::LotRecord;
 
@@ -36,6 +37,7 @@ fn verbatim(flow: &mut Flow, text: &str) {
         let room = flow.sheet.measure() - INDENT;
         let inset = width(&" ".repeat(spaces.min(200)), CODE) * 1.6;
         let inset = inset.min(room * 0.5);
+        let before = flow.enter(Role::Paragraph);
         for (n, part) in wrap(body, CODE, room - inset).iter().enumerate() {
             let area = flow.take(LEADING);
             let y = area.top + 8.0;
@@ -46,5 +48,6 @@ fn verbatim(flow: &mut Flow, text: &str) {
             }
             page.text((area.left + INDENT + inset, y), CODE, part);
         }
+        flow.leave(before);
     }
 }

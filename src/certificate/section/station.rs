@@ -7,12 +7,14 @@ use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::record::LotRecord;
 
 pub(in crate::certificate) fn station(flow: &mut Flow, record: &LotRecord) {
-    flow.heading("Station and calibration", 100.0);
+    let facts = facts(record);
+    // On one page, where that is possible.
+    flow.heading("Station and calibration", 17.0 * facts.len() as f64);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
     ]);
-    for (label, value) in facts(record) {
+    for (label, value) in facts {
         table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
     }
     table.set(flow);
@@ -57,7 +59,27 @@ pub(in crate::certificate) fn facts(record: &LotRecord) -> Vec<(&'static str, St
     add("Last heat", lot.last_heat.clone());
     add("Label as scanned", lot.label.as_deref().map(visible));
     add("Sweeps", Some(lot.sweeps.clone()));
+    if let Some(run) = &lot.run {
+        add("Seed of the sample", run.seed.map(|s| s.to_string()));
+        add("Scans", Some(joined(run.scans.iter().map(|s| visible(s)))));
+        add("Operators", Some(run.operators.join(", ")));
+        add(
+            "Last good check of the jig",
+            run.jig_checked.as_deref().map(instant),
+        );
+        let aside = run.set_aside.iter().map(|a| {
+            let by =
+                a.by.as_ref()
+                    .map_or(String::new(), |by| format!(" by {by}"));
+            format!("{}: {}{by}", a.sweep, a.why.name().replace('_', " "))
+        });
+        add("Sweeps set aside", Some(joined(aside)));
+    }
     out
+}
+
+fn joined(each: impl Iterator<Item = String>) -> String {
+    each.collect::<Vec<_>>().join("; ")
 }
 
 /// A scan with its control characters as their names in angle brackets.

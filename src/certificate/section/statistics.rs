@@ -1,7 +1,7 @@
 //! Lot statistics of every characteristic.
 
 use super::{Characteristic, part_anchor};
-use crate::certificate::figures::{ABSENT, index};
+use crate::certificate::figures::{ABSENT, chance, index};
 use crate::certificate::flow::Flow;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use indexmap::IndexMap;
@@ -11,6 +11,8 @@ pub(in crate::certificate) fn statistics(flow: &mut Flow, characteristics: &[Cha
     spread(flow, characteristics);
     flow.gap(12.0);
     capability(flow, characteristics);
+    flow.gap(12.0);
+    shape(flow, characteristics);
     outliers(flow, characteristics);
     notes(flow, characteristics);
 }
@@ -79,6 +81,47 @@ fn capability(flow: &mut Flow, characteristics: &[Characteristic]) {
     flow.small(
         "Cp and Cpk use the standard deviation within the lot (mean moving range in measuring order), Pp and Ppk the \
          standard deviation s of all parts; lower 95 % is the one-sided lower confidence bound.",
+    );
+}
+
+/// Form of the distribution, what holds where it is not normal, and what the decision rule risks.
+fn shape(flow: &mut Flow, characteristics: &[Characteristic]) {
+    let mut table = Table::new(vec![
+        Column::new("Characteristic", Align::Left, Span::Share(1.0)),
+        number("Normality p"),
+        number("Pp, percentiles"),
+        number("Ppk, percentiles"),
+        number("Tolerance interval from"),
+        number("to"),
+        number("Consumer's risk").unit("%"),
+        number("Producer's risk").unit("%"),
+    ]);
+    for c in characteristics {
+        let Some(s) = c.statistics else { continue };
+        let of = |v: Option<f64>, show: &dyn Fn(f64) -> String| {
+            Cell::text(v.map_or_else(|| ABSENT.to_owned(), show))
+        };
+        let percent = |v: f64| chance(v * 100.0);
+        let fine = |v: f64| c.scale.finer(v);
+        let [low, high] = s.tolerance_95_95.map_or([None; 2], |t| t.map(Some));
+        table.row(vec![
+            Cell::text(c.title()),
+            of(s.normality_p_value, &chance),
+            Cell::text(index(s.pp_percentile)),
+            Cell::text(index(s.ppk_percentile)),
+            of(low, &fine),
+            of(high, &fine),
+            of(s.consumers_risk, &percent),
+            of(s.producers_risk, &percent),
+        ]);
+    }
+    table.set(flow);
+    flow.y += 3.0;
+    flow.small(
+        "Normality p: test of Anderson and Darling, mean and standard deviation estimated. Indices by percentiles (ISO \
+         22514-2) where the values are not normally distributed. The tolerance interval holds at least 95 % of the parts \
+         with a confidence of 95 %. Risks (JCGM 106): that a part of such a lot is accepted and does not conform, and that it is not \
+         accepted and conforms.",
     );
 }
 

@@ -9,6 +9,7 @@ mod sitting;
 mod terminal;
 
 use super::judge::PaperArg;
+use super::signing::SigningArgs;
 use super::site::Site;
 use super::{Context, exit};
 use crate::bench::intake::Order;
@@ -73,6 +74,8 @@ pub struct Args {
     /// File on another machine or share that gets each new checkpoint
     #[arg(long, env = "REELGATE_WITNESS", value_name = "FILE")]
     witness: Option<PathBuf>,
+    #[command(flatten)]
+    signing: SigningArgs,
 }
 
 /// Leads through lots until the operator leaves; the exit status is that of the worst lot, as with `judge`.
@@ -91,6 +94,7 @@ pub fn run(args: &Args, context: &mut Context) -> u8 {
         fixed: args.now,
         key: args.ledger_key.clone(),
         witness: args.witness.clone(),
+        signing: args.signing.clone(),
     };
     let (door, come) = channel();
     let on_terminal = std::io::stdin().is_terminal() && std::io::stdout().is_terminal();

@@ -8,6 +8,7 @@ use crate::bench::run::Demands;
 use crate::bench::words;
 use crate::commands::evidence;
 use crate::commands::keep::{self, Place};
+use crate::commands::signing::SigningArgs;
 use crate::commands::site::{Site, text_file};
 use crate::diagnostic::{self, printable};
 use crate::ledger::{Act, Query};
@@ -34,6 +35,8 @@ pub struct Shop {
     pub key: Option<PathBuf>,
     #[allow(missing_docs)]
     pub witness: Option<PathBuf>,
+    /// Who signs the PDF, where the site file does not say.
+    pub signing: SigningArgs,
 }
 
 /// A run that was begun and not ended.
@@ -64,7 +67,7 @@ impl Shop {
         keep::now(self.fixed)
     }
 
-    /// Where records are kept, and when.
+    /// Where records are, for looking.
     pub fn place(&self) -> Place {
         Place {
             records: self.site.records(),
@@ -72,7 +75,21 @@ impl Shop {
             key: self.key.clone(),
             witness: self.witness.clone(),
             now: self.now(),
+            signer: None,
         }
+    }
+
+    /// Where a record is kept, who is told of it and who signs its PDF, as the site file has it.
+    ///
+    /// # Errors
+    /// Certificate or key that cannot sign now, in words.
+    pub fn keeping(&self, rules: Option<&RawFile>) -> Result<Place, String> {
+        let place = self.place();
+        Ok(Place {
+            witness: self.site.witness(self.witness.as_deref(), rules),
+            signer: self.signing.signer(&self.site, rules, place.now)?,
+            ..place
+        })
     }
 
     /// The folder of the run of a lot that waits, or else one that is free: a lot that is measured once more

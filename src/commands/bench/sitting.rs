@@ -794,7 +794,7 @@ impl Sitting<'_> {
         })?;
         let evidence =
             Evidence::of(&sources).map_err(|faults| diagnostic::render(&faults, false))?;
-        let place = self.shop.place();
+        let place = self.shop.keeping(sources.site.as_ref())?;
         let kept = keep::judge(&place, &sources, &evidence, self.wishes.paper, &|| ());
         let kept = kept.map_err(|why| match why {
             NotKept::Refused(Refusal::Faults(all)) => {

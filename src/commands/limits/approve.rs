@@ -253,6 +253,7 @@ fn place(desk: &Desk, by: &By) -> Place {
         key: by.ledger_key.clone(),
         witness: desk.site.witness(by.witness.as_deref(), rules.as_ref()),
         now: keep::now(by.now),
+        signer: None,
     }
 }
 

@@ -1,8 +1,9 @@
 //! `records show`: a whole record as plain text, for screen readers and quick looking.
 
 use super::{Done, list, open, resolve};
-use crate::certificate::{InLedger, Sources, plain_text};
+use crate::certificate::{self, InLedger, Signatory, Sources, plain_text};
 use crate::commands::site::Site;
+use crate::commands::store::Paths;
 use crate::commands::{Format, exit, keep};
 use crate::diagnostic::printable;
 use crate::ledger::{Act, Entry, Ledger, LedgerError, Query};
@@ -24,6 +25,7 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
     let file = |role| ledger.object(&entry, role).map_err(text);
     let (limits, station) = (file("limits")?, file("station")?);
     let proof = ledger.entry(entry.index).map_err(text)?.proof_text();
+    let signed = signatory(site, &name);
     let sources = Sources {
         limit_file: std::str::from_utf8(&limits).ok(),
         station_file: std::str::from_utf8(&station).ok(),
@@ -32,6 +34,7 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
             proof: &proof,
             copy: None,
         }),
+        signature: signed.as_ref(),
     };
     let mut out = plain_text(&record, &sources);
     out.push_str("\nIn the ledger\n");
@@ -42,6 +45,12 @@ pub fn run(name: &str, site: &Site, format: Format) -> Done {
         out.push_str(&format!("Entry {}: {}\n", entry.index, words(&entry)));
     }
     Ok((exit::OK, out.into_bytes()))
+}
+
+/// Whose signature the PDF beside the ledger carries, if it holds.
+fn signatory(site: &Site, record: &str) -> Option<Signatory> {
+    let pdf = std::fs::read(Paths::of(&site.certificates(), record).pdf).ok()?;
+    Some(certificate::examine(&pdf)?.ok()?.by)
 }
 
 /// The decisions of persons on the severity of inspection that the record rests on.

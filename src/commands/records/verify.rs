@@ -6,6 +6,7 @@ mod files;
 mod report;
 
 use super::{Done, document};
+use crate::certificate::{self, as_issued};
 use crate::commands::site::Site;
 use crate::commands::{Format, exit};
 use crate::ledger::{
@@ -151,7 +152,10 @@ fn readable(ledger: &Ledger) -> Vec<Entry> {
 /// A PDF lot record as a file.
 struct Document {
     name: String,
+    /// Of the bytes that were issued: without a signature that holds.
     digest: String,
+    /// Why the signature does not hold.
+    signature: Option<String>,
     /// Carried record and proof, with the entry's index and the record's name.
     carried: Result<Carried, String>,
 }
@@ -177,7 +181,8 @@ impl Document {
             .map_err(|e| format!("{name}: cannot be read: {e}"))?;
         Ok(Document {
             name,
-            digest: sha256_hex(&bytes),
+            digest: sha256_hex(as_issued(&bytes)),
+            signature: certificate::examine(&bytes).and_then(Result::err),
             carried: if bytes.len() as u64 > document::MOST_BYTES {
                 Err("is larger than any PDF lot record".to_owned())
             } else {

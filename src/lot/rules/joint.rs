@@ -7,6 +7,7 @@ use crate::lot::conditions::some_parts;
 use crate::lot::explain::step;
 use crate::lot::outliers::ALPHA;
 use crate::lot::statistics::values;
+use crate::readings::Characteristic;
 use crate::statistics::Undefined;
 use crate::statistics::outliers::joint_outliers;
 use serde::{Deserialize, Serialize};
@@ -25,6 +26,13 @@ pub struct JointSection {
     pub critical: Option<f64>,
     /// Farthest first.
     pub outliers: Vec<JointOutlier>,
+    /// Mean of the core of the parts, in the order of `of`; empty where the test could not be made.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub centre: Vec<f64>,
+    /// Covariance of the core, consistent for a normal population, row after row. A part lies at
+    /// the critical distance where (x − centre)ᵀ covariance⁻¹ (x − centre) = critical.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub covariance: Vec<Vec<f64>>,
 }
 
 /// A part and its robust squared distance from its lot.
@@ -38,9 +46,9 @@ pub struct JointOutlier {
 pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
     let (names, points) = points(judged, &rule.of);
     let of = rule.of.join(", ");
-    let found = of_points(rule, &names, &points);
-    let (section, result) = match found {
-        Ok(section) => {
+    let (section, tested) = of_points(rule.of.clone(), rule.alpha, &names, &points);
+    let result = match tested {
+        Ok(()) => {
             let parts: Vec<&str> = section.outliers.iter().map(|o| o.part.as_str()).collect();
             let mut result = if parts.is_empty() {
                 "none".to_owned()
@@ -60,9 +68,9 @@ pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
                 ));
                 result += ": holds the lot";
             }
-            (section, result)
+            result
         }
-        Err((section, why)) => {
+        Err(why) => {
             ruled.holds.push(Note::new(
                 "outliers_not_available",
                 format!(
@@ -70,8 +78,7 @@ pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
                     why.text()
                 ),
             ));
-            let result = format!("cannot be tested ({}): holds the lot", why.text());
-            (section, result)
+            format!("cannot be tested ({}): holds the lot", why.text())
         }
     };
     let critical = section.critical.map_or(String::new(), |c| {
@@ -91,6 +98,27 @@ pub(super) fn evaluate(judged: &Judged, rule: &OutlierRule, ruled: &mut Ruled) {
         result,
     ));
     ruled.findings.joint.push(section);
+}
+
+/// Capacitance and self-resonant frequency together, where no rule does it: the core is needed to
+/// draw one against the other. `None` where a limit file does not bound both, or the parts are too
+/// few.
+pub(super) fn beside(judged: &Judged, ruled: &[JointSection]) -> Option<JointSection> {
+    let key = |wanted: Characteristic| {
+        let mut of_kind = judged
+            .limits
+            .bounds
+            .iter()
+            .filter(|b| b.characteristic == wanted);
+        of_kind.next().map(|b| b.key.clone())
+    };
+    let of = vec![key(Characteristic::Capacitance)?, key(Characteristic::Srf)?];
+    if ruled.iter().any(|s| of.iter().all(|k| s.of.contains(k))) {
+        return None;
+    }
+    let (names, points) = points(judged, &of);
+    let (section, tested) = of_points(of, None, &names, &points);
+    tested.ok().map(|()| section)
 }
 
 /// `019 (38.1), 044 (31.7)`
@@ -120,20 +148,25 @@ fn points<'a>(judged: &Judged<'a>, keys: &[String]) -> (Vec<&'a str>, Vec<Vec<f6
 }
 
 fn of_points(
-    rule: &OutlierRule,
+    of: Vec<String>,
+    alpha: Option<f64>,
     names: &[&str],
     points: &[Vec<f64>],
-) -> Result<JointSection, (JointSection, Undefined)> {
+) -> (JointSection, Result<(), Undefined>) {
     let mut section = JointSection {
-        of: rule.of.clone(),
+        of,
         n: points.len() as u64,
-        alpha: rule.alpha.unwrap_or(ALPHA),
+        alpha: alpha.unwrap_or(ALPHA),
         critical: None,
         outliers: Vec::new(),
+        centre: Vec::new(),
+        covariance: Vec::new(),
     };
     match joint_outliers(points, section.alpha, SEED) {
         Ok(test) => {
             section.critical = Some(test.critical);
+            section.centre.clone_from(&test.centre);
+            section.covariance.clone_from(&test.covariance);
             let outlier = |i: &usize| {
                 Some(JointOutlier {
                     part: (*names.get(*i)?).to_owned(),
@@ -141,8 +174,8 @@ fn of_points(
                 })
             };
             section.outliers = test.outliers.iter().filter_map(outlier).collect();
-            Ok(section)
+            (section, Ok(()))
         }
-        Err(why) => Err((section, why)),
+        Err(why) => (section, Err(why)),
     }
 }

@@ -3,6 +3,7 @@
 mod capability;
 mod common_shift;
 mod joint;
+mod lot_chart;
 mod mixed;
 mod outliers;
 mod trend;
@@ -10,6 +11,7 @@ mod warnings;
 
 pub use common_shift::{Common, CommonShift, LotSeries, Shift, common_shift};
 pub use joint::{JointOutlier, JointSection};
+pub use lot_chart::{ChartedLot, LotChart};
 pub use mixed::{GroupSection, MixedSection};
 pub use trend::TrendSection;
 
@@ -37,18 +39,21 @@ pub struct Findings {
     /// Against the accepted lots before, one a characteristic that a rule names.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub trend: Vec<TrendSection>,
+    /// Capacitance and self-resonant frequency together, where no rule looks at them: decides nothing.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub scatter: Option<JointSection>,
+    /// Lot means, one chart a characteristic, where accepted lots went before: decide nothing.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub lots: Vec<LotChart>,
     /// The lot against the lots before it on the same station, where its parts have a series circuit.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub common_shift: Option<CommonShift>,
 }
 
 impl Findings {
-    /// Whether no rule looked for anything.
+    /// Whether there is nothing to say.
     pub fn is_empty(&self) -> bool {
-        self.joint.is_empty()
-            && self.mixed.is_empty()
-            && self.trend.is_empty()
-            && self.common_shift.is_none()
+        *self == Findings::default()
     }
 }
 
@@ -79,6 +84,8 @@ pub(super) fn evaluate(judged: &Judged) -> Ruled {
     outliers::evaluate(judged, &mut ruled);
     mixed::evaluate(judged, &mut ruled);
     trend::evaluate(judged, &mut ruled);
+    ruled.findings.scatter = joint::beside(judged, &ruled.findings.joint);
+    ruled.findings.lots = lot_chart::charts(judged);
     common_shift::evaluate(judged, &mut ruled);
     ruled
 }

@@ -116,7 +116,10 @@ fn of_bound(judged: &Judged, rule: &TrendRule, bound: &Bound, ruled: &mut Ruled)
 }
 
 /// Lots to compare with that have a mean of the characteristic.
-fn comparable<'a>(judged: &Judged<'a>, key: &str) -> Vec<(&'a PastLot, PastCharacteristic)> {
+pub(super) fn comparable<'a>(
+    judged: &Judged<'a>,
+    key: &str,
+) -> Vec<(&'a PastLot, PastCharacteristic)> {
     comparable_lots(judged)
         .filter_map(|lot| Some((lot, *lot.characteristics.get(key)?)))
         .collect()

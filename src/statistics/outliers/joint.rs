@@ -21,6 +21,10 @@ pub struct Joint {
     pub critical: f64,
     /// Indices, farthest first.
     pub outliers: Vec<usize>,
+    /// Mean of the core.
+    pub centre: Vec<f64>,
+    /// Covariance of the core, consistent for a normal population, row after row.
+    pub covariance: Vec<Vec<f64>>,
 }
 
 /// Tests points of p characteristics for outliers at an overall significance level alpha: in a
@@ -71,6 +75,12 @@ pub fn joint_outliers(points: &[Vec<f64>], alpha: f64, seed: u64) -> Result<Join
         squared_distances,
         critical,
         outliers: outliers.into_iter().map(|(_, i)| i).collect(),
+        centre: core.centre,
+        covariance: core
+            .covariance
+            .iter()
+            .map(|row| row.iter().map(|v| v * law.consistency).collect())
+            .collect(),
     })
 }
 

@@ -25,6 +25,10 @@ pub struct MinimumCovariance {
     pub ln_determinant: f64,
     /// Squared Mahalanobis distances of all points from the subset's mean by its covariance, uncorrected.
     pub squared_distances: Vec<f64>,
+    /// Mean of the subset.
+    pub centre: Vec<f64>,
+    /// Covariance of the subset (divisor h − 1), uncorrected, row after row.
+    pub covariance: Vec<Vec<f64>>,
 }
 
 /// Finds h of the points with the smallest covariance determinant: FAST-MCD of Rousseeuw & Van
@@ -42,7 +46,11 @@ pub fn minimum_covariance_determinant(
     seed: u64,
 ) -> Result<MinimumCovariance, Undefined> {
     check(points, h)?;
-    let (scaled, ln_scales) = standardised(points)?;
+    let Standardised {
+        points: scaled,
+        units,
+    } = standardised(points)?;
+    let ln_scales: f64 = units.iter().map(|unit| unit.size.ln()).sum();
     let mut random = Random::seeded(seed);
     let mut starts: Vec<(f64, Vec<usize>)> = (0..STARTS)
         .filter_map(|_| {
@@ -66,6 +74,19 @@ pub fn minimum_covariance_determinant(
         subset,
         ln_determinant: ln_determinant + 2.0 * ln_scales,
         squared_distances: scaled.iter().map(|x| scatter.squared_distance(x)).collect(),
+        centre: units
+            .iter()
+            .zip(scatter.mean())
+            .map(|(unit, m)| unit.origin + unit.size * m)
+            .collect(),
+        covariance: units
+            .iter()
+            .zip(scatter.covariance())
+            .map(|(a, row)| {
+                let each = units.iter().zip(row);
+                each.map(|(b, v)| a.size * b.size * v).collect()
+            })
+            .collect(),
     })
 }
 
@@ -95,12 +116,25 @@ fn check(points: &[Vec<f64>], h: usize) -> Result<(), Undefined> {
     Ok(())
 }
 
-/// Each variable from its median in units of its MAD, and the sum of the ln of those units.
+/// A variable's own measure.
+struct Unit {
+    /// Its median.
+    origin: f64,
+    /// Its MAD.
+    size: f64,
+}
+
+struct Standardised {
+    points: Vec<Vec<f64>>,
+    units: Vec<Unit>,
+}
+
+/// Each variable from its median in units of its MAD.
 ///
 /// The determinant's minimum does not depend on units; the arithmetic does.
-fn standardised(points: &[Vec<f64>]) -> Result<(Vec<Vec<f64>>, f64), Undefined> {
+fn standardised(points: &[Vec<f64>]) -> Result<Standardised, Undefined> {
     let mut scaled = vec![Vec::new(); points.len()];
-    let mut ln_scales = 0.0;
+    let mut units = Vec::new();
     let p = points.first().map_or(0, Vec::len);
     for j in 0..p {
         let column: Vec<f64> = points.iter().filter_map(|x| x.get(j)).copied().collect();
@@ -111,12 +145,18 @@ fn standardised(points: &[Vec<f64>]) -> Result<(Vec<Vec<f64>>, f64), Undefined> 
         if mad == 0.0 {
             return Err(Undefined::Collinear);
         }
-        ln_scales += mad.ln();
+        units.push(Unit {
+            origin: centre,
+            size: mad,
+        });
         for (row, x) in scaled.iter_mut().zip(&column) {
             row.push((x - centre) / mad);
         }
     }
-    Ok((scaled, ln_scales))
+    Ok(Standardised {
+        points: scaled,
+        units,
+    })
 }
 
 /// Scatter of p + 1 random points, with further ones where those lie in a plane.

@@ -46,6 +46,21 @@ impl Scatter {
             .sum()
     }
 
+    /// The mean.
+    pub(super) fn mean(&self) -> &[f64] {
+        &self.mean
+    }
+
+    /// The covariance, row after row: the factor times its transpose.
+    pub(super) fn covariance(&self) -> Vec<Vec<f64>> {
+        let p = self.mean.len();
+        let row = |i: usize| self.factor.get(cell(i, 0)..=cell(i, i)).unwrap_or_default();
+        let product = |i: usize, j: usize| row(i).iter().zip(row(j)).map(|(a, b)| a * b).sum();
+        (0..p)
+            .map(|i| (0..p).map(|j| product(i, j)).collect())
+            .collect()
+    }
+
     /// Squared Mahalanobis distance of a point.
     pub(super) fn squared_distance(&self, point: &[f64]) -> f64 {
         let mut solved: Vec<f64> = Vec::with_capacity(self.mean.len());

@@ -47,6 +47,13 @@ impl<'a> Certificates<'a> {
             (Some(_), _) => None,
             (None, _) => match &document.carried {
                 Err(why) => finding("certificate_unreadable", why.clone()),
+                Ok(_) if document.signature.is_some() => finding(
+                    "signature_invalid",
+                    format!(
+                        "it carries a signature that does not hold: {}",
+                        document.signature.as_deref().unwrap_or_default()
+                    ),
+                ),
                 Ok(carried) => finding(
                     "certificate_unknown",
                     format!(
