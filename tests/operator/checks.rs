@@ -1,6 +1,6 @@
 //! The jig check: before the lot, every so many parts, after the last; what a failed one does.
 
-use super::site::{Bench, Site, WHO, to_first_part};
+use super::site::{Bench, Site, WHO, go_to_first_part};
 
 /// Part 120 of the sample lot stands for the reference part: its capacitance is near 4.6 µF.
 const CHECK: &str = "jig_check:
@@ -15,7 +15,7 @@ const CHECK: &str = "jig_check:
 fn a_failed_check_sets_the_parts_before_it_aside() {
     let site = Site::with(CHECK);
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Jig check before the lot: put the reference part REF-03");
     site.save_as("120", "ref1");
     bench.see("Jig check (reference): good");
@@ -65,7 +65,7 @@ fn a_failed_check_sets_the_parts_before_it_aside() {
 fn an_empty_jig_is_checked_open() {
     let site = Site::with("jig_check:\n  open: {at: 1 kHz, min: 10 MΩ}\n");
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("leave the jig empty");
     // 2 pF at 1 kHz is 79.6 MΩ.
     site.save_open("empty");

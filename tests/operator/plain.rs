@@ -1,12 +1,12 @@
 //! A lot line by line: from the scan to the record, with faults, undo, pause and death in between.
 
-use super::site::{Bench, LABEL, Site, WHO, to_first_part};
+use super::site::{Bench, LABEL, Site, WHO, go_to_first_part};
 
 #[test]
 fn a_lot_from_scan_to_label() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     for (i, part) in ["001", "002", "003", "004", "005"].iter().enumerate() {
         bench.see(&format!("Part {part} of 5"));
         site.save(part);
@@ -61,7 +61,7 @@ fn a_lot_from_scan_to_label() {
 fn a_contact_fault_is_measured_again_and_a_nonconforming_part_is_not() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     site.save_open("a");
     bench.see("Part 001: UNMEASURED");
@@ -98,7 +98,7 @@ fn a_contact_fault_is_measured_again_and_a_nonconforming_part_is_not() {
 fn an_undone_placement_keeps_both_sweeps() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.line("undo");
     bench.see("Nothing is measured yet");
     site.save_scaled("001", "wrong", 2.0);
@@ -131,7 +131,7 @@ fn an_undone_placement_keeps_both_sweeps() {
 fn a_run_goes_on_after_it_was_killed() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     for part in ["001", "002"] {
         bench.see(&format!("Part {part} of 5"));
         site.save(part);
@@ -184,7 +184,7 @@ fn a_run_goes_on_after_it_was_killed() {
 fn a_sweep_kept_but_not_yet_in_the_journal_is_taken_in() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     site.save("001");
     bench.see("Part 001: CONFORMING");
@@ -212,7 +212,7 @@ fn a_sweep_kept_but_not_yet_in_the_journal_is_taken_in() {
 fn the_end_of_the_input_pauses() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     assert_eq!(bench.close().code(), Some(5));
     let bench = Bench::start(&site, &WHO);
@@ -223,7 +223,7 @@ fn the_end_of_the_input_pauses() {
 fn the_same_sweep_is_never_two_parts() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     site.save_as("001", "first");
     bench.see("Part 001: CONFORMING");
@@ -239,7 +239,7 @@ fn the_same_sweep_is_never_two_parts() {
 fn two_benches_cannot_hold_one_lot() {
     let site = Site::new();
     let mut first = Bench::start(&site, &WHO);
-    to_first_part(&mut first);
+    go_to_first_part(&mut first);
     first.see("Part 001 of 5");
     let mut second = Bench::start(&site, &WHO);
     second.line(LABEL);

@@ -1,6 +1,6 @@
 //! The scan: what is missing is asked for, what contradicts is said at once.
 
-use super::site::{Bench, LABEL, Site, WHO, to_first_part};
+use super::site::{Bench, LABEL, Site, WHO, go_to_first_part};
 
 #[test]
 fn single_codes_one_by_one() {
@@ -79,7 +79,7 @@ fn an_unknown_part_and_a_date_code_to_come() {
 fn a_lot_that_was_judged_already() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     site.save_scaled("001", "a", 2.0);
     bench.see("NONCONFORMING");
@@ -100,7 +100,7 @@ fn a_lot_that_was_judged_already() {
 fn another_label_while_measuring_is_noticed() {
     let site = Site::new();
     let mut bench = Bench::start(&site, &WHO);
-    to_first_part(&mut bench);
+    go_to_first_part(&mut bench);
     bench.see("Part 001 of 5");
     bench.line(LABEL);
     bench.see("Yes, this is lot 26K-9001");

@@ -95,7 +95,7 @@ impl Screen {
         self.keys.flush().expect("keys");
     }
 
-    fn to_first_part(&mut self) {
+    fn go_to_first_part(&mut self) {
         self.see("Scan the label");
         self.line(LABEL);
         self.see("Enter to begin");
@@ -118,7 +118,7 @@ impl Screen {
 fn scan_parts_fault_retest_undo_and_resume_after_a_kill() {
     let site = Site::new();
     let mut screen = Screen::start(&site, (80, 24), &[]);
-    screen.to_first_part();
+    screen.go_to_first_part();
     screen.see("████"); // a word of large letters
     site.save_open("a");
     screen.see("part 001: unmeasured");
@@ -164,7 +164,7 @@ fn scan_parts_fault_retest_undo_and_resume_after_a_kill() {
 fn no_colour_and_other_sizes() {
     let site = Site::new();
     let mut screen = Screen::start(&site, (120, 40), &[("NO_COLOR", "1")]);
-    screen.to_first_part();
+    screen.go_to_first_part();
     site.save_scaled("001", "a", 2.0);
     screen.see("part 001: nonconforming");
     screen.see("✘ capacitance");

@@ -275,7 +275,7 @@ fn listen(mut from: impl Read + Send + 'static, to: Arc<Mutex<String>>) {
 }
 
 /// Brings a run to its first part.
-pub fn to_first_part(bench: &mut Bench) {
+pub fn go_to_first_part(bench: &mut Bench) {
     bench.see("Scan the label");
     bench.line(LABEL);
     bench.see("Enter to begin");
