@@ -120,7 +120,7 @@ pub fn block(bytes: &[u8], item: usize, expected: Option<usize>) -> Result<Frame
         Some(more) => {
             return Err(wrong(
                 format!(
-                    "{} bytes more than the block of {length} bytes announces",
+                    "{} more than the {length} bytes that the block announces",
                     more.len()
                 ),
                 "the instrument or something on the way mixes answers: measure again; if it \
@@ -185,10 +185,11 @@ mod tests {
         // IEEE 488.2-1992, 8.7.9: # , digit, that many digits of length, the bytes.
         let read = |bytes: &[u8]| block(bytes, 4, None).expect("a block");
         assert_eq!(read(b"#14abcd\n"), whole(3..7, 8));
-        assert_eq!(
-            read(b"#800000004ab\ncd"),
-            Frame::Open,
-            "8 digits, 4 bytes with one beyond"
+        assert_eq!(read(b"#800000004ab\nc\n"), whole(10..14, 15));
+        assert_eq!(read(b"#800000004ab\n"), Frame::Open);
+        assert!(
+            block(b"#800000004ab\ncd", 4, None).is_err(),
+            "a byte beyond"
         );
     }
 

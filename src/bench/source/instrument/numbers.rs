@@ -141,9 +141,10 @@ fn text(
     }
     if is_decimal(word) {
         return match word.parse::<f64>() {
+            Ok(value) if !value.is_finite() => Err(quoted(field)),
             Ok(value) if value.abs() >= INFINITY * (1.0 - 1e-6) => Ok("NaN".to_owned()),
-            Ok(value) if value.is_finite() => Ok(word.to_owned()),
-            _ => Err(quoted(field)),
+            Ok(_) => Ok(word.to_owned()),
+            Err(_) => Err(quoted(field)),
         };
     }
     let Some(column) = column else {
