@@ -13,8 +13,9 @@ pub(in crate::certificate) fn statistics(flow: &mut Flow, characteristics: &[Cha
     capability(flow, characteristics);
     flow.gap(12.0);
     shape(flow, characteristics);
-    outliers(flow, characteristics);
+    // Beside the dashes that they explain.
     notes(flow, characteristics);
+    outliers(flow, characteristics);
 }
 
 fn number(head: &str) -> Column {
