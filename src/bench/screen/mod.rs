@@ -224,10 +224,13 @@ fn work(
     (run, desk, told): (&Run, &Desk, Option<&Told>),
     look: Look,
 ) {
+    let wide = usize::from(area.width).max(10);
+    let lines = told.map_or(0, |told| note_lines(run, told, wide).len());
     let [_, top, note, middle, foot] = Layout::vertical([
         Constraint::Length(u16::from(area.height > 14)),
         Constraint::Length(big::ROWS as u16),
-        Constraint::Length(2),
+        // What is wrong with a sweep and what to do is never cut off for the curve's sake.
+        Constraint::Length(lines.clamp(2, 6) as u16),
         Constraint::Min(0),
         Constraint::Length(1),
     ])
@@ -286,6 +289,26 @@ fn verdict(
     let style = look.part(verdict).add_modifier(Modifier::BOLD);
     let text = format!("{} {}", words::mark(verdict), words::verdict(verdict));
     banner(frame, top, &text, style);
+    let wide = usize::from(note.width).max(10);
+    let wrapped: Vec<Line> = note_lines(run, told, wide)
+        .into_iter()
+        .map(|l| Line::styled(l, look.strong()))
+        .collect();
+    frame.render_widget(Paragraph::new(wrapped), note);
+    let rows = reading_rows(&desk.limits, told);
+    let room = middle.width;
+    let table_width = if room >= 110 { 60 } else { room / 2 };
+    let [left, right] =
+        Layout::horizontal([Constraint::Min(20), Constraint::Length(table_width)]).areas(middle);
+    if let Some(sweep) = &told.sweep {
+        curve::draw(frame, left, sweep, &desk.limits, look.colour);
+    }
+    readings(frame, right, &rows, look);
+}
+
+/// What was found of the last sweep, and what to do.
+fn note_lines(run: &Run, told: &Told, wide: usize) -> Vec<String> {
+    let verdict = told.verdict();
     let again = match told.attempt {
         1 => String::new(),
         n => format!(", try {n}"),
@@ -299,22 +322,10 @@ fn verdict(
         fault.map_or(".".to_owned(), |f| format!(": {}", f.trim_end())),
         words::after(verdict, &told.part, may_follow)
     );
-    let wide = usize::from(note.width);
-    let wrapped: Vec<Line> = textwrap::wrap(&printable(&text), wide.max(10))
+    textwrap::wrap(&printable(&text), wide)
         .into_iter()
-        .take(2)
-        .map(|l| Line::styled(l.into_owned(), look.strong()))
-        .collect();
-    frame.render_widget(Paragraph::new(wrapped), note);
-    let rows = reading_rows(&desk.limits, told);
-    let room = middle.width;
-    let table_width = if room >= 110 { 60 } else { room / 2 };
-    let [left, right] =
-        Layout::horizontal([Constraint::Min(20), Constraint::Length(table_width)]).areas(middle);
-    if let Some(sweep) = &told.sweep {
-        curve::draw(frame, left, sweep, &desk.limits, look.colour);
-    }
-    readings(frame, right, &rows, look);
+        .map(std::borrow::Cow::into_owned)
+        .collect()
 }
 
 /// The readings: name and limits, value below each other where the column is narrow.
