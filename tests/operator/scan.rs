@@ -129,3 +129,18 @@ fn control_text_of_a_label_cannot_act() {
     );
     bench.kill();
 }
+
+/// Said with the plan, before anything is measured; the key is an invented person's.
+#[test]
+fn files_that_nobody_approved_are_said_with_the_plan() {
+    let site = Site::new();
+    let rules = "site: Invented\napproval: required\ntrusted_keys:\n  - {name: QE-02, role: quality_engineer, \
+                 key: QE-02+19a5d1ec+AQwII+gvx2XSr48e0uoSHIPKnnpTc7/z5a8WlcJbrGB6}\n";
+    std::fs::write(site.file("limits/site.yaml"), rules).expect("a site file");
+    let mut bench = Bench::start(&site, &WHO);
+    bench.line(LABEL);
+    bench.see("would be held: limits/site.yaml demands approvals");
+    bench.see("would be held: limits/parts/RG-9475-X7R.yaml was never approved");
+    bench.see("would be held: limits/stations/BENCH-9.yaml was never approved");
+    bench.kill();
+}

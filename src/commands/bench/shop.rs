@@ -6,15 +6,17 @@ use crate::bench::event::Event;
 use crate::bench::intake::Known;
 use crate::bench::run::Demands;
 use crate::bench::words;
+use crate::commands::approvals;
 use crate::commands::evidence;
 use crate::commands::keep::{self, Place};
 use crate::commands::signing::SigningArgs;
 use crate::commands::site::{Site, text_file};
 use crate::diagnostic::{self, printable};
+use crate::ledger::trust::Trust;
 use crate::ledger::{Act, Query};
 use crate::limits::{self, Limits};
 use crate::lot::{self, Switching};
-use crate::record;
+use crate::record::{self, Sources};
 use crate::station::{self, Station};
 use crate::sweep::{RawFile, Standards};
 use chrono::{DateTime, FixedOffset, NaiveDate};
@@ -59,6 +61,17 @@ pub struct InForce {
     pub limits_sha256: String,
     #[allow(missing_docs)]
     pub limits_path: PathBuf,
+    /// Sentences about files that a person has to approve before a lot can be anything but held.
+    pub unapproved: Vec<String>,
+}
+
+/// A station with the bytes that say what it is.
+struct ReadStation {
+    station: Station,
+    standards: Option<Standards>,
+    file: RawFile,
+    /// Sweeps of the standards.
+    compensation: Vec<RawFile>,
 }
 
 impl Shop {
@@ -132,8 +145,12 @@ impl Shop {
         quantity: u64,
     ) -> Result<InForce, String> {
         let limits_path = self.site.limit_file(part);
-        let (limits, bytes) = self.limit_file(part)?;
-        let (station, standards) = self.station(station)?;
+        let (limits, limits_file) = self.limit_file(part)?;
+        let read = self.station(station)?;
+        let unapproved = self.unapproved((part, &limits_file), &read)?;
+        let ReadStation {
+            station, standards, ..
+        } = read;
         let switching = self.switching(&limits, supplier)?;
         let plan = lot::plan_in_state(&limits.acceptance, quantity, switching.clone())?;
         let desk = Desk::new(limits, station, standards);
@@ -153,12 +170,48 @@ impl Shop {
             desk,
             demands,
             switching,
-            limits_sha256: record::sha256(&bytes),
+            limits_sha256: record::sha256(&limits_file.bytes),
             limits_path,
+            unapproved,
         })
     }
 
-    fn limit_file(&self, part: &str) -> Result<(Limits, Vec<u8>), String> {
+    /// What a person has to approve before a lot can be anything but held; nothing where the site
+    /// demands no approvals.
+    fn unapproved(
+        &self,
+        (part, limits): (&str, &RawFile),
+        read: &ReadStation,
+    ) -> Result<Vec<String>, String> {
+        let site = self.site.rules().map_err(|stop| stop.to_string())?;
+        let trust = match self.place().look().map_err(|e| e.to_string())? {
+            None => Trust::default(),
+            Some(ledger) => ledger
+                .size()
+                .and_then(|size| Trust::read(ledger.store(), ledger.archive(), size))
+                .map_err(|e| e.to_string())?,
+        };
+        let nothing = RawFile {
+            name: String::new(),
+            bytes: Vec::new(),
+        };
+        let sources = Sources {
+            site,
+            lot: nothing,
+            limits: limits.clone(),
+            station: read.file.clone(),
+            compensation: read.compensation.clone(),
+            sweeps: Vec::new(),
+        };
+        let (limits, station) = (
+            format!("limits/parts/{part}.yaml"),
+            format!("limits/stations/{}.yaml", read.station.name),
+        );
+        let found = approvals::look(&trust, &sources, &limits, &station);
+        Ok(found.missing.into_iter().map(|note| note.text).collect())
+    }
+
+    fn limit_file(&self, part: &str) -> Result<(Limits, RawFile), String> {
         let path = self.site.limit_file(part);
         let file = text_file(&path).map_err(|e| format!("{}: {}", path.display(), e.note.text))?;
         let limits = limits::read(&file.name, &file.bytes).map_err(|faults| {
@@ -167,10 +220,10 @@ impl Shop {
                 diagnostic::render(&faults, false)
             )
         })?;
-        Ok((limits, file.bytes))
+        Ok((limits, file))
     }
 
-    fn station(&self, name: &str) -> Result<(Station, Option<Standards>), String> {
+    fn station(&self, name: &str) -> Result<ReadStation, String> {
         let path = self.site.station_file(name);
         let file = text_file(&path).map_err(|e| format!("{}: {}", path.display(), e.note.text))?;
         let station = station::read(&file.name, &file.bytes).map_err(|faults| {
@@ -193,14 +246,19 @@ impl Shop {
                 bytes,
             });
         }
-        if files.is_empty() {
-            return Ok((station, None));
-        }
-        let standards = Standards::read(&files, &station).map_err(|notes| {
-            let all: Vec<&str> = notes.iter().map(|n| n.text.as_str()).collect();
-            all.join("; ")
-        })?;
-        Ok((station, Some(standards)))
+        let standards = match files.as_slice() {
+            [] => None,
+            _ => Some(Standards::read(&files, &station).map_err(|notes| {
+                let all: Vec<&str> = notes.iter().map(|n| n.text.as_str()).collect();
+                all.join("; ")
+            })?),
+        };
+        Ok(ReadStation {
+            station,
+            standards,
+            file,
+            compensation: files,
+        })
     }
 
     fn switching(

@@ -864,7 +864,7 @@ fn random_seed() -> Done<u64> {
 
 /// What would hold the lot whatever is measured.
 fn foreseen(shop: &Shop, force: &InForce) -> Vec<String> {
-    let mut all = Vec::new();
+    let mut all = force.unapproved.clone();
     let station = &force.desk.station;
     let now = shop.now();
     if let Some(instrument) = &station.instrument
