@@ -230,6 +230,7 @@ def main():
     parser.add_argument("--seed", type=int, default=1)
     parser.add_argument("--program", default=os.path.join(HOME, "target", "release", "reelgate"))
     args = parser.parse_args()
+    args.program = os.path.abspath(args.program)
     return {"latency": latency, "kill": kill}[args.what](args)
 
 
