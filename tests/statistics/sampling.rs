@@ -49,7 +49,7 @@ fn every_cell_of_table_2b() {
     every_cell("s1_single_tightened.csv", Severity::Tightened, 257);
 }
 
-/// Three columns of Table 2-C as an independent transcription of a national edition prints them: with
+/// Three columns of Table 2-C as an independent reprint of a national edition prints them: with
 /// the diagonals of the table they say what every other column is.
 #[test]
 fn three_columns_of_table_2c_as_printed() {
@@ -68,7 +68,7 @@ fn three_columns_of_table_2c_as_printed() {
 }
 
 /// The diagonals: code letter and AQL, each one step further, have the same Ac. So every column
-/// follows from the three that an independent transcription has.
+/// follows from the three that an independent reprint has.
 #[test]
 fn table_2c_is_made_of_diagonals() {
     const AC: [Option<u64>; 11] = [
@@ -101,7 +101,7 @@ fn table_2c_is_made_of_diagonals() {
 /// above Ac, in which ISO 2859-1:1999 put one number; the plans with Ac 0 and Re 2 became an arrow down.
 #[test]
 fn table_2c_lies_in_the_gaps_of_mil_std_105e() {
-    let table = rows("s1_single_reduced_105E_transcription.csv");
+    let table = rows("s1_single_reduced_105E_reprint.csv");
     assert_eq!(table.len(), 256);
     let (mut plans, mut arrows) = (0, 0);
     for row in table.iter() {

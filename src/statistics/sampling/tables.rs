@@ -3,7 +3,7 @@
 //! Rows are code letters A to R, columns the AQLs 0.010 to 10; a number is the acceptance number Ac
 //! (Re = Ac + 1), `V` an arrow down (use the first plan below), `U` an arrow up (the first plan
 //! above). Tables 2-A and 2-B are the same as MIL-STD-105E Tables II-A and II-B. Table 2-C stands
-//! here from memory of the standard, and was compared with a transcription of its columns AQL 1.0, 4.0 and
+//! here from memory of the standard, and was compared with a reprint of its columns AQL 1.0, 4.0 and
 //! 10 in the national edition NTE INEN-ISO 2859-1; the other columns follow by the diagonals. Sample sizes
 //! and places of the plans are those of MIL-STD-105E Table II-C; each Ac lies in the gap that the latter
 //! leaves between its Ac and Re, and its plans with Ac 0, Re 2 are an arrow down here.

@@ -10,7 +10,7 @@
 //! Tightened inspection takes the normal plan of the next smaller AQL, reduced inspection that of the
 //! smaller sample and the next larger AQL. This is how the published tables of reduced inspection
 //! (MIL-STD-414 B-2 and B-4, ANSI/ASQ Z1.9 B-4) are made; they are not copied here: the plans follow from
-//! the normal tables. A public transcription of Z1.9 Table B-4 agrees in the sample sizes, and in M within
+//! the normal tables. A public reprint of Z1.9 Table B-4 agrees in the sample sizes, and in M within
 //! the recalculation that Z1.9 made of its normal table.
 //!
 //! Normality must have been tested first

@@ -10,7 +10,7 @@ LINES = [
     ("uncertainty budgets", "Monte-Carlo method, JCGM 101:2008", "as stated there", "readings_uncertainty.rs"),
     ("distribution functions", "mpmath with 50 digits, exact rationals", "1e-12, far tails 1e-10", "statistics/distributions.rs"),
     ("tables 1 and 2-A to 2-C, every cell", "ISO 2859-1:1999; sources in the reference files", "none may differ", "statistics/sampling.rs"),
-    ("table 2-C: three columns as printed, its diagonals, and the gaps of MIL-STD-105E Table II-C", "transcriptions of NTE INEN-ISO 2859-1 and of MIL-STD-105E", "none may differ", "statistics/sampling.rs"),
+    ("table 2-C: three columns as printed, its diagonals, and the gaps of MIL-STD-105E Table II-C", "reprints of NTE INEN-ISO 2859-1 and of MIL-STD-105E", "none may differ", "statistics/sampling.rs"),
     ("n, k, M by variables, normal, tightened and reduced; worked examples of one limit and of two", "MIL-STD-414 tables B-1, B-3 and examples B-1 to B-3; ISO 3951-1, 15.2; samples of ANSI/ASQ Z1.9 Table B-4", "none may differ; M of Z1.9, which recalculated it, within 4 %", "statistics/variables.rs"),
     ("severity of inspection, lot by lot", "sequences over ISO 2859-1:1999, 9.3 and 9.4, from an independent state machine", "none may differ", "lot_history.rs"),
     ("100 000 lots judged part by part; 100 000 samples by count and by variables", "the operating characteristic that the record states; the laws", "4 standard errors", "lot_simulation.rs"),
