@@ -14,6 +14,7 @@ use crate::certificate::structure::Role;
 use crate::certificate::text::Style;
 use crate::quantity::{engineering, with_uncertainty};
 use crate::record::{BoundSection, LotRecord, PartVerdict};
+use rayon::prelude::*;
 
 /// Most curves that carry their part's number.
 const NAMED: usize = 14;
@@ -139,16 +140,29 @@ struct Frame {
     area: Area,
     x: Axis,
     y: Axis,
+    /// Place of the logarithm 0 and length of a decade, along each axis.
+    decades: [(f64, f64); 2],
 }
 
 impl Frame {
+    fn new(area: Area, x: Axis, y: Axis) -> Frame {
+        let decades = [&x, &y].map(|axis| {
+            let (low, high) = (axis.low.log10(), axis.high.log10());
+            let decade = (axis.to - axis.from) / (high - low);
+            (axis.from - low * decade, decade)
+        });
+        Frame {
+            area,
+            x,
+            y,
+            decades,
+        }
+    }
+
     /// Logarithms to the page.
     fn place(&self, (f, v): Point) -> Point {
-        let along = |axis: &Axis, log: f64| {
-            let (low, high) = (axis.low.log10(), axis.high.log10());
-            axis.from + (log - low) / (high - low) * (axis.to - axis.from)
-        };
-        (along(&self.x, f), along(&self.y, v))
+        let [(x, across), (y, up)] = self.decades;
+        (x + f * across, y + v * up)
     }
 }
 
@@ -162,7 +176,7 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
         top: outer.top + 4.0,
         bottom: outer.bottom - 16.0,
     };
-    let logs: Vec<Vec<Point>> = curves.iter().map(|c| logarithms(c, quantity)).collect();
+    let logs: Vec<Vec<Point>> = curves.par_iter().map(|c| logarithms(c, quantity)).collect();
     let bounds: Vec<&BoundSection> = record
         .limits
         .characteristics
@@ -283,11 +297,9 @@ fn frame(
         from,
         to,
     };
-    Some(Frame {
-        area,
-        x: axis(left, right, area.left, area.right),
-        y: axis(low, high + pad, area.bottom, area.top),
-    })
+    let x = axis(left, right, area.left, area.right);
+    let y = axis(low, high + pad, area.bottom, area.top);
+    Some(Frame::new(area, x, y))
 }
 
 /// Quiet curves first, then the ones that are not conforming on top, with their names. Answers the
@@ -314,30 +326,31 @@ fn traces<'c>(
             Pen::solid(0.9, part_ink(PartVerdict::Nonconforming)),
         ),
     ];
+    let thinned: Vec<Vec<Vec<Point>>> = logs
+        .par_iter()
+        .map(|log| {
+            let placed: Vec<Point> = log.iter().map(|p| frame.place(*p)).collect();
+            let lines = clip(&placed, frame.area);
+            lines.iter().map(|l| simplify(&columns(l))).collect()
+        })
+        .collect();
     let mut names = Vec::new();
     for (verdict, pen) in order {
         let mut coverage = Coverage::new(frame.area);
-        for (curve, log) in curves
-            .iter()
-            .zip(logs)
-            .filter(|(c, _)| c.verdict == verdict)
-        {
-            let placed: Vec<Point> = log.iter().map(|p| frame.place(*p)).collect();
-            let mut end = None;
-            for line in clip(&placed, frame.area) {
-                end = line.last().copied();
-                let thin = simplify(&columns(&line));
+        let of_kind = curves.iter().zip(&thinned);
+        for (curve, lines) in of_kind.filter(|(c, _)| c.verdict == verdict) {
+            for line in lines {
                 // A dash pattern starts anew with every stretch: patterned curves stay whole.
                 let parts = if pen.dash == Dash::Solid {
-                    coverage.visible(&thin)
+                    coverage.visible(line)
                 } else {
-                    vec![thin]
+                    vec![line.clone()]
                 };
                 page.lines(parts, pen);
             }
-            match end {
+            match lines.iter().rev().find_map(|line| line.last()) {
                 None => unseen.push(curve.part.as_str()),
-                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, end)),
+                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, *end)),
                 Some(_) => {}
             }
         }
