@@ -3,6 +3,7 @@
 use super::faults::hertz;
 use super::raw::{RawSweep, pick};
 use crate::diagnostic::Note;
+use std::cell::RefCell;
 
 /// Fewer points than this are no sweep.
 const FEWEST_POINTS: usize = 5;
@@ -13,11 +14,32 @@ const GAP: f64 = 1.7;
 /// Frequencies nearer to each other than this (relative) are the same.
 const SAME: f64 = 1e-9;
 
+thread_local! {
+    /// The last list that was found whole as it stood: the sweeps of a lot share theirs.
+    static WHOLE: RefCell<Vec<f64>> = const { RefCell::new(Vec::new()) };
+}
+
+fn is_known(frequency: &[f64]) -> bool {
+    frequency.len() >= FEWEST_POINTS
+        && WHOLE.with(|whole| whole.try_borrow().is_ok_and(|whole| *whole == frequency))
+}
+
+fn keep(frequency: &[f64]) {
+    WHOLE.with(|whole| {
+        if let Ok(mut whole) = whole.try_borrow_mut() {
+            frequency.clone_into(&mut whole);
+        }
+    });
+}
+
 /// Sorts a sweep by frequency and refuses what cannot be a whole sweep.
 ///
 /// # Errors
 /// Frequencies that are not positive, duplicates, too few points, a missing stretch.
 pub(super) fn arrange(raw: &mut RawSweep, notes: &mut Vec<Note>) -> Result<(), Vec<Note>> {
+    if is_known(&raw.frequency) {
+        return Ok(());
+    }
     let refuse = |note: Note| Err(vec![note]);
     if let Some(at) = raw
         .frequency
@@ -50,7 +72,10 @@ pub(super) fn arrange(raw: &mut RawSweep, notes: &mut Vec<Note>) -> Result<(), V
     }
     match gap(&raw.frequency) {
         Some(note) => refuse(note),
-        None => Ok(()),
+        None => {
+            keep(&raw.frequency);
+            Ok(())
+        }
     }
 }
 
