@@ -283,6 +283,23 @@ mod tests {
     }
 
     #[test]
+    fn a_list_that_was_whole_before_hides_no_fault_of_another() {
+        let whole = log_list(60, 20.0);
+        let mut descending = whole.clone();
+        descending.reverse();
+        let mut twice = whole.clone();
+        twice[30] = twice[29];
+        for _ in 0..2 {
+            assert_eq!(code(whole.clone()), "");
+            assert_eq!(code(without(whole.clone(), 30..31)), "gap");
+            assert_eq!(code(whole[..4].to_vec()), "too_few_points");
+            assert_eq!(code(twice.clone()), "conflicting_frequency");
+            assert_eq!(code(descending.clone()), "");
+            assert_eq!(code(vec![]), "too_few_points");
+        }
+    }
+
+    #[test]
     fn other_faults_of_the_list() {
         assert_eq!(
             code(vec![1.0, 2.0, 3.0, 0.0, 5.0]),

@@ -85,11 +85,11 @@ pub(super) fn check(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option
     let (resonance, loss) = envelope(frequency, re, im)?;
     let basis = basis(frequency, resonance, loss)?;
     let residual = block_residuals(&basis, re, im);
-    let sizes = squared_sizes(&basis, noise.square.get(from..to)?);
-    let noises = block_noises(noise.variance.get(from..to)?, &sizes);
-    let points = sizes.len();
+    let square = noise.square.get(from..to)?;
+    let noises = block_noises(noise.variance.get(from..to)?, square, &basis.weight);
     // The typical weighted impedance is what residuals are relative to.
-    let scale = median(sizes.into_iter()).sqrt();
+    let scale = median(squared_sizes(square, &basis.weight)).sqrt();
+    let points = square.len();
     let (at, found) = worst_block(&residual, &noises, points, evidence.systematic(), scale)?;
     let f = hertz(frequency.get(at).copied().unwrap_or(f64::NAN));
     Some(Note::new(
@@ -213,7 +213,10 @@ impl Basis {
         raw.extend(tau.map(|tau| column(&|w| (1.0 + j * (w * tau)).finv())));
         let columns = orthonormal(raw);
         let halves = || columns.iter().map(|c| c.split_at(c.len() / 2));
-        let means = halves().map(|(re, im)| block_means(re, im)).collect();
+        let even = vec![1.0; weight.len()];
+        let means = halves()
+            .map(|(re, im)| block_means(re, im, &even))
+            .collect();
         let weighted =
             |half: &[f64]| -> Vec<f64> { half.iter().zip(&weight).map(|(v, w)| v * w).collect() };
         let columns = halves()
@@ -257,21 +260,23 @@ fn subtract(from: &mut [f64], what: &[f64], share: f64) {
     }
 }
 
-/// Means over blocks of points.
-fn block_means(re: &[f64], im: &[f64]) -> Vec<Complex64> {
-    let mean = |block: &[f64]| block.iter().sum::<f64>() / block.len() as f64;
+/// Means over blocks of points of weighted values.
+fn block_means(re: &[f64], im: &[f64], weight: &[f64]) -> Vec<Complex64> {
+    let mean = |block: &[f64], weight: &[f64]| {
+        let terms = block.iter().zip(weight).map(|(v, w)| v * w);
+        terms.sum::<f64>() / block.len() as f64
+    };
     re.chunks(BLOCK)
         .zip(im.chunks(BLOCK))
-        .map(|(re, im)| Complex64::new(mean(re), mean(im)))
+        .zip(weight.chunks(BLOCK))
+        .map(|((re, im), w)| Complex64::new(mean(re, w), mean(im, w)))
         .collect()
 }
 
 /// Block means of what no combination of the terms explains, weighted. Only the means are looked at, so
 /// that the columns' shares are taken out of the means and not of every point.
 fn block_residuals(basis: &Basis, re: &[f64], im: &[f64]) -> Vec<Complex64> {
-    let weighted =
-        |part: &[f64]| -> Vec<f64> { part.iter().zip(&basis.weight).map(|(z, w)| z * w).collect() };
-    let mut rest = block_means(&weighted(re), &weighted(im));
+    let mut rest = block_means(re, im, &basis.weight);
     for (column, means) in basis.columns.iter().zip(&basis.means) {
         let share = dot(&column.re, re) + dot(&column.im, im);
         for (value, mean) in rest.iter_mut().zip(means) {
@@ -282,25 +287,21 @@ fn block_residuals(basis: &Basis, re: &[f64], im: &[f64]) -> Vec<Complex64> {
 }
 
 /// Squares of the weighted magnitudes.
-fn squared_sizes(basis: &Basis, square: &[f64]) -> Vec<f64> {
-    square
-        .iter()
-        .zip(&basis.weight)
-        .map(|(s, w)| s * (w * w))
-        .collect()
+fn squared_sizes<'a>(square: &'a [f64], weight: &'a [f64]) -> impl Iterator<Item = f64> {
+    square.iter().zip(weight).map(|(s, w)| s * (w * w))
 }
 
 /// The largest weighted noise in each block of points.
-fn block_noises(variance: &[f64], squared_sizes: &[f64]) -> Vec<f64> {
-    let largest = |(variance, sizes): (&[f64], &[f64])| {
-        let all = variance.iter().zip(sizes).map(|(v, s)| v * s);
-        all.fold(0.0, |most, v| if v > most { v } else { most })
-            .sqrt()
-    };
+fn block_noises(variance: &[f64], square: &[f64], weight: &[f64]) -> Vec<f64> {
     variance
         .chunks(BLOCK)
-        .zip(squared_sizes.chunks(BLOCK))
-        .map(largest)
+        .zip(square.chunks(BLOCK).zip(weight.chunks(BLOCK)))
+        .map(|(variance, (square, weight))| {
+            let sizes = squared_sizes(square, weight);
+            let all = variance.iter().zip(sizes).map(|(v, s)| v * s);
+            all.fold(0.0, |most, v| if v > most { v } else { most })
+                .sqrt()
+        })
         .collect()
 }
 

@@ -36,9 +36,9 @@ const CLIPPED_MEAN: f64 = 0.776_869_839_851_570_2;
 /// The impedance of a sweep with its deviation from its neighbours and the noise along it.
 #[derive(Debug, Clone)]
 pub(super) struct Noise {
-    /// Real and imaginary parts in Ω.
+    /// Real parts in Ω.
     pub re: Vec<f64>,
-    #[allow(missing_docs)]
+    /// Imaginary parts in Ω.
     pub im: Vec<f64>,
     /// Squared magnitudes of the impedance in Ω².
     pub square: Vec<f64>,
