@@ -267,3 +267,49 @@ fn made_faults_are_refused() {
     }
     assert!(short_of.is_empty(), "{short_of:?}");
 }
+
+/// What a thread keeps of the lists it has seen must not show: the same findings in any order, and
+/// by a thread that has seen nothing.
+#[test]
+fn findings_do_not_depend_on_the_sweeps_before() {
+    let mut random = Random(710);
+    let mut sweeps = Vec::new();
+    for name in PARTS {
+        for per_decade in [10.0, 17.0, 25.0, 50.0, 61.0, 100.0] {
+            let (frequency, z) = truth(name, per_decade, 1e3, 65e6);
+            // Drift from none to much, so that some are refused by the Kramers-Kronig test.
+            let most = z.iter().map(|z| z.norm()).fold(f64::INFINITY, f64::min);
+            let (n, drift) = (z.len() as f64, most * random.uniform(-1.0, 8.0).max(0.0));
+            let impedance = z
+                .iter()
+                .enumerate()
+                .map(|(i, z)| z * (1.0 + random.complex() * 1e-4) + drift * i as f64 / n)
+                .collect();
+            sweeps.push(Sweep {
+                frequency,
+                impedance,
+                level: None,
+            });
+        }
+    }
+    let evidence = Evidence::of(&station(Method::Direct, None));
+    let findings = |order: Vec<usize>| -> Vec<String> {
+        let mut found = vec![String::new(); sweeps.len()];
+        std::thread::scope(|scope| {
+            let work = scope.spawn(|| {
+                for i in order {
+                    found[i] = format!("{:?}", check(&sweeps[i], &evidence));
+                }
+            });
+            work.join().expect("findings");
+        });
+        found
+    };
+    let forwards = findings((0..sweeps.len()).collect());
+    let refused = forwards.iter().filter(|f| f.contains("kramers_kronig"));
+    assert!((3..sweeps.len()).contains(&refused.count()), "{forwards:?}");
+    assert_eq!(findings((0..sweeps.len()).rev().collect()), forwards);
+    for (i, expected) in forwards.iter().enumerate() {
+        assert_eq!(findings(vec![i])[i], *expected);
+    }
+}

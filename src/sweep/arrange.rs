@@ -3,6 +3,7 @@
 use super::faults::hertz;
 use super::raw::{RawSweep, pick};
 use crate::diagnostic::Note;
+use std::cell::RefCell;
 
 /// Fewer points than this are no sweep.
 const FEWEST_POINTS: usize = 5;
@@ -13,11 +14,32 @@ const GAP: f64 = 1.7;
 /// Frequencies nearer to each other than this (relative) are the same.
 const SAME: f64 = 1e-9;
 
+thread_local! {
+    /// The last list that was found whole as it stood: the sweeps of a lot share theirs.
+    static WHOLE: RefCell<Vec<f64>> = const { RefCell::new(Vec::new()) };
+}
+
+fn is_known(frequency: &[f64]) -> bool {
+    frequency.len() >= FEWEST_POINTS
+        && WHOLE.with(|whole| whole.try_borrow().is_ok_and(|whole| *whole == frequency))
+}
+
+fn keep(frequency: &[f64]) {
+    WHOLE.with(|whole| {
+        if let Ok(mut whole) = whole.try_borrow_mut() {
+            frequency.clone_into(&mut whole);
+        }
+    });
+}
+
 /// Sorts a sweep by frequency and refuses what cannot be a whole sweep.
 ///
 /// # Errors
 /// Frequencies that are not positive, duplicates, too few points, a missing stretch.
 pub(super) fn arrange(raw: &mut RawSweep, notes: &mut Vec<Note>) -> Result<(), Vec<Note>> {
+    if is_known(&raw.frequency) {
+        return Ok(());
+    }
     let refuse = |note: Note| Err(vec![note]);
     if let Some(at) = raw
         .frequency
@@ -50,7 +72,10 @@ pub(super) fn arrange(raw: &mut RawSweep, notes: &mut Vec<Note>) -> Result<(), V
     }
     match gap(&raw.frequency) {
         Some(note) => refuse(note),
-        None => Ok(()),
+        None => {
+            keep(&raw.frequency);
+            Ok(())
+        }
     }
 }
 
@@ -254,6 +279,23 @@ mod tests {
             );
             let linear: Vec<f64> = (1..100).map(|i| 1e5 * f64::from(i)).collect();
             assert_eq!(code(without(linear, holes)), "gap");
+        }
+    }
+
+    #[test]
+    fn a_list_that_was_whole_before_hides_no_fault_of_another() {
+        let whole = log_list(60, 20.0);
+        let mut descending = whole.clone();
+        descending.reverse();
+        let mut twice = whole.clone();
+        twice[30] = twice[29];
+        for _ in 0..2 {
+            assert_eq!(code(whole.clone()), "");
+            assert_eq!(code(without(whole.clone(), 30..31)), "gap");
+            assert_eq!(code(whole[..4].to_vec()), "too_few_points");
+            assert_eq!(code(twice.clone()), "conflicting_frequency");
+            assert_eq!(code(descending.clone()), "");
+            assert_eq!(code(vec![]), "too_few_points");
         }
     }
 

@@ -15,27 +15,27 @@ pub(super) struct Text<'a> {
 
 /// Decodes a file; text that is cut off within a character or holds NUL is a fault.
 pub(super) fn decode(bytes: &[u8]) -> Result<Text<'_>, Note> {
+    if !bytes.starts_with(b"\xEF\xBB\xBF")
+        && let Ok(text) = std::str::from_utf8(bytes)
+    {
+        return without_nul(Cow::Borrowed(text), None);
+    }
     let (rest, encoding, note) = match bytes {
         [0xEF, 0xBB, 0xBF, rest @ ..] => (
             rest,
             UTF_8,
-            Some(("encoding_utf8_bom", "UTF-8 with a byte-order mark")),
+            ("encoding_utf8_bom", "UTF-8 with a byte-order mark"),
         ),
         [0xFF, 0xFE, rest @ ..] => (
             rest,
             UTF_16LE,
-            Some(("encoding_utf16le", "UTF-16, little-endian")),
+            ("encoding_utf16le", "UTF-16, little-endian"),
         ),
-        [0xFE, 0xFF, rest @ ..] => (
-            rest,
-            UTF_16BE,
-            Some(("encoding_utf16be", "UTF-16, big-endian")),
-        ),
-        _ if std::str::from_utf8(bytes).is_ok() => (bytes, UTF_8, None),
+        [0xFE, 0xFF, rest @ ..] => (rest, UTF_16BE, ("encoding_utf16be", "UTF-16, big-endian")),
         _ => (
             bytes,
             WINDOWS_1252,
-            Some(("encoding_windows_1252", "Windows-1252")),
+            ("encoding_windows_1252", "Windows-1252"),
         ),
     };
     let (text, malformed) = encoding.decode_without_bom_handling(rest);
@@ -45,6 +45,10 @@ pub(super) fn decode(bytes: &[u8]) -> Result<Text<'_>, Note> {
             "the file begins like Unicode text but holds broken characters: it was cut off or damaged; export it again",
         ));
     }
+    without_nul(text, Some(note))
+}
+
+fn without_nul<'a>(text: Cow<'a, str>, note: Option<(&str, &str)>) -> Result<Text<'a>, Note> {
     if text.as_bytes().contains(&0) {
         return Err(Note::new(
             "not_text",

@@ -24,6 +24,12 @@ const OVERLOAD: f64 = 9.9e37;
 
 /// Reads one number and learns the decimal mark from it.
 pub(super) fn parse(field: &[u8], mark: &mut Mark, comma_allowed: bool) -> Result<f64, Fault> {
+    if let Some((value, has_point)) = plain(field) {
+        if has_point && *mark != Mark::Point {
+            learn(mark, Mark::Point)?;
+        }
+        return Ok(value);
+    }
     match fast_float2::parse::<f64, _>(field) {
         Ok(value) if value.abs() < OVERLOAD => {
             if *mark != Mark::Point && field.contains(&b'.') {
@@ -34,6 +40,70 @@ pub(super) fn parse(field: &[u8], mark: &mut Mark, comma_allowed: bool) -> Resul
         Ok(_) => Err(Fault::NotFinite),
         Err(_) => unusual(field, mark, comma_allowed),
     }
+}
+
+/// Powers of ten that a double holds exactly.
+const POWERS: [f64; 23] = [
+    1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16,
+    1e17, 1e18, 1e19, 1e20, 1e21, 1e22,
+];
+
+/// More digits than this may not fit into a double.
+const DIGITS: u32 = 15;
+
+/// A number of few digits and a moderate exponent, as instruments write them, and whether it has a
+/// decimal point. Digits and power of ten are exact, so that one operation rounds correctly
+/// (Clinger, How to read floating point numbers accurately, PLDI 1990); all other numbers are `None`.
+fn plain(field: &[u8]) -> Option<(f64, bool)> {
+    let (negative, digits) = signed(field);
+    let (mut mantissa, mut count, mut decimals) = (0u64, 0, None);
+    let mut exponent = 0;
+    let mut bytes = digits.iter();
+    while let Some(&byte) = bytes.next() {
+        let digit = byte.wrapping_sub(b'0');
+        if digit < 10 {
+            mantissa = mantissa.wrapping_mul(10).wrapping_add(u64::from(digit));
+            count += 1;
+        } else if byte == b'.' && decimals.is_none() {
+            decimals = Some(count);
+        } else if byte | 0x20 == b'e' {
+            exponent = self::exponent(bytes.as_slice())?;
+            break;
+        } else {
+            return None;
+        }
+    }
+    if count == 0 || count > DIGITS {
+        return None;
+    }
+    let power = exponent - decimals.map_or(0, |before| count - before) as i32;
+    let scale = POWERS.get(power.unsigned_abs() as usize)?;
+    let size = mantissa as f64;
+    let size = if power < 0 {
+        size / scale
+    } else {
+        size * scale
+    };
+    Some((if negative { -size } else { size }, decimals.is_some()))
+}
+
+/// Whether a number has a minus, and what follows its sign.
+fn signed(text: &[u8]) -> (bool, &[u8]) {
+    match text {
+        [b'-', rest @ ..] => (true, rest),
+        [b'+', rest @ ..] => (false, rest),
+        _ => (false, text),
+    }
+}
+
+/// An exponent of one to three digits.
+fn exponent(text: &[u8]) -> Option<i32> {
+    let (negative, digits) = signed(text);
+    if digits.is_empty() || digits.len() > 3 || !digits.iter().all(u8::is_ascii_digit) {
+        return None;
+    }
+    let value = digits.iter().fold(0, |v, d| 10 * v + i32::from(d - b'0'));
+    Some(if negative { -value } else { value })
 }
 
 #[cold]
@@ -139,6 +209,31 @@ mod tests {
             assert_eq!(number(text), Err(Fault::Text), "{text}");
         }
         assert_eq!(parse(b"1,5", &mut Mark::Unknown, false), Err(Fault::Text));
+    }
+
+    #[test]
+    fn numbers_are_rounded_as_the_standard_library_rounds_them() {
+        let mut x = 1u64;
+        let mut plainly = 0;
+        for _ in 0..20_000 {
+            x = x.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1);
+            let digits = (x >> 20) % 10u64.pow((x >> 7) as u32 % 18 + 1);
+            let (sign, at, exponent) = (["", "-", "+"][(x >> 12) as usize % 3], x >> 50, x >> 33);
+            let mut text = digits.to_string();
+            text.insert(at as usize % (text.len() + 1), '.');
+            for text in [
+                format!("{sign}{text}"),
+                format!("{sign}{text}e{}", exponent % 20),
+                format!("{sign}{text}E-{:02}", exponent % 60),
+                format!("{sign}{digits}e+{:03}", exponent % 20),
+            ] {
+                plainly += u32::from(plain(text.as_bytes()).is_some());
+                let expected: f64 = text.parse().expect("a number");
+                let found = number(&text).expect("a number");
+                assert_eq!(found.to_bits(), expected.to_bits(), "{text}");
+            }
+        }
+        assert!(plainly > 20_000, "{plainly}");
     }
 
     #[test]

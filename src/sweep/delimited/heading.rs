@@ -51,6 +51,10 @@ pub(super) fn find<'a>(text: &'a str, layout: &Layout) -> Result<Headings<'a>, N
         .collect();
     let mut best: Option<Miss> = None;
     for delimiter in Delimiter::ALL {
+        // Headings are at least two fields.
+        if !delimiter.is_in(text.as_bytes()) {
+            continue;
+        }
         let mut rows = Rows::new(text.as_bytes(), delimiter);
         let mut fields = Vec::new();
         for _ in 0..PREAMBLE {

@@ -28,6 +28,26 @@ impl Delimiter {
         }
     }
 
+    /// The bytes that end a field without quotes.
+    fn ends(self) -> &'static [bool; 256] {
+        match self {
+            Delimiter::Comma => &COMMA,
+            Delimiter::Semicolon => &SEMICOLON,
+            Delimiter::Tab => &TAB,
+            Delimiter::Whitespace => &WHITESPACE,
+        }
+    }
+
+    /// Whether the delimiter stands anywhere in a text.
+    pub fn is_in(self, text: &[u8]) -> bool {
+        match self {
+            Delimiter::Comma => text.contains(&b','),
+            Delimiter::Semicolon => text.contains(&b';'),
+            Delimiter::Tab => text.contains(&b'\t'),
+            Delimiter::Whitespace => text.contains(&b' ') || text.contains(&b'\t'),
+        }
+    }
+
     /// Code and words of the note that says so; the comma is what everyone expects.
     pub fn note(self) -> Option<(&'static str, &'static str)> {
         match self {
@@ -37,6 +57,20 @@ impl Delimiter {
             Delimiter::Whitespace => Some(("delimiter_whitespace", "blanks")),
         }
     }
+}
+
+static COMMA: [bool; 256] = ends(b',', b',');
+static SEMICOLON: [bool; 256] = ends(b';', b';');
+static TAB: [bool; 256] = ends(b'\t', b'\t');
+static WHITESPACE: [bool; 256] = ends(b' ', b'\t');
+
+const fn ends(delimiter: u8, other: u8) -> [bool; 256] {
+    let mut table = [false; 256];
+    table[b'\n' as usize] = true;
+    table[b'\r' as usize] = true;
+    table[delimiter as usize] = true;
+    table[other as usize] = true;
+    table
 }
 
 /// One field without surrounding blanks and quotes.
@@ -103,13 +137,10 @@ impl<'a> Rows<'a> {
         {
             return quoted;
         }
-        let mut end = start;
-        while let Some(&byte) = bytes.get(end) {
-            if self.delimiter.is(byte) || byte == b'\n' || byte == b'\r' {
-                break;
-            }
-            end += 1;
-        }
+        let rest = bytes.get(start..).unwrap_or_default();
+        let ends = self.delimiter.ends();
+        let length = rest.iter().position(|&byte| ends[usize::from(byte)]);
+        let end = length.map_or(bytes.len(), |length| start + length);
         let field = bytes.get(start..end).unwrap_or_default().trim_ascii_end();
         (
             Field {

@@ -102,6 +102,7 @@ pub(super) fn read(
             .list
             .push(Group::new(None, values.len(), estimate.min(4096)));
     }
+    let needed = values.iter().map(|v| v.index + 1).max().unwrap_or(0);
     let mut mark = Mark::Unknown;
     let mut fields: Vec<Field> = Vec::with_capacity(headings.count + 1);
     let mut first = true;
@@ -123,7 +124,7 @@ pub(super) fn read(
         };
         group.lines.push(line);
         read_row(group, &values, &fields, line, headings.delimiter, &mut mark);
-        row_length(group, &fields, &values, headings.count, line);
+        row_length(group, &fields, needed, headings.count, line);
         let whole = values
             .iter()
             .all(|v| fields.get(v.index).is_some_and(|f| !f.bytes.is_empty()));
@@ -257,8 +258,7 @@ fn number_fault(faults: &mut Faults, fault: Fault, field: &[u8], line: u32, head
 }
 
 /// A row must have as many fields as there are headings; empty ones behind them are let pass.
-fn row_length(group: &mut Group, fields: &[Field<'_>], values: &[Values], count: usize, line: u32) {
-    let needed = values.iter().map(|v| v.index + 1).max().unwrap_or(0);
+fn row_length(group: &mut Group, fields: &[Field<'_>], needed: usize, count: usize, line: u32) {
     let found = fields.len();
     if found < needed {
         group.faults.add("short_row", || {

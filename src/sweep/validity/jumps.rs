@@ -36,25 +36,29 @@ enum Kind {
 
 /// Finds the largest jump of a sweep.
 pub(super) fn find(sweep: &Sweep, noise: &Noise) -> Option<Jump> {
-    let n = sweep.impedance.len();
-    let size = |i: usize| noise.deviation.get(i).map_or(0.0, |d| d.norm());
-    let is_jump = |i: &usize| {
-        let level = noise.at(*i);
-        let unexplained = 3.0
-            * noise
-                .interpolation
-                .get(*i)
-                .copied()
-                .unwrap_or(f64::INFINITY);
-        level < QUIET && size(*i) > SIGNIFICANT * level + unexplained + OF_ACCOUNT
+    let is_jump = |i: usize| {
+        let level = noise.at(i);
+        let (deviation, interpolation) = noise.deviation(sweep, i)?;
+        let size = deviation.norm();
+        let allowed = SIGNIFICANT * level + 3.0 * interpolation + OF_ACCOUNT;
+        (level < QUIET && size > allowed).then_some((i, size))
     };
-    let found: Vec<usize> = (0..n).filter(is_jump).collect();
+    // Squares first: hardly a point passes them.
+    let (significant, of_account) = (SIGNIFICANT * SIGNIFICANT, OF_ACCOUNT * OF_ACCOUNT);
+    let found: Vec<(usize, f64)> = noise
+        .deviation
+        .iter()
+        .zip(&noise.variance)
+        .enumerate()
+        .filter(|(_, (d, variance))| **d > of_account && **d > significant * **variance)
+        .filter_map(|(i, _)| is_jump(i))
+        .collect();
     // Each point disturbs the deviations of two neighbours on either side.
-    let places = found.chunk_by(|a, b| b - a <= 2).count();
-    let worst = found
+    let places = found.chunk_by(|(a, _), (b, _)| b - a <= 2).count();
+    let (worst, _) = found
         .iter()
         .copied()
-        .max_by(|&i, &j| size(i).total_cmp(&size(j)))?;
+        .max_by(|(_, a), (_, b)| a.total_cmp(b))?;
     Some(Jump {
         frequency: sweep.frequency.get(worst).copied()?,
         kind: kind(sweep, noise, worst, places),
@@ -73,15 +77,15 @@ fn kind(sweep: &Sweep, noise: &Noise, at: usize, places: usize) -> Kind {
     }
     // A contact that fails does so again and again. At a step the two points beside it deviate alike and in opposite senses; at a single point
     // the neighbours deviate by two thirds.
-    let Some(here) = noise.deviation.get(at) else {
+    let Some((here, _)) = noise.deviation(sweep, at) else {
         return Kind::Moved;
     };
     let beside = [at.checked_sub(1), Some(at + 1)];
     let opposite = beside
         .into_iter()
         .flatten()
-        .filter_map(|i| noise.deviation.get(i))
-        .any(|d| (d * here.conj()).re < 0.0 && d.norm() > 0.8 * here.norm());
+        .filter_map(|i| noise.deviation(sweep, i))
+        .any(|(d, _)| (d * here.conj()).re < 0.0 && d.norm() > 0.8 * here.norm());
     if opposite && places == 1 {
         Kind::Step
     } else {

@@ -1,6 +1,7 @@
 //! Whether there is a part, and whether it is a capacitor.
 
 use super::noise::Noise;
+use super::sums::median;
 use super::{Evidence, UNUSABLE};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
@@ -18,17 +19,13 @@ pub(super) fn no_part(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Opti
         let near = open
             .iter()
             .zip(read)
-            .filter(|(o, z)| z.norm() > OF_OPEN * o.norm())
+            .filter(|(o, z)| z.norm_sqr() > OF_OPEN * OF_OPEN * o.norm_sqr())
             .count();
         if near * 2 > read.len() {
             return Some(open_contact("the jig reads as it does when open"));
         }
     }
-    let least = sweep
-        .impedance
-        .iter()
-        .map(|z| z.norm())
-        .fold(f64::INFINITY, f64::min);
+    let least = noise.least().sqrt();
     if evidence
         .reference
         .is_some_and(|r| least > OVER_REFERENCE * r.resistance)
@@ -38,13 +35,11 @@ pub(super) fn no_part(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Opti
         )));
     }
     let n = sweep.impedance.len();
-    let usable = (0..n).filter(|&i| noise.usable(i)).count();
+    let usable = noise.usable_points();
     if usable * 4 > n {
         return None;
     }
-    let mut sizes: Vec<f64> = sweep.impedance.iter().map(|z| z.norm()).collect();
-    let middle = sizes.len() / 2;
-    let median = *sizes.select_nth_unstable_by(middle, f64::total_cmp).1;
+    let median = median(noise.square.iter().copied()).sqrt();
     Some(if median > 1e3 {
         open_contact("the impedance is high and nearly all noise")
     } else {
@@ -149,26 +144,51 @@ pub(super) fn capacitive(sweep: &Sweep, noise: &Noise) -> Option<Note> {
     })
 }
 
+/// Points in a row that make a crossing.
+const IN_A_ROW: usize = 3;
+
+/// Whether a reactance stands out by five times the noise and a fiftieth of the impedance, from its
+/// squared magnitude and relative variance.
+fn is_significant(reactance: f64, square: f64, variance: f64) -> bool {
+    let noise = 25.0 * variance;
+    reactance * reactance > if noise > 4e-4 { noise } else { 4e-4 } * square
+}
+
+/// Whether enough points are capacitive behind the first inductive one that there can be a second
+/// resonance: a quick look, as there hardly ever is one.
+fn turns_back(noise: &Noise) -> bool {
+    let (im, square, variance) = (&noise.im, &noise.square, &noise.variance);
+    let all = im.iter().zip(square).zip(variance);
+    let mut inductive =
+        all.map(|((x, square), variance)| *x > 0.0 && is_significant(*x, *square, *variance));
+    let Some(first) = inductive.position(|is| is) else {
+        return false;
+    };
+    let behind = im.iter().zip(square).zip(variance).skip(first);
+    let capacitive = behind
+        .filter(|((x, square), variance)| **x < 0.0 && is_significant(**x, **square, **variance));
+    capacitive.count() >= IN_A_ROW
+}
+
 /// A capacitor with its leads resonates once in series; more crossings of the reactance are
 /// another part beside it.
 pub(super) fn one_resonance(sweep: &Sweep, noise: &Noise) -> Option<Note> {
-    let mut sign = -1.0;
+    if !turns_back(noise) {
+        return None;
+    }
+    let mut sign = -1;
     let mut crossings = Vec::new();
-    let mut run = (0.0, 0);
-    for (i, (z, f)) in sweep.impedance.iter().zip(&sweep.frequency).enumerate() {
-        let threshold = (5.0 * noise.at(i)).max(0.02) * z.norm();
-        let now = if z.im.abs() > threshold {
-            z.im.signum()
-        } else {
-            0.0
+    let mut run = (0, 0);
+    let points = noise.im.iter().zip(&noise.square).zip(&noise.variance);
+    for (((x, square), variance), f) in points.zip(&sweep.frequency) {
+        let now = match is_significant(*x, *square, *variance) {
+            true if *x < 0.0 => -1,
+            true => 1,
+            false => 0,
         };
-        run = if now == run.0 {
-            (now, run.1 + 1)
-        } else {
-            (now, 1)
-        };
+        run = (now, if now == run.0 { run.1 + 1 } else { 1 });
         // Several points in a row, so that outliers make no crossing.
-        if now != 0.0 && run.1 == 3 && now != sign {
+        if run.1 == IN_A_ROW && now != sign && now != 0 {
             sign = now;
             crossings.push(*f);
         }

@@ -13,6 +13,7 @@
 //! orthogonal basis is made once for all parts of a lot.
 
 use super::noise::Noise;
+use super::sums::{dot, median};
 use super::{Evidence, FLOOR};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
@@ -40,6 +41,9 @@ const SIGNIFICANT: f64 = 6.0;
 /// What the fixed terms leave of a sound part (relative); clean reference parts stay below 0.3 %.
 const MODEL: f64 = 8e-3;
 
+/// The loss of the envelope is at most a factor of 100, in half nepers.
+const LOSS: i32 = 9;
+
 /// Bases kept by each thread.
 const KEPT: usize = 8;
 
@@ -55,11 +59,17 @@ struct Key {
 
 struct Basis {
     key: Key,
-    /// Orthonormal columns; real parts of all points, then imaginary parts.
-    columns: Vec<Vec<f64>>,
-    /// Means of each column over the blocks of points, real and imaginary part in one.
+    /// Orthonormal columns times the weight, so that they go with the impedance as it is.
+    columns: Vec<Column>,
+    /// Means of each orthonormal column over the blocks of points.
     means: Vec<Vec<Complex64>>,
     weight: Vec<f64>,
+}
+
+/// Real and imaginary parts of all points.
+struct Column {
+    re: Vec<f64>,
+    im: Vec<f64>,
 }
 
 thread_local! {
@@ -70,18 +80,17 @@ thread_local! {
 pub(super) fn check(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option<Note> {
     let (from, to) = quiet(sweep, noise)?;
     let frequency = sweep.frequency.get(from..to)?;
-    let impedance = sweep.impedance.get(from..to)?;
-    let (resonance, loss) = envelope(frequency, impedance)?;
+    let re = noise.re.get(from..to)?;
+    let im = noise.im.get(from..to)?;
+    let (resonance, loss) = envelope(frequency, re, im)?;
     let basis = basis(frequency, resonance, loss)?;
-    let residual = block_residuals(&basis, impedance);
-    let sizes = sizes(&basis, impedance);
-    let scale = median(sizes.clone());
-    let noises: Vec<f64> = sizes
-        .iter()
-        .enumerate()
-        .map(|(i, size)| noise.at(from + i) * size / scale)
-        .collect();
-    let (at, found) = worst_block(&residual, &noises, evidence.systematic(), scale)?;
+    let residual = block_residuals(&basis, re, im);
+    let square = noise.square.get(from..to)?;
+    let noises = block_noises(noise.variance.get(from..to)?, square, &basis.weight);
+    // The typical weighted impedance is what residuals are relative to.
+    let scale = median(squared_sizes(square, &basis.weight)).sqrt();
+    let points = square.len();
+    let (at, found) = worst_block(&residual, &noises, points, evidence.systematic(), scale)?;
     let f = hertz(frequency.get(at).copied().unwrap_or(f64::NAN));
     Some(Note::new(
         "kramers_kronig",
@@ -98,14 +107,14 @@ fn quiet(sweep: &Sweep, noise: &Noise) -> Option<(usize, usize)> {
     let n = sweep.frequency.len();
     let from = (0..n)
         .rev()
-        .find(|&i| noise.at(i) > FLOOR)
+        .find(|&i| noise.exceeds(i, FLOOR))
         .map_or(0, |i| (i + 1).next_multiple_of(8));
     // Noise at the upper end alone (a series-through jig) ends the stretch instead.
     let (from, to) = if from > n / 2 {
         (
             0,
             (0..n)
-                .find(|&i| noise.at(i) > FLOOR)
+                .find(|&i| noise.exceeds(i, FLOOR))
                 .map_or(n, |i| i / 8 * 8),
         )
     } else {
@@ -117,22 +126,29 @@ fn quiet(sweep: &Sweep, noise: &Noise) -> Option<(usize, usize)> {
 }
 
 /// Coarse form of the impedance: resonance and loss in half nepers.
-fn envelope(frequency: &[f64], impedance: &[Complex64]) -> Option<(i32, i32)> {
-    let (f, z) = (*frequency.first()?, *impedance.first()?);
-    let crossing = impedance
+fn envelope(frequency: &[f64], re: &[f64], im: &[f64]) -> Option<(i32, i32)> {
+    let crossing = im
         .iter()
-        .rposition(|z| z.im < 0.0)
+        .rposition(|x| *x < 0.0)
         .and_then(|i| frequency.get(i));
     let resonance = *crossing?;
-    let reactance = z.im.abs() * f / resonance;
-    let mut resistance: Vec<f64> = impedance.iter().map(|z| z.re.abs()).collect();
-    let tenth = resistance.len() / 10;
-    let resistance = *resistance.select_nth_unstable_by(tenth, f64::total_cmp).1;
-    let class = |x: f64| (2.0 * x.max(1e-6).ln()).round() as i32;
-    Some((
-        class(resonance),
-        class((resistance / reactance).clamp(1e-2, 1e2)),
-    ))
+    let reactance = im.first()?.abs() * frequency.first()? / resonance;
+    // The class of the resistance that a tenth of the points stay below, by counting.
+    let tenth = re.len() / 10;
+    let within = |class: i32| {
+        let limit = reactance * (0.5 * (f64::from(class) + 0.5)).exp();
+        re.iter().filter(|r| r.abs() < limit).count() > tenth
+    };
+    let (mut least, mut most) = (-LOSS, LOSS);
+    while least < most {
+        let middle = (least + most).div_euclid(2);
+        if within(middle) {
+            most = middle;
+        } else {
+            least = middle + 1;
+        }
+    }
+    Some(((2.0 * resonance.max(1e-6).ln()).round() as i32, most))
 }
 
 fn basis(frequency: &[f64], resonance: i32, loss: i32) -> Option<Rc<Basis>> {
@@ -196,7 +212,19 @@ impl Basis {
         ];
         raw.extend(tau.map(|tau| column(&|w| (1.0 + j * (w * tau)).finv())));
         let columns = orthonormal(raw);
-        let means = columns.iter().map(|column| block_means(column)).collect();
+        let halves = || columns.iter().map(|c| c.split_at(c.len() / 2));
+        let even = vec![1.0; weight.len()];
+        let means = halves()
+            .map(|(re, im)| block_means(re, im, &even))
+            .collect();
+        let weighted =
+            |half: &[f64]| -> Vec<f64> { half.iter().zip(&weight).map(|(v, w)| v * w).collect() };
+        let columns = halves()
+            .map(|(re, im)| Column {
+                re: weighted(re),
+                im: weighted(im),
+            })
+            .collect();
         Some(Basis {
             key,
             columns,
@@ -226,53 +254,31 @@ fn orthonormal(raw: Vec<Vec<f64>>) -> Vec<Vec<f64>> {
     columns
 }
 
-/// With eight running sums, so that it is not bound by the latency of one.
-fn dot(a: &[f64], b: &[f64]) -> f64 {
-    let mut sums = [0.0; 8];
-    let (x, y) = (a.chunks_exact(8), b.chunks_exact(8));
-    let rest: f64 = x
-        .remainder()
-        .iter()
-        .zip(y.remainder())
-        .map(|(a, b)| a * b)
-        .sum();
-    for (x, y) in x.zip(y) {
-        for ((sum, a), b) in sums.iter_mut().zip(x).zip(y) {
-            *sum += a * b;
-        }
-    }
-    sums.iter().sum::<f64>() + rest
-}
-
 fn subtract(from: &mut [f64], what: &[f64], share: f64) {
     for (value, w) in from.iter_mut().zip(what) {
         *value -= share * w;
     }
 }
 
-/// Means over blocks of points of real and imaginary parts that stand one after the other.
-fn block_means(values: &[f64]) -> Vec<Complex64> {
-    let (re, im) = values.split_at(values.len() / 2);
-    let mean = |block: &[f64]| block.iter().sum::<f64>() / block.len() as f64;
+/// Means over blocks of points of weighted values.
+fn block_means(re: &[f64], im: &[f64], weight: &[f64]) -> Vec<Complex64> {
+    let mean = |block: &[f64], weight: &[f64]| {
+        let terms = block.iter().zip(weight).map(|(v, w)| v * w);
+        terms.sum::<f64>() / block.len() as f64
+    };
     re.chunks(BLOCK)
         .zip(im.chunks(BLOCK))
-        .map(|(re, im)| Complex64::new(mean(re), mean(im)))
+        .zip(weight.chunks(BLOCK))
+        .map(|((re, im), w)| Complex64::new(mean(re, w), mean(im, w)))
         .collect()
 }
 
 /// Block means of what no combination of the terms explains, weighted. Only the means are looked at, so
 /// that the columns' shares are taken out of the means and not of every point.
-fn block_residuals(basis: &Basis, impedance: &[Complex64]) -> Vec<Complex64> {
-    let weighted = |part: fn(&Complex64) -> f64| {
-        impedance
-            .iter()
-            .zip(&basis.weight)
-            .map(move |(z, w)| part(z) * w)
-    };
-    let all: Vec<f64> = weighted(|z| z.re).chain(weighted(|z| z.im)).collect();
-    let mut rest = block_means(&all);
+fn block_residuals(basis: &Basis, re: &[f64], im: &[f64]) -> Vec<Complex64> {
+    let mut rest = block_means(re, im, &basis.weight);
     for (column, means) in basis.columns.iter().zip(&basis.means) {
-        let share = dot(column, &all);
+        let share = dot(&column.re, re) + dot(&column.im, im);
         for (value, mean) in rest.iter_mut().zip(means) {
             *value -= mean * share;
         }
@@ -280,40 +286,43 @@ fn block_residuals(basis: &Basis, impedance: &[Complex64]) -> Vec<Complex64> {
     rest
 }
 
-/// Weighted magnitudes.
-fn sizes(basis: &Basis, impedance: &[Complex64]) -> Vec<f64> {
-    impedance
-        .iter()
-        .zip(&basis.weight)
-        .map(|(z, w)| z.norm_sqr().sqrt() * w)
+/// Squares of the weighted magnitudes.
+fn squared_sizes<'a>(square: &'a [f64], weight: &'a [f64]) -> impl Iterator<Item = f64> {
+    square.iter().zip(weight).map(|(s, w)| s * (w * w))
+}
+
+/// The largest weighted noise in each block of points.
+fn block_noises(variance: &[f64], square: &[f64], weight: &[f64]) -> Vec<f64> {
+    variance
+        .chunks(BLOCK)
+        .zip(square.chunks(BLOCK).zip(weight.chunks(BLOCK)))
+        .map(|(variance, (square, weight))| {
+            let sizes = squared_sizes(square, weight);
+            let all = variance.iter().zip(sizes).map(|(v, s)| v * s);
+            all.fold(0.0, |most, v| if v > most { v } else { most })
+                .sqrt()
+        })
         .collect()
 }
 
-/// The typical weighted impedance is what residuals are relative to.
-fn median(mut sizes: Vec<f64>) -> f64 {
-    let middle = sizes.len() / 2;
-    if sizes.is_empty() {
-        return f64::NAN;
-    }
-    *sizes.select_nth_unstable_by(middle, f64::total_cmp).1
-}
-
 /// The block of points whose mean residual stands out most, as centre index and relative size.
+/// `noises` is the largest of each block, `points` the number of points in all blocks.
 fn worst_block(
     means: &[Complex64],
     noises: &[f64],
+    points: usize,
     systematic: f64,
     scale: f64,
 ) -> Option<(usize, f64)> {
     let mut worst: Option<(usize, f64, f64)> = None;
     for (at, mean) in means.iter().enumerate() {
         let start = at * BLOCK;
-        let length = BLOCK.min(noises.len().saturating_sub(start));
-        let (m, mean) = (length as f64, mean.norm() / scale);
+        let length = BLOCK.min(points.saturating_sub(start));
+        let (m, mean) = (length as f64, mean.norm_sqr().sqrt() / scale);
         // The fit lets noise of the neighbouring points through as well.
-        let around = start.saturating_sub(BLOCK)..(start + 2 * BLOCK).min(noises.len());
-        let around = noises.get(around).unwrap_or_default();
-        let around = around.iter().copied().fold(0.0, f64::max);
+        let around = noises.iter().skip(at.saturating_sub(1));
+        let around = around.take(if at == 0 { 2 } else { 3 });
+        let around = around.copied().fold(0.0, f64::max) / scale;
         let allowed = SIGNIFICANT * around / m.sqrt() + systematic + MODEL;
         let excess = mean / allowed;
         if worst.is_none_or(|(_, _, most)| excess > most) {

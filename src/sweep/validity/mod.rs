@@ -8,8 +8,10 @@ mod completeness;
 mod jumps;
 mod kind;
 mod kramers_kronig;
+mod neighbours;
 mod noise;
 mod nominal;
+mod sums;
 
 pub use completeness::complete;
 pub use nominal::expect_capacitance;
@@ -139,8 +141,8 @@ pub(super) fn unsteady(sweep: &Sweep) -> Option<Note> {
 const FLOOR: f64 = 0.1;
 
 fn noise_floor(sweep: &Sweep, noise: &Noise) -> Option<Note> {
-    let size = |i: &usize| sweep.impedance.get(*i).map_or(f64::INFINITY, |z| z.norm());
-    let least = (0..sweep.impedance.len()).min_by(|i, j| size(i).total_cmp(&size(j)))?;
+    let smallest = noise.least();
+    let least = noise.square.iter().position(|s| *s == smallest)?;
     let found = noise.at(least);
     (found > FLOOR).then(|| {
         Note::new(
@@ -157,7 +159,7 @@ fn noise_floor(sweep: &Sweep, noise: &Noise) -> Option<Note> {
 /// Noise at the low end is no fault of the sweep, but its readings there are poor.
 fn noisy_end(sweep: &Sweep, noise: &Noise) -> Option<Note> {
     let noisy = (0..sweep.frequency.len())
-        .take_while(|&i| noise.at(i) > FLOOR)
+        .take_while(|&i| noise.exceeds(i, FLOOR))
         .count();
     let frequency = sweep.frequency.get(noisy)?;
     (noisy > 0).then(|| {

@@ -9,15 +9,15 @@
 //! the multiplicative update), with large squares clipped so that outliers stay out; where a block
 //! of points is noisier than the model, the block counts.
 
+use super::neighbours::Neighbours;
+use super::sums::{dot, median, order_statistic, sum};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::LN_2;
+use std::rc::Rc;
 
 /// Points of one block.
 const BLOCK: usize = 16;
-
-/// Neighbours farther apart than this in ln f say nothing about a point between them.
-const WIDEST: f64 = 0.6;
 
 /// No sweep is taken for less noisy than its digits (relative).
 const LEAST: f64 = 1e-6;
@@ -33,68 +33,74 @@ const CLIP: f64 = 1.5;
 /// … which leaves this share of the mean of an exponential distribution, `1 - exp(-CLIP)`.
 const CLIPPED_MEAN: f64 = 0.776_869_839_851_570_2;
 
-/// Deviation of each point from its neighbours, and the noise along the sweep.
+/// The impedance of a sweep with its deviation from its neighbours and the noise along it.
 #[derive(Debug, Clone)]
 pub(super) struct Noise {
-    /// Complex difference to the cubic through the neighbours over the larger of both
-    /// magnitudes, scaled to the noise of one point; not finite where there is no cubic.
-    pub deviation: Vec<Complex64>,
-    /// What interpolation alone can make of the deviation, relative.
-    pub interpolation: Vec<f64>,
-    /// Complex rms noise relative to |Z|; 0 where the sweep is too coarse to show any.
-    relative: Vec<f64>,
+    /// Real parts in Ω.
+    pub re: Vec<f64>,
+    /// Imaginary parts in Ω.
+    pub im: Vec<f64>,
+    /// Squared magnitudes of the impedance in Ω².
+    pub square: Vec<f64>,
+    /// Squared deviations from the cubic through the neighbours, relative; NaN where there is none.
+    pub deviation: Vec<f64>,
+    /// Variance of the complex noise relative to |Z|²; 0 where there are too few points to show any.
+    pub variance: Vec<f64>,
+    neighbours: Rc<Neighbours>,
 }
 
 /// Estimates the noise of a sweep.
 pub(super) fn estimate(sweep: &Sweep) -> Noise {
-    let n = sweep.impedance.len();
-    let position: Vec<f64> = sweep.frequency.iter().map(|f| f.ln()).collect();
-    let mut deviation = vec![Complex64::new(f64::NAN, f64::NAN); n];
-    let mut interpolation = vec![f64::INFINITY; n];
-    let windows = position.windows(5).zip(sweep.impedance.windows(5));
-    let targets = deviation.iter_mut().zip(&mut interpolation).skip(2);
-    for ((x, z), (deviation, interpolation)) in windows.zip(targets) {
-        if let (&[x0, x1, x2, x3, x4], &[z0, z1, z2, z3, z4]) = (x, z) {
-            let step = (x4 - x0) / 4.0;
-            let widest = (x1 - x0).max(x2 - x1).max(x3 - x2).max(x4 - x3);
-            if widest > WIDEST {
-                continue;
-            }
-            let w = weights([x0 - x2, x1 - x2, x3 - x2, x4 - x2]);
-            let expected = z0 * w[0] + z1 * w[1] + z3 * w[2] + z4 * w[3];
-            let gain = (1.0 + w.iter().map(|w| w * w).sum::<f64>()).sqrt();
-            let size = z2.norm_sqr().max(expected.norm_sqr()).sqrt();
-            *deviation = (z2 - expected) / (size * gain);
-            let largest = z0.norm_sqr().max(z4.norm_sqr()).sqrt().max(size);
-            *interpolation = (step * step) * (step * step) / 6.0 * largest / size;
+    let neighbours = Neighbours::of(&sweep.frequency);
+    let re: Vec<f64> = sweep.impedance.iter().map(|z| z.re).collect();
+    let im: Vec<f64> = sweep.impedance.iter().map(|z| z.im).collect();
+    let square: Vec<f64> = re.iter().zip(&im).map(|(x, y)| x * x + y * y).collect();
+    let deviation = neighbours.squared_deviations(&re, &im, &square);
+    let variance = variance(&square, &deviation);
+    Noise {
+        re,
+        im,
+        square,
+        deviation,
+        variance,
+        neighbours,
+    }
+}
+
+/// Points by their squared deviation `d` and squared impedance `s`.
+#[derive(Debug)]
+struct Points {
+    d: Vec<f64>,
+    s: Vec<f64>,
+    /// `1/s`
+    inverse: Vec<f64>,
+    /// One over the model's variance.
+    weight: Vec<f64>,
+    /// The clipped square over the model's, times the weight.
+    excess: Vec<f64>,
+}
+
+impl Points {
+    fn with_capacity(capacity: usize) -> Self {
+        let list = || Vec::with_capacity(capacity);
+        Points {
+            d: list(),
+            s: list(),
+            inverse: list(),
+            weight: list(),
+            excess: list(),
         }
     }
-    let relative = relative(sweep, &deviation);
-    Noise {
-        deviation,
-        interpolation,
-        relative,
-    }
 }
 
-/// Weights of four points for the value of their cubic at 0 (Lagrange).
-fn weights(x: [f64; 4]) -> [f64; 4] {
-    let [a, b, c, d] = x;
-    [
-        b * c * d / ((b - a) * (c - a) * (d - a)),
-        a * c * d / ((a - b) * (c - b) * (d - b)),
-        a * b * d / ((a - c) * (b - c) * (d - c)),
-        a * b * c / ((a - d) * (b - d) * (c - d)),
-    ]
+/// Squared deviation that counts.
+fn least(deviation: f64) -> f64 {
+    deviation.max(LEAST * LEAST)
 }
 
-/// A point with its squared deviation `d` and squared impedance `s`.
-#[derive(Debug, Clone, Copy)]
-struct Square {
-    d: f64,
-    s: f64,
-    /// `1/s`: divisions are what the fit would spend its time on.
-    inverse: f64,
+/// Squared impedance that can be divided by.
+fn divisor(square: f64) -> f64 {
+    square.max(f64::MIN_POSITIVE)
 }
 
 /// Relative variance `a + b/s + c s`.
@@ -106,128 +112,137 @@ struct Model {
 }
 
 impl Model {
-    fn at(&self, point: &Square) -> f64 {
-        self.a + self.b * point.inverse + self.c * point.s
+    fn at(&self, s: f64, inverse: f64) -> f64 {
+        self.a + self.b * inverse + self.c * s
     }
 
     /// One multiplicative round over the points.
-    fn round(&mut self, points: &[Square]) {
-        let (mut above, mut below) = ([0.0; 3], [0.0; 3]);
-        for point in points {
-            let model = self.at(point);
-            let weight = 1.0 / model;
-            let excess = (point.d * weight).min(CLIP) / CLIPPED_MEAN * weight;
-            for ((above, below), term) in
-                above
-                    .iter_mut()
-                    .zip(&mut below)
-                    .zip([1.0, point.inverse, point.s])
-            {
-                *above += term * excess;
-                *below += term * weight;
-            }
-        }
-        let [a, b, c] = above;
-        let [p, q, r] = below;
-        self.a *= a / p;
-        self.b *= b / q;
-        self.c *= c / r;
-    }
-}
-
-fn relative(sweep: &Sweep, deviation: &[Complex64]) -> Vec<f64> {
-    let square = |(d, z): (&Complex64, &Complex64)| {
-        let s = z.norm_sqr().max(f64::MIN_POSITIVE);
-        Square {
-            d: d.norm_sqr().max(LEAST * LEAST),
+    fn round(&mut self, points: &mut Points) {
+        let Points {
+            d,
             s,
-            inverse: 1.0 / s,
+            inverse,
+            weight,
+            excess,
+        } = points;
+        let known = d.iter().zip(s.iter().zip(inverse.iter()));
+        for ((weight, excess), (d, (s, inverse))) in weight.iter_mut().zip(&mut *excess).zip(known)
+        {
+            let w = 1.0 / self.at(*s, *inverse);
+            *weight = w;
+            *excess = (d * w).min(CLIP) * w;
         }
-    };
-    let all: Vec<Square> = deviation.iter().zip(&sweep.impedance).map(square).collect();
-    let known: Vec<Square> = all.iter().copied().filter(|p| p.d.is_finite()).collect();
-    if known.len() < 4 {
-        return vec![0.0; all.len()];
+        let factor = |above: f64, below: f64| above / (CLIPPED_MEAN * below);
+        self.a *= factor(sum(excess), sum(weight));
+        self.b *= factor(dot(excess, inverse), dot(weight, inverse));
+        self.c *= factor(dot(excess, s), dot(weight, s));
     }
-    let model = fit(&known);
-    let local = blocks(deviation, &all, &model);
-    let mut next = 0;
-    all.iter()
-        .enumerate()
-        .map(|(i, point)| {
-            while local.get(next).is_some_and(|(end, _)| *end <= i) && next + 1 < local.len() {
-                next += 1;
-            }
-            let factor = local.get(next).map_or(1.0, |(_, factor)| *factor);
-            (model.at(point) * factor).sqrt()
-        })
-        .collect()
 }
 
-fn fit(known: &[Square]) -> Model {
-    let stride = known.len().div_ceil(FITTED);
-    let points: Vec<Square> = known.iter().copied().step_by(stride).collect();
-    // Begin with each floor as the points show it where it would rule alone.
-    let mut points = points;
-    points.sort_by(|p, q| p.s.total_cmp(&q.s));
-    let fifth = points.len().div_ceil(5);
-    let (low, high) = (points.iter().take(fifth), points.iter().rev().take(fifth));
+/// Relative variance of each point.
+fn variance(square: &[f64], deviation: &[f64]) -> Vec<f64> {
+    let n = square.len();
+    if n < 4 {
+        return vec![0.0; n];
+    }
+    let model = fit(square, deviation);
+    let mut all: Vec<f64> = square
+        .iter()
+        .map(|s| divisor(*s))
+        .map(|s| model.at(s, 1.0 / s))
+        .collect();
+    let size = n.div_ceil((n / BLOCK).max(1));
+    for (block, deviation) in all.chunks_mut(size).zip(deviation.chunks(size)) {
+        let factor = excess(block, deviation);
+        if factor > 1.0 {
+            block.iter_mut().for_each(|v| *v *= factor);
+        }
+    }
+    all
+}
+
+fn fit(square: &[f64], deviation: &[f64]) -> Model {
+    let stride = square.len().div_ceil(FITTED);
+    let mut points = Points::with_capacity(FITTED);
+    let all = square.iter().zip(deviation).step_by(stride);
+    for (s, d) in all.map(|(s, d)| (divisor(*s), least(*d))) {
+        points.d.push(d);
+        points.s.push(s);
+        points.inverse.push(1.0 / s);
+    }
+    points.weight.resize(points.d.len(), 0.0);
+    points.excess.resize(points.d.len(), 0.0);
+    // Begin with each floor as the points show it where it would rule alone: the fifth with the
+    // smallest and the fifth with the largest impedance.
+    let fifth = points.s.len().div_ceil(5);
+    let low = order_statistic(points.s.iter().copied(), fifth - 1);
+    let high = order_statistic(points.s.iter().copied(), points.s.len() - fifth);
+    let pairs = || points.d.iter().zip(&points.s);
+    let lowest = pairs().filter(|(_, s)| **s <= low).take(fifth);
+    let highest = pairs().rev().filter(|(_, s)| **s >= high).take(fifth);
     let mut model = Model {
-        a: median(points.iter().map(|p| p.d)) / LN_2,
-        b: median(low.map(|p| p.d * p.s)) / LN_2,
-        c: median(high.map(|p| p.d / p.s)) / LN_2,
+        a: median(points.d.iter().copied()) / LN_2,
+        b: median(lowest.map(|(d, s)| d * s)) / LN_2,
+        c: median(highest.map(|(d, s)| d / s)) / LN_2,
     };
     for _ in 0..ROUNDS {
-        model.round(&points);
+        model.round(&mut points);
     }
     model
 }
 
-/// Blocks by their end, each with the factor by which its variance exceeds the model (at least 1).
-fn blocks(deviation: &[Complex64], all: &[Square], model: &Model) -> Vec<(usize, f64)> {
-    let n = all.len();
-    let size = n.div_ceil((n / BLOCK).max(1)).max(1);
-    let chunks = deviation.chunks(size).zip(all.chunks(size));
-    chunks
-        .enumerate()
-        .map(|(at, (deviation, points))| {
-            let known = deviation.iter().zip(points).filter(|(d, _)| d.is_finite());
-            let ratio = median(known.map(|(_, p)| p.d / model.at(p))) / LN_2;
-            ((at + 1) * size, if ratio > 1.0 { ratio } else { 1.0 })
-        })
-        .collect()
-}
-
-fn median(values: impl Iterator<Item = f64>) -> f64 {
-    let mut values: Vec<f64> = values.collect();
-    let middle = values.len() / 2;
-    if values.is_empty() {
-        return f64::NAN;
+/// The factor by which a block's variance exceeds the model's (at least 1), by the median.
+fn excess(model: &[f64], deviation: &[f64]) -> f64 {
+    // Counting is quicker than selecting, and tells whether there is anything to select.
+    let (mut known, mut within) = (0, 0);
+    for (m, d) in model.iter().zip(deviation) {
+        known += usize::from(!d.is_nan());
+        within += usize::from(least(*d) <= LN_2 * m && !d.is_nan());
     }
-    *values.select_nth_unstable_by(middle, f64::total_cmp).1
+    if known == 0 || within > known / 2 {
+        return 1.0;
+    }
+    let ratios = model.iter().zip(deviation).filter(|(_, d)| !d.is_nan());
+    let ratio = median(ratios.map(|(m, d)| least(*d) / m)) / LN_2;
+    if ratio > 1.0 { ratio } else { 1.0 }
 }
 
 impl Noise {
     /// Complex rms noise of a point relative to its impedance.
     pub fn at(&self, point: usize) -> f64 {
-        self.relative.get(point).copied().unwrap_or(0.0)
+        self.variance_at(point).sqrt()
+    }
+
+    /// The least squared impedance in Ω², infinite where there is none.
+    pub fn least(&self) -> f64 {
+        let less = |least: f64, s: &f64| if *s < least { *s } else { least };
+        self.square.iter().fold(f64::INFINITY, less)
+    }
+
+    fn variance_at(&self, point: usize) -> f64 {
+        self.variance.get(point).copied().unwrap_or(0.0)
+    }
+
+    /// Whether a point's relative noise is more than a level.
+    pub fn exceeds(&self, point: usize, level: f64) -> bool {
+        self.variance_at(point) > level * level
+    }
+
+    /// How many points are usable.
+    pub fn usable_points(&self) -> usize {
+        let limit = super::UNUSABLE * super::UNUSABLE;
+        self.variance.iter().filter(|v| **v < limit).count()
     }
 
     /// Whether a point's noise lets anything be said about it.
     pub fn usable(&self, point: usize) -> bool {
-        self.at(point) < super::UNUSABLE
+        self.variance_at(point) < super::UNUSABLE * super::UNUSABLE
     }
-}
 
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn weights_reproduce_a_cubic() {
-        let x = [-2.1, -0.9, 1.2, 2.0];
-        let cubic = |x: f64| 1.0 + x * (2.0 + x * (3.0 + x * 4.0));
-        let sum: f64 = weights(x).iter().zip(x).map(|(w, x)| w * cubic(x)).sum();
-        assert!((sum - 1.0).abs() < 1e-12);
+    /// Complex deviation of a point of this noise's sweep from the cubic through its neighbours,
+    /// over the larger of both magnitudes, scaled to the noise of one point; and what
+    /// interpolation alone can make of it. `None` where there is no cubic.
+    pub fn deviation(&self, sweep: &Sweep, point: usize) -> Option<(Complex64, f64)> {
+        self.neighbours.deviation(sweep, point)
     }
 }
