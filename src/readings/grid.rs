@@ -58,12 +58,14 @@ thread_local! {
     static LAST: RefCell<Option<Rc<Grid>>> = const { RefCell::new(None) };
 }
 
-/// The grid of these frequencies, of which `range` will be looked at.
+/// The grid of these frequencies, of which `range` alone may be looked at: no more need be the same
+/// for a grid to be used again.
 pub(super) fn grid(frequency: &[f64], range: Range<usize>) -> Rc<Grid> {
     let wanted = frequency.get(range.clone());
     LAST.with_borrow_mut(|last| {
         let known = last
             .take()
+            .filter(|grid| grid.frequency.len() == frequency.len())
             .filter(|grid| grid.frequency.get(range) == wanted);
         let grid = known.unwrap_or_else(|| {
             let thin: Vec<f64> = frequency.iter().copied().step_by(THIN).collect();
