@@ -173,18 +173,34 @@ impl<'a> Table<'a> {
         });
     }
 
+    /// How high the table is on one page.
+    pub fn height(&self, flow: &Flow) -> f64 {
+        let grid = Grid::fit(self, flow.left(), flow.sheet.measure());
+        let row = |row: &Row| grid.row_height(self.row_height, &grid.lines(row));
+        let bare = self.columns.iter().all(|c| c.head.is_empty());
+        let head = if bare { 0.0 } else { grid.head_height() };
+        head + self.rows.iter().map(row).sum::<f64>()
+    }
+
     /// Pours the table into the flow.
     pub fn set(&self, flow: &mut Flow) {
         let grid = Grid::fit(self, flow.left(), flow.sheet.measure());
         let head = grid.head_height();
-        let first = self
-            .rows
-            .first()
-            .map_or(0.0, |r| grid.row_height(self.row_height, &grid.lines(r)));
+        let height = |row: &Row| grid.row_height(self.row_height, &grid.lines(row));
+        let first = self.rows.first().map_or(0.0, height);
         flow.need(head + first.min(60.0));
+        // The last page of a table has some rows of it.
+        let end = self.rows.len().checked_sub(TOGETHER);
+        let end = end.filter(|at| *at >= TOGETHER);
         let before = flow.enter(Role::Table);
         grid.head(flow, false);
         for (index, row) in self.rows.iter().enumerate() {
+            if Some(index) == end {
+                let last: f64 = self.rows.iter().skip(index).map(height).sum();
+                if last < FEW && flow.room() < last {
+                    grid.turn(flow);
+                }
+            }
             grid.row(flow, self, row);
             let last = index + 1 == self.rows.len();
             if self.rule_every > 0 && ((index + 1) % self.rule_every == 0 || last) {
@@ -197,6 +213,10 @@ impl<'a> Table<'a> {
 }
 
 const GAP: f64 = 9.0;
+/// Rows at the end of a table that stay on one page.
+const TOGETHER: usize = 3;
+/// Unless they are higher than this.
+const FEW: f64 = 130.0;
 const MARK: f64 = 0.78;
 
 /// Resolved geometry of a table.
@@ -210,6 +230,8 @@ struct Grid<'t> {
     halves: Vec<(f64, f64)>,
     /// Room for the marks of each column.
     marks: Vec<f64>,
+    /// How far each head is indented: as its words are, where not all of them have a mark.
+    indents: Vec<f64>,
 }
 
 /// What stands before the decimal point, and the rest.
@@ -251,6 +273,7 @@ impl<'t> Grid<'t> {
                 edges: Vec::new(),
                 halves: Vec::new(),
                 marks: Vec::new(),
+                indents: Vec::new(),
             };
             let natural = grid.natural(table, measure, lines);
             if grid.place(&natural, left, measure) || size < 5.4 {
@@ -278,6 +301,13 @@ impl<'t> Grid<'t> {
                 .map(|cell| mark_width(cell, self.size))
                 .fold(0.0, f64::max);
             self.marks.push(mark);
+            let some = cells().any(|cell| cell.mark.is_none());
+            let indent = if some && column.align == Align::Left {
+                mark
+            } else {
+                0.0
+            };
+            self.indents.push(indent);
             let (mut before, mut after) = (0.0f64, 0.0f64);
             for cell in cells() {
                 let style = cell.style(self.size);
@@ -353,10 +383,12 @@ impl<'t> Grid<'t> {
         self.columns
             .iter()
             .zip(&self.edges)
-            .map(|(c, (_, w))| {
-                let mut lines = wrap(&c.head, style, w + 0.01);
+            .zip(&self.indents)
+            .map(|((c, (_, w)), indent)| {
+                let room = w - indent + 0.01;
+                let mut lines = wrap(&c.head, style, room);
                 if !c.unit.is_empty() {
-                    lines.extend(wrap(&c.unit, style, w + 0.01));
+                    lines.extend(wrap(&c.unit, style, room));
                 }
                 lines
             })
@@ -382,13 +414,14 @@ impl<'t> Grid<'t> {
         } else {
             flow.enter(Role::Row)
         };
-        for ((column, (x, w)), lines) in self.columns.iter().zip(&self.edges).zip(&heads) {
+        let places = self.columns.iter().zip(&self.edges).zip(&self.indents);
+        for (((column, (x, w)), indent), lines) in places.zip(&heads) {
             let outside = (!again).then(|| flow.enter(Role::Head(Scope::Column)));
             for (n, line) in lines.iter().enumerate() {
                 let row = most - lines.len() + n;
                 let y = area.top + (row as f64 + 0.78) * self.leading;
                 let start = match column.align {
-                    Align::Left => *x,
+                    Align::Left => x + indent,
                     Align::Right | Align::Decimal => x + w - width(line, style),
                 };
                 flow.page().text((start, y), style, line);
@@ -424,13 +457,18 @@ impl<'t> Grid<'t> {
         (most as f64 * self.leading + 2.4).max(least)
     }
 
+    /// Goes on on a new page.
+    fn turn(&self, flow: &mut Flow) {
+        flow.new_page();
+        self.head(flow, true);
+    }
+
     fn row(&self, flow: &mut Flow, table: &Table, row: &Row) {
         let mut lines = self.lines(row);
         let whole = flow.sheet.bottom - flow.sheet.top - self.head_height();
         let height = self.row_height(table.row_height, &lines);
         if flow.room() < height.min(whole) {
-            flow.new_page();
-            self.head(flow, true);
+            self.turn(flow);
         }
         let outside = flow.enter(Role::Row);
         let mut elements: Vec<usize> = Vec::new();
@@ -480,8 +518,7 @@ impl<'t> Grid<'t> {
             }
             lines = rest;
             first = false;
-            flow.new_page();
-            self.head(flow, true);
+            self.turn(flow);
         }
         flow.leave(outside);
     }

@@ -118,7 +118,7 @@ pub(super) fn wrap(text: &str, style: Style, measure: f64) -> Vec<String> {
     let mut line = String::new();
     let mut used = 0.0;
     let space = advance(' ', style);
-    for word in text.split(' ') {
+    for word in blocks(text, style, measure) {
         let wide = width(word, style);
         let gap = if line.is_empty() { 0.0 } else { space };
         if used + gap + wide <= measure {
@@ -144,6 +144,51 @@ pub(super) fn wrap(text: &str, style: Style, measure: f64) -> Vec<String> {
     }
     lines.push(line);
     lines
+}
+
+/// The words of a text; a number with its unit or its uncertainty is one where that fits a line.
+fn blocks(text: &str, style: Style, measure: f64) -> Vec<&str> {
+    let mut out: Vec<&str> = Vec::new();
+    let mut start = 0;
+    let mut before = "";
+    for word in text.split(' ') {
+        let end = start + word.len();
+        let joined = out
+            .last()
+            .filter(|_| stays(before, word))
+            .and_then(|block| {
+                let begin = start.checked_sub(1 + block.len())?;
+                let both = text.get(begin..end)?;
+                (width(both, style) <= measure).then_some(both)
+            });
+        match (joined, out.last_mut()) {
+            (Some(both), Some(block)) => *block = both,
+            _ => out.push(word),
+        }
+        before = word;
+        start = end + 1;
+    }
+    out
+}
+
+/// Whether a word stays on the line of the one before it.
+fn stays(before: &str, word: &str) -> bool {
+    const SIGNS: [&str; 6] = ["±", "≤", "≥", "<", ">", "="];
+    let number = before.ends_with(|c: char| c.is_ascii_digit());
+    let bare = word.trim_end_matches(['.', ',', ';', ':', ')']);
+    let date = before.len() == 10 && before.bytes().filter(|b| *b == b'-').count() == 2;
+    (number && is_unit(bare))
+        || (number && date && word.contains(':'))
+        || (word == "±" && (number || is_unit(before)))
+        || (SIGNS.contains(&before) && word.starts_with(|c: char| c.is_ascii_digit()))
+}
+
+/// A unit as it follows a number, with or without a prefix.
+fn is_unit(word: &str) -> bool {
+    const UNITS: [&str; 11] = ["F", "Ω", "H", "Hz", "V", "A", "W", "s", "h", "°C", "%"];
+    let bare = word.trim_start_matches(['p', 'n', 'µ', 'm', 'k', 'M', 'G']);
+    UNITS.contains(&word)
+        || (UNITS.contains(&bare) && word.chars().count() == bare.chars().count() + 1)
 }
 
 /// Breaks a word wider than a line, after a hyphen, slash or the like where one is near the end.
@@ -219,6 +264,20 @@ mod tests {
         let short = elide(&text, STYLE, 120.0);
         assert!(width(&short, STYLE) <= 120.0);
         assert!(short.starts_with('A') && short.ends_with('B') && short.contains('…'));
+    }
+
+    #[test]
+    fn a_number_keeps_its_unit_and_its_uncertainty() {
+        let text = "it leaves 0.31 % of |Z|; L 438.7 pH ± 2.0 pH, at 100 kHz ≤ 450 mΩ";
+        for measure in 40..240 {
+            for line in wrap(text, STYLE, f64::from(measure)) {
+                for cut in ["0.31", "438.7", "100"] {
+                    assert!(!line.ends_with(cut), "{line:?}");
+                }
+                assert!(!line.ends_with('≤'), "{line:?}");
+            }
+        }
+        assert!(!stays("of 3", "parts") && !stays("in", "F") && !stays("2", "of"));
     }
 
     proptest! {

@@ -28,6 +28,8 @@ pub(super) struct Face {
     pub font: ParsedFont,
     /// Thousandths of the em by Unicode code point below `DIRECT`; 0 where there is no glyph.
     direct: Vec<u16>,
+    /// Numbers of the glyphs, likewise.
+    glyphs: Vec<u16>,
 }
 
 /// Code points of the subset lie below this.
@@ -45,13 +47,25 @@ impl Face {
                 .unwrap_or(0)
         };
         let direct = (0..DIRECT).map(width).collect();
-        Some(Face { font, direct })
+        let glyph = |code: u32| font.lookup_glyph_index(code).unwrap_or(0);
+        let glyphs = (0..DIRECT).map(glyph).collect();
+        Some(Face {
+            font,
+            direct,
+            glyphs,
+        })
     }
 
     /// Advance width in thousandths of the em; `None` where the typeface lacks the character.
     pub fn advance(&self, c: char) -> Option<u16> {
         let index = usize::try_from(u32::from(c)).ok()?;
         self.direct.get(index).copied().filter(|w| *w > 0)
+    }
+
+    /// Number of the glyph in the font program; 0, the box of no character, where there is none.
+    pub fn glyph(&self, c: char) -> u16 {
+        let index = usize::try_from(u32::from(c)).ok();
+        index.map_or(0, |i| self.glyphs.get(i).copied().unwrap_or(0))
     }
 }
 

@@ -3,13 +3,12 @@
 
 use super::attach::{Attachment, attach, name, text_string};
 use super::write::Written;
-use super::{tags, xmp};
+use super::{file, tags, xmp};
 use crate::certificate::canvas::Item;
 use crate::certificate::flow::{Bookmark, Flow, Place};
 use crate::certificate::paper::Sheet;
 use chrono::{DateTime, FixedOffset};
-use lopdf::{Dictionary, Document, Object, ObjectId, Stream, StringFormat};
-use sha2::{Digest, Sha256};
+use lopdf::{Dictionary, Document, Object, ObjectId, Stream};
 
 /// Made by `srgb.py` beside this file.
 static SRGB: &[u8] = include_bytes!("srgb.icc");
@@ -128,41 +127,21 @@ pub(in crate::certificate) fn finish(
 
 /// Writes the file, with an id made from its content.
 fn bytes(mut document: Document, conformance: Conformance) -> Result<Vec<u8>, lopdf::Error> {
-    document.compress();
-    let id = |bytes: Vec<u8>| Object::String(bytes, StringFormat::Hexadecimal);
-    let blank = id(vec![0; ID]);
-    document.trailer.set("ID", vec![blank.clone(), blank]);
-    let mut out = Vec::new();
+    file::compress(&mut document);
     match conformance {
-        // The structure has thousands of small objects, which are written together and compressed.
-        Conformance::A3b => {
-            let options = lopdf::SaveOptions::builder()
-                .use_object_streams(true)
-                .use_xref_streams(true)
-                .max_objects_per_stream(200)
-                .compression_level(6)
-                .build();
-            document.save_with_options(&mut out, options)?;
-        }
+        Conformance::A3b => Ok(file::bytes(&document)),
         // Part 1 knows no object streams.
-        Conformance::A1b => document.save_to(&mut out)?,
-    }
-    let digest = Sha256::digest(&out);
-    let digits: String = digest.iter().take(ID).map(|b| format!("{b:02X}")).collect();
-    let blank = format!("<{}>", "0".repeat(2 * ID)).into_bytes();
-    // Both ids stand in the trailer, at the end of the file.
-    for _ in 0..2 {
-        let found = out.windows(blank.len()).rposition(|w| w == blank);
-        let place = found.and_then(|at| out.get_mut(at + 1..at + 1 + 2 * ID));
-        if let Some(place) = place {
-            place.copy_from_slice(digits.as_bytes());
+        Conformance::A1b => {
+            let mut without = Vec::new();
+            document.trailer.remove(b"ID");
+            document.save_to(&mut without)?;
+            document.trailer.set("ID", file::identifiers(&without));
+            let mut out = Vec::new();
+            document.save_to(&mut out)?;
+            Ok(out)
         }
     }
-    Ok(out)
 }
-
-/// Length of a file identifier in bytes.
-const ID: usize = 16;
 
 /// `D:20261005091403+02'00'` (ISO 32000-1, 7.9.4).
 fn pdf_date(date: DateTime<FixedOffset>) -> String {

@@ -1,7 +1,10 @@
-//! Placed items to the bytes of a PDF: page content by printpdf, then what an archive document
-//! needs beside it by lopdf.
+//! Placed items to the bytes of a PDF: fonts and the tree of pages by printpdf, what an archive
+//! document needs beside them as objects of lopdf. What there is much of is written here: the
+//! content of the pages (`content`) and the file (`file`).
 
 mod attach;
+mod content;
+mod file;
 mod finish;
 mod tags;
 mod write;

@@ -7,6 +7,9 @@ use crate::certificate::canvas::{Area, Point};
 const TOLERANCE: f64 = 0.12;
 /// Side of a cell of the coverage map: below the width of the thinnest pen.
 const CELL: f64 = 0.45;
+/// Parts of a cell that steps along a segment are counted in, as a power of two.
+const FINE_BITS: u32 = 20;
+const FINE: f64 = (1u32 << FINE_BITS) as f64;
 
 /// Thins a polyline (Douglas and Peucker, 1973) so that no left-out point is further than the
 /// tolerance from it.
@@ -19,9 +22,10 @@ pub(in crate::certificate) fn simplify(points: &[Point]) -> Vec<Point> {
     keep[0] = true;
     keep[points.len() - 1] = true;
     while let Some((first, last)) = stack.pop() {
-        let (mut farthest, mut index) = (TOLERANCE, None);
-        for i in first + 1..last {
-            let d = distance(points[i], points[first], points[last]);
+        let segment = Segment::new(points[first], points[last]);
+        let (mut farthest, mut index) = (TOLERANCE * TOLERANCE, None);
+        for (i, point) in points.iter().enumerate().take(last).skip(first + 1) {
+            let d = segment.squared_distance(*point);
             if d > farthest {
                 farthest = d;
                 index = Some(i);
@@ -40,16 +44,31 @@ pub(in crate::certificate) fn simplify(points: &[Point]) -> Vec<Point> {
         .collect()
 }
 
-/// Distance of a point from a segment.
-fn distance(p: Point, a: Point, b: Point) -> f64 {
-    let (dx, dy) = (b.0 - a.0, b.1 - a.1);
-    let length = dx * dx + dy * dy;
-    let t = if length > 0.0 {
-        (((p.0 - a.0) * dx + (p.1 - a.1) * dy) / length).clamp(0.0, 1.0)
-    } else {
-        0.0
-    };
-    (p.0 - a.0 - t * dx).hypot(p.1 - a.1 - t * dy)
+/// What distances from a segment need.
+struct Segment {
+    start: Point,
+    along: Point,
+    /// One over the square of its length; 0 where that is 0.
+    inverse: f64,
+}
+
+impl Segment {
+    fn new(start: Point, end: Point) -> Self {
+        let along = (end.0 - start.0, end.1 - start.1);
+        let square = along.0 * along.0 + along.1 * along.1;
+        Segment {
+            start,
+            along,
+            inverse: if square > 0.0 { 1.0 / square } else { 0.0 },
+        }
+    }
+
+    fn squared_distance(&self, p: Point) -> f64 {
+        let (x, y) = (p.0 - self.start.0, p.1 - self.start.1);
+        let t = ((x * self.along.0 + y * self.along.1) * self.inverse).clamp(0.0, 1.0);
+        let (x, y) = (x - t * self.along.0, y - t * self.along.1);
+        x * x + y * y
+    }
 }
 
 /// At most four points a quarter point of width: first, lowest, highest, last. Sweeps of many more
@@ -153,18 +172,22 @@ impl Coverage {
     /// Covers a segment; true where part of it lay on bare paper.
     fn cover(&mut self, a: Point, b: Point) -> bool {
         let length = (b.0 - a.0).abs().max((b.1 - a.1).abs());
-        let steps = (length / (CELL * 0.5)).ceil().clamp(1.0, 8000.0) as u32;
+        let steps = (length / (CELL * 0.5)).ceil().clamp(1.0, 8000.0) as i64;
+        // Cells in fixed point: a step is an addition.
+        let fixed = |from: f64, v: f64| ((v - from) / CELL * FINE) as i64;
+        let (mut x, mut y) = (fixed(self.area.left, a.0), fixed(self.area.top, a.1));
+        let (right, down) = (fixed(self.area.left, b.0), fixed(self.area.top, b.1));
+        let (across, along) = ((right - x) / steps, (down - y) / steps);
         let mut fresh = false;
-        for k in 0..=steps {
-            let t = f64::from(k) / f64::from(steps);
-            let x = (a.0 + t * (b.0 - a.0) - self.area.left) / CELL;
-            let y = (a.1 + t * (b.1 - a.1) - self.area.top) / CELL;
-            let column = (x.max(0.0) as usize).min(self.columns - 1);
-            let row = (y.max(0.0) as usize).min(self.rows - 1);
+        for _ in 0..=steps {
+            let column = ((x >> FINE_BITS).max(0) as usize).min(self.columns - 1);
+            let row = ((y >> FINE_BITS).max(0) as usize).min(self.rows - 1);
             if let Some(cell) = self.covered.get_mut(row * self.columns + column) {
                 fresh |= !*cell;
                 *cell = true;
             }
+            x += across;
+            y += along;
         }
         fresh
     }
@@ -240,8 +263,8 @@ mod tests {
             let line: Vec<Point> = ys.iter().enumerate().map(|(i, y)| (i as f64 * 0.5, *y)).collect();
             let thin = simplify(&line);
             for p in &line {
-                let d = thin.windows(2).map(|s| distance(*p, s[0], s[1])).fold(f64::INFINITY, f64::min);
-                prop_assert!(d <= TOLERANCE + 1e-9);
+                let d = thin.windows(2).map(|s| Segment::new(s[0], s[1]).squared_distance(*p)).fold(f64::INFINITY, f64::min);
+                prop_assert!(d.sqrt() <= TOLERANCE + 1e-9);
             }
         }
 

@@ -133,6 +133,7 @@ fn why(flow: &mut Flow, record: &LotRecord, room: f64) {
     flow.leave(before);
     let mut left = FURTHER;
     let mut shown = 0;
+    flow.gap(if others.is_empty() { 0.0 } else { 3.0 });
     for reason in others {
         let lines = wrap(&sentence(&reason.text), BODY, room);
         if lines.len() > left {
@@ -189,6 +190,10 @@ pub(in crate::certificate) fn identity(record: &LotRecord) -> Vec<(&'static str,
         None => record.station.station.clone(),
     };
     out.push(("At station", place));
+    let limits = &record.limits;
+    let revision = format!("{} revision {}", limits.part, limits.revision);
+    out.push(("Limit file", revision));
+    out.push(("Issued", instant(&record.issued)));
     out
 }
 

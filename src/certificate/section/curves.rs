@@ -11,13 +11,16 @@ use crate::certificate::plot::limit::{Side, limit};
 use crate::certificate::plot::trace::{Coverage, clip, columns, simplify};
 use crate::certificate::plot::view::extent;
 use crate::certificate::structure::Role;
-use crate::certificate::text::Style;
+use crate::certificate::text::{Style, width};
 use crate::quantity::{engineering, with_uncertainty};
 use crate::record::{BoundSection, LotRecord, PartVerdict};
+use rayon::prelude::*;
 
 /// Most curves that carry their part's number.
 const NAMED: usize = 14;
 const GUTTER: f64 = 46.0;
+/// Least height of a plot that shares its page with other things.
+const LEAST: f64 = 170.0;
 
 /// What a plot shows of an impedance.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -45,19 +48,28 @@ impl Quantity {
 }
 
 pub(in crate::certificate) fn curves(flow: &mut Flow, record: &LotRecord, curves: &[Curve]) {
-    flow.new_page();
-    flow.heading("Curves", 200.0);
     if curves.is_empty() {
+        flow.heading("Curves", 40.0);
         flow.paragraph("No curves: no part of this lot has a sweep that could be read.");
         return;
     }
-    key(flow);
-    // Two plots share a page of either paper.
-    let height = (flow.sheet.bottom - flow.sheet.top - 26.0 - 14.0 - 176.0) / 2.0;
+    // Two plots share a page of either paper. On what other things left of one they stand together
+    // if they fit, else the upper one alone.
+    let both = |room: f64| (room - 26.0 - 14.0 - 176.0) / 2.0;
+    let whole = both(flow.sheet.bottom - flow.sheet.top);
+    let (rest, alone) = (both(flow.room() - 24.0), flow.room() - 124.0);
+    let height = match (rest, alone) {
+        (rest, _) if rest > LEAST => rest.min(whole),
+        (_, alone) if alone > LEAST => alone.min(whole),
+        _ => whole,
+    };
+    flow.heading("Curves", height + 70.0);
+    key(flow, record, curves);
     for quantity in [Quantity::Magnitude, Quantity::Resistance] {
         plot(flow, record, curves, quantity, height);
     }
     if let Some(words) = circuit_words(record) {
+        flow.gap(3.0);
         flow.paragraph_of(&words, SMALL, SMALL_LEADING);
     }
 }
@@ -139,16 +151,29 @@ struct Frame {
     area: Area,
     x: Axis,
     y: Axis,
+    /// Place of the logarithm 0 and length of a decade, along each axis.
+    decades: [(f64, f64); 2],
 }
 
 impl Frame {
+    fn new(area: Area, x: Axis, y: Axis) -> Frame {
+        let decades = [&x, &y].map(|axis| {
+            let (low, high) = (axis.low.log10(), axis.high.log10());
+            let decade = (axis.to - axis.from) / (high - low);
+            (axis.from - low * decade, decade)
+        });
+        Frame {
+            area,
+            x,
+            y,
+            decades,
+        }
+    }
+
     /// Logarithms to the page.
     fn place(&self, (f, v): Point) -> Point {
-        let along = |axis: &Axis, log: f64| {
-            let (low, high) = (axis.low.log10(), axis.high.log10());
-            axis.from + (log - low) / (high - low) * (axis.to - axis.from)
-        };
-        (along(&self.x, f), along(&self.y, v))
+        let [(x, across), (y, up)] = self.decades;
+        (x + f * across, y + v * up)
     }
 }
 
@@ -162,7 +187,7 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
         top: outer.top + 4.0,
         bottom: outer.bottom - 16.0,
     };
-    let logs: Vec<Vec<Point>> = curves.iter().map(|c| logarithms(c, quantity)).collect();
+    let logs: Vec<Vec<Point>> = curves.par_iter().map(|c| logarithms(c, quantity)).collect();
     let bounds: Vec<&BoundSection> = record
         .limits
         .characteristics
@@ -208,18 +233,7 @@ fn plot(flow: &mut Flow, record: &LotRecord, curves: &[Curve], quantity: Quantit
 
 /// What the plot shows, for whoever cannot see it.
 fn in_words(quantity: Quantity, curves: &[Curve]) -> String {
-    let kinds = [
-        PartVerdict::Conforming,
-        PartVerdict::Nonconforming,
-        PartVerdict::Undecided,
-        PartVerdict::Unmeasured,
-    ];
-    let each: Vec<String> = kinds
-        .into_iter()
-        .map(|kind| (kind, curves.iter().filter(|c| c.verdict == kind).count()))
-        .filter(|(_, count)| *count > 0)
-        .map(|(kind, count)| format!("{count} {}", part_word(kind)))
-        .collect();
+    let each: Vec<String> = counts(curves).into_iter().map(|(_, words)| words).collect();
     format!(
         "{} against frequency, one curve a part: {}",
         quantity.title(),
@@ -283,11 +297,9 @@ fn frame(
         from,
         to,
     };
-    Some(Frame {
-        area,
-        x: axis(left, right, area.left, area.right),
-        y: axis(low, high + pad, area.bottom, area.top),
-    })
+    let x = axis(left, right, area.left, area.right);
+    let y = axis(low, high + pad, area.bottom, area.top);
+    Some(Frame::new(area, x, y))
 }
 
 /// Quiet curves first, then the ones that are not conforming on top, with their names. Answers the
@@ -314,30 +326,31 @@ fn traces<'c>(
             Pen::solid(0.9, part_ink(PartVerdict::Nonconforming)),
         ),
     ];
+    let thinned: Vec<Vec<Vec<Point>>> = logs
+        .par_iter()
+        .map(|log| {
+            let placed: Vec<Point> = log.iter().map(|p| frame.place(*p)).collect();
+            let lines = clip(&placed, frame.area);
+            lines.iter().map(|l| simplify(&columns(l))).collect()
+        })
+        .collect();
     let mut names = Vec::new();
     for (verdict, pen) in order {
         let mut coverage = Coverage::new(frame.area);
-        for (curve, log) in curves
-            .iter()
-            .zip(logs)
-            .filter(|(c, _)| c.verdict == verdict)
-        {
-            let placed: Vec<Point> = log.iter().map(|p| frame.place(*p)).collect();
-            let mut end = None;
-            for line in clip(&placed, frame.area) {
-                end = line.last().copied();
-                let thin = simplify(&columns(&line));
+        let of_kind = curves.iter().zip(&thinned);
+        for (curve, lines) in of_kind.filter(|(c, _)| c.verdict == verdict) {
+            for line in lines {
                 // A dash pattern starts anew with every stretch: patterned curves stay whole.
                 let parts = if pen.dash == Dash::Solid {
-                    coverage.visible(&thin)
+                    coverage.visible(line)
                 } else {
-                    vec![thin]
+                    vec![line.clone()]
                 };
                 page.lines(parts, pen);
             }
-            match end {
+            match lines.iter().rev().find_map(|line| line.last()) {
                 None => unseen.push(curve.part.as_str()),
-                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, end)),
+                Some(end) if verdict != PartVerdict::Conforming => names.push((curve, *end)),
                 Some(_) => {}
             }
         }
@@ -352,13 +365,9 @@ fn label(page: &mut Canvas, frame: &Frame, names: Vec<(&Curve, Point)>) {
     // The gravest last in drawing order are named first.
     let mut chosen: Vec<(&Curve, Point)> = names.into_iter().rev().take(NAMED).collect();
     chosen.sort_by(|a, b| a.1.1.total_cmp(&b.1.1));
-    let step = 9.0;
-    let count = chosen.len() as f64;
-    let mut free = frame.area.top;
-    for (index, (curve, end)) in chosen.iter().enumerate() {
-        let below = (count - index as f64) * step;
-        let y = end.1.max(free).min(frame.area.bottom - below + step);
-        free = y + step;
+    let ends: Vec<f64> = chosen.iter().map(|(_, end)| end.1).collect();
+    let places = apart(&ends, 9.0, (frame.area.top, frame.area.bottom));
+    for ((curve, end), y) in chosen.iter().zip(places) {
         let style = Style::regular(7.6).ink(part_ink(curve.verdict));
         let x = frame.area.right + 12.0;
         page.line(*end, (x - 2.0, y), Pen::solid(0.35, QUIET));
@@ -385,6 +394,34 @@ fn label(page: &mut Canvas, frame: &Frame, names: Vec<(&Curve, Point)>) {
             &text,
         );
     }
+}
+
+/// Places as near as can be (least squares) to the ascending ones wanted, at least a step from one
+/// another, within the ends where they all fit between.
+fn apart(wanted: &[f64], step: f64, (low, high): (f64, f64)) -> Vec<f64> {
+    // Less the steps before each, they only must not descend: neighbours that do are pooled
+    // (Ayer and others 1955).
+    let mut pools: Vec<(f64, usize)> = Vec::new();
+    for (index, place) in wanted.iter().enumerate() {
+        let mut pool = (place - index as f64 * step, 1);
+        while let Some((sum, count)) = pools.pop() {
+            if sum / count as f64 <= pool.0 / pool.1 as f64 {
+                pools.push((sum, count));
+                break;
+            }
+            pool = (pool.0 + sum, pool.1 + count);
+        }
+        pools.push(pool);
+    }
+    let level = pools
+        .iter()
+        .flat_map(|(sum, count)| std::iter::repeat_n(sum / *count as f64, *count));
+    let last = wanted.len().saturating_sub(1) as f64 * step;
+    let most = (high - last).max(low);
+    level
+        .enumerate()
+        .map(|(index, v)| v.clamp(low, most) + index as f64 * step)
+        .collect()
 }
 
 /// Between which frequencies the readings of a characteristic were found, where they have one.
@@ -459,34 +496,81 @@ fn resonance(page: &mut Canvas, frame: &Frame, bound: &BoundSection) -> Vec<Stri
     words
 }
 
-/// What the strokes mean.
-fn key(flow: &mut Flow) {
+/// What the strokes mean that there are.
+fn key(flow: &mut Flow, record: &LotRecord, curves: &[Curve]) {
     let area = flow.take(14.0);
     let before = flow.enter(Role::Paragraph);
-    let mut x = area.left;
     let y = area.top + 7.0;
-    let entries = [
-        (PartVerdict::Conforming, Pen::solid(1.0, CONFORMING)),
-        (
-            PartVerdict::Nonconforming,
-            Pen::solid(1.0, part_ink(PartVerdict::Nonconforming)),
-        ),
-        (
-            PartVerdict::Undecided,
-            Pen::dashed(1.0, part_ink(PartVerdict::Undecided)),
-        ),
-        (
-            PartVerdict::Unmeasured,
-            Pen::dotted(1.0, part_ink(PartVerdict::Unmeasured)),
-        ),
-    ];
-    for (verdict, pen) in entries {
+    let stroke = |verdict| match verdict {
+        PartVerdict::Conforming => Pen::solid(1.0, CONFORMING),
+        PartVerdict::Nonconforming => Pen::solid(1.0, part_ink(verdict)),
+        PartVerdict::Undecided => Pen::dashed(1.0, part_ink(verdict)),
+        PartVerdict::Unmeasured => Pen::dotted(1.0, part_ink(verdict)),
+    };
+    let mut entries: Vec<(Pen, String)> = counts(curves)
+        .into_iter()
+        .map(|(kind, words)| (stroke(kind), words))
+        .collect();
+    if let Some(circuit) = record.circuit.as_ref().filter(|c| c.described) {
+        let words = format!("equivalent circuit of part {}", circuit.part);
+        entries.push((Pen::dashed(0.7, TEXT), words));
+    }
+    let mut x = area.left;
+    for (pen, words) in entries {
+        let wide = 24.0 + width(&words, SMALL);
+        // A very long part number stands below the plots.
+        if x + wide > area.right {
+            break;
+        }
         flow.page().line((x, y), (x + 20.0, y), pen);
-        x += 24.0;
-        x += flow
-            .page()
-            .text((x, y + 3.0), SMALL.ink(TEXT), part_word(verdict))
-            + 16.0;
+        flow.page()
+            .text((x + 24.0, y + 3.0), SMALL.ink(TEXT), &words);
+        x += wide + 16.0;
     }
     flow.leave(before);
+}
+
+/// How many curves of each kind there are, in words; kinds without any are left out.
+fn counts(curves: &[Curve]) -> Vec<(PartVerdict, String)> {
+    let kinds = [
+        PartVerdict::Conforming,
+        PartVerdict::Nonconforming,
+        PartVerdict::Undecided,
+        PartVerdict::Unmeasured,
+    ];
+    kinds
+        .into_iter()
+        .map(|kind| (kind, curves.iter().filter(|c| c.verdict == kind).count()))
+        .filter(|(_, count)| *count > 0)
+        .map(|(kind, count)| (kind, format!("{count} {}", part_word(kind))))
+        .collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+
+    #[test]
+    fn labels_of_one_place_stand_around_it() {
+        let places = apart(&[50.0, 50.0, 50.0], 9.0, (0.0, 100.0));
+        assert_eq!(places, [41.0, 50.0, 59.0]);
+        assert_eq!(apart(&[99.0, 99.5], 9.0, (0.0, 100.0)), [91.0, 100.0]);
+        assert_eq!(apart(&[10.0, 40.0], 9.0, (0.0, 100.0)), [10.0, 40.0]);
+    }
+
+    proptest! {
+        #[test]
+        fn labels_keep_apart_and_within(mut wanted in prop::collection::vec(0.0f64..200.0, 0..14)) {
+            wanted.sort_by(f64::total_cmp);
+            let places = apart(&wanted, 9.0, (0.0, 200.0));
+            prop_assert_eq!(places.len(), wanted.len());
+            for pair in places.windows(2) {
+                prop_assert!(pair[1] - pair[0] > 9.0 - 1e-9);
+            }
+            for place in places {
+                prop_assert!((-1e-9..=200.0 + 1e-9).contains(&place));
+            }
+        }
+    }
 }

@@ -20,8 +20,6 @@ pub(in crate::certificate) fn integrity(
     digest: &str,
     sources: &Sources,
 ) -> bool {
-    // With the signatures on one page, where that is possible.
-    flow.heading("Integrity", 600.0);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
@@ -30,6 +28,9 @@ pub(in crate::certificate) fn integrity(
     for (label, value) in facts(record, digest).into_iter().chain(in_ledger) {
         table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
     }
+    // With the signatures on one page, where that is possible.
+    let below = 12.0 + SIDE + super::signatures::height(flow, record, sources.signature);
+    flow.heading("Integrity", table.height(flow) + below);
     table.set(flow);
     flow.gap(12.0);
     let coded = code(&payload(record, digest));

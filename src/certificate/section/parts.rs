@@ -6,8 +6,8 @@ use crate::certificate::flow::Flow;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::record::{AttemptRecord, LotRecord, PartRecord, PartVerdict, ReadingRecord};
 
-/// Most characteristics side by side; more go into a further table.
-const SIDE_BY_SIDE: usize = 5;
+/// Most characteristics side by side; more go into further tables, of about as many each.
+const SIDE_BY_SIDE: usize = 6;
 const SIZE: f64 = 8.4;
 
 pub(in crate::certificate) fn parts(
@@ -21,24 +21,41 @@ pub(in crate::certificate) fn parts(
          readings are those of the try that counts; earlier tries stand above it. Drive: voltage across the part, V rms, \
          where the sweep carries it.",
     );
-    let groups = characteristics.chunks(SIDE_BY_SIDE);
-    let count = groups.len();
-    for (index, group) in groups.enumerate() {
+    let count = characteristics.len().div_ceil(SIDE_BY_SIDE);
+    let each = characteristics.len().div_ceil(count.max(1)).max(1);
+    for (index, group) in characteristics.chunks(each).enumerate() {
         if count > 1 {
-            let title = format!("Characteristics, group {} of {count}", index + 1);
+            let first = index * each + 1;
+            let (last, all) = (first + group.len() - 1, characteristics.len());
+            let title = if first == last {
+                format!("Characteristic {first} of {all}")
+            } else {
+                format!("Characteristics {first} to {last} of {all}")
+            };
             flow.subheading(&title, 60.0);
         }
         table(record, group).set(flow);
     }
 }
 
+/// Columns that a record has only where they say something.
+#[derive(Clone, Copy)]
+struct Shown {
+    /// Some part was measured more than once.
+    tries: bool,
+    /// Some sweep carries the voltage across its part.
+    drive: bool,
+}
+
 fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
-    let mut columns = vec![
-        Column::new("Part", Align::Left, Span::Natural),
-        Column::new("Try", Align::Right, Span::Natural),
-        Column::new("Verdict", Align::Left, Span::Natural),
-    ];
+    let mut columns = vec![Column::new("Part", Align::Left, Span::Natural)];
+    let tries = record.parts.iter().any(|p| p.attempts.len() > 1);
+    if tries {
+        columns.push(Column::new("Try", Align::Right, Span::Natural));
+    }
+    columns.push(Column::new("Verdict", Align::Left, Span::Natural));
     let drive = record.parts.iter().any(|p| p.drive.is_some());
+    let shown = Shown { tries, drive };
     if drive {
         columns.push(Column::new("Drive", Align::Decimal, Span::Natural).unit("V"));
     }
@@ -53,10 +70,10 @@ fn table<'a>(record: &'a LotRecord, group: &'a [Characteristic]) -> Table<'a> {
     for part in &record.parts {
         let counts = counting(part);
         if part.attempts.is_empty() {
-            table.row_at(part_anchor(&part.part), row(part, None, true, drive, group));
+            table.row_at(part_anchor(&part.part), row(part, None, true, shown, group));
         }
         for (index, attempt) in part.attempts.iter().enumerate() {
-            let cells = row(part, Some(attempt), Some(index) == counts, drive, group);
+            let cells = row(part, Some(attempt), Some(index) == counts, shown, group);
             if index == 0 {
                 table.row_at(part_anchor(&part.part), cells);
             } else {
@@ -79,7 +96,7 @@ fn row<'a>(
     part: &PartRecord,
     attempt: Option<&AttemptRecord>,
     counts: bool,
-    drive: bool,
+    shown: Shown,
     group: &[Characteristic],
 ) -> Vec<Cell<'a>> {
     let verdict = attempt
@@ -91,12 +108,13 @@ fn row<'a>(
     if verdict == PartVerdict::Nonconforming {
         word = word.bold();
     }
-    let mut cells = vec![
-        Cell::text(part.part.clone()),
-        Cell::text(attempt.map_or_else(|| ABSENT.to_owned(), |a| a.attempt.to_string())),
-        word,
-    ];
-    if drive {
+    let mut cells = vec![Cell::text(part.part.clone())];
+    if shown.tries {
+        let number = attempt.map_or_else(|| ABSENT.to_owned(), |a| a.attempt.to_string());
+        cells.push(Cell::text(number));
+    }
+    cells.push(word);
+    if shown.drive {
         let level = part.drive.filter(|_| counts);
         cells.push(Cell::text(
             level.map_or_else(String::new, |v| significant(v, 3)),

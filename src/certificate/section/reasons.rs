@@ -91,10 +91,10 @@ fn chain(flow: &mut Flow, record: &LotRecord) {
     }
     flow.subheading("How the verdict follows", 60.0);
     let mut table = Table::new(vec![
-        Column::new("About", Align::Left, Span::Share(0.9)),
-        Column::new("Rule", Align::Left, Span::Share(1.5)),
-        Column::new("Numbers", Align::Left, Span::Share(1.5)),
-        Column::new("Result", Align::Left, Span::Share(1.0)),
+        Column::new("About", Align::Left, Span::Share(0.75)),
+        Column::new("Rule", Align::Left, Span::Share(1.6)),
+        Column::new("Numbers", Align::Left, Span::Share(1.6)),
+        Column::new("Result", Align::Left, Span::Share(0.95)),
         Column::new("Source", Align::Left, Span::Share(1.1)),
     ]);
     table.size = 8.6;

@@ -3,11 +3,11 @@
 use crate::certificate::Signatory;
 use crate::certificate::canvas::Pen;
 use crate::certificate::figures::instant;
-use crate::certificate::flow::{Flow, SMALL};
+use crate::certificate::flow::{Flow, SMALL, SMALL_LEADING};
 use crate::certificate::ink::{QUIET, TEXT};
 use crate::certificate::structure::Role;
 use crate::certificate::table::{Align, Cell, Column, Span, Table};
-use crate::certificate::text::Style;
+use crate::certificate::text::{Style, wrap};
 use crate::record::{LotRecord, LotVerdict};
 
 const FIELD: f64 = 62.0;
@@ -39,6 +39,43 @@ pub(in crate::certificate) fn facts(by: &Signatory) -> Vec<(&'static str, String
     ]
 }
 
+/// Places to sign.
+fn fields(record: &LotRecord) -> Vec<&'static str> {
+    let mut fields = vec![
+        "Inspected: measured as stated above",
+        "Reviewed: record complete, evidence in order",
+    ];
+    if record.verdict != LotVerdict::Accept {
+        fields.push("Disposition of the lot (what is to be done with it)");
+    }
+    fields
+}
+
+/// The electronic signature as a table.
+fn signed(by: &Signatory) -> Table<'static> {
+    let mut table = Table::new(vec![
+        Column::new("", Align::Left, Span::Fixed(120.0)),
+        Column::new("", Align::Left, Span::Share(1.0)),
+    ]);
+    for (label, value) in facts(by) {
+        table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
+    }
+    table
+}
+
+/// How high the section is, its heading included.
+pub(in crate::certificate) fn height(
+    flow: &Flow,
+    record: &LotRecord,
+    electronic: Option<&Signatory>,
+) -> f64 {
+    let hand = 50.0 + FIELD * fields(record).len() as f64;
+    electronic.map_or(hand, |by| {
+        let how = wrap(HOW, SMALL, flow.sheet.measure()).len() as f64;
+        hand + 2.0 * 28.0 + signed(by).height(flow) + how * SMALL_LEADING + 5.0
+    })
+}
+
 /// Sets the section. An electronic signature is that of the site's certificate.
 pub(in crate::certificate) fn signatures(
     flow: &mut Flow,
@@ -48,26 +85,12 @@ pub(in crate::certificate) fn signatures(
     flow.heading("Signatures", 150.0);
     if let Some(signatory) = electronic {
         flow.subheading("Electronic signature", 120.0);
-        let mut table = Table::new(vec![
-            Column::new("", Align::Left, Span::Fixed(120.0)),
-            Column::new("", Align::Left, Span::Share(1.0)),
-        ]);
-        for (label, value) in facts(signatory) {
-            table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
-        }
-        table.set(flow);
+        signed(signatory).set(flow);
         flow.y += 3.0;
         flow.small(HOW);
         flow.subheading("By hand", 66.0);
     }
-    let mut fields = vec![
-        "Inspected: measured as stated above",
-        "Reviewed: record complete, evidence in order",
-    ];
-    if record.verdict != LotVerdict::Accept {
-        fields.push("Disposition of the lot (what is to be done with it)");
-    }
-    for field in fields {
+    for field in fields(record) {
         let area = flow.take(FIELD);
         let before = flow.enter(Role::Paragraph);
         let page = flow.page();

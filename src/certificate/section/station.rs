@@ -7,16 +7,18 @@ use crate::certificate::table::{Align, Cell, Column, Span, Table};
 use crate::record::LotRecord;
 
 pub(in crate::certificate) fn station(flow: &mut Flow, record: &LotRecord) {
-    let facts = facts(record);
-    // On one page, where that is possible.
-    flow.heading("Station and calibration", 17.0 * facts.len() as f64);
     let mut table = Table::new(vec![
         Column::new("", Align::Left, Span::Fixed(120.0)),
         Column::new("", Align::Left, Span::Share(1.0)),
     ]);
-    for (label, value) in facts {
+    for (label, value) in facts(record) {
         table.row(vec![Cell::text(label).ink(QUIET), Cell::text(value)]);
     }
+    // On one page, where that is possible.
+    let height = table
+        .height(flow)
+        .min(flow.sheet.bottom - flow.sheet.top - 60.0);
+    flow.heading("Station and calibration", height);
     table.set(flow);
 }
 

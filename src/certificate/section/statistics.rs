@@ -8,10 +8,11 @@ use indexmap::IndexMap;
 
 pub(in crate::certificate) fn statistics(flow: &mut Flow, characteristics: &[Characteristic]) {
     flow.heading("Statistics", 90.0);
+    flow.subheading("Location and spread", 60.0);
     spread(flow, characteristics);
-    flow.gap(12.0);
+    flow.subheading("Capability", 60.0);
     capability(flow, characteristics);
-    flow.gap(12.0);
+    flow.subheading("Form, tolerance interval and risks", 70.0);
     shape(flow, characteristics);
     // Beside the dashes that they explain.
     notes(flow, characteristics);

@@ -1,5 +1,6 @@
 //! The minimum covariance determinant: the h points of which the covariance has the smallest determinant.
 
+use super::concentration::Concentration;
 use super::scatter::Scatter;
 use crate::statistics::Undefined;
 use crate::statistics::random::Random;
@@ -52,27 +53,30 @@ pub fn minimum_covariance_determinant(
     } = standardised(points)?;
     let ln_scales: f64 = units.iter().map(|unit| unit.size.ln()).sum();
     let mut random = Random::seeded(seed);
-    let mut starts: Vec<(f64, Vec<usize>)> = (0..STARTS)
+    let mut concentration = Concentration::of(&scaled, h);
+    let mut starts: Vec<(f64, Scatter)> = (0..STARTS)
         .filter_map(|_| {
-            let scatter = random_scatter(&scaled, &mut random)?;
-            concentrate(&scaled, h, scatter, FIRST_STEPS)
+            let start = random_scatter(&scaled, &mut random)?;
+            let scatter = concentration.follow(start, FIRST_STEPS)?;
+            Some((scatter.ln_determinant(), scatter))
         })
         .collect();
     starts.sort_by(|a, b| a.0.total_cmp(&b.0));
     starts.dedup_by(|a, b| a.1 == b.1);
-    let best = starts
+    let (_, best) = starts
         .into_iter()
         .take(FOLLOWED)
-        .filter_map(|(_, subset)| {
-            let scatter = Scatter::of(&scaled, &subset)?;
-            concentrate(&scaled, h, scatter, STEPS_MAX)
+        .filter_map(|(_, start)| {
+            let scatter = concentration.follow(start, STEPS_MAX)?;
+            Some((scatter.ln_determinant(), scatter))
         })
-        .min_by(|a, b| a.0.total_cmp(&b.0));
-    let (ln_determinant, subset) = best.ok_or(Undefined::Collinear)?;
+        .min_by(|a, b| a.0.total_cmp(&b.0))
+        .ok_or(Undefined::Collinear)?;
+    let subset = concentration.nearest(&best);
     let scatter = Scatter::of(&scaled, &subset).ok_or(Undefined::Collinear)?;
     Ok(MinimumCovariance {
         subset,
-        ln_determinant: ln_determinant + 2.0 * ln_scales,
+        ln_determinant: scatter.ln_determinant() + 2.0 * ln_scales,
         squared_distances: scaled.iter().map(|x| scatter.squared_distance(x)).collect(),
         centre: units
             .iter()
@@ -174,44 +178,4 @@ fn random_scatter(points: &[Vec<f64>], random: &mut Random) -> Option<Scatter> {
         }
     }
     None
-}
-
-/// Concentration steps: the h points nearest by the scatter, their scatter, and again; the ln
-/// determinant and the subset.
-fn concentrate(
-    points: &[Vec<f64>],
-    h: usize,
-    start: Scatter,
-    steps: usize,
-) -> Option<(f64, Vec<usize>)> {
-    let mut scatter = start;
-    let mut held: Option<(f64, Vec<usize>)> = None;
-    for _ in 0..steps {
-        let subset = nearest(points, h, &scatter);
-        scatter = Scatter::of(points, &subset)?;
-        let ln_determinant = scatter.ln_determinant();
-        let settled = held.as_ref().is_some_and(|(_, before)| *before == subset);
-        held = Some((ln_determinant, subset));
-        if settled {
-            break;
-        }
-    }
-    held
-}
-
-/// Indices of the h points of smallest distance, ascending; of equals the first.
-fn nearest(points: &[Vec<f64>], h: usize, scatter: &Scatter) -> Vec<usize> {
-    let mut distances: Vec<(f64, usize)> = points
-        .iter()
-        .enumerate()
-        .map(|(i, x)| (scatter.squared_distance(x), i))
-        .collect();
-    let order = |a: &(f64, usize), b: &(f64, usize)| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1));
-    if h < distances.len() {
-        distances.select_nth_unstable_by(h, order);
-        distances.truncate(h);
-    }
-    let mut subset: Vec<usize> = distances.into_iter().map(|(_, i)| i).collect();
-    subset.sort_unstable();
-    subset
 }

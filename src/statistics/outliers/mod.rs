@@ -5,6 +5,7 @@
 //! cannot move, as do [`part_average_limits`] on median and quartiles. [`joint_outliers`] finds a
 //! point that is inside every single limit and yet unlike the rest.
 
+mod concentration;
 mod esd;
 mod grubbs;
 mod joint;

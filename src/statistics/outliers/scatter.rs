@@ -5,7 +5,7 @@
 const PIVOT_MIN: f64 = 1e-12;
 
 /// Mean of some of the points, and the Cholesky factor of their covariance.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, PartialEq)]
 pub(super) struct Scatter {
     mean: Vec<f64>,
     /// Lower triangle, row after row.
@@ -33,10 +33,21 @@ impl Scatter {
                 *cell += product.map_or(0.0, |(a, b)| a * b) / (count - 1.0);
             }
         }
+        Self::from_moments(mean, &covariance)
+    }
+
+    /// Of a mean and the lower triangle of a covariance, row after row; `None` where it is singular.
+    pub(super) fn from_moments(mean: Vec<f64>, covariance: &[f64]) -> Option<Self> {
         Some(Self {
-            factor: cholesky(&covariance, p)?,
+            factor: cholesky(covariance, mean.len())?,
             mean,
         })
+    }
+
+    /// A row of the Cholesky factor up to its pivot, and the mean of its variable.
+    pub(super) fn row(&self, i: usize) -> Option<(&[f64], f64)> {
+        let row = self.factor.get(cell(i, 0)..=cell(i, i))?;
+        Some((row, *self.mean.get(i)?))
     }
 
     /// ln of the determinant of the covariance.
