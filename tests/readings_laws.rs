@@ -6,7 +6,7 @@ use num_complex::Complex64;
 use proptest::prelude::*;
 use readings_support::*;
 use reelgate::readings::{
-    Characteristic as Ch, Equivalent, Place, Referral, Request, Value, refer,
+    Budget, Characteristic as Ch, Equivalent, Place, Reader, Referral, Request, Value, refer,
 };
 use reelgate::sweep::Sweep;
 
@@ -266,4 +266,43 @@ fn a_loss_that_noise_hides_is_a_bound_and_never_negative() {
         f64::from(held) >= 0.93 * f64::from(bounds),
         "{held} of {bounds} hold"
     );
+}
+
+/// What a thread keeps of the frequencies it has seen must not show: the same readings and circuits
+/// in any order, and by a thread that has seen nothing.
+#[test]
+fn readings_do_not_depend_on_the_sweeps_before() {
+    let mut sweeps = Vec::new();
+    for (part, seed) in parts().into_iter().zip(1..) {
+        for per_decade in [25, 50, 83] {
+            let whole = grid(1e3, 65e6, per_decade);
+            // A list, its lower half, and one that is the same but for one frequency.
+            let half = whole[..whole.len() / 2].to_vec();
+            let mut moved = whole.clone();
+            moved[whole.len() / 2] *= 1.001;
+            for frequency in [whole, half, moved] {
+                let exact = clean(&part.network, &frequency);
+                sweeps.push(noisy(&exact, 2e-3, 1e-3, &mut Random::new(seed)));
+            }
+        }
+    }
+    let budget = Budget::of(&station(1e-3, 1e-3));
+    let of = |sweep: &Sweep| {
+        let reader = Reader::new(sweep, &budget);
+        let readings: Vec<_> = everything().iter().map(|r| reader.read(r)).collect();
+        format!("{readings:?} {:?}", reader.circuit())
+    };
+    let results = |order: Vec<usize>| -> Vec<String> {
+        let mut found = vec![String::new(); sweeps.len()];
+        std::thread::scope(|scope| {
+            let work = scope.spawn(|| order.iter().for_each(|i| found[*i] = of(&sweeps[*i])));
+            work.join().expect("readings");
+        });
+        found
+    };
+    let forwards = results((0..sweeps.len()).collect());
+    assert_eq!(results((0..sweeps.len()).rev().collect()), forwards);
+    for (i, expected) in forwards.iter().enumerate() {
+        assert_eq!(results(vec![i])[i], *expected);
+    }
 }

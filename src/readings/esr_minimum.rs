@@ -93,36 +93,37 @@ fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Estimate {
     estimate
 }
 
-/// Where the fitted R is smallest between two frequencies: the least of 40 steps, then golden
+/// Where the fitted R is smallest between two frequencies: the least of 40 steps in ln f, then golden
 /// sections between its neighbours.
 fn minimum(fit: &LocalFit, low: f64, high: f64) -> f64 {
-    let resistance = |f: f64| fit.impedance(f).re;
-    let step = (high / low).powf(1.0 / 40.0);
-    let mut least = (low, f64::INFINITY);
+    let [first, last] = [low, high].map(|f| (f / fit.centre()).ln());
+    let resistance = |x: f64| fit.resistance(x);
+    let step = (last - first) / 40.0;
+    let mut least = (first, f64::INFINITY);
     for i in 0..=40 {
-        let f = if i == 40 { high } else { low * step.powi(i) };
-        let r = resistance(f);
+        let x = first + step * f64::from(i);
+        let r = resistance(x);
         if r < least.1 {
-            least = (f, r);
+            least = (x, r);
         }
     }
-    let (mut a, mut b) = ((least.0 / step).max(low), (least.0 * step).min(high));
+    let (mut a, mut b) = ((least.0 - step).max(first), (least.0 + step).min(last));
     // Each step keeps one of its two inner points for the next.
-    let third = (b / a).powf(GOLDEN);
-    let (mut c, mut d) = (a * third, b / third);
+    let third = GOLDEN * (b - a);
+    let (mut c, mut d) = (a + third, b - third);
     let (mut at_c, mut at_d) = (resistance(c), resistance(d));
     for _ in 0..30 {
         if at_c < at_d {
             (b, d, at_d) = (d, c, at_c);
-            c = a * (b / a).powf(GOLDEN);
+            c = a + GOLDEN * (b - a);
             at_c = resistance(c);
         } else {
             (a, c, at_c) = (c, d, at_d);
-            d = b / (b / a).powf(GOLDEN);
+            d = b - GOLDEN * (b - a);
             at_d = resistance(d);
         }
     }
-    (a * b).sqrt()
+    (fit.centre() * (0.5 * (a + b)).exp()).clamp(low, high)
 }
 
 /// Index of the point whose running mean of R, plus its scatter, is smallest among those that the
@@ -131,7 +132,7 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
     let sums = Sums::new(sweep, start, end);
     let points = &sweep.frequency[start..end];
     let (mut low, mut high) = (0, 0);
-    let mut best: Option<(usize, f64)> = None;
+    let (mut best, mut least) = (None, f64::INFINITY);
     let reach = SEARCH.exp();
     for (i, f) in points.iter().enumerate() {
         while points[low] * reach < *f {
@@ -142,56 +143,48 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
         }
         // At least three points, so that there is a scatter.
         let window = low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()));
-        let (mean, scatter) = sums.mean(window);
-        if mean > 0.0 && scatter < GATE * mean {
-            let bound = mean + scatter;
-            if best.is_none_or(|(_, least)| bound < least) {
-                best = Some((start + i, bound));
-            }
+        let [weight, weighted, noise] = sums.of(&window);
+        // What is not below the least is not it: nearly all are told by this alone.
+        if weighted <= 0.0 || weighted >= least * weight {
+            continue;
+        }
+        let mean = weighted / weight;
+        let variance = noise / (weight * window.len() as f64);
+        if variance < GATE * GATE * mean * mean && mean + variance.sqrt() < least {
+            (best, least) = (Some(start + i), mean + variance.sqrt());
         }
     }
-    best.map(|(i, _)| i)
+    best
 }
 
 /// Running sums of weights, of weighted R, and of the squared noise of R as a share of |Z|.
-struct Sums {
-    weight: Vec<f64>,
-    weighted: Vec<f64>,
-    noise: Vec<f64>,
-}
+struct Sums(Vec<[f64; 3]>);
 
 impl Sums {
     fn new(sweep: &Sweep, start: usize, end: usize) -> Sums {
         let z = &sweep.impedance[start..end];
         // Sums of 1/|Z|² over many decades of |Z| lose digits; relative to the largest they keep 10.
-        let (mut weight, mut weighted, mut noise) = (vec![0.0], vec![0.0], vec![0.0]);
-        let (mut a, mut b, mut c) = (0.0, 0.0, 0.0);
+        let mut sums = [0.0; 3];
+        let mut all = Vec::with_capacity(z.len() + 1);
+        all.push(sums);
         for i in 0..z.len() {
             let w = 1.0 / z[i].norm_sqr().max(f64::MIN_POSITIVE);
-            a += w;
-            b += w * z[i].re;
+            sums[0] += w;
+            sums[1] += w * z[i].re;
             // Second differences: variance 6 times that of a point.
             if i > 0 && i + 1 < z.len() {
                 let d = z[i - 1].re - 2.0 * z[i].re + z[i + 1].re;
-                c += d * d * w / 6.0;
+                sums[2] += d * d * w / 6.0;
             }
-            weight.push(a);
-            weighted.push(b);
-            noise.push(c);
+            all.push(sums);
         }
-        Sums {
-            weight,
-            weighted,
-            noise,
-        }
+        Sums(all)
     }
 
-    /// Weighted mean of R in Ω over points of the range, and its scatter.
-    fn mean(&self, range: std::ops::Range<usize>) -> (f64, f64) {
-        let of = |sums: &[f64]| sums[range.end] - sums[range.start];
-        let weight = of(&self.weight);
-        let points = (range.end - range.start) as f64;
-        let share = of(&self.noise).max(0.0) / points;
-        (of(&self.weighted) / weight, (share / weight).sqrt())
+    /// Over points of the range: weight, weighted R, noise.
+    fn of(&self, range: &std::ops::Range<usize>) -> [f64; 3] {
+        let (first, last) = (&self.0[range.start], &self.0[range.end]);
+        let [weight, weighted, noise] = std::array::from_fn(|k| last[k] - first[k]);
+        [weight, weighted, noise.max(0.0)]
     }
 }

@@ -13,8 +13,11 @@
 //! the uncertainty (Burnham and Anderson, Model Selection and Multimodel Inference, 2nd ed., 4.3.2).
 //! Noisy data so get a stiff curve, clean data a supple one, without thresholds on particular parts.
 
+use super::grid::{LN_AT, grid};
+use super::lanes::{LANES, product, sum};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
+use std::array::from_fn;
 use std::f64::consts::{FRAC_PI_2, LN_10};
 use std::ops::Range;
 
@@ -86,8 +89,7 @@ struct Model {
 pub(super) struct LocalFit {
     centre: f64,
     basis: &'static [Term],
-    /// Of the averaged model.
-    coefficients: Vec<f64>,
+    curve: Curve,
     /// Upper triangular factor of the weighted design matrix, column after column.
     triangle: Vec<f64>,
     /// Of the weighted data on the orthonormal columns.
@@ -134,6 +136,14 @@ pub(super) fn grown(
     start..end
 }
 
+/// Whether squares of impedances are finite and not zero.
+pub(super) fn sound(squares: &[f64]) -> bool {
+    // All are looked at, which is quicker than to stop at one.
+    squares
+        .iter()
+        .fold(true, |sound, s| sound & (*s > 0.0) & (*s < f64::INFINITY))
+}
+
 impl LocalFit {
     /// Fits the points of `range` around the frequency `centre` in Hz.
     ///
@@ -141,44 +151,42 @@ impl LocalFit {
     /// finite or zero.
     pub(super) fn new(sweep: &Sweep, range: Range<usize>, centre: f64) -> Option<LocalFit> {
         let frequency = sweep.frequency.get(range.clone())?;
-        let impedance = sweep.impedance.get(range)?;
+        let impedance = sweep.impedance.get(range.clone())?;
         let n = frequency.len();
-        if n < 2
-            || impedance
-                .iter()
-                .any(|z| !(z.norm_sqr() > 0.0 && z.norm_sqr().is_finite()))
-        {
+        let square: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
+        if n < 2 || !sound(&square) {
             return None;
         }
-        let noise = noise_ratio(impedance);
-        let capacitive: f64 = impedance.iter().map(|z| -z.im / z.norm()).sum();
+        let grid = grid(&sweep.frequency, range.clone());
+        let ln_centre = (centre / LN_AT).ln();
+        let ln = grid.all.ln.get(range)?.iter().map(|ln| ln - ln_centre);
+        let size: Vec<f64> = square.iter().map(|s| s.sqrt()).collect();
+        let noise = noise_ratio(impedance, &square, &size);
+        let capacitive: f64 = impedance.iter().zip(&size).map(|(z, s)| -z.im / s).sum();
         let (basis, least): (&'static [Term], usize) = if capacitive > 0.95 * n as f64 {
             (&CAPACITIVE, 2)
         } else {
             (&RESONANT, 3)
         };
-        let mut design = Design::new(frequency, impedance, centre, noise);
+        let mut design = Design::new(ln.collect(), frequency, impedance, &square, centre, noise);
         let mut fit = LocalFit {
             centre,
             basis,
-            coefficients: Vec::new(),
+            curve: Curve::default(),
             triangle: Vec::with_capacity(basis.len() * (basis.len() + 1) / 2),
             projections: Vec::with_capacity(basis.len()),
             models: Vec::with_capacity(basis.len()),
             noise,
         };
         fit.select(&mut design, least)?;
-        fit.average();
-        fit.coefficients
-            .iter()
-            .all(|c| c.is_finite())
-            .then_some(fit)
+        fit.curve = fit.averaged()?;
+        Some(fit)
     }
 
     /// Takes terms in order while they can still bring information.
     fn select(&mut self, design: &mut Design, least: usize) -> Option<()> {
-        let rows = design.residual.len();
-        let total = square_sum(&design.residual);
+        let rows = 2 * design.points;
+        let total = design.rest;
         // Below this the residual is the rounding of ten-digit files, not information.
         let floor = total * 1e-20 + f64::MIN_POSITIVE;
         let least = least.min(rows / 2);
@@ -197,7 +205,7 @@ impl LocalFit {
                 continue;
             }
             let (n, freedom) = (rows as f64, (rows - terms) as f64);
-            let rss = square_sum(&design.residual);
+            let rss = design.rest;
             let penalty = PENALTY * terms as f64 * n / (freedom - 1.0).max(1.0);
             let criterion = n * rss.max(floor).ln() + penalty;
             self.models.push(Model {
@@ -223,20 +231,18 @@ impl LocalFit {
         (sum.is_finite() && sum > 0.0).then_some(())
     }
 
-    /// Coefficients of the averaged model by back substitution.
-    fn average(&mut self) {
+    /// The averaged model, its coefficients by back substitution; `None` where one is not finite.
+    fn averaged(&self) -> Option<Curve> {
         let p = self.projections.len();
-        let mut target: Vec<f64> = (0..p)
-            .map(|k| {
-                let share: f64 = self
-                    .models
-                    .iter()
-                    .filter(|m| m.terms > k)
-                    .map(|m| m.weight)
-                    .sum();
-                self.projections[k] * share
-            })
-            .collect();
+        let mut target = [0.0; MOST];
+        // Weight of the models that have the term: from the last term to the first.
+        let (mut share, mut models) = (0.0, self.models.iter().rev().peekable());
+        for k in (0..p).rev() {
+            while let Some(model) = models.next_if(|m| m.terms > k) {
+                share += model.weight;
+            }
+            target[k] = self.projections[k] * share;
+        }
         for k in (0..p).rev() {
             let column = column(&self.triangle, k);
             let value = target[k] / column[k];
@@ -245,27 +251,29 @@ impl LocalFit {
             }
             target[k] = value;
         }
-        self.coefficients = target;
+        let coefficients = target.get(..p)?;
+        let finite = coefficients.iter().all(|c| c.is_finite());
+        finite.then(|| Curve::new(self.basis, coefficients))
+    }
+
+    /// Hz
+    pub(super) fn centre(&self) -> f64 {
+        self.centre
     }
 
     /// Z in Ω at a frequency inside the stretch.
     pub(super) fn impedance(&self, frequency: f64) -> Complex64 {
-        let at = Point::new(frequency / self.centre);
-        self.coefficients
-            .iter()
-            .zip(self.basis)
-            .map(|(c, b)| c * at.value(*b))
-            .sum()
+        self.curve.impedance((frequency / self.centre).ln())
     }
 
     /// dZ/d ln f in Ω.
     pub(super) fn slope(&self, frequency: f64) -> Complex64 {
-        let at = Point::new(frequency / self.centre);
-        self.coefficients
-            .iter()
-            .zip(self.basis)
-            .map(|(c, b)| c * at.slope(*b))
-            .sum()
+        self.curve.slope((frequency / self.centre).ln())
+    }
+
+    /// Re Z in Ω at `ln`, the logarithm of the frequency over the centre.
+    pub(super) fn resistance(&self, ln: f64) -> f64 {
+        self.curve.resistance(ln)
     }
 
     /// Standard uncertainty, from scatter and choice of model, of the quantity whose derivatives
@@ -298,7 +306,7 @@ impl LocalFit {
 
     fn spread(&self, functional: impl Fn(Term) -> f64) -> f64 {
         let p = self.projections.len();
-        let (mut solved, mut value, mut length) = ([0.0; 13], [0.0; 13], [0.0; 13]);
+        let (mut solved, mut value, mut length) = ([0.0; MOST], [0.0; MOST], [0.0; MOST]);
         let (mut sum, mut square) = (0.0, 0.0);
         for k in 0..p {
             let column = column(&self.triangle, k);
@@ -334,8 +342,71 @@ fn dot(a: Complex64, b: Complex64) -> f64 {
     a.re * b.re + a.im * b.im
 }
 
-/// Highest power of `u` in a term.
+/// Highest power of `u` in a term, and most terms.
 const HIGHEST: usize = 4;
+const MOST: usize = CAPACITIVE.len();
+
+/// A fitted curve `Σ c u^a s^b`, written out in the real variable `x = ln(f/centre)`: for b = −1, 0
+/// and 1 the real and the imaginary part of `Σ c (x + jπ/2)^a` as polynomials in x.
+#[derive(Debug, Clone, Default)]
+struct Curve {
+    re: [[f64; HIGHEST + 1]; 3],
+    im: [[f64; HIGHEST + 1]; 3],
+}
+
+impl Curve {
+    fn new(basis: &[Term], coefficients: &[f64]) -> Curve {
+        let mut curve = Curve::default();
+        for (c, term) in coefficients.iter().zip(basis) {
+            let b = (term.power_s + 1) as usize;
+            let a = term.power_u as usize;
+            // (x + jh)^a = Σ C(a, m) (jh)^(a − m) x^m, from m = a down.
+            let mut factor = Complex64::new(*c, 0.0);
+            for m in (0..=a).rev() {
+                curve.re[b][m] += factor.re;
+                curve.im[b][m] += factor.im;
+                factor *= Complex64::new(0.0, FRAC_PI_2 * m as f64 / (a - m + 1) as f64);
+            }
+        }
+        curve
+    }
+
+    /// `P₋₁/s + P₀ + P₁ s` with s = jy.
+    fn impedance(&self, x: f64) -> Complex64 {
+        let y = x.exp();
+        let [re, im] = [&self.re, &self.im].map(|p| p.map(|p| polynomial(&p, x)));
+        Complex64::new(
+            im[0] / y + re[1] - im[2] * y,
+            -re[0] / y + im[1] + re[2] * y,
+        )
+    }
+
+    fn resistance(&self, x: f64) -> f64 {
+        let y = x.exp();
+        polynomial(&self.im[0], x) / y + polynomial(&self.re[1], x) - polynomial(&self.im[2], x) * y
+    }
+
+    /// dZ/dx: dy/dx = y.
+    fn slope(&self, x: f64) -> Complex64 {
+        let y = x.exp();
+        let [re, im] = [&self.re, &self.im].map(|p| p.map(|p| polynomial(&p, x)));
+        let [d_re, d_im] = [&self.re, &self.im].map(|p| p.map(|p| derivative(&p, x)));
+        Complex64::new(
+            (d_im[0] - im[0]) / y + d_re[1] - (d_im[2] + im[2]) * y,
+            (re[0] - d_re[0]) / y + d_im[1] + (d_re[2] + re[2]) * y,
+        )
+    }
+}
+
+fn polynomial(p: &[f64; HIGHEST + 1], x: f64) -> f64 {
+    p.iter().rev().fold(0.0, |sum, c| sum * x + c)
+}
+
+fn derivative(p: &[f64; HIGHEST + 1], x: f64) -> f64 {
+    (1..p.len())
+        .rev()
+        .fold(0.0, |sum, m| sum * x + m as f64 * p[m])
+}
 
 /// Powers of `u`, and `s`, at one frequency, relative to the centre.
 struct Point {
@@ -360,7 +431,6 @@ impl Point {
         match power {
             0 => Complex64::ONE,
             1 => self.s,
-            // 1/(j y), spelt out: it is the hot path.
             _ => Complex64::new(0.0, -1.0 / self.s.im),
         }
     }
@@ -386,28 +456,97 @@ impl Point {
     }
 }
 
-/// The weighted least-squares problem while it is being solved.
+/// `u^power s^b / Z` at all points, for one b: the next term of the chain is `u` times this one.
+struct Chain {
+    power: i32,
+    /// Real and imaginary parts.
+    values: Vec<[f64; 2]>,
+}
+
+impl Chain {
+    fn of(values: impl Iterator<Item = [f64; 2]>) -> Chain {
+        Chain {
+            power: 0,
+            values: values.collect(),
+        }
+    }
+
+    fn raise(&mut self, ln: &[f64]) {
+        self.power += 1;
+        for (value, x) in self.values.iter_mut().zip(ln) {
+            let [re, im] = *value;
+            *value = [re * x - im * FRAC_PI_2, im * x + re * FRAC_PI_2];
+        }
+    }
+}
+
+/// The weighted least-squares problem while it is being solved. Rows: ln|Z| and phase of each point.
 struct Design {
-    points: Vec<Point>,
-    /// `1/Z` with the reciprocal noise of ln|Z| and phase: `dZ/Z = d ln|Z| + j dθ`.
-    inverse: Vec<Complex64>,
+    points: usize,
+    /// ln(f/centre)
+    ln: Vec<f64>,
+    /// For b = −1, 0, 1: `dZ/Z = d ln|Z| + j dθ`.
+    chains: [Chain; 3],
+    /// Reciprocal noise of ln|Z| and of the phase.
     weight: [f64; 2],
-    /// Orthonormal columns, one after the other; rows: ln|Z| of all points, then phase.
+    /// Orthonormal columns, one after the other.
     columns: Vec<f64>,
     residual: Vec<f64>,
+    /// Sum of squares of the residual.
+    rest: f64,
 }
 
 impl Design {
-    fn new(frequency: &[f64], impedance: &[Complex64], centre: f64, noise: [f64; 2]) -> Design {
+    fn new(
+        ln: Vec<f64>,
+        frequency: &[f64],
+        impedance: &[Complex64],
+        square: &[f64],
+        centre: f64,
+        noise: [f64; 2],
+    ) -> Design {
         let n = frequency.len();
         let weight = noise.map(|sigma| 1.0 / sigma);
-        let mut residual = vec![weight[0]; n];
-        residual.resize(2 * n, 0.0);
+        let rows = (2 * n).next_multiple_of(LANES);
+        let mut residual = Vec::with_capacity(rows);
+        residual.extend((0..n).flat_map(|_| [weight[0], 0.0]));
+        residual.resize(rows, 0.0);
+        let plain: Vec<[f64; 2]> = impedance
+            .iter()
+            .zip(square)
+            .map(|(z, square)| {
+                let inverse = 1.0 / square;
+                [z.re * inverse, -z.im * inverse]
+            })
+            .collect();
+        let over_centre = 1.0 / centre;
+        let with = |k: &dyn Fn([f64; 2], f64) -> [f64; 2]| {
+            let both = plain.iter().zip(frequency);
+            Chain::of(both.map(|(z, f)| k(*z, *f)))
+        };
+        // 1/s = −j/y
+        let over = with(&|[re, im], f| {
+            let over = centre / f;
+            [im * over, -re * over]
+        });
+        let times = with(&|[re, im], f| {
+            let y = f * over_centre;
+            [-im * y, re * y]
+        });
         Design {
-            points: frequency.iter().map(|f| Point::new(f / centre)).collect(),
-            inverse: impedance.iter().map(Complex64::inv).collect(),
+            points: n,
+            ln,
+            chains: [
+                over,
+                Chain {
+                    power: 0,
+                    values: plain,
+                },
+                times,
+            ],
             weight,
-            columns: Vec::with_capacity(2 * n * 9),
+            columns: Vec::with_capacity(rows * MOST),
+            rest: n as f64 * weight[0] * weight[0],
             residual,
         }
     }
@@ -416,92 +555,147 @@ impl Design {
     /// the residual. `None` where the points do not tell it from the terms before.
     fn add(&mut self, term: Term, triangle: &mut Vec<f64>) -> Option<f64> {
         let rows = self.residual.len();
-        let n = rows / 2;
+        let chain = self.chains.get_mut((term.power_s + 1) as usize)?;
+        while chain.power < term.power_u {
+            chain.raise(&self.ln);
+        }
         let start = self.columns.len();
+        let weight = self.weight;
+        let weighted = |[re, im]: &[f64; 2]| [re * weight[0], im * weight[1]];
+        self.columns.extend(chain.values.iter().flat_map(weighted));
         self.columns.resize(start + rows, 0.0);
         let (earlier, new) = self.columns.split_at_mut(start);
-        for (i, (point, inverse)) in self.points.iter().zip(&self.inverse).enumerate() {
-            let row = point.value(term) * inverse;
-            new[i] = row.re * self.weight[0];
-            new[n + i] = row.im * self.weight[1];
-        }
-        let before = square_sum(new).sqrt();
         let entries = triangle.len();
-        for column in earlier.chunks_exact(rows) {
-            let share = product(column, new);
-            for (value, e) in new.iter_mut().zip(column) {
-                *value -= share * e;
+        let mut earlier = earlier.chunks_exact(rows);
+        let (square, mut projection);
+        if let Some(mut column) = earlier.next() {
+            let mut share = product(column, new);
+            for next in earlier {
+                triangle.push(share);
+                share = take(new, share, column, next);
+                column = next;
             }
             triangle.push(share);
+            [square, projection] = take_last(new, share, column, &self.residual);
+        } else {
+            (square, projection) = (product(new, new), product(new, &self.residual));
         }
-        let norm = square_sum(new).sqrt();
-        if norm.is_nan() || norm <= before * 1e-10 {
+        // What was taken and what is left are at right angles.
+        let taken: f64 = triangle[entries..].iter().map(|share| share * share).sum();
+        if square.is_nan() || square <= (square + taken) * 1e-20 {
             triangle.truncate(entries);
             return None;
         }
-        new.iter_mut().for_each(|v| *v /= norm);
+        let norm = square.sqrt();
         triangle.push(norm);
-        let projection = product(new, &self.residual);
-        for (value, c) in self.residual.iter_mut().zip(new.iter()) {
-            *value -= projection * c;
-        }
+        projection /= norm;
+        self.rest = explain(&mut self.residual, projection, new, 1.0 / norm);
         Some(projection)
     }
 }
 
-/// Sum of products in four lanes, so that it needs no more time than memory does.
-fn product(a: &[f64], b: &[f64]) -> f64 {
-    let mut lanes = [0.0; 4];
-    let (a4, b4) = (a.chunks_exact(4), b.chunks_exact(4));
-    let rest: f64 = a4
-        .remainder()
+/// Takes `share` of `column` out of `of`; the product of what is left with `next`.
+fn take(of: &mut [f64], share: f64, column: &[f64], next: &[f64]) -> f64 {
+    let mut lanes = [0.0; LANES];
+    let both = column
+        .as_chunks::<LANES>()
+        .0
         .iter()
-        .zip(b4.remainder())
-        .map(|(x, y)| x * y)
-        .sum();
-    for (x, y) in a4.zip(b4) {
-        for lane in 0..4 {
-            lanes[lane] += x[lane] * y[lane];
-        }
+        .zip(next.as_chunks::<LANES>().0);
+    for (of, (column, next)) in of.as_chunks_mut::<LANES>().0.iter_mut().zip(both) {
+        let left: [f64; LANES] = from_fn(|i| of[i] - share * column[i]);
+        *of = left;
+        lanes = from_fn(|i| lanes[i] + left[i] * next[i]);
     }
-    lanes.iter().sum::<f64>() + rest
+    sum(lanes)
 }
 
-fn square_sum(a: &[f64]) -> f64 {
-    product(a, a)
+/// Takes `share` of `column` out of `of`; the products of what is left with itself and with `other`.
+fn take_last(of: &mut [f64], share: f64, column: &[f64], other: &[f64]) -> [f64; 2] {
+    let (mut squares, mut products) = ([0.0; LANES], [0.0; LANES]);
+    let both = column
+        .as_chunks::<LANES>()
+        .0
+        .iter()
+        .zip(other.as_chunks::<LANES>().0);
+    for (of, (column, other)) in of.as_chunks_mut::<LANES>().0.iter_mut().zip(both) {
+        let left: [f64; LANES] = from_fn(|i| of[i] - share * column[i]);
+        *of = left;
+        squares = from_fn(|i| squares[i] + left[i] * left[i]);
+        products = from_fn(|i| products[i] + left[i] * other[i]);
+    }
+    [sum(squares), sum(products)]
+}
+
+/// Scales `column` by `factor` and takes `share` of that out of `of`; the sum of squares of what is
+/// left.
+fn explain(of: &mut [f64], share: f64, column: &mut [f64], factor: f64) -> f64 {
+    let mut lanes = [0.0; LANES];
+    let columns = column.as_chunks_mut::<LANES>().0;
+    for (of, column) in of.as_chunks_mut::<LANES>().0.iter_mut().zip(columns) {
+        let scaled: [f64; LANES] = from_fn(|i| column[i] * factor);
+        *column = scaled;
+        let left: [f64; LANES] = from_fn(|i| of[i] - share * scaled[i]);
+        *of = left;
+        lanes = from_fn(|i| lanes[i] + left[i] * left[i]);
+    }
+    sum(lanes)
 }
 
 /// Standard deviations of the noise of ln|Z| and of the phase (rad), from third differences of
 /// neighbouring points (median of absolute values: neither a smooth course nor a single jump counts
 /// as noise). `None` for too few points.
-pub(super) fn noise(impedance: &[Complex64]) -> Option<[f64; 2]> {
+///
+/// `square` and `size` are |Z|² and |Z|.
+pub(super) fn noise(impedance: &[Complex64], square: &[f64], size: &[f64]) -> Option<[f64; 2]> {
     if impedance.len() < 9 {
         return None;
     }
-    let size: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
-    let ln: Vec<f64> = size.iter().map(|s| 0.5 * s.ln()).collect();
-    let magnitude = ln.windows(2).map(|l| l[1] - l[0]).collect();
+    // ln|Z₁| − ln|Z₀| = artanh((|Z₁|² − |Z₀|²)/(|Z₁|² + |Z₀|²))
+    let mut steps: Vec<f64> = square
+        .windows(2)
+        .map(|s| (s[1] - s[0]) / (s[1] + s[0]))
+        .collect();
+    if steps.iter().all(|t| t.abs() < SMALL) {
+        steps.iter_mut().for_each(|t| *t = small_artanh(*t));
+    } else {
+        steps.iter_mut().for_each(|t| *t = t.atanh());
+    }
+    let magnitude = of_steps(&steps);
+    steps.clear();
     // The sine of the step serves for the step: what it lacks is smooth.
-    let phase = impedance
+    let steps_of_phase = impedance
         .windows(2)
         .zip(size.windows(2))
-        .map(|(z, s)| (z[1].im * z[0].re - z[1].re * z[0].im) / (s[0] * s[1]).sqrt())
+        .map(|(z, s)| (z[1].im * z[0].re - z[1].re * z[0].im) / (s[0] * s[1]));
+    steps.extend(steps_of_phase);
+    Some([magnitude, of_steps(&steps)])
+}
+
+/// Up to here a step's series is exact to 1e-12, and what it lacks is smooth.
+const SMALL: f64 = 0.2;
+
+/// artanh by its series up to t¹³.
+fn small_artanh(t: f64) -> f64 {
+    let q = t * t;
+    let series = [13.0, 11.0, 9.0, 7.0, 5.0, 3.0, 1.0];
+    t * series.iter().fold(0.0, |sum, k| sum * q + 1.0 / k)
+}
+
+fn of_steps(steps: &[f64]) -> f64 {
+    // Numbers that are not negative are in the order of their bits.
+    let mut all: Vec<u64> = steps
+        .windows(3)
+        .map(|s| (s[2] - 2.0 * s[1] + s[0]).abs().to_bits())
         .collect();
-    let of_steps = |steps: Vec<f64>| -> f64 {
-        let mut all: Vec<f64> = steps
-            .windows(3)
-            .map(|s| (s[2] - 2.0 * s[1] + s[0]).abs())
-            .collect();
-        let middle = all.len() / 2;
-        // 1.4826: median absolute value to standard deviation; 20 = 1² + 3² + 3² + 1².
-        1.4826 / 20f64.sqrt() * *all.select_nth_unstable_by(middle, f64::total_cmp).1
-    };
-    Some([of_steps(magnitude), of_steps(phase)])
+    let middle = all.len() / 2;
+    // 1.4826: median absolute value to standard deviation; 20 = 1² + 3² + 3² + 1².
+    1.4826 / 20f64.sqrt() * f64::from_bits(*all.select_nth_unstable(middle).1)
 }
 
 /// The two relative to the larger one, kept between 1:10 and 10:1; 1:1 where nothing is known.
-fn noise_ratio(impedance: &[Complex64]) -> [f64; 2] {
-    let [magnitude, phase] = noise(impedance).unwrap_or([1.0, 1.0]);
+fn noise_ratio(impedance: &[Complex64], square: &[f64], size: &[f64]) -> [f64; 2] {
+    let [magnitude, phase] = noise(impedance, square, size).unwrap_or([1.0, 1.0]);
     let largest = magnitude.max(phase);
     if !(largest > 0.0 && largest.is_finite()) {
         return [1.0, 1.0];

@@ -10,6 +10,8 @@ mod characteristic;
 pub mod circuit;
 mod esl;
 mod esr_minimum;
+mod grid;
+mod lanes;
 mod local_fit;
 mod reading;
 mod series;
@@ -39,8 +41,8 @@ pub struct Reader<'a> {
     budget: &'a Budget,
     circuit: OnceCell<Result<CircuitFit, Note>>,
     resonance: OnceCell<Resonance>,
-    /// The local fit that was asked for last, and its frequency.
-    local: RefCell<Option<(f64, Option<LocalFit>)>>,
+    /// The local fits that were asked for, and their frequencies.
+    local: RefCell<Vec<(f64, Option<LocalFit>)>>,
 }
 
 impl<'a> Reader<'a> {
@@ -51,7 +53,7 @@ impl<'a> Reader<'a> {
             budget,
             circuit: OnceCell::new(),
             resonance: OnceCell::new(),
-            local: RefCell::new(None),
+            local: RefCell::new(Vec::new()),
         }
     }
 
@@ -112,13 +114,17 @@ impl<'a> Reader<'a> {
         frequency: f64,
         equivalent: Equivalent,
     ) -> Outcome {
-        let mut last = self.local.borrow_mut();
-        let known = last.take().filter(|(f, _)| *f == frequency);
-        let (_, fit) =
-            last.insert(known.unwrap_or_else(|| (frequency, local(self.sweep, frequency))));
+        let mut known = self.local.borrow_mut();
+        let at = known
+            .iter()
+            .position(|(f, _)| *f == frequency)
+            .unwrap_or_else(|| {
+                known.push((frequency, local(self.sweep, frequency)));
+                known.len() - 1
+            });
         at_frequency::read(
             self.sweep,
-            fit.as_ref(),
+            known[at].1.as_ref(),
             characteristic,
             frequency,
             equivalent,

@@ -28,18 +28,24 @@ struct Crossing {
 fn crossings(sweep: &Sweep) -> Vec<Crossing> {
     // (ln f at the change, sign before, sign after)
     let mut changes: Vec<(f64, bool, bool)> = Vec::new();
-    let mut previous: Option<(f64, f64)> = None;
-    for (f, z) in sweep.frequency.iter().zip(&sweep.impedance) {
-        if z.im == 0.0 {
+    let (f, z) = (&sweep.frequency, &sweep.impedance);
+    for i in 1..z.len() {
+        // Neighbours of one sign: nearly all.
+        if z[i - 1].im * z[i].im > 0.0 || z[i].im == 0.0 {
             continue;
         }
-        if let Some((f0, x0)) = previous
-            && (x0 < 0.0) != (z.im < 0.0)
+        let (x, before) = (z[i].im, (0..i).rev().find(|k| z[*k].im != 0.0));
+        if let Some(k) = before
+            && (z[k].im < 0.0) != (x < 0.0)
         {
-            let share = x0 / (x0 - z.im);
-            changes.push((f0.ln() + share * (f.ln() - f0.ln()), x0 > 0.0, z.im > 0.0));
+            let x0 = z[k].im;
+            let share = x0 / (x0 - x);
+            changes.push((
+                f[k].ln() + share * (f[i].ln() - f[k].ln()),
+                x0 > 0.0,
+                x > 0.0,
+            ));
         }
-        previous = Some((*f, z.im));
     }
     let mut found: Vec<Crossing> = Vec::new();
     let mut i = 0;
@@ -101,7 +107,8 @@ pub(super) fn read(sweep: &Sweep) -> Resonance {
     // A rotation by φ changes X by R φ, and with it the crossing by −R φ / (dX/d ln f).
     let per_radian = -value * resonance.resistance / resonance.slope;
     let mut estimate = Estimate::new(value, 0.0, per_radian, value * resonance.sigma).at(value);
-    let position = sweep.frequency.partition_point(|f| f.ln() < centre);
+    let middle = centre.exp();
+    let position = sweep.frequency.partition_point(|f| *f < middle);
     if position < 3 || position + 3 > n {
         estimate.warnings.push(Note::new(
             "srf_at_sweep_edge",

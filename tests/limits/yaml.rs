@@ -57,6 +57,18 @@ fn a_text_that_yaml_takes_for_something_else_keeps_its_text_or_asks_for_quotes()
 }
 
 #[test]
+fn a_quoted_value_is_marked_up_to_its_closing_quote() {
+    let quantity = |text: &str| lot_with("quantity: 4000", &format!("quantity: {text}"));
+    for quoted in ["\"four\"", "'four'", "\"a \\\" b\"", "'a '' b'", "\"µF\""] {
+        for after in ["", "   ", "  # the whole \"reel's\" own"] {
+            let found = listed(quantity(&format!("{quoted}{after}")));
+            assert_eq!(found.len(), 1, "{found:?}");
+            assert!(found[0].ends_with(&format!(" {quoted}")), "{found:?}");
+        }
+    }
+}
+
+#[test]
 fn a_number_is_a_decimal_number() {
     let quantity = |text: &str| lot_with("quantity: 4000", &format!("quantity: {text}"));
     assert_eq!(quantity("4000").expect("valid").quantity, 4000);

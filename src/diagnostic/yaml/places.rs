@@ -118,6 +118,11 @@ impl Builder<'_> {
             Event::Scalar(text, style, anchor, tag) => {
                 self.marks(span, anchor, tag.is_some());
                 let plain = style == ScalarStyle::Plain;
+                let span = match style {
+                    ScalarStyle::SingleQuoted => within_quotes(self.source, span, '\''),
+                    ScalarStyle::DoubleQuoted => within_quotes(self.source, span, '"'),
+                    _ => span,
+                };
                 let absent = plain && start.index() == end.index();
                 let content = Content::Scalar {
                     text: if absent {
@@ -202,6 +207,28 @@ impl Builder<'_> {
         self.root
             .ok_or_else(|| vec![disagreement(self.source, nothing, "no node was found")])
     }
+}
+
+/// The span up to the closing quote, where the reader's own runs on to the end of the line.
+fn within_quotes(source: &Source, span: Span, quote: char) -> Span {
+    let line = source.line(span.line);
+    let mut inside = line.chars().skip(span.column).take(span.length).peekable();
+    // The opening quote counts.
+    let mut length = 1;
+    while let Some(c) = inside.next() {
+        length += 1;
+        let escaped = match quote {
+            '"' => c == '\\',
+            _ => c == quote && inside.peek() == Some(&quote),
+        };
+        if escaped {
+            inside.next();
+            length += 1;
+        } else if c == quote {
+            return Span { length, ..span };
+        }
+    }
+    span
 }
 
 /// A span within one line; one that goes on is cut at the end of its first line.

@@ -5,7 +5,8 @@ use super::model::{CAPACITANCE_AT, Circuit, MOST, Point};
 use super::start::{Rough, rough};
 use crate::diagnostic::Note;
 use crate::quantity::engineering;
-use crate::readings::local_fit::noise;
+use crate::readings::grid::grid;
+use crate::readings::local_fit::{noise, sound};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
@@ -97,30 +98,30 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
             ),
         ));
     }
-    if impedance
-        .iter()
-        .any(|z| !(z.norm_sqr() > 0.0 && z.norm_sqr().is_finite()))
-    {
+    let square: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
+    if !sound(&square) {
         return Err(Note::new(
             "circuit_not_finite",
             "the sweep holds an impedance that is zero",
         ));
     }
-    let Some(rough) = rough(frequency, impedance) else {
+    let size: Vec<f64> = square.iter().map(|s| s.sqrt()).collect();
+    let Some(rough) = rough(frequency, impedance, &size) else {
         return Err(Note::new(
             "circuit_not_capacitive",
             "the sweep does not start capacitive: there is no capacitor to be fitted",
         ));
     };
-    let data = Data::new(frequency, impedance);
-    let noise = relative_noise(impedance);
+    let grid = grid(frequency, 0..frequency.len());
+    let data = Data::new(&grid, impedance, &size);
+    let noise = relative_noise(impedance, &square, &size);
     let best = best(&data, &rough, noise);
     Ok(assemble(sweep, &data, &best, noise))
 }
 
 /// Root mean square of the relative noise of real and imaginary part.
-fn relative_noise(impedance: &[Complex64]) -> f64 {
-    let [magnitude, phase] = noise(impedance).unwrap_or([0.0, 0.0]);
+fn relative_noise(impedance: &[Complex64], square: &[f64], size: &[f64]) -> f64 {
+    let [magnitude, phase] = noise(impedance, square, size).unwrap_or([0.0, 0.0]);
     (0.5 * (magnitude * magnitude + phase * phase)).sqrt()
 }
 
@@ -155,8 +156,7 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
         if !goes_on {
             continue;
         }
-        if enough(&best, limit)
-            && (whole || circuit != Circuit::DispersiveEddy || is_noise(data, &best))
+        if enough(&best, limit) && (whole || circuit != Circuit::DispersiveEddy || is_noise(&best))
         {
             continue;
         }
@@ -170,9 +170,8 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
 
 /// Whether neighbouring residuals go no more together than those of noise do: their correlation has
 /// a standard deviation of 1/√(2n) then.
-fn is_noise(data: &Data, m: &Minimum) -> bool {
-    let all = data.residual(m.circuit, &m.parameters);
-    autocorrelation(&all) < 2.0 / (2.0 * all.len() as f64).sqrt()
+fn is_noise(m: &Minimum) -> bool {
+    autocorrelation(&m.residual) < 2.0 / (2.0 * m.residual.len() as f64).sqrt()
 }
 
 /// Correlation of neighbouring residuals; 0 where there are none.
@@ -236,19 +235,18 @@ fn physical(data: &Data, circuit: Circuit, start: &[f64]) -> Minimum {
 }
 
 fn residual(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> Residual {
-    let all = data.residual(m.circuit, &m.parameters);
-    let (mut largest, mut largest_at) = (0.0, sweep.frequency[0]);
-    for (r, f) in all.iter().zip(&sweep.frequency) {
-        if r.norm() > largest {
-            (largest, largest_at) = (r.norm(), *f);
+    let (mut square, mut largest_at) = (0.0, sweep.frequency[0]);
+    for (r, f) in m.residual.iter().zip(&sweep.frequency) {
+        if r.norm_sqr() > square {
+            (square, largest_at) = (r.norm_sqr(), *f);
         }
     }
     Residual {
         rms: rms(data, m),
-        largest,
+        largest: square.sqrt(),
         largest_at,
         noise,
-        autocorrelation: autocorrelation(&all),
+        autocorrelation: autocorrelation(&m.residual),
     }
 }
 
@@ -310,8 +308,7 @@ fn assemble(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> CircuitFit {
         })
         .collect();
     let mut per_radian = vec![0.0; p];
-    let turned = data.project(m, |z| Complex64::I * z);
-    if let Some(change) = solve(&m.normal, m.free.len(), 0.0, &turned) {
+    if let Some(change) = solve(&m.normal, m.free.len(), 0.0, &m.turned) {
         for (i, k) in m.free.iter().enumerate() {
             per_radian[*k] = change[i];
         }

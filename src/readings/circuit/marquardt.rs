@@ -2,20 +2,22 @@
 //! (1963) 431), on scaled normal equations: few parameters, well scaled, many points.
 
 use super::model::{Circuit, MOST, Point};
+use super::projected;
+use crate::readings::grid::{Axis, Grid};
 use num_complex::Complex64;
 
 /// A square matrix of at most `MOST` rows.
 pub(super) type Square = [[f64; MOST]; MOST];
 
-/// The points to be fitted, with what the circuits need of their frequencies.
-pub(super) struct Data {
-    pub(super) points: Vec<Point>,
+/// The points to be fitted.
+pub(super) struct Data<'a> {
+    pub(super) axis: &'a Axis,
     pub(super) impedance: Vec<Complex64>,
     /// 1/|Z|
-    weight: Vec<f64>,
+    pub(super) weight: Vec<f64>,
     /// Every eighth point, where there are enough: a search that begins at its minimum is over in a
     /// few steps.
-    thin: Option<Box<Data>>,
+    pub(super) thin: Option<Box<Data<'a>>>,
 }
 
 /// Where the search ended.
@@ -30,51 +32,55 @@ pub(super) struct Minimum {
     /// `JᵀJ` of the free parameters.
     pub(super) normal: Square,
     pub(super) converged: bool,
+    /// The weighted residual at each point.
+    pub(super) residual: Vec<Complex64>,
+    /// `Jᵀ` of `jZ` in place of the residuals: what a common phase error does.
+    pub(super) turned: [f64; MOST],
 }
 
 /// Evaluations after which a search is given up: a circuit that fits needs a dozen.
 const MOST_EVALUATIONS: usize = 60;
 
-/// Every so manieth point is in the thin data, and at least so many are left.
-const THIN: usize = 8;
+/// Fewest points of thin data.
 const THIN_LEAST: usize = 32;
 
-impl Data {
-    pub(super) fn new(frequency: &[f64], impedance: &[Complex64]) -> Data {
-        let mut data = Data {
-            points: frequency.iter().map(|f| Point::new(*f)).collect(),
-            impedance: impedance.to_vec(),
-            weight: impedance
-                .iter()
-                .map(|z| 1.0 / z.norm_sqr().sqrt())
-                .collect(),
-            thin: None,
-        };
-        if data.points.len() >= THIN * THIN_LEAST {
-            data.thin = Some(Box::new(Data {
-                points: data.points.iter().copied().step_by(THIN).collect(),
-                impedance: data.impedance.iter().copied().step_by(THIN).collect(),
-                weight: data.weight.iter().copied().step_by(THIN).collect(),
+impl<'a> Data<'a> {
+    /// `size` is |Z|.
+    pub(super) fn new(grid: &'a Grid, impedance: &[Complex64], size: &[f64]) -> Data<'a> {
+        let weight: Vec<f64> = size.iter().map(|size| 1.0 / size).collect();
+        let thin = (impedance.len() >= Grid::STEP * THIN_LEAST).then(|| {
+            Box::new(Data {
+                axis: &grid.thin,
+                impedance: impedance.iter().copied().step_by(Grid::STEP).collect(),
+                weight: weight.iter().copied().step_by(Grid::STEP).collect(),
                 thin: None,
-            }));
+            })
+        });
+        Data {
+            axis: &grid.all,
+            impedance: impedance.to_vec(),
+            weight,
+            thin,
         }
-        data
     }
 
     /// Number of real residuals.
     pub(super) fn residuals(&self) -> usize {
-        2 * self.points.len()
+        2 * self.impedance.len()
+    }
+
+    /// The points with their impedance and weight.
+    fn points(&self) -> impl Iterator<Item = (Point, Complex64, f64)> {
+        (Point::of(self.axis).zip(&self.impedance).zip(&self.weight))
+            .map(|((at, z), w)| (at, *z, *w))
     }
 
     /// The weighted residual at each point.
-    pub(super) fn residual(&self, circuit: Circuit, p: &[f64]) -> Vec<Complex64> {
+    fn residual(&self, circuit: Circuit, p: &[f64]) -> Vec<Complex64> {
         let circuit = circuit.prepare(p);
         let mut scratch = [Complex64::ZERO; MOST];
-        self.points
-            .iter()
-            .zip(&self.impedance)
-            .zip(&self.weight)
-            .map(|((at, z), w)| (circuit.evaluate(*at, &mut scratch) - z) * *w)
+        self.points()
+            .map(|(at, z, w)| (circuit.evaluate(at, &mut scratch) - z) * w)
             .collect()
     }
 
@@ -88,11 +94,11 @@ impl Data {
         let circuit = circuit.prepare(p);
         let mut derivatives = [Complex64::ZERO; MOST];
         let mut column = [Complex64::ZERO; MOST];
-        for ((at, z), w) in self.points.iter().zip(&self.impedance).zip(&self.weight) {
-            let residual = (circuit.evaluate(*at, &mut derivatives) - z) * *w;
+        for (at, z, w) in self.points() {
+            let residual = (circuit.evaluate(at, &mut derivatives) - z) * w;
             normal.sum += residual.norm_sqr();
             for (c, k) in column.iter_mut().zip(free) {
-                *c = derivatives[*k] * *w;
+                *c = derivatives[*k] * w;
             }
             for i in 0..free.len() {
                 let c = column[i];
@@ -105,21 +111,17 @@ impl Data {
         normal
     }
 
-    /// `Jᵀ r` of the free parameters for other residuals `r` than those of the data.
-    pub(super) fn project(
-        &self,
-        minimum: &Minimum,
-        residual: impl Fn(Complex64) -> Complex64,
-    ) -> [f64; MOST] {
-        let circuit = minimum.circuit.prepare(&minimum.parameters);
+    /// `Jᵀ` of the weighted data, turned by a right angle.
+    fn turned(&self, circuit: Circuit, p: &[f64], free: &[usize]) -> [f64; MOST] {
+        let circuit = circuit.prepare(p);
         let mut sums = [0.0; MOST];
         let mut derivatives = [Complex64::ZERO; MOST];
-        for ((at, z), w) in self.points.iter().zip(&self.impedance).zip(&self.weight) {
-            circuit.evaluate(*at, &mut derivatives);
-            let r = residual(*z) * *w;
-            for (sum, k) in sums.iter_mut().zip(&minimum.free) {
-                let d = derivatives[*k] * *w;
-                *sum += d.re * r.re + d.im * r.im;
+        for (at, z, w) in self.points() {
+            circuit.evaluate(at, &mut derivatives);
+            let turned = Complex64::I * z * (w * w);
+            for (sum, k) in sums.iter_mut().zip(free) {
+                let d = derivatives[*k];
+                *sum += d.re * turned.re + d.im * turned.im;
             }
         }
         sums
@@ -130,6 +132,11 @@ impl Data {
     /// Circuits with one capacitance have one minimum, and it is looked for among few points first;
     /// ladders have more than one, and are searched from `start`.
     pub(super) fn minimise(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
+        if circuit == Circuit::Dispersive
+            && let Some(minimum) = projected::minimise(self, start, free)
+        {
+            return minimum;
+        }
         let ladder = matches!(circuit, Circuit::Ladder(_));
         let near = self.thin.as_ref().filter(|_| !ladder);
         let near = near
@@ -178,6 +185,8 @@ impl Data {
         }
         Minimum {
             circuit,
+            residual: self.residual(circuit, &p),
+            turned: self.turned(circuit, &p, free),
             parameters: p,
             free: free.to_vec(),
             square_sum: here.sum,

@@ -1,12 +1,13 @@
 //! The circuits, their impedance and its derivatives.
 
+use crate::readings::grid::{Axis, LN_AT, ROOT_AT};
 use num_complex::Complex64;
 use std::f64::consts::{FRAC_PI_2, TAU};
 
 /// Frequency at which the dispersive capacitance is stated, Hz.
-pub(super) const CAPACITANCE_AT: f64 = 1e3;
+pub(super) const CAPACITANCE_AT: f64 = LN_AT;
 /// Frequency at which the skin resistance is stated, Hz.
-pub(super) const SKIN_AT: f64 = 1e6;
+pub(super) const SKIN_AT: f64 = ROOT_AT;
 /// Most parameters of a circuit.
 pub(super) const MOST: usize = 11;
 
@@ -48,6 +49,15 @@ impl Point {
             ln: (frequency / CAPACITANCE_AT).ln(),
             root: (frequency / SKIN_AT).sqrt(),
         }
+    }
+
+    /// The points of an axis.
+    pub(super) fn of(axis: &Axis) -> impl Iterator<Item = Point> {
+        (axis.omega.iter().zip(&axis.ln).zip(&axis.root)).map(|((omega, ln), root)| Point {
+            omega: *omega,
+            ln: *ln,
+            root: *root,
+        })
     }
 }
 

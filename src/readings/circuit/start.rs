@@ -25,7 +25,9 @@ pub(super) struct Rough {
 }
 
 /// `None` where the low end is not capacitive.
-pub(super) fn rough(frequency: &[f64], impedance: &[Complex64]) -> Option<Rough> {
+///
+/// `sizes` are |Z|.
+pub(super) fn rough(frequency: &[f64], impedance: &[Complex64], sizes: &[f64]) -> Option<Rough> {
     let n = frequency.len();
     let few = (n / 20).clamp(1, 8);
     let low = middle(
@@ -38,10 +40,15 @@ pub(super) fn rough(frequency: &[f64], impedance: &[Complex64]) -> Option<Rough>
             .map(|i| (-impedance[i].re / impedance[i].im).atan())
             .collect::<Vec<_>>(),
     );
-    let valley = (0..n).min_by(|a, b| impedance[*a].norm().total_cmp(&impedance[*b].norm()))?;
+    let mut valley = 0;
+    for (i, size) in sizes.iter().enumerate() {
+        if *size < sizes[valley] {
+            valley = i;
+        }
+    }
     let around = valley.saturating_sub(few)..(valley + few + 1).min(n);
     let resistance = middle(&mut impedance[around].iter().map(|z| z.re).collect::<Vec<_>>());
-    let size = impedance[valley].norm();
+    let size = sizes[valley];
     let resistance = if resistance > 0.05 * size {
         resistance
     } else {
