@@ -123,7 +123,13 @@ fn show(faults: &Faults) {
 fn both_readers_agree(bytes: &[u8]) {
     let source = Source::new("a.yaml", bytes).expect("was read before");
     let tree = yaml::parse(&source).expect("was read before");
-    let value: Value = serde_yaml::from_str(source.text()).expect("was read before");
+    let value: Value = match serde_yaml::from_str(source.text()) {
+        Ok(value) => value,
+        // This reader's tree has no integer of more than 64 bits; ours keeps what is written.
+        Err(error) if error.to_string().contains("as u128") => return,
+        Err(error) if error.to_string().contains("as i128") => return,
+        Err(error) => panic!("was read before: {error}"),
+    };
     same(&source, &tree, &value);
 }
 
