@@ -1,7 +1,7 @@
 //! What depends on a sweep's frequencies alone. Sweeps of a lot share their frequencies, so that it
 //! is worked out for the first and kept for the next; the values are the same either way.
 
-use super::lanes::filled;
+use crate::statistics::lanes::filled;
 use std::cell::RefCell;
 use std::f64::consts::TAU;
 use std::ops::Range;

@@ -14,7 +14,7 @@
 //! Noisy data so get a stiff curve, clean data a supple one, without thresholds on particular parts.
 
 use super::grid::{LN_AT, grid};
-use super::lanes::{LANES, product, sum};
+use crate::statistics::lanes::{LANES, product, sum};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::array::from_fn;

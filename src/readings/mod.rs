@@ -11,7 +11,6 @@ pub mod circuit;
 mod esl;
 mod esr_minimum;
 mod grid;
-mod lanes;
 mod local_fit;
 mod reading;
 mod series;

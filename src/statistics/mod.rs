@@ -7,6 +7,7 @@
 
 pub mod capability;
 pub mod distributions;
+pub(crate) mod lanes;
 pub mod lot_to_lot;
 pub mod mixture;
 pub mod normal_scores;

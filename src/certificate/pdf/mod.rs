@@ -6,6 +6,7 @@ mod attach;
 mod content;
 mod file;
 mod finish;
+pub(super) mod object;
 mod tags;
 mod write;
 mod xmp;

@@ -2,7 +2,7 @@
 //! that is not to be seen, with an appearance all the same, the signature with its byte range over the whole file,
 //! and a cross-reference stream.
 
-use super::object::{hexadecimal, write, write_dictionary};
+use crate::certificate::pdf::object;
 use chrono::{DateTime, FixedOffset};
 use lopdf::{Dictionary, Document, Object, ObjectId};
 use sha2::{Digest, Sha256};
@@ -109,7 +109,7 @@ impl Update {
         let mut filled = signature.to_vec();
         filled.resize(self.room, 0);
         let mut out = self.before.clone();
-        hexadecimal(&mut out, &filled);
+        object::hexadecimal(&mut out, &filled);
         out.extend(&self.after);
         Ok(out)
     }
@@ -278,7 +278,7 @@ impl Base {
         }
         dictionary.set("Length", entries.len() as i64);
         out.begin((own, 0));
-        write_dictionary(&mut out.bytes, &dictionary);
+        object::dictionary(&mut out.bytes, &dictionary);
         out.bytes.extend(b"stream\n");
         out.bytes.extend(entries);
         out.bytes.extend(b"\nendstream");
@@ -337,7 +337,7 @@ impl Piece {
 
     fn object(&mut self, id: ObjectId, dictionary: &Dictionary) {
         self.begin(id);
-        write(&mut self.bytes, &Object::Dictionary(dictionary.clone()));
+        object::dictionary(&mut self.bytes, dictionary);
         self.end();
     }
 }

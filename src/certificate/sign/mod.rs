@@ -8,7 +8,6 @@
 mod append;
 mod cms;
 mod identity;
-mod object;
 
 pub use identity::{Signatory, Signer, SignerError};
 

@@ -7,10 +7,11 @@
 //! of a few sums over the points. The search ends with Gauss-Newton steps from the residuals
 //! themselves, which the normal equations alone would leave short of digits.
 
+use super::exponential::exp;
 use super::marquardt::{Data, Minimum, Square, solve};
 use super::model::{CAPACITANCE_AT, Circuit, MOST};
 use crate::readings::grid::Axis;
-use crate::readings::lanes::{exp, filled, product};
+use crate::statistics::lanes::{filled, product};
 use num_complex::Complex64;
 use std::f64::consts::{FRAC_PI_2, TAU};
 

@@ -2,6 +2,7 @@
 //! distances of all points are had in one go.
 
 use super::scatter::Scatter;
+use crate::statistics::lanes::dot;
 
 /// The points, and room for what a step computes.
 pub(super) struct Concentration {
@@ -112,19 +113,4 @@ impl Concentration {
         }
         Scatter::from_moments(means, &covariance)
     }
-}
-
-/// Sum of products, in lanes that a processor adds side by side.
-fn dot(a: &[f64], b: &[f64]) -> f64 {
-    const LANES: usize = 8;
-    let mut lanes = [0.0; LANES];
-    let (a_chunks, b_chunks) = (a.chunks_exact(LANES), b.chunks_exact(LANES));
-    let rest = a_chunks.remainder().iter().zip(b_chunks.remainder());
-    let rest: f64 = rest.map(|(x, y)| x * y).sum();
-    for (xs, ys) in a_chunks.zip(b_chunks) {
-        for ((lane, x), y) in lanes.iter_mut().zip(xs).zip(ys) {
-            *lane += x * y;
-        }
-    }
-    lanes.iter().sum::<f64>() + rest
 }

@@ -54,6 +54,7 @@ const DIGITS: u32 = 15;
 /// A number of few digits and a moderate exponent, as instruments write them, and whether it has a
 /// decimal point. Digits and power of ten are exact, so that one operation rounds correctly
 /// (Clinger, How to read floating point numbers accurately, PLDI 1990); all other numbers are `None`.
+/// No such number reaches `OVERLOAD`.
 fn plain(field: &[u8]) -> Option<(f64, bool)> {
     let (negative, digits) = signed(field);
     let (mut mantissa, mut count, mut decimals) = (0u64, 0, None);

@@ -1,7 +1,7 @@
 //! Whether there is a part, and whether it is a capacitor.
 
 use super::noise::Noise;
-use super::sums::median;
+use super::order::median;
 use super::{Evidence, UNUSABLE};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;

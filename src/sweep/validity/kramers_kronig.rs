@@ -13,9 +13,10 @@
 //! orthogonal basis is made once for all parts of a lot.
 
 use super::noise::Noise;
-use super::sums::{dot, median};
+use super::order::median;
 use super::{Evidence, FLOOR};
 use crate::diagnostic::Note;
+use crate::statistics::lanes::dot;
 use crate::sweep::Sweep;
 use crate::sweep::faults::hertz;
 use num_complex::Complex64;

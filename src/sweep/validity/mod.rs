@@ -11,7 +11,7 @@ mod kramers_kronig;
 mod neighbours;
 mod noise;
 mod nominal;
-mod sums;
+mod order;
 
 pub use completeness::complete;
 pub use nominal::expect_capacitance;

@@ -10,7 +10,8 @@
 //! of points is noisier than the model, the block counts.
 
 use super::neighbours::Neighbours;
-use super::sums::{dot, median, order_statistic, sum};
+use super::order::{median, order_statistic};
+use crate::statistics::lanes::{dot, total};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::LN_2;
@@ -133,7 +134,7 @@ impl Model {
             *excess = (d * w).min(CLIP) * w;
         }
         let factor = |above: f64, below: f64| above / (CLIPPED_MEAN * below);
-        self.a *= factor(sum(excess), sum(weight));
+        self.a *= factor(total(excess), total(weight));
         self.b *= factor(dot(excess, inverse), dot(weight, inverse));
         self.c *= factor(dot(excess, s), dot(weight, s));
     }

@@ -1,37 +1,4 @@
-//! Sums of products in lanes, so that they take no longer than memory does.
-
-use std::array::from_fn;
-
-/// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
-pub(super) const LANES: usize = 8;
-
-/// The values, and zeros after them up to a whole number of lanes.
-pub(super) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
-    let mut all = Vec::with_capacity(values.size_hint().0.next_multiple_of(LANES));
-    all.extend(values);
-    all.resize(all.len().next_multiple_of(LANES), 0.0);
-    all
-}
-
-/// The sum of the lanes, in the order that leaves them where they are.
-pub(super) fn sum(lanes: [f64; LANES]) -> f64 {
-    let four: [f64; 4] = from_fn(|i| lanes[i] + lanes[i + 4]);
-    (four[0] + four[2]) + (four[1] + four[3])
-}
-
-/// a·b of vectors that are a whole number of lanes long.
-pub(super) fn product(a: &[f64], b: &[f64]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for (a, b) in a
-        .as_chunks::<LANES>()
-        .0
-        .iter()
-        .zip(b.as_chunks::<LANES>().0)
-    {
-        lanes = from_fn(|i| lanes[i] + a[i] * b[i]);
-    }
-    sum(lanes)
-}
+//! The exponential function where it is wanted of many numbers.
 
 /// eˣ for |x| < 700, to two units in the last place, without branches: `2^k e^r` with `k` the nearest
 /// whole number to x/ln 2 and the series of `e^r` to r¹³. (W. J. Cody and W. Waite, Software Manual
@@ -83,13 +50,5 @@ mod tests {
                 exp(x)
             );
         }
-    }
-
-    #[test]
-    fn products_are_sums_of_all_terms() {
-        let [a, b] = [1.0, 2.0].map(|step| filled((0..13).map(|i| f64::from(i) * step)));
-        assert_eq!(a.len(), 16);
-        // 2 Σ i² to 12
-        assert_eq!(product(&a, &b), 2.0 * 650.0);
     }
 }

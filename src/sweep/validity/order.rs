@@ -1,32 +1,4 @@
-//! Sums, medians and the like of many numbers, quickly.
-
-/// Running sums, so that a sum is not bound by the latency of one.
-const LANES: usize = 8;
-
-/// Sum of products.
-pub(super) fn dot(a: &[f64], b: &[f64]) -> f64 {
-    let mut sums = [0.0; LANES];
-    let (a, rest_a) = a.as_chunks::<LANES>();
-    let (b, rest_b) = b.as_chunks::<LANES>();
-    for (a, b) in a.iter().zip(b) {
-        for ((sum, a), b) in sums.iter_mut().zip(a).zip(b) {
-            *sum += a * b;
-        }
-    }
-    let rest: f64 = rest_a.iter().zip(rest_b).map(|(a, b)| a * b).sum();
-    sums.iter().sum::<f64>() + rest
-}
-
-pub(super) fn sum(values: &[f64]) -> f64 {
-    let mut sums = [0.0; LANES];
-    let (values, rest) = values.as_chunks::<LANES>();
-    for values in values {
-        for (sum, value) in sums.iter_mut().zip(values) {
-            *sum += value;
-        }
-    }
-    sums.iter().sum::<f64>() + rest.iter().sum::<f64>()
-}
+//! Medians and the like of many numbers, quickly.
 
 /// The upper median of values that are not negative; NaN where there is none.
 pub(super) fn median(values: impl Iterator<Item = f64>) -> f64 {
@@ -58,18 +30,6 @@ fn select(mut bits: Vec<u64>, at: usize) -> f64 {
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn sums_have_every_term() {
-        for n in [0usize, 1, 7, 8, 9, 16, 31] {
-            let a: Vec<f64> = (0..n).map(|i| i as f64 + 1.0).collect();
-            let b: Vec<f64> = a.iter().map(|a| a * a).collect();
-            // Sums of the first n integers and of their cubes.
-            let triangle = (n * (n + 1) / 2) as f64;
-            assert_eq!(sum(&a), triangle);
-            assert_eq!(dot(&a, &b), triangle * triangle);
-        }
-    }
 
     #[test]
     fn order_statistics_are_those_of_the_sorted_values() {

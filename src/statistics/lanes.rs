@@ -1,0 +1,75 @@
+//! Sums in lanes, so that they are not bound by the latency of one running sum.
+
+use std::array::from_fn;
+
+/// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
+pub(crate) const LANES: usize = 8;
+
+/// The values, and zeros after them up to a whole number of lanes.
+pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
+    let mut all = Vec::with_capacity(values.size_hint().0.next_multiple_of(LANES));
+    all.extend(values);
+    all.resize(all.len().next_multiple_of(LANES), 0.0);
+    all
+}
+
+/// The sum of the lanes, in the order that leaves them where they are.
+pub(crate) fn sum(lanes: [f64; LANES]) -> f64 {
+    let four: [f64; 4] = from_fn(|i| lanes[i] + lanes[i + 4]);
+    (four[0] + four[2]) + (four[1] + four[3])
+}
+
+/// a·b of the whole lanes of two vectors; what is left over does not count.
+pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
+    let mut lanes = [0.0; LANES];
+    for (a, b) in a
+        .as_chunks::<LANES>()
+        .0
+        .iter()
+        .zip(b.as_chunks::<LANES>().0)
+    {
+        lanes = from_fn(|i| lanes[i] + a[i] * b[i]);
+    }
+    sum(lanes)
+}
+
+/// a·b of vectors of any length.
+pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
+    let (a_rest, b_rest) = (a.as_chunks::<LANES>().1, b.as_chunks::<LANES>().1);
+    let rest: f64 = a_rest.iter().zip(b_rest).map(|(a, b)| a * b).sum();
+    product(a, b) + rest
+}
+
+/// The sum of any number of values.
+pub(crate) fn total(values: &[f64]) -> f64 {
+    let (whole, rest) = values.as_chunks::<LANES>();
+    let lanes = whole.iter().fold([0.0; LANES], |lanes, values| {
+        from_fn(|i| lanes[i] + values[i])
+    });
+    sum(lanes) + rest.iter().sum::<f64>()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn sums_have_every_term() {
+        for n in [0usize, 1, 7, 8, 9, 16, 31] {
+            let a: Vec<f64> = (0..n).map(|i| i as f64 + 1.0).collect();
+            let b: Vec<f64> = a.iter().map(|a| a * a).collect();
+            // Sums of the first n integers and of their cubes.
+            let triangle = (n * (n + 1) / 2) as f64;
+            assert_eq!(total(&a), triangle);
+            assert_eq!(dot(&a, &b), triangle * triangle);
+        }
+    }
+
+    #[test]
+    fn products_are_sums_of_all_terms() {
+        let [a, b] = [1.0, 2.0].map(|step| filled((0..13).map(|i| f64::from(i) * step)));
+        assert_eq!(a.len(), 16);
+        // 2 Σ i² to 12
+        assert_eq!(product(&a, &b), 2.0 * 650.0);
+    }
+}
