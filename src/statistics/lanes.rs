@@ -1,9 +1,24 @@
 //! Sums in lanes, so that they are not bound by the latency of one running sum.
+//!
+//! Each lane adds its own numbers in their order, and the lanes are added up in one order: the sums are
+//! the same bits whatever width the processor works at.
 
+use pulp::Arch;
 use std::array::from_fn;
+use std::sync::LazyLock;
 
 /// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
 pub(crate) const LANES: usize = 8;
+
+static PROCESSOR: LazyLock<Arch> = LazyLock::new(Arch::new);
+
+/// Does the work with the widest registers that the processor has.
+///
+/// Only what is inlined into `work` gains. Products are rounded before they are added, here as anywhere.
+#[inline]
+pub(crate) fn wide<T>(work: impl FnOnce() -> T) -> T {
+    PROCESSOR.dispatch(work)
+}
 
 /// The values, and zeros after them up to a whole number of lanes.
 pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
@@ -14,12 +29,14 @@ pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
 }
 
 /// The sum of the lanes, in the order that leaves them where they are.
+#[inline(always)]
 pub(crate) fn sum(lanes: [f64; LANES]) -> f64 {
     let four: [f64; 4] = from_fn(|i| lanes[i] + lanes[i + 4]);
     (four[0] + four[2]) + (four[1] + four[3])
 }
 
 /// a·b of the whole lanes of two vectors; what is left over does not count.
+#[inline(always)]
 pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
     let mut lanes = [0.0; LANES];
     for (a, b) in a
@@ -33,7 +50,24 @@ pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
     sum(lanes)
 }
 
+/// Products of `N` vectors with one, each as [`product`] has it; `v` is read once for all.
+///
+/// All must be as long as `v`; what is left over of whole lanes does not count.
+#[inline(always)]
+pub(crate) fn products<const N: usize>(all: [&[f64]; N], v: &[f64]) -> [f64; N] {
+    let v = v.as_chunks::<LANES>().0;
+    let all = all.map(|a| &a.as_chunks::<LANES>().0[..v.len()]);
+    let mut lanes = [[0.0; LANES]; N];
+    for (i, v) in v.iter().enumerate() {
+        for (lanes, a) in lanes.iter_mut().zip(&all) {
+            *lanes = from_fn(|k| lanes[k] + a[i][k] * v[k]);
+        }
+    }
+    lanes.map(sum)
+}
+
 /// a·b of vectors of any length.
+#[inline(always)]
 pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
     let (a_rest, b_rest) = (a.as_chunks::<LANES>().1, b.as_chunks::<LANES>().1);
     let rest: f64 = a_rest.iter().zip(b_rest).map(|(a, b)| a * b).sum();
@@ -41,6 +75,7 @@ pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
 }
 
 /// The sum of any number of values.
+#[inline(always)]
 pub(crate) fn total(values: &[f64]) -> f64 {
     let (whole, rest) = values.as_chunks::<LANES>();
     let lanes = whole.iter().fold([0.0; LANES], |lanes, values| {
@@ -71,5 +106,18 @@ mod tests {
         assert_eq!(a.len(), 16);
         // 2 Σ i² to 12
         assert_eq!(product(&a, &b), 2.0 * 650.0);
+    }
+
+    #[test]
+    fn many_products_at_any_width_are_the_same_bits_as_one() {
+        let vector =
+            |k: usize| filled((0..75).map(move |i| (((i * 37 + k * 11) % 101) as f64).sqrt()));
+        let all: [Vec<f64>; 5] = from_fn(vector);
+        let v = vector(9);
+        let alone: [f64; 5] = from_fn(|k| product(&all[k], &v));
+        assert!(alone[0] > 0.0 && alone[0] != alone[1]);
+        let borrowed: [&[f64]; 5] = from_fn(|k| all[k].as_slice());
+        assert_eq!(products(borrowed, &v), alone);
+        assert_eq!(wide(|| products(borrowed, &v)), alone);
     }
 }
