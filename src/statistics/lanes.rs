@@ -3,7 +3,7 @@
 //! Each lane adds its own numbers in their order, and the lanes are added up in one order: the sums are
 //! the same bits whatever width the processor works at.
 
-use pulp::Arch;
+use pulp::{Arch, Simd, WithSimd};
 use std::array::from_fn;
 use std::sync::LazyLock;
 
@@ -12,12 +12,38 @@ pub(crate) const LANES: usize = 8;
 
 static PROCESSOR: LazyLock<Arch> = LazyLock::new(Arch::new);
 
-/// Does the work with the widest registers that the processor has.
-///
-/// Only what is inlined into `work` gains. Products are rounded before they are added, here as anywhere.
+/// Work for [`wide`]. `run` must be `#[inline(always)]`, and so must be what it calls: only what is
+/// inlined is made for wide registers. A closure is not, once it is longer than a few lines.
+pub(crate) trait Kernel {
+    type Output;
+    fn run(self) -> Self::Output;
+}
+
+impl<T, F: FnOnce() -> T> Kernel for F {
+    type Output = T;
+
+    #[inline(always)]
+    fn run(self) -> T {
+        self()
+    }
+}
+
+/// Does the work with the widest registers that the processor has. Products are rounded before they
+/// are added, here as anywhere.
 #[inline]
-pub(crate) fn wide<T>(work: impl FnOnce() -> T) -> T {
-    PROCESSOR.dispatch(work)
+pub(crate) fn wide<K: Kernel>(kernel: K) -> K::Output {
+    PROCESSOR.dispatch(Dispatched(kernel))
+}
+
+struct Dispatched<K>(K);
+
+impl<K: Kernel> WithSimd for Dispatched<K> {
+    type Output = K::Output;
+
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, _: S) -> K::Output {
+        self.0.run()
+    }
 }
 
 /// The values, and zeros after them up to a whole number of lanes.
