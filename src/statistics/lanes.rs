@@ -4,7 +4,6 @@
 //! the same bits whatever width the processor works at.
 
 use pulp::{Arch, Simd, WithSimd};
-use std::array::from_fn;
 use std::sync::LazyLock;
 
 /// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
@@ -57,8 +56,17 @@ pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
 /// The sum of the lanes, in the order that leaves them where they are.
 #[inline(always)]
 pub(crate) fn sum(lanes: [f64; LANES]) -> f64 {
-    let four: [f64; 4] = from_fn(|i| lanes[i] + lanes[i + 4]);
-    (four[0] + four[2]) + (four[1] + four[3])
+    let [a, b, c, d, e, f, g, h] = lanes;
+    ((a + e) + (c + g)) + ((b + f) + (d + h))
+}
+
+/// Adds a·b to each lane. A plain loop: what `std::array::from_fn` is given is not inlined into a
+/// [`Kernel`].
+#[inline(always)]
+pub(crate) fn add_product(lanes: &mut [f64; LANES], a: &[f64; LANES], b: &[f64; LANES]) {
+    for k in 0..LANES {
+        lanes[k] += a[k] * b[k];
+    }
 }
 
 /// a·b of the whole lanes of two vectors; what is left over does not count.
@@ -71,7 +79,7 @@ pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
         .iter()
         .zip(b.as_chunks::<LANES>().0)
     {
-        lanes = from_fn(|i| lanes[i] + a[i] * b[i]);
+        add_product(&mut lanes, a, b);
     }
     sum(lanes)
 }
@@ -82,14 +90,21 @@ pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
 #[inline(always)]
 pub(crate) fn products<const N: usize>(all: [&[f64]; N], v: &[f64]) -> [f64; N] {
     let v = v.as_chunks::<LANES>().0;
-    let all = all.map(|a| &a.as_chunks::<LANES>().0[..v.len()]);
+    let mut chunks: [&[[f64; LANES]]; N] = [&[]; N];
+    for (chunks, a) in chunks.iter_mut().zip(&all) {
+        *chunks = &a.as_chunks::<LANES>().0[..v.len()];
+    }
     let mut lanes = [[0.0; LANES]; N];
     for (i, v) in v.iter().enumerate() {
-        for (lanes, a) in lanes.iter_mut().zip(&all) {
-            *lanes = from_fn(|k| lanes[k] + a[i][k] * v[k]);
+        for n in 0..N {
+            add_product(&mut lanes[n], &chunks[n][i], v);
         }
     }
-    lanes.map(sum)
+    let mut sums = [0.0; N];
+    for n in 0..N {
+        sums[n] = sum(lanes[n]);
+    }
+    sums
 }
 
 /// a·b of vectors of any length.
@@ -104,15 +119,19 @@ pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
 #[inline(always)]
 pub(crate) fn total(values: &[f64]) -> f64 {
     let (whole, rest) = values.as_chunks::<LANES>();
-    let lanes = whole.iter().fold([0.0; LANES], |lanes, values| {
-        from_fn(|i| lanes[i] + values[i])
-    });
+    let mut lanes = [0.0; LANES];
+    for values in whole {
+        for k in 0..LANES {
+            lanes[k] += values[k];
+        }
+    }
     sum(lanes) + rest.iter().sum::<f64>()
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use std::array::from_fn;
 
     #[test]
     fn sums_have_every_term() {
