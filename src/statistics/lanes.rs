@@ -116,6 +116,96 @@ impl<S: Simd> Lanes<S> {
     }
 }
 
+/// Eight numbers of half the width, for what seven digits are plenty for.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Singles<S: Simd> {
+    simd: S,
+    /// As in [`Lanes`].
+    registers: [S::f32s; LANES],
+}
+
+impl<S: Simd> Singles<S> {
+    const REGISTERS: usize = LANES / S::F32_LANES;
+
+    /// The same number in every lane.
+    #[inline(always)]
+    pub(crate) fn all(simd: S, value: f32) -> Self {
+        Singles {
+            simd,
+            registers: [simd.splat_f32s(value); LANES],
+        }
+    }
+
+    #[inline(always)]
+    pub(crate) fn of(simd: S, values: &[f32; LANES]) -> Self {
+        let mut all = Singles::all(simd, 0.0);
+        let (loaded, _) = S::as_simd_f32s(values);
+        all.registers[..Self::REGISTERS].copy_from_slice(&loaded[..Self::REGISTERS]);
+        all
+    }
+
+    #[inline(always)]
+    pub(crate) fn values(self) -> [f32; LANES] {
+        let mut values = [0.0; LANES];
+        let (target, _) = S::as_mut_simd_f32s(&mut values);
+        target[..Self::REGISTERS].copy_from_slice(&self.registers[..Self::REGISTERS]);
+        values
+    }
+
+    #[inline(always)]
+    pub(crate) fn plus(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.add_f32s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    #[inline(always)]
+    pub(crate) fn times(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.mul_f32s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    #[inline(always)]
+    pub(crate) fn over(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.div_f32s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    /// Its own numbers where they are less than the other's, and the other's elsewhere.
+    #[inline(always)]
+    pub(crate) fn at_most(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            let (own, others) = (self.registers[k], other.registers[k]);
+            let less = self.simd.less_than_f32s(own, others);
+            self.registers[k] = self.simd.select_f32s(less, own, others);
+        }
+        self
+    }
+
+    /// 1 where its own numbers are less than the other's, and 0 elsewhere.
+    #[inline(always)]
+    pub(crate) fn is_less(mut self, other: Self) -> Self {
+        let (one, zero) = (self.simd.splat_f32s(1.0), self.simd.splat_f32s(0.0));
+        for k in 0..Self::REGISTERS {
+            let less = (self.simd).less_than_f32s(self.registers[k], other.registers[k]);
+            self.registers[k] = self.simd.select_f32s(less, one, zero);
+        }
+        self
+    }
+
+    /// The sum of the lanes, in the order of [`sum`].
+    #[inline(always)]
+    pub(crate) fn sum(self) -> f32 {
+        let [a, b, c, d, e, f, g, h] = self.values();
+        ((a + e) + (c + g)) + ((b + f) + (d + h))
+    }
+}
+
 /// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
 pub(crate) const LANES: usize = 8;
 
@@ -249,5 +339,38 @@ mod tests {
         let borrowed: [&[f64]; 5] = from_fn(|k| all[k].as_slice());
         assert_eq!(products(Scalar128b, borrowed, &v), alone);
         assert_eq!(wide(Products(borrowed, &v)), alone);
+    }
+    struct Of<'a>(&'a [f32; LANES], &'a [f32; LANES]);
+
+    impl Kernel for Of<'_> {
+        type Output = ([[f32; LANES]; 5], f32);
+
+        #[inline(always)]
+        fn run<S: Simd>(self, simd: S) -> Self::Output {
+            let [a, b] = [Singles::of(simd, self.0), Singles::of(simd, self.1)];
+            let all = [a.plus(b), a.times(b), a.over(b), a.at_most(b), a.is_less(b)];
+            (all.map(Singles::values), a.sum())
+        }
+    }
+
+    #[test]
+    fn singles_are_what_each_number_alone_gives() {
+        let a: [f32; LANES] = from_fn(|i| ((i * 37 + 11) % 19) as f32 * 0.3);
+        let mut b: [f32; LANES] = from_fn(|i| ((i * 23 + 5) % 17) as f32 * 0.7);
+        b[6] = f32::NAN;
+        let alone =
+            |of: fn(f32, f32) -> f32| -> [u32; LANES] { from_fn(|i| of(a[i], b[i]).to_bits()) };
+        let alone = [
+            alone(|a, b| a + b),
+            alone(|a, b| a * b),
+            alone(|a, b| a / b),
+            alone(|a, b| if a < b { a } else { b }),
+            alone(|a, b| if a < b { 1.0 } else { 0.0 }),
+        ];
+        let total = ((a[0] + a[4]) + (a[2] + a[6])) + ((a[1] + a[5]) + (a[3] + a[7]));
+        for (found, sum) in [wide(Of(&a, &b)), Of(&a, &b).run(Scalar128b)] {
+            assert_eq!(found.map(|lanes| lanes.map(f32::to_bits)), alone);
+            assert_eq!(sum.to_bits(), total.to_bits());
+        }
     }
 }

@@ -34,23 +34,34 @@ enum Kind {
     Step,
 }
 
+/// How far a point is beyond what no jump is, from its squared deviation (relative), squared impedance and
+/// variance; not positive where it is not. By squares, as hardly a point is.
+#[inline(always)]
+pub(super) fn beyond(deviation: f64, square: f64, variance: f64) -> f64 {
+    let of_account = deviation - OF_ACCOUNT * OF_ACCOUNT;
+    let significant = deviation * square - SIGNIFICANT * SIGNIFICANT * variance;
+    if of_account > 0.0 { significant } else { 0.0 }
+}
+
 /// Finds the largest jump of a sweep.
 pub(super) fn find(sweep: &Sweep, noise: &Noise) -> Option<Jump> {
+    if !noise.jumps_anywhere() {
+        return None;
+    }
     let is_jump = |i: usize| {
         let level = noise.at(i);
-        let (deviation, interpolation) = noise.deviation(sweep, i)?;
+        let (deviation, interpolation) = noise.deviation_of(sweep, i)?;
         let size = deviation.norm();
         let allowed = SIGNIFICANT * level + 3.0 * interpolation + OF_ACCOUNT;
         (level < QUIET && size > allowed).then_some((i, size))
     };
-    // Squares first: hardly a point passes them.
-    let (significant, of_account) = (SIGNIFICANT * SIGNIFICANT, OF_ACCOUNT * OF_ACCOUNT);
+    let points = noise.square().iter().zip(noise.variance());
     let found: Vec<(usize, f64)> = noise
-        .deviation
+        .deviation()
         .iter()
-        .zip(&noise.variance)
+        .zip(points)
         .enumerate()
-        .filter(|(_, (d, variance))| **d > of_account && **d > significant * **variance)
+        .filter(|(_, (d, (s, v)))| beyond(**d, **s, **v) > 0.0)
         .filter_map(|(i, _)| is_jump(i))
         .collect();
     // Each point disturbs the deviations of two neighbours on either side.
@@ -77,14 +88,14 @@ fn kind(sweep: &Sweep, noise: &Noise, at: usize, places: usize) -> Kind {
     }
     // A contact that fails does so again and again. At a step the two points beside it deviate alike and in opposite senses; at a single point
     // the neighbours deviate by two thirds.
-    let Some((here, _)) = noise.deviation(sweep, at) else {
+    let Some((here, _)) = noise.deviation_of(sweep, at) else {
         return Kind::Moved;
     };
     let beside = [at.checked_sub(1), Some(at + 1)];
     let opposite = beside
         .into_iter()
         .flatten()
-        .filter_map(|i| noise.deviation(sweep, i))
+        .filter_map(|i| noise.deviation_of(sweep, i))
         .any(|(d, _)| (d * here.conj()).re < 0.0 && d.norm() > 0.8 * here.norm());
     if opposite && places == 1 {
         Kind::Step

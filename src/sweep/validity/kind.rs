@@ -39,7 +39,7 @@ pub(super) fn no_part(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Opti
     if usable * 4 > n {
         return None;
     }
-    let median = median(noise.square.iter().copied()).sqrt();
+    let median = median(noise.square().iter().copied()).sqrt();
     Some(if median > 1e3 {
         open_contact("the impedance is high and nearly all noise")
     } else {
@@ -66,13 +66,15 @@ const SIGNIFICANT: f64 = 4.0;
 
 /// No part gives power: `Re Z ≥ 0`, up to noise and the uncertainty of the phase.
 pub(super) fn passive(sweep: &Sweep, evidence: &Evidence, noise: &Noise) -> Option<Note> {
+    if !noise.is_negative_anywhere() {
+        return None;
+    }
     let tolerance = evidence.phase_tolerance();
     let active: Vec<usize> = sweep
         .impedance
         .iter()
         .enumerate()
         .filter(|(i, z)| {
-            // Cheap test first: most points have a positive resistance.
             z.re < 0.0
                 && noise.usable(*i)
                 && z.re < -(SIGNIFICANT * noise.at(*i) + tolerance) * z.norm()
@@ -115,19 +117,21 @@ const SHORT: f64 = 0.1;
 
 /// At the low end, the reactance must be that of a capacitor.
 pub(super) fn capacitive(sweep: &Sweep, noise: &Noise) -> Option<Note> {
-    let low: Vec<_> = sweep
-        .impedance
-        .iter()
-        .enumerate()
+    let points = noise.im().iter().zip(noise.square()).enumerate();
+    let low = points
         .filter(|(i, _)| noise.usable(*i))
-        .map(|(_, z)| z)
-        .take(LOW_END.min(sweep.impedance.len().div_ceil(3)))
-        .collect();
-    let capacitive = low.iter().filter(|z| z.im < -REACTIVE * z.norm()).count();
-    if capacitive * 2 > low.len() {
+        .map(|(_, (im, square))| (*im, *square))
+        .take(LOW_END.min(sweep.impedance.len().div_ceil(3)));
+    let (mut looked_at, mut capacitive, mut least) = (0, 0, f64::INFINITY);
+    for (im, square) in low {
+        looked_at += 1;
+        capacitive += usize::from(im < 0.0 && im * im > REACTIVE * REACTIVE * square);
+        least = square.min(least);
+    }
+    if capacitive * 2 > looked_at {
         return None;
     }
-    let size = low.iter().map(|z| z.norm()).fold(f64::INFINITY, f64::min);
+    let size = least.sqrt();
     Some(if size < SHORT {
         Note::new(
             "short_contact",
@@ -145,29 +149,32 @@ pub(super) fn capacitive(sweep: &Sweep, noise: &Noise) -> Option<Note> {
 }
 
 /// Points in a row that make a crossing.
-const IN_A_ROW: usize = 3;
+const IN_A_ROW: u64 = 3;
 
 /// Whether a reactance stands out by five times the noise and a fiftieth of the impedance, from its
-/// squared magnitude and relative variance.
+/// squared magnitude and variance.
+#[inline(always)]
 fn is_significant(reactance: f64, square: f64, variance: f64) -> bool {
-    let noise = 25.0 * variance;
-    reactance * reactance > if noise > 4e-4 { noise } else { 4e-4 } * square
+    let (noise, share) = (25.0 * variance, 4e-4 * square);
+    reactance * reactance > if noise > share { noise } else { share }
 }
 
 /// Whether enough points are capacitive behind the first inductive one that there can be a second
 /// resonance: a quick look, as there hardly ever is one.
 fn turns_back(noise: &Noise) -> bool {
-    let (im, square, variance) = (&noise.im, &noise.square, &noise.variance);
+    let (im, square, variance) = (noise.im(), noise.square(), noise.variance());
     let all = im.iter().zip(square).zip(variance);
     let mut inductive =
         all.map(|((x, square), variance)| *x > 0.0 && is_significant(*x, *square, *variance));
     let Some(first) = inductive.position(|is| is) else {
         return false;
     };
-    let behind = im.iter().zip(square).zip(variance).skip(first);
-    let capacitive = behind
-        .filter(|((x, square), variance)| **x < 0.0 && is_significant(**x, **square, **variance));
-    capacitive.count() >= IN_A_ROW
+    let [im, square, variance] = [im, square, variance].map(|v| v.get(first..).unwrap_or_default());
+    let mut capacitive = 0u64;
+    for ((x, square), variance) in im.iter().zip(square).zip(variance) {
+        capacitive += u64::from((*x < 0.0) & is_significant(*x, *square, *variance));
+    }
+    capacitive >= IN_A_ROW
 }
 
 /// A capacitor with its leads resonates once in series; more crossings of the reactance are
@@ -179,7 +186,7 @@ pub(super) fn one_resonance(sweep: &Sweep, noise: &Noise) -> Option<Note> {
     let mut sign = -1;
     let mut crossings = Vec::new();
     let mut run = (0, 0);
-    let points = noise.im.iter().zip(&noise.square).zip(&noise.variance);
+    let points = noise.im().iter().zip(noise.square()).zip(noise.variance());
     for (((x, square), variance), f) in points.zip(&sweep.frequency) {
         let now = match is_significant(*x, *square, *variance) {
             true if *x < 0.0 => -1,

@@ -141,8 +141,11 @@ pub(super) fn unsteady(sweep: &Sweep) -> Option<Note> {
 const FLOOR: f64 = 0.1;
 
 fn noise_floor(sweep: &Sweep, noise: &Noise) -> Option<Note> {
+    if !noise.is_noisy_anywhere() {
+        return None;
+    }
     let smallest = noise.least();
-    let least = noise.square.iter().position(|s| *s == smallest)?;
+    let least = noise.square().iter().position(|s| *s == smallest)?;
     let found = noise.at(least);
     (found > FLOOR).then(|| {
         Note::new(
@@ -158,6 +161,9 @@ fn noise_floor(sweep: &Sweep, noise: &Noise) -> Option<Note> {
 
 /// Noise at the low end is no fault of the sweep, but its readings there are poor.
 fn noisy_end(sweep: &Sweep, noise: &Noise) -> Option<Note> {
+    if !noise.is_noisy_anywhere() {
+        return None;
+    }
     let noisy = (0..sweep.frequency.len())
         .take_while(|&i| noise.exceeds(i, FLOOR))
         .count();

@@ -2,6 +2,7 @@
 //!
 //! The weights depend on the frequency list alone, so they are made once for all parts of a lot.
 
+use crate::statistics::lanes::{Kernel, Simd, wide};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::cell::RefCell;
@@ -36,7 +37,10 @@ impl Neighbours {
     pub fn of(frequency: &[f64]) -> Rc<Neighbours> {
         let kept = LISTS.with(|lists| {
             let lists = lists.try_borrow().ok()?;
-            lists.iter().find(|l| l.frequency == frequency).cloned()
+            lists
+                .iter()
+                .find(|l| same(&l.frequency, frequency))
+                .cloned()
         });
         kept.unwrap_or_else(|| {
             let made = Rc::new(Neighbours::new(frequency));
@@ -50,6 +54,11 @@ impl Neighbours {
             });
             made
         })
+    }
+
+    /// The list that they are of, in Hz.
+    pub fn frequency(&self) -> &[f64] {
+        &self.frequency
     }
 
     fn new(frequency: &[f64]) -> Neighbours {
@@ -82,33 +91,30 @@ impl Neighbours {
     }
 
     /// Squares of the deviations of all points from their cubics over the larger of both squared
-    /// magnitudes, scaled to the noise of one point; NaN where there is no cubic.
-    pub fn squared_deviations(&self, re: &[f64], im: &[f64], square: &[f64]) -> Vec<f64> {
-        let n = square.len();
-        let (expected_re, expected_im) = (self.expected(re), self.expected(im));
-        let expected = expected_re.iter().zip(&expected_im);
-        let points = re.iter().zip(im).zip(square).skip(2);
-        let mut all = vec![f64::NAN; n];
-        let targets = all.iter_mut().skip(2).zip(&self.share);
-        for ((target, share), ((er, ei), ((re, im), s))) in targets.zip(expected.zip(points)) {
-            let (dr, di) = (re - er, im - ei);
-            let e = er * er + ei * ei;
-            let larger = if e > *s { e } else { *s };
-            *target = (dr * dr + di * di) * share / larger;
+    /// magnitudes, scaled to the noise of one point, into `all`; NaN where there is no cubic.
+    #[inline(always)]
+    pub fn squared_deviations(&self, re: &[f64], im: &[f64], square: &[f64], all: &mut [f64]) {
+        all.fill(f64::NAN);
+        let n = self.share.len();
+        let [re, im] = [re, im].map(|values| around(values, n));
+        let [a, b, c, d] = self.weights.each_ref().map(|w| w.get(..n));
+        let (Some(re), Some(im), Some(square), Some(all)) =
+            (re, im, square.get(2..n + 2), all.get_mut(2..n + 2))
+        else {
+            return;
+        };
+        let (Some(a), Some(b), Some(c), Some(d)) = (a, b, c, d) else {
+            return;
+        };
+        let share = self.share.as_slice();
+        for i in 0..n {
+            let w = [a[i], b[i], c[i], d[i]];
+            let (er, ei) = (cubic(&re, i, w), cubic(&im, i, w));
+            let (dr, di) = (re[2][i] - er, im[2][i] - ei);
+            let (e, s) = (er * er + ei * ei, square[i]);
+            let larger = if e > s { e } else { s };
+            all[i] = (dr * dr + di * di) * share[i] / larger;
         }
-        all
-    }
-
-    /// Values of the cubics at their points.
-    fn expected(&self, values: &[f64]) -> Vec<f64> {
-        let from = |at: usize| values.get(at..).unwrap_or_default();
-        let [a, b, c, d] = &self.weights;
-        let before = from(0).iter().zip(a).zip(from(1).iter().zip(b));
-        let after = from(3).iter().zip(c).zip(from(4).iter().zip(d));
-        before
-            .zip(after)
-            .map(|(((p, a), (q, b)), ((r, c), (s, d)))| p * a + q * b + r * c + s * d)
-            .collect()
     }
 
     /// Complex deviation of one point, scaled as its square is, and what interpolation alone can
@@ -129,6 +135,39 @@ impl Neighbours {
             self.curvature.get(at)? * largest / size,
         ))
     }
+}
+
+/// Whether two lists are the same: most that are not differ at once, and the others are compared to their end.
+fn same(a: &[f64], b: &[f64]) -> bool {
+    a.len() == b.len() && a.first() == b.first() && wide(Same(a, b))
+}
+
+struct Same<'a>(&'a [f64], &'a [f64]);
+
+impl Kernel for Same<'_> {
+    type Output = bool;
+
+    #[inline(always)]
+    fn run<S: Simd>(self, _: S) -> bool {
+        let mut other = 0u64;
+        for (a, b) in self.0.iter().zip(self.1) {
+            other += u64::from(a != b);
+        }
+        other == 0
+    }
+}
+
+/// The two values before, the value itself and the two behind it, of `n` points from the third on.
+#[inline(always)]
+fn around(values: &[f64], n: usize) -> Option<[&[f64]; 5]> {
+    (values.len() >= n + 4 && n > 0).then(|| std::array::from_fn(|k| &values[k..k + n]))
+}
+
+/// Value of a point's cubic from the values around and their weights.
+#[inline(always)]
+fn cubic(around: &[&[f64]; 5], i: usize, w: [f64; 4]) -> f64 {
+    let [before, last, _, next, behind] = around;
+    before[i] * w[0] + last[i] * w[1] + next[i] * w[2] + behind[i] * w[3]
 }
 
 /// Variance of a point's difference to its cubic over its own, where all points have the same.
@@ -176,8 +215,8 @@ mod tests {
         let re: Vec<f64> = sweep.impedance.iter().map(|z| z.re).collect();
         let im: Vec<f64> = sweep.impedance.iter().map(|z| z.im).collect();
         let square: Vec<f64> = sweep.impedance.iter().map(|z| z.norm_sqr()).collect();
-        let squares = neighbours.squared_deviations(&re, &im, &square);
-        assert_eq!(squares.len(), frequency.len());
+        let mut squares = vec![0.0; frequency.len()];
+        neighbours.squared_deviations(&re, &im, &square, &mut squares);
         let mut known = 0;
         for (point, found) in squares.iter().enumerate() {
             match neighbours.deviation(&sweep, point) {

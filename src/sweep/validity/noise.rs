@@ -9,15 +9,20 @@
 //! the multiplicative update), with large squares clipped so that outliers stay out; where a block
 //! of points is noisier than the model, the block counts.
 
+use super::jumps::beyond;
 use super::neighbours::Neighbours;
-use super::order::{median, order_statistic};
-use crate::statistics::lanes::{dot, total};
+use super::order::{FEW, at_place_of_few, median, order_statistic};
+use super::{FLOOR, UNUSABLE};
+use crate::statistics::lanes::{Kernel, LANES, Simd, Singles, wide};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
+use std::array::from_fn;
+use std::cell::Cell;
+use std::cmp::Ordering;
 use std::f64::consts::LN_2;
 use std::rc::Rc;
 
-/// Points of one block.
+/// Points of one block, or up to twice as many.
 const BLOCK: usize = 16;
 
 /// No sweep is taken for less noisy than its digits (relative).
@@ -29,221 +34,509 @@ const FITTED: usize = 128;
 /// Rounds of the fit; what is left to do then is less than a block's own scatter.
 const ROUNDS: usize = 16;
 
+/// A round that moves the points' variances by less than this, relative, is the last.
+const SETTLED: f32 = 3e-3;
+
 /// Squares count at most so many times the model's …
-const CLIP: f64 = 1.5;
+const CLIP: f32 = 1.5;
 /// … which leaves this share of the mean of an exponential distribution, `1 - exp(-CLIP)`.
-const CLIPPED_MEAN: f64 = 0.776_869_839_851_570_2;
+const CLIPPED_MEAN: f32 = 0.776_869_84;
 
 /// The impedance of a sweep with its deviation from its neighbours and the noise along it.
-#[derive(Debug, Clone)]
+#[derive(Debug)]
 pub(super) struct Noise {
-    /// Real parts in Ω.
-    pub re: Vec<f64>,
-    /// Imaginary parts in Ω.
-    pub im: Vec<f64>,
-    /// Squared magnitudes of the impedance in Ω².
-    pub square: Vec<f64>,
-    /// Squared deviations from the cubic through the neighbours, relative; NaN where there is none.
-    pub deviation: Vec<f64>,
-    /// Variance of the complex noise relative to |Z|²; 0 where there are too few points to show any.
-    pub variance: Vec<f64>,
+    columns: Columns,
+    extremes: Extremes,
     neighbours: Rc<Neighbours>,
+}
+
+/// Columns of a sweep, one behind the other.
+#[derive(Debug)]
+struct Columns {
+    points: usize,
+    values: Vec<f64>,
+}
+
+/// Columns of [`Columns`].
+const COLUMNS: usize = 5;
+
+/// A thread keeps the memory of the last sweep for the next, up to so many values.
+const KEPT: usize = 1 << 16;
+
+thread_local! {
+    static SPARE: Cell<Vec<f64>> = const { Cell::new(Vec::new()) };
+}
+
+impl Columns {
+    /// Room for so many points; what stands in it is of no account.
+    fn of(points: usize) -> Self {
+        let mut values = SPARE.try_with(Cell::take).unwrap_or_default();
+        values.resize(COLUMNS * points, 0.0);
+        Columns { points, values }
+    }
+
+    fn column(&self, at: usize) -> &[f64] {
+        let from = at * self.points;
+        self.values
+            .get(from..from + self.points)
+            .unwrap_or_default()
+    }
+
+    fn all(&mut self) -> [&mut [f64]; COLUMNS] {
+        let mut rest = self.values.as_mut_slice();
+        let points = self.points;
+        from_fn(|_| {
+            let (column, others) = std::mem::take(&mut rest).split_at_mut(points);
+            rest = others;
+            column
+        })
+    }
+}
+
+impl Drop for Columns {
+    fn drop(&mut self) {
+        let values = std::mem::take(&mut self.values);
+        if values.len() <= KEPT {
+            // A thread that ends keeps nothing.
+            let _ = SPARE.try_with(|spare| spare.set(values));
+        }
+    }
 }
 
 /// Estimates the noise of a sweep.
 pub(super) fn estimate(sweep: &Sweep) -> Noise {
     let neighbours = Neighbours::of(&sweep.frequency);
-    let re: Vec<f64> = sweep.impedance.iter().map(|z| z.re).collect();
-    let im: Vec<f64> = sweep.impedance.iter().map(|z| z.im).collect();
-    let square: Vec<f64> = re.iter().zip(&im).map(|(x, y)| x * x + y * y).collect();
-    let deviation = neighbours.squared_deviations(&re, &im, &square);
-    let variance = variance(&square, &deviation);
+    let mut columns = Columns::of(sweep.impedance.len());
+    let extremes = wide(Estimate {
+        impedance: &sweep.impedance,
+        neighbours: &neighbours,
+        columns: columns.all(),
+    });
     Noise {
-        re,
-        im,
-        square,
-        deviation,
-        variance,
+        columns,
+        extremes,
         neighbours,
     }
 }
 
-/// Points by their squared deviation `d` and squared impedance `s`.
-#[derive(Debug)]
-struct Points {
-    d: Vec<f64>,
-    s: Vec<f64>,
-    /// `1/s`
-    inverse: Vec<f64>,
-    /// One over the model's variance.
-    weight: Vec<f64>,
-    /// The clipped square over the model's, times the weight.
-    excess: Vec<f64>,
+/// What makes the columns of a sweep.
+struct Estimate<'a> {
+    impedance: &'a [Complex64],
+    neighbours: &'a Neighbours,
+    columns: [&'a mut [f64]; COLUMNS],
 }
 
-impl Points {
-    fn with_capacity(capacity: usize) -> Self {
-        let list = || Vec::with_capacity(capacity);
-        Points {
-            d: list(),
-            s: list(),
-            inverse: list(),
-            weight: list(),
-            excess: list(),
-        }
+impl Kernel for Estimate<'_> {
+    type Output = Extremes;
+
+    #[inline(always)]
+    fn run<S: Simd>(self, simd: S) -> Extremes {
+        let [re, im, square, deviation, variance] = self.columns;
+        split(self.impedance, re, im, square);
+        self.neighbours
+            .squared_deviations(re, im, square, deviation);
+        spread(simd, square, deviation, variance);
+        Extremes::of(re, square, deviation, variance)
     }
 }
 
-/// Squared deviation that counts.
-fn least(deviation: f64) -> f64 {
-    deviation.max(LEAST * LEAST)
+/// Real and imaginary parts and squared magnitudes.
+#[inline(always)]
+fn split(impedance: &[Complex64], re: &mut [f64], im: &mut [f64], square: &mut [f64]) {
+    let targets = re.iter_mut().zip(im).zip(square);
+    for (z, ((re, im), square)) in impedance.iter().zip(targets) {
+        (*re, *im) = (z.re, z.im);
+        *square = z.re * z.re + z.im * z.im;
+    }
 }
 
-/// Squared impedance that can be divided by.
-fn divisor(square: f64) -> f64 {
-    square.max(f64::MIN_POSITIVE)
+/// Points by their squared deviation `d` and squared impedance `s`. Seven digits are plenty for what is a
+/// statistical estimate, so that twice as many are worked on at once; to have them in range, `s` is in a unit
+/// of its own. Behind the last point stand some that do not count.
+struct Points {
+    count: usize,
+    /// That of `s`, in Ω².
+    unit: f64,
+    d: [f32; FITTED],
+    s: [f32; FITTED],
+    /// `1/s`
+    inverse: [f32; FITTED],
+    /// 1 for a point, 0 for none.
+    counts: [f32; FITTED],
+    /// The fifth of the points with the least `s` is not above this, that with the largest not below.
+    fifths: [f32; 2],
+}
+
+/// The range of `s`.
+const RANGE: f64 = 1e18;
+
+impl Points {
+    /// Points evenly taken out of all, at most `FITTED`.
+    #[inline(always)]
+    fn of(square: &[f64], deviation: &[f64]) -> Self {
+        let stride = square.len().div_ceil(FITTED).max(1);
+        let count = square.len().div_ceil(stride);
+        let squares = || square.iter().step_by(stride).copied();
+        let fifth = count.div_ceil(5);
+        let low = order_statistic(squares(), fifth.saturating_sub(1));
+        let high = order_statistic(squares(), count - fifth);
+        let unit = (low.sqrt() * high.sqrt()).clamp(f64::MIN_POSITIVE, f64::MAX);
+        let scaled = |s: f64| less(RANGE, more(1.0 / RANGE, s / unit)) as f32;
+        let mut points = Points {
+            count,
+            unit,
+            d: [1.0; FITTED],
+            s: [1.0; FITTED],
+            inverse: [1.0; FITTED],
+            counts: [0.0; FITTED],
+            fifths: [low, high].map(scaled),
+        };
+        let targets = points
+            .d
+            .iter_mut()
+            .zip(&mut points.s)
+            .zip(&mut points.counts);
+        let all = squares().zip(deviation.iter().step_by(stride));
+        for (((d, s), counts), (square, deviation)) in targets.zip(all) {
+            *d = more(LEAST * LEAST, *deviation) as f32;
+            *s = scaled(square);
+            *counts = 1.0;
+        }
+        for (inverse, s) in points.inverse.iter_mut().zip(&points.s) {
+            *inverse = 1.0 / s;
+        }
+        points
+    }
 }
 
 /// Relative variance `a + b/s + c s`.
 #[derive(Debug, Clone, Copy)]
 struct Model {
-    a: f64,
-    b: f64,
-    c: f64,
+    a: f32,
+    b: f32,
+    c: f32,
+}
+
+/// The median of what is made of the points whose `s` a condition takes, of so many at most.
+#[inline(always)]
+fn median_of<S: Simd>(
+    simd: S,
+    points: impl Iterator<Item = (f32, f32)>,
+    takes: impl Fn(f32) -> bool,
+    most: usize,
+    of: impl Fn(f32, f32) -> f32,
+) -> f32 {
+    let mut values = [f32::INFINITY; FEW];
+    let mut count = 0;
+    let taken = points.filter(|(_, s)| takes(*s)).take(most);
+    for (value, (d, s)) in values.iter_mut().zip(taken) {
+        *value = of(d, s);
+        count += 1;
+    }
+    at_place_of_few(simd, &values, count, count / 2)
 }
 
 impl Model {
-    fn at(&self, s: f64, inverse: f64) -> f64 {
-        self.a + self.b * inverse + self.c * s
+    /// Begins with each floor as the points show it where it would rule alone: the fifth with the
+    /// smallest and the fifth with the largest impedance.
+    #[inline(always)]
+    fn first<S: Simd>(simd: S, points: &Points) -> Self {
+        let known = || {
+            let known = points.d.iter().copied().zip(points.s.iter().copied());
+            known.take(points.count)
+        };
+        let [low, high] = points.fifths;
+        let fifth = points.count.div_ceil(5);
+        let factor = 1.0 / std::f32::consts::LN_2;
+        Model {
+            a: factor * median(known().map(|(d, _)| f64::from(d))) as f32,
+            b: factor * median_of(simd, known(), |s| s <= low, fifth, |d, s| d * s),
+            c: factor * median_of(simd, known().rev(), |s| s >= high, fifth, |d, s| d / s),
+        }
     }
 
-    /// One multiplicative round over the points.
-    fn round(&mut self, points: &mut Points) {
-        let Points {
-            d,
-            s,
-            inverse,
-            weight,
-            excess,
-        } = points;
-        let known = d.iter().zip(s.iter().zip(inverse.iter()));
-        for ((weight, excess), (d, (s, inverse))) in weight.iter_mut().zip(&mut *excess).zip(known)
-        {
-            let w = 1.0 / self.at(*s, *inverse);
-            *weight = w;
-            *excess = (d * w).min(CLIP) * w;
+    /// One multiplicative round over the points; how far it moves the points' variances on average, relative.
+    #[inline(always)]
+    fn round<S: Simd>(&mut self, simd: S, points: &Points) -> f32 {
+        let Model { a, b, c } = *self;
+        let [of_all, of_low, of_high, clip] = [a, b, c, CLIP].map(|v| Singles::all(simd, v));
+        let mut sums = [[Singles::all(simd, 0.0); 3]; 2];
+        let lists = [&points.d, &points.s, &points.inverse, &points.counts];
+        let [d, s, inverse, counts] = lists.map(|list| list.as_chunks::<LANES>().0);
+        let known = d.iter().zip(s).zip(inverse.iter().zip(counts));
+        for ((d, s), (inverse, counts)) in known.take(points.count.div_ceil(LANES)) {
+            let [d, s, inverse, counts] = [d, s, inverse, counts].map(|v| Singles::of(simd, v));
+            let model = of_all.plus(of_low.times(inverse)).plus(of_high.times(s));
+            let weight = counts.over(model);
+            let excess = d.times(weight).at_most(clip).times(weight);
+            for ([even, over, times], value) in sums.iter_mut().zip([weight, excess]) {
+                *even = even.plus(value);
+                *over = over.plus(value.times(inverse));
+                *times = times.plus(value.times(s));
+            }
         }
-        let factor = |above: f64, below: f64| above / (CLIPPED_MEAN * below);
-        self.a *= factor(total(excess), total(weight));
-        self.b *= factor(dot(excess, inverse), dot(weight, inverse));
-        self.c *= factor(dot(excess, s), dot(weight, s));
+        let [weights, excesses] = sums.map(|sums| sums.map(Singles::sum));
+        let factors: [f32; 3] = from_fn(|k| excesses[k] / (CLIPPED_MEAN * weights[k]));
+        // Each term's part in the points' variances.
+        let parts = [a * weights[0], b * weights[1], c * weights[2]];
+        let moved: [f32; 3] = from_fn(|k| parts[k] * (factors[k] - 1.0).abs());
+        self.a *= factors[0];
+        self.b *= factors[1];
+        self.c *= factors[2];
+        moved.iter().sum::<f32>() / points.count as f32
+    }
+
+    /// That of a sweep, by its points.
+    #[inline(always)]
+    fn of<S: Simd>(simd: S, points: &Points) -> Self {
+        let mut model = Model::first(simd, points);
+        for _ in 0..ROUNDS {
+            if model.round(simd, points) < SETTLED {
+                break;
+            }
+        }
+        model
     }
 }
 
-/// Relative variance of each point.
-fn variance(square: &[f64], deviation: &[f64]) -> Vec<f64> {
+/// Variance of each point in Ω²: that of the model, or that of the point's block where it is more.
+#[inline(always)]
+fn spread<S: Simd>(simd: S, square: &[f64], deviation: &[f64], variance: &mut [f64]) {
     let n = square.len();
     if n < 4 {
-        return vec![0.0; n];
+        variance.fill(0.0);
+        return;
     }
-    let model = fit(square, deviation);
-    let mut all: Vec<f64> = square
-        .iter()
-        .map(|s| divisor(*s))
-        .map(|s| model.at(s, 1.0 / s))
-        .collect();
+    let points = Points::of(square, deviation);
+    let model = Model::of(simd, &points);
+    let a = f64::from(model.a);
+    let (b, c) = (
+        f64::from(model.b) * points.unit,
+        f64::from(model.c) / points.unit,
+    );
+    for (v, s) in variance.iter_mut().zip(square) {
+        *v = b + s * (a + c * s);
+    }
     let size = n.div_ceil((n / BLOCK).max(1));
-    for (block, deviation) in all.chunks_mut(size).zip(deviation.chunks(size)) {
-        let factor = excess(block, deviation);
+    let blocks = square.chunks(size).zip(deviation.chunks(size));
+    for (variance, (square, deviation)) in variance.chunks_mut(size).zip(blocks) {
+        let factor = excess(simd, variance, square, deviation);
         if factor > 1.0 {
-            block.iter_mut().for_each(|v| *v *= factor);
+            variance.iter_mut().for_each(|v| *v *= factor);
         }
     }
-    all
-}
-
-fn fit(square: &[f64], deviation: &[f64]) -> Model {
-    let stride = square.len().div_ceil(FITTED);
-    let mut points = Points::with_capacity(FITTED);
-    let all = square.iter().zip(deviation).step_by(stride);
-    for (s, d) in all.map(|(s, d)| (divisor(*s), least(*d))) {
-        points.d.push(d);
-        points.s.push(s);
-        points.inverse.push(1.0 / s);
-    }
-    points.weight.resize(points.d.len(), 0.0);
-    points.excess.resize(points.d.len(), 0.0);
-    // Begin with each floor as the points show it where it would rule alone: the fifth with the
-    // smallest and the fifth with the largest impedance.
-    let fifth = points.s.len().div_ceil(5);
-    let low = order_statistic(points.s.iter().copied(), fifth - 1);
-    let high = order_statistic(points.s.iter().copied(), points.s.len() - fifth);
-    let pairs = || points.d.iter().zip(&points.s);
-    let lowest = pairs().filter(|(_, s)| **s <= low).take(fifth);
-    let highest = pairs().rev().filter(|(_, s)| **s >= high).take(fifth);
-    let mut model = Model {
-        a: median(points.d.iter().copied()) / LN_2,
-        b: median(lowest.map(|(d, s)| d * s)) / LN_2,
-        c: median(highest.map(|(d, s)| d / s)) / LN_2,
-    };
-    for _ in 0..ROUNDS {
-        model.round(&mut points);
-    }
-    model
 }
 
 /// The factor by which a block's variance exceeds the model's (at least 1), by the median.
-fn excess(model: &[f64], deviation: &[f64]) -> f64 {
+#[inline(always)]
+fn excess<S: Simd>(simd: S, model: &[f64], square: &[f64], deviation: &[f64]) -> f64 {
     // Counting is quicker than selecting, and tells whether there is anything to select.
-    let (mut known, mut within) = (0, 0);
-    for (m, d) in model.iter().zip(deviation) {
-        known += usize::from(!d.is_nan());
-        within += usize::from(least(*d) <= LN_2 * m && !d.is_nan());
+    let (mut known, mut within) = (0u32, 0u32);
+    let all = || model.iter().zip(square).zip(deviation);
+    for ((m, s), d) in all() {
+        let limit = LN_2 * m;
+        known += u32::from(!d.is_nan());
+        within += u32::from(d * s <= limit && LEAST * LEAST * s <= limit);
     }
     if known == 0 || within > known / 2 {
         return 1.0;
     }
-    let ratios = model.iter().zip(deviation).filter(|(_, d)| !d.is_nan());
-    let ratio = median(ratios.map(|(m, d)| least(*d) / m)) / LN_2;
-    if ratio > 1.0 { ratio } else { 1.0 }
+    let mut ratios = [f32::INFINITY; FEW];
+    for (ratio, ((m, s), d)) in ratios.iter_mut().zip(all()) {
+        let times = (more(LEAST * LEAST, *d) * s / m) as f32;
+        *ratio = if d.is_nan() { f32::INFINITY } else { times };
+    }
+    let middle = at_place_of_few(simd, &ratios, model.len(), known as usize / 2);
+    f64::from(middle) / LN_2
+}
+
+/// What most checks ask of all points, answered at once.
+#[derive(Debug, Clone, Copy)]
+struct Extremes {
+    /// The least squared impedance in Ω², infinite where there is none.
+    square: f64,
+    /// The least resistance in Ω.
+    resistance: f64,
+    /// The most that a point's variance is above that of a noise of `FLOOR`, in Ω²; NaN where one is not finite.
+    noise: f64,
+    /// The most that a point's deviation is beyond what `jumps` lets pass.
+    deviation: f64,
+}
+
+impl Extremes {
+    #[inline(always)]
+    fn of(re: &[f64], square: &[f64], deviation: &[f64], variance: &[f64]) -> Self {
+        if re.len() < LANES {
+            Self::by::<1>(re, square, deviation, variance)
+        } else {
+            Self::by::<LANES>(re, square, deviation, variance)
+        }
+    }
+
+    /// By so many points at a time, of which there must be as many; the last ones may be looked at twice.
+    #[inline(always)]
+    fn by<const N: usize>(re: &[f64], square: &[f64], deviation: &[f64], variance: &[f64]) -> Self {
+        let mut seen = Seen::<N>::default();
+        let points = re.as_chunks::<N>().0.iter().zip(square.as_chunks::<N>().0);
+        let known = deviation.as_chunks::<N>().0.iter();
+        for ((re, s), (d, v)) in points.zip(known.zip(variance.as_chunks::<N>().0)) {
+            seen.look(re, s, d, v);
+        }
+        if let (Some(re), Some(s), Some(d), Some(v)) = (
+            re.last_chunk(),
+            square.last_chunk(),
+            deviation.last_chunk(),
+            variance.last_chunk(),
+        ) {
+            seen.look(re, s, d, v);
+        }
+        Extremes {
+            square: seen.square.into_iter().fold(f64::INFINITY, less),
+            resistance: seen.resistance.into_iter().fold(f64::INFINITY, less),
+            noise: seen.noise.into_iter().fold(f64::NEG_INFINITY, more)
+                + seen.broken.iter().sum::<f64>(),
+            deviation: seen.deviation.into_iter().fold(f64::NEG_INFINITY, more),
+        }
+    }
+}
+
+/// Extremes of each lane.
+struct Seen<const N: usize> {
+    square: [f64; N],
+    resistance: [f64; N],
+    noise: [f64; N],
+    deviation: [f64; N],
+    /// Not zero where a variance is not finite.
+    broken: [f64; N],
+}
+
+impl<const N: usize> Default for Seen<N> {
+    #[inline(always)]
+    fn default() -> Self {
+        Seen {
+            square: [f64::INFINITY; N],
+            resistance: [f64::INFINITY; N],
+            noise: [f64::NEG_INFINITY; N],
+            deviation: [f64::NEG_INFINITY; N],
+            broken: [0.0; N],
+        }
+    }
+}
+
+impl<const N: usize> Seen<N> {
+    #[inline(always)]
+    fn look(&mut self, re: &[f64; N], s: &[f64; N], d: &[f64; N], v: &[f64; N]) {
+        self.square = from_fn(|i| less(self.square[i], s[i]));
+        self.resistance = from_fn(|i| less(self.resistance[i], re[i]));
+        self.noise = from_fn(|i| more(self.noise[i], v[i] - FLOOR * FLOOR * s[i]));
+        self.deviation = from_fn(|i| more(self.deviation[i], beyond(d[i], s[i], v[i])));
+        self.broken = from_fn(|i| self.broken[i] + 0.0 * v[i]);
+    }
+}
+
+/// The lesser of two, the first where the second is not a number.
+#[inline(always)]
+fn less(a: f64, b: f64) -> f64 {
+    if b < a { b } else { a }
+}
+
+/// The greater of two, the first where the second is not a number.
+#[inline(always)]
+fn more(a: f64, b: f64) -> f64 {
+    if b > a { b } else { a }
 }
 
 impl Noise {
+    /// Real parts in Ω.
+    pub fn re(&self) -> &[f64] {
+        self.columns.column(0)
+    }
+
+    /// Imaginary parts in Ω.
+    pub fn im(&self) -> &[f64] {
+        self.columns.column(1)
+    }
+
+    /// Squared magnitudes of the impedance in Ω².
+    pub fn square(&self) -> &[f64] {
+        self.columns.column(2)
+    }
+
+    /// Squared deviations from the cubic through the neighbours, relative; NaN where there is none.
+    pub fn deviation(&self) -> &[f64] {
+        self.columns.column(3)
+    }
+
+    /// Variance of the complex noise in Ω²; 0 where there are too few points to show any.
+    pub fn variance(&self) -> &[f64] {
+        self.columns.column(4)
+    }
+
+    /// The cubics of the sweep's frequency list.
+    pub fn neighbours(&self) -> &Rc<Neighbours> {
+        &self.neighbours
+    }
+
     /// Complex rms noise of a point relative to its impedance.
     pub fn at(&self, point: usize) -> f64 {
-        self.variance_at(point).sqrt()
+        let (variance, square) = self.point(point);
+        (variance / square.max(f64::MIN_POSITIVE)).sqrt()
     }
 
     /// The least squared impedance in Ω², infinite where there is none.
     pub fn least(&self) -> f64 {
-        let less = |least: f64, s: &f64| if *s < least { *s } else { least };
-        self.square.iter().fold(f64::INFINITY, less)
+        self.extremes.square
     }
 
-    fn variance_at(&self, point: usize) -> f64 {
-        self.variance.get(point).copied().unwrap_or(0.0)
+    /// Whether any point has a negative resistance.
+    pub fn is_negative_anywhere(&self) -> bool {
+        self.extremes.resistance < 0.0
+    }
+
+    /// Whether any point's relative noise is more than `FLOOR`.
+    pub fn is_noisy_anywhere(&self) -> bool {
+        !matches!(
+            self.extremes.noise.partial_cmp(&0.0),
+            Some(Ordering::Less | Ordering::Equal)
+        )
+    }
+
+    /// Whether any point deviates by more than `jumps` lets pass.
+    pub fn jumps_anywhere(&self) -> bool {
+        self.extremes.deviation > 0.0
+    }
+
+    /// Variance and squared impedance in Ω².
+    fn point(&self, point: usize) -> (f64, f64) {
+        let of = |values: &[f64]| values.get(point).copied().unwrap_or(0.0);
+        (of(self.variance()), of(self.square()))
     }
 
     /// Whether a point's relative noise is more than a level.
     pub fn exceeds(&self, point: usize, level: f64) -> bool {
-        self.variance_at(point) > level * level
+        let (variance, square) = self.point(point);
+        variance > level * level * square
     }
 
     /// How many points are usable.
     pub fn usable_points(&self) -> usize {
-        let limit = super::UNUSABLE * super::UNUSABLE;
-        self.variance.iter().filter(|v| **v < limit).count()
+        if self.is_noisy_anywhere() {
+            (0..self.columns.points).filter(|&i| self.usable(i)).count()
+        } else {
+            self.columns.points
+        }
     }
 
     /// Whether a point's noise lets anything be said about it.
     pub fn usable(&self, point: usize) -> bool {
-        self.variance_at(point) < super::UNUSABLE * super::UNUSABLE
+        let (variance, square) = self.point(point);
+        variance < UNUSABLE * UNUSABLE * square
     }
 
     /// Complex deviation of a point of this noise's sweep from the cubic through its neighbours,
     /// over the larger of both magnitudes, scaled to the noise of one point; and what
     /// interpolation alone can make of it. `None` where there is no cubic.
-    pub fn deviation(&self, sweep: &Sweep, point: usize) -> Option<(Complex64, f64)> {
+    pub fn deviation_of(&self, sweep: &Sweep, point: usize) -> Option<(Complex64, f64)> {
         self.neighbours.deviation(sweep, point)
     }
 }
