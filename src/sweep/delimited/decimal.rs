@@ -49,35 +49,54 @@ const POWERS: [f64; 23] = [
 ];
 
 /// More digits than this may not fit into a double.
-const DIGITS: u32 = 15;
+const DIGITS: usize = 15;
 
-/// A number of few digits and a moderate exponent, as instruments write them, and whether it has a
-/// decimal point. Digits and power of ten are exact, so that one operation rounds correctly
+/// A field that is a [`leading`] number and nothing else, and whether it has a decimal point.
+fn plain(field: &[u8]) -> Option<(f64, bool)> {
+    let number = leading(field)?;
+    (number.length == field.len()).then_some((number.value, number.has_point))
+}
+
+/// A number that a text begins with.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Leading {
+    pub value: f64,
+    pub has_point: bool,
+    /// In bytes.
+    pub length: usize,
+}
+
+/// The number at the beginning of a text, where it is one of few digits and a moderate exponent, as
+/// instruments write them. Digits and power of ten are exact, so that one operation rounds correctly
 /// (Clinger, How to read floating point numbers accurately, PLDI 1990); all other numbers are `None`.
 /// No such number reaches `OVERLOAD`.
-fn plain(field: &[u8]) -> Option<(f64, bool)> {
-    let (negative, digits) = signed(field);
-    let (mut mantissa, mut count, mut decimals) = (0u64, 0, None);
-    let mut exponent = 0;
-    let mut bytes = digits.iter();
-    while let Some(&byte) = bytes.next() {
-        let digit = byte.wrapping_sub(b'0');
-        if digit < 10 {
-            mantissa = mantissa.wrapping_mul(10).wrapping_add(u64::from(digit));
-            count += 1;
-        } else if byte == b'.' && decimals.is_none() {
-            decimals = Some(count);
-        } else if byte | 0x20 == b'e' {
-            exponent = self::exponent(bytes.as_slice())?;
-            break;
-        } else {
-            return None;
-        }
+#[inline]
+pub(super) fn leading(text: &[u8]) -> Option<Leading> {
+    let (negative, start) = sign(text, 0);
+    let (mantissa, mut at) = digits(text, start, 0);
+    let (mut mantissa, mut count, mut decimals) = (mantissa, at - start, 0);
+    let has_point = text.get(at) == Some(&b'.');
+    if has_point {
+        let from = at + 1;
+        (mantissa, at) = digits(text, from, mantissa);
+        decimals = at - from;
+        count += decimals;
     }
     if count == 0 || count > DIGITS {
         return None;
     }
-    let power = exponent - decimals.map_or(0, |before| count - before) as i32;
+    let mut exponent = 0;
+    if let Some(b'e' | b'E') = text.get(at) {
+        let (negative, from) = sign(text, at + 1);
+        (exponent, at) = digits(text, from, 0);
+        if at == from || at - from > 3 {
+            return None;
+        }
+        if negative {
+            exponent = exponent.wrapping_neg();
+        }
+    }
+    let power = (exponent as i64) - decimals as i64;
     let scale = POWERS.get(power.unsigned_abs() as usize)?;
     let size = mantissa as f64;
     let size = if power < 0 {
@@ -85,26 +104,35 @@ fn plain(field: &[u8]) -> Option<(f64, bool)> {
     } else {
         size * scale
     };
-    Some((if negative { -size } else { size }, decimals.is_some()))
+    Some(Leading {
+        value: if negative { -size } else { size },
+        has_point,
+        length: at,
+    })
 }
 
-/// Whether a number has a minus, and what follows its sign.
-fn signed(text: &[u8]) -> (bool, &[u8]) {
-    match text {
-        [b'-', rest @ ..] => (true, rest),
-        [b'+', rest @ ..] => (false, rest),
-        _ => (false, text),
+/// Whether there is a minus at a place, and where to go on behind the sign.
+#[inline(always)]
+fn sign(text: &[u8], at: usize) -> (bool, usize) {
+    match text.get(at) {
+        Some(b'-') => (true, at + 1),
+        Some(b'+') => (false, at + 1),
+        _ => (false, at),
     }
 }
 
-/// An exponent of one to three digits.
-fn exponent(text: &[u8]) -> Option<i32> {
-    let (negative, digits) = signed(text);
-    if digits.is_empty() || digits.len() > 3 || !digits.iter().all(u8::is_ascii_digit) {
-        return None;
+/// A number goes on with the digits at a place; where they end.
+#[inline(always)]
+fn digits(text: &[u8], mut at: usize, mut number: u64) -> (u64, usize) {
+    while let Some(digit) = text
+        .get(at)
+        .map(|b| b.wrapping_sub(b'0'))
+        .filter(|d| *d < 10)
+    {
+        number = number.wrapping_mul(10).wrapping_add(u64::from(digit));
+        at += 1;
     }
-    let value = digits.iter().fold(0, |v, d| 10 * v + i32::from(d - b'0'));
-    Some(if negative { -value } else { value })
+    (number, at)
 }
 
 #[cold]

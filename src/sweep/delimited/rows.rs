@@ -1,5 +1,7 @@
 //! Lines and their fields, in one pass over the bytes and without a copy.
 
+use super::decimal;
+
 /// What stands between two fields.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Delimiter {
@@ -25,6 +27,16 @@ impl Delimiter {
             Delimiter::Semicolon => byte == b';',
             Delimiter::Tab => byte == b'\t',
             Delimiter::Whitespace => byte == b' ' || byte == b'\t',
+        }
+    }
+
+    /// The byte that it always is; none for runs of blanks.
+    fn byte(self) -> Option<u8> {
+        match self {
+            Delimiter::Comma => Some(b','),
+            Delimiter::Semicolon => Some(b';'),
+            Delimiter::Tab => Some(b'\t'),
+            Delimiter::Whitespace => None,
         }
     }
 
@@ -121,6 +133,33 @@ impl<'a> Rows<'a> {
                 }
             }
         }
+    }
+
+    /// Reads the next line at once where it is numbers alone, one for each place, as nearly all lines are: its
+    /// 1-based number, and a bit for each number that has a decimal point. `None`, and nothing is read, where it
+    /// is anything else, or ends with the text.
+    pub fn numbers(&mut self, numbers: &mut [f64]) -> Option<(u32, u64)> {
+        let delimiter = self.delimiter.byte()?;
+        let mut rest = self.bytes.get(self.at..)?;
+        let (mut points, mut bit) = (0, 1u64);
+        let last = numbers.len().checked_sub(1)?;
+        for (place, number) in numbers.iter_mut().enumerate() {
+            while let [b' ', behind @ ..] = rest {
+                rest = behind;
+            }
+            let found = decimal::leading(rest)?;
+            *number = found.value;
+            points |= if found.has_point { bit } else { 0 };
+            bit = bit.wrapping_shl(1);
+            rest = match rest.get(found.length..)? {
+                [b'\r', b'\n', behind @ ..] | [b'\n', behind @ ..] if place == last => behind,
+                [byte, behind @ ..] if *byte == delimiter && place < last => behind,
+                _ => return None,
+            };
+        }
+        self.at = self.bytes.len() - rest.len();
+        self.line += 1;
+        Some((self.line, points))
     }
 
     fn field(&mut self) -> (Field<'a>, End) {
@@ -249,6 +288,43 @@ mod tests {
         assert_eq!(split("5\" jig,b", Delimiter::Comma), [vec!["5\" jig", "b"]]);
         assert_eq!(split("\"open,b", Delimiter::Comma), [vec!["\"open", "b"]]);
         assert_eq!(split("\"a\"x,b", Delimiter::Comma), [vec!["\"a\"x", "b"]]);
+    }
+
+    #[test]
+    fn lines_of_numbers_are_read_at_once_and_no_others() {
+        let read = |text: &str, delimiter| {
+            let mut rows = Rows::new(text.as_bytes(), delimiter);
+            let mut numbers = [0.0; 2];
+            let found = rows.numbers(&mut numbers);
+            // What was not read is still there, and what was is not.
+            let mut fields = Vec::new();
+            let line = rows.next(&mut fields);
+            assert_eq!(line, Some(if found.is_some() { 2 } else { 1 }), "{text}");
+            found.map(|(line, points)| (line, points, numbers))
+        };
+        let comma = |text: &str| read(text, Delimiter::Comma);
+        assert_eq!(comma("1,-2.5e-3\nx"), Some((1, 0b10, [1.0, -2.5e-3])));
+        assert_eq!(comma("1., 2\r\nx"), Some((1, 0b01, [1.0, 2.0])));
+        assert_eq!(read("7\t8\nx", Delimiter::Tab), Some((1, 0, [7.0, 8.0])));
+        for text in [
+            "1,2",
+            "1,2\rx",
+            "1\n2,3\nx",
+            "1,2,3\nx",
+            "1,2,\nx",
+            "1,\nx",
+            "\nx",
+            "1,\"2\"\nx",
+            "1,2 \nx",
+            "1;2\nx",
+            "1,0x2\nx",
+            "1,1e400\nx",
+            "#1,2\nx",
+            "1,12345678901234567890\nx",
+        ] {
+            assert_eq!(comma(text), None, "{text}");
+        }
+        assert_eq!(read("1 2\nx", Delimiter::Whitespace), None);
     }
 
     #[test]

@@ -2,7 +2,7 @@
 
 use super::decimal::{self, Fault, Mark};
 use super::heading::{Headings, Located};
-use super::rows::{Delimiter, Field};
+use super::rows::{Delimiter, Field, Rows};
 use super::unit::{self, Unit};
 use super::{Portion, Table};
 use crate::diagnostic::Note;
@@ -107,7 +107,23 @@ pub(super) fn read(
     let mut fields: Vec<Field> = Vec::with_capacity(headings.count + 1);
     let mut first = true;
     let mut last_row = None;
-    while let Some(line) = rows.next(&mut fields) {
+    let mut plainly = Plainly::new(&values, part, headings.count);
+    loop {
+        // The first row may hold the units, and numbers with a decimal comma are never plain.
+        if !first
+            && mark != Mark::Comma
+            && let Some(group) = groups.list.first_mut()
+            && let Some((line, has_point)) = plainly.row(&mut rows, &values, group)
+        {
+            if has_point {
+                mark = Mark::Point;
+            }
+            last_row = Some((line, None, true));
+            continue;
+        }
+        let Some(line) = rows.next(&mut fields) else {
+            break;
+        };
         if fields.is_empty() || is_comment(&fields) || fields.iter().all(|f| f.bytes.is_empty()) {
             continue;
         }
@@ -180,6 +196,48 @@ fn opening_notes(headings: &Headings<'_>) -> Vec<Note> {
         ));
     }
     notes
+}
+
+/// Rows that are numbers alone, without a detour by their fields.
+struct Plainly {
+    numbers: Vec<f64>,
+    /// A bit for each number that belongs to a column.
+    wanted: u64,
+    /// Rows that may still be tried in vain: a table with text in it is better read by its fields.
+    tries: u32,
+}
+
+impl Plainly {
+    fn new(values: &[Values], part: Option<usize>, count: usize) -> Self {
+        let possible = part.is_none() && count <= u64::BITS as usize;
+        let bits = values.iter().map(|v| 1u64.wrapping_shl(v.index as u32));
+        Plainly {
+            numbers: vec![0.0; count],
+            wanted: bits.fold(0, |all, bit| all | bit),
+            tries: if possible { 10 } else { 0 },
+        }
+    }
+
+    /// The next row into the columns: its line, and whether a number of theirs has a decimal point.
+    fn row(
+        &mut self,
+        rows: &mut Rows<'_>,
+        values: &[Values],
+        group: &mut Group,
+    ) -> Option<(u32, bool)> {
+        if self.tries == 0 {
+            return None;
+        }
+        let Some((line, points)) = rows.numbers(&mut self.numbers) else {
+            self.tries -= 1;
+            return None;
+        };
+        group.lines.push(line);
+        for (value, column) in values.iter().zip(&mut group.columns) {
+            column.push(self.numbers.get(value.index).copied().unwrap_or(f64::NAN));
+        }
+        Some((line, points & self.wanted != 0))
+    }
 }
 
 fn is_comment(fields: &[Field<'_>]) -> bool {

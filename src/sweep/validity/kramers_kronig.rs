@@ -9,8 +9,8 @@
 //! (the larger of capacitive, inductive and resistive part, without the dip at resonance), and their
 //! means over blocks of points are held against the sweep's own noise.
 //!
-//! The terms are fitted to sums over groups of a few neighbouring points, as many as leave several groups for
-//! each unknown: what the terms can show they show in the sums as well. The columns depend only on the
+//! On dense lists the terms are fitted to sums over groups of a few neighbouring points, which leave several
+//! groups for each unknown: what the terms can show they show in the sums as well. The columns depend only on the
 //! frequency list and on the envelope's coarse form, so their orthogonal basis is made once for all parts of a lot.
 
 use super::neighbours::Neighbours;
@@ -39,13 +39,13 @@ const POINTS_PER_TERM: usize = 2;
 /// Points of one block.
 const BLOCK: usize = 10;
 
-/// Points of one group, the largest that there are enough points for; a block holds whole groups.
-const GROUPS: [usize; 3] = [5, 2, 1];
+/// Points of one group where there are enough of them, otherwise one; a block holds whole groups.
+const GROUP: usize = 5;
 
 /// A group reaches over no more than this in ln f, so that it is small beside what a term changes in.
 const WIDEST: f64 = 0.25;
 
-/// So many groups for each unknown, or the groups are smaller.
+/// So many groups for each unknown, or each point is taken by itself.
 const GROUPS_PER_TERM: usize = 3;
 
 /// Columns that are worked on at once.
@@ -298,17 +298,12 @@ impl Basis {
         let count = ((high / low).log10() * PER_DECADE).ceil() as usize + 1;
         let step = (high / low).ln() / (count.max(2) - 1) as f64;
         let tau = (0..count).map(|k| 1.0 / (low * (step * k as f64).exp()));
-        let narrow = |group: usize| {
-            frequency.chunks(group).all(|points| {
-                let ends = points.first().zip(points.last());
-                ends.is_some_and(|(first, last)| (last / first).ln() <= WIDEST)
-            })
-        };
-        let enough = |group: usize| frequency.len() >= GROUPS_PER_TERM * group * (count + 3);
-        let group = GROUPS
-            .into_iter()
-            .find(|group| enough(*group) && narrow(*group));
-        let group = group.unwrap_or(1);
+        let narrow = frequency.chunks(GROUP).all(|points| {
+            let ends = points.first().zip(points.last());
+            ends.is_some_and(|(first, last)| (last / first).ln() <= WIDEST)
+        });
+        let enough = frequency.len() >= GROUPS_PER_TERM * GROUP * (count + 3);
+        let group = if enough && narrow { GROUP } else { 1 };
         // The noise of a sum goes with the root of its points.
         let roots: Vec<f64> = frequency
             .chunks(group)
@@ -419,8 +414,7 @@ fn complex(laid_out: &[f64], count: usize) -> Vec<Complex64> {
 #[inline(always)]
 fn group_sums(group: usize, values: &[f64], weight: &[f64], sums: &mut [f64]) {
     match group {
-        5 => sums_of::<5>(values, weight, sums),
-        2 => sums_of::<2>(values, weight, sums),
+        GROUP => sums_of::<GROUP>(values, weight, sums),
         _ => sums_of::<1>(values, weight, sums),
     }
 }
