@@ -37,9 +37,9 @@ pub(super) const WIDTH: f64 = 0.8 * LN_10;
 const FEWEST: usize = 5;
 /// Information that one more parameter must bring: Akaike's 2 and a little more, because the noise
 /// levels themselves come from the same few points.
-const PENALTY: f64 = 2.5;
-/// Models so much worse than the best (weight below 0.3 %) end the search.
-const HOPELESS: f64 = 12.0;
+const PENALTY: f64 = 2.3;
+/// Models so much worse than the best (weight below 5 %) end the search.
+const HOPELESS: f64 = 6.0;
 
 /// A nested model: its number of terms, Akaike weight and residual variance.
 #[derive(Debug, Clone, Copy)]
