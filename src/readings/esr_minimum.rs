@@ -199,28 +199,25 @@ struct Sums {
 
 /// Sums of none, of the first point, of the first two, and so on.
 fn sums(z: &[Complex64]) -> Vec<Sums> {
-    let mut all = Vec::with_capacity(z.len() + 1);
-    let Sums {
-        mut weight,
-        mut weighted,
-        mut noise,
-    } = Sums::default();
-    all.push(Sums::default());
-    for (i, point) in z.iter().enumerate() {
+    let mut all = vec![Sums::default(); z.len() + 1];
+    let mut sum = Sums::default();
+    // The ends have no second difference.
+    let first = z.first().map(|first| first.re);
+    let (mut before, mut at) = (first.unwrap_or(0.0), first.unwrap_or(0.0));
+    for (i, (to, point)) in all.iter_mut().skip(1).zip(z).enumerate() {
         let w = 1.0 / point.norm_sqr().max(f64::MIN_POSITIVE);
-        // Second differences: variance 6 times that of a point.
-        let d = match z.get(i.wrapping_sub(1)..i + 2) {
-            Some([before, at, after]) => before.re - 2.0 * at.re + after.re,
-            _ => 0.0,
+        let after = z.get(i + 1).map_or(at, |z| z.re);
+        // Variance 6 times that of a point.
+        let d = if i == 0 || i + 1 == z.len() {
+            0.0
+        } else {
+            before - 2.0 * at + after
         };
-        weight += w;
-        weighted += w * point.re;
-        noise += d * d * w * (1.0 / 6.0);
-        all.push(Sums {
-            weight,
-            weighted,
-            noise,
-        });
+        sum.weight += w;
+        sum.weighted += w * point.re;
+        sum.noise += d * d * w * (1.0 / 6.0);
+        *to = sum;
+        (before, at) = (at, after);
     }
     all
 }

@@ -1,22 +1,41 @@
 //! The weighted least-squares problem while it is being solved, term after term.
 
 use super::basis::{Basis, MOST, NOTHING};
-use crate::statistics::lanes::{LANES, Lanes, Simd, chunks, chunks_mut, products};
+use crate::statistics::lanes::{
+    Lanes, Plain, Simd, chunks, chunks_mut, four_products, one_product, product,
+};
 use num_complex::Complex64;
 
-/// Columns of the basis, each point's divided by its Z and by the noise there, made orthonormal. Rows:
-/// ln|Z| of each point, then the phases, since `dZ/Z = d ln|Z| + j dθ`.
+/// Share of a sum of squares below which too little of it is left to be had by subtraction: rounding
+/// is 1e-15 of it.
+const FEW_DIGITS: f64 = 1e-10;
+
+/// What became of one more column.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Added {
+    One,
+    /// There is no further one.
+    None,
+    /// The products do not tell it; the columns themselves may.
+    TooFewDigits,
+}
+
+/// Columns of the basis, each point's divided by its Z and by the noise there. Rows: ln|Z| of each
+/// point, then the phases, since `dZ/Z = d ln|Z| + j dθ`.
 pub(super) struct Design<'a> {
     basis: &'a Basis,
     points: usize,
     /// Real and negative imaginary part of 1/Z over the noise of ln|Z|, then of the phase; times the
     /// size that the basis is relative to.
     inverse: [Vec<f64>; 4],
-    /// Orthonormal columns, one after the other.
+    /// One after the other; orthonormal where they are added exactly.
     columns: Vec<f64>,
+    /// The data; where columns are added exactly, what they leave of them.
     residual: Vec<f64>,
-    /// Sum of squares of the residual.
+    /// Sum of squares of what the columns leave.
     pub(super) rest: f64,
+    /// Of the data.
+    total: f64,
     /// The basis's columns by the orthonormal ones: packed upper triangle, column after column.
     pub(super) triangle: Vec<f64>,
     /// Of the weighted data on the orthonormal columns.
@@ -53,6 +72,7 @@ impl<'a> Design<'a> {
             inverse,
             columns: Vec::with_capacity(2 * half * MOST),
             rest: n as f64 * weight[0] * weight[0],
+            total: n as f64 * weight[0] * weight[0],
             residual,
             triangle: Vec::with_capacity(MOST * (MOST + 1) / 2),
             projections: Vec::with_capacity(MOST),
@@ -64,55 +84,80 @@ impl<'a> Design<'a> {
         2 * self.points
     }
 
-    /// Orthogonalises one more column of the basis, appends its column of the triangle and takes its
-    /// share out of the residual. `None` where there is no further one, or where the points do not
-    /// tell it from those before.
+    /// Adds one more column of the basis by its products with those before it (Cholesky's factor of
+    /// the normal equations), which costs half of what [`Design::add_exactly`] does.
     #[inline(always)]
-    pub(super) fn add<S: Simd>(&mut self, simd: S) -> Option<()> {
+    pub(super) fn add<S: Simd>(&mut self, simd: S) -> Added {
         let k = self.projections.len();
         if k >= self.basis.terms() {
-            return None;
+            return Added::None;
         }
         let rows = self.residual.len();
-        let start = self.columns.len();
         self.weigh(simd, k);
-        let (earlier, new) = self.columns.split_at_mut(start);
+        let (earlier, new) = self.columns.split_at(k * rows);
         let entries = self.triangle.len();
-        // Four columns at a time: they are at right angles to each other, and the next four see what
-        // these have left.
-        let mut left = &*earlier;
-        while left.len() > 4 * rows {
+        let mut left = earlier;
+        while left.len() >= 4 * rows {
             let (block, rest) = left.split_at(4 * rows);
             let of = |i: usize| &block[i * rows..(i + 1) * rows];
-            let (shares, _) = take(simd, new, [of(0), of(1), of(2), of(3)], &self.residual);
+            let shares = four_products(simd, [of(0), of(1), of(2), of(3)], new);
             self.triangle.extend_from_slice(&shares);
             left = rest;
         }
-        let of = |i: usize| &left[i * rows..(i + 1) * rows];
-        let [square, projection] = match left.len() / rows {
-            0 => take(simd, new, [], &self.residual).1,
-            1 => {
-                let (shares, products) = take(simd, new, [of(0)], &self.residual);
-                self.triangle.extend_from_slice(&shares);
-                products
+        for column in left.chunks_exact(rows) {
+            self.triangle.push(one_product(simd, column, new));
+        }
+        let half = self.basis.filled;
+        let before = one_product(simd, new, new);
+        let mut projection = one_product(simd, &self.residual[..half], &new[..half]);
+        let (known, shares) = self.triangle.split_at_mut(entries);
+        let mut square = before;
+        for j in 0..k {
+            let start = j * (j + 1) / 2;
+            let mut share = shares[j];
+            for i in 0..j {
+                share -= known[start + i] * shares[i];
             }
-            2 => {
-                let (shares, products) = take(simd, new, [of(0), of(1)], &self.residual);
-                self.triangle.extend_from_slice(&shares);
-                products
-            }
-            3 => {
-                let (shares, products) = take(simd, new, [of(0), of(1), of(2)], &self.residual);
-                self.triangle.extend_from_slice(&shares);
-                products
-            }
-            _ => {
-                let (shares, products) =
-                    take(simd, new, [of(0), of(1), of(2), of(3)], &self.residual);
-                self.triangle.extend_from_slice(&shares);
-                products
-            }
-        };
+            share /= known[start + j];
+            shares[j] = share;
+            square -= share * share;
+            projection -= share * self.projections[j];
+        }
+        // NaN has no digits either.
+        if !(square > before * FEW_DIGITS) {
+            return Added::TooFewDigits;
+        }
+        let norm = square.sqrt();
+        projection /= norm;
+        self.triangle.push(norm);
+        self.projections.push(projection);
+        self.rest -= projection * projection;
+        if self.rest > self.total * FEW_DIGITS {
+            Added::One
+        } else {
+            Added::TooFewDigits
+        }
+    }
+
+    /// Orthogonalises one more column of the basis, appends its column of the triangle and takes its
+    /// share out of the residual. [`Added::None`] where there is no further one, or where the points do
+    /// not tell it from those before.
+    pub(super) fn add_exactly(&mut self) -> Added {
+        let k = self.projections.len();
+        if k >= self.basis.terms() {
+            return Added::None;
+        }
+        let rows = self.residual.len();
+        let start = self.columns.len();
+        self.weigh(Plain, k);
+        let (earlier, new) = self.columns.split_at_mut(start);
+        let entries = self.triangle.len();
+        for column in earlier.chunks_exact(rows) {
+            let share = product(column, new);
+            self.triangle.push(share);
+            take(new, share, column);
+        }
+        let square = product(new, new);
         // What was taken and what is left are at right angles.
         let taken: f64 = self.triangle[entries..]
             .iter()
@@ -120,14 +165,16 @@ impl<'a> Design<'a> {
             .sum();
         if square.is_nan() || square <= (square + taken) * NOTHING {
             self.triangle.truncate(entries);
-            return None;
+            return Added::None;
         }
         let norm = square.sqrt();
+        new.iter_mut().for_each(|v| *v /= norm);
         self.triangle.push(norm);
-        let projection = projection / norm;
+        let projection = product(new, &self.residual);
         self.projections.push(projection);
-        self.rest = explain(simd, &mut self.residual, projection, new, 1.0 / norm);
-        Some(())
+        take(&mut self.residual, projection, new);
+        self.rest = product(&self.residual, &self.residual);
+        Added::One
     }
 
     /// Appends a column of the basis as the points weigh it.
@@ -153,66 +200,18 @@ fn combine<S: Simd>(
     sign: f64,
 ) {
     let sign = Lanes::all(simd, sign);
-    let target = chunks_mut(target);
-    let n = target.len();
-    let (a, b, c, d) = (
-        &chunks(a)[..n],
-        &chunks(b)[..n],
-        &chunks(c)[..n],
-        &chunks(d)[..n],
-    );
-    for i in 0..n {
-        let first = Lanes::of(simd, &a[i]).times(Lanes::of(simd, &b[i]));
-        let second = Lanes::of(simd, &c[i]).times(Lanes::of(simd, &d[i]));
-        first.plus(second.times(sign)).store(&mut target[i]);
+    let first = chunks(a).iter().zip(chunks(b));
+    let second = chunks(c).iter().zip(chunks(d));
+    for (target, ((a, b), (c, d))) in chunks_mut(target).iter_mut().zip(first.zip(second)) {
+        let first = Lanes::of(simd, a).times(Lanes::of(simd, b));
+        let second = Lanes::of(simd, c).times(Lanes::of(simd, d));
+        first.plus(second.times(sign)).store(target);
     }
 }
 
-/// Takes the shares of some orthonormal columns out of a vector; gives them, and the products of what
-/// is left with itself and with `other`.
-#[inline(always)]
-fn take<S: Simd, const N: usize>(
-    simd: S,
-    of: &mut [f64],
-    columns: [&[f64]; N],
-    other: &[f64],
-) -> ([f64; N], [f64; 2]) {
-    let shares = products(simd, columns, of);
-    let of = chunks_mut(of);
-    let other = &chunks(other)[..of.len()];
-    let mut rows: [&[[f64; LANES]]; N] = [&[]; N];
-    let mut factors = [Lanes::all(simd, 0.0); N];
-    for n in 0..N {
-        rows[n] = &chunks(columns[n])[..of.len()];
-        factors[n] = Lanes::all(simd, shares[n]);
+/// Takes the share of a column out of a vector.
+fn take(of: &mut [f64], share: f64, column: &[f64]) {
+    for (of, column) in of.iter_mut().zip(column) {
+        *of -= share * column;
     }
-    let (mut square, mut product) = (Lanes::all(simd, 0.0), Lanes::all(simd, 0.0));
-    for i in 0..of.len() {
-        let mut left = Lanes::of(simd, &of[i]);
-        for n in 0..N {
-            left = left.minus(factors[n].times(Lanes::of(simd, &rows[n][i])));
-        }
-        left.store(&mut of[i]);
-        square = square.plus(left.times(left));
-        product = product.plus(left.times(Lanes::of(simd, &other[i])));
-    }
-    (shares, [square.sum(), product.sum()])
-}
-
-/// Scales `column` by `factor` and takes `share` of that out of `of`; the sum of squares of what is
-/// left.
-#[inline(always)]
-fn explain<S: Simd>(simd: S, of: &mut [f64], share: f64, column: &mut [f64], factor: f64) -> f64 {
-    let (share, factor) = (Lanes::all(simd, share), Lanes::all(simd, factor));
-    let mut squares = Lanes::all(simd, 0.0);
-    let (of, column) = (chunks_mut(of), chunks_mut(column));
-    let n = of.len().min(column.len());
-    for i in 0..n {
-        let scaled = Lanes::of(simd, &column[i]).times(factor);
-        scaled.store(&mut column[i]);
-        let left = Lanes::of(simd, &of[i]).minus(share.times(scaled));
-        left.store(&mut of[i]);
-        squares = squares.plus(left.times(left));
-    }
-    squares.sum()
 }

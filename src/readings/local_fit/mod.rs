@@ -24,7 +24,7 @@ use crate::statistics::lanes::{Kernel, Simd, wide};
 use crate::sweep::Sweep;
 use basis::{Basis, Course, MOST, Term};
 use curve::{Curve, Point};
-use design::Design;
+use design::{Added, Design};
 use num_complex::Complex64;
 use scatter::noise_ratio;
 use std::f64::consts::LN_10;
@@ -130,16 +130,17 @@ impl LocalFit {
             Course::Resonant
         };
         let basis = Basis::of(frequency, course);
-        let Selection {
-            triangle,
-            projections,
-            models,
-        } = wide(Selecting {
+        let selecting = Selecting {
             basis: &basis,
             impedance,
             square: &square,
             noise,
-        });
+        };
+        let Selection {
+            triangle,
+            projections,
+            models,
+        } = wide(selecting).or_else(|| selecting.search(|design| design.add_exactly()))?;
         let mut fit = LocalFit {
             basis,
             curve: Curve::default(),
@@ -295,6 +296,7 @@ fn dot(a: Complex64, b: Complex64) -> f64 {
 }
 
 /// Takes terms in order while they can still bring information.
+#[derive(Clone, Copy)]
 struct Selecting<'a> {
     basis: &'a Basis,
     impedance: &'a [Complex64],
@@ -310,10 +312,18 @@ struct Selection {
 }
 
 impl Kernel for Selecting<'_> {
-    type Output = Selection;
+    type Output = Option<Selection>;
 
     #[inline(always)]
-    fn run<S: Simd>(self, simd: S) -> Selection {
+    fn run<S: Simd>(self, simd: S) -> Option<Selection> {
+        self.search(|design| design.add(simd))
+    }
+}
+
+impl Selecting<'_> {
+    /// `None` where the terms' products have not the digits for it: clean sweeps.
+    #[inline(always)]
+    fn search(&self, mut add: impl FnMut(&mut Design) -> Added) -> Option<Selection> {
         let mut models = Vec::with_capacity(MOST);
         let mut design = Design::new(self.basis, self.impedance, self.square, self.noise);
         let rows = design.rows();
@@ -323,8 +333,13 @@ impl Kernel for Selecting<'_> {
         let mut best = f64::INFINITY;
         let mut since_best = 0;
         for terms in 1..=MOST {
-            if terms + 2 > rows || design.add(simd).is_none() {
+            if terms + 2 > rows {
                 break;
+            }
+            match add(&mut design) {
+                Added::One => {}
+                Added::None => break,
+                Added::TooFewDigits => return None,
             }
             if terms < least {
                 continue;
@@ -347,11 +362,11 @@ impl Kernel for Selecting<'_> {
                 break;
             }
         }
-        Selection {
+        Some(Selection {
             triangle: design.triangle,
             projections: design.projections,
             models,
-        }
+        })
     }
 }
 
