@@ -144,7 +144,7 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
     let windows = windows(&sweep.frequency[start..end]);
     let (mut best, mut least) = (None, f64::INFINITY);
     // From the end that most minima are nearer to: fewer are the least so far.
-    for (i, window) in windows.iter().enumerate().rev() {
+    for (at, window) in windows.iter().rev() {
         let (first, last) = (&sums[window.start], &sums[window.end]);
         let (weight, weighted) = (last.weight - first.weight, last.weighted - first.weighted);
         // What is above the least is not it: nearly all are told by this alone.
@@ -155,24 +155,28 @@ fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
         let noise = (last.noise - first.noise).max(0.0);
         let variance = noise / (weight * window.len() as f64);
         if variance < GATE * GATE * mean * mean && mean + variance.sqrt() <= least {
-            (best, least) = (Some(start + i), mean + variance.sqrt());
+            (best, least) = (Some(start + at), mean + variance.sqrt());
         }
     }
     best
 }
 
+/// A point, and those within [`SEARCH`] of it.
+type Window = (usize, Range<usize>);
+
 thread_local! {
-    static WINDOWS: RefCell<(Vec<f64>, Rc<[Range<usize>]>)> = RefCell::default();
+    static WINDOWS: RefCell<(Vec<f64>, Rc<[Window]>)> = RefCell::default();
 }
 
-/// The points within [`SEARCH`] of each, at least three. They depend on the frequencies alone, so that
-/// sweeps alike share them.
-fn windows(points: &[f64]) -> Rc<[Range<usize>]> {
+/// The windows in which the minimum is looked for: at least three points each, and each an eighth of
+/// one on from the one before. They depend on the frequencies alone, so that sweeps alike share them.
+fn windows(points: &[f64]) -> Rc<[Window]> {
     WINDOWS.with_borrow_mut(|(known, windows)| {
         if known != points {
-            let (mut low, mut high) = (0, 0);
+            let (mut low, mut high, mut next) = (0, 0, 0);
             let reach = SEARCH.exp();
-            let window = |(i, f): (usize, &f64)| {
+            let mut all = Vec::new();
+            for (i, f) in points.iter().enumerate() {
                 while points[low] * reach < *f {
                     low += 1;
                 }
@@ -180,9 +184,13 @@ fn windows(points: &[f64]) -> Rc<[Range<usize>]> {
                     high += 1;
                 }
                 // At least three points, so that there is a scatter.
-                low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()))
-            };
-            *windows = points.iter().enumerate().map(window).collect();
+                let window = low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()));
+                if i >= next || i + 1 == points.len() {
+                    next = i + (window.len() / 8).max(1);
+                    all.push((i, window));
+                }
+            }
+            *windows = all.into();
             points.clone_into(known);
         }
         Rc::clone(windows)
