@@ -41,7 +41,7 @@ fn visible(fit: &CircuitFit) -> Vec<(usize, &str, f64)> {
         .iter()
         .enumerate()
         .filter(|(_, p)| p.standard_uncertainty.is_some())
-        .map(|(k, p)| (k, p.name.as_str(), p.value))
+        .map(|(k, p)| (k, p.name, p.value))
         .collect()
 }
 

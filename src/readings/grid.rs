@@ -23,15 +23,20 @@ pub(super) struct Axis {
     pub(super) ln: Vec<f64>,
     /// √(f / 1 MHz)
     pub(super) root: Vec<f64>,
-    /// Largest |ln|.
-    pub(super) longest: f64,
+    /// The middle of all ln, and how far they reach from it.
+    pub(super) middle: f64,
+    pub(super) reach: f64,
 }
 
 impl Axis {
     fn new(frequency: &[f64]) -> Axis {
         let ln = filled(frequency.iter().map(|f| (f / LN_AT).ln()));
+        let ends = ln.get(..frequency.len()).unwrap_or_default();
+        let [first, last] = [ends.first(), ends.last()].map(|ln| *ln.unwrap_or(&0.0));
+        let middle = 0.5 * (first + last);
         Axis {
-            longest: ln.iter().fold(0.0, |longest, ln| ln.abs().max(longest)),
+            middle,
+            reach: ends.iter().fold(0.0, |far, ln| (ln - middle).abs().max(far)),
             ln,
             omega: filled(frequency.iter().map(|f| TAU * f)),
             root: filled(frequency.iter().map(|f| (f / ROOT_AT).sqrt())),
@@ -54,6 +59,19 @@ impl Grid {
     pub(super) const STEP: usize = THIN;
 }
 
+/// Whether these are the same numbers. All of a block are looked at, which is quicker than to stop at
+/// one.
+fn same(a: Option<&[f64]>, b: Option<&[f64]>) -> bool {
+    const BLOCK: usize = 64;
+    let (Some(a), Some(b)) = (a, b) else {
+        return a.is_none() && b.is_none();
+    };
+    let equal = |(a, b): (&[f64], &[f64])| {
+        (a.iter().zip(b)).fold(true, |same, (a, b)| same & (a == b))
+    };
+    a.len() == b.len() && a.chunks(BLOCK).zip(b.chunks(BLOCK)).all(equal)
+}
+
 thread_local! {
     static LAST: RefCell<Option<Rc<Grid>>> = const { RefCell::new(None) };
 }
@@ -66,7 +84,7 @@ pub(super) fn grid(frequency: &[f64], range: Range<usize>) -> Rc<Grid> {
         let known = last
             .take()
             .filter(|grid| grid.frequency.len() == frequency.len())
-            .filter(|grid| grid.frequency.get(range) == wanted);
+            .filter(|grid| same(grid.frequency.get(range), wanted));
         let grid = known.unwrap_or_else(|| {
             let thin: Vec<f64> = frequency.iter().copied().step_by(THIN).collect();
             Rc::new(Grid {

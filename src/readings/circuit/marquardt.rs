@@ -1,30 +1,18 @@
 //! Levenberg-Marquardt for complex residuals `(Z(f_i) − Z_i)/|Z_i|` (D. W. Marquardt, J. SIAM 11
 //! (1963) 431), on scaled normal equations: few parameters, well scaled, many points.
 
-use super::model::{Circuit, MOST, Point};
-use super::projected;
-use crate::readings::grid::{Axis, Grid};
+use super::data::{Course, Data};
+use super::model::{Circuit, MOST};
 use num_complex::Complex64;
 
 /// A square matrix of at most `MOST` rows.
 pub(super) type Square = [[f64; MOST]; MOST];
 
-/// The points to be fitted.
-pub(super) struct Data<'a> {
-    pub(super) axis: &'a Axis,
-    pub(super) impedance: Vec<Complex64>,
-    /// 1/|Z|
-    pub(super) weight: Vec<f64>,
-    /// Every eighth point, where there are enough: a search that begins at its minimum is over in a
-    /// few steps.
-    pub(super) thin: Option<Box<Data<'a>>>,
-}
-
 /// Where the search ended.
 #[derive(Debug, Clone)]
 pub(super) struct Minimum {
     pub(super) circuit: Circuit,
-    pub(super) parameters: Vec<f64>,
+    pub(super) parameters: [f64; MOST],
     /// Which parameters were searched; the others stayed as they were.
     pub(super) free: Vec<usize>,
     /// Sum of squared residuals, real and imaginary parts apart.
@@ -32,8 +20,8 @@ pub(super) struct Minimum {
     /// `JᵀJ` of the free parameters.
     pub(super) normal: Square,
     pub(super) converged: bool,
-    /// The weighted residual at each point.
-    pub(super) residual: Vec<Complex64>,
+    /// Of the weighted residuals.
+    pub(super) course: Course,
     /// `Jᵀ` of `jZ` in place of the residuals: what a common phase error does.
     pub(super) turned: [f64; MOST],
 }
@@ -41,51 +29,21 @@ pub(super) struct Minimum {
 /// Evaluations after which a search is given up: a circuit that fits needs a dozen.
 const MOST_EVALUATIONS: usize = 60;
 
-/// Fewest points of thin data.
-const THIN_LEAST: usize = 32;
-
-impl<'a> Data<'a> {
-    /// `size` is |Z|.
-    pub(super) fn new(grid: &'a Grid, impedance: &[Complex64], size: &[f64]) -> Data<'a> {
-        let weight: Vec<f64> = size.iter().map(|size| 1.0 / size).collect();
-        let thin = (impedance.len() >= Grid::STEP * THIN_LEAST).then(|| {
-            Box::new(Data {
-                axis: &grid.thin,
-                impedance: impedance.iter().copied().step_by(Grid::STEP).collect(),
-                weight: weight.iter().copied().step_by(Grid::STEP).collect(),
-                thin: None,
-            })
-        });
-        Data {
-            axis: &grid.all,
-            impedance: impedance.to_vec(),
-            weight,
-            thin,
-        }
-    }
-
-    /// Number of real residuals.
-    pub(super) fn residuals(&self) -> usize {
-        2 * self.impedance.len()
-    }
-
-    /// The points with their impedance and weight.
-    fn points(&self) -> impl Iterator<Item = (Point, Complex64, f64)> {
-        (Point::of(self.axis).zip(&self.impedance).zip(&self.weight))
-            .map(|((at, z), w)| (at, *z, *w))
-    }
-
-    /// The weighted residual at each point.
-    fn residual(&self, circuit: Circuit, p: &[f64]) -> Vec<Complex64> {
+impl Data<'_> {
+    /// The course of the weighted residuals.
+    fn course(&self, circuit: Circuit, p: &[f64; MOST]) -> Course {
         let circuit = circuit.prepare(p);
         let mut scratch = [Complex64::ZERO; MOST];
-        self.points()
+        let (re, im): (Vec<f64>, Vec<f64>) = self
+            .points()
             .map(|(at, z, w)| (circuit.evaluate(at, &mut scratch) - z) * w)
-            .collect()
+            .map(|residual| (residual.re, residual.im))
+            .unzip();
+        Course::of(&re, &im)
     }
 
     /// Sum of squares, its half gradient and `JᵀJ` in one pass.
-    fn accumulate(&self, circuit: Circuit, p: &[f64], free: &[usize]) -> Normal {
+    fn accumulate(&self, circuit: Circuit, p: &[f64; MOST], free: &[usize]) -> Normal {
         let mut normal = Normal {
             sum: 0.0,
             gradient: [0.0; MOST],
@@ -112,7 +70,7 @@ impl<'a> Data<'a> {
     }
 
     /// `Jᵀ` of the weighted data, turned by a right angle.
-    fn turned(&self, circuit: Circuit, p: &[f64], free: &[usize]) -> [f64; MOST] {
+    fn turned(&self, circuit: Circuit, p: &[f64; MOST], free: &[usize]) -> [f64; MOST] {
         let circuit = circuit.prepare(p);
         let mut sums = [0.0; MOST];
         let mut derivatives = [Complex64::ZERO; MOST];
@@ -131,15 +89,15 @@ impl<'a> Data<'a> {
     ///
     /// Circuits with one capacitance have one minimum, and it is looked for among few points first;
     /// ladders have more than one, and are searched from `start`.
-    pub(super) fn minimise(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
-        if circuit == Circuit::Dispersive
-            && let Some(minimum) = projected::minimise(self, start, free)
-        {
-            return minimum;
-        }
+    pub(super) fn minimise(
+        &self,
+        circuit: Circuit,
+        start: &[f64; MOST],
+        free: &[usize],
+    ) -> Minimum {
         let ladder = matches!(circuit, Circuit::Ladder(_));
-        let near = self.thin.as_ref().filter(|_| !ladder);
-        let near = near
+        let thin = if ladder { None } else { self.thin() };
+        let near = thin
             .map(|thin| thin.search(circuit, start, free))
             .filter(|near| near.converged);
         match near {
@@ -148,9 +106,9 @@ impl<'a> Data<'a> {
         }
     }
 
-    fn search(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
+    fn search(&self, circuit: Circuit, start: &[f64; MOST], free: &[usize]) -> Minimum {
         let n = free.len();
-        let mut p = start.to_vec();
+        let mut p = *start;
         let mut here = self.accumulate(circuit, &p, free);
         let (mut damping, mut converged) = (1e-4, false);
         for _ in 0..MOST_EVALUATIONS {
@@ -168,7 +126,7 @@ impl<'a> Data<'a> {
                 converged = here.sum.is_finite();
                 break;
             }
-            let mut moved = p.clone();
+            let mut moved = p;
             for (i, k) in free.iter().enumerate() {
                 moved[*k] += step[i];
             }
@@ -185,7 +143,7 @@ impl<'a> Data<'a> {
         }
         Minimum {
             circuit,
-            residual: self.residual(circuit, &p),
+            course: self.course(circuit, &p),
             turned: self.turned(circuit, &p, free),
             parameters: p,
             free: free.to_vec(),
@@ -225,70 +183,91 @@ impl Normal {
     }
 }
 
-/// Solves `(A + damping·diag A) x = b` by Cholesky's method in correlation scaling; `A` is given by
-/// its lower triangle.
-pub(super) fn solve(a: &Square, n: usize, damping: f64, b: &[f64; MOST]) -> Option<[f64; MOST]> {
-    let (factor, scale) = factorise(a, n, damping)?;
-    let mut x = [0.0; MOST];
-    for i in 0..n {
-        let known: f64 = (0..i).map(|j| factor[i][j] * x[j]).sum();
-        x[i] = (b[i] * scale[i] - known) / factor[i][i];
-    }
-    for i in (0..n).rev() {
-        let known: f64 = (i + 1..n).map(|j| factor[j][i] * x[j]).sum();
-        x[i] = (x[i] - known) / factor[i][i];
-    }
-    for i in 0..n {
-        x[i] *= scale[i];
-    }
-    Some(x)
+/// Solves `(A + damping·diag A) x = b`; `A` is given by its lower triangle.
+pub(super) fn solve<const N: usize>(
+    a: &[[f64; N]; N],
+    n: usize,
+    damping: f64,
+    b: &[f64; N],
+) -> Option<[f64; N]> {
+    Some(Factor::new(a, n, damping)?.solve(b))
 }
 
 /// Inverse of `A`, or `None` where the data do not determine every parameter.
-pub(super) fn invert(a: &Square, n: usize) -> Option<Square> {
-    let mut inverse = [[0.0; MOST]; MOST];
-    for k in 0..n {
-        let mut unit = [0.0; MOST];
-        unit[k] = 1.0;
-        let column = solve(a, n, 0.0, &unit)?;
-        for i in 0..n {
-            inverse[i][k] = column[i];
-        }
-    }
-    Some(inverse)
+pub(super) fn invert<const N: usize>(a: &[[f64; N]; N], n: usize) -> Option<[[f64; N]; N]> {
+    Some(Factor::new(a, n, 0.0)?.inverse())
 }
 
-/// Cholesky factor of the scaled matrix, and the scale.
-fn factorise(a: &Square, n: usize, damping: f64) -> Option<(Square, [f64; MOST])> {
-    let mut scale = [0.0; MOST];
-    for i in 0..n {
-        scale[i] = 1.0 / a[i][i].sqrt();
-        if !scale[i].is_finite() {
+/// Cholesky factor of a matrix of `n` rows, in correlation scaling.
+pub(super) struct Factor<const N: usize> {
+    n: usize,
+    /// The factor's lower triangle, on its diagonal the reciprocals.
+    lower: [[f64; N]; N],
+    scale: [f64; N],
+}
+
+impl<const N: usize> Factor<N> {
+    /// Of `A + damping·diag A`, `A` given by its lower triangle; `None` where it is not positive
+    /// definite.
+    #[inline]
+    pub(super) fn new(a: &[[f64; N]; N], n: usize, damping: f64) -> Option<Factor<N>> {
+        let mut scale = [0.0; N];
+        let mut finite = true;
+        for i in 0..n {
+            scale[i] = 1.0 / a[i][i].sqrt();
+            finite &= scale[i].is_finite();
+        }
+        if !finite {
             return None;
         }
-    }
-    let mut factor = [[0.0; MOST]; MOST];
-    for i in 0..n {
-        for j in 0..=i {
-            let known: f64 = (0..j).map(|k| factor[i][k] * factor[j][k]).sum();
-            let entry = if i == j {
-                1.0 + damping
-            } else {
-                a[i][j] * scale[i] * scale[j]
-            };
-            let rest = entry - known;
-            if i == j {
-                // Below rounding a parameter is not told from the others.
-                if rest.is_nan() || rest <= 1e-13 {
-                    return None;
-                }
-                factor[i][i] = rest.sqrt();
-            } else {
-                factor[i][j] = rest / factor[j][j];
+        let mut lower = [[0.0; N]; N];
+        for j in 0..n {
+            let known: f64 = (0..j).map(|k| lower[j][k] * lower[j][k]).sum();
+            let rest = 1.0 + damping - known;
+            // Below rounding a parameter is not told from the others.
+            if rest.is_nan() || rest <= 1e-13 {
+                return None;
+            }
+            let reciprocal = 1.0 / rest.sqrt();
+            lower[j][j] = reciprocal;
+            for i in j + 1..n {
+                let known: f64 = (0..j).map(|k| lower[i][k] * lower[j][k]).sum();
+                lower[i][j] = (a[i][j] * scale[i] * scale[j] - known) * reciprocal;
             }
         }
+        Some(Factor { n, lower, scale })
     }
-    Some((factor, scale))
+
+    #[inline]
+    pub(super) fn solve(&self, b: &[f64; N]) -> [f64; N] {
+        let (n, lower, scale) = (self.n, &self.lower, &self.scale);
+        let mut x = [0.0; N];
+        for i in 0..n {
+            let known: f64 = (0..i).map(|j| lower[i][j] * x[j]).sum();
+            x[i] = (b[i] * scale[i] - known) * lower[i][i];
+        }
+        for i in (0..n).rev() {
+            let known: f64 = (i + 1..n).map(|j| lower[j][i] * x[j]).sum();
+            x[i] = (x[i] - known) * lower[i][i];
+        }
+        for i in 0..n {
+            x[i] *= scale[i];
+        }
+        x
+    }
+
+    pub(super) fn inverse(&self) -> [[f64; N]; N] {
+        let mut inverse = [[0.0; N]; N];
+        for k in 0..self.n {
+            let mut unit = [0.0; N];
+            unit[k] = 1.0;
+            let column = self.solve(&unit);
+            for i in 0..self.n {
+                inverse[i][k] = column[i];
+            }
+        }
+        inverse
+    }
 }
 
 #[cfg(test)]

@@ -32,6 +32,61 @@ pub enum Circuit {
     Ladder(usize),
 }
 
+/// What a parameter is.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Element {
+    pub(super) name: &'static str,
+    pub(super) unit: &'static str,
+    /// Whether the parameter is the logarithm of the element.
+    pub(super) logarithm: bool,
+}
+
+const fn linear(name: &'static str, unit: &'static str) -> Element {
+    Element {
+        name,
+        unit,
+        logarithm: false,
+    }
+}
+
+const fn logarithm(name: &'static str, unit: &'static str) -> Element {
+    Element {
+        name,
+        unit,
+        logarithm: true,
+    }
+}
+
+const DISPERSIVE: [Element; 5] = [
+    linear("r_0", "Ω"),
+    linear("l", "H"),
+    logarithm("c_1", "F"),
+    linear("dispersion", "1"),
+    linear("r_skin_1mhz", "Ω"),
+];
+const DISPERSIVE_EDDY: [Element; 6] = [
+    linear("r_0", "Ω"),
+    linear("l", "H"),
+    logarithm("c_1", "F"),
+    linear("dispersion", "1"),
+    logarithm("r_eddy", "Ω"),
+    logarithm("l_eddy", "H"),
+];
+/// Of the longest ladder; shorter ones end with an earlier capacitance.
+const LADDER: [Element; MOST] = [
+    linear("r_0", "Ω"),
+    linear("l", "H"),
+    logarithm("r_eddy", "Ω"),
+    logarithm("l_eddy", "H"),
+    logarithm("c_1", "F"),
+    logarithm("r_1", "Ω"),
+    logarithm("c_2", "F"),
+    logarithm("r_2", "Ω"),
+    logarithm("c_3", "F"),
+    logarithm("r_3", "Ω"),
+    logarithm("c_4", "F"),
+];
+
 /// What the circuits need of a frequency.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Point {
@@ -82,42 +137,18 @@ impl Circuit {
 
     /// Whether a parameter is the logarithm of an element.
     pub(super) fn is_logarithm(self, parameter: usize) -> bool {
-        match self {
-            Circuit::Dispersive => parameter == 2,
-            Circuit::DispersiveEddy => matches!(parameter, 2 | 4 | 5),
-            Circuit::Ladder(_) => parameter >= 2,
-        }
+        self.elements()
+            .get(parameter)
+            .is_some_and(|element| element.logarithm)
     }
 
-    /// Names in order and units; the value of a logarithm is given as the quantity itself.
-    pub(super) fn names(self) -> Vec<(String, &'static str, bool)> {
-        let mut all: Vec<(String, &'static str, bool)> =
-            vec![("r_0".into(), "Ω", false), ("l".into(), "H", false)];
-        let eddy = [
-            ("r_eddy".to_owned(), "Ω", true),
-            ("l_eddy".to_owned(), "H", true),
-        ];
-        let dispersion = [
-            ("c_1".to_owned(), "F", true),
-            ("dispersion".to_owned(), "1", false),
-        ];
+    /// The elements in order.
+    pub(super) fn elements(self) -> &'static [Element] {
         match self {
-            Circuit::Dispersive => {
-                all.extend(dispersion);
-                all.push(("r_skin_1mhz".into(), "Ω", false));
-            }
-            Circuit::DispersiveEddy => all.extend(dispersion.into_iter().chain(eddy)),
-            Circuit::Ladder(stages) => {
-                all.extend(eddy);
-                for k in 1..=stages {
-                    all.push((format!("c_{k}"), "F", true));
-                    if k < stages {
-                        all.push((format!("r_{k}"), "Ω", true));
-                    }
-                }
-            }
+            Circuit::Dispersive => &DISPERSIVE,
+            Circuit::DispersiveEddy => &DISPERSIVE_EDDY,
+            Circuit::Ladder(_) => LADDER.get(..self.parameters()).unwrap_or(&LADDER),
         }
-        all
     }
 
     /// What does not depend on frequency, once for all points.
@@ -260,7 +291,7 @@ mod tests {
         ];
         for (circuit, p) in cases {
             assert_eq!(p.len(), circuit.parameters());
-            assert_eq!(p.len(), circuit.names().len());
+            assert_eq!(p.len(), circuit.elements().len());
             for f in [1e3, 3e4, 1e6, 6.5e7] {
                 let at = Point::new(f);
                 let mut derivatives = [Complex64::ZERO; MOST];
