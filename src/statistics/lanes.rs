@@ -1,24 +1,123 @@
 //! Sums in lanes, so that they are not bound by the latency of one running sum.
 //!
-//! Each lane adds its own numbers in their order, and the lanes are added up in one order: the sums are
-//! the same bits whatever width the processor works at.
+//! Each lane adds its own numbers in their order, products are rounded before they are added, and the
+//! lanes are added up in one order: the sums are the same bits whatever width the processor works at.
 
-use pulp::Arch;
-use std::array::from_fn;
+use pulp::{Arch, Scalar128b, WithSimd};
 use std::sync::LazyLock;
 
-/// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
-pub(crate) const LANES: usize = 8;
+pub(crate) use pulp::Simd;
 
 static PROCESSOR: LazyLock<Arch> = LazyLock::new(Arch::new);
 
-/// Does the work with the widest registers that the processor has.
-///
-/// Only what is inlined into `work` gains. Products are rounded before they are added, here as anywhere.
-#[inline]
-pub(crate) fn wide<T>(work: impl FnOnce() -> T) -> T {
-    PROCESSOR.dispatch(work)
+/// Work for [`wide`].
+pub(crate) trait Kernel {
+    type Output;
+
+    /// Must be `#[inline(always)]`, and so must be all that it calls, with no closure longer than a
+    /// line: only what is inlined is made for the processor's registers.
+    fn run<S: Simd>(self, simd: S) -> Self::Output;
 }
+
+/// Does the work with the widest registers that the processor has.
+#[inline]
+pub(crate) fn wide<K: Kernel>(kernel: K) -> K::Output {
+    PROCESSOR.dispatch(Dispatched(kernel))
+}
+
+struct Dispatched<K>(K);
+
+impl<K: Kernel> WithSimd for Dispatched<K> {
+    type Output = K::Output;
+
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, simd: S) -> K::Output {
+        if S::IS_SCALAR {
+            // Two at once is what every processor of this kind can do.
+            self.0.run(Scalar128b)
+        } else {
+            self.0.run(simd)
+        }
+    }
+}
+
+/// Eight numbers that are worked on at once, in as many registers as they need.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Lanes<S: Simd> {
+    simd: S,
+    /// Those that are needed, and others that stay as they are and cost nothing.
+    registers: [S::f64s; LANES],
+}
+
+impl<S: Simd> Lanes<S> {
+    const REGISTERS: usize = LANES / S::F64_LANES;
+
+    /// The same number in every lane.
+    #[inline(always)]
+    pub(crate) fn all(simd: S, value: f64) -> Self {
+        Lanes {
+            simd,
+            registers: [simd.splat_f64s(value); LANES],
+        }
+    }
+
+    #[inline(always)]
+    pub(crate) fn of(simd: S, values: &[f64; LANES]) -> Self {
+        let mut all = Lanes::all(simd, 0.0);
+        let (loaded, _) = S::as_simd_f64s(values);
+        all.registers[..Self::REGISTERS].copy_from_slice(&loaded[..Self::REGISTERS]);
+        all
+    }
+
+    #[inline(always)]
+    pub(crate) fn store(self, to: &mut [f64; LANES]) {
+        let (target, _) = S::as_mut_simd_f64s(to);
+        target[..Self::REGISTERS].copy_from_slice(&self.registers[..Self::REGISTERS]);
+    }
+
+    #[inline(always)]
+    pub(crate) fn plus(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.add_f64s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    #[inline(always)]
+    pub(crate) fn minus(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.sub_f64s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    #[inline(always)]
+    pub(crate) fn times(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.mul_f64s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    #[inline(always)]
+    pub(crate) fn over(mut self, other: Self) -> Self {
+        for k in 0..Self::REGISTERS {
+            self.registers[k] = self.simd.div_f64s(self.registers[k], other.registers[k]);
+        }
+        self
+    }
+
+    /// The sum of the lanes.
+    #[inline(always)]
+    pub(crate) fn sum(self) -> f64 {
+        let mut values = [0.0; LANES];
+        self.store(&mut values);
+        sum(values)
+    }
+}
+
+/// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
+pub(crate) const LANES: usize = 8;
 
 /// The values, and zeros after them up to a whole number of lanes.
 pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
@@ -31,39 +130,55 @@ pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
 /// The sum of the lanes, in the order that leaves them where they are.
 #[inline(always)]
 pub(crate) fn sum(lanes: [f64; LANES]) -> f64 {
-    let four: [f64; 4] = from_fn(|i| lanes[i] + lanes[i + 4]);
-    (four[0] + four[2]) + (four[1] + four[3])
+    let [a, b, c, d, e, f, g, h] = lanes;
+    ((a + e) + (c + g)) + ((b + f) + (d + h))
 }
 
 /// a·b of the whole lanes of two vectors; what is left over does not count.
 #[inline(always)]
 pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for (a, b) in a
-        .as_chunks::<LANES>()
-        .0
-        .iter()
-        .zip(b.as_chunks::<LANES>().0)
-    {
-        lanes = from_fn(|i| lanes[i] + a[i] * b[i]);
-    }
-    sum(lanes)
+    let [product] = products(Scalar128b, [a], b);
+    product
 }
 
 /// Products of `N` vectors with one, each as [`product`] has it; `v` is read once for all.
 ///
-/// All must be as long as `v`; what is left over of whole lanes does not count.
+/// What is left over of whole lanes, or of the shortest, does not count.
 #[inline(always)]
-pub(crate) fn products<const N: usize>(all: [&[f64]; N], v: &[f64]) -> [f64; N] {
-    let v = v.as_chunks::<LANES>().0;
-    let all = all.map(|a| &a.as_chunks::<LANES>().0[..v.len()]);
-    let mut lanes = [[0.0; LANES]; N];
+pub(crate) fn products<S: Simd, const N: usize>(simd: S, all: [&[f64]; N], v: &[f64]) -> [f64; N] {
+    let mut shortest = chunks(v).len();
+    for a in &all {
+        shortest = shortest.min(chunks(a).len());
+    }
+    let v = &chunks(v)[..shortest];
+    let mut of: [&[[f64; LANES]]; N] = [&[]; N];
+    for n in 0..N {
+        of[n] = &chunks(all[n])[..shortest];
+    }
+    let mut lanes = [Lanes::all(simd, 0.0); N];
     for (i, v) in v.iter().enumerate() {
-        for (lanes, a) in lanes.iter_mut().zip(&all) {
-            *lanes = from_fn(|k| lanes[k] + a[i][k] * v[k]);
+        let v = Lanes::of(simd, v);
+        for n in 0..N {
+            lanes[n] = lanes[n].plus(Lanes::of(simd, &of[n][i]).times(v));
         }
     }
-    lanes.map(sum)
+    let mut sums = [0.0; N];
+    for n in 0..N {
+        sums[n] = lanes[n].sum();
+    }
+    sums
+}
+
+/// The whole lanes of a vector.
+#[inline(always)]
+pub(crate) fn chunks(v: &[f64]) -> &[[f64; LANES]] {
+    v.as_chunks().0
+}
+
+/// Likewise, to be written to.
+#[inline(always)]
+pub(crate) fn chunks_mut(v: &mut [f64]) -> &mut [[f64; LANES]] {
+    v.as_chunks_mut().0
 }
 
 /// a·b of vectors of any length.
@@ -78,15 +193,30 @@ pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
 #[inline(always)]
 pub(crate) fn total(values: &[f64]) -> f64 {
     let (whole, rest) = values.as_chunks::<LANES>();
-    let lanes = whole.iter().fold([0.0; LANES], |lanes, values| {
-        from_fn(|i| lanes[i] + values[i])
-    });
+    let mut lanes = [0.0; LANES];
+    for values in whole {
+        for k in 0..LANES {
+            lanes[k] += values[k];
+        }
+    }
     sum(lanes) + rest.iter().sum::<f64>()
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use std::array::from_fn;
+
+    struct Products<'a>([&'a [f64]; 5], &'a [f64]);
+
+    impl Kernel for Products<'_> {
+        type Output = [f64; 5];
+
+        #[inline(always)]
+        fn run<S: Simd>(self, simd: S) -> [f64; 5] {
+            products(simd, self.0, self.1)
+        }
+    }
 
     #[test]
     fn sums_have_every_term() {
@@ -117,7 +247,7 @@ mod tests {
         let alone: [f64; 5] = from_fn(|k| product(&all[k], &v));
         assert!(alone[0] > 0.0 && alone[0] != alone[1]);
         let borrowed: [&[f64]; 5] = from_fn(|k| all[k].as_slice());
-        assert_eq!(products(borrowed, &v), alone);
-        assert_eq!(wide(|| products(borrowed, &v)), alone);
+        assert_eq!(products(Scalar128b, borrowed, &v), alone);
+        assert_eq!(wide(Products(borrowed, &v)), alone);
     }
 }
