@@ -36,7 +36,9 @@ impl Axis {
         let middle = 0.5 * (first + last);
         Axis {
             middle,
-            reach: ends.iter().fold(0.0, |far, ln| (ln - middle).abs().max(far)),
+            reach: ends
+                .iter()
+                .fold(0.0, |far, ln| (ln - middle).abs().max(far)),
             ln,
             omega: filled(frequency.iter().map(|f| TAU * f)),
             root: filled(frequency.iter().map(|f| (f / ROOT_AT).sqrt())),
@@ -59,17 +61,13 @@ impl Grid {
     pub(super) const STEP: usize = THIN;
 }
 
-/// Whether these are the same numbers. All of a block are looked at, which is quicker than to stop at
-/// one.
+/// Whether these are the same numbers. All are looked at, which is quicker than to stop at one.
 fn same(a: Option<&[f64]>, b: Option<&[f64]>) -> bool {
-    const BLOCK: usize = 64;
     let (Some(a), Some(b)) = (a, b) else {
         return a.is_none() && b.is_none();
     };
-    let equal = |(a, b): (&[f64], &[f64])| {
-        (a.iter().zip(b)).fold(true, |same, (a, b)| same & (a == b))
-    };
-    a.len() == b.len() && a.chunks(BLOCK).zip(b.chunks(BLOCK)).all(equal)
+    let equal: u64 = a.iter().zip(b).map(|(a, b)| u64::from(a == b)).sum();
+    a.len() == b.len() && equal == a.len() as u64
 }
 
 thread_local! {

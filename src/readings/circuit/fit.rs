@@ -1,6 +1,6 @@
 //! Which circuit, how well it describes the part, and what its parameters are.
 
-use super::data::{Columns, Data};
+use super::data::{Columns, Data, Room};
 use super::marquardt::{Factor, Minimum, invert};
 use super::model::{CAPACITANCE_AT, Circuit, Element, MOST, Point};
 use super::projected;
@@ -8,7 +8,7 @@ use super::start::{Rough, rough};
 use crate::diagnostic::Note;
 use crate::quantity::engineering;
 use crate::readings::grid::grid;
-use crate::readings::local_fit::{noise, sound};
+use crate::readings::local_fit::noise;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
@@ -117,8 +117,10 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
             ),
         ));
     }
-    let columns = Columns::new(impedance);
-    if !sound(columns.square()) {
+    let mut room = Room::default();
+    let (room, vectors) = room.new(frequency.len());
+    let columns = Columns::new(impedance, room);
+    if !columns.sound {
         return Err(Note::new(
             "circuit_not_finite",
             "the sweep holds an impedance that is zero",
@@ -133,7 +135,7 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
     let grid = grid(frequency, 0..frequency.len());
     let noise = relative_noise(impedance, columns.square(), columns.size());
     let data = Data::new(&grid, columns);
-    let best = best(sweep, &data, &rough, noise);
+    let best = best(sweep, &data, vectors, &rough, noise);
     Ok(assemble(sweep, &data, &best, noise))
 }
 
@@ -148,12 +150,18 @@ fn rms(data: &Data, minimum: &Minimum) -> f64 {
 }
 
 /// Tries circuits from small to large until one leaves no more than noise.
-fn best(sweep: &Sweep, data: &Data, rough: &Rough, noise: f64) -> Minimum {
+fn best(
+    sweep: &Sweep,
+    data: &Data,
+    vectors: [&mut [f64]; projected::VECTORS],
+    rough: &Rough,
+    noise: f64,
+) -> Minimum {
     let start = |circuit| {
         let sizes = data.columns.size();
         rough.parameters(circuit, &sweep.frequency, &sweep.impedance, sizes)
     };
-    let mut best = projected::minimise(data, rough.exponent()).unwrap_or_else(|| {
+    let mut best = projected::minimise(data, vectors, rough.exponent()).unwrap_or_else(|| {
         let circuit = Circuit::Dispersive;
         physical(data, circuit, &start(circuit))
     });
@@ -177,7 +185,8 @@ fn best(sweep: &Sweep, data: &Data, rough: &Rough, noise: f64) -> Minimum {
         if !goes_on {
             continue;
         }
-        if enough(&best, limit) && (whole || circuit != Circuit::DispersiveEddy || is_noise(data, &best))
+        if enough(&best, limit)
+            && (whole || circuit != Circuit::DispersiveEddy || is_noise(data, &best))
         {
             continue;
         }

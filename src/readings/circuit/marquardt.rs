@@ -1,7 +1,7 @@
 //! Levenberg-Marquardt for complex residuals `(Z(f_i) − Z_i)/|Z_i|` (D. W. Marquardt, J. SIAM 11
 //! (1963) 431), on scaled normal equations: few parameters, well scaled, many points.
 
-use super::data::{Course, Data};
+use super::data::{Course, Data, Room};
 use super::model::{Circuit, MOST};
 use num_complex::Complex64;
 
@@ -96,7 +96,8 @@ impl Data<'_> {
         free: &[usize],
     ) -> Minimum {
         let ladder = matches!(circuit, Circuit::Ladder(_));
-        let thin = if ladder { None } else { self.thin() };
+        let mut room = Room::default();
+        let thin = (!ladder).then(|| self.thin(&mut room)).flatten();
         let near = thin
             .map(|thin| thin.search(circuit, start, free))
             .filter(|near| near.converged);

@@ -13,7 +13,7 @@ use super::data::{Course, Data};
 use super::exponential::exp;
 use super::marquardt::{Factor, Minimum};
 use super::model::{CAPACITANCE_AT, Circuit, MOST};
-use crate::statistics::lanes::{Four, wide};
+use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, wide};
 use num_complex::Complex64;
 use std::array::from_fn;
 use std::f64::consts::{FRAC_PI_2, TAU};
@@ -46,6 +46,9 @@ const ROUNDING: f64 = 1e-18;
 const ORDERS: usize = 5;
 const SQUARE_ORDERS: usize = ORDERS + 2;
 
+/// Vectors that the search needs room for.
+pub(super) const VECTORS: usize = 4;
+
 /// Something for each parameter.
 type Each = [f64; ALL];
 /// Products of the derivatives, lower triangle.
@@ -57,9 +60,9 @@ struct Search<'a> {
     fixed: Fixed,
     moments: Moments,
     /// The weighted powers `u (ω/ωm)^(a−1)` at the exponent of the moments, `u = 1/|Z|`.
-    powers: Vec<f64>,
-    /// The weighted residuals' real and imaginary parts.
-    residual: [Vec<f64>; 2],
+    powers: &'a mut [f64],
+    /// The weighted residuals' real and imaginary parts, and the weighted powers there.
+    residual: [&'a mut [f64]; 3],
 }
 
 /// Sums over the points, weighted with 1/|Z|², that do not depend on the exponent: products among
@@ -136,9 +139,9 @@ impl State {
 /// The minimum with no element negative: one that would be is left out. The search begins at the
 /// exponent `start`.
 ///
-/// `None` where the way is not straight: Levenberg's and Marquardt's method is for that.
-pub(super) fn minimise(data: &Data, start: f64) -> Option<Minimum> {
-    let mut search = Search::new(data, start);
+/// `vectors` are room for the work, each as long as a column of the data. `None` where the way is not straight: Levenberg's and Marquardt's method is for that.
+pub(super) fn minimise(data: &Data, vectors: [&mut [f64]; VECTORS], start: f64) -> Option<Minimum> {
+    let mut search = Search::new(data, vectors, start);
     let (mut free, mut a) = ([true; ALL], start);
     // Each time round but the last one element less.
     for _ in 0..=NOT_NEGATIVE.len() {
@@ -160,26 +163,26 @@ pub(super) fn minimise(data: &Data, start: f64) -> Option<Minimum> {
 }
 
 impl<'a> Search<'a> {
-    fn new(data: &'a Data<'a>, at: f64) -> Search<'a> {
-        let length = data.columns.weight().len();
-        let mut powers = vec![0.0; length];
-        let (fixed, moments) = wide(#[inline(always)] || {
-            let fixed = Fixed::new(data);
-            (fixed, Moments::new(data, at, &mut powers))
-        });
+    fn new(data: &'a Data<'a>, vectors: [&'a mut [f64]; VECTORS], at: f64) -> Search<'a> {
+        let [powers, residual @ ..] = vectors;
+        let moments = OfMoments { data, at, powers };
         Search {
             data,
-            fixed,
-            moments,
+            fixed: wide(OfFixed(data)),
+            moments: wide(moments),
             powers,
-            residual: [vec![0.0; length], vec![0.0; length]],
+            residual,
         }
     }
 
     /// The sums at an exponent; made anew where those that are there lie too far away.
     fn sums(&mut self, a: f64) -> Sums {
         if (a - self.moments.at).abs() * self.data.axis.reach > NEAR {
-            self.moments = wide(#[inline(always)] || Moments::new(self.data, a, &mut self.powers));
+            self.moments = wide(OfMoments {
+                data: self.data,
+                at: a,
+                powers: self.powers,
+            });
         }
         self.moments.sums(a)
     }
@@ -223,10 +226,16 @@ impl<'a> Search<'a> {
     /// The residuals at a state within reach of the moments; the sum of their squares and half its
     /// gradient.
     fn residual(&mut self, state: &State) -> (f64, Each) {
-        let ([re, im], powers) = (&mut self.residual, &self.powers);
-        let (data, turn) = (self.data, state.a - self.moments.at);
-        let products = wide(#[inline(always)] || residual(data, powers, turn, state, re, im));
-        let [sum, one, omega, root, e_re, e_im, ln_re, ln_im] = products;
+        let [re, im, turned] = &mut self.residual;
+        let [sum, one, omega, root, e_re, e_im, ln_re, ln_im] = wide(OfResidual {
+            data: self.data,
+            state,
+            powers: self.powers,
+            turn: state.a - self.moments.at,
+            re,
+            im,
+            turned,
+        });
         let (e, ln) = (Complex64::new(e_re, e_im), Complex64::new(ln_re, ln_im));
         (sum, along(state, [one, omega, root], e, ln))
     }
@@ -267,8 +276,35 @@ impl<'a> Search<'a> {
     }
 
     fn course(&self) -> Course {
-        let [re, im] = &self.residual;
+        let [re, im, _] = &self.residual;
         Course::of(&re[..self.data.len()], &im[..self.data.len()])
+    }
+}
+
+/// The points' vectors in lanes, all of one length.
+#[derive(Clone, Copy)]
+struct Chunks<'a> {
+    weight: &'a [[f64; LANES]],
+    omega: &'a [[f64; LANES]],
+    root: &'a [[f64; LANES]],
+    ln: &'a [[f64; LANES]],
+    re: &'a [[f64; LANES]],
+    im: &'a [[f64; LANES]],
+}
+
+impl<'a> Chunks<'a> {
+    #[inline(always)]
+    fn of(data: &'a Data) -> Chunks<'a> {
+        let weight = chunks(data.columns.weight());
+        let n = weight.len();
+        Chunks {
+            weight,
+            omega: &chunks(&data.axis.omega)[..n],
+            root: &chunks(&data.axis.root)[..n],
+            ln: &chunks(&data.axis.ln)[..n],
+            re: &chunks(data.columns.re())[..n],
+            im: &chunks(data.columns.im())[..n],
+        }
     }
 }
 
@@ -337,12 +373,7 @@ fn normal(fixed: &Fixed, sums: &Sums, state: &State, free: &[bool; ALL]) -> Norm
 }
 
 /// `Jᵀ` of a linear function of the weighted data.
-fn project(
-    fixed: &Fixed,
-    sums: &Sums,
-    state: &State,
-    of: impl Fn(Complex64) -> Complex64,
-) -> Each {
+fn project(fixed: &Fixed, sums: &Sums, state: &State, of: impl Fn(Complex64) -> Complex64) -> Each {
     let root = of(fixed.root_z);
     let series = [of(fixed.one_z).re, of(fixed.omega_z).im, root.re + root.im];
     along(state, series, of(sums.z[0]), of(sums.z[1]))
@@ -359,109 +390,134 @@ fn along(state: &State, series: [f64; 3], e: Complex64, ln: Complex64) -> Each {
     [r0, l, -k * of(e), k * (of(ln) + FRAC_PI_2 * across), skin]
 }
 
-impl Fixed {
+/// Makes [`Fixed`].
+struct OfFixed<'a>(&'a Data<'a>);
+
+impl Kernel for OfFixed<'_> {
+    type Output = Fixed;
+
     #[inline(always)]
-    fn new(data: &Data) -> Fixed {
-        let (axis, columns) = (data.axis, &data.columns);
-        let weight = Four::of(columns.weight());
-        let [omega, root] = [&axis.omega, &axis.root].map(|v| &Four::of(v)[..weight.len()]);
-        let [re, im] = [columns.re(), columns.im()].map(|v| &Four::of(v)[..weight.len()]);
-        let mut sums = [Four::ZERO; 11];
-        for (i, u) in weight.iter().enumerate() {
-            let u = Four::from(*u);
-            let w = u * u;
-            let (omega, root) = (Four::from(omega[i]), Four::from(root[i]));
-            let (w_omega, w_root) = (w * omega, w * root);
-            let (re, im) = (Four::from(re[i]), Four::from(im[i]));
-            sums[0] += w;
-            sums[1] += w_omega * omega;
-            sums[2] += w_root;
-            sums[3] += w_root * omega;
-            sums[4] += w_root * root;
-            sums[5] += w * re;
-            sums[6] += w * im;
-            sums[7] += w_omega * re;
-            sums[8] += w_omega * im;
-            sums[9] += w_root * re;
-            sums[10] += w_root * im;
+    fn run<S: Simd>(self, simd: S) -> Fixed {
+        let Chunks {
+            weight,
+            omega,
+            root,
+            re,
+            im,
+            ..
+        } = Chunks::of(self.0);
+        let none = Lanes::all(simd, 0.0);
+        // As many sums at a time as there are registers for.
+        let (mut one_one, mut omega_omega, mut root_one, mut root_omega, mut root_root) =
+            (none, none, none, none, none);
+        for i in 0..weight.len() {
+            let u = Lanes::of(simd, &weight[i]);
+            let omega = Lanes::of(simd, &omega[i]);
+            let root = Lanes::of(simd, &root[i]);
+            let w = u.times(u);
+            let w_root = w.times(root);
+            one_one = one_one.plus(w);
+            omega_omega = omega_omega.plus(w.times(omega).times(omega));
+            root_one = root_one.plus(w_root);
+            root_omega = root_omega.plus(w_root.times(omega));
+            root_root = root_root.plus(w_root.times(root));
         }
-        let sums = sums.map(Four::sum);
+        let [mut with_re, mut with_im] = [[none; 3]; 2];
+        for i in 0..weight.len() {
+            let u = Lanes::of(simd, &weight[i]);
+            let w = u.times(u);
+            let w_re = w.times(Lanes::of(simd, &re[i]));
+            let w_im = w.times(Lanes::of(simd, &im[i]));
+            let omega = Lanes::of(simd, &omega[i]);
+            let root = Lanes::of(simd, &root[i]);
+            with_re[0] = with_re[0].plus(w_re);
+            with_im[0] = with_im[0].plus(w_im);
+            with_re[1] = with_re[1].plus(w_re.times(omega));
+            with_im[1] = with_im[1].plus(w_im.times(omega));
+            with_re[2] = with_re[2].plus(w_re.times(root));
+            with_im[2] = with_im[2].plus(w_im.times(root));
+        }
         Fixed {
-            one_one: sums[0],
-            omega_omega: sums[1],
-            root_one: sums[2],
-            root_omega: sums[3],
-            root_root: sums[4],
-            one_z: Complex64::new(sums[5], sums[6]),
-            omega_z: Complex64::new(sums[7], sums[8]),
-            root_z: Complex64::new(sums[9], sums[10]),
+            one_one: one_one.sum(),
+            omega_omega: omega_omega.sum(),
+            root_one: root_one.sum(),
+            root_omega: root_omega.sum(),
+            root_root: root_root.sum(),
+            one_z: Complex64::new(with_re[0].sum(), with_im[0].sum()),
+            omega_z: Complex64::new(with_re[1].sum(), with_im[1].sum()),
+            root_z: Complex64::new(with_re[2].sum(), with_im[2].sum()),
         }
     }
 }
 
-impl Moments {
-    /// At the exponent `at`; `powers` receives the weighted powers.
+/// Makes [`Moments`] at an exponent, and writes the weighted powers.
+struct OfMoments<'a> {
+    data: &'a Data<'a>,
+    at: f64,
+    powers: &'a mut [f64],
+}
+
+impl Kernel for OfMoments<'_> {
+    type Output = Moments;
+
     #[inline(always)]
-    fn new(data: &Data, at: f64, powers: &mut [f64]) -> Moments {
-        let (axis, columns) = (data.axis, &data.columns);
-        let weight = columns.weight();
-        for ((e, u), ln) in powers.iter_mut().zip(weight).zip(&axis.ln) {
-            *e = u * exp((at - 1.0) * (ln - axis.middle));
+    fn run<S: Simd>(self, simd: S) -> Moments {
+        let (axis, columns) = (self.data.axis, &self.data.columns);
+        for ((e, u), ln) in self.powers.iter_mut().zip(columns.weight()).zip(&axis.ln) {
+            *e = u * exp((self.at - 1.0) * (ln - axis.middle));
         }
-        let weight = Four::of(weight);
-        let fours = |v| &Four::of(v)[..weight.len()];
-        let (powers, ln, middle) = (fours(powers), fours(&axis.ln), Four::all(axis.middle));
-        let (omega, root) = (fours(&axis.omega), fours(&axis.root));
-        let (re, im) = (fours(columns.re()), fours(columns.im()));
-        // As many sums at a time as there are registers for.
-        let [mut with_one, mut with_omega, mut with_root] = [[Four::ZERO; ORDERS]; 3];
-        for (i, u) in weight.iter().enumerate() {
-            let x = Four::from(ln[i]) - middle;
-            let omega = Four::from(omega[i]);
-            let mut e = Four::from(*u) * Four::from(powers[i]);
-            for k in 0..ORDERS {
-                with_one[k] += e;
-                with_omega[k] += e * omega;
-                e = e * x;
-            }
-        }
-        let mut squares = [Four::ZERO; SQUARE_ORDERS];
-        for (i, u) in weight.iter().enumerate() {
-            let x = Four::from(ln[i]) - middle;
-            let power = Four::from(powers[i]);
-            let mut e = Four::from(*u) * Four::from(root[i]) * power;
-            let mut square = power * power;
-            for k in 0..ORDERS {
-                with_root[k] += e;
-                e = e * x;
-            }
-            for sum in &mut squares {
-                *sum += square;
-                square = square * x;
-            }
-        }
-        let [mut with_re, mut with_im] = [[Four::ZERO; ORDERS]; 2];
-        for (i, u) in weight.iter().enumerate() {
-            let x = Four::from(ln[i]) - middle;
-            let e = Four::from(*u) * Four::from(powers[i]);
-            let (mut re, mut im) = (e * Four::from(re[i]), e * Four::from(im[i]));
-            for k in 0..ORDERS {
-                with_re[k] += re;
-                with_im[k] += im;
-                (re, im) = (re * x, im * x);
-            }
-        }
+        let Chunks {
+            weight,
+            omega,
+            root,
+            ln,
+            re,
+            im,
+        } = Chunks::of(self.data);
+        let e = &chunks(self.powers)[..weight.len()];
+        let x = (ln, axis.middle);
         Moments {
-            at,
-            one: with_one.map(Four::sum),
-            omega: with_omega.map(Four::sum),
-            root: with_root.map(Four::sum),
-            re: with_re.map(Four::sum),
-            im: with_im.map(Four::sum),
-            square: squares.map(Four::sum),
+            at: self.at,
+            one: orders(simd, [weight, e], x),
+            omega: orders(simd, [weight, e, omega], x),
+            root: orders(simd, [weight, e, root], x),
+            re: orders(simd, [weight, e, re], x),
+            im: orders(simd, [weight, e, im], x),
+            square: orders(simd, [e, e], x),
         }
     }
+}
 
+/// Sums over the points of a product of vectors times the powers of `x`, the difference of a vector
+/// and a number.
+#[inline(always)]
+fn orders<S: Simd, const N: usize, const FACTORS: usize>(
+    simd: S,
+    factors: [&[[f64; LANES]]; FACTORS],
+    x: (&[[f64; LANES]], f64),
+) -> [f64; N] {
+    let (ln, middle) = (x.0, Lanes::all(simd, x.1));
+    let mut lanes = [Lanes::all(simd, 0.0); N];
+    for i in 0..ln.len() {
+        let x = Lanes::of(simd, &ln[i]).minus(middle);
+        let mut term = Lanes::of(simd, &factors[0][i]);
+        for factor in &factors[1..] {
+            term = term.times(Lanes::of(simd, &factor[i]));
+        }
+        lanes[0] = lanes[0].plus(term);
+        for lanes in &mut lanes[1..] {
+            term = term.times(x);
+            *lanes = lanes.plus(term);
+        }
+    }
+    let mut sums = [0.0; N];
+    for n in 0..N {
+        sums[n] = lanes[n].sum();
+    }
+    sums
+}
+
+impl Moments {
     /// At an exponent nearby.
     fn sums(&self, a: f64) -> Sums {
         let d = a - self.at;
@@ -482,65 +538,105 @@ fn series(moments: &[f64], d: f64) -> f64 {
     (moments.iter().enumerate().rev()).fold(0.0, |sum, (k, m)| m + sum * d / (k + 1) as f64)
 }
 
-/// Writes the weighted residuals' real and imaginary parts; sums over the points of their squares
-/// and of their products with the weighted 1, ω and root, with the powers, and with these times
-/// ln(ω/ωm). `powers` are those from which the state's exponent is `turn` away.
-#[inline(always)]
-fn residual(
-    data: &Data,
-    powers: &[f64],
+/// Makes the weighted residuals' real and imaginary parts, and the sums over the points of their
+/// squares and of their products with the weighted 1, ω and root, with the powers, and with these
+/// times ln(ω/ωm).
+struct OfResidual<'a> {
+    data: &'a Data<'a>,
+    state: &'a State,
+    powers: &'a [f64],
+    /// How far the state's exponent is from that of the powers.
     turn: f64,
-    state: &State,
-    re: &mut [f64],
-    im: &mut [f64],
-) -> [f64; 8] {
-    /// Of (eˣ − 1)/x, exact to rounding where |x| is below `NEAR`.
-    const SERIES: [f64; 7] = [
-        1.0 / 5040.0,
-        1.0 / 720.0,
-        1.0 / 120.0,
-        1.0 / 24.0,
-        1.0 / 6.0,
-        0.5,
-        1.0,
-    ];
-    let (axis, columns) = (data.axis, &data.columns);
-    let weight = Four::of(columns.weight());
-    let fours = |v| &Four::of(v)[..weight.len()];
-    let (powers, ln) = (fours(powers), fours(&axis.ln));
-    let (omega, root) = (fours(&axis.omega), fours(&axis.root));
-    let (z_re, z_im) = (fours(columns.re()), fours(columns.im()));
-    let re = &mut re.as_chunks_mut::<4>().0[..weight.len()];
-    let im = &mut im.as_chunks_mut::<4>().0[..weight.len()];
-    let (middle, turn) = (Four::all(axis.middle), Four::all(turn));
-    let (r0, l, skin) = (Four::all(state.r0), Four::all(state.l), Four::all(state.skin));
-    let (cos, sin) = state.angle();
-    let [cos, sin] = [cos, sin].map(|v| Four::all(state.kappa * v));
-    let mut sums = [Four::ZERO; 8];
-    for i in 0..weight.len() {
-        let x = Four::from(ln[i]) - middle;
-        let y = x * turn;
-        let grown = (SERIES.iter()).fold(Four::ZERO, |sum, c| sum * y + Four::all(*c));
-        let power = Four::from(powers[i]);
-        let e = power + power * (y * grown);
-        let (u, omega, root) = (
-            Four::from(weight[i]),
-            Four::from(omega[i]),
-            Four::from(root[i]),
-        );
-        let rise = skin * root;
-        let of_re = u * (r0 + rise - Four::from(z_re[i])) + cos * e;
-        let of_im = u * (l * omega + rise - Four::from(z_im[i])) + sin * e;
-        (re[i], im[i]) = (of_re.into(), of_im.into());
-        let (with_re, with_im) = (e * of_re, e * of_im);
-        sums[0] += of_re * of_re + of_im * of_im;
-        sums[1] += u * of_re;
-        sums[2] += u * omega * of_im;
-        sums[3] += u * root * (of_re + of_im);
-        sums[4] += with_re;
-        sums[5] += with_im;
-        sums[6] += with_re * x;
-        sums[7] += with_im * x;
+    re: &'a mut [f64],
+    im: &'a mut [f64],
+    /// Receives the powers at the state's exponent.
+    turned: &'a mut [f64],
+}
+
+impl Kernel for OfResidual<'_> {
+    type Output = [f64; 8];
+
+    #[inline(always)]
+    fn run<S: Simd>(self, simd: S) -> [f64; 8] {
+        /// Of (eˣ − 1)/x, exact to rounding where |x| is below `NEAR`.
+        const SERIES: [f64; 7] = [
+            1.0 / 5040.0,
+            1.0 / 720.0,
+            1.0 / 120.0,
+            1.0 / 24.0,
+            1.0 / 6.0,
+            0.5,
+            1.0,
+        ];
+        let (all, state) = (Chunks::of(self.data), self.state);
+        let Chunks {
+            weight,
+            omega,
+            root,
+            ln,
+            ..
+        } = all;
+        let powers = &chunks(self.powers)[..weight.len()];
+        let re = &mut chunks_mut(self.re)[..weight.len()];
+        let im = &mut chunks_mut(self.im)[..weight.len()];
+        let turned = &mut chunks_mut(self.turned)[..weight.len()];
+        let (middle, turn) = (self.data.axis.middle, Lanes::all(simd, self.turn));
+        let middle = Lanes::all(simd, middle);
+        let (r0, l) = (Lanes::all(simd, state.r0), Lanes::all(simd, state.l));
+        let skin = Lanes::all(simd, state.skin);
+        let (cos, sin) = state.angle();
+        let cos = Lanes::all(simd, state.kappa * cos);
+        let sin = Lanes::all(simd, state.kappa * sin);
+        for i in 0..weight.len() {
+            let y = Lanes::of(simd, &ln[i]).minus(middle).times(turn);
+            let mut grown = Lanes::all(simd, SERIES[0]);
+            for c in &SERIES[1..] {
+                grown = grown.times(y).plus(Lanes::all(simd, *c));
+            }
+            let power = Lanes::of(simd, &powers[i]);
+            power
+                .plus(power.times(y.times(grown)))
+                .store(&mut turned[i]);
+        }
+        let none = Lanes::all(simd, 0.0);
+        let (mut square, mut with_one, mut with_omega, mut with_root) = (none, none, none, none);
+        for i in 0..weight.len() {
+            let u = Lanes::of(simd, &weight[i]);
+            let e = Lanes::of(simd, &turned[i]);
+            let omega = Lanes::of(simd, &omega[i]);
+            let root = Lanes::of(simd, &root[i]);
+            let rise = skin.times(root);
+            let series = r0.plus(rise).minus(Lanes::of(simd, &all.re[i]));
+            let of_re = u.times(series).plus(cos.times(e));
+            let series = l.times(omega).plus(rise).minus(Lanes::of(simd, &all.im[i]));
+            let of_im = u.times(series).plus(sin.times(e));
+            of_re.store(&mut re[i]);
+            of_im.store(&mut im[i]);
+            square = square.plus(of_re.times(of_re).plus(of_im.times(of_im)));
+            with_one = with_one.plus(u.times(of_re));
+            with_omega = with_omega.plus(u.times(omega).times(of_im));
+            with_root = with_root.plus(u.times(root).times(of_re.plus(of_im)));
+        }
+        let (mut e_re, mut e_im, mut ln_re, mut ln_im) = (none, none, none, none);
+        for i in 0..weight.len() {
+            let x = Lanes::of(simd, &ln[i]).minus(middle);
+            let e = Lanes::of(simd, &turned[i]);
+            let with_re = e.times(Lanes::of(simd, &re[i]));
+            let with_im = e.times(Lanes::of(simd, &im[i]));
+            e_re = e_re.plus(with_re);
+            e_im = e_im.plus(with_im);
+            ln_re = ln_re.plus(with_re.times(x));
+            ln_im = ln_im.plus(with_im.times(x));
+        }
+        [
+            square.sum(),
+            with_one.sum(),
+            with_omega.sum(),
+            with_root.sum(),
+            e_re.sum(),
+            e_im.sum(),
+            ln_re.sum(),
+            ln_im.sum(),
+        ]
     }
-    sums.map(Four::sum)
 }
