@@ -14,7 +14,7 @@ pub(super) const ROOT_AT: f64 = 1e6;
 /// Every so manieth point is in the thin axis.
 const THIN: usize = 8;
 
-/// Functions of some frequencies, filled up with zeros to whole lanes.
+/// Functions of some frequencies, filled up to whole lanes with those of the last one.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Axis {
     /// 2πf in rad/s
@@ -29,19 +29,23 @@ pub(super) struct Axis {
 }
 
 impl Axis {
-    fn new(frequency: &[f64]) -> Axis {
-        let ln = filled(frequency.iter().map(|f| (f / LN_AT).ln()));
-        let ends = ln.get(..frequency.len()).unwrap_or_default();
-        let [first, last] = [ends.first(), ends.last()].map(|ln| *ln.unwrap_or(&0.0));
+    pub(super) fn new(frequency: &[f64]) -> Axis {
+        let of = |f: fn(f64) -> f64| {
+            let mut all = filled(frequency.iter().map(|frequency| f(*frequency)));
+            if let Some(last) = frequency.last() {
+                all[frequency.len()..].fill(f(*last));
+            }
+            all
+        };
+        let ln = of(|f| (f / LN_AT).ln());
+        let [first, last] = [ln.first(), ln.last()].map(|ln| *ln.unwrap_or(&0.0));
         let middle = 0.5 * (first + last);
         Axis {
             middle,
-            reach: ends
-                .iter()
-                .fold(0.0, |far, ln| (ln - middle).abs().max(far)),
+            reach: ln.iter().fold(0.0, |far, ln| (ln - middle).abs().max(far)),
             ln,
-            omega: filled(frequency.iter().map(|f| TAU * f)),
-            root: filled(frequency.iter().map(|f| (f / ROOT_AT).sqrt())),
+            omega: of(|f| TAU * f),
+            root: of(|f| (f / ROOT_AT).sqrt()),
         }
     }
 }

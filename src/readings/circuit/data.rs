@@ -1,6 +1,5 @@
 //! The points that are fitted, one vector for each of what is needed of them.
 
-use super::model::Point;
 use crate::readings::grid::{Axis, Grid};
 use crate::statistics::lanes::{Kernel, LANES, Simd, dot, sum, wide};
 use num_complex::Complex64;
@@ -22,7 +21,7 @@ thread_local! {
 
 impl Room {
     /// For the columns of so many points, and `N` vectors as long as a column.
-    pub(super) fn new<const N: usize>(&mut self, points: usize) -> (&mut [f64], [&mut [f64]; N]) {
+    pub(super) fn take<const N: usize>(&mut self, points: usize) -> (&mut [f64], [&mut [f64]; N]) {
         let length = points.next_multiple_of(LANES);
         let all = &mut self.0;
         *all = ROOM.take();
@@ -181,15 +180,6 @@ impl<'a> Data<'a> {
         2 * self.len()
     }
 
-    /// The points with their impedance and weight.
-    pub(super) fn points(&self) -> impl Iterator<Item = (Point, Complex64, f64)> {
-        let columns = &self.columns;
-        let impedance = columns.re().iter().zip(columns.im());
-        (Point::of(self.axis).zip(impedance).zip(columns.weight()))
-            .map(|((at, (re, im)), w)| (at, Complex64::new(*re, *im), *w))
-            .take(self.len())
-    }
-
     /// Every eighth point, where there are enough: a search that begins at its minimum is over in a
     /// few steps.
     pub(super) fn thin<'b>(&self, room: &'b mut Room) -> Option<Data<'b>>
@@ -199,9 +189,10 @@ impl<'a> Data<'a> {
         if self.len() < Grid::STEP * THIN_LEAST {
             return None;
         }
-        let all = self.points().map(|(_, z, _)| z);
-        let impedance: Vec<Complex64> = all.step_by(Grid::STEP).collect();
-        let (room, []) = room.new(impedance.len());
+        let all = self.columns.re().iter().zip(self.columns.im());
+        let every = all.take(self.len()).step_by(Grid::STEP);
+        let impedance: Vec<Complex64> = every.map(|(re, im)| Complex64::new(*re, *im)).collect();
+        let (room, []) = room.take(impedance.len());
         Some(Data {
             axis: self.thin_axis,
             columns: Columns::new(&impedance, room),

@@ -2,7 +2,7 @@
 
 use super::data::{Columns, Data, Room};
 use super::marquardt::{Factor, Minimum, invert};
-use super::model::{CAPACITANCE_AT, Circuit, Element, MOST, Point};
+use super::model::{CAPACITANCE_AT, Circuit, Element, MOST};
 use super::projected;
 use super::start::{Rough, rough};
 use crate::diagnostic::Note;
@@ -118,7 +118,7 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
         ));
     }
     let mut room = Room::default();
-    let (room, vectors) = room.new(frequency.len());
+    let (room, vectors) = room.take(frequency.len());
     let columns = Columns::new(impedance, room);
     if !columns.sound {
         return Err(Note::new(
@@ -343,12 +343,7 @@ fn notes(m: &Minimum, residual: &Residual, determined: bool) -> Vec<Note> {
 impl CircuitFit {
     /// Z in Ω of the circuit at each frequency in Hz, for curves.
     pub fn impedance(&self, frequency: &[f64]) -> Vec<Complex64> {
-        let circuit = self.circuit.prepare(&self.internal);
-        let mut scratch = [Complex64::ZERO; MOST];
-        frequency
-            .iter()
-            .map(|f| circuit.evaluate(Point::new(*f), &mut scratch))
-            .collect()
+        self.circuit.impedance(&self.internal, frequency)
     }
 
     /// An element by its name.

@@ -2,8 +2,8 @@
 //! (1963) 431), on scaled normal equations: few parameters, well scaled, many points.
 
 use super::data::{Course, Data, Room};
-use super::model::{Circuit, MOST};
-use num_complex::Complex64;
+use super::model::{Circuit, MOST, NONE, Points, Prepared, Wide};
+use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, sum, wide};
 
 /// A square matrix of at most `MOST` rows.
 pub(super) type Square = [[f64; MOST]; MOST];
@@ -30,59 +30,22 @@ pub(super) struct Minimum {
 const MOST_EVALUATIONS: usize = 60;
 
 impl Data<'_> {
-    /// The course of the weighted residuals.
-    fn course(&self, circuit: Circuit, p: &[f64; MOST]) -> Course {
-        let circuit = circuit.prepare(p);
-        let mut scratch = [Complex64::ZERO; MOST];
-        let (re, im): (Vec<f64>, Vec<f64>) = self
-            .points()
-            .map(|(at, z, w)| (circuit.evaluate(at, &mut scratch) - z) * w)
-            .map(|residual| (residual.re, residual.im))
-            .unzip();
-        Course::of(&re, &im)
-    }
-
-    /// Sum of squares, its half gradient and `JᵀJ` in one pass.
-    fn accumulate(&self, circuit: Circuit, p: &[f64; MOST], free: &[usize]) -> Normal {
-        let mut normal = Normal {
-            sum: 0.0,
-            gradient: [0.0; MOST],
-            matrix: [[0.0; MOST]; MOST],
-        };
-        let circuit = circuit.prepare(p);
-        let mut derivatives = [Complex64::ZERO; MOST];
-        let mut column = [Complex64::ZERO; MOST];
-        for (at, z, w) in self.points() {
-            let residual = (circuit.evaluate(at, &mut derivatives) - z) * w;
-            normal.sum += residual.norm_sqr();
-            for (c, k) in column.iter_mut().zip(free) {
-                *c = derivatives[*k] * w;
-            }
-            for i in 0..free.len() {
-                let c = column[i];
-                normal.gradient[i] += c.re * residual.re + c.im * residual.im;
-                for (entry, other) in normal.matrix[i][..=i].iter_mut().zip(&column) {
-                    *entry += c.re * other.re + c.im * other.im;
-                }
-            }
-        }
-        normal
-    }
-
-    /// `Jᵀ` of the weighted data, turned by a right angle.
-    fn turned(&self, circuit: Circuit, p: &[f64; MOST], free: &[usize]) -> [f64; MOST] {
-        let circuit = circuit.prepare(p);
-        let mut sums = [0.0; MOST];
-        let mut derivatives = [Complex64::ZERO; MOST];
-        for (at, z, w) in self.points() {
-            circuit.evaluate(at, &mut derivatives);
-            let turned = Complex64::I * z * (w * w);
-            for (sum, k) in sums.iter_mut().zip(free) {
-                let d = derivatives[*k];
-                *sum += d.re * turned.re + d.im * turned.im;
-            }
-        }
-        sums
+    /// Sums over the points at the parameters `p`, in one pass; the residuals are left in `residual`.
+    fn accumulate(
+        &self,
+        circuit: Circuit,
+        p: &[f64; MOST],
+        free: &[usize],
+        residual: &mut [Vec<f64>; 2],
+    ) -> Normal {
+        let [re, im] = residual;
+        wide(Accumulate {
+            data: self,
+            circuit: circuit.prepare(p),
+            free,
+            re,
+            im,
+        })
     }
 
     /// Searches the minimum over the parameters of `free`, from `start`.
@@ -110,7 +73,9 @@ impl Data<'_> {
     fn search(&self, circuit: Circuit, start: &[f64; MOST], free: &[usize]) -> Minimum {
         let n = free.len();
         let mut p = *start;
-        let mut here = self.accumulate(circuit, &p, free);
+        let length = self.columns.weight().len();
+        let mut residual = [vec![0.0; length], vec![0.0; length]];
+        let mut here = self.accumulate(circuit, &p, free, &mut residual);
         let (mut damping, mut converged) = (1e-4, false);
         for _ in 0..MOST_EVALUATIONS {
             let Some(mut step) = here.step(n, damping) else {
@@ -131,7 +96,7 @@ impl Data<'_> {
             for (i, k) in free.iter().enumerate() {
                 moved[*k] += step[i];
             }
-            let there = self.accumulate(circuit, &moved, free);
+            let there = self.accumulate(circuit, &moved, free, &mut residual);
             if there.sum.is_finite() && there.sum < here.sum {
                 (p, here) = (moved, there);
                 damping = if damping > 1e-9 { damping * 0.1 } else { 0.0 };
@@ -142,10 +107,13 @@ impl Data<'_> {
                 }
             }
         }
+        // The residuals may be those of a step that was not taken.
+        let here = self.accumulate(circuit, &p, free, &mut residual);
+        let [re, im] = &residual;
         Minimum {
             circuit,
-            course: self.course(circuit, &p),
-            turned: self.turned(circuit, &p, free),
+            course: Course::of(&re[..self.len()], &im[..self.len()]),
+            turned: here.turned,
             parameters: p,
             free: free.to_vec(),
             square_sum: here.sum,
@@ -169,11 +137,79 @@ fn shorten(circuit: Circuit, free: &[usize], step: &mut [f64; MOST]) {
     }
 }
 
+/// Sum of squares, its half gradient and `JᵀJ`; and `Jᵀ` of the weighted data, turned by a right
+/// angle.
 struct Normal {
     sum: f64,
     gradient: [f64; MOST],
     /// Lower triangle.
     matrix: Square,
+    turned: [f64; MOST],
+}
+
+/// Makes [`Normal`], and writes the weighted residuals' real and imaginary parts.
+struct Accumulate<'a> {
+    data: &'a Data<'a>,
+    circuit: Prepared,
+    free: &'a [usize],
+    re: &'a mut [f64],
+    im: &'a mut [f64],
+}
+
+impl Kernel for Accumulate<'_> {
+    type Output = Normal;
+
+    #[inline(always)]
+    fn run<S: Simd>(self, simd: S) -> Normal {
+        let columns = &self.data.columns;
+        let weight = chunks(columns.weight());
+        let (re, im) = (
+            &chunks(columns.re())[..weight.len()],
+            &chunks(columns.im())[..weight.len()],
+        );
+        let to_re = &mut chunks_mut(self.re)[..weight.len()];
+        let to_im = &mut chunks_mut(self.im)[..weight.len()];
+        let n = self.free.len();
+        let mut square = Lanes::all(simd, 0.0);
+        // More sums than there are registers: they are kept as numbers.
+        let [mut gradient, mut turned] = [[[0.0; LANES]; MOST]; 2];
+        let mut matrix = [[[0.0; LANES]; MOST]; MOST];
+        let (mut derivatives, mut weighted) = (NONE, NONE);
+        for (i, at) in Points::of(self.data.axis).enumerate().take(weight.len()) {
+            let w = Lanes::of(simd, &weight[i]);
+            let measured = Wide::new(Lanes::of(simd, &re[i]), Lanes::of(simd, &im[i]));
+            let model = self.circuit.evaluate(simd, at, &mut derivatives);
+            let residual = model.minus(measured).scaled(w);
+            residual.re.store(&mut to_re[i]);
+            residual.im.store(&mut to_im[i]);
+            square = square.plus(residual.along(residual));
+            // jZ
+            let minus = Lanes::all(simd, 0.0).minus(measured.im);
+            let across = Wide::new(minus, measured.re).scaled(w);
+            for (weighted, k) in weighted.iter_mut().zip(self.free) {
+                Wide::of(simd, &derivatives[*k]).scaled(w).store(weighted);
+            }
+            for i in 0..n {
+                let one = Wide::of(simd, &weighted[i]);
+                add(simd, one.along(residual), &mut gradient[i]);
+                add(simd, one.along(across), &mut turned[i]);
+                for (sum, other) in matrix[i][..=i].iter_mut().zip(&weighted) {
+                    add(simd, one.along(Wide::of(simd, other)), sum);
+                }
+            }
+        }
+        Normal {
+            sum: square.sum(),
+            gradient: gradient.map(sum),
+            matrix: matrix.map(|row| row.map(sum)),
+            turned: turned.map(sum),
+        }
+    }
+}
+
+#[inline(always)]
+fn add<S: Simd>(simd: S, more: Lanes<S>, to: &mut [f64; LANES]) {
+    Lanes::of(simd, to).plus(more).store(to);
 }
 
 impl Normal {
