@@ -41,7 +41,7 @@ fn visible(fit: &CircuitFit) -> Vec<(usize, &str, f64)> {
         .iter()
         .enumerate()
         .filter(|(_, p)| p.standard_uncertainty.is_some())
-        .map(|(k, p)| (k, p.name.as_str(), p.value))
+        .map(|(k, p)| (k, p.name, p.value))
         .collect()
 }
 
@@ -158,6 +158,26 @@ fn reference_case_of_the_dispersive_model() {
         "{:?}",
         fit.residual
     );
+}
+
+/// A thread keeps room and functions of frequency from fit to fit: they change no bit of it.
+#[test]
+fn a_fit_does_not_depend_on_what_was_fitted_before() {
+    let sweeps: Vec<Sweep> = (parts().iter().zip([50, 83, 11, 25, 40, 7]))
+        .map(|(part, points)| clean(&part.network, &grid(1e3, 65e6, points)))
+        .collect();
+    let fresh = |sweep: &Sweep| {
+        std::thread::scope(|scope| scope.spawn(|| fit(sweep).expect("a fit")).join())
+            .expect("no panic")
+    };
+    let alone: Vec<CircuitFit> = sweeps.iter().map(fresh).collect();
+    for (sweep, alone) in sweeps
+        .iter()
+        .zip(&alone)
+        .chain(sweeps.iter().zip(&alone).rev())
+    {
+        assert_eq!(&fit(sweep).expect("a fit"), alone);
+    }
 }
 
 /// A circuit with dispersion and skin effect as the model has it.

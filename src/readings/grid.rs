@@ -14,7 +14,7 @@ pub(super) const ROOT_AT: f64 = 1e6;
 /// Every so manieth point is in the thin axis.
 const THIN: usize = 8;
 
-/// Functions of some frequencies, filled up with zeros to whole lanes.
+/// Functions of some frequencies, filled up to whole lanes with those of the last one.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Axis {
     /// 2πf in rad/s
@@ -23,18 +23,29 @@ pub(super) struct Axis {
     pub(super) ln: Vec<f64>,
     /// √(f / 1 MHz)
     pub(super) root: Vec<f64>,
-    /// Largest |ln|.
-    pub(super) longest: f64,
+    /// The middle of all ln, and how far they reach from it.
+    pub(super) middle: f64,
+    pub(super) reach: f64,
 }
 
 impl Axis {
-    fn new(frequency: &[f64]) -> Axis {
-        let ln = filled(frequency.iter().map(|f| (f / LN_AT).ln()));
+    pub(super) fn new(frequency: &[f64]) -> Axis {
+        let of = |f: fn(f64) -> f64| {
+            let mut all = filled(frequency.iter().map(|frequency| f(*frequency)));
+            if let Some(last) = frequency.last() {
+                all[frequency.len()..].fill(f(*last));
+            }
+            all
+        };
+        let ln = of(|f| (f / LN_AT).ln());
+        let [first, last] = [ln.first(), ln.last()].map(|ln| *ln.unwrap_or(&0.0));
+        let middle = 0.5 * (first + last);
         Axis {
-            longest: ln.iter().fold(0.0, |longest, ln| ln.abs().max(longest)),
+            middle,
+            reach: ln.iter().fold(0.0, |far, ln| (ln - middle).abs().max(far)),
             ln,
-            omega: filled(frequency.iter().map(|f| TAU * f)),
-            root: filled(frequency.iter().map(|f| (f / ROOT_AT).sqrt())),
+            omega: of(|f| TAU * f),
+            root: of(|f| (f / ROOT_AT).sqrt()),
         }
     }
 }
@@ -54,6 +65,15 @@ impl Grid {
     pub(super) const STEP: usize = THIN;
 }
 
+/// Whether these are the same numbers. All are looked at, which is quicker than to stop at one.
+fn same(a: Option<&[f64]>, b: Option<&[f64]>) -> bool {
+    let (Some(a), Some(b)) = (a, b) else {
+        return a.is_none() && b.is_none();
+    };
+    let equal: u64 = a.iter().zip(b).map(|(a, b)| u64::from(a == b)).sum();
+    a.len() == b.len() && equal == a.len() as u64
+}
+
 thread_local! {
     static LAST: RefCell<Option<Rc<Grid>>> = const { RefCell::new(None) };
 }
@@ -66,7 +86,7 @@ pub(super) fn grid(frequency: &[f64], range: Range<usize>) -> Rc<Grid> {
         let known = last
             .take()
             .filter(|grid| grid.frequency.len() == frequency.len())
-            .filter(|grid| grid.frequency.get(range) == wanted);
+            .filter(|grid| same(grid.frequency.get(range), wanted));
         let grid = known.unwrap_or_else(|| {
             let thin: Vec<f64> = frequency.iter().copied().step_by(THIN).collect();
             Rc::new(Grid {

@@ -76,7 +76,7 @@ pub(super) fn of_median_part(
             standard_uncertainty: p.standard_uncertainty,
             unit: p.unit.to_owned(),
         };
-        (p.name.clone(), section)
+        (p.name.to_owned(), section)
     };
     Some(CircuitSection {
         part: part.to_owned(),

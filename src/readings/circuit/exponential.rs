@@ -3,7 +3,7 @@
 /// eˣ for |x| < 700, to two units in the last place, without branches: `2^k e^r` with `k` the nearest
 /// whole number to x/ln 2 and the series of `e^r` to r¹³. (W. J. Cody and W. Waite, Software Manual
 /// for the Elementary Functions, 1980, chapter 6: ln 2 in two parts.)
-#[inline]
+#[inline(always)]
 pub(super) fn exp(x: f64) -> f64 {
     /// Added to a small number leaves its nearest whole number in the lowest bits.
     const ROUND: f64 = 6_755_399_441_055_744.0;

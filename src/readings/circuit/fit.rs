@@ -1,15 +1,18 @@
 //! Which circuit, how well it describes the part, and what its parameters are.
 
-use super::marquardt::{Data, Minimum, Square, invert, solve};
-use super::model::{CAPACITANCE_AT, Circuit, MOST, Point};
+use super::data::{Columns, Data, Room};
+use super::marquardt::{Factor, Minimum, invert};
+use super::model::{CAPACITANCE_AT, Circuit, Element, MOST};
+use super::projected;
 use super::start::{Rough, rough};
 use crate::diagnostic::Note;
 use crate::quantity::engineering;
 use crate::readings::grid::grid;
-use crate::readings::local_fit::{noise, sound};
+use crate::readings::local_fit::{Points, noise};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
+use std::ops::Index;
 
 /// Fewest points, and fewest decades, from which a circuit is told.
 const FEWEST_POINTS: usize = 20;
@@ -28,7 +31,7 @@ const HOPELESS: f64 = 0.02;
 #[derive(Debug, Clone, PartialEq)]
 pub struct Parameter {
     /// `r_0`, `l`, `c_1`, `dispersion`, `r_skin_1mhz`, `r_eddy`, `l_eddy`, `r_1`, …
-    pub name: String,
+    pub name: &'static str,
     /// SI unit; `1` for the dispersion exponent.
     pub unit: &'static str,
     #[allow(missing_docs)]
@@ -36,6 +39,22 @@ pub struct Parameter {
     /// From the residuals' scatter, widened where neighbouring residuals go together; `None` where
     /// the element is not visible in the sweep and stands at 0.
     pub standard_uncertainty: Option<f64>,
+}
+
+/// Covariance of a circuit's elements: a symmetric matrix, in SI units, of which `covariance[k]` is
+/// the row of element `k`.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Covariance {
+    order: usize,
+    rows: Vec<f64>,
+}
+
+impl Index<usize> for Covariance {
+    type Output = [f64];
+
+    fn index(&self, row: usize) -> &[f64] {
+        &self.rows[row * self.order..][..self.order]
+    }
 }
 
 /// What the circuit leaves, relative to |Z|.
@@ -63,7 +82,7 @@ pub struct CircuitFit {
     pub parameters: Vec<Parameter>,
     /// Covariance of `parameters` by the residuals' scatter, `s² (JᵀJ)⁻¹` with
     /// `s² = Σr²/(2n − p)`; 0 for elements that are not visible.
-    pub covariance: Vec<Vec<f64>>,
+    pub covariance: Covariance,
     #[allow(missing_docs)]
     pub residual: Residual,
     /// Whether the circuit describes the part; otherwise `notes` say why not, and no reading is
@@ -72,11 +91,11 @@ pub struct CircuitFit {
     #[allow(missing_docs)]
     pub notes: Vec<Note>,
     /// As the circuit has them, logarithms where it has logarithms.
-    internal: Vec<f64>,
+    internal: [f64; MOST],
     /// Change of each internal parameter with a common phase error, per radian.
-    per_radian: Vec<f64>,
-    /// Covariance of the internal parameters, widened for correlated residuals.
-    widened: Vec<Vec<f64>>,
+    per_radian: [f64; MOST],
+    /// What correlated residuals widen the covariance by.
+    widening: f64,
 }
 
 /// Fits an equivalent circuit to a sweep.
@@ -98,30 +117,37 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
             ),
         ));
     }
-    let square: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
-    if !sound(&square) {
+    let mut room = Room::default();
+    let (room, vectors) = room.take(frequency.len());
+    let columns = Columns::new(impedance, room);
+    if !columns.sound {
         return Err(Note::new(
             "circuit_not_finite",
             "the sweep holds an impedance that is zero",
         ));
     }
-    let size: Vec<f64> = square.iter().map(|s| s.sqrt()).collect();
-    let Some(rough) = rough(frequency, impedance, &size) else {
+    let Some(rough) = rough(frequency, impedance) else {
         return Err(Note::new(
             "circuit_not_capacitive",
             "the sweep does not start capacitive: there is no capacitor to be fitted",
         ));
     };
     let grid = grid(frequency, 0..frequency.len());
-    let data = Data::new(&grid, impedance, &size);
-    let noise = relative_noise(impedance, &square, &size);
-    let best = best(&data, &rough, noise);
+    let n = frequency.len();
+    let noise = relative_noise(Points {
+        re: &columns.re()[..n],
+        im: &columns.im()[..n],
+        square: columns.square(),
+        size: columns.size(),
+    });
+    let data = Data::new(&grid, columns);
+    let best = best(sweep, &data, vectors, &rough, noise);
     Ok(assemble(sweep, &data, &best, noise))
 }
 
 /// Root mean square of the relative noise of real and imaginary part.
-fn relative_noise(impedance: &[Complex64], square: &[f64], size: &[f64]) -> f64 {
-    let [magnitude, phase] = noise(impedance, square, size).unwrap_or([0.0, 0.0]);
+fn relative_noise(points: Points) -> f64 {
+    let [magnitude, phase] = noise(points).unwrap_or([0.0, 0.0]);
     (0.5 * (magnitude * magnitude + phase * phase)).sqrt()
 }
 
@@ -130,12 +156,21 @@ fn rms(data: &Data, minimum: &Minimum) -> f64 {
 }
 
 /// Tries circuits from small to large until one leaves no more than noise.
-fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
-    let mut best = physical(
-        data,
-        Circuit::Dispersive,
-        &rough.parameters(Circuit::Dispersive),
-    );
+fn best(
+    sweep: &Sweep,
+    data: &Data,
+    vectors: [&mut [f64]; projected::VECTORS],
+    rough: &Rough,
+    noise: f64,
+) -> Minimum {
+    let start = |circuit| {
+        let sizes = data.columns.size();
+        rough.parameters(circuit, &sweep.frequency, &sweep.impedance, sizes)
+    };
+    let mut best = projected::minimise(data, vectors, rough.exponent()).unwrap_or_else(|| {
+        let circuit = Circuit::Dispersive;
+        physical(data, circuit, &start(circuit))
+    });
     let enough = |m: &Minimum, limit: f64| rms(data, m) <= limit.max(NOISE * noise);
     let larger = [
         (Circuit::DispersiveEddy, GOOD_ENOUGH),
@@ -156,11 +191,12 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
         if !goes_on {
             continue;
         }
-        if enough(&best, limit) && (whole || circuit != Circuit::DispersiveEddy || is_noise(&best))
+        if enough(&best, limit)
+            && (whole || circuit != Circuit::DispersiveEddy || is_noise(data, &best))
         {
             continue;
         }
-        let found = physical(data, circuit, &rough.parameters(circuit));
+        let found = physical(data, circuit, &start(circuit));
         if information(data, &found) < information(data, &best) && determined(data, &found) {
             best = found;
         }
@@ -170,18 +206,8 @@ fn best(data: &Data, rough: &Rough, noise: f64) -> Minimum {
 
 /// Whether neighbouring residuals go no more together than those of noise do: their correlation has
 /// a standard deviation of 1/√(2n) then.
-fn is_noise(m: &Minimum) -> bool {
-    autocorrelation(&m.residual) < 2.0 / (2.0 * m.residual.len() as f64).sqrt()
-}
-
-/// Correlation of neighbouring residuals; 0 where there are none.
-fn autocorrelation(all: &[Complex64]) -> f64 {
-    let square: f64 = all.iter().map(|r| r.norm_sqr()).sum();
-    let together: f64 = all
-        .windows(2)
-        .map(|r| r[0].re * r[1].re + r[0].im * r[1].im)
-        .sum();
-    if square > 0.0 { together / square } else { 0.0 }
+fn is_noise(data: &Data, m: &Minimum) -> bool {
+    m.course.autocorrelation < 2.0 / (data.residuals() as f64).sqrt()
 }
 
 /// Whether the sweep tells every element: an element known to no better than a factor of e is one
@@ -205,7 +231,7 @@ fn information(data: &Data, m: &Minimum) -> f64 {
 
 /// A minimum whose resistances, inductance and dispersion are not negative: an element that would
 /// be is not visible in the sweep, and is left out.
-fn physical(data: &Data, circuit: Circuit, start: &[f64]) -> Minimum {
+fn physical(data: &Data, circuit: Circuit, start: &[f64; MOST]) -> Minimum {
     let mut free: Vec<usize> = (0..circuit.parameters()).collect();
     let mut minimum = data.minimise(circuit, start, &free);
     let dispersive = matches!(circuit, Circuit::Dispersive | Circuit::DispersiveEddy);
@@ -218,9 +244,9 @@ fn physical(data: &Data, circuit: Circuit, start: &[f64]) -> Minimum {
         let negative = not_negative.iter().find(|k| minimum.parameters[**k] < 0.0);
         let Some(k) = negative else { break };
         free.retain(|f| f != k);
-        let mut from = start.to_vec();
+        let mut from = *start;
         if dispersive && minimum.converged {
-            from.clone_from(&minimum.parameters);
+            from = minimum.parameters;
         }
         for k in not_negative {
             from[*k] = if free.contains(k) {
@@ -234,86 +260,51 @@ fn physical(data: &Data, circuit: Circuit, start: &[f64]) -> Minimum {
     minimum
 }
 
-fn residual(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> Residual {
-    let (mut square, mut largest_at) = (0.0, sweep.frequency[0]);
-    for (r, f) in m.residual.iter().zip(&sweep.frequency) {
-        if r.norm_sqr() > square {
-            (square, largest_at) = (r.norm_sqr(), *f);
-        }
-    }
-    Residual {
-        rms: rms(data, m),
-        largest: square.sqrt(),
-        largest_at,
-        noise,
-        autocorrelation: autocorrelation(&m.residual),
-    }
-}
-
 fn assemble(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> CircuitFit {
-    let residual = residual(sweep, data, m, noise);
-    let names = m.circuit.names();
-    let p = names.len();
-    let degrees = (data.residuals() - m.free.len()) as f64;
-    let variance = m.square_sum / degrees;
-    let inverse = invert(&m.normal, m.free.len());
-    let full = |of: &dyn Fn(usize, usize) -> f64| -> Vec<Vec<f64>> {
-        let mut matrix = vec![vec![0.0; p]; p];
-        for (i, a) in m.free.iter().enumerate() {
-            for (j, b) in m.free.iter().enumerate() {
-                matrix[*a][*b] = of(i, j);
-            }
-        }
-        matrix
+    let residual = Residual {
+        rms: rms(data, m),
+        largest: m.course.largest,
+        largest_at: sweep.frequency[m.course.largest_at],
+        noise,
+        autocorrelation: m.course.autocorrelation,
     };
-    let inverse_full = inverse.map(|v: Square| full(&|i, j| v[i][j]));
+    let elements = m.circuit.elements();
+    let (order, free) = (elements.len(), m.free.len());
+    let variance = m.square_sum / (data.residuals() - free) as f64;
     // A first-order correlated residual carries (1 − ρ)/(1 + ρ) of the information.
     let rho = residual.autocorrelation.clamp(0.0, 0.99);
     let widening = (1.0 + rho) / (1.0 - rho);
-    let scaled = |matrix: &[Vec<f64>], s: f64| -> Vec<Vec<f64>> {
-        matrix
-            .iter()
-            .map(|row| row.iter().map(|v| v * s).collect())
-            .collect()
-    };
-    let zero = vec![vec![0.0; p]; p];
-    let internal_covariance = scaled(inverse_full.as_ref().unwrap_or(&zero), variance);
-    let widened = scaled(&internal_covariance, widening);
     // The quantity itself where the circuit has its logarithm: d(e^x) = e^x dx.
-    let factor: Vec<f64> = names
-        .iter()
-        .zip(&m.parameters)
-        .map(|((_, _, logarithm), v)| if *logarithm { v.exp() } else { 1.0 })
-        .collect();
-    let parameters = names
-        .into_iter()
-        .enumerate()
-        .map(|(k, (name, unit, logarithm))| Parameter {
-            name,
-            unit,
-            value: if logarithm {
-                m.parameters[k].exp()
-            } else {
-                m.parameters[k]
-            },
-            standard_uncertainty: (inverse_full.is_some() && m.free.contains(&k))
-                .then(|| widened[k][k].sqrt() * factor[k]),
-        })
-        .collect();
-    let covariance = (0..p)
-        .map(|i| {
-            (0..p)
-                .map(|j| internal_covariance[i][j] * factor[i] * factor[j])
-                .collect()
-        })
-        .collect();
-    let mut per_radian = vec![0.0; p];
-    if let Some(change) = solve(&m.normal, m.free.len(), 0.0, &m.turned) {
-        for (i, k) in m.free.iter().enumerate() {
-            per_radian[*k] = change[i];
+    let mut value = m.parameters;
+    let mut factor = [1.0; MOST];
+    for (k, _) in elements.iter().enumerate().filter(|(_, e)| e.logarithm) {
+        value[k] = m.parameters[k].exp();
+        factor[k] = value[k];
+    }
+    let mut covariance = Covariance {
+        order,
+        rows: vec![0.0; order * order],
+    };
+    let mut per_radian = [0.0; MOST];
+    let normal = Factor::new(&m.normal, free, 0.0);
+    if let Some(normal) = &normal {
+        let (inverse, change) = (normal.inverse(), normal.solve(&m.turned));
+        for (i, a) in m.free.iter().enumerate() {
+            per_radian[*a] = change[i];
+            for (j, b) in m.free.iter().enumerate() {
+                covariance.rows[a * order + b] = inverse[i][j] * variance * factor[*a] * factor[*b];
+            }
         }
     }
-    let notes = notes(m, &residual, inverse_full.is_some());
+    let parameter = |(k, element): (usize, &Element)| Parameter {
+        name: element.name,
+        unit: element.unit,
+        value: value[k],
+        standard_uncertainty: (normal.is_some() && m.free.contains(&k))
+            .then(|| (covariance[k][k] * widening).sqrt()),
+    };
+    let parameters = elements.iter().enumerate().map(parameter).collect();
+    let notes = notes(m, &residual, normal.is_some());
     CircuitFit {
         circuit: m.circuit,
         parameters,
@@ -321,9 +312,9 @@ fn assemble(sweep: &Sweep, data: &Data, m: &Minimum, noise: f64) -> CircuitFit {
         residual,
         described: notes.is_empty(),
         notes,
-        internal: m.parameters.clone(),
+        internal: m.parameters,
         per_radian,
-        widened,
+        widening,
     }
 }
 
@@ -358,12 +349,7 @@ fn notes(m: &Minimum, residual: &Residual, determined: bool) -> Vec<Note> {
 impl CircuitFit {
     /// Z in Ω of the circuit at each frequency in Hz, for curves.
     pub fn impedance(&self, frequency: &[f64]) -> Vec<Complex64> {
-        let circuit = self.circuit.prepare(&self.internal);
-        let mut scratch = [Complex64::ZERO; MOST];
-        frequency
-            .iter()
-            .map(|f| circuit.evaluate(Point::new(*f), &mut scratch))
-            .collect()
+        self.circuit.impedance(&self.internal, frequency)
     }
 
     /// An element by its name.
@@ -378,32 +364,35 @@ impl CircuitFit {
         of: impl Fn(Circuit, &[f64]) -> f64,
     ) -> (f64, f64, f64) {
         let value = of(self.circuit, &self.internal);
-        let gradient: Vec<f64> = (0..self.internal.len())
-            .map(|k| {
-                let spread = self.widened[k][k].sqrt();
-                // A tenth of the parameter's own uncertainty is small enough to be linear.
-                let h = if spread > 0.0 {
-                    0.1 * spread
-                } else {
-                    return 0.0;
-                };
-                let mut moved = self.internal.clone();
+        let elements = self.circuit.elements();
+        // From the internal parameters' covariance to that of the elements.
+        let scale = |k: usize| {
+            let own = elements[k].logarithm.then(|| self.parameters[k].value);
+            own.unwrap_or(1.0)
+        };
+        let widened =
+            |i: usize, j: usize| self.covariance[i][j] * self.widening / (scale(i) * scale(j));
+        let mut gradient = [0.0; MOST];
+        for (k, gradient) in gradient.iter_mut().enumerate().take(elements.len()) {
+            // A tenth of the parameter's own uncertainty is small enough to be linear.
+            let h = 0.1 * widened(k, k).sqrt();
+            if h > 0.0 {
+                let mut moved = self.internal;
                 moved[k] += h;
                 let up = of(self.circuit, &moved);
                 moved[k] -= 2.0 * h;
-                (up - of(self.circuit, &moved)) / (2.0 * h)
-            })
-            .collect();
-        let per_radian = gradient
-            .iter()
-            .zip(&self.per_radian)
+                *gradient = (up - of(self.circuit, &moved)) / (2.0 * h);
+            }
+        }
+        let per_radian = (gradient.iter().zip(&self.per_radian))
             .map(|(g, s)| g * s)
             .sum();
-        let variance: f64 = gradient
-            .iter()
-            .zip(&self.widened)
-            .map(|(a, row)| a * row.iter().zip(&gradient).map(|(v, b)| v * b).sum::<f64>())
-            .sum();
+        let mut variance = 0.0;
+        for i in (0..elements.len()).filter(|i| gradient[*i] != 0.0) {
+            for j in (0..elements.len()).filter(|j| gradient[*j] != 0.0) {
+                variance += gradient[i] * gradient[j] * widened(i, j);
+            }
+        }
         (value, per_radian, variance.max(0.0).sqrt())
     }
 }

@@ -1,30 +1,18 @@
 //! Levenberg-Marquardt for complex residuals `(Z(f_i) − Z_i)/|Z_i|` (D. W. Marquardt, J. SIAM 11
 //! (1963) 431), on scaled normal equations: few parameters, well scaled, many points.
 
-use super::model::{Circuit, MOST, Point};
-use super::projected;
-use crate::readings::grid::{Axis, Grid};
-use num_complex::Complex64;
+use super::data::{Course, Data, Room};
+use super::model::{Circuit, MOST, NONE, Points, Prepared, Wide};
+use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, sum, wide};
 
 /// A square matrix of at most `MOST` rows.
 pub(super) type Square = [[f64; MOST]; MOST];
-
-/// The points to be fitted.
-pub(super) struct Data<'a> {
-    pub(super) axis: &'a Axis,
-    pub(super) impedance: Vec<Complex64>,
-    /// 1/|Z|
-    pub(super) weight: Vec<f64>,
-    /// Every eighth point, where there are enough: a search that begins at its minimum is over in a
-    /// few steps.
-    pub(super) thin: Option<Box<Data<'a>>>,
-}
 
 /// Where the search ended.
 #[derive(Debug, Clone)]
 pub(super) struct Minimum {
     pub(super) circuit: Circuit,
-    pub(super) parameters: Vec<f64>,
+    pub(super) parameters: [f64; MOST],
     /// Which parameters were searched; the others stayed as they were.
     pub(super) free: Vec<usize>,
     /// Sum of squared residuals, real and imaginary parts apart.
@@ -32,8 +20,8 @@ pub(super) struct Minimum {
     /// `JᵀJ` of the free parameters.
     pub(super) normal: Square,
     pub(super) converged: bool,
-    /// The weighted residual at each point.
-    pub(super) residual: Vec<Complex64>,
+    /// Of the weighted residuals.
+    pub(super) course: Course,
     /// `Jᵀ` of `jZ` in place of the residuals: what a common phase error does.
     pub(super) turned: [f64; MOST],
 }
@@ -41,105 +29,39 @@ pub(super) struct Minimum {
 /// Evaluations after which a search is given up: a circuit that fits needs a dozen.
 const MOST_EVALUATIONS: usize = 60;
 
-/// Fewest points of thin data.
-const THIN_LEAST: usize = 32;
-
-impl<'a> Data<'a> {
-    /// `size` is |Z|.
-    pub(super) fn new(grid: &'a Grid, impedance: &[Complex64], size: &[f64]) -> Data<'a> {
-        let weight: Vec<f64> = size.iter().map(|size| 1.0 / size).collect();
-        let thin = (impedance.len() >= Grid::STEP * THIN_LEAST).then(|| {
-            Box::new(Data {
-                axis: &grid.thin,
-                impedance: impedance.iter().copied().step_by(Grid::STEP).collect(),
-                weight: weight.iter().copied().step_by(Grid::STEP).collect(),
-                thin: None,
-            })
-        });
-        Data {
-            axis: &grid.all,
-            impedance: impedance.to_vec(),
-            weight,
-            thin,
-        }
-    }
-
-    /// Number of real residuals.
-    pub(super) fn residuals(&self) -> usize {
-        2 * self.impedance.len()
-    }
-
-    /// The points with their impedance and weight.
-    fn points(&self) -> impl Iterator<Item = (Point, Complex64, f64)> {
-        (Point::of(self.axis).zip(&self.impedance).zip(&self.weight))
-            .map(|((at, z), w)| (at, *z, *w))
-    }
-
-    /// The weighted residual at each point.
-    fn residual(&self, circuit: Circuit, p: &[f64]) -> Vec<Complex64> {
-        let circuit = circuit.prepare(p);
-        let mut scratch = [Complex64::ZERO; MOST];
-        self.points()
-            .map(|(at, z, w)| (circuit.evaluate(at, &mut scratch) - z) * w)
-            .collect()
-    }
-
-    /// Sum of squares, its half gradient and `JᵀJ` in one pass.
-    fn accumulate(&self, circuit: Circuit, p: &[f64], free: &[usize]) -> Normal {
-        let mut normal = Normal {
-            sum: 0.0,
-            gradient: [0.0; MOST],
-            matrix: [[0.0; MOST]; MOST],
-        };
-        let circuit = circuit.prepare(p);
-        let mut derivatives = [Complex64::ZERO; MOST];
-        let mut column = [Complex64::ZERO; MOST];
-        for (at, z, w) in self.points() {
-            let residual = (circuit.evaluate(at, &mut derivatives) - z) * w;
-            normal.sum += residual.norm_sqr();
-            for (c, k) in column.iter_mut().zip(free) {
-                *c = derivatives[*k] * w;
-            }
-            for i in 0..free.len() {
-                let c = column[i];
-                normal.gradient[i] += c.re * residual.re + c.im * residual.im;
-                for (entry, other) in normal.matrix[i][..=i].iter_mut().zip(&column) {
-                    *entry += c.re * other.re + c.im * other.im;
-                }
-            }
-        }
-        normal
-    }
-
-    /// `Jᵀ` of the weighted data, turned by a right angle.
-    fn turned(&self, circuit: Circuit, p: &[f64], free: &[usize]) -> [f64; MOST] {
-        let circuit = circuit.prepare(p);
-        let mut sums = [0.0; MOST];
-        let mut derivatives = [Complex64::ZERO; MOST];
-        for (at, z, w) in self.points() {
-            circuit.evaluate(at, &mut derivatives);
-            let turned = Complex64::I * z * (w * w);
-            for (sum, k) in sums.iter_mut().zip(free) {
-                let d = derivatives[*k];
-                *sum += d.re * turned.re + d.im * turned.im;
-            }
-        }
-        sums
+impl Data<'_> {
+    /// Sums over the points at the parameters `p`, in one pass; the residuals are left in `residual`.
+    fn accumulate(
+        &self,
+        circuit: Circuit,
+        p: &[f64; MOST],
+        free: &[usize],
+        residual: &mut [Vec<f64>; 2],
+    ) -> Normal {
+        let [re, im] = residual;
+        wide(Accumulate {
+            data: self,
+            circuit: circuit.prepare(p),
+            free,
+            re,
+            im,
+        })
     }
 
     /// Searches the minimum over the parameters of `free`, from `start`.
     ///
     /// Circuits with one capacitance have one minimum, and it is looked for among few points first;
     /// ladders have more than one, and are searched from `start`.
-    pub(super) fn minimise(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
-        if circuit == Circuit::Dispersive
-            && let Some(minimum) = projected::minimise(self, start, free)
-        {
-            return minimum;
-        }
+    pub(super) fn minimise(
+        &self,
+        circuit: Circuit,
+        start: &[f64; MOST],
+        free: &[usize],
+    ) -> Minimum {
         let ladder = matches!(circuit, Circuit::Ladder(_));
-        let near = self.thin.as_ref().filter(|_| !ladder);
-        let near = near
+        let mut room = Room::default();
+        let thin = (!ladder).then(|| self.thin(&mut room)).flatten();
+        let near = thin
             .map(|thin| thin.search(circuit, start, free))
             .filter(|near| near.converged);
         match near {
@@ -148,10 +70,12 @@ impl<'a> Data<'a> {
         }
     }
 
-    fn search(&self, circuit: Circuit, start: &[f64], free: &[usize]) -> Minimum {
+    fn search(&self, circuit: Circuit, start: &[f64; MOST], free: &[usize]) -> Minimum {
         let n = free.len();
-        let mut p = start.to_vec();
-        let mut here = self.accumulate(circuit, &p, free);
+        let mut p = *start;
+        let length = self.columns.weight().len();
+        let mut residual = [vec![0.0; length], vec![0.0; length]];
+        let mut here = self.accumulate(circuit, &p, free, &mut residual);
         let (mut damping, mut converged) = (1e-4, false);
         for _ in 0..MOST_EVALUATIONS {
             let Some(mut step) = here.step(n, damping) else {
@@ -168,11 +92,11 @@ impl<'a> Data<'a> {
                 converged = here.sum.is_finite();
                 break;
             }
-            let mut moved = p.clone();
+            let mut moved = p;
             for (i, k) in free.iter().enumerate() {
                 moved[*k] += step[i];
             }
-            let there = self.accumulate(circuit, &moved, free);
+            let there = self.accumulate(circuit, &moved, free, &mut residual);
             if there.sum.is_finite() && there.sum < here.sum {
                 (p, here) = (moved, there);
                 damping = if damping > 1e-9 { damping * 0.1 } else { 0.0 };
@@ -183,10 +107,13 @@ impl<'a> Data<'a> {
                 }
             }
         }
+        // The residuals may be those of a step that was not taken.
+        let here = self.accumulate(circuit, &p, free, &mut residual);
+        let [re, im] = &residual;
         Minimum {
             circuit,
-            residual: self.residual(circuit, &p),
-            turned: self.turned(circuit, &p, free),
+            course: Course::of(&re[..self.len()], &im[..self.len()]),
+            turned: here.turned,
             parameters: p,
             free: free.to_vec(),
             square_sum: here.sum,
@@ -210,11 +137,79 @@ fn shorten(circuit: Circuit, free: &[usize], step: &mut [f64; MOST]) {
     }
 }
 
+/// Sum of squares, its half gradient and `JᵀJ`; and `Jᵀ` of the weighted data, turned by a right
+/// angle.
 struct Normal {
     sum: f64,
     gradient: [f64; MOST],
     /// Lower triangle.
     matrix: Square,
+    turned: [f64; MOST],
+}
+
+/// Makes [`Normal`], and writes the weighted residuals' real and imaginary parts.
+struct Accumulate<'a> {
+    data: &'a Data<'a>,
+    circuit: Prepared,
+    free: &'a [usize],
+    re: &'a mut [f64],
+    im: &'a mut [f64],
+}
+
+impl Kernel for Accumulate<'_> {
+    type Output = Normal;
+
+    #[inline(always)]
+    fn run<S: Simd>(self, simd: S) -> Normal {
+        let columns = &self.data.columns;
+        let weight = chunks(columns.weight());
+        let (re, im) = (
+            &chunks(columns.re())[..weight.len()],
+            &chunks(columns.im())[..weight.len()],
+        );
+        let to_re = &mut chunks_mut(self.re)[..weight.len()];
+        let to_im = &mut chunks_mut(self.im)[..weight.len()];
+        let n = self.free.len();
+        let mut square = Lanes::all(simd, 0.0);
+        // More sums than there are registers: they are kept as numbers.
+        let [mut gradient, mut turned] = [[[0.0; LANES]; MOST]; 2];
+        let mut matrix = [[[0.0; LANES]; MOST]; MOST];
+        let (mut derivatives, mut weighted) = (NONE, NONE);
+        for (i, at) in Points::of(self.data.axis).enumerate().take(weight.len()) {
+            let w = Lanes::of(simd, &weight[i]);
+            let measured = Wide::new(Lanes::of(simd, &re[i]), Lanes::of(simd, &im[i]));
+            let model = self.circuit.evaluate(simd, at, &mut derivatives);
+            let residual = model.minus(measured).scaled(w);
+            residual.re.store(&mut to_re[i]);
+            residual.im.store(&mut to_im[i]);
+            square = square.plus(residual.along(residual));
+            // jZ
+            let minus = Lanes::all(simd, 0.0).minus(measured.im);
+            let across = Wide::new(minus, measured.re).scaled(w);
+            for (weighted, k) in weighted.iter_mut().zip(self.free) {
+                Wide::of(simd, &derivatives[*k]).scaled(w).store(weighted);
+            }
+            for i in 0..n {
+                let one = Wide::of(simd, &weighted[i]);
+                add(simd, one.along(residual), &mut gradient[i]);
+                add(simd, one.along(across), &mut turned[i]);
+                for (sum, other) in matrix[i][..=i].iter_mut().zip(&weighted) {
+                    add(simd, one.along(Wide::of(simd, other)), sum);
+                }
+            }
+        }
+        Normal {
+            sum: square.sum(),
+            gradient: gradient.map(sum),
+            matrix: matrix.map(|row| row.map(sum)),
+            turned: turned.map(sum),
+        }
+    }
+}
+
+#[inline(always)]
+fn add<S: Simd>(simd: S, more: Lanes<S>, to: &mut [f64; LANES]) {
+    Lanes::of(simd, to).plus(more).store(to);
 }
 
 impl Normal {
@@ -225,70 +220,91 @@ impl Normal {
     }
 }
 
-/// Solves `(A + damping·diag A) x = b` by Cholesky's method in correlation scaling; `A` is given by
-/// its lower triangle.
-pub(super) fn solve(a: &Square, n: usize, damping: f64, b: &[f64; MOST]) -> Option<[f64; MOST]> {
-    let (factor, scale) = factorise(a, n, damping)?;
-    let mut x = [0.0; MOST];
-    for i in 0..n {
-        let known: f64 = (0..i).map(|j| factor[i][j] * x[j]).sum();
-        x[i] = (b[i] * scale[i] - known) / factor[i][i];
-    }
-    for i in (0..n).rev() {
-        let known: f64 = (i + 1..n).map(|j| factor[j][i] * x[j]).sum();
-        x[i] = (x[i] - known) / factor[i][i];
-    }
-    for i in 0..n {
-        x[i] *= scale[i];
-    }
-    Some(x)
+/// Solves `(A + damping·diag A) x = b`; `A` is given by its lower triangle.
+pub(super) fn solve<const N: usize>(
+    a: &[[f64; N]; N],
+    n: usize,
+    damping: f64,
+    b: &[f64; N],
+) -> Option<[f64; N]> {
+    Some(Factor::new(a, n, damping)?.solve(b))
 }
 
 /// Inverse of `A`, or `None` where the data do not determine every parameter.
-pub(super) fn invert(a: &Square, n: usize) -> Option<Square> {
-    let mut inverse = [[0.0; MOST]; MOST];
-    for k in 0..n {
-        let mut unit = [0.0; MOST];
-        unit[k] = 1.0;
-        let column = solve(a, n, 0.0, &unit)?;
-        for i in 0..n {
-            inverse[i][k] = column[i];
-        }
-    }
-    Some(inverse)
+pub(super) fn invert<const N: usize>(a: &[[f64; N]; N], n: usize) -> Option<[[f64; N]; N]> {
+    Some(Factor::new(a, n, 0.0)?.inverse())
 }
 
-/// Cholesky factor of the scaled matrix, and the scale.
-fn factorise(a: &Square, n: usize, damping: f64) -> Option<(Square, [f64; MOST])> {
-    let mut scale = [0.0; MOST];
-    for i in 0..n {
-        scale[i] = 1.0 / a[i][i].sqrt();
-        if !scale[i].is_finite() {
+/// Cholesky factor of a matrix of `n` rows, in correlation scaling.
+pub(super) struct Factor<const N: usize> {
+    n: usize,
+    /// The factor's lower triangle, on its diagonal the reciprocals.
+    lower: [[f64; N]; N],
+    scale: [f64; N],
+}
+
+impl<const N: usize> Factor<N> {
+    /// Of `A + damping·diag A`, `A` given by its lower triangle; `None` where it is not positive
+    /// definite.
+    #[inline]
+    pub(super) fn new(a: &[[f64; N]; N], n: usize, damping: f64) -> Option<Factor<N>> {
+        let mut scale = [0.0; N];
+        let mut finite = true;
+        for i in 0..n {
+            scale[i] = 1.0 / a[i][i].sqrt();
+            finite &= scale[i].is_finite();
+        }
+        if !finite {
             return None;
         }
-    }
-    let mut factor = [[0.0; MOST]; MOST];
-    for i in 0..n {
-        for j in 0..=i {
-            let known: f64 = (0..j).map(|k| factor[i][k] * factor[j][k]).sum();
-            let entry = if i == j {
-                1.0 + damping
-            } else {
-                a[i][j] * scale[i] * scale[j]
-            };
-            let rest = entry - known;
-            if i == j {
-                // Below rounding a parameter is not told from the others.
-                if rest.is_nan() || rest <= 1e-13 {
-                    return None;
-                }
-                factor[i][i] = rest.sqrt();
-            } else {
-                factor[i][j] = rest / factor[j][j];
+        let mut lower = [[0.0; N]; N];
+        for j in 0..n {
+            let known: f64 = (0..j).map(|k| lower[j][k] * lower[j][k]).sum();
+            let rest = 1.0 + damping - known;
+            // Below rounding a parameter is not told from the others.
+            if rest.is_nan() || rest <= 1e-13 {
+                return None;
+            }
+            let reciprocal = 1.0 / rest.sqrt();
+            lower[j][j] = reciprocal;
+            for i in j + 1..n {
+                let known: f64 = (0..j).map(|k| lower[i][k] * lower[j][k]).sum();
+                lower[i][j] = (a[i][j] * scale[i] * scale[j] - known) * reciprocal;
             }
         }
+        Some(Factor { n, lower, scale })
     }
-    Some((factor, scale))
+
+    #[inline]
+    pub(super) fn solve(&self, b: &[f64; N]) -> [f64; N] {
+        let (n, lower, scale) = (self.n, &self.lower, &self.scale);
+        let mut x = [0.0; N];
+        for i in 0..n {
+            let known: f64 = (0..i).map(|j| lower[i][j] * x[j]).sum();
+            x[i] = (b[i] * scale[i] - known) * lower[i][i];
+        }
+        for i in (0..n).rev() {
+            let known: f64 = (i + 1..n).map(|j| lower[j][i] * x[j]).sum();
+            x[i] = (x[i] - known) * lower[i][i];
+        }
+        for i in 0..n {
+            x[i] *= scale[i];
+        }
+        x
+    }
+
+    pub(super) fn inverse(&self) -> [[f64; N]; N] {
+        let mut inverse = [[0.0; N]; N];
+        for k in 0..self.n {
+            let mut unit = [0.0; N];
+            unit[k] = 1.0;
+            let column = self.solve(&unit);
+            for i in 0..self.n {
+                inverse[i][k] = column[i];
+            }
+        }
+        inverse
+    }
 }
 
 #[cfg(test)]

@@ -6,6 +6,7 @@
 //! circuit comes first; a larger one is tried only where the first leaves more than the sweep's own
 //! noise, and kept only where it brings information. A fit that does not describe the part says so.
 
+mod data;
 mod exponential;
 mod fit;
 mod marquardt;
@@ -14,7 +15,7 @@ mod projected;
 mod reading;
 mod start;
 
-pub use fit::{CircuitFit, Parameter, Residual, fit};
+pub use fit::{CircuitFit, Covariance, Parameter, Residual, fit};
 pub use model::Circuit;
 
 pub(super) use reading::read;
