@@ -18,7 +18,9 @@ use super::noise::Noise;
 use super::order::median;
 use super::{Evidence, FLOOR};
 use crate::diagnostic::Note;
-use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, dot, filled, products, wide};
+use crate::statistics::lanes::{
+    Kernel, LANES, Lanes, Simd, chunks, dot, filled, four_products, wide,
+};
 use crate::sweep::Sweep;
 use crate::sweep::faults::hertz;
 use num_complex::Complex64;
@@ -383,7 +385,7 @@ impl Basis {
         let mut shares = Vec::with_capacity(self.columns.len());
         for columns in self.columns.as_chunks::<TOGETHER>().0 {
             let columns = columns.each_ref().map(Vec::as_slice);
-            shares.extend(products(simd, columns, &sums));
+            shares.extend(four_products(simd, columns, &sums));
         }
         for ((rest, share), means) in rest.iter_mut().zip(&self.share).zip(&self.means) {
             let mut left = Lanes::of(simd, rest).times(Lanes::of(simd, share));
