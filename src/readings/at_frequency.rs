@@ -24,7 +24,7 @@ pub(super) fn inside(sweep: &Sweep, frequency: f64) -> bool {
 
 /// The local fit around a frequency inside the sweep.
 pub(super) fn local(sweep: &Sweep, frequency: f64) -> Option<LocalFit> {
-    LocalFit::new(sweep, stretch(sweep, frequency), frequency)
+    LocalFit::new(sweep, stretch(sweep, frequency))
 }
 
 /// A missing reading for a frequency outside the sweep.

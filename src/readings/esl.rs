@@ -49,7 +49,7 @@ pub(super) fn read(sweep: &Sweep, resonance: &Outcome) -> Outcome {
     let range =
         points.partition_point(|f| f * slack < from)..points.partition_point(|f| *f <= to * slack);
     let range = grown(points, range, centre, FEWEST);
-    let Some(fit) = LocalFit::new(sweep, range, centre) else {
+    let Some(fit) = LocalFit::new(sweep, range) else {
         return Err(Reading::missing(
             "too_few_points",
             "too few points above self-resonance to determine the inductance",

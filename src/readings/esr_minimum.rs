@@ -11,7 +11,10 @@ use super::{Place, Reading};
 use crate::diagnostic::Note;
 use crate::sweep::Sweep;
 use num_complex::Complex64;
+use std::cell::RefCell;
 use std::f64::consts::LN_10;
+use std::ops::Range;
+use std::rc::Rc;
 
 /// Half-width of the running mean: 0.15 decade.
 const SEARCH: f64 = 0.15 * LN_10;
@@ -19,8 +22,10 @@ const SEARCH: f64 = 0.15 * LN_10;
 const GATE: f64 = 0.3;
 /// How far from a fit's centre its minimum is believed: 0.2 decade. Farther off the fit is moved.
 const REACH: f64 = 0.2 * LN_10;
-/// Share of the golden section, (3 − √5)/2.
-const GOLDEN: f64 = 0.381_966_011_250_105;
+/// Steps in which the range of a fit is looked through.
+const STEPS: u32 = 40;
+/// How often a minimum is come closer to.
+const CLOSER: usize = 30;
 /// How often the fit may be moved.
 const MOVES: usize = 8;
 
@@ -93,98 +98,134 @@ fn estimate(fit: &LocalFit, at: f64, from: f64, to: f64) -> Estimate {
     estimate
 }
 
-/// Where the fitted R is smallest between two frequencies: the least of 40 steps in ln f, then golden
-/// sections between its neighbours.
+/// Where the fitted R is smallest between two frequencies: the least of some steps in ln f, then the
+/// root of its slope between that one's neighbours.
 fn minimum(fit: &LocalFit, low: f64, high: f64) -> f64 {
-    let [first, last] = [low, high].map(|f| (f / fit.centre()).ln());
-    let resistance = |x: f64| fit.resistance(x);
-    let step = (last - first) / 40.0;
-    let mut least = (first, f64::INFINITY);
-    for i in 0..=40 {
-        let x = first + step * f64::from(i);
-        let r = resistance(x);
+    let factor = (high / low).powf(1.0 / f64::from(STEPS));
+    let mut least = (low, f64::INFINITY);
+    let mut f = low;
+    for r in fit.resistances(low, factor).take(STEPS as usize + 1) {
         if r < least.1 {
-            least = (x, r);
+            least = (f, r);
         }
+        f *= factor;
     }
-    let (mut a, mut b) = ((least.0 - step).max(first), (least.0 + step).min(last));
-    // Each step keeps one of its two inner points for the next.
-    let third = GOLDEN * (b - a);
-    let (mut c, mut d) = (a + third, b - third);
-    let (mut at_c, mut at_d) = (resistance(c), resistance(d));
-    for _ in 0..30 {
-        if at_c < at_d {
-            (b, d, at_d) = (d, c, at_c);
-            c = a + GOLDEN * (b - a);
-            at_c = resistance(c);
+    let (mut a, mut b) = ((least.0 / factor).max(low), (least.0 * factor).min(high));
+    let slope = |f: f64| fit.slope(f).re;
+    let (mut at_a, mut at_b) = (slope(a), slope(b));
+    // Without a change of sign the least lies at an end of the range.
+    if !(at_a < 0.0 && at_b > 0.0) {
+        return if at_a < 0.0 { b } else { a };
+    }
+    // Secants in ln f that keep the bracket; an end that stays twice counts half (Illinois).
+    let mut fell = None;
+    for _ in 0..CLOSER {
+        let next = b * (a / b).powf(at_b / (at_b - at_a));
+        let at = slope(next);
+        let falls = at < 0.0;
+        let again = if fell == Some(falls) { 0.5 } else { 1.0 };
+        fell = Some(falls);
+        if falls {
+            (a, at_a, at_b) = (next, at, again * at_b);
         } else {
-            (a, c, at_c) = (c, d, at_d);
-            d = b - GOLDEN * (b - a);
-            at_d = resistance(d);
+            (b, at_b, at_a) = (next, at, again * at_a);
+        }
+        if b / a < 1.0 + 1e-9 || at == 0.0 {
+            break;
         }
     }
-    (fit.centre() * (0.5 * (a + b)).exp()).clamp(low, high)
+    0.5 * (a + b)
 }
 
 /// Index of the point whose running mean of R, plus its scatter, is smallest among those that the
 /// noise does not hide. Weights are 1/|Z|²; sums are kept so that the whole search is linear.
 fn coarse_minimum(sweep: &Sweep, start: usize, end: usize) -> Option<usize> {
-    let sums = Sums::new(sweep, start, end);
-    let points = &sweep.frequency[start..end];
-    let (mut low, mut high) = (0, 0);
+    let sums = sums(&sweep.impedance[start..end]);
+    let windows = windows(&sweep.frequency[start..end]);
     let (mut best, mut least) = (None, f64::INFINITY);
-    let reach = SEARCH.exp();
-    for (i, f) in points.iter().enumerate() {
-        while points[low] * reach < *f {
-            low += 1;
-        }
-        while high < points.len() && points[high] <= f * reach {
-            high += 1;
-        }
-        // At least three points, so that there is a scatter.
-        let window = low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()));
-        let [weight, weighted, noise] = sums.of(&window);
-        // What is not below the least is not it: nearly all are told by this alone.
-        if weighted <= 0.0 || weighted >= least * weight {
+    // From the end that most minima are nearer to: fewer are the least so far.
+    for (at, window) in windows.iter().rev() {
+        let (first, last) = (&sums[window.start], &sums[window.end]);
+        let (weight, weighted) = (last.weight - first.weight, last.weighted - first.weighted);
+        // What is above the least is not it: nearly all are told by this alone.
+        if weighted <= 0.0 || weighted > least * weight {
             continue;
         }
         let mean = weighted / weight;
+        let noise = (last.noise - first.noise).max(0.0);
         let variance = noise / (weight * window.len() as f64);
-        if variance < GATE * GATE * mean * mean && mean + variance.sqrt() < least {
-            (best, least) = (Some(start + i), mean + variance.sqrt());
+        if variance < GATE * GATE * mean * mean && mean + variance.sqrt() <= least {
+            (best, least) = (Some(start + at), mean + variance.sqrt());
         }
     }
     best
 }
 
-/// Running sums of weights, of weighted R, and of the squared noise of R as a share of |Z|.
-struct Sums(Vec<[f64; 3]>);
+/// A point, and those within [`SEARCH`] of it.
+type Window = (usize, Range<usize>);
 
-impl Sums {
-    fn new(sweep: &Sweep, start: usize, end: usize) -> Sums {
-        let z = &sweep.impedance[start..end];
-        // Sums of 1/|Z|² over many decades of |Z| lose digits; relative to the largest they keep 10.
-        let mut sums = [0.0; 3];
-        let mut all = Vec::with_capacity(z.len() + 1);
-        all.push(sums);
-        for i in 0..z.len() {
-            let w = 1.0 / z[i].norm_sqr().max(f64::MIN_POSITIVE);
-            sums[0] += w;
-            sums[1] += w * z[i].re;
-            // Second differences: variance 6 times that of a point.
-            if i > 0 && i + 1 < z.len() {
-                let d = z[i - 1].re - 2.0 * z[i].re + z[i + 1].re;
-                sums[2] += d * d * w / 6.0;
+thread_local! {
+    static WINDOWS: RefCell<(Vec<f64>, Rc<[Window]>)> = RefCell::default();
+}
+
+/// The windows in which the minimum is looked for: at least three points each, and each an eighth of
+/// one on from the one before. They depend on the frequencies alone, so that sweeps alike share them.
+fn windows(points: &[f64]) -> Rc<[Window]> {
+    WINDOWS.with_borrow_mut(|(known, windows)| {
+        if known != points {
+            let (mut low, mut high, mut next) = (0, 0, 0);
+            let reach = SEARCH.exp();
+            let mut all = Vec::new();
+            for (i, f) in points.iter().enumerate() {
+                while points[low] * reach < *f {
+                    low += 1;
+                }
+                while high < points.len() && points[high] <= f * reach {
+                    high += 1;
+                }
+                // At least three points, so that there is a scatter.
+                let window = low.min(i.saturating_sub(1))..high.max((i + 2).min(points.len()));
+                if i >= next || i + 1 == points.len() {
+                    next = i + (window.len() / 8).max(1);
+                    all.push((i, window));
+                }
             }
-            all.push(sums);
+            *windows = all.into();
+            points.clone_into(known);
         }
-        Sums(all)
-    }
+        Rc::clone(windows)
+    })
+}
 
-    /// Over points of the range: weight, weighted R, noise.
-    fn of(&self, range: &std::ops::Range<usize>) -> [f64; 3] {
-        let (first, last) = (&self.0[range.start], &self.0[range.end]);
-        let [weight, weighted, noise] = std::array::from_fn(|k| last[k] - first[k]);
-        [weight, weighted, noise.max(0.0)]
+/// Running sums of weights, of weighted R, and of the squared noise of R as a share of |Z|.
+#[derive(Debug, Clone, Copy, Default)]
+struct Sums {
+    weight: f64,
+    weighted: f64,
+    noise: f64,
+}
+
+/// Sums of none, of the first point, of the first two, and so on.
+fn sums(z: &[Complex64]) -> Vec<Sums> {
+    let mut all = vec![Sums::default(); z.len() + 1];
+    let mut sum = Sums::default();
+    // The ends have no second difference.
+    let first = z.first().map(|first| first.re);
+    let (mut before, mut at) = (first.unwrap_or(0.0), first.unwrap_or(0.0));
+    for (i, (to, point)) in all.iter_mut().skip(1).zip(z).enumerate() {
+        let w = 1.0 / point.norm_sqr().max(f64::MIN_POSITIVE);
+        let after = z.get(i + 1).map_or(at, |z| z.re);
+        // Variance 6 times that of a point.
+        let d = if i == 0 || i + 1 == z.len() {
+            0.0
+        } else {
+            before - 2.0 * at + after
+        };
+        sum.weight += w;
+        sum.weighted += w * point.re;
+        sum.noise += d * d * w * (1.0 / 6.0);
+        *to = sum;
+        (before, at) = (at, after);
     }
+    all
 }

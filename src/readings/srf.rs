@@ -181,7 +181,7 @@ fn refine(sweep: &Sweep, centre: f64, low: f64, high: f64) -> Option<Root> {
     let range = points.partition_point(|f| *f < low)..points.partition_point(|f| *f <= high);
     let range = grown(points, range, centre, 5);
     let (mut a, mut b) = (points[range.start], points[range.end - 1]);
-    let fit = LocalFit::new(sweep, range, centre)?;
+    let fit = LocalFit::new(sweep, range)?;
     let reactance = |f: f64| fit.impedance(f).im;
     // The window's ends must lie on either side; bisection then cannot fail.
     if !(reactance(a) < 0.0 && reactance(b) > 0.0) {

@@ -3,10 +3,10 @@
 //! Each lane adds its own numbers in their order, products are rounded before they are added, and the
 //! lanes are added up in one order: the sums are the same bits whatever width the processor works at.
 
-use pulp::{Arch, Scalar128b, WithSimd};
+use pulp::{Arch, WithSimd};
 use std::sync::LazyLock;
 
-pub(crate) use pulp::Simd;
+pub(crate) use pulp::{Scalar256b as Plain, Simd};
 
 static PROCESSOR: LazyLock<Arch> = LazyLock::new(Arch::new);
 
@@ -32,79 +32,89 @@ impl<K: Kernel> WithSimd for Dispatched<K> {
 
     #[inline(always)]
     fn with_simd<S: Simd>(self, simd: S) -> K::Output {
-        if S::IS_SCALAR {
-            // Two at once is what every processor of this kind can do.
-            self.0.run(Scalar128b)
-        } else {
+        if S::F64_LANES == HALF {
             self.0.run(simd)
+        } else {
+            // Four at once as the compiler finds registers for them.
+            self.0.run(Plain)
         }
     }
 }
 
-/// Eight numbers that are worked on at once, in as many registers as they need.
+/// Eight numbers that are worked on at once, in two registers of four.
 #[derive(Debug, Clone, Copy)]
 pub(crate) struct Lanes<S: Simd> {
     simd: S,
-    /// Those that are needed, and others that stay as they are and cost nothing.
-    registers: [S::f64s; LANES],
+    low: S::f64s,
+    high: S::f64s,
 }
 
 impl<S: Simd> Lanes<S> {
-    const REGISTERS: usize = LANES / S::F64_LANES;
-
     /// The same number in every lane.
     #[inline(always)]
     pub(crate) fn all(simd: S, value: f64) -> Self {
+        let all = simd.splat_f64s(value);
         Lanes {
             simd,
-            registers: [simd.splat_f64s(value); LANES],
+            low: all,
+            high: all,
         }
     }
 
     #[inline(always)]
     pub(crate) fn of(simd: S, values: &[f64; LANES]) -> Self {
-        let mut all = Lanes::all(simd, 0.0);
-        let (loaded, _) = S::as_simd_f64s(values);
-        all.registers[..Self::REGISTERS].copy_from_slice(&loaded[..Self::REGISTERS]);
-        all
+        match S::as_simd_f64s(values).0 {
+            [low, high] => Lanes {
+                simd,
+                low: *low,
+                high: *high,
+            },
+            // Not on this processor: `wide` sees to it.
+            _ => Lanes::all(simd, f64::NAN),
+        }
     }
 
     #[inline(always)]
     pub(crate) fn store(self, to: &mut [f64; LANES]) {
-        let (target, _) = S::as_mut_simd_f64s(to);
-        target[..Self::REGISTERS].copy_from_slice(&self.registers[..Self::REGISTERS]);
+        if let [low, high] = S::as_mut_simd_f64s(to).0 {
+            (*low, *high) = (self.low, self.high);
+        }
     }
 
     #[inline(always)]
-    pub(crate) fn plus(mut self, other: Self) -> Self {
-        for k in 0..Self::REGISTERS {
-            self.registers[k] = self.simd.add_f64s(self.registers[k], other.registers[k]);
+    pub(crate) fn plus(self, other: Self) -> Self {
+        Lanes {
+            simd: self.simd,
+            low: self.simd.add_f64s(self.low, other.low),
+            high: self.simd.add_f64s(self.high, other.high),
         }
-        self
     }
 
     #[inline(always)]
-    pub(crate) fn minus(mut self, other: Self) -> Self {
-        for k in 0..Self::REGISTERS {
-            self.registers[k] = self.simd.sub_f64s(self.registers[k], other.registers[k]);
+    pub(crate) fn minus(self, other: Self) -> Self {
+        Lanes {
+            simd: self.simd,
+            low: self.simd.sub_f64s(self.low, other.low),
+            high: self.simd.sub_f64s(self.high, other.high),
         }
-        self
     }
 
     #[inline(always)]
-    pub(crate) fn times(mut self, other: Self) -> Self {
-        for k in 0..Self::REGISTERS {
-            self.registers[k] = self.simd.mul_f64s(self.registers[k], other.registers[k]);
+    pub(crate) fn times(self, other: Self) -> Self {
+        Lanes {
+            simd: self.simd,
+            low: self.simd.mul_f64s(self.low, other.low),
+            high: self.simd.mul_f64s(self.high, other.high),
         }
-        self
     }
 
     #[inline(always)]
-    pub(crate) fn over(mut self, other: Self) -> Self {
-        for k in 0..Self::REGISTERS {
-            self.registers[k] = self.simd.div_f64s(self.registers[k], other.registers[k]);
+    pub(crate) fn over(self, other: Self) -> Self {
+        Lanes {
+            simd: self.simd,
+            low: self.simd.div_f64s(self.low, other.low),
+            high: self.simd.div_f64s(self.high, other.high),
         }
-        self
     }
 
     /// The sum of the lanes.
@@ -118,6 +128,7 @@ impl<S: Simd> Lanes<S> {
 
 /// Numbers that are worked on at once; vectors are filled up with zeros to a multiple.
 pub(crate) const LANES: usize = 8;
+const HALF: usize = LANES / 2;
 
 /// The values, and zeros after them up to a whole number of lanes.
 pub(crate) fn filled(values: impl Iterator<Item = f64>) -> Vec<f64> {
@@ -137,36 +148,39 @@ pub(crate) fn sum(lanes: [f64; LANES]) -> f64 {
 /// a·b of the whole lanes of two vectors; what is left over does not count.
 #[inline(always)]
 pub(crate) fn product(a: &[f64], b: &[f64]) -> f64 {
-    let [product] = products(Scalar128b, [a], b);
-    product
+    one_product(Plain, a, b)
 }
 
-/// Products of `N` vectors with one, each as [`product`] has it; `v` is read once for all.
+/// Products of four vectors with one, each as [`product`] has it; `v` is read once for all.
 ///
 /// What is left over of whole lanes, or of the shortest, does not count.
 #[inline(always)]
-pub(crate) fn products<S: Simd, const N: usize>(simd: S, all: [&[f64]; N], v: &[f64]) -> [f64; N] {
-    let mut shortest = chunks(v).len();
-    for a in &all {
-        shortest = shortest.min(chunks(a).len());
-    }
-    let v = &chunks(v)[..shortest];
-    let mut of: [&[[f64; LANES]]; N] = [&[]; N];
-    for n in 0..N {
-        of[n] = &chunks(all[n])[..shortest];
-    }
-    let mut lanes = [Lanes::all(simd, 0.0); N];
-    for (i, v) in v.iter().enumerate() {
+pub(crate) fn four_products<S: Simd>(simd: S, [a, b, c, d]: [&[f64]; 4], v: &[f64]) -> [f64; 4] {
+    let zero = Lanes::all(simd, 0.0);
+    let (mut of_a, mut of_b, mut of_c, mut of_d) = (zero, zero, zero, zero);
+    let others = chunks(a)
+        .iter()
+        .zip(chunks(b))
+        .zip(chunks(c))
+        .zip(chunks(d));
+    for (v, (((a, b), c), d)) in chunks(v).iter().zip(others) {
         let v = Lanes::of(simd, v);
-        for n in 0..N {
-            lanes[n] = lanes[n].plus(Lanes::of(simd, &of[n][i]).times(v));
-        }
+        of_a = of_a.plus(Lanes::of(simd, a).times(v));
+        of_b = of_b.plus(Lanes::of(simd, b).times(v));
+        of_c = of_c.plus(Lanes::of(simd, c).times(v));
+        of_d = of_d.plus(Lanes::of(simd, d).times(v));
     }
-    let mut sums = [0.0; N];
-    for n in 0..N {
-        sums[n] = lanes[n].sum();
+    [of_a.sum(), of_b.sum(), of_c.sum(), of_d.sum()]
+}
+
+/// As [`product`], in the registers of a kernel.
+#[inline(always)]
+pub(crate) fn one_product<S: Simd>(simd: S, a: &[f64], b: &[f64]) -> f64 {
+    let mut lanes = Lanes::all(simd, 0.0);
+    for (a, b) in chunks(a).iter().zip(chunks(b)) {
+        lanes = lanes.plus(Lanes::of(simd, a).times(Lanes::of(simd, b)));
     }
-    sums
+    lanes.sum()
 }
 
 /// The whole lanes of a vector.
@@ -207,14 +221,20 @@ mod tests {
     use super::*;
     use std::array::from_fn;
 
-    struct Products<'a>([&'a [f64]; 5], &'a [f64]);
+    struct Products<'a>([&'a [f64]; 4], &'a [f64]);
 
     impl Kernel for Products<'_> {
-        type Output = [f64; 5];
+        type Output = [[f64; 4]; 2];
 
         #[inline(always)]
-        fn run<S: Simd>(self, simd: S) -> [f64; 5] {
-            products(simd, self.0, self.1)
+        fn run<S: Simd>(self, simd: S) -> [[f64; 4]; 2] {
+            let Products(all, v) = self;
+            let [a, b, c, d] = all;
+            let one = |a| one_product(simd, a, v);
+            [
+                four_products(simd, all, v),
+                [one(a), one(b), one(c), one(d)],
+            ]
         }
     }
 
@@ -242,12 +262,12 @@ mod tests {
     fn many_products_at_any_width_are_the_same_bits_as_one() {
         let vector =
             |k: usize| filled((0..75).map(move |i| (((i * 37 + k * 11) % 101) as f64).sqrt()));
-        let all: [Vec<f64>; 5] = from_fn(vector);
+        let all: [Vec<f64>; 4] = from_fn(vector);
         let v = vector(9);
-        let alone: [f64; 5] = from_fn(|k| product(&all[k], &v));
+        let alone: [f64; 4] = from_fn(|k| product(&all[k], &v));
         assert!(alone[0] > 0.0 && alone[0] != alone[1]);
-        let borrowed: [&[f64]; 5] = from_fn(|k| all[k].as_slice());
-        assert_eq!(products(Scalar128b, borrowed, &v), alone);
-        assert_eq!(wide(Products(borrowed, &v)), alone);
+        let borrowed: [&[f64]; 4] = from_fn(|k| all[k].as_slice());
+        assert_eq!(wide(Products(borrowed, &v)), [alone; 2]);
+        assert_eq!(four_products(Plain, borrowed, &v), alone);
     }
 }

@@ -1,21 +1,16 @@
 //! The standard normal distribution.
 
-use super::incomplete::gamma_tails;
+use libm::{erf, erfc};
 use statrs::function::erf::erfc_inv;
-use std::f64::consts::{PI, SQRT_2};
+use std::f64::consts::{FRAC_1_SQRT_2, PI, SQRT_2};
 
 /// Below this the lower tail is too near the smallest double for its logarithm to be taken of it.
 const LN_TAIL_FROM: f64 = -30.0;
 
 /// P(Z ≤ z).
 pub fn normal_cdf(z: f64) -> f64 {
-    // Abramowitz & Stegun 26.4.7 with one degree of freedom: z² is chi-squared.
-    let magnitude = gamma_tails(0.5, 0.5 * z * z);
-    if z < 0.0 {
-        0.5 * magnitude.upper
-    } else {
-        0.5 + 0.5 * magnitude.lower
-    }
+    // Abramowitz & Stegun 26.2.29
+    0.5 * erfc(-z * FRAC_1_SQRT_2)
 }
 
 /// P(Z > z).
@@ -62,12 +57,12 @@ pub fn normal_upper_quantile(p: f64) -> f64 {
 
 /// One Newton step towards the z ≥ 0 whose upper tail has that probability.
 fn polished(z: f64, tail: f64) -> f64 {
-    let at = gamma_tails(0.5, 0.5 * z * z);
+    let x = z * FRAC_1_SQRT_2;
     // Half the difference of the tails, from whichever of the two is the smaller.
     let excess = if tail > 0.25 {
-        (0.5 - tail) - 0.5 * at.lower
+        (0.5 - tail) - 0.5 * erf(x)
     } else {
-        0.5 * at.upper - tail
+        0.5 * erfc(x) - tail
     };
     let density = (-0.5 * z * z).exp() / (2.0 * PI).sqrt();
     let better = z + excess / density;
