@@ -8,7 +8,7 @@ use super::start::{Rough, rough};
 use crate::diagnostic::Note;
 use crate::quantity::engineering;
 use crate::readings::grid::grid;
-use crate::readings::local_fit::noise;
+use crate::readings::local_fit::{Points, noise};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
@@ -133,15 +133,21 @@ pub fn fit(sweep: &Sweep) -> Result<CircuitFit, Note> {
         ));
     };
     let grid = grid(frequency, 0..frequency.len());
-    let noise = relative_noise(impedance, columns.square(), columns.size());
+    let n = frequency.len();
+    let noise = relative_noise(Points {
+        re: &columns.re()[..n],
+        im: &columns.im()[..n],
+        square: columns.square(),
+        size: columns.size(),
+    });
     let data = Data::new(&grid, columns);
     let best = best(sweep, &data, vectors, &rough, noise);
     Ok(assemble(sweep, &data, &best, noise))
 }
 
 /// Root mean square of the relative noise of real and imaginary part.
-fn relative_noise(impedance: &[Complex64], square: &[f64], size: &[f64]) -> f64 {
-    let [magnitude, phase] = noise(impedance, square, size).unwrap_or([0.0, 0.0]);
+fn relative_noise(points: Points) -> f64 {
+    let [magnitude, phase] = noise(points).unwrap_or([0.0, 0.0]);
     (0.5 * (magnitude * magnitude + phase * phase)).sqrt()
 }
 

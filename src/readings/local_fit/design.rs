@@ -1,10 +1,10 @@
 //! The weighted least-squares problem while it is being solved, term after term.
 
 use super::basis::{Basis, MOST, NOTHING};
+use super::scatter::Points;
 use crate::statistics::lanes::{
     Lanes, Plain, Simd, chunks, chunks_mut, four_products, one_product, product,
 };
-use num_complex::Complex64;
 
 /// Share of a sum of squares below which too little of it is left to be had by subtraction: rounding
 /// is 1e-15 of it.
@@ -20,6 +20,14 @@ pub(super) enum Added {
     TooFewDigits,
 }
 
+/// Room for a problem, to be used again for the next.
+#[derive(Debug, Default)]
+pub(super) struct Room {
+    inverse: [Vec<f64>; 4],
+    columns: Vec<f64>,
+    data: Vec<f64>,
+}
+
 /// Columns of the basis, each point's divided by its Z and by the noise there. Rows: ln|Z| of each
 /// point, then the phases, since `dZ/Z = d ln|Z| + j dθ`.
 pub(super) struct Design<'a> {
@@ -27,12 +35,12 @@ pub(super) struct Design<'a> {
     points: usize,
     /// Real and negative imaginary part of 1/Z over the noise of ln|Z|, then of the phase; times the
     /// size that the basis is relative to.
-    inverse: [Vec<f64>; 4],
+    inverse: [&'a [f64]; 4],
     /// One after the other; orthonormal where they are added exactly.
-    columns: Vec<f64>,
-    /// The data; where columns are added exactly, what they leave of them.
-    residual: Vec<f64>,
-    /// Sum of squares of what the columns leave.
+    columns: &'a mut [f64],
+    /// Where columns are added exactly, what they leave of them.
+    data: &'a mut [f64],
+    /// Sum of squares of what the columns leave of the data.
     pub(super) rest: f64,
     /// Of the data.
     total: f64,
@@ -43,37 +51,51 @@ pub(super) struct Design<'a> {
 }
 
 impl<'a> Design<'a> {
-    /// `square` is |Z|² of the points; `noise` that of ln|Z| and of the phase.
+    /// `noise` is that of ln|Z| and of the phase.
     #[inline(always)]
     pub(super) fn new(
         basis: &'a Basis,
-        impedance: &[Complex64],
-        square: &[f64],
+        points: Points<'_>,
         noise: [f64; 2],
+        room: &'a mut Room,
     ) -> Design<'a> {
-        let n = impedance.len();
-        let weight = noise.map(|sigma| 1.0 / sigma);
+        let n = points.square.len();
+        let weight = [1.0 / noise[0], 1.0 / noise[1]];
         let half = basis.filled;
-        let mut inverse = [(); 4].map(|()| vec![0.0; half]);
-        let [a, b, c, d] = &mut inverse;
-        let [a, b, c, d] = [&mut a[..n], &mut b[..n], &mut c[..n], &mut d[..n]];
-        let (size, square) = (&basis.size[..n], &square[..n]);
-        for i in 0..n {
-            let over = size[i] / square[i];
-            let (re, im) = (impedance[i].re * over, impedance[i].im * over);
-            (a[i], b[i]) = (re * weight[0], im * weight[0]);
-            (c[i], d[i]) = (re * weight[1], im * weight[1]);
+        let Room {
+            inverse: [a, b, c, d],
+            columns,
+            data,
+        } = room;
+        for target in [&mut *a, &mut *b, &mut *c, &mut *d] {
+            target.resize(half, 0.0);
+            target[n..].fill(0.0);
         }
-        let mut residual = vec![0.0; 2 * half];
-        residual[..n].fill(weight[0]);
+        let over = basis.size.iter().zip(points.square);
+        let z = points.re.iter().zip(points.im);
+        let of_size = a.iter_mut().zip(&mut *b);
+        let of_phase = c.iter_mut().zip(&mut *d);
+        for (((a, b), (c, d)), ((size, square), (re, im))) in of_size.zip(of_phase).zip(over.zip(z))
+        {
+            let over = size / square;
+            let (re, im) = (re * over, im * over);
+            (*a, *b) = (re * weight[0], im * weight[0]);
+            (*c, *d) = (re * weight[1], im * weight[1]);
+        }
+        // What was there is written over before it is read.
+        columns.resize(2 * half * MOST, 0.0);
+        data.resize(2 * half, 0.0);
+        data[..n].fill(weight[0]);
+        data[n..].fill(0.0);
+        let total = n as f64 * weight[0] * weight[0];
         Design {
             basis,
             points: n,
-            inverse,
-            columns: Vec::with_capacity(2 * half * MOST),
-            rest: n as f64 * weight[0] * weight[0],
-            total: n as f64 * weight[0] * weight[0],
-            residual,
+            inverse: [a, b, c, d],
+            columns,
+            data,
+            rest: total,
+            total,
             triangle: Vec::with_capacity(MOST * (MOST + 1) / 2),
             projections: Vec::with_capacity(MOST),
         }
@@ -92,9 +114,9 @@ impl<'a> Design<'a> {
         if k >= self.basis.terms() {
             return Added::None;
         }
-        let rows = self.residual.len();
+        let rows = self.data.len();
         self.weigh(simd, k);
-        let (earlier, new) = self.columns.split_at(k * rows);
+        let (earlier, new) = self.columns[..(k + 1) * rows].split_at(k * rows);
         let entries = self.triangle.len();
         let mut left = earlier;
         while left.len() >= 4 * rows {
@@ -109,7 +131,7 @@ impl<'a> Design<'a> {
         }
         let half = self.basis.filled;
         let before = one_product(simd, new, new);
-        let mut projection = one_product(simd, &self.residual[..half], &new[..half]);
+        let mut projection = one_product(simd, &self.data[..half], &new[..half]);
         let (known, shares) = self.triangle.split_at_mut(entries);
         let mut square = before;
         for j in 0..k {
@@ -147,10 +169,9 @@ impl<'a> Design<'a> {
         if k >= self.basis.terms() {
             return Added::None;
         }
-        let rows = self.residual.len();
-        let start = self.columns.len();
+        let rows = self.data.len();
         self.weigh(Plain, k);
-        let (earlier, new) = self.columns.split_at_mut(start);
+        let (earlier, new) = self.columns[..(k + 1) * rows].split_at_mut(k * rows);
         let entries = self.triangle.len();
         for column in earlier.chunks_exact(rows) {
             let share = product(column, new);
@@ -170,21 +191,21 @@ impl<'a> Design<'a> {
         let norm = square.sqrt();
         new.iter_mut().for_each(|v| *v /= norm);
         self.triangle.push(norm);
-        let projection = product(new, &self.residual);
+        let projection = product(new, self.data);
         self.projections.push(projection);
-        take(&mut self.residual, projection, new);
-        self.rest = product(&self.residual, &self.residual);
+        take(self.data, projection, new);
+        self.rest = product(self.data, self.data);
         Added::One
     }
 
-    /// Appends a column of the basis as the points weigh it.
+    /// Writes a column of the basis as the points weigh it.
     #[inline(always)]
     fn weigh<S: Simd>(&mut self, simd: S, k: usize) {
-        let start = self.columns.len();
-        self.columns.resize(start + self.residual.len(), 0.0);
-        let (of_size, of_phase) = self.columns[start..].split_at_mut(self.basis.filled);
+        let rows = self.data.len();
+        let column = &mut self.columns[k * rows..(k + 1) * rows];
+        let (of_size, of_phase) = column.split_at_mut(self.basis.filled);
         let (re, im) = self.basis.column(k);
-        let [a, b, c, d] = &self.inverse;
+        let [a, b, c, d] = self.inverse;
         combine(simd, of_size, [a, re], [b, im], 1.0);
         combine(simd, of_phase, [c, im], [d, re], -1.0);
     }

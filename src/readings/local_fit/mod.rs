@@ -18,15 +18,16 @@ mod curve;
 mod design;
 mod scatter;
 
-pub(super) use scatter::noise;
+pub(super) use scatter::{Points, noise};
 
-use crate::statistics::lanes::{Kernel, Simd, wide};
+use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, wide};
 use crate::sweep::Sweep;
 use basis::{Basis, Course, MOST, Term};
 use curve::{Curve, Point};
 use design::{Added, Design};
 use num_complex::Complex64;
 use scatter::noise_ratio;
+use std::cell::RefCell;
 use std::f64::consts::LN_10;
 use std::ops::Range;
 use std::rc::Rc;
@@ -100,14 +101,6 @@ pub(super) fn grown(
     start..end
 }
 
-/// Whether squares of impedances are finite and not zero.
-pub(super) fn sound(squares: &[f64]) -> bool {
-    // All are looked at, which is quicker than to stop at one.
-    squares
-        .iter()
-        .fold(true, |sound, s| sound & (*s > 0.0) & (*s < f64::INFINITY))
-}
-
 impl LocalFit {
     /// Fits the points of `range`.
     ///
@@ -116,31 +109,45 @@ impl LocalFit {
     pub(super) fn new(sweep: &Sweep, range: Range<usize>) -> Option<LocalFit> {
         let frequency = sweep.frequency.get(range.clone())?;
         let impedance = sweep.impedance.get(range.clone())?;
-        let n = frequency.len();
-        let square: Vec<f64> = impedance.iter().map(Complex64::norm_sqr).collect();
-        if n < 2 || !sound(&square) {
+        if impedance.len() < 2 {
             return None;
         }
-        let size: Vec<f64> = square.iter().map(|s| s.sqrt()).collect();
-        let noise = noise_ratio(impedance, &square, &size);
-        let capacitive: f64 = impedance.iter().zip(&size).map(|(z, s)| -z.im / s).sum();
-        let course = if capacitive > 0.95 * n as f64 {
-            Course::Capacitive
-        } else {
-            Course::Resonant
-        };
-        let basis = Basis::of(frequency, course);
-        let selecting = Selecting {
-            basis: &basis,
-            impedance,
-            square: &square,
-            noise,
-        };
+        let (basis, noise, selection) = ROOM.with_borrow_mut(|room| {
+            let course = wide(Looking {
+                impedance,
+                room: &mut room.points,
+            })?;
+            let [re, im, square, size] = &room.points;
+            let points = Points {
+                re,
+                im,
+                square,
+                size,
+            };
+            let basis = Basis::of(frequency, course);
+            let noise = noise_ratio(points);
+            let quickly = Selecting {
+                basis: &basis,
+                points,
+                noise,
+                room: &mut room.design,
+            };
+            let selection = wide(quickly).or_else(|| {
+                let exactly = Selecting {
+                    basis: &basis,
+                    points,
+                    noise,
+                    room: &mut room.design,
+                };
+                exactly.search(|design| design.add_exactly())
+            })?;
+            Some((basis, noise, selection))
+        })?;
         let Selection {
             triangle,
             projections,
             models,
-        } = wide(selecting).or_else(|| selecting.search(|design| design.add_exactly()))?;
+        } = selection;
         let mut fit = LocalFit {
             basis,
             curve: Curve::default(),
@@ -295,13 +302,75 @@ fn dot(a: Complex64, b: Complex64) -> f64 {
     a.re * b.re + a.im * b.im
 }
 
+/// Room for the numbers of a stretch, to be used again for the next.
+#[derive(Default)]
+struct Room {
+    /// Real and imaginary parts, |Z|² and |Z|.
+    points: [Vec<f64>; 4],
+    design: design::Room,
+}
+
+thread_local! {
+    static ROOM: RefCell<Room> = RefCell::default();
+}
+
+/// Writes real and imaginary parts, |Z|² and |Z|, and sees what the stretch shows; `None` where an
+/// impedance is zero or no number.
+struct Looking<'a> {
+    impedance: &'a [Complex64],
+    room: &'a mut [Vec<f64>; 4],
+}
+
+impl Kernel for Looking<'_> {
+    type Output = Option<Course>;
+
+    #[inline(always)]
+    fn run<S: Simd>(self, simd: S) -> Option<Course> {
+        let [re, im, square, size] = self.room;
+        let n = self.impedance.len();
+        // What fills up the last lanes is sound and of no weight.
+        let filled = n.next_multiple_of(LANES);
+        for column in [&mut *re, &mut *im, &mut *square, &mut *size] {
+            column.resize(filled, 1.0);
+        }
+        for ((re, im), z) in re.iter_mut().zip(&mut *im).zip(self.impedance) {
+            (*re, *im) = (z.re, z.im);
+        }
+        re[n..].fill(1.0);
+        im[n..].fill(0.0);
+        let mut along = Lanes::all(simd, 0.0);
+        let z = chunks(re).iter().zip(chunks(im));
+        let sizes = chunks_mut(square).iter_mut().zip(chunks_mut(size));
+        for ((square, size), (re, im)) in sizes.zip(z) {
+            let (re, im) = (Lanes::of(simd, re), Lanes::of(simd, im));
+            let of_square = re.times(re).plus(im.times(im));
+            let of_size = of_square.root();
+            of_square.store(square);
+            of_size.store(size);
+            along = along.plus(im.over(of_size));
+        }
+        for column in [re, im, &mut *square, size] {
+            column.truncate(n);
+        }
+        // All are looked at, which is quicker than to stop at one.
+        let mut sound = 0;
+        for square in square.iter() {
+            sound += usize::from((*square > 0.0) & (*square < f64::INFINITY));
+        }
+        (sound == n).then_some(if -along.sum() > 0.95 * n as f64 {
+            Course::Capacitive
+        } else {
+            Course::Resonant
+        })
+    }
+}
+
 /// Takes terms in order while they can still bring information.
-#[derive(Clone, Copy)]
 struct Selecting<'a> {
     basis: &'a Basis,
-    impedance: &'a [Complex64],
-    square: &'a [f64],
+    points: Points<'a>,
     noise: [f64; 2],
+    room: &'a mut design::Room,
 }
 
 /// The terms taken. The models' weights are their criteria yet.
@@ -323,9 +392,9 @@ impl Kernel for Selecting<'_> {
 impl Selecting<'_> {
     /// `None` where the terms' products have not the digits for it: clean sweeps.
     #[inline(always)]
-    fn search(&self, mut add: impl FnMut(&mut Design) -> Added) -> Option<Selection> {
+    fn search(self, mut add: impl FnMut(&mut Design) -> Added) -> Option<Selection> {
         let mut models = Vec::with_capacity(MOST);
-        let mut design = Design::new(self.basis, self.impedance, self.square, self.noise);
+        let mut design = Design::new(self.basis, self.points, self.noise, self.room);
         let rows = design.rows();
         // Below this the residual is the rounding of ten-digit files, not information.
         let floor = design.rest * 1e-20 + f64::MIN_POSITIVE;
