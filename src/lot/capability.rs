@@ -266,7 +266,8 @@ fn distribution(
     stated.warnings.push(Note::new(
         "not_normal",
         format!(
-            "not normally distributed (Anderson-Darling p {p:.3}), which cp, cpk, pp and ppk assume{indices}; {interval}"
+            "not normally distributed (Anderson-Darling {}), which cp, cpk, pp and ppk assume{indices}; {interval}",
+            p_value(p)
         ),
     ));
 }
@@ -276,8 +277,8 @@ fn percentile(stated: &mut Stated, values: &[f64], bound: &Bound) -> Result<(), 
     let fit = box_cox(values).map_err(|why| why.text())?;
     if fit.normality.p_value < NORMALITY_ALPHA {
         return Err(format!(
-            "no power makes the values normal (p {:.3} with the best)",
-            fit.normality.p_value
+            "no power makes the values normal ({} with the best)",
+            p_value(fit.normality.p_value)
         ));
     }
     stated.percentile = Some(PercentileSection {
@@ -301,5 +302,14 @@ fn keep(warnings: &mut Vec<Note>, name: &str, value: Result<f64, Undefined>) -> 
             warnings.push(Note::new(&code, format!("no {name}: {}", why.text())));
             None
         }
+    }
+}
+
+/// A p-value below a thousandth is said to be so, and not rounded to nothing.
+pub(super) fn p_value(p: f64) -> String {
+    if p < 1e-3 {
+        "p < 0.001".to_owned()
+    } else {
+        format!("p {p:.3}")
     }
 }

@@ -5,6 +5,7 @@
 //! before it.
 
 use super::LotVerdict;
+use super::capability::p_value;
 use super::sampling::PlanClass;
 use crate::judgement::{PartRecord, PartVerdict};
 use crate::limits::{Bound, Limits};
@@ -155,7 +156,8 @@ fn of_bound(
     let p = section.normality_p_value.unwrap_or(0.0);
     if p < NORMALITY_ALPHA {
         section.why = format!(
-            "not normally distributed (Anderson-Darling p {p:.3}): sampling by variables does not hold for it"
+            "not normally distributed (Anderson-Darling {}): sampling by variables does not hold for it",
+            p_value(p)
         );
         return section;
     }

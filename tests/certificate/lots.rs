@@ -564,7 +564,7 @@ pub fn found() -> Case {
         s.ppk_percentile = Some(1.53);
         s.warnings = vec![Note::new(
             "not_normal",
-            "not normally distributed (Anderson-Darling p 0.000)",
+            "not normally distributed (Anderson-Darling p < 0.001)",
         )];
     }
     case.recurve(201);

@@ -13,6 +13,9 @@ pub(super) const SKIN_AT: f64 = ROOT_AT;
 /// Most parameters of a circuit.
 pub(super) const MOST: usize = 11;
 
+/// Most stages of a ladder.
+const MOST_STAGES: usize = (MOST - 3) / 2;
+
 /// An equivalent circuit.
 ///
 /// All are a resistance and an inductance in series with what follows. Parameters in order:
@@ -391,7 +394,7 @@ impl Prepared {
         let one = Wide::all(simd, Complex64::ONE);
         let omega = Lanes::of(simd, at.omega);
         // From the last stage inwards; the gain of what lies nearer is applied on the way back.
-        let mut gains = NONE;
+        let mut gains = [[[0.0; LANES]; 2]; MOST_STAGES];
         let mut z = Wide::all(simd, Complex64::ZERO);
         for k in (0..stages).rev() {
             let (c, r) = (4 + 2 * k, 5 + 2 * k);

@@ -640,3 +640,74 @@ impl Kernel for OfResidual<'_> {
         ]
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::data::{Columns, Room};
+    use super::*;
+    use crate::readings::grid::grid;
+
+    /// A capacitor with dispersion and skin effect, 0.1 % of something else at every point.
+    fn sweep() -> (Vec<f64>, Vec<Complex64>) {
+        let frequency: Vec<f64> = (0..203).map(|i| 1e3 * 1.055f64.powi(i)).collect();
+        let p = [2e-3, 0.5e-9, (4.6e-6f64).ln(), 0.017, 3e-4];
+        let mut impedance = Circuit::Dispersive.impedance(&p, &frequency);
+        for (i, z) in impedance.iter_mut().enumerate() {
+            let i = i as f64;
+            *z *= Complex64::new(1.0 + 1e-3 * (37.0 * i).sin(), 1e-3 * (53.0 * i).cos());
+        }
+        (frequency, impedance)
+    }
+
+    #[test]
+    fn sums_nearby_are_those_made_there() {
+        let (frequency, impedance) = sweep();
+        let grid = grid(&frequency, 0..frequency.len());
+        let sums = |at: f64, wanted: f64| {
+            let mut room = Room::default();
+            let (room, vectors) = room.take(frequency.len());
+            let data = Data::new(&grid, Columns::new(&impedance, room));
+            let search = Search::new(&data, vectors, at);
+            assert!((at - wanted).abs() * data.axis.reach < NEAR);
+            let sums = search.moments.sums(wanted);
+            let z = sums.z.map(|z| [z.re, z.im]);
+            let [one, omega, root] = [sums.one, sums.omega, sums.root];
+            [&one[..], &omega, &root, &z[0], &z[1], &sums.square].concat()
+        };
+        for (nearby, there) in sums(0.02, 0.024).iter().zip(sums(0.024, 0.024)) {
+            assert!((nearby / there - 1.0).abs() < 1e-7, "{nearby} {there}");
+        }
+    }
+
+    #[test]
+    fn the_minimum_is_that_of_levenberg_and_marquardt_from_any_start() {
+        let (frequency, impedance) = sweep();
+        let grid = grid(&frequency, 0..frequency.len());
+        for start in [1e-4, 0.017, 0.05, 0.1] {
+            let mut room = Room::default();
+            let (room, vectors) = room.take(frequency.len());
+            let data = Data::new(&grid, Columns::new(&impedance, room));
+            let ours = minimise(&data, vectors, start).expect("a minimum");
+            let mut from = ours.parameters;
+            (from[0], from[1], from[2], from[4]) = (1e-3, 1e-9, (3e-6f64).ln(), 1e-4);
+            let theirs = data.minimise(Circuit::Dispersive, &from, &[0, 1, 2, 3, 4]);
+            assert!(theirs.converged);
+            assert!((ours.square_sum / theirs.square_sum - 1.0).abs() < 1e-9);
+            assert_eq!(ours.free, theirs.free);
+            for k in 0..ALL {
+                // A standard deviation is the root of s²/JᵀJ, or more.
+                let sigma = (ours.square_sum / 400.0 / ours.normal[k][k]).sqrt();
+                let (a, b) = (ours.parameters[k], theirs.parameters[k]);
+                assert!((a - b).abs() < 1e-3 * sigma, "{k}: {a} {b} {sigma}");
+                for j in 0..=k {
+                    let scale = (ours.normal[k][k] * ours.normal[j][j]).sqrt();
+                    let difference = ours.normal[k][j] - theirs.normal[k][j];
+                    assert!(difference.abs() < 1e-6 * scale, "{k} {j}");
+                }
+                let difference = ours.turned[k] - theirs.turned[k];
+                let scale = (ours.normal[k][k] * data.len() as f64).sqrt();
+                assert!(difference.abs() < 1e-6 * scale, "{k}");
+            }
+        }
+    }
+}

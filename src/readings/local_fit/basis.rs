@@ -189,8 +189,7 @@ impl Basis {
             }
         }
         let square = product(&new, &new);
-        // NaN is nothing either.
-        if !(square > before * NOTHING) {
+        if square.is_nan() || square <= before * NOTHING {
             self.triangle.truncate(start);
             return false;
         }

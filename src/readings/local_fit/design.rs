@@ -145,8 +145,7 @@ impl<'a> Design<'a> {
             square -= share * share;
             projection -= share * self.projections[j];
         }
-        // NaN has no digits either.
-        if !(square > before * FEW_DIGITS) {
+        if square.is_nan() || square <= before * FEW_DIGITS {
             return Added::TooFewDigits;
         }
         let norm = square.sqrt();

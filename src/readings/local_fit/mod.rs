@@ -8,9 +8,11 @@
 //! the Kramers-Kronig relations demand, which halves the scatter of a fit to X alone.
 //!
 //! Residuals are weighted in ln|Z| and in phase by the noise that each shows in the stretch. The
-//! terms are offered in order and orthogonalised (modified Gram-Schmidt), so that all nested models
-//! come from one pass; models are averaged with Akaike weights, and their disagreement is part of
-//! the uncertainty (Burnham and Anderson, Model Selection and Multimodel Inference, 2nd ed., 4.3.2).
+//! terms are offered in order, as columns that sweeps of the same frequencies share, and solved by
+//! Cholesky's factor of the normal equations, so that all nested models come from one pass; where the
+//! noise leaves too few digits for that, by modified Gram-Schmidt. Models are averaged with Akaike
+//! weights, and their disagreement is part of the uncertainty (Burnham and Anderson, Model Selection
+//! and Multimodel Inference, 2nd ed., 4.3.2).
 //! Noisy data so get a stiff curve, clean data a supple one, without thresholds on particular parts.
 
 mod basis;
