@@ -9,6 +9,7 @@ use super::local_fit::LocalFit;
 use super::reading::{Estimate, Outcome};
 use super::{Place, Reading};
 use crate::diagnostic::Note;
+use crate::statistics::lanes::{Kernel, Simd, wide};
 use crate::sweep::Sweep;
 use num_complex::Complex64;
 use std::cell::RefCell;
@@ -207,25 +208,38 @@ struct Sums {
 
 /// Sums of none, of the first point, of the first two, and so on.
 fn sums(z: &[Complex64]) -> Vec<Sums> {
-    let mut all = vec![Sums::default(); z.len() + 1];
+    let mut shares = vec![Sums::default(); z.len()];
+    wide(Shares { z, to: &mut shares });
     let mut sum = Sums::default();
-    // The ends have no second difference.
-    let first = z.first().map(|first| first.re);
-    let (mut before, mut at) = (first.unwrap_or(0.0), first.unwrap_or(0.0));
-    for (i, (to, point)) in all.iter_mut().skip(1).zip(z).enumerate() {
-        let w = 1.0 / point.norm_sqr().max(f64::MIN_POSITIVE);
-        let after = z.get(i + 1).map_or(at, |z| z.re);
-        // Variance 6 times that of a point.
-        let d = if i == 0 || i + 1 == z.len() {
-            0.0
-        } else {
-            before - 2.0 * at + after
-        };
-        sum.weight += w;
-        sum.weighted += w * point.re;
-        sum.noise += d * d * w * (1.0 / 6.0);
+    let mut all = vec![sum; z.len() + 1];
+    for (to, share) in all.iter_mut().skip(1).zip(&shares) {
+        sum.weight += share.weight;
+        sum.weighted += share.weighted;
+        sum.noise += share.noise;
         *to = sum;
-        (before, at) = (at, after);
     }
     all
+}
+
+/// What each point has in the sums.
+struct Shares<'a> {
+    z: &'a [Complex64],
+    to: &'a mut [Sums],
+}
+
+impl Kernel for Shares<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn run<S: Simd>(self, _: S) {
+        for (to, z) in self.to.iter_mut().zip(self.z) {
+            to.weight = 1.0 / (z.re * z.re + z.im * z.im).max(f64::MIN_POSITIVE);
+            to.weighted = to.weight * z.re;
+        }
+        // The ends have no second difference; its variance is 6 times that of a point.
+        for (to, z) in self.to.iter_mut().skip(1).zip(self.z.windows(3)) {
+            let d = z[0].re - 2.0 * z[1].re + z[2].re;
+            to.noise = d * d * to.weight * (1.0 / 6.0);
+        }
+    }
 }

@@ -29,12 +29,12 @@ fn crossings(sweep: &Sweep) -> Vec<Crossing> {
     // (ln f at the change, sign before, sign after)
     let mut changes: Vec<(f64, bool, bool)> = Vec::new();
     let (f, z) = (&sweep.frequency, &sweep.impedance);
-    for i in 1..z.len() {
+    for (i, pair) in (1..).zip(z.windows(2)) {
         // Neighbours of one sign: nearly all.
-        if z[i - 1].im * z[i].im > 0.0 || z[i].im == 0.0 {
+        if pair[0].im * pair[1].im > 0.0 || pair[1].im == 0.0 {
             continue;
         }
-        let (x, before) = (z[i].im, (0..i).rev().find(|k| z[*k].im != 0.0));
+        let (x, before) = (pair[1].im, (0..i).rev().find(|k| z[*k].im != 0.0));
         if let Some(k) = before
             && (z[k].im < 0.0) != (x < 0.0)
         {

@@ -3,7 +3,8 @@
 //!
 //! Below the table stands what a sweep's numbers cost beside getting them: validity, readings and
 //! equivalent circuit, each as a ratio to reading and parsing the same files with the csv crate, which
-//! is what a program like this would be written with.
+//! is what a program like this would be written with; and the three together also beside what getting
+//! them costs here, with and without the digest that the record needs.
 //!
 //! The floor is what cannot be saved: the SHA-256 of the sweep files' bytes, which the record needs.
 //! `cargo bench --bench lot` prints a table; `-- 1250` sets the number of parts (125 where none is
@@ -12,7 +13,7 @@
 use num_complex::Complex64;
 use reelgate::certificate::{self, Curve, Paper};
 use reelgate::judgement::{judge_part, judge_try};
-use reelgate::readings::{Budget, circuit};
+use reelgate::readings::{Budget, Characteristic, Equivalent, Place, Reader, Request, circuit};
 use reelgate::record::{Occasion, Sources, make, sha256};
 use reelgate::statistics::sampling::Severity;
 use reelgate::sweep::validity::{self, Evidence};
@@ -203,7 +204,7 @@ fn main() {
             time(|| certificate::render(&made.record, &curves, &files, Paper::A4)),
         ),
     ];
-    let pieces = pieces(&sources, &station, &attempts, &judge);
+    let pieces = pieces(&sources, &station, &budget, &attempts, &judge);
     let mut out = std::io::stdout().lock();
     let _ = writeln!(
         out,
@@ -218,23 +219,29 @@ fn main() {
         );
     }
     let _ = writeln!(out, "\neach sweep, one core");
-    let csv = pieces[0].1.as_secs_f64();
-    let (getting, beside) = (pieces[1].1.as_secs_f64(), pieces[5].1.as_secs_f64());
-    for (name, duration) in pieces {
-        let each = duration.as_secs_f64() / parts as f64;
+    let each = |duration: &Duration| duration.as_secs_f64() * 1e6 / parts as f64;
+    let [csv, parsing, digest, valid, read, fit] = [0, 1, 2, 3, 4, 5].map(|k| each(&pieces[k].1));
+    for (name, duration) in &pieces {
+        let each = each(duration);
         let _ = writeln!(
             out,
-            "{name:<44} {:>10.1} µs {:>8.2} × the csv crate",
-            each * 1e6,
-            duration.as_secs_f64() / csv
+            "{name:<44} {each:>10.1} µs {:>8.2} × the csv crate",
+            each / csv
         );
     }
-    let _ = writeln!(
-        out,
-        "{:<44} {:>24.2} × reading and parsing",
-        "validity, readings and circuit",
-        beside / getting
-    );
+    let beside = valid + read + fit;
+    for (name, getting) in [
+        ("the csv crate", csv),
+        ("reading and parsing", parsing),
+        ("reading, digest and parsing", parsing + digest),
+    ] {
+        let _ = writeln!(
+            out,
+            "{:<44} {beside:>10.1} µs {:>8.2} × {name}",
+            "validity, readings and circuit",
+            beside / getting
+        );
+    }
 }
 
 /// The files' numbers by the csv crate with the standard library's numbers: a floor that a careful
@@ -257,10 +264,29 @@ fn each<I, T>(items: &[I], work: impl Fn(&I) -> T) -> Vec<T> {
     items.iter().map(work).collect()
 }
 
+/// What the limit file bounds.
+const REQUESTS: [Request; 6] = [
+    request(Characteristic::Capacitance, Place::At(1e3)),
+    request(Characteristic::DissipationFactor, Place::At(1e3)),
+    request(Characteristic::Esr, Place::At(1e6)),
+    request(Characteristic::Impedance, Place::At(1e5)),
+    request(Characteristic::EsrMinimum, Place::Anywhere),
+    request(Characteristic::Srf, Place::Anywhere),
+];
+
+const fn request(characteristic: Characteristic, place: Place) -> Request {
+    Request {
+        characteristic,
+        place,
+        equivalent: Equivalent::Series,
+    }
+}
+
 /// What a sweep costs beside getting it.
 fn pieces(
     sources: &Sources,
     station: &reelgate::station::Station,
+    budget: &Budget,
     attempts: &[Attempt],
     judge: &dyn Fn(&Attempt) -> reelgate::judgement::PartRecord,
 ) -> Vec<(&'static str, Duration)> {
@@ -270,16 +296,21 @@ fn pieces(
         .filter_map(|a| a.sweep.as_ref().ok())
         .collect();
     let read = |f: &RawFile| read_file(f, station, None);
+    let readings = |s: &&Sweep| {
+        let reader = Reader::new(s, budget);
+        REQUESTS.map(|request| reader.read(&request))
+    };
     // In turn, so that whatever else the machine does falls on all of them alike.
-    let mut steps: [&mut dyn FnMut(); 6] = [
+    let mut steps: [&mut dyn FnMut(); 7] = [
         &mut || drop(black_box(each(&sources.sweeps, by_csv_crate))),
         &mut || drop(black_box(each(&sources.sweeps, |f| sha256(&f.bytes)))),
         &mut || drop(black_box(each(&sources.sweeps, read))),
         &mut || drop(black_box(each(&sweeps, |s| validity::check(s, &evidence)))),
+        &mut || drop(black_box(each(&sweeps, readings))),
         &mut || drop(black_box(each(attempts, judge))),
         &mut || drop(black_box(each(&sweeps, |s| circuit::fit(s)))),
     ];
-    let mut durations: [Vec<Duration>; 6] = Default::default();
+    let mut durations: [Vec<Duration>; 7] = Default::default();
     for _ in 0..RUNS {
         for (step, durations) in steps.iter_mut().zip(&mut durations) {
             let start = Instant::now();
@@ -287,7 +318,7 @@ fn pieces(
             durations.push(start.elapsed());
         }
     }
-    let [csv, digest, whole, valid, readings, fit] = durations.map(|mut all| {
+    let [csv, digest, whole, valid, readings, judged, fit] = durations.map(|mut all| {
         all.sort();
         all[RUNS / 2]
     });
@@ -297,9 +328,10 @@ fn pieces(
             "reading and parsing (without digest, validity)",
             whole.saturating_sub(digest + valid),
         ),
+        ("digest", digest),
         ("validity", valid),
-        ("readings and judgement", readings),
+        ("readings", readings),
         ("equivalent circuit", fit),
-        ("validity, readings and circuit", valid + readings + fit),
+        ("judgement of the readings", judged.saturating_sub(readings)),
     ]
 }

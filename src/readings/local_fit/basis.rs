@@ -107,7 +107,7 @@ pub(super) struct Basis {
     pub(super) size: Vec<f64>,
     /// Each column's real parts and then its imaginary parts.
     columns: Vec<f64>,
-    /// The terms by the columns: packed upper triangle.
+    /// The terms by the columns: packed upper triangle with reciprocals on its diagonal.
     triangle: Vec<f64>,
 }
 
@@ -194,7 +194,7 @@ impl Basis {
             return false;
         }
         let norm = square.sqrt();
-        self.triangle.push(norm);
+        self.triangle.push(1.0 / norm);
         self.columns.extend(new.iter().map(|v| v / norm));
         true
     }
@@ -210,7 +210,8 @@ impl Basis {
         self.columns[start..start + 2 * self.filled].split_at(self.filled)
     }
 
-    /// The terms by the columns: packed upper triangle, column after column.
+    /// The terms by the columns: packed upper triangle, column after column, with reciprocals on its
+    /// diagonal.
     pub(super) fn triangle(&self) -> &[f64] {
         &self.triangle
     }

@@ -44,7 +44,8 @@ pub(super) struct Design<'a> {
     pub(super) rest: f64,
     /// Of the data.
     total: f64,
-    /// The basis's columns by the orthonormal ones: packed upper triangle, column after column.
+    /// The basis's columns by the orthonormal ones: packed upper triangle, column after column, with
+    /// reciprocals on its diagonal.
     pub(super) triangle: Vec<f64>,
     /// Of the weighted data on the orthonormal columns.
     pub(super) projections: Vec<f64>,
@@ -140,7 +141,7 @@ impl<'a> Design<'a> {
             for i in 0..j {
                 share -= known[start + i] * shares[i];
             }
-            share /= known[start + j];
+            share *= known[start + j];
             shares[j] = share;
             square -= share * share;
             projection -= share * self.projections[j];
@@ -148,9 +149,9 @@ impl<'a> Design<'a> {
         if square.is_nan() || square <= before * FEW_DIGITS {
             return Added::TooFewDigits;
         }
-        let norm = square.sqrt();
-        projection /= norm;
-        self.triangle.push(norm);
+        let over = 1.0 / square.sqrt();
+        projection *= over;
+        self.triangle.push(over);
         self.projections.push(projection);
         self.rest -= projection * projection;
         if self.rest > self.total * FEW_DIGITS {
@@ -189,7 +190,7 @@ impl<'a> Design<'a> {
         }
         let norm = square.sqrt();
         new.iter_mut().for_each(|v| *v /= norm);
-        self.triangle.push(norm);
+        self.triangle.push(1.0 / norm);
         let projection = product(new, self.data);
         self.projections.push(projection);
         take(self.data, projection, new);

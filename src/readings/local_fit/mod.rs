@@ -33,6 +33,7 @@ use std::cell::RefCell;
 use std::f64::consts::LN_10;
 use std::ops::Range;
 use std::rc::Rc;
+use std::sync::LazyLock;
 
 /// Width of the stretch that carries a reading, as ln of the frequency ratio (0.8 decade).
 pub(super) const WIDTH: f64 = 0.8 * LN_10;
@@ -66,6 +67,9 @@ pub(super) struct LocalFit {
     noise: [f64; 2],
 }
 
+/// `WIDTH` and half of it as frequency ratios.
+static FACTORS: LazyLock<(f64, f64)> = LazyLock::new(|| (WIDTH.exp(), WIDTH.exp().sqrt()));
+
 /// The points within `WIDTH` around a frequency: shifted inwards at an end of the sweep, and at
 /// least `FEWEST` points where the sweep has them.
 pub(super) fn stretch(sweep: &Sweep, centre: f64) -> Range<usize> {
@@ -73,9 +77,9 @@ pub(super) fn stretch(sweep: &Sweep, centre: f64) -> Range<usize> {
     let (Some(first), Some(last)) = (points.first(), points.last()) else {
         return 0..0;
     };
-    let whole = WIDTH.exp();
-    let low = (centre / whole.sqrt()).min(last / whole).max(*first);
-    let high = (low * whole).max(centre * whole.sqrt()).min(*last);
+    let (whole, half) = *FACTORS;
+    let low = (centre / half).min(last / whole).max(*first);
+    let high = (low * whole).max(centre * half).min(*last);
     let slack = 1.0 + 1e-9;
     let start = points.partition_point(|f| f * slack < low);
     let end = points.partition_point(|f| *f <= high * slack);
@@ -278,11 +282,12 @@ fn column(triangle: &[f64], k: usize) -> &[f64] {
     &triangle[start..=start + k]
 }
 
-/// Solves `R x = b` for the packed upper triangle R, from `b` to `x` in place.
+/// Solves `R x = b` for the packed upper triangle R with reciprocals on its diagonal, from `b` to `x` in
+/// place.
 fn backwards(triangle: &[f64], x: &mut [f64]) {
     for k in (0..x.len()).rev() {
         let column = column(triangle, k);
-        let value = x[k] / column[k];
+        let value = x[k] * column[k];
         for (x, entry) in x.iter_mut().zip(&column[..k]) {
             *x -= entry * value;
         }
@@ -295,7 +300,7 @@ fn forwards(triangle: &[f64], x: &mut [f64]) {
     for k in 0..x.len() {
         let column = column(triangle, k);
         let known: f64 = column[..k].iter().zip(&*x).map(|(a, b)| a * b).sum();
-        x[k] = (x[k] - known) / column[k];
+        x[k] = (x[k] - known) * column[k];
     }
 }
 
