@@ -205,9 +205,9 @@ fn best(
 }
 
 /// Whether neighbouring residuals go no more together than those of noise do: their correlation has
-/// a standard deviation of 1/√(2n) then.
+/// a standard deviation of 1/√(2n) then, and more than three of them once in a thousand sweeps.
 fn is_noise(data: &Data, m: &Minimum) -> bool {
-    m.course.autocorrelation < 2.0 / (data.residuals() as f64).sqrt()
+    m.course.autocorrelation < 3.0 / (data.residuals() as f64).sqrt()
 }
 
 /// Whether the sweep tells every element: an element known to no better than a factor of e is one
