@@ -14,6 +14,7 @@ mod grid;
 mod local_fit;
 mod reading;
 mod series;
+mod sizes;
 mod srf;
 mod uncertainty;
 

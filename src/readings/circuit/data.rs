@@ -1,6 +1,7 @@
 //! The points that are fitted, one vector for each of what is needed of them.
 
 use crate::readings::grid::{Axis, Grid};
+use crate::readings::sizes::sizes;
 use crate::statistics::lanes::{Kernel, LANES, Simd, dot, sum, wide};
 use num_complex::Complex64;
 use std::cell::Cell;
@@ -78,8 +79,8 @@ impl<'a> Columns<'a> {
             re: &mut re[..points],
             im: &mut im[..points],
             square: &mut square[..points],
-            size,
-            weight,
+            size: &mut size[..points],
+            weight: &mut weight[..points],
         });
         Columns {
             points,
@@ -134,21 +135,11 @@ impl Kernel for Sizes<'_> {
 
     #[inline(always)]
     fn run<S: Simd>(self, _: S) -> bool {
-        for ((re, im), z) in self.re.iter_mut().zip(&mut *self.im).zip(self.impedance) {
-            (*re, *im) = (z.re, z.im);
+        let sound = sizes(self.impedance, self.re, self.im, self.square, self.size);
+        for (weight, size) in self.weight.iter_mut().zip(&*self.size) {
+            *weight = 1.0 / size;
         }
-        let columns = self.square.iter_mut().zip(self.size).zip(self.weight);
-        for (((square, size), weight), (re, im)) in columns.zip(self.re.iter().zip(&*self.im)) {
-            *square = re * re + im * im;
-            *size = square.sqrt();
-            *weight = 1.0 / *size;
-        }
-        // All are looked at, which is quicker than to stop at one.
-        let mut sound = 0;
-        for square in &*self.square {
-            sound += u64::from((*square > 0.0) & (*square < f64::INFINITY));
-        }
-        sound == self.square.len() as u64
+        sound
     }
 }
 

@@ -10,7 +10,7 @@
 //! normal equations alone would leave short of digits.
 
 use super::data::{Course, Data};
-use super::exponential::exp;
+use super::exponential::{SERIES, exp};
 use super::marquardt::{Factor, Minimum};
 use super::model::{CAPACITANCE_AT, Circuit, MOST};
 use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, wide};
@@ -139,7 +139,8 @@ impl State {
 /// The minimum with no element negative: one that would be is left out. The search begins at the
 /// exponent `start`.
 ///
-/// `vectors` are room for the work, each as long as a column of the data. `None` where the way is not straight: Levenberg's and Marquardt's method is for that.
+/// `vectors` are room for the work, each as long as a column of the data. `None` where the way is not
+/// straight: Levenberg's and Marquardt's method is for that.
 pub(super) fn minimise(data: &Data, vectors: [&mut [f64]; VECTORS], start: f64) -> Option<Minimum> {
     let mut search = Search::new(data, vectors, start);
     let (mut free, mut a) = ([true; ALL], start);
@@ -558,16 +559,8 @@ impl Kernel for OfResidual<'_> {
 
     #[inline(always)]
     fn run<S: Simd>(self, simd: S) -> [f64; 8] {
-        /// Of (eˣ − 1)/x, exact to rounding where |x| is below `NEAR`.
-        const SERIES: [f64; 7] = [
-            1.0 / 5040.0,
-            1.0 / 720.0,
-            1.0 / 120.0,
-            1.0 / 24.0,
-            1.0 / 6.0,
-            0.5,
-            1.0,
-        ];
+        // Exact to rounding where |x| is below `NEAR`.
+        let [.., first, a, b, c, d, e, f] = SERIES;
         let (all, state) = (Chunks::of(self.data), self.state);
         let Chunks {
             weight,
@@ -589,9 +582,9 @@ impl Kernel for OfResidual<'_> {
         let sin = Lanes::all(simd, state.kappa * sin);
         for i in 0..weight.len() {
             let y = Lanes::of(simd, &ln[i]).minus(middle).times(turn);
-            let mut grown = Lanes::all(simd, SERIES[0]);
-            for c in &SERIES[1..] {
-                grown = grown.times(y).plus(Lanes::all(simd, *c));
+            let mut grown = Lanes::all(simd, first);
+            for c in [a, b, c, d, e, f] {
+                grown = grown.times(y).plus(Lanes::all(simd, c));
             }
             let power = Lanes::of(simd, &powers[i]);
             power

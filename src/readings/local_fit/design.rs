@@ -28,6 +28,13 @@ pub(super) struct Room {
     data: Vec<f64>,
 }
 
+impl Room {
+    /// Numbers that there is room for in columns, nearly all of it.
+    pub(super) fn len(&self) -> usize {
+        self.columns.len()
+    }
+}
+
 /// Columns of the basis, each point's divided by its Z and by the noise there. Rows: ln|Z| of each
 /// point, then the phases, since `dZ/Z = d ln|Z| + j dθ`.
 pub(super) struct Design<'a> {

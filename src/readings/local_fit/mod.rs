@@ -22,7 +22,8 @@ mod scatter;
 
 pub(super) use scatter::{Points, noise};
 
-use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, chunks_mut, wide};
+use super::sizes::sizes;
+use crate::statistics::lanes::{Kernel, LANES, Lanes, Simd, chunks, wide};
 use crate::sweep::Sweep;
 use basis::{Basis, Course, MOST, Term};
 use curve::{Curve, Point};
@@ -147,6 +148,7 @@ impl LocalFit {
                 };
                 exactly.search(|design| design.add_exactly())
             })?;
+            room.keep_little();
             Some((basis, noise, selection))
         })?;
         let Selection {
@@ -317,6 +319,17 @@ struct Room {
     design: design::Room,
 }
 
+/// More than so many numbers of a stretch are not kept.
+const MOST_KEPT: usize = 1 << 17;
+
+impl Room {
+    fn keep_little(&mut self) {
+        if self.design.len() > MOST_KEPT {
+            *self = Room::default();
+        }
+    }
+}
+
 thread_local! {
     static ROOM: RefCell<Room> = RefCell::default();
 }
@@ -333,38 +346,23 @@ impl Kernel for Looking<'_> {
 
     #[inline(always)]
     fn run<S: Simd>(self, simd: S) -> Option<Course> {
-        let [re, im, square, size] = self.room;
         let n = self.impedance.len();
-        // What fills up the last lanes is sound and of no weight.
-        let filled = n.next_multiple_of(LANES);
-        for column in [&mut *re, &mut *im, &mut *square, &mut *size] {
-            column.resize(filled, 1.0);
+        for column in &mut *self.room {
+            column.resize(n, 0.0);
         }
-        for ((re, im), z) in re.iter_mut().zip(&mut *im).zip(self.impedance) {
-            (*re, *im) = (z.re, z.im);
+        let [re, im, square, size] = self.room;
+        if !sizes(self.impedance, re, im, square, size) {
+            return None;
         }
-        re[n..].fill(1.0);
-        im[n..].fill(0.0);
         let mut along = Lanes::all(simd, 0.0);
-        let z = chunks(re).iter().zip(chunks(im));
-        let sizes = chunks_mut(square).iter_mut().zip(chunks_mut(size));
-        for ((square, size), (re, im)) in sizes.zip(z) {
-            let (re, im) = (Lanes::of(simd, re), Lanes::of(simd, im));
-            let of_square = re.times(re).plus(im.times(im));
-            let of_size = of_square.root();
-            of_square.store(square);
-            of_size.store(size);
-            along = along.plus(im.over(of_size));
+        for (im, size) in chunks(im).iter().zip(chunks(size)) {
+            along = along.plus(Lanes::of(simd, im).over(Lanes::of(simd, size)));
         }
-        for column in [re, im, &mut *square, size] {
-            column.truncate(n);
+        let mut along = along.sum();
+        for i in n - n % LANES..n {
+            along += im[i] / size[i];
         }
-        // All are looked at, which is quicker than to stop at one.
-        let mut sound = 0;
-        for square in square.iter() {
-            sound += usize::from((*square > 0.0) & (*square < f64::INFINITY));
-        }
-        (sound == n).then_some(if -along.sum() > 0.95 * n as f64 {
+        Some(if -along > 0.95 * n as f64 {
             Course::Capacitive
         } else {
             Course::Resonant
@@ -513,6 +511,67 @@ mod tests {
         let scatter = |direction| fit.point_scatter(Complex64::new(0.0, x), direction) / x.abs();
         assert!((0.7..1.4).contains(&(scatter(Complex64::I) / 0.01)));
         assert!((0.7..1.4).contains(&(scatter(Complex64::ONE) / 2e-3)));
+    }
+
+    #[test]
+    fn terms_by_their_products_are_those_by_columns() {
+        // Both courses, 0.1 % of something else at every point.
+        for (resonance, course) in [(1e9, Course::Capacitive), (4e4, Course::Resonant)] {
+            let l = 1.0 / ((TAU * resonance).powi(2) * 1e-6);
+            let mut sweep = sweep(41, |s| 0.01 + s * l + (s * 1e-6).inv());
+            for (i, z) in sweep.impedance.iter_mut().enumerate() {
+                let i = i as f64;
+                *z *= Complex64::new(1.0 + 1e-3 * (37.0 * i).sin(), 1e-3 * (53.0 * i).cos());
+            }
+            let mut room = Room::default();
+            let found = wide(Looking {
+                impedance: &sweep.impedance,
+                room: &mut room.points,
+            });
+            assert_eq!(found, Some(course));
+            let basis = Basis::of(&sweep.frequency, course);
+            let [re, im, square, size] = &room.points;
+            let points = Points {
+                re,
+                im,
+                square,
+                size,
+            };
+            let mut select = |exactly: bool| {
+                let selecting = Selecting {
+                    basis: &basis,
+                    points,
+                    noise: [1.0, 0.4],
+                    room: &mut room.design,
+                };
+                if exactly {
+                    selecting.search(|design| design.add_exactly())
+                } else {
+                    wide(selecting)
+                }
+            };
+            let quick = select(false).expect("digits enough");
+            let exact = select(true).expect("a fit");
+            assert!(quick.models.len() >= 4);
+            assert_eq!(quick.models.len(), exact.models.len());
+            // Rounding is 1e-16 of the data's squares, of which the noise is a millionth.
+            for (a, b) in quick.models.iter().zip(&exact.models) {
+                assert!(
+                    (a.weight - b.weight).abs() < 1e-4,
+                    "{} {}",
+                    a.weight,
+                    b.weight
+                );
+                assert!((a.variance / b.variance - 1.0).abs() < 1e-6);
+            }
+            let length = exact.projections.iter().map(|p| p * p).sum::<f64>().sqrt();
+            for (a, b) in quick.projections.iter().zip(&exact.projections) {
+                assert!((a - b).abs() < 1e-10 * length, "{a} {b}");
+            }
+            for (a, b) in quick.triangle.iter().zip(&exact.triangle) {
+                assert!((a - b).abs() < 1e-8 * (1.0 + b.abs()), "{a} {b}");
+            }
+        }
     }
 
     #[test]
