@@ -159,7 +159,8 @@ fn what_is_not_expected_says_what_it_is_and_what_was_expected() {
     );
     assert_eq!(
         error("1 µF", Dimension::Frequency).to_string(),
-        "`1 µF` is a capacitance; expected a frequency such as `1 kHz`"
+        "`1 µF` is a capacitance; expected a frequency such as `1 kHz` \
+         (check the unit, and whether the value stands at the right key)"
     );
 }
 

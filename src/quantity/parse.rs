@@ -89,7 +89,7 @@ fn unit_error(text: &str, unit: &str, dimension: Dimension) -> QuantityError {
             let is_code = dimension == Dimension::Capacitance && unit == "R";
             match code_hint(text) {
                 Some(hint) if is_code => error.hint(hint),
-                _ => error,
+                _ => error.hint("check the unit, and whether the value stands at the right key"),
             }
         }
         None => {
