@@ -117,16 +117,6 @@ impl<S: Simd> Lanes<S> {
         }
     }
 
-    /// The square roots.
-    #[inline(always)]
-    pub(crate) fn root(self) -> Self {
-        Lanes {
-            simd: self.simd,
-            low: self.simd.sqrt_f64s(self.low),
-            high: self.simd.sqrt_f64s(self.high),
-        }
-    }
-
     /// The sum of the lanes.
     #[inline(always)]
     pub(crate) fn sum(self) -> f64 {
